@@ -1,0 +1,75 @@
+package eem
+
+import (
+	"slices"
+	"strings"
+)
+
+// Test describes one check of the data: what code it writes to flags.csv, how
+// bad a finding is and what it is held against.
+type Test struct {
+	Code     string
+	Severity Severity
+	Limit    float64 // default limit, in Unit; 0 where the test has none
+	Unit     string
+	What     string // what it finds, in one sentence
+	Source   string // where the limit comes from
+}
+
+// Tests lists every test code that the module can write, sorted by code. A
+// setting [quality] limit overrides a default by its code.
+var Tests = sortTests([]Test{
+	{"unreadable", Reject, 0, "", "a raw file of the bottle is missing or cannot be read", "-"},
+	{"excitation-repeated", Reject, 0, "", "one excitation was scanned twice with different numbers", "-"},
+	{"no-light", Reject, 0, "", "no light came through: the bottle's scans hold nothing but zeros or a constant", "common practice, no source"},
+	{"saturated", Doubt, 0, "cells", "cells at or above the detector's limit were left out", "settings: scans.saturation"},
+	{"no-absorbance", Doubt, 0, "", "no absorbance was given, so that the inner filter was not corrected", "-"},
+	{"absorbance-limit", Doubt, 1.5, "", "total absorbance (excitation + emission, 1 cm) above the limit of the inner-filter correction", "Kothawala et al. 2013, Limnol. Oceanogr. Methods 11, 616"},
+	{"absorbance-range", Doubt, 0, "cells", "cells outside the absorbance spectrum were left out", "-"},
+	{"linear-range", Remark, 0.05, "", "ln(10)·A at an excitation is above the range where emission is proportional to concentration without correction", "1 − e^−x, computed: 2.5 % at 0.05"},
+	{"factor-range", Remark, 0, "cells", "cells outside the spectral factors were left out", "-"},
+	{"no-blank", Doubt, 0, "", "the batch has no blank, so that none was subtracted", "-"},
+	{"blank-range", Doubt, 0, "cells", "the blank does not cover these cells; they were left out", "-"},
+	{"counts", Doubt, 0, "", "no blank allows an intensity scale, so that results stay in counts", "-"},
+	{"raman-range", Doubt, 0, "", "a blank of the batch does not cover the Raman line at the scale's excitation", "Lawaetz & Stedmon 2009, Appl. Spectrosc. 63, 936 (from memory)"},
+	{"no-batch", Remark, 0, "", "neither batch nor measured date is given, so that all bottles form one batch", "-"},
+	{"grid-part", Remark, 0, "cells", "the bottle lacks part of the survey's grid", "-"},
+	{"grid-differs", Remark, 0, "", "the bottle's wavelengths differ from the survey's grid and were interpolated", "-"},
+	{"interleaved", Remark, 0, "", "the scans' emission points interleave and were interpolated onto one axis", "-"},
+	{"read-guess", Remark, 0, "", "how a raw file was taken: form, delimiter, decimal mark, encoding", "-"},
+	{"unsorted", Remark, 0, "", "wavelengths were not in increasing order and were sorted", "-"},
+	{"repeated-point", Remark, 0, "points", "a wavelength stands twice in a scan and the mean was taken", "-"},
+	{"diluted", Remark, 0, "", "the result was multiplied by the dilution factor", "-"},
+	{"above-standards", Doubt, 0, "", "the contribution is above the highest standard", "common practice, no source"},
+	{"reference-clipped", Doubt, 0, "cells", "saturated or over-absorbing cells of a standard were left out of the reference", "-"},
+	{"reference-intercept", Doubt, 3, "standard errors", "the standards' own line does not pass through zero", "common practice, no source"},
+	{"reference-levels", Remark, 2, "levels", "a reference rests on fewer levels than this", "-"},
+	{"few-cells", Reject, 0, "cells", "fewer cells than components are left", "-"},
+	{"overlap", Doubt, 30, "", "condition number of the unit-norm components above the limit: they cannot be told apart well", "Belsley, Kuh & Welsch 1980 (from memory)"},
+	{"unexplained", Doubt, 0.9, "", "share of the bottle's signal explained by the model below the limit", "common practice, no source"},
+	{"structure", Remark, 4, "z", "Moran's I of the residual map: neighbouring residuals are alike", "Cliff & Ord 1981 (from memory)"},
+	{"not-converged", Doubt, 0, "", "the fit stopped before its tolerance was met", "-"},
+	{"starts-disagree", Remark, 0.5, "share", "fewer starts than this share reached the best fit", "common practice, no source"},
+	{"excluded", Remark, 0, "", "the sheet excludes the bottle; it takes part in nothing", "-"},
+	{"excluded-from-fit", Remark, 0, "", "the sheet keeps the bottle out of model, references and charts", "-"},
+	{"duplicate", Doubt, 20, "%", "relative difference of a bottle and its replicate above the limit", "common practice, no source"},
+	{"control-recovery", Doubt, 10, "%", "recovery of a control off 100 % by more than the limit", "common practice, no source"},
+	{"spike-recovery", Doubt, 20, "%", "recovery of a spike off 100 % by more than the limit", "common practice, no source"},
+	{"field-blank", Doubt, 0, "", "a component was found in a field blank of the batch", "common practice, no source"},
+	{"applied", Remark, 0, "", "a correction was done to the files before they came here and was not done again", "-"},
+	{"sheet-hidden", Remark, 0, "rows", "hidden rows of the workbook were read like the others", "-"},
+})
+
+// FindTest returns the test of a code.
+func FindTest(code string) (Test, bool) {
+	i, ok := slices.BinarySearchFunc(Tests, code, func(t Test, c string) int { return strings.Compare(t.Code, c) })
+	if !ok {
+		return Test{}, false
+	}
+	return Tests[i], true
+}
+
+func sortTests(t []Test) []Test {
+	slices.SortFunc(t, func(a, b Test) int { return strings.Compare(a.Code, b.Code) })
+	return t
+}
