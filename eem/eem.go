@@ -22,20 +22,20 @@ type Reason uint8
 
 // Reasons of a cell.
 const (
-	Measured       Reason = iota // a measured number
-	NotMeasured                  // never scanned, or blank in the file
-	Saturated                    // at or above the detector's limit
-	Uncorrected                  // outside the range of a spectral correction factor
-	NoAbsorbance                 // outside the range of the absorbance spectrum
-	OverAbsorbing                // total absorbance above the limit of the inner-filter correction
-	BelowExcitation              // emission shorter than the excitation: nothing can fluoresce there
-	Rayleigh1                    // in the band of first-order Rayleigh scatter
-	Rayleigh2                    // in the band of second-order Rayleigh scatter
-	Raman1                       // in the band of first-order Raman scatter
-	Raman2                       // in the band of second-order Raman scatter
-	NoBlank                      // the blank has no number here
-	Spike                        // a spike of the detector
-	NumReasons                   // how many there are
+	Measured        Reason = iota // a measured number
+	NotMeasured                   // never scanned, or blank in the file
+	Saturated                     // at or above the detector's limit
+	Uncorrected                   // outside the range of a spectral correction factor
+	NoAbsorbance                  // outside the range of the absorbance spectrum
+	OverAbsorbing                 // total absorbance above the limit of the inner-filter correction
+	BelowExcitation               // emission shorter than the excitation: nothing can fluoresce there
+	Rayleigh1                     // in the band of first-order Rayleigh scatter
+	Rayleigh2                     // in the band of second-order Rayleigh scatter
+	Raman1                        // in the band of first-order Raman scatter
+	Raman2                        // in the band of second-order Raman scatter
+	NoBlank                       // the blank has no number here
+	Spike                         // a spike of the detector
+	NumReasons                    // how many there are
 )
 
 var reasonNames = [NumReasons]string{
