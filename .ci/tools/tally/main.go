@@ -1,0 +1,104 @@
+// Command tally reads what go test -json wrote and prints one line,
+//
+//	N passed, N failed, N skipped
+//
+// for all files together. With -failures it prints the output of what failed
+// first. It fails when a test or package failed, and when no test ran.
+package main
+
+import (
+	"bufio"
+	"encoding/json"
+	"errors"
+	"flag"
+	"fmt"
+	"io"
+	"log"
+	"os"
+	"strings"
+)
+
+// An event is one line of test2json, or of the build messages beside it.
+type event struct {
+	Action, Package, Test, Output string
+	ImportPath, FailedBuild       string
+}
+
+// A tally counts tests (subtests too); a package that failed without a failing
+// test (it did not build, it ran out of time) counts as one failed test.
+type tally struct {
+	pass, fail, skip int
+	failures         io.Writer
+	output           map[string][]string // by package and test, until its end
+	failedIn         map[string]bool     // packages with a failed test
+}
+
+func main() {
+	log.SetFlags(0)
+	failures := flag.Bool("failures", false, "print the output of what failed")
+	flag.Parse()
+	var sum tally
+	for _, name := range flag.Args() {
+		t := tally{failures: io.Discard, output: map[string][]string{}, failedIn: map[string]bool{}}
+		if *failures {
+			t.failures = os.Stdout
+		}
+		if err := t.read(name); err != nil {
+			log.Fatal(err)
+		}
+		sum.pass, sum.fail, sum.skip = sum.pass+t.pass, sum.fail+t.fail, sum.skip+t.skip
+	}
+	fmt.Printf("%d passed, %d failed, %d skipped\n", sum.pass, sum.fail, sum.skip)
+	if sum.fail > 0 || sum.pass == 0 {
+		os.Exit(1)
+	}
+}
+
+func (t *tally) read(name string) error {
+	f, err := os.Open(name)
+	if err != nil {
+		return err
+	}
+	defer f.Close()
+	r := bufio.NewReader(f)
+	for {
+		line, err := r.ReadBytes('\n')
+		var e event
+		if len(line) > 0 && json.Unmarshal(line, &e) == nil {
+			t.add(e)
+		}
+		if errors.Is(err, io.EOF) {
+			return nil
+		}
+		if err != nil {
+			return err
+		}
+	}
+}
+
+func (t *tally) add(e event) {
+	key := e.ImportPath + e.Package + " " + e.Test
+	switch e.Action {
+	case "output", "build-output":
+		t.output[key] = append(t.output[key], e.Output)
+	case "pass":
+		if e.Test != "" {
+			t.pass++
+		}
+		delete(t.output, key)
+	case "skip":
+		if e.Test != "" {
+			t.skip++
+		}
+		delete(t.output, key)
+	case "build-fail":
+		fmt.Fprintf(t.failures, "%s", strings.Join(t.output[key], ""))
+	case "fail":
+		if e.Test != "" || !t.failedIn[e.Package] {
+			t.fail++
+			fmt.Fprintf(t.failures, "--- %s\n%s", key, strings.Join(t.output[key], ""))
+		}
+		t.failedIn[e.Package] = true
+		delete(t.output, key)
+	}
+}
