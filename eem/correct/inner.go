@@ -1,0 +1,149 @@
+package correct
+
+import (
+	"fmt"
+	"math"
+
+	"tarnlight/eem"
+)
+
+// InnerFilter multiplies every cell by the geometry's factor at the absorbance a
+// of the scanned liquid. factor, J × K, holds what each cell was multiplied by,
+// NaN where there is none. Cells outside the absorbance spectrum become missing
+// (NoAbsorbance). Cells whose total absorbance (excitation + emission, over the
+// path of the measuring cell) exceeds limit keep their corrected value and are
+// flagged with the dilution that would bring the bottle back; limit 0 means the
+// default of the test absorbance-limit. Without absorbance (nil) nothing is
+// multiplied, every factor is NaN and the bottle is flagged. It panics where
+// g.Check fails.
+func InnerFilter(e *eem.EEM, a *eem.Absorbance, g Geometry, limit float64) (out *eem.EEM, factor []float64) {
+	if err := g.Check(); err != nil {
+		panic("correct: " + err.Error())
+	}
+	factor = make([]float64, len(e.F))
+	for i := range factor {
+		factor[i] = math.NaN()
+	}
+	out = own(e)
+	if a == nil {
+		n := finding(StepInner, "no-absorbance", 0, 0, "no absorbance is given, so that the inner filter was not corrected; results are low wherever the water absorbs")
+		n.Measure = false
+		out.Note(n)
+		return out, factor
+	}
+	limit = defaultLimit("absorbance-limit", limit)
+	ax, am := perCM(a, e.Ex), perCM(a, e.Em)
+	lost, largest := 0, 1.0
+	for j := range ax {
+		for k := range am {
+			i := e.Index(j, k)
+			f := g.Factor(ax[j], am[k])
+			if math.IsNaN(f) || math.IsInf(f, 0) {
+				if measured(e, i) {
+					lost++
+				}
+				if e.Why[i] == eem.Measured {
+					out.Drop(i, eem.NoAbsorbance)
+				}
+				continue
+			}
+			factor[i] = f
+			times(out, i, f)
+			if measured(e, i) {
+				largest = max(largest, f)
+			}
+		}
+	}
+	out.Note(record(StepInner, "multiplied by the factor of each cell, largest "+num(largest), g.params(largest, limit)...))
+	if lost > 0 {
+		out.Note(finding(StepInner, "absorbance-range", float64(lost), 0, fmt.Sprintf(
+			"%d cells lie outside the absorbance spectrum (%g–%g nm) and were left out; measure the absorbance over ex %g–%g nm and em %g–%g nm",
+			lost, a.Axis.First(), a.Axis.Last(), e.Ex.First(), e.Ex.Last(), e.Em.First(), e.Em.Last())))
+	}
+	noteOver(out, overAbsorbing(out, ax, am, g.path(), limit), limit)
+	return out, factor
+}
+
+// DropOverAbsorbing makes cells whose total absorbance exceeds limit missing
+// (OverAbsorbing), for standards: a correction beyond its range must not enter a
+// reference. limit 0 means the default of the test absorbance-limit.
+func DropOverAbsorbing(e *eem.EEM, a *eem.Absorbance, g Geometry, limit float64) *eem.EEM {
+	out := e.Clone()
+	if a == nil {
+		return out
+	}
+	limit = defaultLimit("absorbance-limit", limit)
+	o := overAbsorbing(e, perCM(a, e.Ex), perCM(a, e.Em), g.path(), limit)
+	for _, i := range o.cells {
+		out.Drop(i, eem.OverAbsorbing)
+	}
+	out.Note(record(StepInner, fmt.Sprintf("%d cells with a total absorbance above %s left out", len(o.cells), num(limit)),
+		eem.Param{Name: "absorbance limit", Value: num(limit), Source: "settings: correct.absorbance_limit"}))
+	return out
+}
+
+// perCM gives the absorbance of 1 cm on an axis, NaN where it was not measured.
+func perCM(a *eem.Absorbance, ax eem.Axis) []float64 {
+	v := make([]float64, ax.Len())
+	for i := range v {
+		v[i] = a.PerCM(ax.At(i))
+	}
+	return v
+}
+
+// over tells which measured cells exceed the limit and where the worst is.
+type over struct {
+	cells  []int
+	total  float64 // the largest total absorbance
+	ex, em float64 // nm, where it is
+}
+
+// overAbsorbing looks at measured cells at or above the Rayleigh line; below it
+// nothing fluoresces, and a strong absorbance there harms no result.
+func overAbsorbing(e *eem.EEM, ax, am []float64, path, limit float64) over {
+	var o over
+	for j := range ax {
+		for k := range am {
+			i, total := e.Index(j, k), (ax[j]+am[k])*path
+			if e.Em.At(k) < e.Ex.At(j) || !(total > limit) || !measured(e, i) {
+				continue
+			}
+			o.cells = append(o.cells, i)
+			if total > o.total {
+				o.total, o.ex, o.em = total, e.Ex.At(j), e.Em.At(k)
+			}
+		}
+	}
+	return o
+}
+
+// noteOver flags the bottle with the dilution that would bring it back: the
+// absorbance of the scanned liquid falls as 1 over the dilution.
+func noteOver(e *eem.EEM, o over, limit float64) {
+	if len(o.cells) == 0 {
+		return
+	}
+	e.Note(finding(StepInner, "absorbance-limit", o.total, limit, fmt.Sprintf(
+		"total absorbance reaches %.3g at ex %g / em %g nm (limit %s), %d cells are above the limit; dilute the scanned liquid at least %.2g-fold and measure again",
+		o.total, o.ex, o.em, num(limit), len(o.cells), math.Ceil(10*o.total/limit)/10)))
+}
+
+// params describes the geometry in a note.
+func (g Geometry) params(largest, limit float64) []eem.Param {
+	form := g.Form
+	if form == "" {
+		form = RightAngle
+	}
+	ex, em := g.stretch(g.Ex), g.stretch(g.Em)
+	p := []eem.Param{
+		{Name: "form", Value: form, Source: "settings: correct.inner_filter"},
+		{Name: "viewed along excitation", Value: fmt.Sprintf("%g–%g", ex[0], ex[1]), Unit: "cm", Source: "settings"},
+	}
+	if form == RightAngle {
+		p = append(p, eem.Param{Name: "viewed along emission", Value: fmt.Sprintf("%g–%g", em[0], em[1]), Unit: "cm", Source: "settings"})
+	}
+	return append(p,
+		eem.Param{Name: "cell path", Value: num(g.path()), Unit: "cm", Source: "settings"},
+		eem.Param{Name: "absorbance limit", Value: num(limit), Source: "settings: correct.absorbance_limit"},
+		eem.Param{Name: "largest factor", Value: num(largest), Source: "absorbance"})
+}
