@@ -3,7 +3,7 @@
 //	N passed, N failed, N skipped
 //
 // for all files together. With -failures it prints the output of what failed
-// first. It fails when a test or package failed, and when no test ran.
+// first, and says that the counts are of one run only. It fails when a test or package failed, and when no test ran.
 package main
 
 import (
@@ -48,7 +48,11 @@ func main() {
 		}
 		sum.pass, sum.fail, sum.skip = sum.pass+t.pass, sum.fail+t.fail, sum.skip+t.skip
 	}
-	fmt.Printf("%d passed, %d failed, %d skipped\n", sum.pass, sum.fail, sum.skip)
+	end := ""
+	if *failures {
+		end = " in this run"
+	}
+	fmt.Printf("%d passed, %d failed, %d skipped%s\n", sum.pass, sum.fail, sum.skip, end)
 	if sum.fail > 0 || sum.pass == 0 {
 		os.Exit(1)
 	}
