@@ -1,0 +1,265 @@
+package report
+
+import (
+	"fmt"
+	"slices"
+)
+
+// Column is one column of a results table.
+type Column struct {
+	Name string
+	Unit string // empty: none, or given in a column `unit`; "intensity": that of the survey
+	What string
+}
+
+// File is one results table.
+type File struct {
+	Name    string
+	What    string
+	Columns []Column
+}
+
+// ownSuffix is what a column of ours gets where the run sheet has one of its name.
+const ownSuffix = "_found"
+
+// FindFile returns the description of a results table.
+func FindFile(name string) (File, bool) {
+	i := slices.IndexFunc(Schema, func(f File) bool { return f.Name == name })
+	if i < 0 {
+		return File{}, false
+	}
+	return Schema[i], true
+}
+
+// New returns an empty table of the schema. It panics on a name that is not in it.
+func New(name string) *Table {
+	f, ok := FindFile(name)
+	if !ok {
+		panic(fmt.Sprintf("report: no results table %q", name))
+	}
+	t := &Table{Name: name}
+	for _, c := range f.Columns {
+		t.Columns = append(t.Columns, c.Name)
+	}
+	return t
+}
+
+// NewSamples returns the empty samples.csv of a run sheet: its columns first, in
+// its order, then ours. Where the sheet has a column of one of our names, the
+// sheet's is kept and ours gets the suffix "_found".
+func NewSamples(sheet []string) *Table {
+	t := New("samples.csv")
+	own := t.Columns
+	t.Columns = slices.Clone(sheet)
+	for _, name := range own {
+		for slices.Contains(t.Columns, name) {
+			name += ownSuffix
+		}
+		t.Columns = append(t.Columns, name)
+	}
+	return t
+}
+
+// Own returns the place of one of our columns of samples.csv, whether or not the
+// run sheet brought one of the same name; -1 where there is none.
+func (t *Table) Own(name string) int {
+	at := -1
+	for i := t.Col(name); i >= 0; i = t.Col(name) {
+		at = i
+		name += ownSuffix
+	}
+	return at
+}
+
+// Schema lists the results tables with their columns in the order they were
+// released; new columns are appended. samples.csv begins with the columns of the
+// run sheet, which are not listed here.
+var Schema = []File{
+	{"contributions.csv", "how much of each component each bottle holds; rejected bottles too", []Column{
+		{"id", "", "the bottle"},
+		{"component", "", "name of the component; for method unexplained what no component accounts for"},
+		{"method", "", "references, parafac, model (a fixed model applied) or unexplained"},
+		{"value", "", "contribution in the bottle, never rounded or censored; for parafac and model the fluorescence maximum Fmax"},
+		{"unit", "", "of value and of every uncertainty and limit in the row"},
+		{"standard_uncertainty", "", "combined standard uncertainty (k = 1)"},
+		{"lower95", "", "lower end of the 95 % interval, 0 or more"},
+		{"upper95", "", "upper end of the 95 % interval"},
+		{"detection_limit", "", "smallest contribution that is found with 95 % probability"},
+		{"qualifier", "", "U not detected; J unreliable or above the highest standard; R not usable; empty otherwise"},
+		{"critical_value", "", "a value above it is told from nothing with 5 % risk of error"},
+		{"quantification_limit", "", "smallest contribution with a relative standard uncertainty of 10 %"},
+		{"detected", "", "true where value is above critical_value"},
+		{"reported", "", "the result as it goes into a report: rounded, or \"< detection limit\""},
+		{"reasons", "", "why there is a qualifier, in words"},
+		{"model", "", "which references or model the value rests on"},
+	}},
+	{"samples.csv", "one row a bottle: the run sheet, then how well its EEM was explained and what the water itself shows", []Column{
+		{"cells_used", "cells", "cells of the EEM that took part"},
+		{"fit_method", "", "the method that the columns up to condition_number speak of"},
+		{"explained_percent", "%", "share of the bottle's sum of squares that the components explain"},
+		{"residual_rms", "intensity", "root mean square of what the components leave"},
+		{"noise_rms", "intensity", "root mean square that noise alone would leave"},
+		{"structure", "z", "Moran's I of the residual map in standard deviations: how alike neighbouring residuals are"},
+		{"hottest_ex_nm", "nm", "excitation of the largest residual"},
+		{"hottest_em_nm", "nm", "emission of the largest residual"},
+		{"hottest_value", "intensity", "the largest residual"},
+		{"condition_number", "", "of the unit-norm components on this bottle's cells: how badly errors can grow"},
+		{"largest_inner_filter_factor", "", "largest factor of the inner-filter correction in the cells used"},
+		{"suva254", "L/(mg m)", "specific UV absorbance: decadic absorbance at 254 nm per metre over dissolved organic carbon"},
+		{"s275_295", "1/nm", "spectral slope of the absorption coefficient, 275–295 nm"},
+		{"s350_400", "1/nm", "spectral slope of the absorption coefficient, 350–400 nm"},
+		{"slope_ratio", "", "s275_295 / s350_400"},
+		{"e2_e3", "", "absorbance at 250 nm over that at 365 nm"},
+		{"fi", "", "fluorescence index: emission 470 over 520 nm at excitation 370 nm"},
+		{"bix", "", "biological index: emission 380 over 430 nm at excitation 310 nm"},
+		{"hix", "", "humification index, 0 to 1: area 435–480 over area 300–345 plus 435–480 nm at excitation 254 nm"},
+		{"hix_ratio", "", "humification index, ratio form: area 435–480 over area 300–345 nm at excitation 254 nm"},
+		{"freshness", "", "emission 380 nm over the maximum of 420–435 nm at excitation 310 nm"},
+		{"peak_b", "intensity", "fluorescence at ex 275 / em 310 nm, tyrosine-like"},
+		{"peak_t", "intensity", "fluorescence at ex 275 / em 340 nm, tryptophan-like"},
+		{"peak_a", "intensity", "maximum at ex 260 / em 380–460 nm, humic-like"},
+		{"peak_m", "intensity", "maximum at ex 312 / em 380–420 nm, humic-like, marine or microbial"},
+		{"peak_c", "intensity", "maximum at ex 350 / em 420–480 nm, humic-like"},
+		{"notes", "", "number of notes in flags.csv"},
+		{"doubts", "", "number of doubts in flags.csv"},
+		{"rejects", "", "number of rejects in flags.csv"},
+	}},
+	{"flags.csv", "what the checks found", []Column{
+		{"id", "", "the bottle; empty where the finding concerns a batch or the survey"},
+		{"batch", "", "the batch; empty where the finding concerns the survey"},
+		{"component", "", "the component it concerns; empty for all"},
+		{"method", "", "the method it concerns; empty for all"},
+		{"test", "", "code of the check; `tests --list` explains it"},
+		{"severity", "", "note, doubt or reject"},
+		{"value", "", "what was found"},
+		{"limit", "", "what it was held against"},
+		{"message", "", "in words, with the remedy"},
+		{"file", "", "the file it was found in"},
+		{"line", "", "and the line"},
+	}},
+	{"components.csv", "spectra of every candidate model and of the references; also the layout of a reference file", []Column{
+		{"component", "", "name"},
+		{"mode", "", "excitation or emission"},
+		{"wavelength_nm", "nm", "wavelength"},
+		{"loading", "", "relative intensity, maximum 1"},
+		{"standard_uncertainty", "", "standard uncertainty of loading"},
+		{"determined", "", "false where the data leave the loading open; it is drawn as a gap"},
+		{"method", "", "references, parafac or model"},
+		{"components", "", "how many components the model has that the spectrum belongs to"},
+		{"chosen", "", "true for the model that the results rest on"},
+	}},
+	{"models.csv", "one row a candidate number of components", []Column{
+		{"components", "", "number of components"},
+		{"samples", "", "bottles fitted"},
+		{"cells", "", "cells fitted"},
+		{"loss", "", "weighted sum of squares left"},
+		{"explained_percent", "%", "share of the sum of squares explained"},
+		{"core_consistency", "%", "how trilinear the model is; says nothing for one or two components"},
+		{"split_half_excitation", "", "lowest congruence of the halves' excitation spectra"},
+		{"split_half_emission", "", "lowest congruence of the halves' emission spectra"},
+		{"starts", "", "starts made"},
+		{"starts_agreeing", "", "starts that reached the best fit"},
+		{"iterations", "", "iterations of the best start"},
+		{"converged", "", "whether the best start met its tolerance"},
+		{"newton_decrement", "standard errors", "how far the solution may still be from the optimum"},
+		{"structure", "", "share of bottles whose residual map has structure"},
+		{"triple_cosine", "", "largest product of the three modes' cosines between two components; above 0.7 one is shared by two"},
+		{"revived", "", "components that died and were started again"},
+		{"plausible", "", "whether the spectra look like fluorescence spectra"},
+		{"verdict", "", "pass, doubt or fail"},
+		{"chosen", "", "true for the model that the results rest on"},
+		{"reason", "", "why it passed or failed, in words"},
+		{"seed", "", "seed of the starts"},
+	}},
+	{"splits.csv", "one row a split and component", []Column{
+		{"components", "", "number of components of the model"},
+		{"split", "", "name of the split: which parts were held against each other"},
+		{"component", "", "component of the whole model"},
+		{"congruence_excitation", "", "Tucker congruence of the halves' excitation spectra"},
+		{"congruence_emission", "", "Tucker congruence of the halves' emission spectra"},
+		{"limit", "", "what both are held against"},
+		{"passed", "", "true where both are at or above the limit"},
+	}},
+	{"split_spectra.csv", "spectra of the halves, for the picture that lays them over one another", []Column{
+		{"components", "", "number of components of the model"},
+		{"split", "", "name of the split"},
+		{"half", "", "which half"},
+		{"component", "", "component of the whole model that it matches"},
+		{"mode", "", "excitation or emission"},
+		{"wavelength_nm", "nm", "wavelength"},
+		{"loading", "", "relative intensity, maximum 1; empty where undetermined"},
+	}},
+	{"batches.csv", "verdict per batch", []Column{
+		{"batch", "", "name"},
+		{"setup", "", "the setup it was measured with"},
+		{"measured", "", "day"},
+		{"samples", "", "bottles, field blanks included"},
+		{"blanks", "", "ids of the blanks used"},
+		{"standards", "", "number of standards"},
+		{"controls", "", "number of controls and spikes"},
+		{"unit", "", "intensity unit of the batch"},
+		{"scale", "counts", "counts that make one intensity unit"},
+		{"scale_relative_uncertainty", "", "relative standard uncertainty of scale"},
+		{"raman_peak_nm", "nm", "where water's Raman line was found"},
+		{"raman_signal_to_noise", "", "height of that line over the noise"},
+		{"blank_rms", "intensity", "spread of the blanks"},
+		{"notes", "", "number of notes"},
+		{"doubts", "", "number of doubts"},
+		{"rejects", "", "number of rejects"},
+		{"verdict", "", "pass, doubt or reject"},
+		{"reason", "", "why, in words"},
+	}},
+	{"calibration.csv", "given, found and recovery per standard, control and spike", []Column{
+		{"id", "", "the standard, control or spike"},
+		{"batch", "", "its batch"},
+		{"kind", "", "standard, control or spike"},
+		{"component", "", "the component"},
+		{"given", "", "concentration given in the run sheet"},
+		{"found", "", "concentration found"},
+		{"unit", "", "of given and found"},
+		{"standard_uncertainty", "", "of found"},
+		{"recovery_percent", "%", "found over given"},
+		{"low_limit_percent", "%", "lowest recovery accepted"},
+		{"high_limit_percent", "%", "highest recovery accepted"},
+		{"used", "", "true where it took part in the reference"},
+		{"verdict", "", "pass, doubt or reject"},
+		{"reason", "", "why, in words"},
+	}},
+	{"charts.csv", "quality variables with their limits", []Column{
+		{"variable", "", "what is watched"},
+		{"batch", "", "the batch"},
+		{"id", "", "the bottle, where it is one bottle's"},
+		{"measured", "", "day or time"},
+		{"value", "", "found"},
+		{"unit", "", "of value and limits"},
+		{"centre", "", "the value expected"},
+		{"warn_low", "", "warning limit"},
+		{"warn_high", "", "warning limit"},
+		{"act_low", "", "action limit"},
+		{"act_high", "", "action limit"},
+		{"verdict", "", "pass, doubt or reject"},
+		{"rule", "", "the rule that was broken"},
+	}},
+	{"budget.csv", "uncertainty by cause per value", []Column{
+		{"id", "", "the bottle"},
+		{"component", "", "the component"},
+		{"method", "", "the method"},
+		{"cause", "", "source of error"},
+		{"scope", "", "who shares the error: cell, bottle, standard, batch or survey"},
+		{"standard_uncertainty", "", "its part of the standard uncertainty"},
+		{"unit", "", "of standard_uncertainty"},
+		{"share_percent", "%", "share of the combined variance"},
+		{"degrees_of_freedom", "", "empty where it is not from few repetitions"},
+		{"source", "", "where the figure comes from"},
+	}},
+	{"steps.csv", "every step of the work with its parameters", []Column{
+		{"order", "", "place in the order of work, from 1"},
+		{"setup", "", "the setup it holds for; empty for all"},
+		{"step", "", "the step"},
+		{"parameter", "", "name of the parameter; empty for the step itself"},
+		{"value", "", "value in force"},
+		{"unit", "", "of value"},
+		{"source", "", "setting, file or publication it comes from"},
+		{"note", "", "what was done, in words"},
+	}},
+}
