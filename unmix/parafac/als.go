@@ -1,0 +1,369 @@
+package parafac
+
+import "math"
+
+// data is what an iteration touches instead of the samples: rows of length P.
+// The first r rows are a basis R shared by the samples in mixed, whose rows are
+// about U·R; the rows after it are the samples in raw, as they are. Without
+// compression r is 0 and every sample is raw. x2 is the sum of squares of the
+// samples.
+type data struct {
+	*problem
+	r     int
+	u     []float64 // len(mixed) × r
+	mixed []int
+	raw   []int
+	rows  []float64 // (r + len(raw)) × P
+	x2    float64
+
+	gapCell []int32   // cells that some raw sample lacks
+	gapOf   [][]int32 // which rows lack it
+}
+
+// whole is the problem without compression.
+func (p *problem) whole() *data {
+	d := &data{problem: p, rows: p.x, x2: p.x2, raw: make([]int, p.i)}
+	for i := range d.raw {
+		d.raw[i] = i
+	}
+	d.listGaps()
+	return d
+}
+
+func (d *data) listGaps() {
+	at := make(map[int32]int)
+	for _, i := range d.raw {
+		for _, q := range d.gaps[i] {
+			n, ok := at[q]
+			if !ok {
+				n = len(d.gapCell)
+				at[q] = n
+				d.gapCell, d.gapOf = append(d.gapCell, q), append(d.gapOf, nil)
+			}
+			d.gapOf[n] = append(d.gapOf[n], int32(i))
+		}
+	}
+}
+
+// als holds one start: factors and the work space of its updates.
+type als struct {
+	*data
+	f           int
+	free        bool // no sign constraint
+	eps         float64
+	a, b, c     []float64
+	fixB, fixC  []bool    // entries that updates leave alone; nil: none
+	kt          []float64 // F × P: model rows, weighted
+	z           []float64 // F × P: A'X
+	m           []float64 // I × F: X·K
+	rk, coef    []float64 // (r+raw) × F
+	ga, gk, gap []float64
+	h, q        []float64 // one row's normal equations
+	lam         []float64
+	loss        float64 // penalised, after the last update of a
+	iter        int
+	revived     int
+}
+
+func newALS(d *data, f int, s *Settings) *als {
+	n := d.r + len(d.raw)
+	return &als{
+		data: d, f: f, free: s.Unconstrained, eps: energyRidge,
+		a: make([]float64, d.i*f), b: make([]float64, d.j*f), c: make([]float64, d.k*f),
+		kt: make([]float64, f*d.p), z: make([]float64, f*d.p), m: make([]float64, d.i*f),
+		rk: make([]float64, n*f), coef: make([]float64, n*f),
+		ga: make([]float64, f*f), gk: make([]float64, f*f), gap: make([]float64, len(d.gapCell)*f*f),
+		h: make([]float64, f*f), q: make([]float64, f), lam: make([]float64, f),
+	}
+}
+
+// modelRows sets kt to the weighted Khatri–Rao rows of the cells and gk to their
+// Gram matrix.
+func (s *als) modelRows() {
+	col := make([]float64, s.k)
+	for f := range s.f {
+		for k := range col {
+			col[k] = s.c[k*s.f+f]
+		}
+		kt := s.kt[f*s.p : (f+1)*s.p]
+		for j := range s.j {
+			b := s.b[j*s.f+f]
+			for q := s.byEx[j]; q < s.byEx[j+1]; q++ {
+				kt[q] = s.w[q] * b * col[s.ck[q]]
+			}
+		}
+	}
+	for f := range s.f {
+		for g := f; g < s.f; g++ {
+			s.gk[f*s.f+g] = dot(s.kt[f*s.p:(f+1)*s.p], s.kt[g*s.p:(g+1)*s.p])
+		}
+	}
+	mirror(s.gk, s.f)
+}
+
+// updateA solves for the scores by sweeps from the present ones and sets loss.
+func (s *als) updateA(sweeps int) {
+	s.modelRows()
+	s.products()
+	f := s.f
+	s.ridge(s.b, s.j, s.c, s.k)
+	s.loss = s.x2
+	gi := make([]float64, f*f)
+	copy(gi, s.gk)
+	for _, i := range s.mixed {
+		s.updateScores(i, s.gk, sweeps)
+	}
+	for _, i := range s.raw {
+		g := s.gk
+		if len(s.gaps[i]) > 0 {
+			s.gramTo(gi, i)
+			g = gi
+		}
+		s.updateScores(i, g, sweeps)
+	}
+}
+
+// updateScores updates row i of a, whose Gram matrix is g, and adds its part of
+// the loss.
+func (s *als) updateScores(i int, g []float64, sweeps int) {
+	f := s.f
+	a, m := s.a[i*f:(i+1)*f], s.m[i*f:(i+1)*f]
+	s.solveRow(a, g, m, nil, 0, sweeps)
+	for x := range f {
+		v := -2 * m[x]
+		for y := range f {
+			v += g[x*f+y] * a[y]
+		}
+		s.loss += a[x] * (v + s.lam[x]*a[x])
+	}
+}
+
+// gramTo writes the Gram matrix of the cells that sample i has.
+func (s *als) gramTo(g []float64, i int) {
+	copy(g, s.gk)
+	f := s.f
+	for _, q := range s.gaps[i] {
+		for x := range f {
+			v := s.kt[x*s.p+int(q)]
+			for y := x; y < f; y++ {
+				g[x*f+y] -= v * s.kt[y*s.p+int(q)]
+			}
+		}
+	}
+	mirror(g, f)
+}
+
+// products sets m = X·K.
+func (s *als) products() {
+	f := s.f
+	rowsTimesTo(s.rk, s.rows, s.kt, s.r+len(s.raw), s.p, f)
+	for n, i := range s.mixed {
+		m := s.m[i*f : (i+1)*f]
+		clear(m)
+		for r, u := range s.u[n*s.r : (n+1)*s.r] {
+			axpy(u, s.rk[r*f:(r+1)*f], m)
+		}
+	}
+	for n, i := range s.raw {
+		copy(s.m[i*f:(i+1)*f], s.rk[(s.r+n)*f:])
+	}
+}
+
+// ridge sets lam to ε·‖x_f‖²‖y_f‖², the ridge on the columns of the third mode.
+func (s *als) ridge(x []float64, nx int, y []float64, ny int) {
+	for f := range s.f {
+		s.lam[f] = s.eps * columnSquare(x, nx, s.f, f) * columnSquare(y, ny, s.f, f)
+	}
+}
+
+func columnSquare(x []float64, n, f, col int) float64 {
+	var v float64
+	for i := range n {
+		v += x[i*f+col] * x[i*f+col]
+	}
+	return v
+}
+
+// project prepares the updates of b and c: z = A'X, the Gram matrix of a, and
+// for each cell with gaps the part of it that is not there.
+func (s *als) project() {
+	f := s.f
+	clear(s.coef)
+	for n, i := range s.mixed {
+		for r, u := range s.u[n*s.r : (n+1)*s.r] {
+			axpy(u, s.a[i*f:(i+1)*f], s.coef[r*f:(r+1)*f])
+		}
+	}
+	for n, i := range s.raw {
+		copy(s.coef[(s.r+n)*f:(s.r+n+1)*f], s.a[i*f:])
+	}
+	clear(s.z)
+	addTransposed(s.z, s.coef, s.rows, s.r+len(s.raw), s.p, f)
+	gramTo(s.ga, s.a, s.i, f)
+	clear(s.gap)
+	for n := range s.gapCell {
+		g := s.gap[n*f*f : (n+1)*f*f]
+		for _, i := range s.gapOf[n] {
+			a := s.a[int(i)*f : (int(i)+1)*f]
+			for x, v := range a {
+				axpy(v, a, g[x*f:(x+1)*f])
+			}
+		}
+	}
+}
+
+// updateB and updateC solve for one row of loadings after the other.
+func (s *als) updateB(sweeps int) {
+	s.ridge(s.a, s.i, s.c, s.k)
+	hs, qs := s.normalB()
+	for j := range s.j {
+		s.solveRow(s.b[j*s.f:(j+1)*s.f], hs[j*s.f*s.f:], qs[j*s.f:], s.fixB, j*s.f, sweeps)
+	}
+}
+
+func (s *als) updateC(sweeps int) {
+	s.ridge(s.a, s.i, s.b, s.j)
+	hs, qs := s.normalC()
+	for k := range s.k {
+		s.solveRow(s.c[k*s.f:(k+1)*s.f], hs[k*s.f*s.f:], qs[k*s.f:], s.fixC, k*s.f, sweeps)
+	}
+}
+
+// normalB returns the normal equations, without ridge, of all rows of b:
+// matrices J × F × F and right sides J × F.
+func (s *als) normalB() (hs, qs []float64) {
+	return s.normal(s.j, s.c, func(q int) (int, int) { return int(s.cj[q]), int(s.ck[q]) })
+}
+
+// normalC does the same for c.
+func (s *als) normalC() (hs, qs []float64) {
+	return s.normal(s.k, s.b, func(q int) (int, int) { return int(s.ck[q]), int(s.cj[q]) })
+}
+
+// normal sums, for each row of one mode of length n, over the cells of that row:
+// H = (A'A) ∘ Σ w² o o' less the gaps, and Σ w z o, where o is the row of the
+// other mode.
+func (s *als) normal(n int, other []float64, at func(q int) (row, o int)) (hs, qs []float64) {
+	f := s.f
+	hs, qs = make([]float64, n*f*f), make([]float64, n*f)
+	for q := range s.p {
+		r, o := at(q)
+		v, h, rhs := other[o*f:(o+1)*f], hs[r*f*f:(r+1)*f*f], qs[r*f:(r+1)*f]
+		w := s.w[q]
+		for x, vx := range v {
+			rhs[x] += w * vx * s.z[x*s.p+q]
+			t := w * w * vx
+			for y := x; y < f; y++ {
+				h[x*f+y] += t * v[y]
+			}
+		}
+	}
+	for r := range n {
+		h := hs[r*f*f : (r+1)*f*f]
+		mirror(h, f)
+		for x, g := range s.ga {
+			h[x] *= g
+		}
+	}
+	for m, q := range s.gapCell {
+		r, o := at(int(q))
+		v, w := other[o*f:(o+1)*f], s.w[q]
+		h, g := hs[r*f*f:(r+1)*f*f], s.gap[m*f*f:(m+1)*f*f]
+		for x, vx := range v {
+			for y, vy := range v {
+				h[x*f+y] -= w * w * vx * vy * g[x*f+y]
+			}
+		}
+	}
+	return hs, qs
+}
+
+// solveRow lowers ½ v'(h+Λ)v − q'v by sweeps over the entries of v that are
+// not fixed, each set to its best non-negative value; a sign-free row is solved
+// exactly.
+func (s *als) solveRow(v, h, q []float64, fixed []bool, at, sweeps int) {
+	if s.free && s.solveFree(v, h, q, fixed, at) {
+		return
+	}
+	f := s.f
+	for range sweeps {
+		moved := false
+		for x := range f {
+			d := h[x*f+x] + s.lam[x]
+			if d <= 0 || (fixed != nil && fixed[at+x]) {
+				continue
+			}
+			g := q[x] - s.lam[x]*v[x]
+			for y, hv := range h[x*f : (x+1)*f] {
+				g -= hv * v[y]
+			}
+			to := v[x] + g/d
+			if to < 0 && !s.free {
+				to = 0
+			}
+			if math.Abs(to-v[x]) > 1e-15*math.Abs(to) {
+				moved = true
+			}
+			v[x] = to
+		}
+		if !moved {
+			return
+		}
+	}
+}
+
+// solveFree solves (h+Λ)v = q over the entries that are not fixed.
+func (s *als) solveFree(v, h, q []float64, fixed []bool, at int) bool {
+	f := s.f
+	for x := range f {
+		s.q[x] = q[x]
+		if fixed != nil && fixed[at+x] {
+			s.q[x] = v[x]
+		}
+		for y := range f {
+			e := h[x*f+y]
+			fx, fy := fixed != nil && fixed[at+x], fixed != nil && fixed[at+y]
+			switch {
+			case x == y && fx:
+				e = 1
+			case x == y:
+				e += s.lam[x]
+			case fx || fy:
+				if fy && !fx {
+					s.q[x] -= e * v[y]
+				}
+				e = 0
+			}
+			s.h[x*f+y] = e
+		}
+	}
+	if !cholesky(s.h, f, 1e-14) {
+		return false
+	}
+	solveCholesky(s.h, s.q, f)
+	copy(v, s.q)
+	return true
+}
+
+// unit brings the columns of b and c to unit norm and their scale into a.
+func (s *als) unit() {
+	for f := range s.f {
+		t := 1.0
+		for _, m := range []struct {
+			v []float64
+			n int
+		}{{s.b, s.j}, {s.c, s.k}} {
+			n := math.Sqrt(columnSquare(m.v, m.n, s.f, f))
+			if n == 0 {
+				continue
+			}
+			t *= n
+			for i := range m.n {
+				m.v[i*s.f+f] /= n
+			}
+		}
+		for i := range s.i {
+			s.a[i*s.f+f] *= t
+		}
+	}
+}
