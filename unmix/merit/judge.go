@@ -1,0 +1,171 @@
+package merit
+
+import (
+	"fmt"
+	"math"
+	"strconv"
+	"strings"
+
+	"tarnlight/eem"
+	"tarnlight/unmix"
+)
+
+// Bottle is what the judgement of a bottle needs to know from before.
+type Bottle struct {
+	ID, Batch string
+	Doubts    []string // in words; any makes the contributions unreliable
+	Rejects   []string // in words; any makes them not usable
+	Row       int      // of the resolution; −1 when the bottle is not in it
+	Unlike    bool     // a bottle that need not look like the model (a blank): no test of the residual
+}
+
+// Currie's factors for known standard deviation and 5 % errors of both kinds
+// (Currie 1968, Anal. Chem. 40, 586): decision, detection, quantification.
+const (
+	kCritical = 1.6448536269514722
+	kDetect   = 2 * kCritical
+	kQuantify = 10
+)
+
+// Judged is a resolution put into words.
+type Judged struct {
+	Contributions []unmix.Contribution
+	Flags         []eem.Flag
+	Structure     []Moran // one a bottle; zero where it is not in the resolution
+}
+
+// Judge makes one contribution for every bottle and component. x returns the
+// cells of a row of the resolution's cube; limit the limit of a test.
+//
+// Critical value, detection and quantification limit are Currie's, on the
+// standard uncertainty that the scatter of the bottle's own residual gives. They
+// know nothing of blanks and references.
+func Judge(r *unmix.Resolution, bottles []Bottle, x func(row int) []float64, limit func(code string) float64, accept func(eem.Flag) eem.Flag, model string) *Judged {
+	j := &Judged{Structure: make([]Moran, len(bottles))}
+	dst := make([]float64, r.Set.Grid.Cells())
+	for i, b := range bottles {
+		doubts, rejects := b.Doubts, b.Rejects
+		if b.Row >= 0 {
+			r.ResidualTo(dst, x(b.Row), b.Row)
+			j.Structure[i] = MoranI(dst, r.Set.Grid.Ex.Len(), r.Set.Grid.Em.Len())
+			for _, f := range fitFlags(r, b, j.Structure[i], limit) {
+				f = accept(f)
+				j.Flags = append(j.Flags, f)
+				switch f.Severity {
+				case eem.Doubt:
+					doubts = append(doubts[:len(doubts):len(doubts)], f.Msg)
+				case eem.Reject:
+					rejects = append(rejects[:len(rejects):len(rejects)], f.Msg)
+				}
+			}
+		}
+		for f := range r.Set.Components {
+			c, flags := contribution(r, b, f, doubts, rejects, accept)
+			c.Model = model
+			j.Contributions = append(j.Contributions, c)
+			j.Flags = append(j.Flags, flags...)
+		}
+	}
+	return j
+}
+
+// fitFlags are the tests of one bottle's fit.
+func fitFlags(r *unmix.Resolution, b Bottle, m Moran, limit func(string) float64) []eem.Flag {
+	fit := r.Fits[b.Row]
+	var out []eem.Flag
+	add := func(code string, sev eem.Severity, v, lim float64, msg string) {
+		out = append(out, eem.Flag{ID: b.ID, Batch: b.Batch, Method: r.Set.Method, Test: code, Severity: sev, Value: v, Limit: lim, Msg: msg})
+	}
+	if !fit.Usable {
+		add("few-cells", eem.Reject, float64(fit.Cells), float64(r.Set.Len()), fit.Reason)
+		return out
+	}
+	if lim := limit("overlap"); fit.Condition > lim {
+		add("overlap", eem.Doubt, fit.Condition, lim, fmt.Sprintf("components overlap so much (condition number %.3g) that their shares are not sure; their sum is", fit.Condition))
+	}
+	if b.Unlike {
+		return out
+	}
+	structured := m.Z > limit("structure")
+	if lim := limit("unexplained"); structured && fit.Explained < 100*lim {
+		add("unexplained", eem.Doubt, fit.Explained/100, lim,
+			fmt.Sprintf("the model explains %.1f %% of the signal; the residual is largest at ex %g / em %g nm: something in this bottle is not in the model", fit.Explained, fit.HotEx, fit.HotEm))
+	} else if structured {
+		add("structure", eem.Remark, m.Z, limit("structure"), fmt.Sprintf("the residual is not noise alone; it is largest at ex %g / em %g nm", fit.HotEx, fit.HotEm))
+	}
+	return out
+}
+
+// contribution judges component f of bottle b.
+func contribution(r *unmix.Resolution, b Bottle, f int, doubts, rejects []string, accept func(eem.Flag) eem.Flag) (unmix.Contribution, []eem.Flag) {
+	comp := r.Set.Components[f]
+	nan := math.NaN()
+	c := unmix.Contribution{ID: b.ID, Component: comp.Name, Method: r.Set.Method, Unit: comp.AmountUnit,
+		Value: nan, U: nan, Lower: nan, Upper: nan, Detection: nan, Critical: nan, Quantification: nan}
+	if c.Unit == "" {
+		c.Unit = string(r.Set.Unit)
+	}
+	if b.Row >= 0 {
+		i := b.Row*r.Set.Len() + f
+		c.Value, c.U = r.Value[i], r.U[i]
+		if math.IsInf(c.U, 0) {
+			c.U = nan
+		}
+		c.Critical, c.Detection, c.Quantification = kCritical*c.U, kDetect*c.U, kQuantify*c.U
+		c.Detected = c.Value > c.Critical
+	}
+	if len(rejects) > 0 || math.IsNaN(c.Value) {
+		c.Qualifier, c.Detected, c.Reasons = unmix.NotUsable, false, rejects
+		c.Reported = "not usable"
+		return c, nil
+	}
+	var flags []eem.Flag
+	c.Reasons = append(c.Reasons, doubts...)
+	if comp.Highest > 0 && c.Value > comp.Highest*(1+1e-9) {
+		fl := accept(eem.Flag{ID: b.ID, Batch: b.Batch, Component: comp.Name, Method: r.Set.Method, Test: "above-standards", Severity: eem.Doubt,
+			Value: c.Value, Limit: comp.Highest, Msg: fmt.Sprintf("%s: %.4g %s is above the highest standard (%.4g)", comp.Name, c.Value, c.Unit, comp.Highest)})
+		flags = append(flags, fl)
+		if fl.Severity == eem.Doubt {
+			c.Reasons = append(c.Reasons, "above the highest standard")
+		}
+	}
+	switch {
+	case !c.Detected:
+		c.Qualifier = unmix.NotDetected
+		c.Reported = "< " + digits(c.Detection, 2)
+		if math.IsNaN(c.Detection) {
+			c.Reported = "not detected"
+		}
+	case len(c.Reasons) > 0:
+		c.Qualifier = unmix.Unreliable
+		c.Reported = Rounded(c.Value, c.U)
+	default:
+		c.Reported = Rounded(c.Value, c.U)
+	}
+	return c, flags
+}
+
+// Rounded gives value to the decimal of the second digit of u (GUM 7.2.6), plain
+// where that is readable, with an exponent elsewhere.
+func Rounded(value, u float64) string {
+	if !(u > 0) || math.IsInf(u, 0) || value == 0 {
+		return digits(value, 4)
+	}
+	n := int(math.Floor(math.Log10(math.Abs(value)))) - int(math.Floor(math.Log10(u))) + 2
+	return digits(value, min(max(n, 1), 8))
+}
+
+// digits gives v to n significant digits.
+func digits(v float64, n int) string {
+	if v == 0 {
+		return "0"
+	}
+	e := int(math.Floor(math.Log10(math.Abs(v))))
+	if e < -4 || e > 6 {
+		return strings.Replace(strconv.FormatFloat(v, 'e', n-1, 64), "e-0", "e-", 1)
+	}
+	if r, err := strconv.ParseFloat(strconv.FormatFloat(v, 'e', n-1, 64), 64); err == nil {
+		v = r
+	}
+	return strconv.FormatFloat(v, 'f', max(0, n-1-e), 64)
+}
