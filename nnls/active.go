@@ -17,11 +17,11 @@ type active struct {
 	t          []float64 // k×n by columns, rotated
 	c          []float64 // k, rotated
 	norm       []float64 // n, of the columns
-	normC      float64
-	order      []int  // the free variables, in the order of the triangle
-	free       []bool // n
-	banned     []bool // n: cannot become free before something else changes
-	x          []float64
+	normB      float64   // of the right-hand side, of which c may be a part
+	order      []int     // the free variables, in the order of the triangle
+	free       []bool    // n
+	banned     []bool    // n: cannot become free before something else changes
+	x          []float64 // n, feasible
 	s          []float64 // least squares on the free variables, in their order
 	iterations int
 }
@@ -30,23 +30,26 @@ func newActive(k, n int) *active {
 	return &active{
 		k: k, n: n,
 		t: make([]float64, k*n), c: make([]float64, k),
-		norm: make([]float64, n), order: make([]int, 0, min(k, n)),
+		norm: make([]float64, n), order: make([]int, 0, k),
 		free: make([]bool, n), banned: make([]bool, n),
-		x: make([]float64, n), s: make([]float64, min(k, n)),
+		x: make([]float64, n), s: make([]float64, k),
 	}
+}
+
+// load starts a new problem with all variables zero.
+func (a *active) load(t *triangle, c []float64, normB float64) {
+	copy(a.t, t.t)
+	copy(a.c, c)
+	copy(a.norm, t.norm)
+	a.normB = normB
+	a.order = a.order[:0]
+	a.iterations = 0
+	clear(a.free)
+	clear(a.banned)
+	clear(a.x)
 }
 
 func (a *active) column(j int) []float64 { return a.t[j*a.k : (j+1)*a.k] }
-
-// start is called when t and c are in place.
-func (a *active) start() {
-	for j := range a.norm {
-		a.norm[j] = norm2(a.column(j))
-	}
-	a.normC = norm2(a.c)
-}
-
-func (a *active) passive() []bool { return append([]bool(nil), a.free...) }
 
 // warm frees the marked variables and takes back those that least squares makes
 // negative, until x is feasible.
@@ -56,13 +59,35 @@ func (a *active) warm(guess []bool) {
 			a.add(j)
 		}
 	}
+	a.settle()
+}
+
+// warmAll is warm with the columns that the triangle was made of, which costs
+// no reflection.
+func (a *active) warmAll(t *triangle) {
+	a.order = append(a.order, t.order...)
+	for _, j := range a.order {
+		a.free[j] = true
+	}
+	a.settle()
+}
+
+func (a *active) settle() {
 	for {
 		a.solve()
-		if !a.dropNonPositive(a.s) {
-			break
+		dropped := false
+		for q := len(a.order) - 1; q >= 0; q-- {
+			if !(a.s[q] > 0) {
+				a.remove(q)
+				a.iterations++
+				dropped = true
+			}
+		}
+		if !dropped {
+			a.take()
+			return
 		}
 	}
-	a.take()
 }
 
 // run improves the feasible x until it is optimal or limit changes were made.
@@ -84,13 +109,13 @@ func (a *active) run(limit int) Status {
 			continue
 		}
 		clear(a.banned)
-		a.retreat(limit)
+		a.retreat()
 	}
 }
 
 // retreat moves x towards the least-squares answer s until s is feasible; a
 // variable that reaches zero on the way leaves.
-func (a *active) retreat(limit int) {
+func (a *active) retreat() {
 	for {
 		alpha, out := 1.0, -1
 		for q, j := range a.order {
@@ -127,18 +152,6 @@ func (a *active) take() {
 	}
 }
 
-func (a *active) dropNonPositive(s []float64) bool {
-	dropped := false
-	for q := len(a.order) - 1; q >= 0; q-- {
-		if !(s[q] > 0) {
-			a.remove(q)
-			a.iterations++
-			dropped = true
-		}
-	}
-	return dropped
-}
-
 // entering returns the variable whose dual, relative to the norm of its column,
 // is largest above rounding error, or −1.
 func (a *active) entering() int {
@@ -160,7 +173,7 @@ func (a *active) entering() int {
 		}
 		// The rounding error of w: of the column's tail times c, of the
 		// column times c's tail.
-		if w <= 8*eps*(tail*a.normC+a.norm[j]*rest) {
+		if w <= 8*eps*(tail*a.normB+a.norm[j]*rest) {
 			continue
 		}
 		if w /= a.norm[j]; w > best {

@@ -44,7 +44,9 @@ func Covariance(a mat.Matrix, b, x []float64, s *Settings) (*Spread, error) {
 	if err != nil {
 		return nil, err
 	}
-	act, _ := p.reduce()
+	t, c := p.reduce()
+	act := newActive(t.k, n)
+	act.load(&t, c, norm2(p.b))
 	act.restore(x)
 	return act.spread(p), nil
 }

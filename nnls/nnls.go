@@ -103,12 +103,14 @@ func SolveTo(dst []float64, a mat.Matrix, b []float64, s *Settings) (Result, err
 	if err != nil {
 		return Result{Status: Unusable}, err
 	}
-	act, rank := p.reduce()
-	res := Result{Rank: rank, Rows: p.m}
+	t, c := p.reduce()
+	act := newActive(t.k, n)
+	act.load(&t, c, norm2(p.b))
 	act.warm(s.Warm)
+	res := Result{Rank: t.k, Rows: p.m}
 	res.Status = act.run(s.limit(n))
 	res.Iterations = act.iterations
-	res.Passive = act.passive()
+	res.Passive = act.free
 	y := act.x
 	p.unscaleTo(dst, y)
 	for j, v := range dst {

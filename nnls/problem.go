@@ -13,13 +13,15 @@ import (
 // eps is the unit roundoff of float64, 2⁻⁵³.
 const eps = 1.0 / (1 << 53)
 
-// problem is W^½(a | b) without the rows of weight 0. Every column and b are
+// problem is W^½·(a | b) without the rows of weight 0. Every column and b are
 // scaled by a power of two to a norm in [½, 1): exact, and proof against
 // overflow and underflow of squares. A zero column has exponent 0.
 type problem struct {
 	m, n int
 	a    *mat.Dense // m×n
 	b    []float64  // m
+	rows []int      // which rows of the caller's matrix are used
+	half []float64  // √w·2^−ew of them; nil where all weights are 1
 	ea   []int      // a's column j is W^½·a_j·2^−ea[j]
 	eb   int        // b is W^½·b·2^−eb
 	ew   int        // weights were scaled by 2^−2ew
@@ -34,7 +36,10 @@ func newProblem(a mat.Matrix, b, weights []float64) (*problem, error) {
 		return nil, fmt.Errorf("nnls: no rows: a has %d, all of weight 0", len(b))
 	}
 	_, n := a.Dims()
-	p := &problem{m: len(rows), n: n, ea: make([]int, n), ew: ew, b: make([]float64, len(rows))}
+	p := &problem{
+		m: len(rows), n: n, rows: rows, half: half,
+		b: make([]float64, len(rows)), ea: make([]int, n), ew: ew,
+	}
 	for k, i := range rows {
 		if p.b[k] = b[i]; !finite(b[i]) {
 			return nil, fmt.Errorf("nnls: b[%d] is %v; give the row weight 0 to leave it out", i, b[i])
@@ -119,25 +124,14 @@ func scale(v, half []float64) int {
 	return e + f
 }
 
-// reduce returns the active-set problem on R of the pivoted QR factorisation of
-// a, with min(m, n) rows, and the numerical rank of a: the number of
-// |r_ii| ≥ max(m, n)·2ε·|r_11|.
-func (p *problem) reduce() (*active, int) {
-	k := min(p.m, p.n)
+// reduce returns the triangle of the pivoted QR factorisation of a, cut at the
+// numerical rank, and the part of Qᵀ·b that goes with it.
+func (p *problem) reduce() (triangle, []float64) {
 	qr, pivot, tau := pivotedQR(p.a)
-	c := blas64.General{Rows: p.m, Cols: 1, Stride: 1, Data: append([]float64(nil), p.b...)}
+	t := cutTriangle(qr, pivot)
+	c := append([]float64(nil), p.b...)
 	applyQT(c, qr, tau)
-	rank := rankOf(qr, p.m, p.n)
-	act := newActive(k, p.n)
-	for q, j := range pivot {
-		col := act.column(j)
-		for i := 0; i <= min(q, k-1); i++ {
-			col[i] = qr.Data[i*qr.Stride+q]
-		}
-	}
-	copy(act.c, c.Data[:k])
-	act.start()
-	return act, rank
+	return t, c[:t.k]
 }
 
 func pivotedQR(a *mat.Dense) (qr blas64.General, pivot []int, tau []float64) {
@@ -154,20 +148,21 @@ func pivotedQR(a *mat.Dense) (qr blas64.General, pivot []int, tau []float64) {
 	return qr, pivot, tau
 }
 
-func applyQT(c, qr blas64.General, tau []float64) {
-	reflectors := qr
-	reflectors.Cols = len(tau)
+// applyQT overwrites c with Qᵀ·c.
+func applyQT(c []float64, qr blas64.General, tau []float64) {
+	qr.Cols = len(tau)
+	g := blas64.General{Rows: len(c), Cols: 1, Stride: 1, Data: c}
 	work := make([]float64, 1)
-	lapack64.Ormqr(blas.Left, blas.Trans, reflectors, tau, c, work, -1)
+	lapack64.Ormqr(blas.Left, blas.Trans, qr, tau, g, work, -1)
 	work = make([]float64, int(work[0]))
-	lapack64.Ormqr(blas.Left, blas.Trans, reflectors, tau, c, work, len(work))
+	lapack64.Ormqr(blas.Left, blas.Trans, qr, tau, g, work, len(work))
 }
 
-func rankOf(qr blas64.General, m, n int) int {
-	rank := 0
-	for i := 0; i < min(m, n); i++ {
-		d := math.Abs(qr.Data[i*qr.Stride+i])
-		if d == 0 || d < float64(max(m, n))*2*eps*math.Abs(qr.Data[0]) {
+// rankOf returns the number of |r_ii| ≥ max(m, n)·2ε·|r_11|, not counting zeros.
+func rankOf(qr blas64.General) int {
+	rank, least := 0, float64(max(qr.Rows, qr.Cols))*2*eps*math.Abs(qr.Data[0])
+	for i := range min(qr.Rows, qr.Cols) {
+		if d := math.Abs(qr.Data[i*qr.Stride+i]); d == 0 || d < least {
 			break
 		}
 		rank++

@@ -1,0 +1,112 @@
+package nnls_test
+
+import (
+	"fmt"
+	"math"
+	"testing"
+
+	"gonum.org/v1/gonum/mat"
+
+	"tarnlight/nnls"
+)
+
+// survey is a batch that testdata/nnls/ratio.py draws too: n smooth bands over m
+// rows, samples mixed from them with 1 % of noise, a third of the amounts zero.
+// With gaps, each sample misses one run of rows of its own, up to a fifth of
+// them, and every fiftieth row or so beside.
+func survey(samples, m, n int, gaps bool) (a, b *mat.Dense) {
+	d := newDraw(samples + m + n)
+	a = mat.NewDense(m, n, nil)
+	for j := range n {
+		centre, width := d.unit(), 0.1+0.2*d.unit()
+		for k := range m {
+			u := (float64(k)/float64(m) - centre) / width
+			a.Set(k, j, 1/(1+float64(u*u))) // a Lorentz band: the same bits everywhere
+		}
+	}
+	b = mat.NewDense(samples, m, nil)
+	for i := range samples {
+		x := make([]float64, n)
+		for j := range x {
+			x[j] = max(0, 3*d.unit()-1)
+		}
+		row := b.RawRowView(i)
+		for k := range row {
+			v := float64(0.01 * d.sym())
+			for j, aj := range a.RawRowView(k) {
+				v += float64(aj * x[j])
+			}
+			row[k] = v
+		}
+		if gaps {
+			from := int(d.unit() * float64(m))
+			length := int(d.unit() * float64(m) / 5)
+			for k := from; k < min(m, from+length); k++ {
+				row[k] = math.NaN()
+			}
+			for k := d.integer(0, 99); k < m; k += d.integer(1, 99) {
+				row[k] = math.NaN()
+			}
+		}
+	}
+	return a, b
+}
+
+var surveys = []struct {
+	samples, m, n int
+	gaps          bool
+}{
+	{1000, 4756, 6, false},
+	{1000, 4756, 6, true},
+	{100000, 500, 8, false},
+	{100000, 500, 8, true},
+}
+
+func BenchmarkBatch(b *testing.B) {
+	for _, s := range surveys {
+		name := fmt.Sprintf("%dx%dx%d", s.samples, s.m, s.n)
+		if s.gaps {
+			name += "/gaps"
+		}
+		b.Run(name, func(b *testing.B) {
+			a, rhs := survey(s.samples, s.m, s.n, s.gaps)
+			x := mat.NewDense(s.samples, s.n, nil)
+			b.ReportAllocs()
+			for b.Loop() {
+				batch, err := nnls.NewBatch(a, nil)
+				if err != nil {
+					b.Fatal(err)
+				}
+				if _, err := batch.SolveTo(x, rhs, nil); err != nil {
+					b.Fatal(err)
+				}
+			}
+			flops := 2 * float64(s.samples) * float64(s.m) * float64(s.n)
+			b.ReportMetric(flops*float64(b.N)/b.Elapsed().Seconds()/1e9, "GF/s")
+		})
+	}
+}
+
+// BenchmarkMatrixProduct is the machine's rate for a large dense product, the
+// measure of BenchmarkBatch's GF/s.
+func BenchmarkMatrixProduct(b *testing.B) {
+	const n = 1000
+	d := newDraw(n)
+	x, y, z := mat.NewDense(n, n, nil), mat.NewDense(n, n, nil), mat.NewDense(n, n, nil)
+	x.Apply(func(_, _ int, _ float64) float64 { return d.sym() }, x)
+	y.Apply(func(_, _ int, _ float64) float64 { return d.sym() }, y)
+	for b.Loop() {
+		z.Mul(x, y)
+	}
+	b.ReportMetric(2*n*n*n*float64(b.N)/b.Elapsed().Seconds()/1e9, "GF/s")
+}
+
+func BenchmarkSolveTo(b *testing.B) {
+	a, rhs := survey(1, 4756, 6, false)
+	x := make([]float64, 6)
+	for b.Loop() {
+		if _, err := nnls.SolveTo(x, a, rhs.RawRowView(0), nil); err != nil {
+			b.Fatal(err)
+		}
+	}
+}

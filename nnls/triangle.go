@@ -1,0 +1,38 @@
+package nnls
+
+import "gonum.org/v1/gonum/blas/blas64"
+
+// triangle is a small problem min ‖t·x − c‖ in the form that an active set
+// starts from: the columns in order form an upper triangle.
+type triangle struct {
+	k, n  int
+	t     []float64 // k×n by columns
+	norm  []float64 // n, of the columns
+	order []int     // k of the columns
+}
+
+func newTriangle(k, n int, order []int) triangle {
+	return triangle{k, n, make([]float64, k*n), make([]float64, n), order}
+}
+
+func (t *triangle) column(j int) []float64 { return t.t[j*t.k : (j+1)*t.k] }
+
+func (t *triangle) measure() {
+	for j := range t.norm {
+		t.norm[j] = norm2(t.column(j))
+	}
+}
+
+// cutTriangle returns the first rows of R, as many as the rank.
+func cutTriangle(qr blas64.General, pivot []int) triangle {
+	k := rankOf(qr)
+	t := newTriangle(k, qr.Cols, pivot[:k])
+	for q, j := range pivot {
+		col := t.column(j)
+		for i := range min(q+1, k) {
+			col[i] = qr.Data[i*qr.Stride+q]
+		}
+	}
+	t.measure()
+	return t
+}

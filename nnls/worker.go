@@ -1,0 +1,256 @@
+package nnls
+
+import (
+	"math"
+	"math/bits"
+)
+
+// batchWorker is the memory of one goroutine.
+type batchWorker struct {
+	act     *active
+	reduced *reduced
+	v       []float64 // a block of one right-hand side
+	z, dual []float64
+	row     []float64 // a right-hand side of extreme values, scaled
+	gone    []byte    // rows of one right-hand side that are missing
+}
+
+func newBatchWorker(f *factor) *batchWorker {
+	return &batchWorker{
+		act: newActive(f.k, f.n), reduced: newReduced(f),
+		v: make([]float64, block), z: make([]float64, f.k), dual: make([]float64, f.n),
+		gone: make([]byte, (f.m+7)/8),
+	}
+}
+
+// Squares of norms outside these bounds have lost digits to the range of float64.
+const (
+	leastSquare = 1e-280
+	mostSquare  = 1e280
+)
+
+// read projects sample i: c, ‖b‖² and the missing rows.
+func (r *batchRun) read(w *batchWorker, i int) {
+	at := i - r.from
+	c := r.c[at*r.f.stride : (at+1)*r.f.stride]
+	b, missing := r.b.RawRowView(i), r.missingRow(i)
+	r.eb[at] = 0
+	bb, gaps := w.project(r.f, c, b, missing)
+	if !(bb >= leastSquare && bb <= mostSquare) {
+		e, bad := exponent(r.f, b, missing)
+		if bad >= 0 {
+			r.fail(i, "b[%d] is %v; make it NaN to leave it out", bad, b[bad])
+			return
+		}
+		if bb != 0 || e != 0 {
+			r.eb[at] = e
+			bb, gaps = w.project(r.f, c, r.scaled(w, i), nil)
+		}
+	}
+	if gaps == r.f.m {
+		r.fail(i, "no row left: all %d are missing or of weight 0", r.m)
+		return
+	}
+	r.bb[at], r.gone[at] = bb, ""
+	if gaps > 0 {
+		r.gone[at] = string(w.gone)
+	}
+}
+
+func (r *batchRun) missingRow(i int) []bool {
+	if r.missing == nil {
+		return nil
+	}
+	return r.missing[i*r.m : (i+1)*r.m]
+}
+
+// scaled returns right-hand side i times 2^−eb, NaN where missing.
+func (r *batchRun) scaled(w *batchWorker, i int) []float64 {
+	b, e, missing := r.b.RawRowView(i), r.eb[i-r.from], r.missingRow(i)
+	if e == 0 {
+		return b
+	}
+	w.row = w.row[:0]
+	for k, v := range b {
+		if v = math.Ldexp(v, -e); missing != nil && missing[k] {
+			v = math.NaN()
+		}
+		w.row = append(w.row, v)
+	}
+	return w.row
+}
+
+// exponent returns that of the largest value in the rows used, or the first
+// infinite one.
+func exponent(f *factor, b []float64, missing []bool) (e, bad int) {
+	most := 0.0
+	for _, k := range f.rows {
+		if b[k] != b[k] || (missing != nil && missing[k]) {
+			continue
+		}
+		if math.IsInf(b[k], 0) {
+			return 0, k
+		}
+		most = max(most, math.Abs(b[k]))
+	}
+	_, e = math.Frexp(most)
+	return e, -1
+}
+
+// project sets c to Qᵀ·W^½·b, with 0 for missing rows, marks those in w.gone and
+// returns their number and ‖W^½·b‖².
+func (w *batchWorker) project(f *factor, c, b []float64, missing []bool) (bb float64, gaps int) {
+	clear(c)
+	clear(w.gone)
+	plain := f.half == nil && missing == nil && len(f.rows) == len(b)
+	for at := 0; at < f.m; at += block {
+		end := min(at+block, f.m)
+		var v []float64
+		sum := math.NaN()
+		if plain {
+			v = b[at:end]
+			sum = sumSquares(v)
+		}
+		if !(sum <= math.MaxFloat64) {
+			v = w.v[:end-at]
+			gaps += w.fill(v, f, at, b, missing)
+			sum = sumSquares(v)
+		}
+		bb += sum
+		project(c, v, f.q[at*f.stride:end*f.stride])
+	}
+	return bb, gaps
+}
+
+// fill writes W^½·b of the rows from at on into v, with 0 for missing ones, and
+// returns the number of those.
+func (w *batchWorker) fill(v []float64, f *factor, at int, b []float64, missing []bool) (gaps int) {
+	rows := f.rows[at : at+len(v)]
+	for i, k := range rows {
+		x := b[k]
+		if x != x || (missing != nil && missing[k]) {
+			x = 0
+			gaps++
+			setBit(w.gone, at+i)
+		}
+		v[i] = x
+	}
+	if f.half != nil {
+		for i, h := range f.half[at : at+len(v)] {
+			v[i] *= h
+		}
+	}
+	return gaps
+}
+
+// solveAll solves samples that miss the same rows.
+func (r *batchRun) solveAll(w *batchWorker, samples []int) {
+	f, gone := r.f, []byte(r.gone[samples[0]-r.from])
+	if len(gone) == 0 {
+		for _, i := range samples {
+			at := i - r.from
+			copy(w.z, r.c[at*f.stride:])
+			r.solve(w, f, &f.tri, i, float64(f.k), r.f.m, gone)
+		}
+		return
+	}
+	missing := 0
+	for _, b := range gone {
+		missing += bits.OnesCount8(b)
+	}
+	if w.reduced.reduce(f, gone, missing) {
+		for _, i := range samples {
+			at := i - r.from
+			copy(w.z, r.c[at*f.stride:])
+			w.reduced.forward(w.z)
+			r.solve(w, f, &w.reduced.tri, i, w.reduced.inv, f.m-missing, gone)
+		}
+		return
+	}
+	f = f.without(gone)
+	sub := newBatchWorker(f)
+	c := make([]float64, f.stride)
+	for _, i := range samples {
+		sub.project(f, c, r.scaled(w, i), nil)
+		copy(sub.z, c)
+		r.solve(sub, f, &f.tri, i, float64(f.k), f.m, nil)
+	}
+}
+
+// solve solves sample i of the factor f from w.z, the right-hand side that goes
+// with the triangle t. inv is ‖L⁻¹‖² of [reduced].
+func (r *batchRun) solve(w *batchWorker, f *factor, t *triangle, i int, inv float64, rows int, gone []byte) {
+	at := i - r.from
+	bb := r.bb[at]
+	w.act.load(t, w.z, math.Sqrt(bb))
+	w.act.warmAll(t)
+	res := &r.results[i]
+	res.Status = w.act.run(r.maxIter)
+	if res.Status == IterationLimit {
+		r.errs[i] = ErrIterationLimit
+	}
+	res.Iterations, res.Rank, res.Rows = w.act.iterations, t.k, rows
+	copy(res.Passive, w.act.free)
+	y := w.act.x
+	fitted := 0.0
+	for _, v := range w.z {
+		fitted += v * v
+	}
+	w.residual(t, y)
+	square := bb - fitted
+	for _, v := range w.z {
+		square += v * v
+	}
+	res.Violation = violation(y, w.dual, t.norm, math.Sqrt(bb))
+	if square < 1e-6*inv*bb {
+		square = directSquare(f, r.scaled(w, i), y, gone)
+	}
+	eb := r.eb[at]
+	res.Norm = math.Ldexp(math.Sqrt(square), eb+f.ew)
+	dst := r.dst.RawRowView(i)
+	for j, v := range y {
+		if dst[j] = math.Ldexp(v, eb-f.ea[j]); math.IsInf(dst[j], 0) {
+			r.fail(i, "variable %d of the answer exceeds the range of float64; scale a or b", j)
+			return
+		}
+	}
+}
+
+// residual overwrites z with z − t·y, and dual with tᵀ times that.
+func (w *batchWorker) residual(t *triangle, y []float64) {
+	for j, v := range y {
+		if v == 0 {
+			continue
+		}
+		for l, x := range t.column(j) {
+			w.z[l] -= x * v
+		}
+	}
+	for j := range w.dual {
+		sum := 0.0
+		for l, x := range t.column(j) {
+			sum += x * w.z[l]
+		}
+		w.dual[j] = sum
+	}
+}
+
+// directSquare returns ‖W^½(a·y − b)‖² row by row, for residuals so small that
+// the difference of squares has lost their digits.
+func directSquare(f *factor, b, y []float64, gone []byte) float64 {
+	sum := 0.0
+	for i, k := range f.rows {
+		if len(gone) > 0 && bit(gone, i) {
+			continue
+		}
+		v := b[k]
+		if f.half != nil {
+			v *= f.half[i]
+		}
+		for j, x := range f.a.RawRowView(i) {
+			v -= x * y[j]
+		}
+		sum += v * v
+	}
+	return sum
+}
