@@ -156,7 +156,7 @@ type Uncertainty struct {
 // Quality holds limits of tests and doubts accepted, both by the codes of
 // eem.Tests.
 type Quality struct {
-	Limit  map[string]float64 // replaces the default limit; nil when none is set
+	Limit  map[string]float64 // limit in force of every test that has one, but for correct.absorbance_limit
 	Accept map[string]string  // code → reason: the doubt is only a note here; nil when none is
 }
 
