@@ -52,7 +52,7 @@ func NewInstrument() *Instrument {
 		Power:    1,
 		ExWindow: [2]float64{0.4, 0.6}, EmWindow: [2]float64{0.4, 0.6},
 		Bandpass: [2]float64{3, 3}, SecondOrder: 0.03,
-		Gain: 6e9, PerPhoton: 1, Offset: 60, Read: 4, Saturation: 2e6,
+		Gain: 6e9, PerPhoton: 1, Offset: 60, Read: 4, Saturation: 7e5,
 	}
 }
 
