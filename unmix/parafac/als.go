@@ -48,21 +48,23 @@ func (d *data) listGaps() {
 // als holds one start: factors and the work space of its updates.
 type als struct {
 	*data
-	f           int
-	free        bool // no sign constraint
-	eps         float64
-	a, b, c     []float64
-	fixB, fixC  []bool    // entries that updates leave alone; nil: none
-	kt          []float64 // F × P: model rows, weighted
-	z           []float64 // F × P: A'X
-	m           []float64 // I × F: X·K
-	rk, coef    []float64 // (r+raw) × F
-	ga, gk, gap []float64
-	h, q        []float64 // one row's normal equations
-	lam         []float64
-	loss        float64 // penalised, after the last update of a
-	iter        int
-	revived     int
+	f            int
+	free         bool // no sign constraint
+	eps          float64
+	a, b, c      []float64
+	fixB, fixC   []bool    // entries that updates leave alone (held); nil: none
+	dampB, dampC []bool    // entries the ridge stays on; nil: all, as at the start
+	kt           []float64 // F × P: model rows, weighted
+	z            []float64 // F × P: A'X
+	m            []float64 // I × F: X·K
+	rk, coef     []float64 // (r+raw) × F
+	ga, gk, gap  []float64
+	h, q         []float64 // one row's normal equations
+	lam          []float64 // F: ridge on the columns of the mode in work, and
+	lamDamped    []float64 // F: what is added to it on damped entries
+	loss         float64   // penalised, after the last update of a
+	iter         int
+	revived      int
 }
 
 func newALS(d *data, f int, s *Settings) *als {
@@ -73,7 +75,7 @@ func newALS(d *data, f int, s *Settings) *als {
 		kt: make([]float64, f*d.p), z: make([]float64, f*d.p), m: make([]float64, d.i*f),
 		rk: make([]float64, n*f), coef: make([]float64, n*f),
 		ga: make([]float64, f*f), gk: make([]float64, f*f), gap: make([]float64, len(d.gapCell)*f*f),
-		h: make([]float64, f*f), q: make([]float64, f), lam: make([]float64, f),
+		h: make([]float64, f*f), q: make([]float64, f), lam: make([]float64, f), lamDamped: make([]float64, f),
 	}
 }
 
@@ -106,7 +108,7 @@ func (s *als) updateA(sweeps int) {
 	s.modelRows()
 	s.products()
 	f := s.f
-	s.ridge(s.b, s.j, s.c, s.k)
+	s.ridgeA()
 	s.loss = s.x2
 	gi := make([]float64, f*f)
 	copy(gi, s.gk)
@@ -128,7 +130,7 @@ func (s *als) updateA(sweeps int) {
 func (s *als) updateScores(i int, g []float64, sweeps int) {
 	f := s.f
 	a, m := s.a[i*f:(i+1)*f], s.m[i*f:(i+1)*f]
-	s.solveRow(a, g, m, nil, 0, sweeps)
+	s.solveRow(a, g, m, s.lam, nil, 0, sweeps)
 	for x := range f {
 		v := -2 * m[x]
 		for y := range f {
@@ -169,11 +171,58 @@ func (s *als) products() {
 	}
 }
 
-// ridge sets lam to ε·‖x_f‖²‖y_f‖², the ridge on the columns of the third mode.
-func (s *als) ridge(x []float64, nx int, y []float64, ny int) {
+// ridgeA, ridgeB and ridgeC set lam, the ridge on the columns of one mode. The
+// penalty is at first the energy of every component,
+//
+//	ε Σ_f ‖a_f‖²‖b_f‖²‖c_f‖²
+//
+// and after damp only that of the loadings the data do not determine, b° and c°:
+//
+//	ε Σ_f ‖a_f‖² (‖b°_f‖²‖c_f‖² + ‖b_f‖²‖c°_f‖²)
+//
+// Both are free of scale, and every update has its exact share of them.
+func (s *als) ridgeA() {
 	for f := range s.f {
-		s.lam[f] = s.eps * columnSquare(x, nx, s.f, f) * columnSquare(y, ny, s.f, f)
+		b, c := columnSquare(s.b, s.j, s.f, f), columnSquare(s.c, s.k, s.f, f)
+		s.lam[f] = s.eps * b * c
+		if s.dampB != nil {
+			s.lam[f] = s.eps * (dampedSquare(s.b, s.dampB, s.f, f)*c + b*dampedSquare(s.c, s.dampC, s.f, f))
+		}
 	}
+}
+
+func (s *als) ridgeB() { s.ridgeLoading(s.c, s.dampC, s.k) }
+func (s *als) ridgeC() { s.ridgeLoading(s.b, s.dampB, s.j) }
+
+// ridgeLoading sets lam and lamDamped from the other loading mode.
+func (s *als) ridgeLoading(other []float64, damped []bool, n int) {
+	for f := range s.f {
+		e := s.eps * columnSquare(s.a, s.i, s.f, f)
+		s.lam[f], s.lamDamped[f] = e*columnSquare(other, n, s.f, f), 0
+		if damped != nil {
+			s.lam[f], s.lamDamped[f] = e*dampedSquare(other, damped, s.f, f), s.lam[f]
+		}
+	}
+}
+
+// rowRidge writes the ridge of one row of loadings, whose entries start at.
+func (s *als) rowRidge(dst []float64, damped []bool, at int) {
+	copy(dst, s.lam)
+	for f := range dst {
+		if damped != nil && damped[at+f] {
+			dst[f] += s.lamDamped[f]
+		}
+	}
+}
+
+func dampedSquare(x []float64, damped []bool, f, col int) float64 {
+	var v float64
+	for i := col; i < len(x); i += f {
+		if damped[i] {
+			v += x[i] * x[i]
+		}
+	}
+	return v
 }
 
 func columnSquare(x []float64, n, f, col int) float64 {
@@ -214,56 +263,33 @@ func (s *als) project() {
 
 // updateB and updateC solve for one row of loadings after the other.
 func (s *als) updateB(sweeps int) {
-	s.ridge(s.a, s.i, s.c, s.k)
-	hs, qs := s.normalB()
-	for j := range s.j {
-		s.solveRow(s.b[j*s.f:(j+1)*s.f], hs[j*s.f*s.f:], qs[j*s.f:], s.fixB, j*s.f, sweeps)
-	}
+	s.ridgeB()
+	hs, qs := s.normal(s.j, s.c, s.atB)
+	s.updateRows(s.b, hs, qs, s.fixB, s.dampB, sweeps)
 }
 
 func (s *als) updateC(sweeps int) {
-	s.ridge(s.a, s.i, s.b, s.j)
-	hs, qs := s.normalC()
-	for k := range s.k {
-		s.solveRow(s.c[k*s.f:(k+1)*s.f], hs[k*s.f*s.f:], qs[k*s.f:], s.fixC, k*s.f, sweeps)
+	s.ridgeC()
+	hs, qs := s.normal(s.k, s.b, s.atC)
+	s.updateRows(s.c, hs, qs, s.fixC, s.dampC, sweeps)
+}
+
+func (s *als) updateRows(x, hs, qs []float64, fixed, damped []bool, sweeps int) {
+	lam, f := make([]float64, s.f), s.f
+	for at := 0; at < len(x); at += f {
+		s.rowRidge(lam, damped, at)
+		s.solveRow(x[at:at+f], hs[at*f:(at+f)*f], qs[at:at+f], lam, fixed, at, sweeps)
 	}
 }
 
-// normalB returns the normal equations, without ridge, of all rows of b:
-// matrices J × F × F and right sides J × F.
-func (s *als) normalB() (hs, qs []float64) {
-	return s.normal(s.j, s.c, func(q int) (int, int) { return int(s.cj[q]), int(s.ck[q]) })
-}
-
-// normalC does the same for c.
-func (s *als) normalC() (hs, qs []float64) {
-	return s.normal(s.k, s.b, func(q int) (int, int) { return int(s.ck[q]), int(s.cj[q]) })
-}
-
-// normal sums, for each row of one mode of length n, over the cells of that row:
-// H = (A'A) ∘ Σ w² o o' less the gaps, and Σ w z o, where o is the row of the
-// other mode.
+// normal gives, for each row of one mode of length n, H = (A'A) ∘ Σ w² o o'
+// less the gaps, and Σ w z o, over the cells of that row, where o is the row of
+// the other mode.
 func (s *als) normal(n int, other []float64, at func(q int) (row, o int)) (hs, qs []float64) {
 	f := s.f
-	hs, qs = make([]float64, n*f*f), make([]float64, n*f)
-	for q := range s.p {
-		r, o := at(q)
-		v, h, rhs := other[o*f:(o+1)*f], hs[r*f*f:(r+1)*f*f], qs[r*f:(r+1)*f]
-		w := s.w[q]
-		for x, vx := range v {
-			rhs[x] += w * vx * s.z[x*s.p+q]
-			t := w * w * vx
-			for y := x; y < f; y++ {
-				h[x*f+y] += t * v[y]
-			}
-		}
-	}
-	for r := range n {
-		h := hs[r*f*f : (r+1)*f*f]
-		mirror(h, f)
-		for x, g := range s.ga {
-			h[x] *= g
-		}
+	hs, qs = s.sums(n, other, at)
+	for i := range hs {
+		hs[i] *= s.ga[i%(f*f)]
 	}
 	for m, q := range s.gapCell {
 		r, o := at(int(q))
@@ -278,22 +304,48 @@ func (s *als) normal(n int, other []float64, at func(q int) (row, o int)) (hs, q
 	return hs, qs
 }
 
+// sums returns Σ w² o o', n × F × F, and Σ w z o, n × F, over the cells of each
+// row.
+func (s *als) sums(n int, other []float64, at func(q int) (row, o int)) (ss, qs []float64) {
+	f := s.f
+	ss, qs = make([]float64, n*f*f), make([]float64, n*f)
+	for q := range s.p {
+		r, o := at(q)
+		v, h, rhs := other[o*f:(o+1)*f], ss[r*f*f:(r+1)*f*f], qs[r*f:(r+1)*f]
+		w := s.w[q]
+		for x, vx := range v {
+			rhs[x] += w * vx * s.z[x*s.p+q]
+			t := w * w * vx
+			for y := x; y < f; y++ {
+				h[x*f+y] += t * v[y]
+			}
+		}
+	}
+	for r := range n {
+		mirror(ss[r*f*f:(r+1)*f*f], f)
+	}
+	return ss, qs
+}
+
+func (s *als) atB(q int) (row, o int) { return int(s.cj[q]), int(s.ck[q]) }
+func (s *als) atC(q int) (row, o int) { return int(s.ck[q]), int(s.cj[q]) }
+
 // solveRow lowers ½ v'(h+Λ)v − q'v by sweeps over the entries of v that are
 // not fixed, each set to its best non-negative value; a sign-free row is solved
 // exactly.
-func (s *als) solveRow(v, h, q []float64, fixed []bool, at, sweeps int) {
-	if s.free && s.solveFree(v, h, q, fixed, at) {
+func (s *als) solveRow(v, h, q, lam []float64, fixed []bool, at, sweeps int) {
+	if s.free && s.solveFree(v, h, q, lam, fixed, at) {
 		return
 	}
 	f := s.f
 	for range sweeps {
 		moved := false
 		for x := range f {
-			d := h[x*f+x] + s.lam[x]
+			d := h[x*f+x] + lam[x]
 			if d <= 0 || (fixed != nil && fixed[at+x]) {
 				continue
 			}
-			g := q[x] - s.lam[x]*v[x]
+			g := q[x] - lam[x]*v[x]
 			for y, hv := range h[x*f : (x+1)*f] {
 				g -= hv * v[y]
 			}
@@ -313,7 +365,7 @@ func (s *als) solveRow(v, h, q []float64, fixed []bool, at, sweeps int) {
 }
 
 // solveFree solves (h+Λ)v = q over the entries that are not fixed.
-func (s *als) solveFree(v, h, q []float64, fixed []bool, at int) bool {
+func (s *als) solveFree(v, h, q, lam []float64, fixed []bool, at int) bool {
 	f := s.f
 	for x := range f {
 		s.q[x] = q[x]
@@ -327,7 +379,7 @@ func (s *als) solveFree(v, h, q []float64, fixed []bool, at int) bool {
 			case x == y && fx:
 				e = 1
 			case x == y:
-				e += s.lam[x]
+				e += lam[x]
 			case fx || fy:
 				if fy && !fx {
 					s.q[x] -= e * v[y]

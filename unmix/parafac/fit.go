@@ -28,16 +28,43 @@ func Fit(ctx context.Context, c *eem.Cube, components int, s *Settings) (*Result
 			best = a
 		}
 	}
-	r := best.s.result(c, &set)
-	r.Loss = best.s.loss / p.x2
-	r.Status = Swamp
-	if best.converged {
-		r.Status = Converged
+	r, err := conclude(ctx, c, p, best.s, &set)
+	if err != nil {
+		return nil, err
 	}
+	r.Loss = best.s.loss / p.x2
 	for _, a := range all {
 		r.Starts = append(r.Starts, Start{Loss: a.s.loss / p.x2, Iterations: a.s.iter, Kept: a.kept,
 			Agrees: agrees(a.s, best.s)})
 	}
+	return r, nil
+}
+
+// conclude brings a fit to its end on the samples themselves: freezes what the
+// data do not determine, takes the ridge from the rest, and finishes by
+// Gauss–Newton steps, whose matrix also gives the errors.
+func conclude(ctx context.Context, c *eem.Cube, p *problem, best *als, set *Settings) (*Result, error) {
+	s := newALS(p.whole(), best.f, set)
+	copy(s.a, best.a)
+	copy(s.b, best.b)
+	copy(s.c, best.c)
+	s.fixB, s.fixC, s.iter, s.revived = best.fixB, best.fixC, best.iter, best.revived
+	s.exactScores()
+	s.damp()
+	if _, err := s.iterate(ctx, set.Tol, polishIter); err != nil {
+		return nil, err
+	}
+	n := s.newton()
+	if err := n.finish(ctx); err != nil {
+		return nil, err
+	}
+	r := s.result(c, set)
+	r.Certificate = n.delta
+	r.Status = Swamp
+	if n.delta <= certified {
+		r.Status = Converged
+	}
+	n.influence().tell(r)
 	return r, nil
 }
 

@@ -47,7 +47,13 @@ type Result struct {
 	Certificate float64 // δ = √(g'H⁺g)/σ: distance from the optimum in standard errors, jointly
 	Revived     int     // components that died on the way and were set again
 
+	// Leverage, I, is the diagonal of A(A'A)⁻¹A', and Influence, I, the largest
+	// move of a loading when the sample is left out, in its standard errors.
+	Leverage, Influence []float64
+
 	Notes []eem.Note
+
+	order []int // place of each component in the fit
 }
 
 // Start is one start of a fit.
@@ -85,6 +91,7 @@ func (s *als) result(c *eem.Cube, set *Settings) *Result {
 		Iterations: s.iter, Revived: s.revived, Notes: slices.Clone(s.notes),
 	}
 	order := s.order()
+	r.order = order
 	r.Held = make([]string, f)
 	for to, from := range order {
 		if from < len(set.Hold) {
@@ -93,8 +100,6 @@ func (s *als) result(c *eem.Cube, set *Settings) *Result {
 		b, sb := s.loading(s.b, s.j, from)
 		e, sc := s.loading(s.c, s.k, from)
 		r.Ex, r.Em = append(r.Ex, b), append(r.Em, e)
-		r.ExDetermined = append(r.ExDetermined, allTrue(s.j))
-		r.EmDetermined = append(r.EmDetermined, allTrue(s.k))
 		for row, i := range s.sample {
 			r.Scores[i*f+to] = s.a[row*f+from] * sb * sc * s.scale[row]
 		}
@@ -104,14 +109,6 @@ func (s *als) result(c *eem.Cube, set *Settings) *Result {
 	}
 	s.residuals(c, r)
 	return r
-}
-
-func allTrue(n int) []bool {
-	v := make([]bool, n)
-	for i := range v {
-		v[i] = true
-	}
-	return v
 }
 
 // loading returns column f of x divided by its entry of largest size, and that

@@ -52,6 +52,7 @@ const (
 	energyRidge = 3e-5 // ε of the loss
 	innerSweeps = 10   // sweeps over the columns in one update of a mode
 	screenIter  = 60   // iterations a start gets before it must be among the best
+	polishIter  = 30   // iterations without ridge before the Gauss–Newton steps
 	goOn        = 3    // starts that go on after screening
 	maxF        = 30   // components
 )

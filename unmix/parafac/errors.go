@@ -1,0 +1,234 @@
+package parafac
+
+import (
+	"math"
+
+	"gonum.org/v1/gonum/blas/blas64"
+	"gonum.org/v1/gonum/lapack/lapack64"
+)
+
+// influence is by how much each sample moves the loadings: row i is H⁺g_i, the
+// change of every entry that can move when sample i is left out, to first order
+// (infinitesimal jackknife, Jaeckel 1972; Efron 1982). Their products summed over
+// the samples are the covariance of the loadings.
+type influence struct {
+	*newton
+	d []float64 // I × n
+}
+
+// influence needs a factored H at the optimum.
+func (n *newton) influence() *influence {
+	m := len(n.theta)
+	in := &influence{newton: n, d: make([]float64, n.i*m)}
+	if m == 0 || n.chol.N != m {
+		return in
+	}
+	gt := make([]float64, m*n.i)
+	for i := range n.i {
+		for x, g := range n.sampleGradient(i) {
+			gt[x*n.i+i] = g
+		}
+	}
+	lapack64.Potrs(n.triangle(), blas64.General{Rows: m, Cols: n.i, Stride: n.i, Data: gt})
+	// A sample's residual is smaller for its having been fitted.
+	grow := math.Sqrt(float64(n.i) / math.Max(1, float64(n.i-n.f)))
+	for x := range m {
+		for i := range n.i {
+			in.d[i*m+x] = gt[x*n.i+i] * grow
+		}
+	}
+	return in
+}
+
+// sampleGradient is the part of the gradient that sample i brings, over theta.
+func (n *newton) sampleGradient(i int) []float64 {
+	f := n.f
+	full := make([]float64, len(n.at))
+	r := n.residualOf(i)
+	a := n.a[i*f : (i+1)*f]
+	for q, e := range r {
+		e *= n.w[q]
+		j, k := int(n.cj[q])*f, int(n.ck[q])*f
+		b, c := n.b[j:j+f], n.c[k:k+f]
+		gb, gc := full[j:j+f], full[n.nb+k:n.nb+k+f]
+		for x, v := range a {
+			gb[x] -= e * v * c[x]
+			gc[x] -= e * v * b[x]
+		}
+	}
+	out := make([]float64, len(n.theta))
+	for x, e := range n.theta {
+		out[x] = full[e]
+	}
+	return out
+}
+
+// loadingSE returns the standard errors of b and of c at unit norm.
+func (in *influence) loadingSE() (sb, sc []float64) {
+	all := make([]float64, len(in.at))
+	m := len(in.theta)
+	for x, e := range in.theta {
+		var v float64
+		for i := range in.i {
+			v += in.d[i*m+x] * in.d[i*m+x]
+		}
+		all[e] = math.Sqrt(v)
+	}
+	return all[:in.nb], all[in.nb:]
+}
+
+// slopes returns, for the move of sample l, Y_fg = Σ over the loadings of
+// component f of D'K·move, so that K_i'D_i·move is a_i'Y for a sample without
+// gaps.
+func (in *influence) slopes(l int) []float64 {
+	f, m := in.f, len(in.theta)
+	y := make([]float64, f*f)
+	for x, e := range in.theta {
+		if v := in.d[l*m+x]; v != 0 {
+			axpy(v, in.derivative(e), y[e%f*f:(e%f+1)*f])
+		}
+	}
+	return y
+}
+
+// scoreSE returns the standard errors, I × F in the cube's unit, of the scores
+// of maximum-1 loadings: noise of the sample's own cells and the loadings' errors
+// together. peakB and peakC are the rows where each component has its maximum.
+func (in *influence) scoreSE(peakB, peakC []int) []float64 {
+	f, m := in.f, len(in.theta)
+	out := make([]float64, in.i*f)
+	if in.mb == nil {
+		return out
+	}
+	ys, peaks := make([]float64, in.i*f*f), make([]float64, in.i*f)
+	for l := range in.i {
+		copy(ys[l*f*f:], in.slopes(l))
+		for x := range f {
+			b, c := in.b[peakB[x]*f+x], in.c[peakC[x]*f+x]
+			peaks[l*f+x] = in.move(l, m, peakB[x]*f+x)*c + b*in.move(l, m, in.nb+peakC[x]*f+x)
+		}
+	}
+	for i := range in.i {
+		in.sampleSE(out[i*f:(i+1)*f], i, ys, peaks, peakB, peakC)
+	}
+	return out
+}
+
+func (in *influence) move(l, m, e int) float64 {
+	if x := in.at[e]; x >= 0 {
+		return in.d[l*m+x]
+	}
+	return 0
+}
+
+func (in *influence) sampleSE(out []float64, i int, ys, peaks []float64, peakB, peakC []int) {
+	f := in.f
+	inv := append([]float64(nil), in.inverse(i)...)
+	dof := math.Max(1, float64(in.p-len(in.gaps[i])-f))
+	s2 := sumSquares(in.residualOf(i)) / dof
+	a := in.a[i*f : (i+1)*f]
+	height := make([]float64, f)
+	v, kd, da := make([]float64, f), make([]float64, f), make([]float64, f)
+	for x := range f {
+		height[x] = in.b[peakB[x]*f+x] * in.c[peakC[x]*f+x]
+		v[x] = height[x] * height[x] * s2 * inv[x*f+x]
+	}
+	for l := range in.i {
+		y := ys[l*f*f : (l+1)*f*f]
+		clear(kd)
+		for x, ax := range a {
+			axpy(ax, y[x*f:(x+1)*f], kd)
+		}
+		in.gapSlope(kd, i, l)
+		for x := range f {
+			da[x] = -dot(inv[x*f:(x+1)*f], kd)
+			d := height[x]*da[x] + a[x]*peaks[l*f+x]
+			v[x] += d * d
+		}
+	}
+	for x := range f {
+		out[x] = in.scale[i] * math.Sqrt(v[x])
+	}
+}
+
+// gapSlope takes the cells that sample i lacks out of K_i'D_i·move.
+func (in *influence) gapSlope(kd []float64, i, l int) {
+	f, m := in.f, len(in.theta)
+	for _, q := range in.gaps[i] {
+		j, k, w := int(in.cj[q])*f, int(in.ck[q])*f, in.w[q]*in.w[q]
+		var d float64
+		for x, ax := range in.a[i*f : (i+1)*f] {
+			d += ax * (in.move(l, m, j+x)*in.c[k+x] + in.b[j+x]*in.move(l, m, in.nb+k+x))
+		}
+		for x := range f {
+			kd[x] -= w * d * in.b[j+x] * in.c[k+x]
+		}
+	}
+}
+
+// tell fills in what the result says about errors: standard errors, what is
+// determined, leverage and influence.
+func (in *influence) tell(r *Result) {
+	f := in.f
+	sb, sc := in.loadingSE()
+	peakB, peakC := make([]int, f), make([]int, f)
+	for x := range f {
+		b, _ := in.loading(in.b, in.j, x)
+		c, _ := in.loading(in.c, in.k, x)
+		peakB[x], peakC[x] = peakAt(b), peakAt(c)
+	}
+	for to, x := range r.order {
+		se, ok := in.modeSE(sb, in.b, in.dampB, in.j, x, peakB[x], r.Held[to] != "")
+		r.ExSE, r.ExDetermined = append(r.ExSE, se), append(r.ExDetermined, ok)
+		se, ok = in.modeSE(sc, in.c, in.dampC, in.k, x, peakC[x], r.Held[to] != "")
+		r.EmSE, r.EmDetermined = append(r.EmSE, se), append(r.EmDetermined, ok)
+	}
+	score := in.scoreSE(peakB, peakC)
+	for row, i := range in.sample {
+		for to, x := range r.order {
+			r.ScoreSE[i*f+to] = score[row*f+x]
+		}
+	}
+	in.tellSamples(r, sb, sc)
+}
+
+// modeSE scales the standard errors of component x to a maximum of 1 and says
+// which of its loadings are determined.
+func (in *influence) modeSE(se, load []float64, damped []bool, rows, x, peak int, held bool) ([]float64, []bool) {
+	out, ok := make([]float64, rows), make([]bool, rows)
+	top := math.Abs(load[peak*in.f+x])
+	for r := range rows {
+		e := r*in.f + x
+		if top > 0 {
+			out[r] = se[e] / top
+		}
+		ok[r] = held || top > 0 && out[r] < mostSE && !damped[e]
+	}
+	return out, ok
+}
+
+func (in *influence) tellSamples(r *Result, sb, sc []float64) {
+	r.Leverage, r.Influence = make([]float64, in.total), make([]float64, in.total)
+	f, m := in.f, len(in.theta)
+	l := append([]float64(nil), in.ga...)
+	ok := cholesky(l, f, 1e-14)
+	v := make([]float64, f)
+	for row, i := range in.sample {
+		if ok {
+			copy(v, in.a[row*f:(row+1)*f])
+			forward(l, v, f)
+			r.Leverage[i] = sumSquares(v)
+		}
+		for x, e := range in.theta {
+			se := 0.0
+			if e < in.nb {
+				se = sb[e]
+			} else {
+				se = sc[e-in.nb]
+			}
+			if se > 0 {
+				r.Influence[i] = math.Max(r.Influence[i], math.Abs(in.d[row*m+x])/se)
+			}
+		}
+	}
+}
