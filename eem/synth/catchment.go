@@ -1,5 +1,7 @@
 package synth
 
+import "fmt"
+
 // The fluorophores of the demo. Places of bands, molar absorption and yields are
 // of the order that handbooks give for such substances (METHODS 2.8 and 8 name
 // sources; pyrene's absorption from memory); the extracts are invented.
@@ -73,4 +75,17 @@ var levels = []struct {
 	{algal, "ALG", [4]float64{1, 3, 6, 10}},
 	{brightener, "BRI", [4]float64{1, 3, 6, 12}},
 	{pyrene, "PYR", [4]float64{0.3, 1, 2, 4}},
+}
+
+// Substance returns a fluorophore of the demo by name: tryptophan, peat extract,
+// algal extract, brightener, pyrene, and the dyestuff that the demo spills. It
+// panics at any other name.
+func Substance(name string) *Fluorophore {
+	for _, f := range []*Fluorophore{tryptophan, peat, algal, brightener, pyrene, dyestuff} {
+		if f.Name == name {
+			g := *f
+			return &g
+		}
+	}
+	panic(fmt.Sprintf("synth: no substance %q", name))
 }

@@ -21,7 +21,7 @@ func Demo(seed uint64) *Survey {
 		s: &Survey{
 			Title: "Brackle catchment, spring 2031 (invented)", Seed: seed,
 			Instrument: NewInstrument(),
-			Photometer: &Photometer{Axis: steps(230, 620, 2), PathCM: 1, Noise: 2e-4, Baseline: 5e-4},
+			Photometer: NewPhotometer(),
 			Components: []*Fluorophore{tryptophan, peat, algal, brightener, pyrene},
 		},
 	}

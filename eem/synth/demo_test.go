@@ -83,7 +83,7 @@ func TestDemoHoldsItsFaults(t *testing.T) {
 func TestDemoRecoversTruth(t *testing.T) {
 	for _, seed := range []uint64{0, 1, 2, 31} {
 		s := Demo(seed)
-		found := recover5(t, s)
+		found := solve(t, s)
 		errs := map[string][]float64{}
 		for _, r := range s.Truth() {
 			if v, ok := found[r.ID]; ok && r.Value > 0 {
@@ -102,8 +102,8 @@ func TestDemoRecoversTruth(t *testing.T) {
 	}
 }
 
-// recover5 returns contributions by id and component, in the bottle.
-func recover5(t *testing.T, s *Survey) map[string]map[string]float64 {
+// solve returns contributions by id and component, in the bottle.
+func solve(t *testing.T, s *Survey) map[string]map[string]float64 {
 	t.Helper()
 	day := func(b Bottle) int { return b.Measured.Day() }
 	blanks, scale := map[int][]float64{}, map[int]float64{}

@@ -30,6 +30,10 @@ type Instrument struct {
 	Bandpass    [2]float64
 	SecondOrder float64 // share of scattered light that the emission grating passes in second order
 
+	// Off is how many nanometres the light lies above what the excitation and
+	// the emission monochromator show.
+	Off [2]float64
+
 	Gain       float64 // counts per cm⁻¹ nm⁻¹ of light sent to the detector, at Lamp = Detector = 1
 	PerPhoton  float64 // counts a photon: shot noise has variance PerPhoton·signal
 	Offset     float64 // counts without light
@@ -67,8 +71,10 @@ func NewInstrument() *Instrument {
 func (in *Instrument) Scan(l Liquid, rnd *rand.Rand) *eem.EEM {
 	e := eem.FromCells(in.Grid, eem.Counts, make([]float64, in.Cells()))
 	if !in.Closed {
+		e.Ex, e.Em = shifted(in.Ex, in.Off[0]), shifted(in.Em, in.Off[1])
 		in.addFluorescence(e, l)
 		in.addScatter(e, l)
+		e.Grid = in.Grid
 	}
 	for i, v := range e.F {
 		v += in.Offset
@@ -81,6 +87,22 @@ func (in *Instrument) Scan(l Liquid, rnd *rand.Rand) *eem.EEM {
 		e.F[i] = v
 	}
 	return e
+}
+
+// shifted returns the axis moved by off nm.
+func shifted(a eem.Axis, off float64) eem.Axis {
+	if off == 0 {
+		return a
+	}
+	nm := a.Values()
+	for i := range nm {
+		nm[i] += off
+	}
+	b, err := eem.NewAxis(nm)
+	if err != nil {
+		panic(err)
+	}
+	return b
 }
 
 // Ideal returns what a perfect correction makes of the liquid: fluorescence in

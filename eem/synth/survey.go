@@ -1,6 +1,7 @@
 package synth
 
 import (
+	"fmt"
 	"hash/fnv"
 	"math"
 	"math/rand/v2"
@@ -29,7 +30,11 @@ type Bottle struct {
 	Power        float64 // of the lamp for this bottle; zero means the instrument's
 	Closed       bool    // measured with the shutter closed
 	NoAbsorbance bool    // no absorbance was measured
-	Layout       Layout
+
+	// Spoil changes the raw counts of a bottle before they are rounded: faults
+	// of a detector, a person or a file. nil leaves them.
+	Spoil  func(e *eem.EEM, rnd *rand.Rand)
+	Layout Layout
 }
 
 // Survey is a survey whose truth is known. Its raw numbers depend on Seed and a
@@ -39,6 +44,7 @@ type Survey struct {
 	Title      string
 	Seed       uint64
 	Instrument *Instrument
+	Setups     map[string]*Instrument // of the bottles whose Setup names one
 	Photometer *Photometer
 	Components []*Fluorophore // that the run sheet knows, in the order of its columns
 	Bottles    []Bottle
@@ -85,7 +91,7 @@ func (s *Survey) Truth() []TruthRow {
 func (s *Survey) Raw(i int) (*eem.EEM, *eem.Absorbance) {
 	b := s.Bottles[i]
 	rnd := s.generator(b.ID)
-	in := *s.Instrument
+	in := *s.instrument(b)
 	in.Closed = in.Closed || b.Closed
 	if b.Power != 0 {
 		in.Power = b.Power
@@ -95,6 +101,9 @@ func (s *Survey) Raw(i int) (*eem.EEM, *eem.Absorbance) {
 		l = l.Diluted(b.Dilution)
 	}
 	e := in.Scan(l, rnd)
+	if b.Spoil != nil {
+		b.Spoil(e, rnd)
+	}
 	roundTo(e.F, 10)
 	if b.NoAbsorbance {
 		return e, nil
@@ -102,6 +111,19 @@ func (s *Survey) Raw(i int) (*eem.EEM, *eem.Absorbance) {
 	a := s.Photometer.Scan(l, rnd)
 	roundTo(a.A, 1e5)
 	return e, a
+}
+
+// instrument returns what measured a bottle. It panics when the bottle's Setup
+// is not in Setups.
+func (s *Survey) instrument(b Bottle) *Instrument {
+	if b.Setup == "" {
+		return s.Instrument
+	}
+	in, ok := s.Setups[b.Setup]
+	if !ok {
+		panic(fmt.Sprintf("synth: bottle %s has setup %q, which the survey lacks", b.ID, b.Setup))
+	}
+	return in
 }
 
 func (s *Survey) generator(id string) *rand.Rand {

@@ -7,8 +7,10 @@ import (
 	"fmt"
 	"io/fs"
 	"iter"
+	"maps"
 	"os"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
 	"time"
@@ -68,9 +70,10 @@ func (s *Survey) isOurs(dir string) (bool, error) {
 // time. The order is fixed and survey.toml comes first.
 func (s *Survey) Files() iter.Seq[File] {
 	return func(yield func(File) bool) {
-		head := []File{
-			{"survey.toml", s.settings()}, {"runsheet.csv", s.sheet()}, {"truth.csv", s.truth()},
-			{"correction/excitation.csv", s.factors(true)}, {"correction/emission.csv", s.factors(false)},
+		head := []File{{"survey.toml", s.settings()}, {"runsheet.csv", s.sheet()}, {"truth.csv", s.truth()}}
+		head = append(head, s.Instrument.factors("")...)
+		for _, name := range slices.Sorted(maps.Keys(s.Setups)) {
+			head = append(head, s.Setups[name].factors(name)...)
 		}
 		for _, f := range head {
 			if !yield(f) {
@@ -103,25 +106,45 @@ func absorbancePath(b Bottle) string {
 func (s *Survey) settings() []byte {
 	var b bytes.Buffer
 	b.WriteString("# An invented survey: nothing in this folder was measured. truth.csv says what its bottles hold.\n")
-	fmt.Fprintf(&b, "title = %q\n\n[scans]\nsaturation = %g\noffset = %g\n\n", s.Title, s.Instrument.Saturation, s.Instrument.Offset)
-	b.WriteString("[correct]\nexcitation_factors = \"correction/excitation.csv\"\nemission_factors = \"correction/emission.csv\"\n")
+	fmt.Fprintf(&b, "title = %q\n", s.Title)
+	s.Instrument.settings(&b, "")
+	for _, name := range slices.Sorted(maps.Keys(s.Setups)) {
+		s.Setups[name].settings(&b, name)
+	}
 	if s.Settings != "" {
 		b.WriteString("\n" + s.Settings)
 	}
 	return b.Bytes()
 }
 
-// factors writes correction factors at every nanometre, 5 nm beyond the grid,
-// so that reading between them costs less than 1e-5.
-func (s *Survey) factors(excitation bool) []byte {
-	csv := Layout{Delimiter: ","}
-	in := s.Instrument
-	if excitation {
-		a := steps(in.Ex.First()-5, in.Ex.Last()+5, 1)
-		return csv.spectrum("factor", a, in.ExcitationFactors(a), 6)
+// settings writes what must be known of an instrument, under the name of a
+// setup, or for the whole survey when that is empty.
+func (in *Instrument) settings(b *bytes.Buffer, setup string) {
+	scans, correct := "[scans]\n", "\n[correct]\n"
+	if setup != "" {
+		scans, correct = fmt.Sprintf("[setup.%q]\n", setup), ""
 	}
-	a := steps(in.Em.First()-5, in.Em.Last()+5, 1)
-	return csv.spectrum("factor", a, in.EmissionFactors(a), 6)
+	fmt.Fprintf(b, "\n%ssaturation = %s\noffset = %s\n", scans, decimal(in.Saturation), decimal(in.Offset))
+	fmt.Fprintf(b, "%sexcitation_factors = %q\nemission_factors = %q\n", correct, factorPath(setup, "excitation"), factorPath(setup, "emission"))
+}
+
+func factorPath(setup, axis string) string {
+	if setup != "" {
+		axis = setup + "-" + axis
+	}
+	return "correction/" + axis + ".csv"
+}
+
+// factors writes the correction factors at every nanometre, 5 nm beyond the
+// grid, so that reading between them costs less than 1e-4.
+func (in *Instrument) factors(setup string) []File {
+	csv := Layout{Delimiter: ","}
+	ex := steps(in.Ex.First()-5, in.Ex.Last()+5, 1)
+	em := steps(in.Em.First()-5, in.Em.Last()+5, 1)
+	return []File{
+		{factorPath(setup, "excitation"), csv.spectrum("factor", ex, in.ExcitationFactors(ex), 6)},
+		{factorPath(setup, "emission"), csv.spectrum("factor", em, in.EmissionFactors(em), 6)},
+	}
 }
 
 func (s *Survey) truth() []byte {
@@ -178,6 +201,8 @@ func table(rows [][]string) []byte {
 	}
 	return b.Bytes()
 }
+
+func decimal(v float64) string { return strconv.FormatFloat(v, 'f', -1, 64) }
 
 func number(v float64) string { return strconv.FormatFloat(v, 'g', -1, 64) }
 
