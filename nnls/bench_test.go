@@ -1,8 +1,13 @@
 package nnls_test
 
 import (
+	"encoding/binary"
+	"errors"
+	"flag"
 	"fmt"
 	"math"
+	"os"
+	"path/filepath"
 	"testing"
 
 	"gonum.org/v1/gonum/mat"
@@ -10,11 +15,12 @@ import (
 	"tarnlight/nnls"
 )
 
-// survey is a batch that testdata/nnls/ratio.py draws too: n smooth bands over m
+// survey draws a batch: n smooth bands over m
 // rows, samples mixed from them with 1 % of noise, a third of the amounts zero.
 // With gaps, each sample misses one run of rows of its own, up to a fifth of
 // them, and every fiftieth row or so beside.
-func survey(samples, m, n int, gaps bool) (a, b *mat.Dense) {
+func survey(s surveyShape) (a, b *mat.Dense) {
+	samples, m, n := s.samples, s.m, s.n
 	d := newDraw(samples + m + n)
 	a = mat.NewDense(m, n, nil)
 	for j := range n {
@@ -38,7 +44,7 @@ func survey(samples, m, n int, gaps bool) (a, b *mat.Dense) {
 			}
 			row[k] = v
 		}
-		if gaps {
+		if s.gaps {
 			from := int(d.unit() * float64(m))
 			length := int(d.unit() * float64(m) / 5)
 			for k := from; k < min(m, from+length); k++ {
@@ -52,24 +58,61 @@ func survey(samples, m, n int, gaps bool) (a, b *mat.Dense) {
 	return a, b
 }
 
-var surveys = []struct {
+type surveyShape struct {
 	samples, m, n int
 	gaps          bool
-}{
+}
+
+var surveys = []surveyShape{
 	{1000, 4756, 6, false},
 	{1000, 4756, 6, true},
 	{100000, 500, 8, false},
 	{100000, 500, 8, true},
 }
 
+func (s surveyShape) String() string {
+	name := fmt.Sprintf("%dx%dx%d", s.samples, s.m, s.n)
+	if s.gaps {
+		name += "gaps"
+	}
+	return name
+}
+
+var surveyDir = flag.String("survey", "", "write the surveys of BenchmarkBatch and their answers to this folder")
+
+// TestWriteSurveys writes a, b and x of each survey as raw float64, by rows, for
+// testdata/nnls/ratio.py.
+func TestWriteSurveys(t *testing.T) {
+	if *surveyDir == "" {
+		t.Skip("-survey not set")
+	}
+	for _, s := range surveys {
+		a, b := survey(s)
+		x := mat.NewDense(s.samples, s.n, nil)
+		batch, err := nnls.NewBatch(a, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if _, err := batch.SolveTo(x, b, nil); err != nil {
+			t.Fatal(err)
+		}
+		for name, v := range map[string]*mat.Dense{"a": a, "b": b, "x": x} {
+			f, err := os.Create(filepath.Join(*surveyDir, s.String()+"."+name))
+			if err != nil {
+				t.Fatal(err)
+			}
+			err = binary.Write(f, binary.NativeEndian, v.RawMatrix().Data)
+			if err = errors.Join(err, f.Close()); err != nil {
+				t.Fatal(err)
+			}
+		}
+	}
+}
+
 func BenchmarkBatch(b *testing.B) {
 	for _, s := range surveys {
-		name := fmt.Sprintf("%dx%dx%d", s.samples, s.m, s.n)
-		if s.gaps {
-			name += "/gaps"
-		}
-		b.Run(name, func(b *testing.B) {
-			a, rhs := survey(s.samples, s.m, s.n, s.gaps)
+		b.Run(s.String(), func(b *testing.B) {
+			a, rhs := survey(s)
 			x := mat.NewDense(s.samples, s.n, nil)
 			b.ReportAllocs()
 			for b.Loop() {
@@ -102,7 +145,7 @@ func BenchmarkMatrixProduct(b *testing.B) {
 }
 
 func BenchmarkSolveTo(b *testing.B) {
-	a, rhs := survey(1, 4756, 6, false)
+	a, rhs := survey(surveyShape{1, 4756, 6, false})
 	x := make([]float64, 6)
 	for b.Loop() {
 		if _, err := nnls.SolveTo(x, a, rhs.RawRowView(0), nil); err != nil {
