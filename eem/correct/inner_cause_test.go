@@ -1,0 +1,68 @@
+package correct_test
+
+import (
+	"math"
+	"testing"
+
+	"gonum.org/v1/gonum/diff/fd"
+
+	"tarnlight/eem"
+	"tarnlight/eem/correct"
+)
+
+// TestFactorUncertainty: METHODS 1.3 (computed): u(k)/k of the centre form is
+// 0.33, 0.81 and 1.63 % for u(A) of 0.002, 0.005 and 0.01 each, ln(10)·b for a
+// baseline error b in both.
+func TestFactorUncertainty(t *testing.T) {
+	for u, want := range map[float64]float64{0.002: 0.0033, 0.005: 0.0081, 0.01: 0.0163} {
+		x, m := correct.Geometry{}.Sensitivity(0.3, 0.1)
+		if got := math.Hypot(x, m) * u; math.Abs(got-want) > 5e-5 {
+			t.Errorf("u(A) %g: %.5f, want %.4f", u, got, want)
+		}
+		near(t, "baseline", (x+m)*u, math.Ln10*u, 1e-14)
+	}
+}
+
+// TestSensitivity holds the derivatives against finite differences.
+func TestSensitivity(t *testing.T) {
+	w := [2]float64{0.2, 0.7}
+	for _, g := range []correct.Geometry{{}, {Ex: w, Em: w}, {Ex: [2]float64{0, 1}}, {Form: correct.FrontFace}, {Form: correct.FrontFace, Ex: w},
+		{Form: correct.Transmission}, {Form: correct.Transmission, Ex: w}, {PathCM: 0.4}} {
+		for _, a := range [][2]float64{{1e-5, 0}, {0.02, 0.01}, {0.5, 0.1}, {2, 1}, {1, 1}} {
+			x, m := g.Sensitivity(a[0], a[1])
+			set := &fd.Settings{Formula: fd.Central, Step: 1e-5}
+			wantX := fd.Derivative(func(v float64) float64 { return math.Log(g.Factor(v, a[1])) }, a[0], set)
+			wantM := fd.Derivative(func(v float64) float64 { return math.Log(g.Factor(a[0], v)) }, a[1], set)
+			near(t, g.Form+" ex", x, wantX, 1e-8)
+			near(t, g.Form+" em", m, wantM, 1e-8)
+		}
+	}
+}
+
+// TestAbsorbanceCauses: the shapes are the change of the corrected EEM when
+// baseline or path are off by one standard uncertainty.
+func TestAbsorbanceCauses(t *testing.T) {
+	g := grid(t, []float64{250, 300}, []float64{310, 400})
+	raw := eem.FromCells(g, eem.Counts, []float64{5, 6, 7, 8})
+	a := &eem.Absorbance{Axis: grid(t, []float64{240, 420}, []float64{1}).Ex, A: []float64{0.8, 0.1}, PathCM: 1}
+	geo := correct.Geometry{Ex: [2]float64{0.3, 0.7}, Em: [2]float64{0.3, 0.7}}
+	e, _ := correct.InnerFilter(raw, a, geo, 0)
+	const u = 1e-6 // small, so that the first derivative tells all
+	out := correct.AbsorbanceCauses(e, a, geo, u, u, "b7")
+	shifted := a.Times(1)
+	for i := range shifted.A {
+		shifted.A[i] += u
+	}
+	longer := a.Times(1)
+	longer.PathCM *= 1 + u
+	for n, b := range []*eem.Absorbance{shifted, longer} {
+		c := out.Causes[n]
+		if c.Scope != eem.OfBottle || c.Key != "b7" {
+			t.Errorf("%+v", c)
+		}
+		f, _ := correct.InnerFilter(raw, b, geo, 0)
+		for i := range f.F {
+			near(t, c.Name, c.Shape[i], f.F[i]-e.F[i], 1e-5)
+		}
+	}
+}
