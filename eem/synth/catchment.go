@@ -3,10 +3,10 @@ package synth
 import "fmt"
 
 // The fluorophores of the demo. Places of bands, molar absorption and yields are
-// of the order that handbooks give for such substances (METHODS 2.8 and 8 name
-// sources; pyrene's absorption from memory); the extracts are invented.
+// of the order that handbooks give for such substances, widths and lesser bands
+// from memory; the extracts and the dyestuff are invented.
 var (
-	// tryptophan: 5,500 L mol⁻¹ cm⁻¹ at 280 nm, yield 0.13, 204.2 g/mol.
+	// tryptophan: 5,500 L mol⁻¹ cm⁻¹ at 280 nm, yield 0.13 (Chen 1967), 204.2 g/mol.
 	tryptophan = &Fluorophore{Name: "tryptophan", Unit: "µg/L", Yield: 0.13,
 		Absorbs: Band{PeakAt(279, 1500, 2.7e-5), PeakAt(220, 2400, 1.6e-4)},
 		Emits:   Band{PeakAt(352, 1950, 1)}}

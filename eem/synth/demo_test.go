@@ -84,6 +84,14 @@ func TestDemoRecoversTruth(t *testing.T) {
 	for _, seed := range []uint64{0, 1, 2, 31} {
 		s := Demo(seed)
 		found := solve(t, s)
+		for id, v := range found {
+			if strings.HasPrefix(id, "FB") {
+				continue // nothing in it to be explained
+			}
+			if spill := v["explained"] < 0.9; spill != (id == "W310") {
+				t.Errorf("seed %d, %s: references explain %.1f %% of the signal", seed, id, 100*v["explained"])
+			}
+		}
 		errs := map[string][]float64{}
 		for _, r := range s.Truth() {
 			if v, ok := found[r.ID]; ok && r.Value > 0 {
@@ -102,7 +110,8 @@ func TestDemoRecoversTruth(t *testing.T) {
 	}
 }
 
-// solve returns contributions by id and component, in the bottle.
+// solve returns contributions by id and component, in the bottle, and under
+// "explained" the share of the sum of squares.
 func solve(t *testing.T, s *Survey) map[string]map[string]float64 {
 	t.Helper()
 	day := func(b Bottle) int { return b.Measured.Day() }
@@ -203,10 +212,14 @@ func leastSquares(t *testing.T, s *Survey, x []float64, refs [][]float64) map[st
 	if err := sol.SolveVec(mat.NewDense(len(b), len(refs), a), mat.NewVecDense(len(b), b)); err != nil {
 		t.Fatal(err)
 	}
-	out := map[string]float64{}
+	out := map[string]float64{"explained": 1}
 	for f, of := range s.Components {
 		out[of.Name] = sol.AtVec(f)
 	}
+	var r mat.VecDense
+	r.MulVec(mat.NewDense(len(b), len(refs), a), &sol)
+	r.SubVec(mat.NewVecDense(len(b), b), &r)
+	out["explained"] -= mat.Dot(&r, &r) / mat.Dot(mat.NewVecDense(len(b), b), mat.NewVecDense(len(b), b))
 	return out
 }
 

@@ -48,7 +48,7 @@ func TestNoAbsorberIsLinear(t *testing.T) {
 	}
 }
 
-// METHODS CHK-1a, computed from (1 − e^−x)/x: what the whole path emits against
+// CHK-1a, computed from (1 − e^−x)/x: what the whole path emits against
 // the linear form.
 func TestWholePathFollowsLawOfFluorescence(t *testing.T) {
 	in := plain()
@@ -67,7 +67,7 @@ func TestWholePathFollowsLawOfFluorescence(t *testing.T) {
 	}
 }
 
-// METHODS CHK-1c, computed: inner-filter factors of the window 0.3–0.7 cm.
+// CHK-1c, computed: inner-filter factors of the window 0.3–0.7 cm.
 func TestWindowFactors(t *testing.T) {
 	for _, c := range []struct{ a, k float64 }{
 		{0.06, 1.07138}, {0.10, 1.12162}, {0.30, 1.40805}, {0.50, 1.76266},
@@ -128,7 +128,7 @@ func TestBandArea(t *testing.T) {
 	}
 }
 
-// METHODS CHK-2b, computed from 10⁷/(10⁷/ex − shift): the Raman maximum of water
+// CHK-2b, computed from 10⁷/(10⁷/ex − shift): the Raman maximum of water
 // lies between the two conventions, 3382 and 3400 cm⁻¹, to half a nanometre.
 func TestRamanPlace(t *testing.T) {
 	for _, c := range []struct{ ex, low, high float64 }{

@@ -101,7 +101,8 @@ func TestTrilinearGaps(t *testing.T) {
 }
 
 func TestTrilinearScores(t *testing.T) {
-	_, truth := Trilinear(TrilinearSpec{Samples: 2000, Components: 3, Correlation: 0.96, Seed: 1})
+	_, truth := Trilinear(TrilinearSpec{Samples: 2000, Components: 3, Correlation: 0.96, Seed: 1,
+		Ex: steps(250, 400, 25), Em: steps(300, 500, 25)})
 	if r := logCorrelation(truth.Scores); math.Abs(r-0.96) > 0.01 {
 		t.Errorf("correlation of log scores %g, want 0.96", r)
 	}
