@@ -23,6 +23,7 @@ type active struct {
 	banned     []bool    // n: cannot become free before something else changes
 	x          []float64 // n, feasible
 	s          []float64 // least squares on the free variables, in their order
+	d          []float64 // n, a correction
 	iterations int
 }
 
@@ -32,7 +33,7 @@ func newActive(k, n int) *active {
 		t: make([]float64, k*n), c: make([]float64, k),
 		norm: make([]float64, n), order: make([]int, 0, k),
 		free: make([]bool, n), banned: make([]bool, n),
-		x: make([]float64, n), s: make([]float64, k),
+		x: make([]float64, n), s: make([]float64, k), d: make([]float64, n),
 	}
 }
 
@@ -256,11 +257,33 @@ func rotate(v []float64, i int, cos, sin float64) {
 
 // solve writes least squares on the free variables into s.
 func (a *active) solve() {
+	copy(a.s, a.c[:len(a.order)])
 	for q := len(a.order) - 1; q >= 0; q-- {
-		v := a.c[q]
-		for l := q + 1; l < len(a.order); l++ {
-			v -= a.t[a.order[l]*a.k+q] * a.s[l]
+		col := a.column(a.order[q])
+		a.s[q] /= col[q]
+		for l, x := range col[:q] {
+			a.s[l] -= x * a.s[q]
 		}
-		a.s[q] = v / a.t[a.order[q]*a.k+q]
 	}
+}
+
+// seminormal solves TᵀT·d = g on the free variables, T their triangle, and
+// returns d, 0 elsewhere, and ‖T·d‖².
+func (a *active) seminormal(g []float64) (d []float64, gain float64) {
+	u := a.s
+	for q, j := range a.order {
+		col := a.column(j)
+		u[q] = (g[j] - dot(col[:q], u)) / col[q]
+		gain += u[q] * u[q]
+	}
+	clear(a.d)
+	for q := len(a.order) - 1; q >= 0; q-- {
+		j := a.order[q]
+		v := u[q] / a.column(j)[q]
+		a.d[j] = v
+		for l, x := range a.column(j)[:q] {
+			u[l] -= x * v
+		}
+	}
+	return a.d, gain
 }

@@ -46,7 +46,7 @@ func Covariance(a mat.Matrix, b, x []float64, s *Settings) (*Spread, error) {
 	}
 	t, c := p.reduce()
 	act := newActive(t.k, n)
-	act.load(&t, c, norm2(p.b))
+	act.load(&t, c, p.normB)
 	act.restore(x)
 	return act.spread(p), nil
 }

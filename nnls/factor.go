@@ -1,7 +1,9 @@
 package nnls
 
 import (
+	"encoding/binary"
 	"math"
+	"math/bits"
 
 	"gonum.org/v1/gonum/lapack/lapack64"
 	"gonum.org/v1/gonum/mat"
@@ -12,9 +14,9 @@ type factor struct {
 	m, n, k int       // rows used, columns, rank
 	rows    []int     // which rows of the caller's matrix are used
 	half    []float64 // √w of the rows used, scaled; nil where all are 1
-	a       *mat.Dense
-	ea      []int // column j of a is W^½·a_j·2^−ea[j]
-	ew      int   // half was scaled by 2^−ew
+	a       []float64 // m×n by rows
+	ea      []int     // column j of a is W^½·a_j·2^−ea[j]
+	ew      int       // half was scaled by 2^−ew
 	q       []float64
 	stride  int // of q, even; columns from k on are zero
 	tri     triangle
@@ -27,7 +29,7 @@ func newFactor(p *problem) *factor {
 	k := tri.k
 	f := &factor{
 		m: p.m, n: p.n, k: k, rows: p.rows, half: p.half,
-		a: p.a, ea: p.ea, ew: p.ew, stride: padded(k), tri: tri,
+		a: p.a.RawMatrix().Data, ea: p.ea, ew: p.ew, stride: padded(k), tri: tri,
 	}
 	if k == 0 {
 		return f
@@ -46,7 +48,7 @@ func newFactor(p *problem) *factor {
 
 // without returns the factor of the rows that are not gone, which must not be all.
 func (f *factor) without(gone []byte) *factor {
-	p := &problem{n: f.n, ew: f.ew, ea: make([]int, f.n)}
+	p := &problem{n: f.n, ew: f.ew}
 	var at []int
 	for i, r := range f.rows {
 		if !bit(gone, i) {
@@ -58,7 +60,7 @@ func (f *factor) without(gone []byte) *factor {
 		}
 	}
 	p.m = len(at)
-	p.a, _ = scaledColumns(p.ea, f.a, at, nil) // f.a is finite
+	p.a, _, p.ea, _ = scaledColumns(mat.NewDense(f.m, f.n, f.a), at, nil) // finite
 	for j, e := range f.ea {
 		p.ea[j] += e
 	}
@@ -126,8 +128,16 @@ func (d *reduced) reduce(f *factor, gone []byte, missing int) bool {
 func (d *reduced) gram(f *factor, gone []byte, fromMissing bool) {
 	clear(d.h)
 	s, count := f.stride, 0
-	for i := range f.m {
-		if bit(gone, i) == fromMissing {
+	for at := 0; at < len(gone); at += 8 {
+		word := binary.LittleEndian.Uint64(gone[at:])
+		if !fromMissing {
+			word = ^word
+		}
+		for ; word != 0; word &= word - 1 {
+			i := at*8 + bits.TrailingZeros64(word)
+			if i >= f.m {
+				break
+			}
 			copy(d.q[count*s:(count+1)*s], f.q[i*s:(i+1)*s])
 			if count++; count == block {
 				d.addGram(f.k, s, count)

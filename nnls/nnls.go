@@ -105,7 +105,7 @@ func SolveTo(dst []float64, a mat.Matrix, b []float64, s *Settings) (Result, err
 	}
 	t, c := p.reduce()
 	act := newActive(t.k, n)
-	act.load(&t, c, norm2(p.b))
+	act.load(&t, c, p.normB)
 	act.warm(s.Warm)
 	res := Result{Rank: t.k, Rows: p.m}
 	res.Status = act.run(s.limit(n))

@@ -17,14 +17,16 @@ const eps = 1.0 / (1 << 53)
 // scaled by a power of two to a norm in [½, 1): exact, and proof against
 // overflow and underflow of squares. A zero column has exponent 0.
 type problem struct {
-	m, n int
-	a    *mat.Dense // m×n
-	b    []float64  // m
-	rows []int      // which rows of the caller's matrix are used
-	half []float64  // √w·2^−ew of them; nil where all weights are 1
-	ea   []int      // a's column j is W^½·a_j·2^−ea[j]
-	eb   int        // b is W^½·b·2^−eb
-	ew   int        // weights were scaled by 2^−2ew
+	m, n  int
+	a     *mat.Dense // m×n
+	b     []float64  // m
+	norm  []float64  // n, of the columns of a
+	normB float64    // of b
+	rows  []int      // which rows of the caller's matrix are used
+	half  []float64  // √w·2^−ew of them; nil where all weights are 1
+	ea    []int      // a's column j is W^½·a_j·2^−ea[j]
+	eb    int        // b is W^½·b·2^−eb
+	ew    int        // weights were scaled by 2^−2ew
 }
 
 func newProblem(a mat.Matrix, b, weights []float64) (*problem, error) {
@@ -36,37 +38,83 @@ func newProblem(a mat.Matrix, b, weights []float64) (*problem, error) {
 		return nil, fmt.Errorf("nnls: no rows: a has %d, all of weight 0", len(b))
 	}
 	_, n := a.Dims()
-	p := &problem{
-		m: len(rows), n: n, rows: rows, half: half,
-		b: make([]float64, len(rows)), ea: make([]int, n), ew: ew,
-	}
-	for k, i := range rows {
-		if p.b[k] = b[i]; !finite(b[i]) {
+	p := &problem{m: len(rows), n: n, rows: rows, half: half, ew: ew}
+	for _, i := range rows {
+		if !finite(b[i]) {
 			return nil, fmt.Errorf("nnls: b[%d] is %v; give the row weight 0 to leave it out", i, b[i])
 		}
 	}
-	p.eb = scale(p.b, half)
-	if p.a, err = scaledColumns(p.ea, a, rows, half); err != nil {
-		return nil, err
-	}
-	return p, nil
+	bs, normB, eb, _ := scaledColumns(mat.NewVecDense(len(b), b), rows, half)
+	p.b, p.normB, p.eb = bs.RawMatrix().Data, normB[0], eb[0]
+	p.a, p.norm, p.ea, err = scaledColumns(a, rows, half)
+	return p, err
 }
 
-// scaledColumns returns the rows of a times half, every column scaled to a norm
-// in [½, 1), and puts the exponents in e.
-func scaledColumns(e []int, a mat.Matrix, rows []int, half []float64) (*mat.Dense, error) {
-	out := mat.NewDense(len(rows), len(e), nil)
-	col := make([]float64, len(rows))
-	for j := range e {
-		for k, i := range rows {
-			if col[k] = a.At(i, j); !finite(col[k]) {
-				return nil, fmt.Errorf("nnls: a[%d,%d] is %v; give the row weight 0 to leave it out", i, j, col[k])
+// scaledColumns returns the given rows of a times half (nil: 1), every column
+// scaled to a norm in [½, 1), those norms, and the exponents taken out.
+func scaledColumns(a mat.Matrix, rows []int, half []float64) (out *mat.Dense, norm []float64, e []int, err error) {
+	_, n := a.Dims()
+	out = mat.NewDense(len(rows), n, nil)
+	v, most := out.RawMatrix().Data, make([]float64, n)
+	for k, i := range rows {
+		for j := range most {
+			x := a.At(i, j)
+			if !finite(x) {
+				return nil, nil, nil, fmt.Errorf("nnls: a[%d,%d] is %v; give the row weight 0 to leave it out", i, j, x)
 			}
+			v[k*n+j] = x
+			most[j] = max(most[j], math.Abs(x))
 		}
-		e[j] = scale(col, half)
-		out.SetCol(j, col)
 	}
-	return out, nil
+	e = exponents(most)
+	norm = timesPowers(v, half, e)
+	for j, f := range exponents(norm) {
+		e[j] += f
+		norm[j] = math.Ldexp(norm[j], -f)
+		most[j] = math.Ldexp(1, -f)
+	}
+	for at := 0; at < len(v); at += n {
+		for j, f := range most {
+			v[at+j] *= f
+		}
+	}
+	return out, norm, e, nil
+}
+
+// timesPowers multiplies row k of v by half[k] and column j by 2^−e[j], and
+// returns the norms of the columns.
+func timesPowers(v, half []float64, e []int) (norm []float64) {
+	n := len(e)
+	norm = make([]float64, n)
+	first, second := make([]float64, n), make([]float64, n)
+	for j, p := range e { // in two steps, as 2^−e may exceed the range
+		first[j], second[j] = math.Ldexp(1, -p/2), math.Ldexp(1, -p+p/2)
+	}
+	for k := 0; k*n < len(v); k++ {
+		h := 1.0
+		if half != nil {
+			h = half[k]
+		}
+		row := v[k*n : (k+1)*n]
+		for j, x := range row {
+			x = x * first[j] * second[j] * h
+			row[j] = x
+			norm[j] += x * x
+		}
+	}
+	for j, s := range norm {
+		norm[j] = math.Sqrt(s)
+	}
+	return norm
+}
+
+// exponents returns e with v in [½, 1)·2^e, 0 for 0.
+func exponents(v []float64) []int {
+	e := make([]int, len(v))
+	for j, x := range v {
+		_, e[j] = math.Frexp(x)
+	}
+	return e
 }
 
 // rootWeights returns the rows of weight > 0 and √w·2^−e of them, at most 1; nil
@@ -94,34 +142,6 @@ func rootWeights(w []float64, m int) (rows []int, half []float64, e int, err err
 		}
 	}
 	return rows, half, e, nil
-}
-
-// scale multiplies v by half (nil: 1) and by the power of two that brings its
-// norm to [½, 1), and returns the exponent taken out.
-func scale(v, half []float64) int {
-	most := 0.0
-	for _, x := range v {
-		most = max(most, math.Abs(x))
-	}
-	if most == 0 {
-		return 0
-	}
-	_, e := math.Frexp(most)
-	for i := range v {
-		v[i] = math.Ldexp(v[i], -e)
-	}
-	for i, h := range half {
-		v[i] *= h
-	}
-	norm := norm2(v)
-	if norm == 0 {
-		return 0
-	}
-	_, f := math.Frexp(norm)
-	for i := range v {
-		v[i] = math.Ldexp(v[i], -f)
-	}
-	return e + f
 }
 
 // reduce returns the triangle of the pivoted QR factorisation of a, cut at the
@@ -178,27 +198,17 @@ func (p *problem) unscaleTo(dst, y []float64) {
 
 // certify returns the residual norm, unscaled, and the violation of y.
 func (p *problem) certify(y []float64) (norm, v float64) {
-	r := make([]float64, p.m)
-	for i := range r {
-		r[i] = residual(p.b[i], p.a.RawRowView(i), y)
-	}
 	w := make([]float64, p.n)
-	cols := make([]float64, p.n)
-	for j := range w {
-		w[j], cols[j] = columnDot(p.a, j, r)
+	square := 0.0
+	for i, b := range p.b {
+		row := p.a.RawRowView(i)
+		r := residual(b, row, y)
+		square += r * r
+		for j, x := range row {
+			w[j] += x * r
+		}
 	}
-	return math.Ldexp(norm2(r), p.eb+p.ew), violation(y, w, cols, norm2(p.b))
-}
-
-func columnDot(a *mat.Dense, j int, r []float64) (dot, norm float64) {
-	m, _ := a.Dims()
-	raw := a.RawMatrix()
-	col := make([]float64, m)
-	for i := range col {
-		col[i] = raw.Data[i*raw.Stride+j]
-		dot += col[i] * r[i]
-	}
-	return dot, norm2(col)
+	return math.Ldexp(math.Sqrt(square), p.eb+p.ew), violation(y, w, p.norm, p.normB)
 }
 
 func finite(v float64) bool { return v-v == 0 }

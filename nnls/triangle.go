@@ -36,3 +36,24 @@ func cutTriangle(qr blas64.General, pivot []int) triangle {
 	t.measure()
 	return t
 }
+
+// subtract subtracts t·y from z.
+func (t *triangle) subtract(z, y []float64) {
+	for j, v := range y {
+		if v == 0 {
+			continue
+		}
+		for i, x := range t.column(j) {
+			z[i] -= x * v
+		}
+	}
+}
+
+func dot(x, y []float64) float64 {
+	sum := 0.0
+	y = y[:len(x)]
+	for i, v := range x {
+		sum += v * y[i]
+	}
+	return sum
+}
