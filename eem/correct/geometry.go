@@ -76,6 +76,32 @@ func (g Geometry) Factor(aEx, aEm float64) float64 {
 	panic(fmt.Sprintf("correct: unknown inner-filter form %q", g.Form))
 }
 
+// Factors returns Factor for every pair of absorbances per cm, len(ax) × len(am)
+// row-major. Right-angle, a product of one number for each excitation and one
+// for each emission, takes a sum of calls to exp and not a product.
+func (g Geometry) Factors(ax, am []float64) []float64 {
+	out := make([]float64, 0, len(ax)*len(am))
+	if g.Form != "" && g.Form != RightAngle {
+		for _, x := range ax {
+			for _, m := range am {
+				out = append(out, g.Factor(x, m))
+			}
+		}
+		return out
+	}
+	km := make([]float64, len(am))
+	for k, m := range am {
+		km[k] = meanInverse(math.Ln10*m, g.stretch(g.Em))
+	}
+	for _, x := range ax {
+		kx := meanInverse(math.Ln10*x, g.stretch(g.Ex))
+		for _, m := range km {
+			out = append(out, kx*m)
+		}
+	}
+	return out
+}
+
 // stretch gives the viewed stretch with the meaning of zero filled in.
 func (g Geometry) stretch(w [2]float64) [2]float64 {
 	if w != [2]float64{} {

@@ -101,6 +101,19 @@ func TestCellLength(t *testing.T) {
 	}
 }
 
+// TestFactors: the table is Factor at every pair.
+func TestFactors(t *testing.T) {
+	ax, am := []float64{0, 0.3, 1}, []float64{0.2, 0}
+	for _, form := range []string{"", correct.RightAngle, correct.FrontFace, correct.Transmission} {
+		g := correct.Geometry{Form: form, Ex: [2]float64{0.2, 0.6}, Em: [2]float64{0.1, 0.3}}
+		for i, f := range g.Factors(ax, am) {
+			if want := g.Factor(ax[i/2], am[i%2]); f != want {
+				t.Errorf("%q, %d: %g, want %g", form, i, f, want)
+			}
+		}
+	}
+}
+
 // TestGeometryCheck: what cannot be is refused in words.
 func TestGeometryCheck(t *testing.T) {
 	for _, g := range []correct.Geometry{

@@ -34,24 +34,19 @@ func InnerFilter(e *eem.EEM, a *eem.Absorbance, g Geometry, limit float64) (out 
 	limit = defaultLimit("absorbance-limit", limit)
 	ax, am := perCM(a, e.Ex), perCM(a, e.Em)
 	lost, largest := 0, 1.0
-	for j := range ax {
-		for k := range am {
-			i := e.Index(j, k)
-			f := g.Factor(ax[j], am[k])
-			if math.IsNaN(f) || math.IsInf(f, 0) {
-				if measured(e, i) {
-					lost++
-				}
-				if e.Why[i] == eem.Measured {
-					out.Drop(i, eem.NoAbsorbance)
-				}
-				continue
+	for i, f := range g.Factors(ax, am) {
+		here := measured(e, i)
+		if math.IsNaN(f) || math.IsInf(f, 0) {
+			if here {
+				lost++
+				out.Drop(i, eem.NoAbsorbance)
 			}
-			factor[i] = f
-			times(out, i, f)
-			if measured(e, i) {
-				largest = max(largest, f)
-			}
+			continue
+		}
+		factor[i] = f
+		times(out, i, f)
+		if here {
+			largest = max(largest, f)
 		}
 	}
 	out.Note(record(StepInner, "multiplied by the factor of each cell, largest "+num(largest), g.params(largest, limit)...))

@@ -2,6 +2,7 @@ package scatter
 
 import (
 	"fmt"
+	"math"
 
 	"tarnlight/eem"
 )
@@ -16,9 +17,9 @@ func Mask(e *eem.EEM, bands []Band) *eem.EEM {
 	out := e.Clone()
 	var n [eem.NumReasons]int
 	for j := range e.Ex.Len() {
-		ex := e.Ex.At(j)
+		cuts := cutsAt(bands, e.Ex.At(j))
 		for k := range e.Em.Len() {
-			if why, cut := reason(bands, ex, e.Em.At(k)); cut {
+			if why, cut := reason(cuts, e.Em.At(k)); cut {
 				out.Drop(e.Index(j, k), why)
 				n[why]++
 			}
@@ -37,17 +38,31 @@ func Mask(e *eem.EEM, bands []Band) *eem.EEM {
 	return out
 }
 
-// reason says whether a band, or the space below the first Rayleigh line, holds
-// the cell.
-func reason(bands []Band, ex, em float64) (eem.Reason, bool) {
+// cut is a stretch of emission to leave out of one scan, nm, ends included.
+type cut struct {
+	lo, hi float64
+	why    eem.Reason
+}
+
+// cutsAt lists what the bands take at ex nm, the space below the first Rayleigh
+// line last.
+func cutsAt(bands []Band, ex float64) []cut {
+	var out, below []cut
 	for _, b := range bands {
-		if lo, hi := b.Range(ex); em >= lo && em <= hi {
-			return b.Reason, true
+		lo, hi := b.Range(ex)
+		out = append(out, cut{lo, hi, b.Reason})
+		if b.Order == 1 && b.Shift == 0 {
+			below = append(below, cut{math.Inf(-1), lo, eem.BelowExcitation})
 		}
 	}
-	for _, b := range bands {
-		if lo, _ := b.Range(ex); b.Order == 1 && b.Shift == 0 && em < lo {
-			return eem.BelowExcitation, true
+	return append(out, below...)
+}
+
+// reason says whether a cut holds em, and the first one that does.
+func reason(cuts []cut, em float64) (eem.Reason, bool) {
+	for _, c := range cuts {
+		if em >= c.lo && em <= c.hi {
+			return c.why, true
 		}
 	}
 	return eem.Measured, false
