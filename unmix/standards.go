@@ -230,8 +230,7 @@ func (s *Set) lines(standards []Standard) []Line {
 				l.Points = append(l.Points, Point{ID: st.ID, Batch: st.Batch, Given: given, Found: found[i][f]})
 			}
 		}
-		l.fit()
-		out[f] = l
+		out[f] = FitLine(c.Name, l.Points)
 	}
 	return out
 }
@@ -247,13 +246,14 @@ func isBlankFor(s Standard) bool {
 	return true
 }
 
-// fit fits a straight line by least squares (NIST StRD Norris is its test).
-func (l *Line) fit() {
+// FitLine fits found against given by a straight line with an intercept, least
+// squares. What the points do not determine is NaN.
+func FitLine(component string, points []Point) Line {
+	l := Line{Component: component, Points: points, DF: len(points) - 2}
 	n := float64(len(l.Points))
-	l.DF = len(l.Points) - 2
 	l.Intercept, l.InterceptSE, l.Slope = math.NaN(), math.NaN(), math.NaN()
 	if l.DF < 0 {
-		return
+		return l
 	}
 	var mx, my float64
 	for _, p := range l.Points {
@@ -265,12 +265,12 @@ func (l *Line) fit() {
 		sxy += (p.Given - mx) * (p.Found - my)
 	}
 	if sxx == 0 {
-		return
+		return l
 	}
 	l.Slope = sxy / sxx
 	l.Intercept = my - l.Slope*mx
 	if l.DF < 1 {
-		return
+		return l
 	}
 	var rss float64
 	for _, p := range l.Points {
@@ -278,6 +278,7 @@ func (l *Line) fit() {
 		rss += d * d
 	}
 	l.InterceptSE = math.Sqrt(rss / float64(l.DF) * (1/n + mx*mx/sxx))
+	return l
 }
 
 // leastSquares resolves every sample without the constraint of sign.
