@@ -139,14 +139,15 @@ var Schema = []File{
 	}},
 	{"components.csv", "spectra of every candidate model and of the references; also the layout of a reference file", []Column{
 		{"component", "", "name"},
-		{"mode", "", "excitation or emission"},
-		{"wavelength_nm", "nm", "wavelength"},
-		{"loading", "", "relative intensity, maximum 1"},
+		{"mode", "", "excitation, emission, or scale: intensity at the maximum for one unit of amount"},
+		{"wavelength_nm", "nm", "wavelength; empty for scale"},
+		{"loading", "", "relative intensity, maximum 1; of scale the intensity itself"},
 		{"standard_uncertainty", "", "standard uncertainty of loading"},
 		{"determined", "", "false where the data leave the loading open; it is drawn as a gap"},
 		{"method", "", "references, parafac or model"},
 		{"components", "", "how many components the model has that the spectrum belongs to"},
 		{"chosen", "", "true for the model that the results rest on"},
+		{"unit", "", "unit of the component's amount; empty where contributions are Fmax"},
 	}},
 	{"models.csv", "one row a candidate number of components", []Column{
 		{"components", "", "number of components"},
@@ -206,7 +207,7 @@ var Schema = []File{
 		{"notes", "", "number of notes"},
 		{"doubts", "", "number of doubts"},
 		{"rejects", "", "number of rejects"},
-		{"verdict", "", "pass, doubt or reject"},
+		{"verdict", "", "good, doubt or reject"},
 		{"reason", "", "why, in words"},
 	}},
 	{"calibration.csv", "given, found and recovery per standard, control and spike", []Column{
@@ -224,6 +225,9 @@ var Schema = []File{
 		{"used", "", "true where it took part in the reference"},
 		{"verdict", "", "pass, doubt or reject"},
 		{"reason", "", "why, in words"},
+		{"line_slope", "", "slope of the component's line, found against given, fitted with an intercept"},
+		{"line_intercept", "", "its intercept, in the unit of given; 0 where the series passes through the origin"},
+		{"line_intercept_standard_error", "", "standard error of line_intercept; empty with fewer than three levels"},
 	}},
 	{"charts.csv", "quality variables with their limits", []Column{
 		{"variable", "", "what is watched"},

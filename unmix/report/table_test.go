@@ -45,14 +45,15 @@ func TestReadTableNamesTheLine(t *testing.T) {
 	}
 }
 
-// The columns that have been released, in their order (the contract of results).
+// The columns that have been released, in their order (the contract of results);
+// new ones come behind them.
 func TestSchemaOrder(t *testing.T) {
 	for name, want := range map[string]string{
 		"contributions.csv": "id,component,method,value,unit,standard_uncertainty,lower95,upper95,detection_limit,qualifier,critical_value,quantification_limit,detected,reported,reasons,model",
 		"flags.csv":         "id,batch,component,method,test,severity,value,limit,message,file,line",
 		"components.csv":    "component,mode,wavelength_nm,loading,standard_uncertainty,determined,method,components,chosen",
 	} {
-		if got := strings.Join(New(name).Columns, ","); got != want {
+		if got := strings.Join(New(name).Columns, ","); !strings.HasPrefix(got+",", want+",") {
 			t.Errorf("%s: %s", name, got)
 		}
 	}
