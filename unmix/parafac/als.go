@@ -2,49 +2,6 @@ package parafac
 
 import "math"
 
-// data is what an iteration touches instead of the samples: rows of length P.
-// The first r rows are a basis R shared by the samples in mixed, whose rows are
-// about U·R; the rows after it are the samples in raw, as they are. Without
-// compression r is 0 and every sample is raw. x2 is the sum of squares of the
-// samples.
-type data struct {
-	*problem
-	r     int
-	u     []float64 // len(mixed) × r
-	mixed []int
-	raw   []int
-	rows  []float64 // (r + len(raw)) × P
-	x2    float64
-
-	gapCell []int32   // cells that some raw sample lacks
-	gapOf   [][]int32 // which rows lack it
-}
-
-// whole is the problem without compression.
-func (p *problem) whole() *data {
-	d := &data{problem: p, rows: p.x, x2: p.x2, raw: make([]int, p.i)}
-	for i := range d.raw {
-		d.raw[i] = i
-	}
-	d.listGaps()
-	return d
-}
-
-func (d *data) listGaps() {
-	at := make(map[int32]int)
-	for _, i := range d.raw {
-		for _, q := range d.gaps[i] {
-			n, ok := at[q]
-			if !ok {
-				n = len(d.gapCell)
-				at[q] = n
-				d.gapCell, d.gapOf = append(d.gapCell, q), append(d.gapOf, nil)
-			}
-			d.gapOf[n] = append(d.gapOf[n], int32(i))
-		}
-	}
-}
-
 // als holds one start: factors and the work space of its updates.
 type als struct {
 	*data
@@ -158,17 +115,33 @@ func (s *als) gramTo(g []float64, i int) {
 // products sets m = X·K.
 func (s *als) products() {
 	f := s.f
-	rowsTimesTo(s.rk, s.rows, s.kt, s.r+len(s.raw), s.p, f)
+	rowsTimesTo(s.rk, s.rows, s.kt, f)
 	for n, i := range s.mixed {
 		m := s.m[i*f : (i+1)*f]
 		clear(m)
-		for r, u := range s.u[n*s.r : (n+1)*s.r] {
-			axpy(u, s.rk[r*f:(r+1)*f], m)
+		rk := s.rk[s.uAt[n]*f:]
+		for r, u := range s.u[n] {
+			axpy(u, rk[r*f:(r+1)*f], m)
 		}
 	}
 	for n, i := range s.raw {
 		copy(s.m[i*f:(i+1)*f], s.rk[(s.r+n)*f:])
 	}
+}
+
+// residualOf returns the weighted, scaled residual of sample i at its cells. The
+// model rows must be up to date.
+func (s *als) residualOf(i int) []float64 {
+	r := append([]float64(nil), s.x[i]...)
+	for f := range s.f {
+		if a := s.a[i*s.f+f]; a != 0 {
+			axpy(-a, s.kt[f*s.p:(f+1)*s.p], r)
+		}
+	}
+	for _, q := range s.gaps[i] {
+		r[q] = 0
+	}
+	return r
 }
 
 // ridgeA, ridgeB and ridgeC set lam, the ridge on the columns of one mode. The
@@ -239,15 +212,16 @@ func (s *als) project() {
 	f := s.f
 	clear(s.coef)
 	for n, i := range s.mixed {
-		for r, u := range s.u[n*s.r : (n+1)*s.r] {
-			axpy(u, s.a[i*f:(i+1)*f], s.coef[r*f:(r+1)*f])
+		coef := s.coef[s.uAt[n]*f:]
+		for r, u := range s.u[n] {
+			axpy(u, s.a[i*f:(i+1)*f], coef[r*f:(r+1)*f])
 		}
 	}
 	for n, i := range s.raw {
 		copy(s.coef[(s.r+n)*f:(s.r+n+1)*f], s.a[i*f:])
 	}
 	clear(s.z)
-	addTransposed(s.z, s.coef, s.rows, s.r+len(s.raw), s.p, f)
+	addTransposed(s.z, s.coef, s.rows, f)
 	gramTo(s.ga, s.a, s.i, f)
 	clear(s.gap)
 	for n := range s.gapCell {

@@ -18,54 +18,89 @@ func Fit(ctx context.Context, c *eem.Cube, components int, s *Settings) (*Result
 	if err != nil {
 		return nil, err
 	}
-	all, err := runStarts(ctx, p.whole(), components, &set)
+	pr, err := p.prepare(ctx, components, quarters(p.alone(set.Seed)), &set)
 	if err != nil {
 		return nil, err
 	}
-	best := all[0]
-	for _, a := range all {
-		if a.s.loss < best.s.loss {
-			best = a
+	all, err := runStarts(ctx, pr.all, components, &set)
+	if err != nil {
+		return nil, err
+	}
+	if pr.filled {
+		if all, err = pr.refill(ctx, all, &set); err != nil {
+			return nil, err
 		}
 	}
-	r, err := conclude(ctx, c, p, best.s, &set)
-	if err != nil {
-		return nil, err
-	}
-	r.Loss = best.s.loss / p.x2
-	for _, a := range all {
-		r.Starts = append(r.Starts, Start{Loss: a.s.loss / p.x2, Iterations: a.s.iter, Kept: a.kept,
-			Agrees: agrees(a.s, best.s)})
-	}
-	return r, nil
+	return conclude(ctx, c, p, all, &set)
 }
 
-// conclude brings a fit to its end on the samples themselves: freezes what the
-// data do not determine, takes the ridge from the rest, and finishes by
-// Gauss–Newton steps, whose matrix also gives the errors.
-func conclude(ctx context.Context, c *eem.Cube, p *problem, best *als, set *Settings) (*Result, error) {
+// refill fills the gaps once more, from the best start, and lets it go on.
+func (pr *prepared) refill(ctx context.Context, all []*outcome, set *Settings) ([]*outcome, error) {
+	best := bestOf(all)
+	s := newALS(pr.whole(), best.s.f, set)
+	s.take(best.s)
+	s.exactScores()
+	pr.fill(s, set)
+	again := newALS(pr.all, best.s.f, set)
+	again.take(s)
+	_, err := again.iterate(ctx, set.Tol, polishIter)
+	best.s = again
+	return all, err
+}
+
+// take copies the factors of o and what goes with them.
+func (s *als) take(o *als) {
+	copy(s.a, o.a)
+	copy(s.b, o.b)
+	copy(s.c, o.c)
+	s.fixB, s.fixC, s.iter, s.revived = o.fixB, o.fixC, o.iter, o.revived
+}
+
+func bestOf(all []*outcome) *outcome {
+	best := all[0]
+	for _, o := range all {
+		if o.s.loss < best.s.loss {
+			best = o
+		}
+	}
+	return best
+}
+
+// conclude brings the best start to its end on the samples themselves: takes the
+// ridge from what the data determine and finishes by Gauss–Newton steps, whose
+// matrix also gives the errors.
+func conclude(ctx context.Context, c *eem.Cube, p *problem, all []*outcome, set *Settings) (*Result, error) {
+	best := bestOf(all).s
 	s := newALS(p.whole(), best.f, set)
-	copy(s.a, best.a)
-	copy(s.b, best.b)
-	copy(s.c, best.c)
-	s.fixB, s.fixC, s.iter, s.revived = best.fixB, best.fixC, best.iter, best.revived
+	starts, loss := summarise(all, best, p.x2), best.loss/p.x2
+	s.take(best)
 	s.exactScores()
 	s.damp()
-	if _, err := s.iterate(ctx, set.Tol, polishIter); err != nil {
+	best.dampB, best.dampC = s.dampB, s.dampC
+	if _, err := best.iterate(ctx, set.Tol, polishIter); err != nil {
 		return nil, err
 	}
+	s.take(best)
 	n := s.newton()
 	if err := n.finish(ctx); err != nil {
 		return nil, err
 	}
 	r := s.result(c, set)
-	r.Certificate = n.delta
+	r.Starts, r.Loss, r.Certificate = starts, loss, n.delta
 	r.Status = Swamp
 	if n.delta <= certified {
 		r.Status = Converged
 	}
 	n.influence().tell(r)
 	return r, nil
+}
+
+func summarise(all []*outcome, best *als, x2 float64) []Start {
+	out := make([]Start, len(all))
+	for n, o := range all {
+		out[n] = Start{Loss: o.s.loss / x2, Iterations: o.s.iter, Kept: o.kept, Agrees: agrees(o.s, best)}
+	}
+	return out
 }
 
 // outcome is one start as far as it went.

@@ -33,10 +33,10 @@ func axpy(a float64, x, y []float64) {
 	}
 }
 
-// rowsTimesTo writes dst = X·KT', rows × f, for X rows × n and KT f × n.
-func rowsTimesTo(dst, x, kt []float64, rows, n, f int) {
-	for r := range rows {
-		xr, d := x[r*n:(r+1)*n], dst[r*f:(r+1)*f]
+// rowsTimesTo writes dst = X·KT', rows × f, for the rows of X and KT f × n.
+func rowsTimesTo(dst []float64, x [][]float64, kt []float64, f int) {
+	for r, xr := range x {
+		n, d := len(xr), dst[r*f:(r+1)*f]
 		g := 0
 		for ; g+5 <= f; g += 5 {
 			dot5(d[g:g+5], xr, kt[g*n:(g+5)*n])
@@ -76,26 +76,28 @@ func dot3(d, x, k []float64) {
 	d[0], d[1], d[2] = s0, s1, s2
 }
 
-// addTransposed adds A'·X to dst, f × n, for A rows × f and X rows × n, four
+// addTransposed adds A'·X to dst, f × n, for A rows × f and the rows of X, four
 // rows at a time.
-func addTransposed(dst, a, x []float64, rows, n, f int) {
+func addTransposed(dst, a []float64, x [][]float64, f int) {
 	r := 0
-	for ; r+4 <= rows; r += 4 {
-		x0, x1, x2, x3 := x[r*n:(r+1)*n], x[(r+1)*n : (r+2)*n][:n], x[(r+2)*n : (r+3)*n][:n], x[(r+3)*n : (r+4)*n][:n]
+	for ; r+4 <= len(x); r += 4 {
+		x0, n := x[r], len(x[r])
+		x1, x2, x3 := x[r+1][:n], x[r+2][:n], x[r+3][:n]
 		for g := range f {
 			a0, a1, a2, a3 := a[r*f+g], a[(r+1)*f+g], a[(r+2)*f+g], a[(r+3)*f+g]
 			if a0 == 0 && a1 == 0 && a2 == 0 && a3 == 0 {
 				continue
 			}
-			d := dst[g*n : (g+1)*n][:len(x0)]
+			d := dst[g*n : (g+1)*n][:n]
 			for i, v := range x0 {
 				d[i] += (a0*v + a1*x1[i]) + (a2*x2[i] + a3*x3[i])
 			}
 		}
 	}
-	for ; r < rows; r++ {
+	for ; r < len(x); r++ {
+		n := len(x[r])
 		for g := range f {
-			axpy(a[r*f+g], x[r*n:(r+1)*n], dst[g*n:(g+1)*n])
+			axpy(a[r*f+g], x[r], dst[g*n:(g+1)*n])
 		}
 	}
 }

@@ -59,20 +59,6 @@ func (n *newton) sse() float64 {
 	return v
 }
 
-// residualOf is residual for model rows that are up to date.
-func (s *als) residualOf(i int) []float64 {
-	r := append([]float64(nil), s.row(i)...)
-	for f := range s.f {
-		if a := s.a[i*s.f+f]; a != 0 {
-			axpy(-a, s.kt[f*s.p:(f+1)*s.p], r)
-		}
-	}
-	for _, q := range s.gaps[i] {
-		r[q] = 0
-	}
-	return r
-}
-
 // gradient solves for the scores and sets grad and the list of entries that can
 // move: not fixed, and not held at zero by the sign constraint.
 func (n *newton) gradient() {
@@ -506,7 +492,7 @@ func (n *newton) finish(ctx context.Context) error {
 		if !n.decrement() || n.delta <= goodEnough || n.delta <= certified && n.delta > before/2 {
 			return nil
 		}
-		if damp = n.take(damp); math.IsInf(damp, 1) {
+		if damp = n.step(damp); math.IsInf(damp, 1) {
 			return nil
 		}
 		before = n.delta
@@ -517,16 +503,16 @@ func (n *newton) finish(ctx context.Context) error {
 	return nil
 }
 
-// take goes one step, with more damping until the loss falls, and returns the
+// step goes one step, with more damping until the loss falls, and returns the
 // damping for the next one, infinite when none helped.
-func (n *newton) take(damp float64) float64 {
+func (n *newton) step(damp float64) float64 {
 	b, c, a, loss := append([]float64(nil), n.b...), append([]float64(nil), n.c...), append([]float64(nil), n.a...), n.loss
 	theta, grad := append([]int(nil), n.theta...), append([]float64(nil), n.grad...)
 	for range 6 {
-		if step := n.bounded(damp); step != nil {
+		if move := n.bounded(damp); move != nil {
 			for i, e := range n.theta {
 				x, _ := n.entry(e)
-				*x += step[i]
+				*x += move[i]
 				if *x < 0 && !n.free {
 					*x = 0
 				}

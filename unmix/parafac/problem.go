@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 
 	"tarnlight/eem"
 )
@@ -24,11 +25,11 @@ type problem struct {
 	byEm   []int   // K+1: into emCells
 	emCell []int32 // cells sorted by emission
 
-	w     []float64 // P: square root of the weight of each cell, mean square 1
-	x     []float64 // I × P: weighted, scaled data
-	scale []float64 // I: x = w · data / scale
-	gaps  [][]int32 // I: cells of P that this row lacks
-	x2    float64   // ‖x‖²
+	w     []float64   // P: square root of the weight of each cell, mean square 1
+	x     [][]float64 // I × P: weighted, scaled data
+	scale []float64   // I: x = w · data / scale
+	gaps  [][]int32   // I: cells of P that this row lacks
+	x2    float64     // ‖x‖²
 
 	notes []eem.Note
 }
@@ -216,12 +217,13 @@ func (p *problem) cellWeights(sum, num []float64) {
 
 // fill copies the data, scales the rows and lists the gaps.
 func (p *problem) fill(c *eem.Cube, s *Settings) error {
-	p.x = make([]float64, p.i*p.p)
+	all := make([]float64, p.i*p.p)
 	p.gaps = make([][]int32, p.i)
 	lo, hi := math.Inf(1), math.Inf(-1)
 	for r, i := range p.sample {
 		row, why := c.Sample(i), c.SampleWhy(i)
-		x := p.x[r*p.p : (r+1)*p.p]
+		x := all[r*p.p : (r+1)*p.p : (r+1)*p.p]
+		p.x = append(p.x, x)
 		for q := range x {
 			at := int(p.cj[q])*p.k + int(p.ck[q])
 			if !usable(row[at], why[at]) {
@@ -241,7 +243,7 @@ func (p *problem) fill(c *eem.Cube, s *Settings) error {
 
 func (p *problem) normalise(c *eem.Cube, s *Settings) {
 	for r, i := range p.sample {
-		x := p.x[r*p.p : (r+1)*p.p]
+		x := p.x[r]
 		n := norm(x)
 		if n == 0 {
 			p.note("no-light", eem.Reject, 0, 0, fmt.Sprintf("%s holds nothing but zeros; its scores are 0 and mean nothing", c.IDs[i]))
@@ -256,7 +258,36 @@ func (p *problem) normalise(c *eem.Cube, s *Settings) {
 	}
 }
 
-func (p *problem) row(i int) []float64 { return p.x[i*p.p : (i+1)*p.p : (i+1)*p.p] }
+// subset is the problem of some of the samples, sharing their rows. A cell that
+// none of them has weighs nothing there.
+func (p *problem) subset(rows []int) *problem {
+	s := *p
+	s.i, s.sample, s.x, s.gaps, s.scale = len(rows), nil, nil, nil, nil
+	s.x2, s.notes = 0, nil
+	lack := make([]int, p.p)
+	for _, i := range rows {
+		for _, q := range p.gaps[i] {
+			lack[q]++
+		}
+	}
+	s.w = slices.Clone(p.w)
+	for q, n := range lack {
+		if n == len(rows) {
+			s.w[q] = 0
+		}
+	}
+	for _, i := range rows {
+		var gaps []int32
+		for _, q := range p.gaps[i] {
+			if lack[q] < len(rows) {
+				gaps = append(gaps, q)
+			}
+		}
+		s.sample, s.x, s.gaps, s.scale = append(s.sample, p.sample[i]), append(s.x, p.x[i]), append(s.gaps, gaps), append(s.scale, p.scale[i])
+		s.x2 += sumSquares(p.x[i])
+	}
+	return &s
+}
 
 func (p *problem) note(test string, sev eem.Severity, value, limit float64, msg string) {
 	p.notes = append(p.notes, eem.Note{Step: "parafac", Test: test, Severity: sev, Value: value, Limit: limit, Measure: limit != 0, Msg: msg})

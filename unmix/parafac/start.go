@@ -82,8 +82,9 @@ func (s *als) revive() bool {
 func (s *als) reviveColumn(f int) bool {
 	s.revived++
 	res, most := []float64(nil), 0.0
+	s.modelRows()
 	for i := range s.i {
-		r := s.residual(i)
+		r := s.residualOf(i)
 		for q, v := range r {
 			if v < 0 && !s.free {
 				r[q] = 0
@@ -113,19 +114,6 @@ func (s *als) reviveColumn(f int) bool {
 	s.unit()
 	s.updateA(innerSweeps)
 	return true
-}
-
-// residual returns the weighted, scaled residual of sample i at its cells.
-func (s *als) residual(i int) []float64 {
-	r := append([]float64(nil), s.row(i)...)
-	s.modelRows()
-	for f := range s.f {
-		axpy(-s.a[i*s.f+f], s.kt[f*s.p:(f+1)*s.p], r)
-	}
-	for _, q := range s.gaps[i] {
-		r[q] = 0
-	}
-	return r
 }
 
 // rankOne fits b·c' to one sample's cells by ten power steps.

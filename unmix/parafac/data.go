@@ -1,0 +1,44 @@
+package parafac
+
+// data is what an iteration touches instead of the samples: rows of length P.
+// The first r rows are bases of the samples in mixed: the row of mixed[n] is
+// about u[n]·rows[uAt[n]:]. The rows after them are the samples in raw, as they
+// are. Without compression r is 0 and every sample is raw.
+type data struct {
+	*problem
+	r     int
+	u     [][]float64
+	uAt   []int
+	mixed []int
+	raw   []int
+	rows  [][]float64 // (r + len(raw)) × P
+	x2    float64     // sum of squares of the samples
+
+	gapCell []int32   // cells that some raw sample lacks
+	gapOf   [][]int32 // which rows lack it
+}
+
+// whole is the problem without compression.
+func (p *problem) whole() *data {
+	d := &data{problem: p, rows: p.x, x2: p.x2, raw: make([]int, p.i)}
+	for i := range d.raw {
+		d.raw[i] = i
+	}
+	d.listGaps()
+	return d
+}
+
+func (d *data) listGaps() {
+	at := make(map[int32]int)
+	for _, i := range d.raw {
+		for _, q := range d.gaps[i] {
+			n, ok := at[q]
+			if !ok {
+				n = len(d.gapCell)
+				at[q] = n
+				d.gapCell, d.gapOf = append(d.gapCell, q), append(d.gapOf, nil)
+			}
+			d.gapOf[n] = append(d.gapOf[n], int32(i))
+		}
+	}
+}
