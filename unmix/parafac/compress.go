@@ -3,9 +3,6 @@ package parafac
 import (
 	"math"
 	"math/rand/v2"
-
-	"gonum.org/v1/gonum/blas"
-	"gonum.org/v1/gonum/blas/blas64"
 )
 
 const (
@@ -38,30 +35,37 @@ func compress(x [][]float64, samples []int, r int, seed uint64) *basis {
 		}
 		return b
 	}
-	q := orthonormal(sketch(x, r, seed))
-	rows := transposeTimes(q, x)
-	q = orthonormal(timesTranspose(x, rows))
-	rows = transposeTimes(q, x)
+	q, cells := sketch(x, r, seed), len(x[0])
+	rows := make([]float64, r*cells)
+	for pass := range 2 {
+		if pass > 0 {
+			rowsTimesTo(q, x, rows, r)
+			clear(rows)
+		}
+		orthonormal(q, len(x), r)
+		addTransposed(rows, q, x, r)
+	}
 	for n := range x {
-		b.u = append(b.u, q.Data[n*r:(n+1)*r])
+		b.u = append(b.u, q[n*r:(n+1)*r])
 	}
 	for n := range r {
-		b.rows = append(b.rows, rows.Data[n*rows.Stride:(n+1)*rows.Stride])
+		b.rows = append(b.rows, rows[n*cells:(n+1)*cells])
 	}
 	return b
 }
 
-// sketch adds every cell, with a random sign, to one of r columns.
-func sketch(x [][]float64, r int, seed uint64) blas64.General {
+// sketch adds every cell, with a random sign, to one of r columns: a random
+// product that costs one reading of x. It returns rows × r.
+func sketch(x [][]float64, r int, seed uint64) []float64 {
 	rnd := rand.New(rand.NewPCG(seed, 1<<32))
 	n := len(x[0])
 	to, sign := make([]int, n), make([]float64, n)
 	for q := range to {
 		to[q], sign[q] = rnd.IntN(r), float64(2*rnd.IntN(2)-1)
 	}
-	y := blas64.General{Rows: len(x), Cols: r, Stride: r, Data: make([]float64, len(x)*r)}
+	y := make([]float64, len(x)*r)
 	for i, v := range x {
-		d := y.Data[i*r : (i+1)*r]
+		d := y[i*r : (i+1)*r]
 		for q, e := range v {
 			d[to[q]] += sign[q] * e
 		}
@@ -69,15 +73,15 @@ func sketch(x [][]float64, r int, seed uint64) blas64.General {
 	return y
 }
 
-// orthonormal replaces the columns of y by an orthonormal basis of their space,
-// by Gram–Schmidt done twice. A column that depends on the others becomes zero.
-func orthonormal(y blas64.General) blas64.General {
-	n, r := y.Rows, y.Cols
+// orthonormal replaces the columns of y, n × r, by an orthonormal basis of their
+// space, by Gram–Schmidt done twice. A column that depends on the others becomes
+// zero.
+func orthonormal(y []float64, n, r int) {
 	col := make([][]float64, r)
 	for c := range col {
 		col[c] = make([]float64, n)
 		for i := range n {
-			col[c][i] = y.Data[i*y.Stride+c]
+			col[c][i] = y[i*r+c]
 		}
 		before := norm(col[c])
 		for range 2 {
@@ -91,45 +95,9 @@ func orthonormal(y blas64.General) blas64.General {
 		}
 		for i := range n {
 			col[c][i] /= t
-			y.Data[i*y.Stride+c] = col[c][i]
+			y[i*r+c] = col[c][i]
 		}
 	}
-	return y
-}
-
-// stack copies rows into one matrix, a few at a time, for the matrix products.
-const stackRows = 256
-
-func stack(x [][]float64) blas64.General {
-	n := len(x[0])
-	g := blas64.General{Rows: len(x), Cols: n, Stride: n, Data: make([]float64, len(x)*n)}
-	for i, v := range x {
-		copy(g.Data[i*n:], v)
-	}
-	return g
-}
-
-// transposeTimes returns Q'·X, r × P.
-func transposeTimes(q blas64.General, x [][]float64) blas64.General {
-	n := len(x[0])
-	out := blas64.General{Rows: q.Cols, Cols: n, Stride: n, Data: make([]float64, q.Cols*n)}
-	for at := 0; at < len(x); at += stackRows {
-		part := x[at:min(at+stackRows, len(x))]
-		sub := blas64.General{Rows: len(part), Cols: q.Cols, Stride: q.Stride, Data: q.Data[at*q.Stride:]}
-		blas64.Gemm(blas.Trans, blas.NoTrans, 1, sub, stack(part), 1, out)
-	}
-	return out
-}
-
-// timesTranspose returns X·R', n × r.
-func timesTranspose(x [][]float64, r blas64.General) blas64.General {
-	out := blas64.General{Rows: len(x), Cols: r.Rows, Stride: r.Rows, Data: make([]float64, len(x)*r.Rows)}
-	for at := 0; at < len(x); at += stackRows {
-		part := x[at:min(at+stackRows, len(x))]
-		sub := blas64.General{Rows: len(part), Cols: r.Rows, Stride: r.Rows, Data: out.Data[at*r.Rows:]}
-		blas64.Gemm(blas.NoTrans, blas.Trans, 1, stack(part), r, 0, sub)
-	}
-	return out
 }
 
 // stacked is the data of some bases side by side: nothing is mixed across them.

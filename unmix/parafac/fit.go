@@ -40,7 +40,9 @@ func (pr *prepared) refill(ctx context.Context, all []*outcome, set *Settings) (
 	s := newALS(pr.whole(), best.s.f, set)
 	s.take(best.s)
 	s.exactScores()
-	pr.fill(s, set)
+	if err := pr.fill(ctx, s, set); err != nil {
+		return nil, err
+	}
 	again := newALS(pr.all, best.s.f, set)
 	again.take(s)
 	_, err := again.iterate(ctx, set.Tol, polishIter)

@@ -33,26 +33,39 @@ func axpy(a float64, x, y []float64) {
 	}
 }
 
+// block is how many cells of a row are worked on at a time, so that all the rows
+// of the smaller operand stay in the cache.
+const block = 512
+
 // rowsTimesTo writes dst = X·KT', rows × f, for the rows of X and KT f × n.
 func rowsTimesTo(dst []float64, x [][]float64, kt []float64, f int) {
-	for r, xr := range x {
-		n, d := len(xr), dst[r*f:(r+1)*f]
-		g := 0
-		for ; g+5 <= f; g += 5 {
-			dot5(d[g:g+5], xr, kt[g*n:(g+5)*n])
-		}
-		for ; g+3 <= f; g += 3 {
-			dot3(d[g:g+3], xr, kt[g*n:(g+3)*n])
-		}
-		for ; g < f; g++ {
-			d[g] = dot(xr, kt[g*n:(g+1)*n])
+	clear(dst[:len(x)*f])
+	if len(x) == 0 {
+		return
+	}
+	n := len(x[0])
+	for lo := 0; lo < n; lo += block {
+		hi := min(lo+block, n)
+		for r, xr := range x {
+			d, xr := dst[r*f:(r+1)*f], xr[lo:hi]
+			g := 0
+			for ; g+5 <= f; g += 5 {
+				dot5(d[g:g+5], xr, kt[g*n+lo:], n)
+			}
+			for ; g+3 <= f; g += 3 {
+				dot3(d[g:g+3], xr, kt[g*n+lo:], n)
+			}
+			for ; g < f; g++ {
+				d[g] += dot(xr, kt[g*n+lo:g*n+hi])
+			}
 		}
 	}
 }
 
-func dot5(d, x, k []float64) {
-	n := len(x)
-	k0, k1, k2, k3, k4 := k[:n], k[n : 2*n][:n], k[2*n : 3*n][:n], k[3*n : 4*n][:n], k[4*n : 5*n][:n]
+// dot5 and dot3 add the products of x with 5 or 3 rows of k, stride n.
+func dot5(d, x, k []float64, n int) {
+	m := len(x)
+	k0, k1, k2, k3, k4 := k[:m], k[n:][:m], k[2*n:][:m], k[3*n:][:m], k[4*n:][:m]
 	var s0, s1, s2, s3, s4 float64
 	for i, v := range x {
 		s0 += v * k0[i]
@@ -61,44 +74,50 @@ func dot5(d, x, k []float64) {
 		s3 += v * k3[i]
 		s4 += v * k4[i]
 	}
-	d[0], d[1], d[2], d[3], d[4] = s0, s1, s2, s3, s4
+	d[0], d[1], d[2], d[3], d[4] = d[0]+s0, d[1]+s1, d[2]+s2, d[3]+s3, d[4]+s4
 }
 
-func dot3(d, x, k []float64) {
-	n := len(x)
-	k0, k1, k2 := k[:n], k[n : 2*n][:n], k[2*n : 3*n][:n]
+func dot3(d, x, k []float64, n int) {
+	m := len(x)
+	k0, k1, k2 := k[:m], k[n:][:m], k[2*n:][:m]
 	var s0, s1, s2 float64
 	for i, v := range x {
 		s0 += v * k0[i]
 		s1 += v * k1[i]
 		s2 += v * k2[i]
 	}
-	d[0], d[1], d[2] = s0, s1, s2
+	d[0], d[1], d[2] = d[0]+s0, d[1]+s1, d[2]+s2
 }
 
 // addTransposed adds A'·X to dst, f × n, for A rows × f and the rows of X, four
 // rows at a time.
 func addTransposed(dst, a []float64, x [][]float64, f int) {
-	r := 0
-	for ; r+4 <= len(x); r += 4 {
-		x0, n := x[r], len(x[r])
-		x1, x2, x3 := x[r+1][:n], x[r+2][:n], x[r+3][:n]
-		for g := range f {
-			a0, a1, a2, a3 := a[r*f+g], a[(r+1)*f+g], a[(r+2)*f+g], a[(r+3)*f+g]
-			if a0 == 0 && a1 == 0 && a2 == 0 && a3 == 0 {
-				continue
+	if len(x) == 0 {
+		return
+	}
+	n := len(x[0])
+	for lo := 0; lo < n; lo += block {
+		hi := min(lo+block, n)
+		r := 0
+		for ; r+4 <= len(x); r += 4 {
+			for g := range f {
+				add4(dst[g*n+lo:g*n+hi], x[r][lo:], x[r+1][lo:], x[r+2][lo:], x[r+3][lo:],
+					a[r*f+g], a[(r+1)*f+g], a[(r+2)*f+g], a[(r+3)*f+g])
 			}
-			d := dst[g*n : (g+1)*n][:n]
-			for i, v := range x0 {
-				d[i] += (a0*v + a1*x1[i]) + (a2*x2[i] + a3*x3[i])
+		}
+		for ; r < len(x); r++ {
+			for g := range f {
+				axpy(a[r*f+g], x[r][lo:hi], dst[g*n+lo:g*n+hi])
 			}
 		}
 	}
-	for ; r < len(x); r++ {
-		n := len(x[r])
-		for g := range f {
-			axpy(a[r*f+g], x[r], dst[g*n:(g+1)*n])
-		}
+}
+
+func add4(d, x0, x1, x2, x3 []float64, a0, a1, a2, a3 float64) {
+	m := len(d)
+	x0, x1, x2, x3 = x0[:m], x1[:m], x2[:m], x3[:m]
+	for i := range d {
+		d[i] += (a0*x0[i] + a1*x1[i]) + (a2*x2[i] + a3*x3[i])
 	}
 }
 

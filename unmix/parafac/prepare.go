@@ -27,15 +27,13 @@ func (p *problem) prepare(ctx context.Context, f int, quarter [][]int, set *Sett
 	}
 	gappy := p.gappy()
 	if len(gappy) <= basisRank {
-		pr.compress(p.x, gappy, set)
-		return pr, nil
+		return pr, pr.compress(ctx, p.x, gappy, set)
 	}
 	fill, err := p.filler(ctx, f, set)
 	if err != nil {
 		return nil, err
 	}
-	pr.fill(fill, set)
-	return pr, nil
+	return pr, pr.fill(ctx, fill, set)
 }
 
 // gappy lists the samples with gaps.
@@ -50,24 +48,28 @@ func (p *problem) gappy() []int {
 }
 
 // compress sets the bases from rows x, all samples but those in beside.
-func (pr *prepared) compress(x [][]float64, beside []int, set *Settings) {
+func (pr *prepared) compress(ctx context.Context, x [][]float64, beside []int, set *Settings) error {
 	pr.part = make([]*basis, len(pr.quarter))
-	for n, q := range pr.quarter {
+	err := parallel(ctx, set, len(pr.quarter), "compressing", func(n int) error {
 		var rows [][]float64
 		var samples []int
-		for _, i := range q {
+		for _, i := range pr.quarter[n] {
 			if _, apart := slices.BinarySearch(beside, i); !apart {
 				rows, samples = append(rows, x[i]), append(samples, i)
 			}
 		}
 		pr.part[n] = compress(rows, samples, basisRank, set.Seed+uint64(n))
-		set.Progress(n+1, len(pr.quarter), "compressing")
+		return nil
+	})
+	if err != nil {
+		return err
 	}
 	pr.all = pr.stacked([]*basis{merge(pr.part, basisRank, set.Seed)}, beside)
+	return nil
 }
 
 // fill compresses with the gaps filled by the model s.
-func (pr *prepared) fill(s *als, set *Settings) {
+func (pr *prepared) fill(ctx context.Context, s *als, set *Settings) error {
 	x := slices.Clone(pr.x)
 	s.modelRows()
 	for i, gaps := range pr.gaps {
@@ -82,7 +84,7 @@ func (pr *prepared) fill(s *als, set *Settings) {
 		}
 	}
 	pr.filled = true
-	pr.compress(x, nil, set)
+	return pr.compress(ctx, x, nil, set)
 }
 
 // filler fits the samples without gaps, or where they are few the hundred with
