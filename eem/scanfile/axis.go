@@ -87,12 +87,12 @@ func (r *reader) axis(nm []float64, line func(int) int) (eem.Axis, order, error)
 		case math.IsNaN(v):
 			return eem.Axis{}, order{}, errorf(r.name, line(i), "no wavelength in this row; fill it in, or take the row out")
 		case v < lowestNM || v > highestNM:
-			return eem.Axis{}, order{}, errorf(r.name, line(i), "%g nm is no wavelength of a fluorometer (%d to %d nm); is this the emission column?", v, lowestNM, highestNM)
+			return eem.Axis{}, order{}, errorf(r.name, line(i), "%g nm is no wavelength of a fluorometer or spectrophotometer (%d to %d nm); is this the column of wavelengths?", v, lowestNM, highestNM)
 		}
 	}
 	o := newOrder(nm)
 	if len(o.nm) < 2 {
-		return eem.Axis{}, o, errorf(r.name, line(0), "the emission axis has only %d point; a scan needs two or more", len(o.nm))
+		return eem.Axis{}, o, errorf(r.name, line(0), "only %d wavelength; a scan or spectrum needs two or more", len(o.nm))
 	}
 	a, err := eem.NewAxis(o.nm)
 	if err != nil {

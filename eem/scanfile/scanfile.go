@@ -143,6 +143,8 @@ type Table struct {
 	Delimiter string // empty for XLSX
 	Encoding  string // empty for XLSX
 	Notes     []eem.Note
+
+	slots int // cells so far
 }
 
 // Record is one row of a Table. Cells has the length of the header, or more
