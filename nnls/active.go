@@ -268,7 +268,9 @@ func (a *active) solve() {
 }
 
 // seminormal solves TᵀT·d = g on the free variables, T their triangle, and
-// returns d, 0 elsewhere, and ‖T·d‖².
+// returns d, 0 elsewhere, and ‖T·d‖². With g = Aᵀ·r of the residual r it is the
+// corrected seminormal equation (Björck, Linear Algebra Appl. 1987, 88/89, 31),
+// which serves as QR does while the condition number of T is below 1/√ε.
 func (a *active) seminormal(g []float64) (d []float64, gain float64) {
 	u := a.s
 	for q, j := range a.order {
@@ -286,4 +288,17 @@ func (a *active) seminormal(g []float64) (d []float64, gain float64) {
 		}
 	}
 	return a.d, gain
+}
+
+// step adds d to x, and reports whether it could: free variables stay positive.
+func (a *active) step(d []float64) bool {
+	for _, j := range a.order {
+		if !(a.x[j]+d[j] > 0) {
+			return false
+		}
+	}
+	for _, j := range a.order {
+		a.x[j] += d[j]
+	}
+	return true
 }

@@ -111,14 +111,14 @@ func SolveTo(dst []float64, a mat.Matrix, b []float64, s *Settings) (Result, err
 	res.Status = act.run(s.limit(n))
 	res.Iterations = act.iterations
 	res.Passive = act.free
-	y := act.x
-	p.unscaleTo(dst, y)
+	norm, v := p.refine(act)
+	res.Norm, res.Violation = math.Ldexp(norm, p.eb+p.ew), v
+	p.unscaleTo(dst, act.x)
 	for j, v := range dst {
 		if math.IsInf(v, 0) {
 			return Result{Status: Unusable}, fmt.Errorf("nnls: variable %d of the answer exceeds the range of float64; scale a or b", j)
 		}
 	}
-	res.Norm, res.Violation = p.certify(y)
 	if res.Status == IterationLimit {
 		return res, fmt.Errorf("%w after %d changes", ErrIterationLimit, res.Iterations)
 	}

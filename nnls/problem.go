@@ -196,9 +196,10 @@ func (p *problem) unscaleTo(dst, y []float64) {
 	}
 }
 
-// certify returns the residual norm, unscaled, and the violation of y.
-func (p *problem) certify(y []float64) (norm, v float64) {
-	w := make([]float64, p.n)
+// certify returns the residual norm of y and the duals, both in the units of p,
+// and the violation.
+func (p *problem) certify(y []float64) (norm float64, w []float64, v float64) {
+	w = make([]float64, p.n)
 	square := 0.0
 	for i, b := range p.b {
 		row := p.a.RawRowView(i)
@@ -208,7 +209,27 @@ func (p *problem) certify(y []float64) (norm, v float64) {
 			w[j] += x * r
 		}
 	}
-	return math.Ldexp(math.Sqrt(square), p.eb+p.ew), violation(y, w, p.norm, p.normB)
+	return math.Sqrt(square), w, violation(y, w, p.norm, p.normB)
+}
+
+// refine certifies the answer of act and improves it from its residual as long as
+// that helps. It returns the residual norm, in the units of p, and the violation.
+func (p *problem) refine(act *active) (norm, v float64) {
+	norm, w, v := p.certify(act.x)
+	before := make([]float64, p.n)
+	for steps := 0; steps < 3 && v > 4*eps; steps++ {
+		copy(before, act.x)
+		if d, _ := act.seminormal(w); !act.step(d) {
+			break
+		}
+		norm2, w2, v2 := p.certify(act.x)
+		if !(v2 < v) {
+			copy(act.x, before)
+			break
+		}
+		norm, w, v = norm2, w2, v2
+	}
+	return norm, v
 }
 
 func finite(v float64) bool { return v-v == 0 }

@@ -11,7 +11,8 @@ type batchWorker struct {
 	reduced *reduced
 	v       []float64 // a block of one right-hand side
 	z, dual []float64
-	c       []float64 // of a refinement
+	c       []float64 // Qᵀ·r of a refinement
+	before  []float64 // the answer before it
 	row     []float64 // a right-hand side of extreme values, scaled
 	gone    []byte    // rows of one right-hand side that are missing
 }
@@ -19,7 +20,7 @@ type batchWorker struct {
 func newBatchWorker(f *factor) *batchWorker {
 	return &batchWorker{
 		act: newActive(f.k, f.n), reduced: newReduced(f),
-		v: make([]float64, block), z: make([]float64, f.k), dual: make([]float64, f.n), c: make([]float64, f.stride),
+		v: make([]float64, block), z: make([]float64, f.k), dual: make([]float64, f.n), c: make([]float64, f.stride), before: make([]float64, f.n),
 		gone: make([]byte, (f.m+63)/64*8),
 	}
 }
@@ -202,12 +203,12 @@ func (r *batchRun) solve(w *batchWorker, f *factor, t *triangle, i int, loss flo
 	w.residual(t, y)
 	square += sumSquares(w.z)
 	loss /= float64(f.k)
-	if square < 1e-6*loss*bb || loss > mostLoss {
-		square = w.refine(f, t, r.scaled(w, i), gone)
-	}
 	res.Violation = violation(y, w.dual, t.norm, math.Sqrt(bb))
+	if square < 1e-6*loss*bb || loss > mostLoss || res.Violation > 1e-13 {
+		square, res.Violation = w.refine(f, t, r.scaled(w, i), math.Sqrt(bb), gone)
+	}
 	eb := r.eb[at]
-	res.Norm = math.Ldexp(math.Sqrt(square), eb+f.ew)
+	res.Norm = math.Ldexp(math.Sqrt(max(square, 0)), eb+f.ew)
 	dst := r.dst.RawRowView(i)
 	for j, v := range y {
 		if dst[j] = math.Ldexp(v, eb-f.ea[j]); math.IsInf(dst[j], 0) {
@@ -229,33 +230,50 @@ func (w *batchWorker) residual(t *triangle, y []float64) {
 	}
 }
 
-// refine improves the answer in w.act.x by one step from its residual in the rows
-// themselves, and returns ‖W^½(a·x − b)‖². It mends what small residuals and
-// large gaps lose in the difference of squares and in H. With the residual r and
-// the triangle T of the free columns, TᵀT·d = A_Pᵀ·r is the corrected seminormal
-// equation of Björck (Linear Algebra Appl. 1987, 88/89, 31), as good as QR as long as
-// the condition number of T is below 1/√ε. The duals are those of the rows.
-func (w *batchWorker) refine(f *factor, t *triangle, b []float64, gone []byte) float64 {
+// refine certifies the answer in w.act.x by its residual in the rows themselves
+// and improves it as long as that helps. It returns ‖W^½(a·x − b)‖² and the
+// violation, and mends what small residuals and large gaps lose in the difference
+// of squares and in H.
+func (w *batchWorker) refine(f *factor, t *triangle, b []float64, normB float64, gone []byte) (square, v float64) {
 	y := w.act.x
-	square := w.projectResidual(f, b, y, gone)
+	square, v = w.certify(f, t, b, normB, gone)
+	for steps := 0; steps < 3 && v > 4*eps; steps++ {
+		copy(w.before, y)
+		d, gain := w.act.seminormal(w.dual)
+		if !w.act.step(d) {
+			break
+		}
+		if gain < 0.01*square {
+			// The step moves residual and duals by little: no need of the rows.
+			clear(w.z)
+			t.subtract(w.z, d)
+			for j := range w.dual {
+				w.dual[j] += dot(t.column(j), w.z)
+			}
+			if better := violation(y, w.dual, t.norm, normB); better < v {
+				return square - gain, better
+			}
+			copy(y, w.before)
+			break
+		}
+		square2, v2 := w.certify(f, t, b, normB, gone)
+		if !(v2 < v) {
+			copy(y, w.before)
+			break
+		}
+		square, v = square2, v2
+	}
+	return square, v
+}
+
+// certify returns the square of the residual of w.act.x, row by row, and the
+// violation, and leaves the duals in w.dual.
+func (w *batchWorker) certify(f *factor, t *triangle, b []float64, normB float64, gone []byte) (square, v float64) {
+	square = w.projectResidual(f, b, w.act.x, gone)
 	for j := range w.dual {
 		w.dual[j] = dot(f.tri.column(j), w.c[:f.k])
 	}
-	step, gain := w.act.seminormal(w.dual)
-	for _, j := range w.act.order {
-		if !(y[j]+step[j] > 0) {
-			return square
-		}
-	}
-	for _, j := range w.act.order {
-		y[j] += step[j]
-	}
-	clear(w.z)
-	t.subtract(w.z, step)
-	for j := range w.dual {
-		w.dual[j] += dot(t.column(j), w.z)
-	}
-	return square - gain
+	return square, violation(w.act.x, w.dual, t.norm, normB)
 }
 
 // projectResidual sets w.c to Qᵀ times the residual of y and returns its square.
