@@ -3,7 +3,8 @@ package survey
 import "strings"
 
 // nearest returns the candidate that needs the fewest edits to become s, case
-// ignored; the first of equals. ok is false when even that one is far: more edits
+// ignored; of equals the one that begins like s for longest, then the first. ok is
+// false when even that one is far: more edits
 // than a third of the longer of both, but at least two.
 func nearest(s string, candidates []string) (best string, ok bool) {
 	const longest = 80 // characters; a key or kind is shorter
@@ -11,17 +12,26 @@ func nearest(s string, candidates []string) (best string, ok bool) {
 		return "", false
 	}
 	low := strings.ToLower(s)
-	least := -1
+	least, same := -1, 0
 	for _, c := range candidates {
 		if len(c) > longest {
 			continue
 		}
-		d := edits(low, strings.ToLower(c))
-		if limit := max(2, max(len(s), len(c))/3); d <= limit && (least < 0 || d < least) {
-			best, least = c, d
+		d, p := edits(low, strings.ToLower(c)), prefix(low, strings.ToLower(c))
+		if limit := max(2, max(len(s), len(c))/3); d <= limit && (least < 0 || d < least || (d == least && p > same)) {
+			best, least, same = c, d, p
 		}
 	}
 	return best, least >= 0
+}
+
+// prefix counts the bytes that a and b have in common at their beginning.
+func prefix(a, b string) int {
+	n := 0
+	for n < len(a) && n < len(b) && a[n] == b[n] {
+		n++
+	}
+	return n
 }
 
 // edits counts the insertions, deletions, replacements and swaps of neighbours

@@ -14,9 +14,9 @@ import (
 	"tarnlight/eem"
 )
 
-// maxSettings is the largest settings file that is read; the one with every key
-// has 10 kB.
-const maxSettings = 1 << 20
+// maxSettings is the largest settings file that is read, bytes. One with every
+// key has 4 kB; go-toml takes 60 µs a key, more in larger files.
+const maxSettings = 64 << 10
 
 // ReadSettings reads a settings file. A file that does not exist gives Default.
 // Every other fault is of type Problems: each with its line, what is wrong and

