@@ -154,3 +154,9 @@ func ceilNice(v float64) float64 {
 	p := math.Pow(10, math.Floor(math.Log10(v))-1) * 5
 	return math.Ceil(v/p*(1-1e-12)) * p
 }
+
+// number reads a number as a run sheet writes it, with a decimal point or comma.
+func number(s string) (float64, bool) {
+	v, err := strconv.ParseFloat(strings.Replace(strings.TrimSpace(s), ",", ".", 1), 64)
+	return v, err == nil && v-v == 0
+}

@@ -87,6 +87,10 @@ func (r *results) render(ctx context.Context, progress func(done, total int, wha
 			}
 		}
 	}
+	tell(len(r.bottles)+1, "workbook")
+	if err := r.writeClient(); err != nil {
+		return err
+	}
 	tell(total, "report")
 	return nil
 }

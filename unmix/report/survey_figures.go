@@ -124,7 +124,7 @@ func (r *results) figContributions(method string, at *places) *figure {
 		d := &dots{radius: 1.7}
 		limit := []float64{}
 		for i, c := range s.rows {
-			if c == nil || math.IsNaN(at.x[i]) {
+			if c == nil || math.IsNaN(at.x[i]) || !r.bottles[i].reportable() {
 				continue
 			}
 			num.Append(r.bottles[i].id, at.x[i], s.component, c.value, c.lower, c.upper, s.unit, c.qualifier)

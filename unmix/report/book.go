@@ -1,0 +1,368 @@
+package report
+
+import (
+	"archive/zip"
+	"bytes"
+	"errors"
+	"fmt"
+	"io"
+	"os"
+	"regexp"
+	"slices"
+	"strings"
+	"unicode/utf8"
+
+	"github.com/xuri/excelize/v2"
+)
+
+// book is a workbook being written. Styles are made once for each look.
+type book struct {
+	f      *excelize.File
+	styles map[look]int
+	footer string // left part of every footer
+	header string
+	err    error // the first error; what follows it does nothing
+}
+
+// look is how a cell looks. The zero look is plain text at the top left.
+type look struct {
+	format string // number format
+	bold   bool
+	italic bool
+	size   float64
+	color  string // of the letters, RRGGBB
+	fill   string
+	wrap   bool
+	align  string // horizontal; default by type
+	middle bool   // vertical centre instead of top
+	line   bool   // a line below
+	hair   bool   // a faint line below
+	right  bool   // aligned right
+	indent bool   // a step in from the left
+}
+
+// Colours of the workbooks, RRGGBB. Each has a word beside it: nothing is said by
+// colour alone.
+const (
+	inkBlue   = "1F3A5F"
+	paleBlue  = "E4ECF5"
+	paleAmber = "FFF1D0"
+	paleRed   = "F9DDD8"
+	paleGrey  = "EDEDED"
+	midGrey   = "6B6B6B"
+)
+
+const fontName = "Arial"
+
+func newBook(title, header, footer string) *book {
+	b := &book{f: excelize.NewFile(), styles: map[look]int{}, header: header, footer: footer}
+	b.try(b.f.SetDefaultFont(fontName))
+	b.try(b.f.SetDocProps(&excelize.DocProperties{Title: cut(title, 200), Creator: "tarnlight", LastModifiedBy: "tarnlight",
+		Created: "2000-01-01T00:00:00Z", Modified: "2000-01-01T00:00:00Z"})) // no clock: same results, same bytes
+	return b
+}
+
+func (b *book) try(err error) {
+	if b.err == nil {
+		b.err = err
+	}
+}
+
+// style returns the style id of a look.
+func (b *book) style(l look) int {
+	id, ok := b.styles[l]
+	if ok || b.err != nil {
+		return id
+	}
+	st := &excelize.Style{
+		Font:      &excelize.Font{Family: fontName, Size: 9, Bold: l.bold, Italic: l.italic, Color: l.color},
+		Alignment: &excelize.Alignment{WrapText: l.wrap, Vertical: "top", Horizontal: l.align},
+	}
+	if l.size > 0 {
+		st.Font.Size = l.size
+	}
+	if l.right {
+		st.Alignment.Horizontal = "right"
+	}
+	if l.middle {
+		st.Alignment.Vertical = "center"
+	}
+	if l.fill != "" {
+		st.Fill = excelize.Fill{Type: "pattern", Pattern: 1, Color: []string{l.fill}}
+	}
+	if l.line {
+		st.Border = []excelize.Border{{Type: "bottom", Color: "B0B0B0", Style: 1}}
+	}
+	if l.hair {
+		st.Border = []excelize.Border{{Type: "bottom", Color: "E2E2E2", Style: 1}}
+	}
+	if l.indent {
+		st.Alignment.Horizontal, st.Alignment.Indent = "left", 1
+	}
+	if l.format != "" {
+		st.CustomNumFmt = &l.format
+	}
+	id, err := b.f.NewStyle(st)
+	b.try(err)
+	b.styles[l] = id
+	return id
+}
+
+// sheet is a worksheet written row by row.
+type sheet struct {
+	b    *book
+	name string
+	w    *excelize.StreamWriter
+	row  int // next row, from 1
+	wide []float64
+}
+
+// layout of a sheet.
+type layout struct {
+	portrait bool
+	widths   []float64 // of the columns, in letters
+	freeze   string    // cell below and right of the frozen rows and columns
+	repeat   string    // rows printed on every page, "$1:$5"
+	zoom     float64
+}
+
+// add makes a sheet. Everything about its page is set here, because the stream
+// writer keeps only what was there before its first row.
+func (b *book) add(name string, l layout, before ...func(f *excelize.File, sheet string) error) *sheet {
+	s := &sheet{b: b, name: name, row: 1, wide: l.widths}
+	if b.err != nil {
+		return s
+	}
+	if len(b.f.GetSheetList()) == 1 && b.f.GetSheetList()[0] == "Sheet1" {
+		b.try(b.f.SetSheetName("Sheet1", name))
+	} else {
+		_, err := b.f.NewSheet(name)
+		b.try(err)
+	}
+	b.page(name, l)
+	for _, f := range before {
+		if b.err == nil {
+			b.try(f(b.f, name))
+		}
+	}
+	if b.err != nil {
+		return s
+	}
+	w, err := b.f.NewStreamWriter(name)
+	b.try(err)
+	s.w = w
+	if err == nil {
+		for i, width := range l.widths {
+			b.try(w.SetColWidth(i+1, i+1, width))
+		}
+	}
+	return s
+}
+
+func (b *book) page(name string, l layout) {
+	yes, no, one, zero, a4 := true, false, 1, 0, 9
+	orientation := "landscape"
+	if l.portrait {
+		orientation = "portrait"
+	}
+	side, end, edge := 0.5, 0.6, 0.3 // inches; fits A4 and Letter
+	b.try(b.f.SetPageLayout(name, &excelize.PageLayoutOptions{Size: &a4, Orientation: &orientation, FitToWidth: &one, FitToHeight: &zero}))
+	b.try(b.f.SetSheetProps(name, &excelize.SheetPropsOptions{FitToPage: &yes}))
+	b.try(b.f.SetPageMargins(name, &excelize.PageLayoutMarginsOptions{Left: &side, Right: &side, Top: &end, Bottom: &end, Header: &edge, Footer: &edge}))
+	b.try(b.f.SetHeaderFooter(name, &excelize.HeaderFooterOptions{
+		OddHeader: "&L&8" + headerText(b.header) + "&R&8" + headerText(name),
+		OddFooter: "&L&8" + headerText(b.footer) + "&R&8Page &P of &N"}))
+	view := &excelize.ViewOptions{ShowGridLines: &no}
+	if l.zoom > 0 {
+		view.ZoomScale = &l.zoom
+	}
+	b.try(b.f.SetSheetView(name, 0, view))
+	if l.freeze != "" {
+		x, y, err := excelize.CellNameToCoordinates(l.freeze)
+		b.try(err)
+		pane := "bottomRight"
+		if x == 1 {
+			pane = "bottomLeft"
+		}
+		b.try(b.f.SetPanes(name, &excelize.Panes{Freeze: true, XSplit: x - 1, YSplit: y - 1, TopLeftCell: l.freeze, ActivePane: pane,
+			Selection: []excelize.Selection{{SQRef: l.freeze, ActiveCell: l.freeze, Pane: pane}}}))
+	}
+	if l.repeat != "" {
+		b.try(b.f.SetDefinedName(&excelize.DefinedName{Name: "_xlnm.Print_Titles", RefersTo: "'" + name + "'!" + l.repeat, Scope: name}))
+	}
+}
+
+// headerText prepares text for a header or footer: & begins a code there, and the
+// whole may have 255 characters.
+func headerText(s string) string { return strings.ReplaceAll(cut(plain(s), 90), "&", "&&") }
+
+// cut shortens s to n runes.
+func cut(s string, n int) string {
+	if utf8.RuneCountInString(s) <= n {
+		return s
+	}
+	return string([]rune(s)[:n-1]) + "…"
+}
+
+// cell is one cell of a row. v is a string, a number, a time or nil; NaN and
+// infinity are written as an empty cell.
+type cell struct {
+	v any
+	l look
+}
+
+// add writes the next row; with height 0 it is as high as its wrapped text needs.
+func (s *sheet) add(height float64, cells ...cell) {
+	if s.b.err != nil {
+		return
+	}
+	row := make([]any, len(cells))
+	for i, c := range cells {
+		v := c.v
+		if f, ok := v.(float64); ok && !finite(f) {
+			v = nil
+		}
+		if t, ok := v.(string); ok {
+			v = cut(t, 32000)
+		}
+		row[i] = excelize.Cell{StyleID: s.b.style(c.l), Value: v}
+	}
+	if height == 0 {
+		height = s.height(cells)
+	}
+	s.b.try(s.w.SetRow(fmt.Sprintf("A%d", s.row), row, excelize.RowOpts{Height: min(height, 400)}))
+	s.row++
+}
+
+// height is what the wrapped texts of a row need in their columns. Programs do
+// not agree on whether they find it themselves.
+func (s *sheet) height(cells []cell) float64 {
+	h := 15.0
+	for i, c := range cells {
+		if t, ok := c.v.(string); ok && c.l.wrap && i < len(s.wide) {
+			h = max(h, lineHeight(t, int(s.wide[i]*1.15)))
+		}
+	}
+	return h
+}
+
+// lineHeight is the height, in points, of text in 9-point letters wrapped between
+// words at width letters.
+func lineHeight(text string, width int) float64 {
+	lines := 0
+	for _, l := range strings.Split(text, "\n") {
+		at := 0
+		lines++
+		for _, word := range strings.Fields(l) {
+			n := utf8.RuneCountInString(word)
+			if at > 0 && at+1+n > width {
+				lines++
+				at = 0
+			}
+			if n > width { // a word longer than the line is broken
+				lines += (n - 1) / width
+				n %= width
+			}
+			at += n + 1
+		}
+	}
+	return 3 + 12*float64(lines)
+}
+
+func finite(v float64) bool { return v-v == 0 }
+
+// skip leaves n rows empty.
+func (s *sheet) skip(n int) { s.row += n }
+
+// merge joins columns from to to (from 1) of the row written last.
+func (s *sheet) merge(from, to int) {
+	if s.b.err != nil {
+		return
+	}
+	a, _ := excelize.CoordinatesToCellName(from, s.row-1)
+	z, _ := excelize.CoordinatesToCellName(to, s.row-1)
+	s.b.try(s.w.MergeCell(a, z))
+}
+
+// table makes rows first … the last written, columns 1 … n, a defined table with
+// filters.
+func (s *sheet) table(name string, first, n int) {
+	if s.b.err != nil {
+		return
+	}
+	stripes := true
+	end, _ := excelize.CoordinatesToCellName(n, max(s.row-1, first+1))
+	s.b.try(s.w.AddTable(&excelize.Table{Range: fmt.Sprintf("A%d:%s", first, end), Name: name, StyleName: "TableStyleLight1", ShowRowStripes: &stripes}))
+}
+
+func (s *sheet) done() {
+	if s.b.err == nil {
+		s.b.try(s.w.Flush())
+	}
+}
+
+// write writes the workbook to path, the same bytes for the same content.
+func (b *book) write(path string) error {
+	if b.err != nil {
+		return errors.Join(fmt.Errorf("%s: %w", path, b.err), b.f.Close())
+	}
+	raw, err := b.f.WriteToBuffer()
+	err = errors.Join(err, b.f.Close())
+	if err != nil {
+		return err
+	}
+	out, err := steady(raw.Bytes())
+	if err != nil {
+		return err
+	}
+	return os.WriteFile(path, out, 0o666)
+}
+
+var contentTypes = regexp.MustCompile(`<(?:Default|Override) [^>]*?(?:/>|></(?:Default|Override)>)`)
+
+// steady rewrites the parts of a workbook in the order of their names, with the
+// list of content types sorted: the library's order differs from run to run once
+// pictures are embedded.
+func steady(raw []byte) ([]byte, error) {
+	in, err := zip.NewReader(bytes.NewReader(raw), int64(len(raw)))
+	if err != nil {
+		return nil, err
+	}
+	slices.SortFunc(in.File, func(a, b *zip.File) int { return strings.Compare(a.Name, b.Name) })
+	var buf bytes.Buffer
+	out := zip.NewWriter(&buf)
+	for _, f := range in.File {
+		r, err := f.Open()
+		if err != nil {
+			return nil, err
+		}
+		part, err := io.ReadAll(r)
+		if err = errors.Join(err, r.Close()); err != nil {
+			return nil, err
+		}
+		if f.Name == "[Content_Types].xml" {
+			part = sortElements(part)
+		}
+		w, err := out.CreateHeader(&zip.FileHeader{Name: f.Name, Method: zip.Deflate})
+		if err == nil {
+			_, err = w.Write(part)
+		}
+		if err != nil {
+			return nil, err
+		}
+	}
+	err = out.Close() // writes the directory: only then is buf whole
+	return buf.Bytes(), err
+}
+
+func sortElements(part []byte) []byte {
+	all := contentTypes.FindAll(part, -1)
+	if len(all) == 0 {
+		return part
+	}
+	start := contentTypes.FindIndex(part)[0]
+	tail := bytes.LastIndex(part, []byte("</Types>"))
+	sorted := slices.Clone(all)
+	slices.SortFunc(sorted, bytes.Compare)
+	return slices.Concat(part[:start], bytes.Join(sorted, nil), part[tail:])
+}
