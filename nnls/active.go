@@ -167,11 +167,7 @@ func (a *active) entering() int {
 		if tail <= a.negligible(j) {
 			continue // depends on the free columns: its dual is zero
 		}
-		w := 0.0
-		col := a.column(j)
-		for i := p; i < a.k; i++ {
-			w += col[i] * a.c[i]
-		}
+		w := dot(a.column(j)[p:], a.c[p:])
 		// The rounding error of w: of the column's tail times c, of the
 		// column times c's tail.
 		if w <= 8*eps*(tail*a.normB+a.norm[j]*rest) {

@@ -152,7 +152,7 @@ func (r *batchRun) window(from, to int) {
 		}
 	})
 	tasks := r.group(from, to)
-	r.each(len(tasks), func(w *batchWorker, task int) { r.solveAll(w, tasks[task]) })
+	r.each(len(tasks), func(w *batchWorker, task int) { r.small(w, tasks[task], r.solve) })
 }
 
 // group returns the usable samples in lists that miss the same rows, in the

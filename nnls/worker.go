@@ -150,14 +150,23 @@ func (w *batchWorker) fill(v []float64, f *factor, at int, b []float64, missing 
 	return gaps
 }
 
-// solveAll solves samples that miss the same rows.
-func (r *batchRun) solveAll(w *batchWorker, samples []int) {
+// sample is one right-hand side on its way through a batch.
+type sample struct {
+	i    int     // its number
+	rows int     // used
+	loss float64 // of information by missing rows, on average over directions; 1 is none
+	gone []byte  // rows of the factor that it misses
+}
+
+// small calls do for samples that miss the same rows, each with the factor and
+// the triangle to solve it on and the right-hand side to that in w.z. The worker
+// is another one where the factor is.
+func (r *batchRun) small(w *batchWorker, samples []int, do func(*batchWorker, *factor, *triangle, sample)) {
 	f, gone := r.f, []byte(r.gone[samples[0]-r.from])
 	if len(gone) == 0 {
 		for _, i := range samples {
-			at := i - r.from
-			copy(w.z, r.c[at*f.stride:])
-			r.solve(w, f, &f.tri, i, float64(f.k), r.f.m, gone)
+			copy(w.z, r.c[(i-r.from)*f.stride:])
+			do(w, f, &f.tri, sample{i, f.m, 1, nil})
 		}
 		return
 	}
@@ -167,50 +176,50 @@ func (r *batchRun) solveAll(w *batchWorker, samples []int) {
 	}
 	if w.reduced.reduce(f, gone, missing) {
 		for _, i := range samples {
-			at := i - r.from
-			copy(w.z, r.c[at*f.stride:])
+			copy(w.z, r.c[(i-r.from)*f.stride:])
 			w.reduced.forward(w.z)
-			r.solve(w, f, &w.reduced.tri, i, w.reduced.inv, f.m-missing, gone)
+			do(w, f, &w.reduced.tri, sample{i, f.m - missing, w.reduced.inv / float64(f.k), gone})
 		}
 		return
 	}
 	f = f.without(gone)
-	sub := newBatchWorker(f)
+	w = newBatchWorker(f)
 	c := make([]float64, f.stride)
 	for _, i := range samples {
-		sub.project(f, c, r.scaled(w, i), nil)
-		copy(sub.z, c)
-		r.solve(sub, f, &f.tri, i, float64(f.k), f.m, nil)
+		w.project(f, c, r.scaled(w, i), nil)
+		copy(w.z, c)
+		do(w, f, &f.tri, sample{i, f.m, 1, nil})
 	}
 }
 
-// solve solves sample i of the factor f from w.z, the right-hand side that goes
-// with the triangle t. loss is k times what the missing rows may have cost in
-// information, at least k.
-func (r *batchRun) solve(w *batchWorker, f *factor, t *triangle, i int, loss float64, rows int, gone []byte) {
-	at := i - r.from
-	bb := r.bb[at]
-	w.act.load(t, w.z, math.Sqrt(bb))
+// solve solves a sample on the triangle t of the factor f.
+func (r *batchRun) solve(w *batchWorker, f *factor, t *triangle, s sample) {
+	bb := r.bb[s.i-r.from]
+	normB := math.Sqrt(bb)
+	w.act.load(t, w.z, normB)
 	w.act.warmAll(t)
-	res := &r.results[i]
+	res := &r.results[s.i]
 	if res.Status = w.act.run(r.maxIter); res.Status == IterationLimit {
-		r.errs[i] = ErrIterationLimit
+		r.errs[s.i] = ErrIterationLimit
 	}
-	res.Iterations, res.Rank, res.Rows = w.act.iterations, t.k, rows
+	res.Iterations, res.Rank, res.Rows = w.act.iterations, t.k, s.rows
 	copy(res.Passive, w.act.free)
-	y := w.act.x
 	square := bb - sumSquares(w.z)
-	w.residual(t, y)
+	w.residual(t, w.act.x)
 	square += sumSquares(w.z)
-	loss /= float64(f.k)
-	res.Violation = violation(y, w.dual, t.norm, math.Sqrt(bb))
-	if square < 1e-6*loss*bb || loss > mostLoss || res.Violation > 1e-13 {
-		square, res.Violation = w.refine(f, t, r.scaled(w, i), math.Sqrt(bb), gone)
+	res.Violation = violation(w.act.x, w.dual, t.norm, normB)
+	if square < leastDifference*s.loss*bb || s.loss > mostLoss || res.Violation > mostViolation {
+		square, res.Violation = w.refine(f, t, r.scaled(w, s.i), normB, s.gone)
 	}
-	eb := r.eb[at]
-	res.Norm = math.Ldexp(math.Sqrt(max(square, 0)), eb+f.ew)
+	r.finish(w, f, s.i, square)
+}
+
+// finish writes the answer in the caller's units.
+func (r *batchRun) finish(w *batchWorker, f *factor, i int, square float64) {
+	eb := r.eb[i-r.from]
+	r.results[i].Norm = math.Ldexp(math.Sqrt(max(square, 0)), eb+f.ew)
 	dst := r.dst.RawRowView(i)
-	for j, v := range y {
+	for j, v := range w.act.x {
 		if dst[j] = math.Ldexp(v, eb-f.ea[j]); math.IsInf(dst[j], 0) {
 			r.fail(i, "variable %d of the answer exceeds the range of float64; scale a or b", j)
 			return
@@ -218,9 +227,16 @@ func (r *batchRun) solve(w *batchWorker, f *factor, t *triangle, i int, loss flo
 	}
 }
 
-// mostLoss bounds the answers that are taken without refinement: the missing
-// rows left every direction at least 1/mostLoss of its information, on average.
-const mostLoss = 100
+// An answer is refined from the rows of its sample where one of these applies.
+const (
+	// The residual is less than a thousandth of b: the difference of squares
+	// that gives it keeps 9 digits to here.
+	leastDifference = 1e-6
+	// The missing rows left less than a hundredth of the information.
+	mostLoss = 100
+	// Large terms cancel.
+	mostViolation = 1e-13
+)
 
 // residual overwrites z with z − t·y, and dual with tᵀ times that.
 func (w *batchWorker) residual(t *triangle, y []float64) {
