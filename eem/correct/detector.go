@@ -3,7 +3,6 @@ package correct
 import (
 	"fmt"
 	"math"
-	"slices"
 
 	"tarnlight/eem"
 )
@@ -73,7 +72,5 @@ func OffsetAuto(e *eem.EEM) (counts float64, ok bool) {
 	if len(dark) < darkCells {
 		return 0, false
 	}
-	slices.Sort(dark)
-	n := len(dark)
-	return (dark[(n-1)/2] + dark[n/2]) / 2, true
+	return median(dark), true
 }

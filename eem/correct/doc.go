@@ -22,6 +22,8 @@ import (
 
 // Names of the steps in the notes.
 const (
+	StepDetector   = "detector"
+	StepNoise      = "noise"
 	StepSaturation = "saturation"
 	StepOffset     = "offset"
 	StepSpectral   = "spectral factors"

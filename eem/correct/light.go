@@ -105,7 +105,7 @@ func scanNoise(e *eem.EEM) float64 {
 	return math.Sqrt(sum/float64(len(d))) / sixth
 }
 
-// medianOf returns the upper median of v, of every n-th value where there are more
+// medianOf returns the median of v, of every n-th value where there are more
 // than 2,000: the median of so many is known to 3 % of a standard deviation.
 func medianOf(v []float64) float64 {
 	const enough = 2000
@@ -114,8 +114,7 @@ func medianOf(v []float64) float64 {
 	for i := 0; i < len(v); i += step {
 		s = append(s, v[i])
 	}
-	slices.Sort(s)
-	return s[len(s)/2]
+	return median(s)
 }
 
 // standsOut says whether two neighbouring cells of a scan are both above level.
