@@ -9,17 +9,29 @@ import (
 // much shorter than the longest. A damaged row between or beside them is an
 // error; free text inside one scan joins its halves.
 func (r *reader) mainBlocks() error {
-	all := r.rows.blocks
+	var all []block
 	longest := 0
-	for i := range all {
-		longest = max(longest, all[i].rows)
-	}
-	var gap []textLine // above the next main block
-	for i := range all {
-		b := all[i]
+	for i := range r.rows.blocks {
+		b := r.rows.blocks[i]
 		if err := r.ragged(i); err != nil {
 			return err
 		}
+		if n := len(all); n > 0 {
+			joined, err := r.between(&all[n-1], &b)
+			if err != nil {
+				return err
+			}
+			if joined {
+				longest = max(longest, all[n-1].rows)
+				continue
+			}
+		}
+		all = append(all, b)
+		longest = max(longest, b.rows)
+	}
+	var gap []textLine // above the next main block
+	r.main = r.main[:0]
+	for i, b := range all {
 		if i > 0 && len(b.gap) == 0 && all[i-1].rows == 1 {
 			b.above = r.rowCells(&all[i-1], 0)
 		}
@@ -28,16 +40,6 @@ func (r *reader) mainBlocks() error {
 			continue
 		}
 		b.gap = gap
-		if n := len(r.main); n > 0 {
-			joined, err := r.between(&r.main[n-1], &b)
-			if err != nil {
-				return err
-			}
-			if joined {
-				gap = nil
-				continue
-			}
-		}
 		r.main = append(r.main, b)
 		gap = nil
 	}
@@ -63,7 +65,10 @@ func (r *reader) between(a, b *block) (joined bool, err error) {
 	if a.cols != b.cols {
 		return false, nil
 	}
-	goesOn := a.rows >= 2 && continues(r.rowCells(a, a.rows-2)[0], r.rowCells(a, a.rows-1)[0], r.rowCells(b, 0)[0])
+	end, start := r.rowCells(a, a.rows-1)[0], r.rowCells(b, 0)[0]
+	goesOn := a.rows > 1 && continues(r.rowCells(a, a.rows-2)[0], end, start) ||
+		b.rows > 1 && continues(r.rowCells(b, 1)[0], start, end)
+	long := a.rows > 1 && b.rows > 1
 	for _, t := range b.gap {
 		f := splitFields(t.text, r.rows.delim)
 		bad, numbers := -1, 0
@@ -76,7 +81,7 @@ func (r *reader) between(a, b *block) (joined bool, err error) {
 		}
 		switch {
 		case len(f) != a.cols || bad < 0 || numbers == 0:
-		case bad > 0 && (goesOn || numbers >= len(f)-1 && len(f) > 2), bad == 0 && goesOn:
+		case goesOn, r.lies(f[0], end, start), bad > 0 && long && len(f) > 2 && numbers == len(f)-1:
 			return false, r.badCell(t.no, f[bad])
 		}
 	}
@@ -96,6 +101,12 @@ func (r *reader) between(a, b *block) (joined bool, err error) {
 	a.over += b.over
 	a.last = b.last
 	return true, nil
+}
+
+// lies says whether a cell is a number between two others.
+func (r *reader) lies(cell []byte, a, b float64) bool {
+	v, ok := parseNumber(cell, r.rows.dec)
+	return ok && (v-a)*(b-v) > 0
 }
 
 // edges refuses a text line directly above the first or below the last block that

@@ -116,6 +116,9 @@ func (r *reader) named(l longColumns) error {
 			return err
 		}
 	}
+	if err := r.damaged(blocks, l); err != nil {
+		return err
+	}
 	r.over = 0
 	for i := range blocks {
 		if blocks[i].cols <= max(l.ex, l.em, l.f, l.label) {
@@ -129,6 +132,31 @@ func (r *reader) named(l longColumns) error {
 	r.file.HeaderLines = blocks[0].first - 1
 	r.file.FooterLines = r.rows.total - blocks[len(blocks)-1].last
 	return r.long(blocks, l)
+}
+
+// damaged refuses a line of text that has the columns of the header and stands
+// between rows, or begins like one.
+func (r *reader) damaged(blocks []block, l longColumns) error {
+	check := func(list []textLine, inside bool) error {
+		for _, t := range list {
+			f := splitFields(t.text, l.delim)
+			if t.no <= l.line || len(f) != len(l.head) || !inside && leadingDigits(f[l.ex]) == 0 {
+				continue
+			}
+			for _, c := range []int{l.ex, l.em, l.f} {
+				if _, ok := parseNumber(f[c], r.rows.dec); !ok && missing(f[c]) == present {
+					return r.badCell(t.no, f[c])
+				}
+			}
+		}
+		return nil
+	}
+	for i := range blocks {
+		if err := check(blocks[i].gap, i > 0); err != nil {
+			return err
+		}
+	}
+	return check(r.rows.tail, false)
 }
 
 // readByColumn reads the rows again, the columns that matter only.
@@ -145,20 +173,6 @@ func (r *reader) readByColumn(l *longColumns) ([]block, error) {
 	rr.want[l.ex], rr.want[l.em], rr.want[l.f] = true, true, true
 	if e := rr.read(r.text); e != nil {
 		return nil, errorf(r.name, e.line, "%s", e.msg)
-	}
-	for i := range rr.blocks {
-		for _, t := range rr.blocks[i].gap {
-			f := splitFields(t.text, l.delim)
-			if len(f) != len(l.head) {
-				continue
-			}
-			for _, c := range []int{l.ex, l.em, l.f} {
-				if _, ok := parseNumber(f[c], dec); !ok && missing(f[c]) == present && (i > 0 || leadingDigits(f[l.ex]) > 0) {
-					r.rows = rr
-					return nil, r.badCell(t.no, f[c])
-				}
-			}
-		}
 	}
 	r.rows = rr
 	r.file.Delimiter, r.file.Decimal = string(l.delim), string(dec)

@@ -138,16 +138,19 @@ func (s *sheetReader) readCell(e xml.StartElement) error {
 
 // value turns a stored cell into text.
 func (s *sheetReader) value(c *xmlCell, kind, style, ref string) (string, error) {
-	if c.V == nil {
-		switch {
-		case c.IS != nil:
-			return c.IS.String(), nil
-		case c.F != nil && kind != "str":
-			return "", s.cellError(ref, "a formula without a stored result; open the workbook in a spreadsheet program and save it, or fill in the value")
-		}
+	v := ""
+	if c.V != nil {
+		v = *c.V
+	}
+	switch {
+	case v != "":
+	case c.IS != nil:
+		return c.IS.String(), nil
+	case c.F != nil && (c.V == nil || kind != "str"): // "" may be the result of a formula
+		return "", s.cellError(ref, "a formula without a stored result; open the workbook in a spreadsheet program and save it, or fill in the value")
+	default:
 		return "", nil
 	}
-	v := *c.V
 	switch kind {
 	case "e":
 		return "", s.cellError(ref, "%s is the error value of a formula; repair it or clear the cell", v)

@@ -6,6 +6,7 @@ import (
 	"errors"
 	"io"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -98,8 +99,8 @@ func (t *Table) add(line int, cells []string) error {
 		t.Header, t.HeadLine = cells[:last:last], line
 	default:
 		cells = cells[:max(last, min(len(cells), len(t.Header)))]
-		for len(cells) < len(t.Header) {
-			cells = append(cells, "")
+		if n := len(t.Header) - len(cells); n > 0 {
+			cells = append(slices.Grow(cells, n), make([]string, n)...)
 		}
 		if t.slots += len(cells); t.slots > maxTableCells {
 			return errorf(t.Path, line, "more than %d cells; check that this is the right file", maxTableCells)

@@ -28,7 +28,7 @@ var (
 	// rangeAfter is what makes the number before it the start of a range or list.
 	rangeAfter = regexp.MustCompile(`(?i)^[\s\x{a0}]*(?:nm)?[\s\x{a0}]*(?:-|–|to|bis|\.\.|:|,|;|\t)[\s\x{a0}]*([1-9][0-9]{2,3})(?:[^0-9]|$)`)
 	// nmAfter finds a number with the unit nm; in a file name it may stand alone.
-	nmAfter = regexp.MustCompile(`(?i)(?:^|[^0-9.,])(?:(em|emission)[ _-]*)?([0-9]{3,4}(?:[.,][0-9]+)?)[ _-]?nm(?:[^\p{L}]|$)`)
+	nmAfter = regexp.MustCompile(`(?i)(?:^|[^0-9.,])(?:(em|emission)[ _-]*)?([0-9]{3,4}(?:[.,][0-9]+)?)[ _-]?nm\b`)
 	// plainNM is a cell that is nothing but a wavelength.
 	plainNM = regexp.MustCompile(`(?i)^(?:x|λ=?)?([0-9]+(?:[.,][0-9]+)?)[\s\x{a0}]*(?:\(?(?:nm|1/cm|cm-1|cm\^-1|cm⁻¹)\)?)?$`)
 	// wavenumberWord says that an axis is in 1/cm.
@@ -41,10 +41,14 @@ var (
 // mentions by the word. A range or list of wavelengths is none.
 func mentionedEx(s string) (float64, bool) {
 	for _, m := range exMention.FindAllStringSubmatchIndex(s, -1) {
-		if r := rangeAfter.FindStringSubmatch(s[m[3]:]); r != nil {
+		end := m[3]
+		if end < len(s) && s[end]-'0' <= 9 { // 240,24|5: the comma of a list
+			end = m[2] + strings.IndexAny(s[m[2]:end], ".,")
+		}
+		if end < m[2] || rangeAfter.MatchString(s[end:]) {
 			continue
 		}
-		if v, ok := plausibleNM(s[m[2]:m[3]]); ok {
+		if v, ok := plausibleNM(s[m[2]:end]); ok {
 			return v, true
 		}
 	}
