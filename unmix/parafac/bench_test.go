@@ -54,7 +54,7 @@ func BenchmarkStart(b *testing.B) {
 			var it, k int
 			for b.Loop() {
 				set.Seed++
-				all, err := runStarts(context.Background(), pr.all, 5, &set)
+				all, err := runStarts(context.Background(), pr.all, 5, &set, nil)
 				if err != nil {
 					b.Fatal(err)
 				}
@@ -74,6 +74,22 @@ func BenchmarkFit(b *testing.B) {
 			b.ReportAllocs()
 			for b.Loop() {
 				if _, err := Fit(context.Background(), c, 5, nil); err != nil {
+					b.Fatal(err)
+				}
+			}
+		})
+	}
+}
+
+// BenchmarkChoose is the whole choice: 2 to 7 components, ten starts each and
+// those from one component more, split halves.
+func BenchmarkChoose(b *testing.B) {
+	for _, n := range []int{200, 1000, 5000} {
+		c := bench(n)
+		b.Run(fmt.Sprint(n), func(b *testing.B) {
+			b.ReportAllocs()
+			for b.Loop() {
+				if _, err := Choose(context.Background(), c, 2, 7, nil, nil); err != nil {
 					b.Fatal(err)
 				}
 			}

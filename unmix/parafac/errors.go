@@ -182,6 +182,8 @@ func (in *influence) tell(r *Result) {
 		r.ExSE, r.ExDetermined = append(r.ExSE, se), append(r.ExDetermined, ok)
 		se, ok = in.modeSE(sc, in.c, in.dampC, in.k, x, peakC[x], r.Held[to] != "")
 		r.EmSE, r.EmDetermined = append(r.EmSE, se), append(r.EmDetermined, ok)
+		r.exRes = append(r.exRes, undamped(in.dampB, in.j, f, x))
+		r.emRes = append(r.emRes, undamped(in.dampC, in.k, f, x))
 	}
 	score := in.scoreSE(peakB, peakC)
 	for row, i := range in.sample {
@@ -190,6 +192,14 @@ func (in *influence) tell(r *Result) {
 		}
 	}
 	in.tellSamples(r, sb, sc)
+}
+
+func undamped(damped []bool, rows, f, x int) []bool {
+	out := make([]bool, rows)
+	for r := range out {
+		out[r] = !damped[r*f+x]
+	}
+	return out
 }
 
 // modeSE scales the standard errors of component x to a maximum of 1 and says

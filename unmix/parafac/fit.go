@@ -22,7 +22,7 @@ func Fit(ctx context.Context, c *eem.Cube, components int, s *Settings) (*Result
 	if err != nil {
 		return nil, err
 	}
-	all, err := runStarts(ctx, pr.all, components, &set)
+	all, err := runStarts(ctx, pr.all, components, &set, nil)
 	if err != nil {
 		return nil, err
 	}
@@ -31,7 +31,8 @@ func Fit(ctx context.Context, c *eem.Cube, components int, s *Settings) (*Result
 			return nil, err
 		}
 	}
-	return conclude(ctx, c, p, all, &set)
+	r, _, err := conclude(ctx, c, p, all, &set)
+	return r, err
 }
 
 // refill fills the gaps once more, from the best start, and lets it go on.
@@ -71,7 +72,7 @@ func bestOf(all []*outcome) *outcome {
 // conclude brings the best start to its end on the samples themselves: takes the
 // ridge from what the data determine and finishes by Gauss–Newton steps, whose
 // matrix also gives the errors.
-func conclude(ctx context.Context, c *eem.Cube, p *problem, all []*outcome, set *Settings) (*Result, error) {
+func conclude(ctx context.Context, c *eem.Cube, p *problem, all []*outcome, set *Settings) (*Result, *als, error) {
 	best := bestOf(all).s
 	s := newALS(p.whole(), best.f, set)
 	starts, loss := summarise(all, best, p.x2), best.loss/p.x2
@@ -80,12 +81,16 @@ func conclude(ctx context.Context, c *eem.Cube, p *problem, all []*outcome, set 
 	s.damp()
 	best.dampB, best.dampC = s.dampB, s.dampC
 	if _, err := best.iterate(ctx, set.Tol, polishIter); err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	s.take(best)
 	n := s.newton()
-	if err := n.finish(ctx); err != nil {
-		return nil, err
+	steps := newtonSteps
+	if t, _ := s.tripleCosine(); t > sharedTriple && !s.free {
+		steps = 0
+	}
+	if err := n.finish(ctx, steps); err != nil {
+		return nil, nil, err
 	}
 	r := s.result(c, set)
 	r.Starts, r.Loss, r.Certificate = starts, loss, n.delta
@@ -94,7 +99,7 @@ func conclude(ctx context.Context, c *eem.Cube, p *problem, all []*outcome, set 
 		r.Status = Converged
 	}
 	n.influence().tell(r)
-	return r, nil
+	return r, s, nil
 }
 
 func summarise(all []*outcome, best *als, x2 float64) []Start {
@@ -112,12 +117,21 @@ type outcome struct {
 	converged bool
 }
 
-// runStarts screens all starts and lets the best go on.
-func runStarts(ctx context.Context, d *data, f int, set *Settings) ([]*outcome, error) {
-	all := make([]*outcome, set.Starts)
+// runStarts screens all starts and lets the best go on. Beyond the random ones
+// there is one for each component of the model above, if any, without it.
+func runStarts(ctx context.Context, d *data, f int, set *Settings, above *als) ([]*outcome, error) {
+	more := 0
+	if above != nil {
+		more = above.f
+	}
+	all := make([]*outcome, set.Starts+more)
 	err := parallel(ctx, set, len(all), "starts", func(n int) (err error) {
 		s := newALS(d, f, set)
-		s.random(set.Seed, n, set.Hold)
+		if n < set.Starts {
+			s.random(set.Seed, n, set.Hold)
+		} else {
+			s.without(above, n-set.Starts, set.Hold)
+		}
 		all[n] = &outcome{s: s}
 		all[n].converged, err = s.iterate(ctx, set.Tol, min(screenIter, set.MaxIter))
 		return err

@@ -455,7 +455,7 @@ func (n *newton) bounded(damp float64) []float64 {
 	for i := range keep {
 		keep[i] = true
 	}
-	for range 8 {
+	for range recuts {
 		cut := false
 		for i, e := range n.theta {
 			if x, _ := n.entry(e); keep[i] && *x+step[i] < 0 {
@@ -474,17 +474,18 @@ func (n *newton) bounded(damp float64) []float64 {
 }
 
 const (
-	newtonSteps = 30
+	newtonSteps = 20   // at most, 0 for a model that two components share
+	recuts      = 3    // times a step is solved again with what went below zero set there
 	certified   = 0.1  // δ of a converged fit
 	goodEnough  = 1e-3 // δ at which the steps end
 )
 
 // finish takes Gauss–Newton steps, damped as Levenberg and Marquardt do, until
 // the certificate is good or no step lowers the loss any more.
-func (n *newton) finish(ctx context.Context) error {
+func (n *newton) finish(ctx context.Context, steps int) error {
 	n.gradient()
 	before, damp := math.Inf(1), 0.0
-	for range newtonSteps {
+	for range steps {
 		if err := ctx.Err(); err != nil {
 			return err
 		}
@@ -492,8 +493,9 @@ func (n *newton) finish(ctx context.Context) error {
 		if !n.decrement() || n.delta <= goodEnough || n.delta <= certified && n.delta > before/2 {
 			return nil
 		}
-		if damp = n.step(damp); math.IsInf(damp, 1) {
-			return nil
+		slow := n.delta > 0.9*before
+		if damp = n.step(damp); math.IsInf(damp, 1) || slow && damp > 1e-3 {
+			break
 		}
 		before = n.delta
 		n.iter++
@@ -508,7 +510,7 @@ func (n *newton) finish(ctx context.Context) error {
 func (n *newton) step(damp float64) float64 {
 	b, c, a, loss := append([]float64(nil), n.b...), append([]float64(nil), n.c...), append([]float64(nil), n.a...), n.loss
 	theta, grad := append([]int(nil), n.theta...), append([]float64(nil), n.grad...)
-	for range 6 {
+	for range 4 {
 		if move := n.bounded(damp); move != nil {
 			for i, e := range n.theta {
 				x, _ := n.entry(e)

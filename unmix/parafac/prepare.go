@@ -2,7 +2,6 @@ package parafac
 
 import (
 	"context"
-	"math/rand/v2"
 	"slices"
 )
 
@@ -12,9 +11,10 @@ import (
 type prepared struct {
 	*problem
 	all     *data
-	quarter [][]int  // rows of each quarter
-	part    []*basis // nil where nothing was compressed
-	filled  bool     // gaps hold modelled values: the end must be on the samples
+	quarter [][]int     // rows of each quarter
+	part    []*basis    // nil where nothing was compressed
+	full    [][]float64 // where filled: the samples with their gaps filled
+	filled  bool        // gaps hold modelled values: the end must be on the samples
 }
 
 // prepare compresses. Samples with gaps stay beside the basis while they are
@@ -83,7 +83,7 @@ func (pr *prepared) fill(ctx context.Context, s *als, set *Settings) error {
 			}
 		}
 	}
-	pr.filled = true
+	pr.filled, pr.full = true, x
 	return pr.compress(ctx, x, nil, set)
 }
 
@@ -108,7 +108,7 @@ func (p *problem) filler(ctx context.Context, f int, set *Settings) (*als, error
 		}
 		d = base.stacked([]*basis{compress(base.x, all, basisRank, set.Seed)}, nil)
 	}
-	starts, err := runStarts(ctx, d, f, &few)
+	starts, err := runStarts(ctx, d, f, &few, nil)
 	if err != nil {
 		return nil, err
 	}
@@ -126,7 +126,7 @@ func (p *problem) alone(seed uint64) (groups [][]int, order []int) {
 	for i := range groups {
 		groups[i] = []int{i}
 	}
-	return groups, rand.New(rand.NewPCG(seed, 2<<32)).Perm(p.i)
+	return groups, shuffled(p.i, seed)
 }
 
 // quarters deals the samples at random into four parts as equal as can be; what

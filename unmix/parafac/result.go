@@ -41,9 +41,16 @@ type Result struct {
 	ExSSE     []float64 // J
 	EmSSE     []float64 // K
 
-	Loss        float64 // what the fit lowered: scaled, weighted, over ‖x‖² of the same
-	Iterations  int     // of the best start
-	Starts      []Start
+	Loss       float64 // what the fit lowered: scaled, weighted, over ‖x‖² of the same
+	Iterations int     // of the best start
+	Starts     []Start
+	// CoreConsistency, percent, in the fit's own scale; see the function.
+	CoreConsistency float64
+	// TripleCosine is the one of largest size among pairs of components, TriplePair.
+	TripleCosine float64
+	TriplePair   [2]int
+	// Structure is the mean correlation of neighbouring residuals.
+	Structure   float64
 	Certificate float64 // δ = √(g'H⁺g)/σ: distance from the optimum in standard errors, jointly
 	Revived     int     // components that died on the way and were set again
 
@@ -53,7 +60,8 @@ type Result struct {
 
 	Notes []eem.Note
 
-	order []int // place of each component in the fit
+	order        []int    // place of each component in the fit
+	exRes, emRes [][]bool // F × J and F × K: not damped
 }
 
 // Start is one start of a fit.
@@ -108,6 +116,11 @@ func (s *als) result(c *eem.Cube, set *Settings) *Result {
 		r.Fitted[i] = true
 	}
 	s.residuals(c, r)
+	r.CoreConsistency, r.Structure = s.coreConsistency(), s.structure()
+	t, pair := s.tripleCosine()
+	r.TripleCosine = t
+	r.TriplePair = [2]int{slices.Index(order, pair[0]), slices.Index(order, pair[1])}
+	slices.Sort(r.TriplePair[:])
 	return r
 }
 

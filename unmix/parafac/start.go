@@ -28,6 +28,26 @@ func (s *als) random(seed uint64, start int, hold []Held) {
 	s.scores()
 }
 
+// without sets the factors to those of a model of one component more, with
+// component drop left out.
+func (s *als) without(above *als, drop int, hold []Held) {
+	cut := func(dst, src []float64, n int) {
+		for i := range n {
+			to := 0
+			for f := range above.f {
+				if f != drop {
+					dst[i*s.f+to] = src[i*above.f+f]
+					to++
+				}
+			}
+		}
+	}
+	cut(s.b, above.b, s.j)
+	cut(s.c, above.c, s.k)
+	s.hold(hold)
+	s.scores()
+}
+
 // hold puts the known spectra into the first columns and fixes them.
 func (s *als) hold(hold []Held) {
 	if len(hold) == 0 {

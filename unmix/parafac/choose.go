@@ -1,0 +1,300 @@
+package parafac
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"slices"
+
+	"tarnlight/eem"
+)
+
+// Splits says how a survey may be cut into halves. The zero value works.
+type Splits struct {
+	// Group, I: samples with the same text, unless it is empty, are never parted:
+	// the replicates of one bottle.
+	Group []string
+	// By are columns whose values part the samples: setup, site, season.
+	By []SplitBy
+}
+
+// SplitBy is one run-sheet column; Value has one text a sample.
+type SplitBy struct {
+	Name  string
+	Value []string
+}
+
+// Choice is the table from which a number of components is chosen.
+type Choice struct {
+	Candidates []*Candidate // by number of components
+	Splits     []Split
+	Components int    // the largest number that passes; 0 when none does
+	Verdict    string // why that one, and why not the next
+}
+
+// Candidate is one number of components.
+type Candidate struct {
+	*Result
+	Gain      float64 // percentage points explained beyond the candidate before; 0 for the first
+	Agree     float64 // share of the starts that reached this model
+	Halves    int     // splits made, those by a column left out
+	HalvesOK  int     // of these, in how many every component was found in both halves
+	LeastHalf float64 // smallest congruence of a component between halves, over these splits' median one
+	Passes    bool
+	Reason    string // why it does not pass, or what speaks for it
+}
+
+// Split is one component of one candidate in one pair of halves. Congruences and
+// shifts are between the halves, over the loadings that the whole survey's mask
+// leaves open.
+type Split struct {
+	Components       int
+	Name             string // "random 1", "alternating", "site: A, C against B"
+	Component        int
+	First, Second    int     // samples in each half
+	Ex, Em           float64 // congruence
+	ExPeak, EmPeak   float64 // nm, second half's peak less the first's
+	ExCentre, EmMean float64 // nm, the same for the centroid
+	Agrees           bool    // both congruences at least 0.95
+}
+
+const (
+	sameSpectrum = 0.95 // Lorenzo-Seva & ten Berge 2006
+	sharedTriple = 0.7  // one component shared by two (METHODS 5.3, from memory)
+	soundCore    = 75   // core consistency below which a fit that cannot be split is not believed (from memory)
+	soundStarts  = 0.5  // share of starts, likewise (common practice, no source)
+	mostlySeen   = 0.5  // share of a component's loadings that the mask must leave open
+)
+
+// Choose fits from … to components, splits the survey into halves, and says
+// which numbers the data bear. The settings hold for every fit. A candidate that
+// cannot be fitted is left out, with the reason in the verdict; an error is
+// returned when none can.
+func Choose(ctx context.Context, c *eem.Cube, from, to int, s *Settings, sp *Splits) (*Choice, error) {
+	if from < 1 || to < from {
+		return nil, fmt.Errorf("components from %d to %d: ask for a range such as 2 to 7", from, to)
+	}
+	set := s.withDefaults()
+	if sp == nil {
+		sp = &Splits{}
+	}
+	if err := sp.check(c.Len()); err != nil {
+		return nil, err
+	}
+	if from < len(set.Hold) {
+		return nil, fmt.Errorf("%d spectra are held but the range begins at %d components; begin it at %d or more", len(set.Hold), from, len(set.Hold))
+	}
+	p, top, err := largest(c, from, to, &set)
+	if err != nil {
+		return nil, err
+	}
+	groups := p.groups(sp)
+	pr, err := p.prepare(ctx, top, quarters(groups, shuffled(len(groups), set.Seed)), &set)
+	if err != nil {
+		return nil, err
+	}
+	ch := &Choice{}
+	models, err := pr.descend(ctx, c, from, top, &set, ch)
+	if err != nil {
+		return nil, err
+	}
+	if err := pr.splitAll(ctx, models, groups, sp, &set, ch); err != nil {
+		return nil, err
+	}
+	ch.judge(to, top)
+	return ch, nil
+}
+
+// largest makes the problem of the largest number of components, at most to,
+// that the samples allow.
+func largest(c *eem.Cube, from, to int, set *Settings) (*problem, int, error) {
+	var first error
+	for f := min(to, maxF, max(from, c.Len())); f >= from; f-- {
+		p, err := newProblem(c, f, set)
+		if err == nil {
+			return p, f, nil
+		}
+		first = err
+	}
+	if first == nil {
+		first = errors.New("no number of components in this range can be fitted")
+	}
+	return nil, 0, first
+}
+
+// model is a candidate's fit as it goes into the split halves.
+type model struct {
+	s *als // finished, on the samples
+	r *Result
+}
+
+// descend fits every number of components from the largest down. Each also
+// starts from the models of one more with one component left out, which find
+// optima that random starts miss (NUMERICS 2f).
+func (pr *prepared) descend(ctx context.Context, c *eem.Cube, from, to int, set *Settings, ch *Choice) ([]*model, error) {
+	models := make([]*model, to-from+1)
+	var above *als
+	for f := to; f >= from; f-- {
+		set.Progress(to-f, to-from+1, fmt.Sprintf("%d components", f))
+		all, err := runStarts(ctx, pr.all, f, set, above)
+		if err != nil {
+			return nil, err
+		}
+		if above, err = pr.continued(ctx, all, set); err != nil {
+			return nil, err
+		}
+		r, s, err := conclude(ctx, c, pr.problem, all, set)
+		if err != nil {
+			return nil, err
+		}
+		models[f-from] = &model{s: s, r: r}
+	}
+	for n, m := range models {
+		cand := &Candidate{Result: m.r, Agree: m.r.agree()}
+		if n > 0 {
+			cand.Gain = m.r.Explained - models[n-1].r.Explained
+		}
+		ch.Candidates = append(ch.Candidates, cand)
+	}
+	return models, nil
+}
+
+// continued refills gaps where there are many and returns the best model as the
+// next smaller number starts from it, ridge and all.
+func (pr *prepared) continued(ctx context.Context, all []*outcome, set *Settings) (*als, error) {
+	if pr.filled {
+		if _, err := pr.refill(ctx, all, set); err != nil {
+			return nil, err
+		}
+	}
+	best := bestOf(all).s
+	keep := newALS(pr.all, best.f, set)
+	keep.take(best)
+	return keep, nil
+}
+
+// agree is the share of the starts that reached the best model.
+func (r *Result) agree() float64 {
+	n := 0
+	for _, s := range r.Starts {
+		if s.Agrees {
+			n++
+		}
+	}
+	return float64(n) / float64(len(r.Starts))
+}
+
+func (sp *Splits) check(samples int) error {
+	if sp.Group != nil && len(sp.Group) != samples {
+		return fmt.Errorf("%d groups given for %d samples", len(sp.Group), samples)
+	}
+	for _, b := range sp.By {
+		if len(b.Value) != samples {
+			return fmt.Errorf("column %q has %d values for %d samples", b.Name, len(b.Value), samples)
+		}
+	}
+	return nil
+}
+
+// groups lists the rows that belong together, in the order of their first one.
+func (p *problem) groups(sp *Splits) [][]int {
+	var out [][]int
+	at := make(map[string]int)
+	for row, i := range p.sample {
+		if sp.Group == nil || sp.Group[i] == "" {
+			out = append(out, []int{row})
+			continue
+		}
+		n, ok := at[sp.Group[i]]
+		if !ok {
+			n = len(out)
+			at[sp.Group[i]] = n
+			out = append(out, nil)
+		}
+		out[n] = append(out[n], row)
+	}
+	return out
+}
+
+// judge decides which candidates pass and says why.
+func (ch *Choice) judge(asked, top int) {
+	for _, c := range ch.Candidates {
+		c.Passes, c.Reason = c.judge()
+		if c.Passes {
+			ch.Components = c.Components
+		}
+	}
+	ch.Verdict = ch.words(asked, top)
+}
+
+func (c *Candidate) judge() (bool, string) {
+	switch x, y := c.leastSeen(); {
+	case c.Status != Converged:
+		return false, fmt.Sprintf("the fit did not converge in %d iterations, a sign of too many components", c.Iterations)
+	case c.TripleCosine > sharedTriple:
+		return false, fmt.Sprintf("components %d and %d are one shared by two (triple cosine %.2f above %.1f)", c.TriplePair[0]+1, c.TriplePair[1]+1, c.TripleCosine, sharedTriple)
+	case c.TripleCosine < -0.85:
+		return false, fmt.Sprintf("components %d and %d cancel each other (triple cosine %.2f)", c.TriplePair[0]+1, c.TriplePair[1]+1, c.TripleCosine)
+	case y < mostlySeen:
+		return false, fmt.Sprintf("only %.0f %% of the loadings of component %d are open to the data", 100*y, x+1)
+	case c.Halves > 0 && 2*c.HalvesOK <= c.Halves:
+		return false, fmt.Sprintf("split halves disagree: all components were found in both halves in %d of %d splits (smallest congruence, median split: %.2f)", c.HalvesOK, c.Halves, c.LeastHalf)
+	case c.Halves > 0:
+		return true, fmt.Sprintf("all components were found in both halves in %d of %d splits", c.HalvesOK, c.Halves)
+	case c.Components > 2 && c.CoreConsistency < soundCore:
+		return false, fmt.Sprintf("core consistency %.0f %% is below %d %%, and there are too few samples to split", c.CoreConsistency, soundCore)
+	case c.Agree < soundStarts:
+		return false, fmt.Sprintf("only %.0f %% of the starts reached this model, and there are too few samples to split", 100*c.Agree)
+	default:
+		return true, fmt.Sprintf("%.0f %% of the starts agree and core consistency is %.0f %%; there are too few samples to split", 100*c.Agree, c.CoreConsistency)
+	}
+}
+
+// leastSeen returns the component with the smallest share of loadings in one
+// mode that the mask leaves open to the data, over the wavelengths where it has a tenth of its peak.
+func (c *Candidate) leastSeen() (int, float64) {
+	at, least := 0, 1.0
+	for f := range c.Components {
+		for _, m := range []struct {
+			v  []float64
+			ok []bool
+		}{{c.Ex[f], c.exRes[f]}, {c.Em[f], c.emRes[f]}} {
+			n, seen := 0, 0
+			for i, v := range m.v {
+				if v > 0.1 {
+					n++
+					if m.ok[i] {
+						seen++
+					}
+				}
+			}
+			if share := float64(seen) / float64(max(1, n)); share < least {
+				at, least = f, share
+			}
+		}
+	}
+	return at, least
+}
+
+func (ch *Choice) words(asked, top int) string {
+	var w string
+	next := -1
+	if ch.Components == 0 {
+		w = "No number of components passes."
+		next = 0
+	} else {
+		n := slices.IndexFunc(ch.Candidates, func(c *Candidate) bool { return c.Components == ch.Components })
+		w = fmt.Sprintf("%d components: %s.", ch.Components, ch.Candidates[n].Reason)
+		next = n + 1
+	}
+	for _, c := range ch.Candidates[next:] {
+		w += fmt.Sprintf(" Not %d: %s.", c.Components, c.Reason)
+	}
+	if ch.Components == top && top == asked {
+		w += " It is the largest number tried; try more."
+	}
+	if top < asked {
+		w += fmt.Sprintf(" More than %d cannot be fitted to so few samples.", top)
+	}
+	return w
+}
