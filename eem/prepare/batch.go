@@ -1,0 +1,267 @@
+package prepare
+
+import (
+	"fmt"
+	"math"
+	"slices"
+	"strings"
+	"time"
+
+	"tarnlight/eem"
+	"tarnlight/eem/correct"
+	"tarnlight/eem/survey"
+)
+
+// Batch is a set of bottles measured together: one setup, one day, or what the
+// sheet names a batch.
+type Batch struct {
+	Name    string
+	Setup   string
+	Day     string // of its first bottle, empty when unknown
+	Bottles []*Bottle
+	Blanks  []*Bottle // usable blanks
+	Raman   correct.RamanArea
+	Quinine float64 // intensity of 1 µg/L quinine sulfate at ex 350 / em 450 nm, NaN unknown
+	Reason  string  // why the batch has no intensity scale, empty when it has one
+	Unit    eem.Unit
+
+	peakNM, peakSNR float64
+}
+
+func batchName(r *survey.Row) string {
+	switch day := r.Measured.Day(); {
+	case r.Batch != "":
+		return r.Batch
+	case r.Setup != "" && day != "":
+		return r.Setup + " " + day
+	case day != "":
+		return day
+	case r.Setup != "":
+		return r.Setup
+	}
+	return "all"
+}
+
+// Find returns the batch of that name.
+func (s *Survey) Find(batch string) *Batch {
+	for _, b := range s.Batches {
+		if b.Name == batch {
+			return b
+		}
+	}
+	return nil
+}
+
+// formBatches groups bottles and finds every batch's blanks and Raman area.
+func (s *Survey) formBatches() {
+	s.gatherGuesses()
+	unnamed := 0
+	for _, b := range s.Bottles {
+		if b.Excluded {
+			continue
+		}
+		if b.Row.Batch == "" && b.Row.Measured.Day() == "" {
+			unnamed++
+		}
+		bt := s.Find(b.Batch)
+		if bt == nil {
+			bt = &Batch{Name: b.Batch, Setup: b.Row.Setup, Day: b.Row.Measured.Day(), Quinine: nan}
+			s.Batches = append(s.Batches, bt)
+		}
+		bt.Bottles = append(bt.Bottles, b)
+		if b.Row.Kind == survey.Blank && b.Usable() && b.Row.ExcludeFromFit == "" {
+			bt.Blanks = append(bt.Blanks, b)
+			set := b.Setting.Intensity
+			if a, err := correct.Area(b.EEM, set.ExcitationNM, set.WindowNM, set.Baseline); err == nil {
+				b.area = a
+			}
+		}
+	}
+	if unnamed > 0 {
+		s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "no-batch", Severity: eem.Remark, File: s.Sheet.Path,
+			Msg: fmt.Sprintf("%d rows give neither batch nor measured; they form batches by setup alone", unnamed)}), "", ""))
+	}
+	for _, b := range s.Bottles {
+		if !b.Excluded && !b.Rejected {
+			b.blanks = s.blanksOf(b)
+		}
+	}
+	for _, bt := range s.Batches {
+		bt.findScale(s)
+		bt.findPeak()
+	}
+}
+
+// blanksOf returns the blanks that serve a bottle.
+func (s *Survey) blanksOf(b *Bottle) []*Bottle {
+	how := b.Setting.Correct.Blank
+	if len(b.Row.Blanks) > 0 && how != "none" {
+		var out []*Bottle
+		for _, id := range b.Row.Blanks {
+			for _, c := range s.Bottles {
+				if c.Row.ID == id && c.Usable() {
+					out = append(out, c)
+				}
+			}
+		}
+		return out
+	}
+	switch how {
+	case "batch-mean":
+		return s.Find(b.Batch).Blanks
+	case "latest":
+		return s.latest(b)
+	}
+	return nil // "listed" without a list, or "none"
+}
+
+// latest returns the blanks of the last batch of the bottle's setup that were
+// measured at or before the bottle and are not too old.
+func (s *Survey) latest(b *Bottle) []*Bottle {
+	if bt := s.Find(b.Batch); len(bt.Blanks) > 0 {
+		return bt.Blanks
+	}
+	if b.Row.Measured.IsZero() {
+		return nil
+	}
+	var best []*Bottle
+	var when time.Time
+	for _, bt := range s.Batches {
+		if len(bt.Blanks) == 0 || bt.Setup != b.Row.Setup {
+			continue
+		}
+		t := bt.Blanks[len(bt.Blanks)-1].Row.Measured.Time
+		age := b.Row.Measured.Sub(t).Hours() / 24
+		most := b.Setting.Correct.BlankMaxAgeDays
+		if age < 0 || (most > 0 && age > most) || !t.After(when) {
+			continue
+		}
+		best, when = bt.Blanks, t
+	}
+	return best
+}
+
+// findScale looks for what sets the batch's intensity scale.
+func (bt *Batch) findScale(s *Survey) {
+	first := bt.Bottles[0]
+	set := first.Setting.Intensity
+	blanks := bt.Blanks
+	if len(blanks) == 0 {
+		blanks = first.blanks
+	}
+	if len(blanks) == 0 {
+		bt.Reason = "no usable blank"
+		return
+	}
+	es := make([]*eem.EEM, len(blanks))
+	for i, b := range blanks {
+		es[i] = b.EEM
+	}
+	r, err := correct.Areas(es, set.ExcitationNM, set.WindowNM, set.Baseline)
+	if err != nil {
+		bt.Reason = err.Error()
+		return
+	}
+	bt.Raman = r
+}
+
+// chooseUnit decides the one unit of the survey.
+func (s *Survey) chooseUnit() error {
+	var units []eem.Unit
+	for _, bt := range s.Batches {
+		u, err := s.unitOf(bt)
+		if err != nil {
+			return err
+		}
+		bt.Unit = u
+		units = append(units, u)
+	}
+	if len(units) == 0 {
+		return fmt.Errorf("%s: every row is excluded; nothing is left to do", s.Sheet.Path)
+	}
+	if s.scaled() && slices.Contains(units, eem.Counts) {
+		// auto: Raman units only where every batch can have them.
+		var without []string
+		for _, bt := range s.Batches {
+			if bt.Unit == eem.Counts {
+				without = append(without, fmt.Sprintf("%s (%s)", bt.Name, bt.Reason))
+			}
+			bt.Unit = eem.Counts
+		}
+		s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "counts", Severity: eem.Doubt, File: s.Sheet.Path,
+			Msg: "results stay in counts, because these batches allow no intensity scale: " + strings.Join(without, ", ")}), "", ""))
+	}
+	s.Unit = s.Batches[0].Unit
+	for _, bt := range s.Batches {
+		if bt.Unit != s.Unit {
+			return fmt.Errorf("batch %s is in %s, batch %s in %s; give both setups one [intensity] unit", s.Batches[0].Name, s.Unit, bt.Name, bt.Unit)
+		}
+	}
+	return nil
+}
+
+// scaled says whether any batch asks for a scale to be found by itself.
+func (s *Survey) scaled() bool {
+	return slices.ContainsFunc(s.Batches, func(bt *Batch) bool {
+		first := bt.Bottles[0]
+		return first.Setting.Intensity.Unit == "auto" && !first.done(stepIntensity)
+	})
+}
+
+// Given is the unit of intensities that came scaled, while no setting says how.
+const Given eem.Unit = "a.u."
+
+func (s *Survey) unitOf(bt *Batch) (eem.Unit, error) {
+	first := bt.Bottles[0]
+	want := first.Setting.Intensity.Unit
+	if first.done(stepIntensity) {
+		return map[string]eem.Unit{"auto": Given, "raman": eem.Raman, "quinine": eem.Quinine, "counts": eem.Counts}[want], nil
+	}
+	switch want {
+	case "raman":
+		if bt.Reason != "" {
+			return "", fmt.Errorf("batch %s cannot be given in Raman units: %s; add a blank of that batch to the sheet, name one in the blanks column, or set [intensity] unit = \"counts\"", bt.Name, bt.Reason)
+		}
+		return eem.Raman, nil
+	case "quinine":
+		bt.findQuinine(s)
+		if math.IsNaN(bt.Quinine) {
+			return "", fmt.Errorf("batch %s cannot be given in quinine sulfate units: it has no usable standard with a column conc:quinine… [µg/L] that covers ex 350 / em 450 nm; add one, or set [intensity] unit = \"raman\"", bt.Name)
+		}
+		return eem.Quinine, nil
+	case "counts":
+		return eem.Counts, nil
+	}
+	if bt.Reason != "" {
+		return eem.Counts, nil
+	}
+	return eem.Raman, nil
+}
+
+// findQuinine fits the slope, through the blank, of intensity at ex 350 / em 450
+// nm against µg/L of quinine sulfate over the batch's standards.
+func (bt *Batch) findQuinine(s *Survey) {
+	var num, den float64
+	for _, b := range bt.Bottles {
+		if b.Row.Kind != survey.Standard || !b.Usable() {
+			continue
+		}
+		for _, c := range b.Row.Conc {
+			factor, ok := map[string]float64{"µg/l": 1, "μg/l": 1, "ug/l": 1, "ppb": 1, "mg/l": 1000, "ppm": 1000}[strings.ToLower(c.Unit)]
+			if !ok || !strings.Contains(strings.ToLower(c.Name), "quinine") || c.Value <= 0 {
+				continue
+			}
+			e, err := b.lessBlank()
+			if err != nil {
+				continue
+			}
+			if f := e.Interp(350, 450); !math.IsNaN(f) {
+				x := c.Value * factor
+				num, den = num+x*f, den+x*x
+			}
+		}
+	}
+	if den > 0 && num > 0 {
+		bt.Quinine = num / den
+	}
+}

@@ -1,0 +1,149 @@
+package prepare
+
+import (
+	"crypto/sha256"
+	"encoding/hex"
+	"fmt"
+	"io/fs"
+	"math"
+	"os"
+	"path/filepath"
+	"slices"
+	"sort"
+	"strings"
+
+	"tarnlight/eem/survey"
+)
+
+var nan = math.NaN()
+
+// maxRaw bounds one raw file, bytes: a scan of 100,000 points is 3 MB.
+const maxRaw = 256 << 20
+
+// root is the folder that cells of the sheet are relative to.
+func (s *Survey) root() string {
+	r := filepath.FromSlash(s.Settings.Sheet.Root)
+	if filepath.IsAbs(r) {
+		return r
+	}
+	return filepath.Join(s.Dir, r)
+}
+
+// resolve lists the raw files of every bottle. A file claimed by two rows is an
+// error; a cell that names nothing rejects its bottle.
+func (s *Survey) resolve() ([][]string, error) {
+	files := make([][]string, len(s.Bottles))
+	owner := map[string]*survey.Row{}
+	for i, b := range s.Bottles {
+		if b.Excluded {
+			continue
+		}
+		list, err := expand(s.root(), b.Row.Scans)
+		if err != nil {
+			b.reject(s, "unreadable", err.Error())
+			continue
+		}
+		files[i] = list
+		for _, f := range list {
+			if other, taken := owner[f]; taken {
+				return nil, fmt.Errorf("%s:%d: raw file %s belongs to %q (line %d) and to %q (line %d); make the scans cells more exact, for example %q instead of %q",
+					s.Sheet.Path, b.Row.Line, s.short(f), other.ID, other.Line, b.Row.ID, b.Row.Line, exacter(other.Scans), other.Scans)
+			}
+			owner[f] = b.Row
+		}
+	}
+	return files, nil
+}
+
+// exacter suggests a pattern that does not run into longer names.
+func exacter(pattern string) string {
+	if strings.HasSuffix(pattern, "*") {
+		return strings.TrimSuffix(pattern, "*") + "_*"
+	}
+	return pattern
+}
+
+// expand lists the files that a scans cell names: a file, a folder (the files in
+// it, hidden ones left out) or a glob of either.
+func expand(root, cell string) ([]string, error) {
+	path := filepath.Join(root, filepath.FromSlash(cell))
+	matches := []string{path}
+	if _, err := os.Stat(path); err != nil && strings.ContainsAny(cell, "*?[") {
+		var bad error
+		matches, bad = filepath.Glob(path)
+		if bad != nil {
+			return nil, fmt.Errorf("scans %q is not a pattern: %w", cell, bad)
+		}
+		if len(matches) == 0 {
+			return nil, fmt.Errorf("scans %q matches no file; correct the cell or the [sheet] root", cell)
+		}
+	}
+	var out []string
+	for _, m := range matches {
+		info, err := os.Stat(m)
+		switch {
+		case err != nil:
+			return nil, fmt.Errorf("scans %q: no such file or folder; correct the cell or the [sheet] root", cell)
+		case info.IsDir():
+			list, err := os.ReadDir(m)
+			if err != nil {
+				return nil, fmt.Errorf("scans %q: %w", cell, plain(err))
+			}
+			for _, e := range list {
+				if e.Type().IsRegular() && !strings.HasPrefix(e.Name(), ".") && !strings.HasPrefix(e.Name(), "~$") {
+					out = append(out, filepath.Join(m, e.Name()))
+				}
+			}
+		case info.Mode().IsRegular():
+			out = append(out, m)
+		}
+	}
+	if len(out) == 0 {
+		return nil, fmt.Errorf("scans %q holds no file", cell)
+	}
+	sort.Strings(out)
+	return out, nil
+}
+
+// plain drops the path from a file error; messages name it in their own way.
+func plain(err error) error {
+	if pe, ok := err.(*fs.PathError); ok { //nolint:errorlint // the error comes straight from os
+		return pe.Err
+	}
+	return err
+}
+
+// short gives a path relative to the survey folder, with slashes.
+func (s *Survey) short(path string) string {
+	if dir, err := filepath.Abs(s.Dir); err == nil {
+		if abs, err := filepath.Abs(path); err == nil {
+			if r, err := filepath.Rel(dir, abs); err == nil {
+				return filepath.ToSlash(r)
+			}
+		}
+	}
+	return filepath.Base(path)
+}
+
+// load reads a raw file once: its bytes and what provenance needs.
+func (s *Survey) load(path string) ([]byte, Input, error) {
+	name := s.short(path)
+	info, err := os.Stat(path)
+	if err != nil {
+		return nil, Input{}, fmt.Errorf("%s: %w", name, plain(err))
+	}
+	if info.Size() > maxRaw {
+		return nil, Input{}, fmt.Errorf("%s: %d MB; a raw file has at most %d MB: is this a scan?", name, info.Size()>>20, maxRaw>>20)
+	}
+	data, err := os.ReadFile(path)
+	if err != nil {
+		return nil, Input{}, fmt.Errorf("%s: %w", name, plain(err))
+	}
+	sum := sha256.Sum256(data)
+	return data, Input{Path: name, SHA256: hex.EncodeToString(sum[:]), Size: int64(len(data))}, nil
+}
+
+func uniqueInputs(in []Input) []Input {
+	slices.SortFunc(in, func(a, b Input) int { return strings.Compare(a.Path, b.Path) })
+	return slices.CompactFunc(in, func(a, b Input) bool { return a.Path == b.Path })
+}

@@ -1,0 +1,270 @@
+package prepare
+
+import (
+	"fmt"
+	"math"
+	"sort"
+
+	"tarnlight/eem"
+	"tarnlight/eem/correct"
+	"tarnlight/eem/scatter"
+	"tarnlight/eem/survey"
+)
+
+// lessBlank subtracts the mean of the bottle's blanks, each on the bottle's grid.
+func (b *Bottle) lessBlank() (*eem.EEM, error) {
+	if len(b.blanks) == 0 {
+		return b.EEM, nil
+	}
+	es := make([]*eem.EEM, len(b.blanks))
+	for i, blank := range b.blanks {
+		es[i] = blank.raw.Regrid(b.EEM.Grid)
+	}
+	mean, err := correct.Mean(es)
+	if err != nil {
+		return nil, err
+	}
+	return correct.Blank(b.raw, mean), nil
+}
+
+// finish does the steps that need the batch: blank, scale, dilution, scatter.
+func (b *Bottle) finish(s *Survey) {
+	if b.EEM == nil {
+		return
+	}
+	e := b.EEM
+	if !b.done(stepBlank) && b.Setting.Correct.Blank != "none" {
+		if len(b.blanks) == 0 {
+			b.flag(s, eem.Note{Test: "no-blank", Severity: eem.Doubt,
+				Msg: fmt.Sprintf("batch %s has no usable blank, so that none was subtracted; add one, or name one in the blanks column", b.Batch)})
+		} else if less, err := b.lessBlank(); err != nil {
+			b.reject(s, "no-blank", err.Error())
+		} else {
+			e = less
+		}
+	}
+	e = b.scaleTo(s, e)
+	if !b.done(stepDilution) && b.Row.Dilution != 1 {
+		e = correct.Dilute(e, b.Row.Dilution)
+	}
+	if !b.done(stepScatter) {
+		e = scatter.Fill(scatter.Mask(e, Bands(b.Setting.Scatter)), b.Setting.Scatter.Fill)
+	}
+	for _, step := range b.Setting.Scans.Applied {
+		e.Note(eem.Note{Step: step, Msg: "done to the files before they came here; not done again",
+			Params: []eem.Param{{Name: "applied", Value: "before", Source: "settings: scans.applied"}}})
+	}
+	b.EEM = e
+	for _, n := range e.Notes {
+		if n.Test != "" {
+			b.flag(s, n)
+		}
+	}
+}
+
+// scaleTo brings the intensities to the survey's unit.
+func (b *Bottle) scaleTo(s *Survey, e *eem.EEM) *eem.EEM {
+	bt := s.Find(b.Batch)
+	if b.done(stepIntensity) {
+		out := e.Clone()
+		out.Unit = s.Unit
+		return out
+	}
+	switch s.Unit {
+	case eem.Raman:
+		r, err := b.raman(bt)
+		if err != nil {
+			b.reject(s, "raman-range", err.Error())
+			return e
+		}
+		b.scale = r.Area
+		return correct.RamanUnits(e, r, b.Batch)
+	case eem.Quinine:
+		b.scale = bt.Quinine
+		return correct.Scale(e, 1/bt.Quinine, eem.Quinine, eem.Note{Step: correct.StepScale, Msg: "divided by the intensity of 1 µg/L quinine sulfate",
+			Params: []eem.Param{{Name: "intensity of 1 µg/L", Value: fmt.Sprint(bt.Quinine), Unit: "counts", Source: "quinine standards of batch " + b.Batch}}})
+	}
+	return e
+}
+
+// raman returns the Raman area over the very blanks that the bottle uses.
+func (b *Bottle) raman(bt *Batch) (correct.RamanArea, error) {
+	same := len(b.blanks) == len(bt.Blanks)
+	for i := range b.blanks {
+		same = same && b.blanks[i] == bt.Blanks[i]
+	}
+	if same || len(b.blanks) == 0 {
+		return bt.Raman, nil
+	}
+	es := make([]*eem.EEM, len(b.blanks))
+	for i, blank := range b.blanks {
+		es[i] = blank.raw
+	}
+	set := b.Setting.Intensity
+	return correct.Areas(es, set.ExcitationNM, set.WindowNM, set.Baseline)
+}
+
+// Bands returns the bands that the settings remove, first order first.
+func Bands(s survey.Scatter) []scatter.Band {
+	var out []scatter.Band
+	for _, b := range []struct {
+		set    survey.Band
+		line   scatter.Line
+		reason eem.Reason
+	}{
+		{s.Rayleigh.First, scatter.Rayleigh1, eem.Rayleigh1},
+		{s.Raman.First, scatter.Raman1, eem.Raman1},
+		{s.Rayleigh.Second, scatter.Rayleigh2, eem.Rayleigh2},
+		{s.Raman.Second, scatter.Raman2, eem.Raman2},
+	} {
+		if !b.set.Off {
+			out = append(out, scatter.Band{Line: b.line, Below: b.set.Below, Above: b.set.Above, Reason: b.reason})
+		}
+	}
+	return out
+}
+
+// chooseGrid takes the grid of the most samples (or the stated one) and says who
+// lacks what.
+func (s *Survey) chooseGrid() error {
+	type vote struct {
+		grid  eem.Grid
+		n     int
+		first int
+	}
+	var votes []vote
+	count := func(pass func(*Bottle) bool) {
+		for i, b := range s.Bottles {
+			if !b.Usable() || !pass(b) {
+				continue
+			}
+			at := -1
+			for v := range votes {
+				if votes[v].grid.Equal(b.EEM.Grid) {
+					at = v
+				}
+			}
+			if at < 0 {
+				at = len(votes)
+				votes = append(votes, vote{grid: b.EEM.Grid, first: i})
+			}
+			votes[at].n++
+		}
+	}
+	count(func(b *Bottle) bool { return b.Row.Kind == survey.Sample })
+	if len(votes) == 0 {
+		count(func(*Bottle) bool { return true })
+	}
+	if len(votes) == 0 {
+		return s.nothingLeft()
+	}
+	sort.SliceStable(votes, func(a, b int) bool { return votes[a].n > votes[b].n })
+	s.Grid = votes[0].grid
+	for _, a := range []struct {
+		want *survey.Range
+		axis *eem.Axis
+		key  string
+	}{{s.Settings.Grid.Excitation, &s.Grid.Ex, "excitation"}, {s.Settings.Grid.Emission, &s.Grid.Em, "emission"}} {
+		if a.want != nil {
+			ax, err := eem.Steps(a.want.From, a.want.To, a.want.Step)
+			if err != nil {
+				return fmt.Errorf("settings, grid.%s: %w", a.key, err)
+			}
+			*a.axis = ax
+		}
+	}
+	for _, b := range s.Bottles {
+		if b.Usable() {
+			s.compareGrid(b)
+		}
+	}
+	return nil
+}
+
+// nothingLeft tells the first reasons why no bottle can be used.
+func (s *Survey) nothingLeft() error {
+	msg := ""
+	n := 0
+	for _, b := range s.Bottles {
+		for _, f := range b.Flags {
+			if f.Severity == eem.Reject {
+				if n++; n <= 5 {
+					msg += fmt.Sprintf("\n  %s: %s", b.Row.ID, f.Msg)
+				}
+				break
+			}
+		}
+	}
+	if n > 5 {
+		msg += fmt.Sprintf("\n  and %d more", n-5)
+	}
+	return fmt.Errorf("%s: not one bottle can be used:%s", s.Sheet.Path, msg)
+}
+
+// compareGrid notes what a bottle lacks of the survey's grid.
+func (s *Survey) compareGrid(b *Bottle) {
+	if b.EEM.Grid.Equal(s.Grid) {
+		return
+	}
+	var lackEx, lackEm, off int
+	for j := range s.Grid.Ex.Len() {
+		if nm := s.Grid.Ex.At(j); !b.EEM.Ex.Covers(nm) {
+			lackEx++
+		} else if _, ok := b.EEM.Ex.Find(nm); !ok {
+			off++
+		}
+	}
+	for k := range s.Grid.Em.Len() {
+		if nm := s.Grid.Em.At(k); !b.EEM.Em.Covers(nm) {
+			lackEm++
+		} else if _, ok := b.EEM.Em.Find(nm); !ok {
+			off++
+		}
+	}
+	nj, nk := s.Grid.Ex.Len(), s.Grid.Em.Len()
+	if lack := nj*nk - (nj-lackEx)*(nk-lackEm); lack > 0 {
+		b.flag(s, eem.Note{Test: "grid-part", Severity: eem.Remark, Measure: true, Value: float64(lack), Limit: 0,
+			Msg: fmt.Sprintf("measured on %s; lacks %d of %d excitations and %d of %d emissions of the survey's grid (%s)", b.EEM.Grid, lackEx, nj, lackEm, nk, s.Grid)})
+	}
+	if off > 0 {
+		b.flag(s, eem.Note{Test: "grid-differs", Severity: eem.Remark,
+			Msg: fmt.Sprintf("measured on %s; interpolated linearly onto the survey's grid (%s)", b.EEM.Grid, s.Grid)})
+	}
+}
+
+// Verdict says in one word what a batch is worth, and why.
+func (bt *Batch) Verdict() (verdict string, reasons []string) {
+	verdict = "good"
+	rejected := 0
+	for _, b := range bt.Bottles {
+		if b.Rejected {
+			rejected++
+		}
+	}
+	if bt.Reason != "" && !bt.Bottles[0].done(stepIntensity) {
+		verdict, reasons = "doubt", append(reasons, "no intensity scale: "+bt.Reason)
+	}
+	if rejected > 0 {
+		reasons = append(reasons, fmt.Sprintf("%d of %d bottles rejected", rejected, len(bt.Bottles)))
+	}
+	if rejected == len(bt.Bottles) {
+		verdict = "reject"
+	}
+	for _, b := range bt.Blanks {
+		for _, f := range b.Flags {
+			if f.Severity >= eem.Doubt {
+				verdict, reasons = "doubt", append(reasons, "blank "+b.Row.ID+": "+f.Msg)
+			}
+		}
+	}
+	return verdict, reasons
+}
+
+// ScaleU returns the relative standard uncertainty of the batch's scale, NaN
+// where it is not known.
+func (bt *Batch) ScaleU() float64 {
+	if bt.Raman.Area > 0 && !math.IsNaN(bt.Raman.U) {
+		return bt.Raman.U / bt.Raman.Area
+	}
+	return nan
+}

@@ -1,0 +1,266 @@
+// Package prepare turns a run sheet into corrected bottles and the survey cube.
+//
+// One plan fixes the order of everything that is done to a bottle:
+//
+//	read · no light? · offset · saturation · spectral factors · inner filter ·
+//	blank · intensity scale · dilution · scatter
+//
+// The steps up to the inner filter need the bottle alone; blank and scale need
+// the blanks of its batch; the grid needs all samples. One bad bottle never stops
+// a survey: it is kept, marked as rejected, and says why.
+package prepare
+
+import (
+	"context"
+	"fmt"
+	"path/filepath"
+	"runtime"
+	"sync"
+	"sync/atomic"
+
+	"tarnlight/eem"
+	"tarnlight/eem/survey"
+)
+
+// Options of Read. The zero value works.
+type Options struct {
+	Workers  int // goroutines; 0 means GOMAXPROCS; no result depends on it
+	Progress func(done, total int, what string)
+}
+
+// Input is one file that a result rests on.
+type Input struct {
+	Path   string // relative to the survey folder, with slashes
+	SHA256 string // hexadecimal
+	Size   int64  // bytes
+}
+
+// Bottle is one row of the sheet with what became of it.
+type Bottle struct {
+	Row      *survey.Row
+	Setting  *survey.Settings // with the row's setup merged in
+	Batch    string
+	EEM      *eem.EEM        // corrected, on the bottle's own grid; nil when it could not be read or is excluded
+	Absorb   *eem.Absorbance // of the liquid in the bottle, nil when none was given
+	Largest  float64         // largest inner-filter factor of a cell, NaN without correction
+	Files    []Input
+	Flags    []eem.Flag
+	Excluded bool // takes part in nothing
+	Rejected bool // no number of it is usable
+
+	raw     *eem.EEM        // up to the inner filter: what blank and scale start from
+	scanned *eem.Absorbance // of the liquid scanned
+	guesses []Guess
+	area    float64   // Raman area of a blank, before the blank is removed; NaN unknown
+	scale   float64   // what the intensities were divided by; NaN when they stay as they are
+	blanks  []*Bottle // what its blank and its scale rest on
+}
+
+// Usable says whether the bottle has numbers that may be used.
+func (b *Bottle) Usable() bool { return !b.Excluded && !b.Rejected && b.EEM != nil }
+
+// Survey is a survey read and corrected.
+type Survey struct {
+	Dir      string
+	Sheet    *survey.Sheet
+	Settings *survey.Settings // with the values found for "auto"
+	Unit     eem.Unit
+	Grid     eem.Grid
+	Bottles  []*Bottle // one a row of the sheet, in its order
+	Batches  []*Batch  // in the order of their first bottle
+	Flags    []eem.Flag
+	Inputs   []Input // without repeats, sorted by path
+	Guesses  []Guess // how raw files were taken
+
+	factors map[string]factorPair // by setup
+}
+
+// Guess counts the files that were taken in one way.
+type Guess struct {
+	Text  string
+	Files int
+	First string
+}
+
+// Read reads and corrects every bottle of the sheet. dir is the survey folder.
+// It returns an error only where the survey as a whole cannot be worked on; what
+// concerns one bottle is in that bottle's Flags.
+func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Settings, o Options) (*Survey, error) {
+	if o.Workers <= 0 {
+		o.Workers = runtime.GOMAXPROCS(0)
+	}
+	own := *set
+	s := &Survey{Dir: dir, Sheet: sheet, Settings: &own}
+	if err := s.list(); err != nil {
+		return nil, err
+	}
+	files, err := s.resolve()
+	if err != nil {
+		return nil, err
+	}
+	if err := s.readFactors(); err != nil {
+		return nil, err
+	}
+	if err := s.each(ctx, o, "reading", func(i int) { s.Bottles[i].read(s, files[i]) }); err != nil {
+		return nil, err
+	}
+	s.formBatches()
+	if err := s.chooseUnit(); err != nil {
+		return nil, err
+	}
+	if err := s.each(ctx, o, "correcting", func(i int) { s.Bottles[i].finish(s) }); err != nil {
+		return nil, err
+	}
+	for _, b := range s.Bottles {
+		b.raw, b.scanned = nil, nil
+	}
+	if err := s.chooseGrid(); err != nil {
+		return nil, err
+	}
+	s.inherit()
+	s.collect()
+	return s, nil
+}
+
+// list makes a bottle of every row.
+func (s *Survey) list() error {
+	for i := range s.Sheet.Rows {
+		row := &s.Sheet.Rows[i]
+		set, err := s.Settings.For(row.Setup)
+		if err != nil {
+			return fmt.Errorf("%s:%d: %w", s.Sheet.Path, row.Line, err)
+		}
+		b := &Bottle{Row: row, Setting: set, Batch: batchName(row), Excluded: row.Exclude != "", Largest: nan, area: nan, scale: nan}
+		if b.Excluded {
+			b.flag(s, eem.Note{Test: "excluded", Severity: eem.Remark, Msg: "excluded by the sheet: " + row.Exclude})
+		} else if row.ExcludeFromFit != "" {
+			b.flag(s, eem.Note{Test: "excluded-from-fit", Severity: eem.Remark, Msg: "left out of model, references and charts: " + row.ExcludeFromFit})
+		}
+		s.Bottles = append(s.Bottles, b)
+	}
+	for _, n := range s.Sheet.Notes {
+		if n.Test != "" {
+			s.Flags = append(s.Flags, eem.FlagFrom(s.judge(n), "", ""))
+		}
+	}
+	return nil
+}
+
+// each runs f on every bottle that is not excluded, on o.Workers goroutines.
+func (s *Survey) each(ctx context.Context, o Options, what string, f func(i int)) error {
+	var wg sync.WaitGroup
+	next := make(chan int)
+	var done atomic.Int64
+	for range o.Workers {
+		wg.Go(func() {
+			for i := range next {
+				if !s.Bottles[i].Excluded && ctx.Err() == nil {
+					f(i)
+				}
+				if n := done.Add(1); o.Progress != nil {
+					o.Progress(int(n), len(s.Bottles), what)
+				}
+			}
+		})
+	}
+	for i := range s.Bottles {
+		next <- i
+	}
+	close(next)
+	wg.Wait()
+	return ctx.Err()
+}
+
+// judge applies the survey's quality settings to a note: a doubt that the
+// settings accept is only a note here, and the reason stands beside it.
+func (s *Survey) judge(n eem.Note) eem.Note {
+	if why, ok := s.Settings.Quality.Accept[n.Test]; ok && n.Severity == eem.Doubt {
+		n.Severity = eem.Remark
+		n.Msg += " (accepted: " + why + ")"
+	}
+	return n
+}
+
+// Accept applies the survey's quality settings to a flag raised elsewhere.
+func (s *Survey) Accept(f eem.Flag) eem.Flag {
+	n := s.judge(eem.Note{Test: f.Test, Severity: f.Severity, Msg: f.Msg})
+	f.Severity, f.Msg = n.Severity, n.Msg
+	return f
+}
+
+// Limit returns the limit of a test that is in force.
+func (s *Survey) Limit(code string) float64 {
+	if v, ok := s.Settings.Quality.Limit[code]; ok {
+		return v
+	}
+	t, _ := eem.FindTest(code)
+	return t.Limit
+}
+
+// flag records a note that a test raised.
+func (b *Bottle) flag(s *Survey, n eem.Note) {
+	n = s.judge(n)
+	if n.File == "" {
+		n.File, n.Line = filepath.ToSlash(filepath.Base(s.Sheet.Path)), b.Row.Line
+	}
+	b.Flags = append(b.Flags, eem.FlagFrom(n, b.Row.ID, b.Batch))
+	if n.Severity == eem.Reject {
+		b.Rejected = true
+	}
+}
+
+// reject marks the bottle as unusable.
+func (b *Bottle) reject(s *Survey, test, msg string) {
+	b.flag(s, eem.Note{Test: test, Severity: eem.Reject, Msg: msg})
+}
+
+// inherit hands the doubts of a blank to every bottle that used it.
+func (s *Survey) inherit() {
+	for _, b := range s.Bottles {
+		if b.Excluded || b.Row.Kind == survey.Blank {
+			continue
+		}
+		for _, blank := range b.blanks {
+			for _, f := range blank.Flags {
+				if f.Severity < eem.Doubt {
+					continue
+				}
+				f.ID, f.Batch, f.Severity = b.Row.ID, b.Batch, eem.Doubt
+				f.Msg = "blank " + blank.Row.ID + ", used here: " + f.Msg
+				b.Flags = append(b.Flags, f)
+			}
+		}
+	}
+}
+
+// collect gathers what the bottles noted.
+func (s *Survey) collect() {
+	for _, b := range s.Bottles {
+		s.Flags = append(s.Flags, b.Flags...)
+		s.Inputs = append(s.Inputs, b.Files...)
+	}
+	s.Inputs = uniqueInputs(s.Inputs)
+}
+
+// Pick returns the bottles that pass.
+func (s *Survey) Pick(pass func(*Bottle) bool) []*Bottle {
+	var out []*Bottle
+	for _, b := range s.Bottles {
+		if pass(b) {
+			out = append(out, b)
+		}
+	}
+	return out
+}
+
+// Cube stacks usable bottles on the survey's grid.
+func (s *Survey) Cube(bottles []*Bottle) *eem.Cube {
+	ids := make([]string, len(bottles))
+	es := make([]*eem.EEM, len(bottles))
+	for i, b := range bottles {
+		ids[i], es[i] = b.Row.ID, b.EEM
+	}
+	c := eem.NewCube(s.Grid, ids, es)
+	c.Unit = s.Unit
+	return c
+}

@@ -1,0 +1,281 @@
+package prepare
+
+import (
+	"errors"
+	"fmt"
+	"path/filepath"
+	"slices"
+	"strings"
+
+	"tarnlight/eem"
+	"tarnlight/eem/correct"
+	"tarnlight/eem/scanfile"
+	"tarnlight/eem/survey"
+)
+
+// The names of [scans] applied.
+const (
+	stepOffset    = "offset"
+	stepSpectral  = "spectral"
+	stepInner     = "inner-filter"
+	stepBlank     = "blank"
+	stepIntensity = "intensity"
+	stepDilution  = "dilution"
+	stepScatter   = "scatter"
+)
+
+// done says whether a step was done to the files before they came here.
+func (b *Bottle) done(step string) bool { return slices.Contains(b.Setting.Scans.Applied, step) }
+
+// scanSettings maps the survey's words to those of the reader.
+func scanSettings(s survey.Scans) *scanfile.Settings {
+	mark := map[string]string{"comma": ",", "semicolon": ";", "tab": "\t", "blank": " ", "point": "."}
+	return &scanfile.Settings{Form: scanfile.Form(s.Form), Delimiter: mark[s.Delimiter], Decimal: mark[s.Decimal],
+		Skip: s.Skip, Excitation: s.Excitation}
+}
+
+// read does everything to a bottle that needs the bottle alone.
+func (b *Bottle) read(s *Survey, files []string) {
+	if b.Rejected {
+		return
+	}
+	scans, ok := b.readScans(s, files)
+	if !ok {
+		return
+	}
+	e, err := eem.FromScans(scans)
+	if err != nil {
+		test := "unreadable"
+		var repeated *eem.RepeatedExError
+		if errors.As(err, &repeated) {
+			test = "excitation-repeated"
+		}
+		b.reject(s, test, err.Error())
+		return
+	}
+	if e.Em.Len() < 2 {
+		b.reject(s, "unreadable", fmt.Sprintf("%s: the emission axis has %d point; an EEM needs at least 2", s.short(files[0]), e.Em.Len()))
+		return
+	}
+	if !b.readAbsorbance(s) {
+		return
+	}
+	if dark, why := b.noLight(e); dark {
+		b.reject(s, "no-light", why+"; look at lamp, shutter and cell, and measure again")
+	}
+	b.raw = b.toInnerFilter(s, e)
+	b.EEM = b.raw
+}
+
+// readScans reads the raw files. Findings of one kind are told once a bottle.
+func (b *Bottle) readScans(s *Survey, files []string) ([]eem.Scan, bool) {
+	var scans []eem.Scan
+	found := map[string]int{}
+	var notes []eem.Note
+	set := scanSettings(b.Setting.Scans)
+	for _, path := range files {
+		data, in, err := s.load(path)
+		if err == nil {
+			b.Files = append(b.Files, in)
+			var f *scanfile.File
+			if f, err = scanfile.ReadBytes(in.Path, data, set); err == nil {
+				scans = append(scans, b.own(f)...)
+				for _, n := range f.Notes {
+					key := n.Test + "\x00" + n.Msg
+					if n.Test != "read-guess" {
+						key = n.Test
+					}
+					if found[key]++; found[key] == 1 {
+						notes = append(notes, n)
+					}
+				}
+			}
+		}
+		if err != nil {
+			b.reject(s, "unreadable", err.Error())
+			return nil, false
+		}
+	}
+	for _, n := range notes {
+		if n.Test == "read-guess" {
+			b.guesses = append(b.guesses, Guess{Text: n.Msg, Files: found[n.Test+"\x00"+n.Msg], First: n.File})
+		} else if n.Test != "" {
+			if more := found[n.Test] - 1; more > 0 {
+				n.Msg += fmt.Sprintf(" (and in %d more files of the bottle)", more)
+			}
+			b.flag(s, n)
+		}
+	}
+	return scans, true
+}
+
+// own returns the scans of a file that belong to the bottle: where a file names
+// several samples, those of the bottle's id.
+func (b *Bottle) own(f *scanfile.File) []eem.Scan {
+	if names := f.Names(); len(names) > 1 && slices.Contains(names, b.Row.ID) {
+		return f.Of(b.Row.ID)
+	}
+	return f.Scans
+}
+
+// readAbsorbance reads the absorbance and brings it to the liquid scanned and to
+// the bottle. False: the file is named and cannot be used.
+func (b *Bottle) readAbsorbance(s *Survey) bool {
+	if b.Row.Absorbance == "" {
+		return true
+	}
+	data, in, err := s.load(filepath.Join(s.root(), filepath.FromSlash(b.Row.Absorbance)))
+	var a *eem.Absorbance
+	var notes []eem.Note
+	if err == nil {
+		set := scanSettings(b.Setting.Scans)
+		a, notes, err = scanfile.ReadAbsorbanceBytes(in.Path, data, &scanfile.Settings{Delimiter: set.Delimiter, Decimal: set.Decimal})
+		if err != nil && (set.Delimiter != "" || set.Decimal != "") {
+			// Stated for the scans; the spectrophotometer may write otherwise.
+			a, notes, err = scanfile.ReadAbsorbanceBytes(in.Path, data, nil)
+		}
+	}
+	if err != nil {
+		b.reject(s, "unreadable", err.Error())
+		return false
+	}
+	b.Files = append(b.Files, in)
+	for _, n := range notes {
+		if n.Test != "" && n.Test != "read-guess" {
+			b.flag(s, n)
+		}
+	}
+	a.PathCM = b.Row.AbsorbancePathCM
+	b.Absorb = a.Times(b.Row.AbsorbanceDilution)
+	b.scanned = a.Times(b.Row.AbsorbanceDilution / b.Row.Dilution)
+	return true
+}
+
+// noLight says whether no light came through to the raw scans e.
+func (b *Bottle) noLight(e *eem.EEM) (bool, string) { return correct.NoLight(e) }
+
+// geometry of the measuring cell.
+func geometry(c survey.Correct) correct.Geometry {
+	return correct.Geometry{Form: c.InnerFilter, Ex: c.ExcitationWindowCM, Em: c.EmissionWindowCM}
+}
+
+// toInnerFilter does the steps from the detector to the inner filter.
+func (b *Bottle) toInnerFilter(s *Survey, e *eem.EEM) *eem.EEM {
+	set := b.Setting
+	e = correct.Saturate(e, set.Scans.Saturation)
+	switch {
+	case b.done(stepOffset):
+	case set.Scans.Offset.Auto:
+		if counts, ok := correct.OffsetAuto(e); ok {
+			e = correct.Offset(e, counts)
+		}
+	case set.Scans.Offset.Counts != 0:
+		e = correct.Offset(e, set.Scans.Offset.Counts)
+	}
+	if f := s.factors[b.Row.Setup]; !b.done(stepSpectral) && (f.ex != nil || f.em != nil) {
+		e = correct.Spectral(e, f.ex, f.em)
+	}
+	if !b.done(stepInner) && set.Correct.InnerFilter != "none" && b.needsAbsorbance() {
+		limit := set.Correct.AbsorbanceLimit
+		var factor []float64
+		g := geometry(set.Correct)
+		if b.scanned != nil {
+			e = correct.LinearRange(e, b.scanned, 1, s.Limit("linear-range"))
+			if b.Row.Kind == survey.Standard {
+				e = correct.DropOverAbsorbing(e, b.scanned, g, limit)
+			}
+		}
+		e, factor = correct.InnerFilter(e, b.scanned, g, limit)
+		b.Largest = largest(factor)
+	}
+	return e
+}
+
+// needsAbsorbance is false for pure water, which absorbs nothing, unless an
+// absorbance was measured all the same.
+func (b *Bottle) needsAbsorbance() bool {
+	return b.Row.Kind != survey.Blank && b.Row.Kind != survey.FieldBlank || b.scanned != nil
+}
+
+func largest(v []float64) float64 {
+	m := nan
+	for _, x := range v {
+		if x == x && !(x <= m) {
+			m = x
+		}
+	}
+	return m
+}
+
+// factorPair holds the spectral factors of a setup, nil where none are stated.
+type factorPair struct{ ex, em *correct.Factors }
+
+// readFactors reads the spectral factors of every setup in use.
+func (s *Survey) readFactors() error {
+	s.factors = map[string]factorPair{}
+	cache := map[string]*correct.Factors{}
+	read := func(name string) (*correct.Factors, error) {
+		if name == "" {
+			return nil, nil
+		}
+		if f, ok := cache[name]; ok {
+			return f, nil
+		}
+		path := filepath.FromSlash(name)
+		if !filepath.IsAbs(path) {
+			path = filepath.Join(s.Dir, path)
+		}
+		data, in, err := s.load(path)
+		if err != nil {
+			return nil, err
+		}
+		t, _, err := scanfile.ReadFactorsBytes(in.Path, data, nil)
+		if err != nil {
+			return nil, err
+		}
+		f, err := correct.NewFactors(t.Axis.Values(), t.Factor, t.U, in.Path)
+		if err != nil {
+			return nil, fmt.Errorf("%s: %w", in.Path, err)
+		}
+		s.Inputs = append(s.Inputs, in)
+		cache[name] = f
+		return f, nil
+	}
+	for _, b := range s.Bottles {
+		if _, ok := s.factors[b.Row.Setup]; ok || b.Excluded {
+			continue
+		}
+		var p factorPair
+		var err error
+		if p.ex, err = read(b.Setting.Correct.ExcitationFactors); err != nil {
+			return fmt.Errorf("settings, correct.excitation_factors: %w", err)
+		}
+		if p.em, err = read(b.Setting.Correct.EmissionFactors); err != nil {
+			return fmt.Errorf("settings, correct.emission_factors: %w", err)
+		}
+		s.factors[b.Row.Setup] = p
+	}
+	return nil
+}
+
+// gatherGuesses counts over the survey how files were taken.
+func (s *Survey) gatherGuesses() {
+	at := map[string]int{}
+	for _, b := range s.Bottles {
+		for _, g := range b.guesses {
+			i, ok := at[g.Text]
+			if !ok {
+				i = len(s.Guesses)
+				at[g.Text] = i
+				s.Guesses = append(s.Guesses, Guess{Text: g.Text, First: g.First})
+			}
+			s.Guesses[i].Files += g.Files
+		}
+	}
+	slices.SortStableFunc(s.Guesses, func(a, b Guess) int {
+		if a.Files != b.Files {
+			return b.Files - a.Files
+		}
+		return strings.Compare(a.Text, b.Text)
+	})
+}

@@ -1,0 +1,42 @@
+package prepare
+
+import (
+	"slices"
+
+	"tarnlight/eem/correct"
+	"tarnlight/eem/scatter"
+)
+
+// Steps lists what is done to a bottle, in order.
+var Steps = []string{"read", correct.StepSaturation, correct.StepOffset, correct.StepSpectral, correct.StepInner,
+	correct.StepBlank, correct.StepScale, correct.StepDilution, scatter.Step}
+
+// StepOrder returns the place of a step, from 1; steps that were done before the
+// files came here stand last.
+func StepOrder(step string) int {
+	if i := slices.Index(Steps, step); i >= 0 {
+		return i + 1
+	}
+	return len(Steps) + 1
+}
+
+// RamanPeak returns where the batch's blanks show water's Raman line at the
+// scale's excitation, nm, and its height over the noise, both the mean over the
+// blanks; NaN where no blank shows it.
+func (bt *Batch) RamanPeak() (nm, snr float64) { return bt.peakNM, bt.peakSNR }
+
+// findPeak looks for the Raman line in the blanks before they are subtracted.
+func (bt *Batch) findPeak() {
+	bt.peakNM, bt.peakSNR = nan, nan
+	var nm, snr, n float64
+	for _, b := range bt.Blanks {
+		for _, p := range scatter.Ridge(b.raw, scatter.Raman1, 25) {
+			if p.ExNM == bt.Raman.ExNM {
+				nm, snr, n = nm+p.Em, snr+p.Snr, n+1
+			}
+		}
+	}
+	if n > 0 {
+		bt.peakNM, bt.peakSNR = nm/n, snr/n
+	}
+}
