@@ -31,14 +31,14 @@ var packages = []struct{ name, may string }{
 	{"eem/scatter", "gonum eem"},
 	{"eem/optics", "gonum eem"},
 	{"eem/synth", "gonum eem"},
-	{"eem/survey", "toml text eem"},
+	{"eem/survey", "toml text excelize eem eem/scanfile"}, // tables are read by scanfile
 	{"eem/prepare", "gonum eem eem/netcdf eem/scanfile eem/correct eem/scatter eem/optics eem/survey"},
 
 	{"unmix", "gonum eem nnls"},
 	{"unmix/parafac", "gonum netlib eem nnls unmix"},
 	{"unmix/merit", "gonum eem nnls unmix"},
 	{"unmix/outdir", "sys"}, // knows no spectroscopy
-	{"unmix/report", "gonum plot excelize eem eem/netcdf eem/optics eem/survey unmix unmix/parafac unmix/merit"},
+	{"unmix/report", "gonum plot fonts excelize eem eem/netcdf eem/optics eem/survey unmix unmix/parafac unmix/merit"},
 
 	{"cmd/tarnlight", "gonum netlib excelize toml text term sys cobra " +
 		"eem eem/netcdf eem/scanfile eem/correct eem/scatter eem/optics eem/synth eem/survey eem/prepare " +
@@ -50,6 +50,7 @@ var modules = map[string][]string{
 	"gonum":    {"gonum.org/v1/gonum"},
 	"netlib":   {"gonum.org/v1/netlib", "C"}, // behind the tag openblas
 	"plot":     {"gonum.org/v1/plot"},
+	"fonts":    {"codeberg.org/go-fonts/liberation", "golang.org/x/image"},
 	"excelize": {"github.com/xuri/excelize/v2"},
 	"toml":     {"github.com/pelletier/go-toml/v2"},
 	"text":     {"golang.org/x/text"},

@@ -1,0 +1,56 @@
+package main
+
+import (
+	"os"
+	"path/filepath"
+	"strings"
+	"testing"
+	"time"
+)
+
+// The demo: every component's median error under 3 %, every planted fault
+// flagged, every file of the results there with its header, in under 30 s (the
+// race detector may take four times as long).
+func TestDemo(t *testing.T) {
+	dir := filepath.Join(t.TempDir(), "demo")
+	start := time.Now()
+	r := call("demo", dir).want(t, exitDone)
+	t.Logf("demo took %v\n%s%s", time.Since(start).Round(time.Millisecond), r.out, r.err)
+	if limit := 30 * time.Second * raceFactor; time.Since(start) > limit {
+		t.Errorf("took %v, limit %v", time.Since(start), limit)
+	}
+	lines := strings.Split(strings.TrimSpace(r.out), "\n")
+	if len(lines) < 4 {
+		t.Fatalf("the table of the demo:\n%s", r.out)
+	}
+	for _, l := range lines[1:] {
+		head, _, _ := strings.Cut(l, "%")
+		f := strings.Fields(head)
+		if v := number(t, f[len(f)-1]); v >= 3 {
+			t.Errorf("median error of 3 %% or more: %s", l)
+		}
+	}
+	if strings.Contains(r.err, "MISSED") {
+		t.Error("a planted fault was not found")
+	}
+	for _, name := range []string{"contributions.csv", "samples.csv", "flags.csv", "components.csv", "models.csv", "splits.csv", "batches.csv",
+		"calibration.csv", "charts.csv", "budget.csv", "steps.csv", "model.json", "survey.nc", "report.xlsx", "status.json",
+		"settings-used.toml", "provenance.json", "maps", "figures"} {
+		info, err := os.Stat(filepath.Join(dir, "out", name))
+		if err != nil || (!info.IsDir() && info.Size() == 0) {
+			t.Errorf("%s: %v", name, err)
+		}
+	}
+	// The demo can be run again over itself, and its results verified.
+	call("verify", filepath.Join(dir, "out")).want(t, exitDone)
+	before := read(t, dir, "out", "contributions.csv")
+	call("report", filepath.Join(dir, "out")).want(t, exitDone)
+	if read(t, dir, "out", "contributions.csv") != before {
+		t.Error("report changed a number")
+	}
+	call("verify", filepath.Join(dir, "out")).want(t, exitDone)
+	call("run", dir, "--settings", filepath.Join(dir, "out", "settings-used.toml"), "--pictures=false").want(t, exitDoubt)
+	if read(t, dir, "out", "contributions.csv") != before {
+		t.Error("the settings in force do not repeat the result")
+	}
+}

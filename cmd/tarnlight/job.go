@@ -1,0 +1,280 @@
+package main
+
+import (
+	"context"
+	"fmt"
+	"os"
+	"path/filepath"
+	"slices"
+
+	"github.com/spf13/cobra"
+
+	"tarnlight/eem"
+	"tarnlight/eem/prepare"
+	"tarnlight/eem/scanfile"
+	"tarnlight/eem/survey"
+	"tarnlight/unmix"
+	"tarnlight/unmix/merit"
+	"tarnlight/unmix/outdir"
+	"tarnlight/unmix/parafac"
+	"tarnlight/unmix/report"
+)
+
+// jobOptions are the flags of the verbs that work on a survey.
+type jobOptions struct {
+	dir      string
+	out      string // empty: dir/out
+	settings string // empty: dir/survey.toml
+	workers  int
+	strict   bool
+	json     bool
+	pictures bool
+
+	quantify, resolve bool // the parts of the work that the verb asks for
+	verb              string
+}
+
+// flags adds the common flags to a verb.
+func (o *jobOptions) flags(c *cobra.Command) {
+	f := c.Flags()
+	f.StringVar(&o.out, "out", "", "folder for the results (default SURVEY/out)")
+	f.StringVar(&o.settings, "settings", "", "settings file (default SURVEY/survey.toml)")
+	f.IntVar(&o.workers, "workers", 0, "how many bottles at a time (default: all cores; results do not depend on it)")
+	f.BoolVar(&o.strict, "strict", false, "exit 1 when a bottle was rejected")
+	f.BoolVar(&o.json, "json", false, "print the outcome as JSON (status.json) instead of a table")
+	f.BoolVar(&o.pictures, "pictures", true, "make report.xlsx, report.html and the pictures")
+}
+
+// job is one survey on its way from raw files to a results folder.
+type job struct {
+	jobOptions
+	streams streams
+	bar     *bar
+
+	set   *survey.Settings
+	sheet *survey.Sheet
+	sv    *prepare.Survey
+	cube  *eem.Cube               // usable bottles on the survey's grid
+	row   map[*prepare.Bottle]int // bottle → row of the cube
+	res   []*unmix.Resolution     // one a method
+	judge []*merit.Judged         // beside res
+	lines []unmix.Line            // of the references
+	fit   *parafac.Result         // nil without resolve
+	fits  []*parafac.Result       // candidates
+	flags []eem.Flag              // all of them, in order
+}
+
+// execute does the whole job. The results folder is replaced at the very end or
+// not at all.
+func (o jobOptions) execute(ctx context.Context, s streams) (*job, error) {
+	j := &job{jobOptions: o, streams: s, bar: newBar(s.err)}
+	if j.out == "" {
+		j.out = filepath.Join(j.dir, "out")
+	}
+	if err := j.readInputs(); err != nil {
+		return nil, err
+	}
+	stage, err := outdir.Begin(j.out)
+	if err != nil {
+		return nil, err
+	}
+	if err := j.work(ctx, stage); err != nil {
+		if abort := stage.Abort(); abort != nil {
+			fmt.Fprintf(j.bar, "the unfinished results could not be removed: %v\n", abort)
+		}
+		return nil, err
+	}
+	return j, nil
+}
+
+// readInputs reads settings and run sheet.
+func (j *job) readInputs() error {
+	info, err := os.Stat(j.dir)
+	if err != nil || !info.IsDir() {
+		return fmt.Errorf("%s: no such survey folder; a survey is a folder with a runsheet.csv or runsheet.xlsx (tarnlight begin drafts one)", j.dir)
+	}
+	if j.set, err = survey.ReadSettings(j.settingsPath()); err != nil {
+		return err
+	}
+	j.sheet, err = survey.ReadSheet(j.dir, j.set)
+	return err
+}
+
+// work does everything between the raw files and the finished folder.
+func (j *job) work(ctx context.Context, stage *outdir.Staging) error {
+	if err := j.prepare(ctx); err != nil {
+		return err
+	}
+	if err := j.unmix(ctx); err != nil {
+		return err
+	}
+	j.collectFlags()
+	if err := j.write(stage); err != nil {
+		return err
+	}
+	if j.pictures {
+		if err := report.Render(ctx, stageDir(stage), j.renderSettings(), j.bar.step); err != nil {
+			return err
+		}
+	}
+	if err := ctx.Err(); err != nil {
+		return err
+	}
+	return stage.Commit(j.provenance())
+}
+
+// prepare reads and corrects the bottles and stacks the usable ones.
+func (j *job) prepare(ctx context.Context) error {
+	var err error
+	j.sv, err = prepare.Read(ctx, j.dir, j.sheet, j.set, prepare.Options{Workers: j.workers, Progress: j.bar.step})
+	if err != nil {
+		return err
+	}
+	for _, g := range j.sv.Guesses {
+		fmt.Fprintf(j.bar, "%d files: %s (first: %s)\n", g.Files, g.Text, g.First)
+	}
+	usable := j.sv.Pick((*prepare.Bottle).Usable)
+	j.cube = j.sv.Cube(usable)
+	j.row = map[*prepare.Bottle]int{}
+	for i, b := range usable {
+		j.row[b] = i
+		if b.EEM.Grid.Equal(j.cube.Grid) { // one copy is enough
+			b.EEM.F, b.EEM.Why = j.cube.Sample(i), j.cube.SampleWhy(i)
+		}
+	}
+	return nil
+}
+
+// unmix resolves the bottles by every method that is asked for.
+func (j *job) unmix(ctx context.Context) error {
+	if err := j.quantifyPart(); err != nil {
+		return err
+	}
+	if err := j.resolvePart(ctx); err != nil {
+		return err
+	}
+	if len(j.res) == 0 {
+		return fmt.Errorf("nothing to do: the sheet has no standards with conc: columns, no reference file is named ([quantify] references), and [resolve] components is \"off\"; add one of them")
+	}
+	return nil
+}
+
+// hasStandards says whether the sheet can build references.
+func (j *job) hasStandards() bool {
+	return slices.ContainsFunc(j.sv.Bottles, func(b *prepare.Bottle) bool { return j.calibrates(b) && len(b.Row.Conc) > 0 })
+}
+
+// calibrates says whether a bottle takes part in references.
+func (j *job) calibrates(b *prepare.Bottle) bool {
+	return b.Row.Kind == survey.Standard && !b.Excluded && b.Row.ExcludeFromFit == ""
+}
+
+// quantifyPart resolves against references, where there are any.
+func (j *job) quantifyPart() error {
+	how := j.set.Quantify.References
+	if !j.quantify || how == "none" || (how == "auto" && !j.hasStandards()) {
+		return nil
+	}
+	var set *unmix.Set
+	var err error
+	if how == "file" {
+		set, err = readReferences(filepath.Join(j.dir, filepath.FromSlash(j.set.Quantify.File)), j.set.Quantify.File)
+	} else {
+		set, err = j.references()
+	}
+	if err != nil {
+		return err
+	}
+	return j.resolveWith(set, "references")
+}
+
+// references builds the set from the sheet's standards.
+func (j *job) references() (*unmix.Set, error) {
+	var names, units []string
+	var standards []unmix.Standard
+	for _, b := range j.sv.Bottles {
+		if !j.calibrates(b) || !b.Usable() {
+			continue
+		}
+		st := unmix.Standard{ID: b.Row.ID, Batch: b.Batch, Conc: map[string]float64{}}
+		st.EEM = eem.FromCells(j.cube.Grid, j.cube.Unit, j.cube.Sample(j.row[b]))
+		copy(st.EEM.Why, j.cube.SampleWhy(j.row[b]))
+		for _, c := range b.Row.Conc {
+			if !slices.Contains(names, c.Name) {
+				names, units = append(names, c.Name), append(units, c.Unit)
+			}
+			st.Conc[c.Name] = c.Value * b.Row.Dilution // of the bottle, like the corrected EEM
+		}
+		standards = append(standards, st)
+	}
+	set, lines, err := unmix.FromStandards(j.cube.Grid, j.cube.Unit, names, units, standards)
+	if err != nil {
+		return nil, fmt.Errorf("%s: %w", j.sheet.Path, err)
+	}
+	j.lines = lines
+	return set, nil
+}
+
+// readReferences reads a reference file or a model file.
+func readReferences(path, name string) (*unmix.Set, error) {
+	if filepath.Ext(path) == ".json" {
+		data, err := scanfile.Load(path)
+		if err != nil {
+			return nil, err
+		}
+		m, err := unmix.ParseModel(name, data)
+		if err != nil {
+			return nil, err
+		}
+		s := m.Set()
+		s.Origin = name
+		return s, nil
+	}
+	t, err := scanfile.ReadTable(path)
+	if err != nil {
+		return nil, err
+	}
+	rows := make([][]string, len(t.Rows))
+	line := make([]int, len(t.Rows))
+	for i, r := range t.Rows {
+		rows[i], line[i] = r.Cells, r.Line
+	}
+	return unmix.ParseComponents(name, t.Header, rows, line)
+}
+
+// resolveWith resolves every usable bottle against a set and judges the result.
+func (j *job) resolveWith(set *unmix.Set, method string) error {
+	set.Method = method
+	r, err := unmix.Quantify(j.cube, set)
+	if err != nil {
+		return err
+	}
+	bottles := make([]merit.Bottle, 0, len(j.sv.Bottles))
+	for _, b := range j.sv.Bottles {
+		if b.Excluded {
+			continue
+		}
+		bottles = append(bottles, j.merit(b))
+	}
+	judged := merit.Judge(r, bottles, j.cube.Sample, j.sv.Limit, j.sv.Accept, set.Origin)
+	j.res = append(j.res, r)
+	j.judge = append(j.judge, judged)
+	return nil
+}
+
+// merit gathers what the judgement of a bottle needs.
+func (j *job) merit(b *prepare.Bottle) merit.Bottle {
+	m := merit.Bottle{ID: b.Row.ID, Batch: b.Batch, Row: -1, Unlike: b.Row.Kind == survey.Blank || b.Row.Kind == survey.FieldBlank}
+	if i, ok := j.row[b]; ok {
+		m.Row = i
+	}
+	for _, f := range b.Flags {
+		switch f.Severity {
+		case eem.Doubt:
+			m.Doubts = append(m.Doubts, f.Msg)
+		case eem.Reject:
+			m.Rejects = append(m.Rejects, f.Msg)
+		}
+	}
+	return m
+}

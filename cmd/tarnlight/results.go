@@ -1,0 +1,420 @@
+package main
+
+import (
+	"fmt"
+	"math"
+	"slices"
+	"strconv"
+	"strings"
+
+	"tarnlight/eem"
+	"tarnlight/eem/optics"
+	"tarnlight/eem/prepare"
+	"tarnlight/eem/scatter"
+	"tarnlight/eem/survey"
+	"tarnlight/unmix"
+	"tarnlight/unmix/parafac"
+	"tarnlight/unmix/report"
+)
+
+var nan = math.NaN()
+
+// contributionTable makes contributions.csv: method after method, bottle after
+// bottle in the order of the sheet.
+func (j *job) contributionTable() *report.Table {
+	t := report.New("contributions.csv")
+	for _, judged := range j.judge {
+		for _, c := range judged.Contributions {
+			t.Append(c.ID, c.Component, c.Method, c.Value, c.Unit, c.U, c.Lower, c.Upper, c.Detection, c.Qualifier,
+				c.Critical, c.Quantification, c.Detected, c.Reported, strings.Join(c.Reasons, "; "), c.Model)
+		}
+	}
+	return t
+}
+
+// sampleTable makes samples.csv. Columns on the fit speak of the first method.
+func (j *job) sampleTable() *report.Table {
+	t := report.NewSamples(j.sheet.Columns)
+	n := len(j.sheet.Columns)
+	place := map[string]int{} // of our columns, from the end of the sheet's
+	for _, c := range report.New("samples.csv").Columns {
+		place[c] = t.Own(c) - n
+	}
+	count := map[string]*[4]int{}
+	for _, f := range j.flags {
+		if count[f.ID] == nil {
+			count[f.ID] = &[4]int{}
+		}
+		count[f.ID][f.Severity]++
+	}
+	at := 0
+	for _, b := range j.sv.Bottles {
+		own := make([]any, len(t.Columns)-n)
+		set := func(name string, v any) { own[place[name]] = v }
+		if !b.Excluded {
+			j.fitColumns(set, b, at)
+			at++
+		}
+		set("largest_inner_filter_factor", b.Largest)
+		j.opticsColumns(set, b)
+		c := count[b.Row.ID]
+		if c == nil {
+			c = &[4]int{}
+		}
+		set("notes", c[eem.Remark])
+		set("doubts", c[eem.Doubt])
+		set("rejects", c[eem.Reject])
+		row := make([]any, 0, len(t.Columns))
+		for i := range n {
+			cell := ""
+			if i < len(b.Row.Cells) {
+				cell = b.Row.Cells[i]
+			}
+			row = append(row, cell)
+		}
+		t.Append(append(row, own...)...)
+	}
+	return t
+}
+
+// fitColumns tells how the first method explains bottle number at of those that
+// are not excluded.
+func (j *job) fitColumns(set func(string, any), b *prepare.Bottle, at int) {
+	i, ok := j.row[b]
+	if !ok || len(j.res) == 0 {
+		return
+	}
+	fit := j.res[0].Fits[i]
+	set("fit_method", j.res[0].Set.Method)
+	set("cells_used", fit.Cells)
+	set("explained_percent", fit.Explained)
+	set("residual_rms", fit.RMS)
+	set("structure", j.judge[0].Structure[at].Z)
+	set("hottest_ex_nm", fit.HotEx)
+	set("hottest_em_nm", fit.HotEm)
+	set("hottest_value", fit.Hot)
+	set("condition_number", fit.Condition)
+}
+
+// opticsNames maps the columns of samples.csv to the indices.
+var opticsNames = map[string]string{"suva254": "suva254", "s275_295": "s_275_295", "s350_400": "s_350_400", "slope_ratio": "s_r",
+	"e2_e3": "e2_e3", "fi": "fi_470_520", "bix": "bix", "hix": "hix_sum", "hix_ratio": "hix_ratio", "freshness": "freshness",
+	"peak_b": "peak_b", "peak_t": "peak_t", "peak_a": "peak_a", "peak_m": "peak_m", "peak_c": "peak_c"}
+
+func (j *job) opticsColumns(set func(string, any), b *prepare.Bottle) {
+	if !b.Usable() {
+		return
+	}
+	list := optics.Fluorescence(b.EEM)
+	if b.Absorb != nil {
+		list = append(list, optics.Absorption(b.Absorb, b.Row.DOC)...)
+	}
+	flat := optics.Flat(list)
+	for column, name := range opticsNames {
+		if v, ok := flat[name]; ok {
+			set(column, v)
+		}
+	}
+}
+
+// flagTable makes flags.csv.
+func (j *job) flagTable() *report.Table {
+	t := report.New("flags.csv")
+	for _, f := range j.flags {
+		var line any
+		if f.Line > 0 {
+			line = f.Line
+		}
+		t.Append(f.ID, f.Batch, f.Component, f.Method, f.Test, f.Severity.String(), f.Value, f.Limit, f.Msg, f.File, line)
+	}
+	return t
+}
+
+// componentTable makes components.csv: references, then every candidate model.
+func (j *job) componentTable() *report.Table {
+	t := report.New("components.csv")
+	for _, r := range j.res {
+		if r.Set.Method == "references" {
+			appendSet(t, r.Set, true)
+		}
+	}
+	for _, fit := range j.fits {
+		appendSet(t, componentsOf(fit, true), fit == j.fit)
+	}
+	return t
+}
+
+func appendSet(t *report.Table, s *unmix.Set, chosen bool) {
+	for _, c := range s.Components {
+		for _, m := range []struct {
+			mode string
+			ax   eem.Axis
+			v, u []float64
+			det  []bool
+		}{{unmix.ModeEx, s.Grid.Ex, c.Ex, c.ExU, c.ExDetermined}, {unmix.ModeEm, s.Grid.Em, c.Em, c.EmU, c.EmDetermined}} {
+			for i, v := range m.v {
+				u, det := nan, !math.IsNaN(v)
+				if m.u != nil {
+					u = m.u[i]
+				}
+				if m.det != nil {
+					det = m.det[i]
+				}
+				t.Append(c.Name, m.mode, m.ax.At(i), v, u, det, s.Method, s.Len(), chosen, c.AmountUnit)
+			}
+		}
+		if c.AmountUnit != "" {
+			t.Append(c.Name, unmix.ModeScale, "", c.Scale, nan, true, s.Method, s.Len(), chosen, c.AmountUnit)
+		}
+	}
+}
+
+// batchTable makes batches.csv.
+func (j *job) batchTable() *report.Table {
+	t := report.New("batches.csv")
+	count := map[string]*[4]int{}
+	for _, f := range j.flags {
+		if count[f.Batch] == nil {
+			count[f.Batch] = &[4]int{}
+		}
+		count[f.Batch][f.Severity]++
+	}
+	for _, bt := range j.sv.Batches {
+		kinds := map[survey.Kind]int{}
+		for _, b := range bt.Bottles {
+			kinds[b.Row.Kind]++
+		}
+		var blanks []string
+		for _, b := range bt.Blanks {
+			blanks = append(blanks, b.Row.ID)
+		}
+		scale := nan
+		switch j.sv.Unit {
+		case eem.Raman:
+			scale = bt.Raman.Area
+		case eem.Quinine:
+			scale = bt.Quinine
+		}
+		peak, snr := bt.RamanPeak()
+		c := count[bt.Name]
+		if c == nil {
+			c = &[4]int{}
+		}
+		verdict, reasons := bt.Verdict()
+		t.Append(bt.Name, bt.Setup, bt.Day, kinds[survey.Sample]+kinds[survey.FieldBlank], strings.Join(blanks, " "), kinds[survey.Standard],
+			kinds[survey.Control]+kinds[survey.Spike], string(j.sv.Unit), scale, bt.ScaleU(), peak, snr, nan,
+			c[eem.Remark], c[eem.Doubt], c[eem.Reject], verdict, strings.Join(reasons, "; "))
+	}
+	return t
+}
+
+// chartTable makes charts.csv: the quality variables that every batch has.
+func (j *job) chartTable() *report.Table {
+	t := report.New("charts.csv")
+	for _, bt := range j.sv.Batches {
+		if bt.Raman.N == 0 {
+			continue
+		}
+		t.Append("Raman area", bt.Name, "", bt.Day, bt.Raman.Area, "counts nm", nan, nan, nan, nan, nan, "", "")
+		if peak, _ := bt.RamanPeak(); !math.IsNaN(peak) {
+			want := scatter.Raman1.Em(bt.Raman.ExNM)
+			t.Append("Raman peak", bt.Name, "", bt.Day, peak, "nm", want, nan, nan, nan, nan, "", "")
+		}
+	}
+	return t
+}
+
+// calibrationTable makes calibration.csv: every standard and control (and what a
+// spike recovered), against what the references find.
+func (j *job) calibrationTable() *report.Table {
+	t := report.New("calibration.csv")
+	k := slices.IndexFunc(j.res, func(r *unmix.Resolution) bool { return r.Set.Method == "references" })
+	if k < 0 {
+		return t
+	}
+	r := j.res[k]
+	lines := map[string]unmix.Line{}
+	for _, l := range j.lines {
+		lines[l.Component] = l
+	}
+	for _, b := range j.sv.Bottles {
+		i, ok := j.row[b]
+		if !ok {
+			continue
+		}
+		for _, g := range j.given(b, r) {
+			f := slices.Index(r.Set.Names(), g.component)
+			if f < 0 {
+				continue
+			}
+			found := r.Value[i*r.Set.Len()+f] - g.before
+			l, has := lines[g.component]
+			if !has {
+				l = unmix.Line{Slope: nan, Intercept: nan, InterceptSE: nan}
+			}
+			recovery, low, high := nan, nan, nan
+			verdict, reason := "", ""
+			if g.given > 0 {
+				recovery = 100 * found / g.given
+				if lim := j.sv.Limit(g.test); g.test != "" && lim > 0 {
+					low, high = 100-lim, 100+lim
+					if verdict = "pass"; recovery < low || recovery > high {
+						verdict, reason = "doubt", fmt.Sprintf("recovery %.1f %%, accepted %g–%g %%", recovery, low, high)
+					}
+				}
+			}
+			t.Append(b.Row.ID, b.Batch, string(b.Row.Kind), g.component, g.given, found, r.Set.Components[f].AmountUnit,
+				r.U[i*r.Set.Len()+f], recovery, low, high, j.calibrates(b), verdict, reason, l.Slope, l.Intercept, l.InterceptSE)
+		}
+	}
+	return t
+}
+
+// given is a known amount in a bottle.
+type given struct {
+	component string
+	given     float64 // amount in the bottle
+	before    float64 // what it held before a spike
+	test      string  // the test of its recovery
+}
+
+func (j *job) given(b *prepare.Bottle, r *unmix.Resolution) []given {
+	var out []given
+	test := map[survey.Kind]string{survey.Control: "control-recovery", survey.Spike: "spike-recovery"}[b.Row.Kind]
+	for _, c := range b.Row.Conc {
+		g := given{component: c.Name, given: c.Value * b.Row.Dilution, test: test}
+		switch b.Row.Kind {
+		case survey.Standard, survey.Control:
+		case survey.Spike:
+			of := j.bottle(b.Row.SpikeOf)
+			i, ok := j.row[of]
+			f := slices.Index(r.Set.Names(), c.Name)
+			if !ok || f < 0 {
+				continue
+			}
+			g.before = r.Value[i*r.Set.Len()+f]
+		default:
+			continue
+		}
+		out = append(out, g)
+	}
+	return out
+}
+
+// bottle finds a bottle by id, nil when there is none.
+func (j *job) bottle(id string) *prepare.Bottle {
+	for _, b := range j.sv.Bottles {
+		if b.Row.ID == id {
+			return b
+		}
+	}
+	return nil
+}
+
+// budgetTable makes budget.csv: so far the one cause that is known.
+func (j *job) budgetTable() *report.Table {
+	t := report.New("budget.csv")
+	for k, judged := range j.judge {
+		df := map[string]int{}
+		for i, id := range j.res[k].IDs {
+			df[id] = j.res[k].Fits[i].Cells - j.res[k].Set.Len()
+		}
+		for _, c := range judged.Contributions {
+			if !math.IsNaN(c.U) {
+				t.Append(c.ID, c.Component, c.Method, "scatter of the residual", "cell", c.U, c.Unit, 100.0, df[c.ID], "s²(AᵀA)⁻¹ of the bottle's own fit")
+			}
+		}
+	}
+	return t
+}
+
+// modelTable makes models.csv of fits that were not chosen among.
+func (j *job) modelTable() *report.Table {
+	t := report.New("models.csv")
+	for _, fit := range j.fits {
+		agree := 0
+		for _, s := range fit.Starts {
+			if s.Agrees {
+				agree++
+			}
+		}
+		cells := 0
+		for _, n := range fit.Cells {
+			cells += n
+		}
+		t.Append(fit.Components, len(fit.IDs), cells, fit.Loss, fit.Explained, nan, nan, nan, len(fit.Starts), agree, fit.Iterations,
+			fit.Status == parafac.Converged, fit.Certificate, nan, nan, fit.Revived, "", "", fit == j.fit, "number stated in the settings", strconv.FormatUint(j.set.Resolve.Seed, 10))
+	}
+	return t
+}
+
+// stepTable makes steps.csv: every step of every setup with its parameters. Where
+// bottles differ in a parameter the row gives the range.
+func (j *job) stepTable() *report.Table {
+	t := report.New("steps.csv")
+	type key struct{ setup, step, name string }
+	type entry struct {
+		key
+		p      eem.Param
+		msg    string
+		values []string
+	}
+	var order []*entry
+	seen := map[key]*entry{}
+	for _, b := range j.sv.Bottles {
+		if b.EEM == nil {
+			continue
+		}
+		for _, n := range b.EEM.Notes {
+			if n.Test != "" {
+				continue
+			}
+			params := n.Params
+			if len(params) == 0 {
+				params = []eem.Param{{}}
+			}
+			for _, p := range params {
+				k := key{b.Row.Setup, n.Step, p.Name}
+				e := seen[k]
+				if e == nil {
+					e = &entry{key: k, p: p, msg: n.Msg}
+					seen[k] = e
+					order = append(order, e)
+				}
+				if n.Msg != e.msg {
+					e.msg = ""
+				}
+				if !slices.Contains(e.values, p.Value) {
+					e.values = append(e.values, p.Value)
+				}
+			}
+		}
+	}
+	slices.SortStableFunc(order, func(a, b *entry) int {
+		if a.setup != b.setup {
+			return strings.Compare(a.setup, b.setup)
+		}
+		return prepare.StepOrder(a.step) - prepare.StepOrder(b.step)
+	})
+	for _, e := range order {
+		t.Append(prepare.StepOrder(e.step), e.setup, e.step, e.name, summary(e.values), e.p.Unit, e.p.Source, e.msg)
+	}
+	return t
+}
+
+// summary gives one value as it is and several as their range, or as a list.
+func summary(values []string) string {
+	if len(values) == 1 {
+		return values[0]
+	}
+	lo, hi := math.Inf(1), math.Inf(-1)
+	for _, s := range values {
+		v, err := strconv.ParseFloat(s, 64)
+		if err != nil {
+			slices.Sort(values)
+			return strings.Join(values[:min(len(values), 12)], ", ")
+		}
+		lo, hi = min(lo, v), max(hi, v)
+	}
+	return fmt.Sprintf("%s to %s", report.Number(lo), report.Number(hi))
+}

@@ -1,0 +1,115 @@
+package main
+
+import (
+	"context"
+	"encoding/json"
+	"fmt"
+	"path/filepath"
+
+	"github.com/spf13/cobra"
+)
+
+// newRunCmd is the whole job.
+func newRunCmd(s streams) *cobra.Command {
+	o := jobOptions{quantify: true, resolve: true, verb: "run"}
+	c := &cobra.Command{
+		Use:   "run SURVEY",
+		Short: "The whole job: read, correct, quantify and/or resolve, report",
+		Long: `run reads the run sheet and the raw files of a survey folder, corrects every
+bottle, resolves the mixtures against the standards (or without references where
+there are none) and writes the results to SURVEY/out. Raw files are never touched;
+older results stay whole until the new ones are complete, and are then kept in
+out.previous.`,
+		Example: "  tarnlight run mysurvey\n  tarnlight run mysurvey --out results --json",
+		Args:    cobra.ExactArgs(1),
+	}
+	o.flags(c)
+	c.RunE = func(c *cobra.Command, args []string) error { o.dir = args[0]; return runJob(c.Context(), s, o) }
+	return c
+}
+
+// newQuantifyCmd is the part with references.
+func newQuantifyCmd(s streams) *cobra.Command {
+	o := jobOptions{quantify: true, verb: "quantify"}
+	c := &cobra.Command{
+		Use:     "quantify SURVEY",
+		Short:   "Only against references: the sheet's standards or a reference file",
+		Example: "  tarnlight quantify mysurvey",
+		Args:    cobra.ExactArgs(1),
+	}
+	o.flags(c)
+	c.RunE = func(c *cobra.Command, args []string) error { o.dir = args[0]; return runJob(c.Context(), s, o) }
+	return c
+}
+
+// newResolveCmd is the part without references.
+func newResolveCmd(s streams) *cobra.Command {
+	o := jobOptions{resolve: true, verb: "resolve"}
+	c := &cobra.Command{
+		Use:     "resolve SURVEY",
+		Short:   "Only without references: PARAFAC on the survey's samples",
+		Example: "  tarnlight resolve mysurvey",
+		Args:    cobra.ExactArgs(1),
+	}
+	o.flags(c)
+	c.RunE = func(c *cobra.Command, args []string) error { o.dir = args[0]; return runJob(c.Context(), s, o) }
+	return c
+}
+
+// runJob does the job and says how it ended.
+func runJob(ctx context.Context, s streams, o jobOptions) error {
+	j, err := o.execute(ctx, s)
+	if err != nil {
+		return err
+	}
+	st := j.status()
+	if o.json {
+		b, err := json.MarshalIndent(st, "", "  ")
+		if err != nil {
+			return err
+		}
+		if _, err := fmt.Fprintln(s.out, string(b)); err != nil {
+			return err
+		}
+	} else if err := j.printSummary(s); err != nil {
+		return err
+	}
+	if st.ExitCode != exitDone {
+		return &codeError{code: st.ExitCode}
+	}
+	return nil
+}
+
+// printSummary ends a run: a compact table on out, what to look at first on err.
+func (j *job) printSummary(s streams) error {
+	t := newText("component", "method", "detected", "of", "lowest", "median", "highest", "unit")
+	for k, judged := range j.judge {
+		for f, c := range j.res[k].Set.Components {
+			v, n, unit := j.detectedValues(k, f)
+			row := []string{c.Name, j.res[k].Set.Method, fmt.Sprint(len(v)), fmt.Sprint(n), "", "", "", unit}
+			if len(v) > 0 {
+				row[4], row[5], row[6] = short(v[0]), short(median(v)), short(v[len(v)-1])
+			}
+			t.add(row...)
+		}
+		_ = judged
+	}
+	if err := t.print(s.out); err != nil {
+		return err
+	}
+	st := j.status()
+	fmt.Fprintf(s.err, "%d bottles: %d usable, %d rejected, %d excluded; %d doubts, %d notes\n", st.Bottles["all"], st.Bottles["usable"],
+		st.Bottles["rejected"], st.Bottles["excluded"], st.Findings["doubts"], st.Findings["notes"])
+	if w := j.worst(3); len(w) > 0 {
+		fmt.Fprintln(s.err, "look at first:")
+		for _, f := range w {
+			fmt.Fprintf(s.err, "  %s\n", flagLine(f))
+		}
+	}
+	name := "contributions.csv"
+	if j.pictures {
+		name = "report.html"
+	}
+	fmt.Fprintf(s.err, "results: %s\n", filepath.Join(j.out, name))
+	return nil
+}

@@ -1,0 +1,88 @@
+package main
+
+import (
+	"fmt"
+	"io"
+	"slices"
+	"strconv"
+	"strings"
+	"unicode/utf8"
+
+	"tarnlight/eem/survey"
+)
+
+// text is a table for a terminal: columns of numbers to the right.
+type text struct {
+	head []string
+	rows [][]string
+}
+
+func newText(head ...string) *text { return &text{head: head} }
+
+func (t *text) add(cells ...string) { t.rows = append(t.rows, cells) }
+
+func (t *text) print(w io.Writer) error {
+	width := make([]int, len(t.head))
+	number := make([]bool, len(t.head))
+	for c := range t.head {
+		width[c] = utf8.RuneCountInString(t.head[c])
+		number[c] = true
+		for _, r := range t.rows {
+			width[c] = max(width[c], utf8.RuneCountInString(r[c]))
+			if _, err := strconv.ParseFloat(strings.TrimSuffix(r[c], " %"), 64); err != nil && r[c] != "" {
+				number[c] = false
+			}
+		}
+	}
+	for _, r := range append([][]string{t.head}, t.rows...) {
+		var b strings.Builder
+		for c, cell := range r {
+			pad := strings.Repeat(" ", width[c]-utf8.RuneCountInString(cell))
+			if c > 0 {
+				b.WriteString("  ")
+			}
+			if number[c] {
+				b.WriteString(pad + cell)
+			} else {
+				b.WriteString(cell + pad)
+			}
+		}
+		if _, err := fmt.Fprintln(w, strings.TrimRight(b.String(), " ")); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// short gives four significant digits.
+func short(v float64) string { return fmt.Sprintf("%.4g", v) }
+
+// median of sorted values.
+func median(v []float64) float64 {
+	n := len(v)
+	if n%2 == 1 {
+		return v[n/2]
+	}
+	return (v[n/2-1] + v[n/2]) / 2
+}
+
+// detectedValues returns the sorted values of component f in samples that show
+// it, of how many usable samples, and their unit.
+func (j *job) detectedValues(k, f int) (v []float64, n int, unit string) {
+	comps := j.res[k].Set.Len()
+	for i, c := range j.judge[k].Contributions {
+		if i%comps != f || j.bottle(c.ID).Row.Kind != survey.Sample {
+			continue
+		}
+		unit = c.Unit
+		if c.Qualifier == "R" {
+			continue
+		}
+		n++
+		if c.Detected {
+			v = append(v, c.Value)
+		}
+	}
+	slices.Sort(v)
+	return v, n, unit
+}

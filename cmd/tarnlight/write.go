@@ -1,0 +1,266 @@
+package main
+
+import (
+	"encoding/json"
+	"fmt"
+	"maps"
+	"math"
+	"os"
+	"path/filepath"
+	"slices"
+
+	"tarnlight/eem"
+	"tarnlight/eem/prepare"
+	"tarnlight/eem/survey"
+	"tarnlight/unmix"
+	"tarnlight/unmix/outdir"
+	"tarnlight/unmix/report"
+)
+
+// stageDir is the folder that takes the staged files.
+func stageDir(s *outdir.Staging) string { return filepath.Dir(s.Path(report.StoreName)) }
+
+// write stages every result file but those that report.Render makes.
+func (j *job) write(stage *outdir.Staging) error {
+	dir := stageDir(stage)
+	for _, t := range []*report.Table{
+		j.contributionTable(), j.sampleTable(), j.flagTable(), j.componentTable(), j.modelTable(), j.splitTable(),
+		j.splitSpectra(), j.batchTable(), j.calibrationTable(), j.chartTable(), j.budgetTable(), j.stepTable(),
+	} {
+		if err := t.WriteFile(dir); err != nil {
+			return err
+		}
+	}
+	if err := j.writeStore(stage.Path(report.StoreName)); err != nil {
+		return err
+	}
+	if err := j.writeModel(stage.Path("model.json")); err != nil {
+		return err
+	}
+	f, err := os.Create(stage.Path("settings-used.toml"))
+	if err != nil {
+		return err
+	}
+	_, err = j.settingsUsed().WriteTo(f)
+	if cerr := f.Close(); err == nil {
+		err = cerr
+	}
+	if err != nil {
+		return err
+	}
+	return writeJSON(stage.Path("status.json"), j.status())
+}
+
+func writeJSON(path string, v any) error {
+	b, err := json.MarshalIndent(v, "", "  ")
+	if err != nil {
+		return err
+	}
+	return os.WriteFile(path, append(b, '\n'), 0o644)
+}
+
+// settingsUsed are the settings with what was found for "auto".
+func (j *job) settingsUsed() *survey.Settings {
+	s := *j.sv.Settings
+	if name, ok := map[eem.Unit]string{eem.Raman: "raman", eem.Quinine: "quinine", eem.Counts: "counts"}[j.sv.Unit]; ok && s.Intensity.Unit == "auto" {
+		s.Intensity.Unit = name
+	}
+	return &s
+}
+
+// writeStore writes survey.nc bottle by bottle.
+func (j *job) writeStore(path string) error {
+	set := report.StoreSettings{Grid: j.cube.Grid, Unit: j.cube.Unit, Title: j.set.Title}
+	var bottles []*prepare.Bottle
+	for _, b := range j.sv.Bottles {
+		if !b.Excluded {
+			bottles = append(bottles, b)
+			set.IDs = append(set.IDs, b.Row.ID)
+		}
+	}
+	for _, r := range j.res {
+		set.Methods = append(set.Methods, r.Set.Method)
+	}
+	w, err := report.CreateStore(path, set)
+	if err != nil {
+		return err
+	}
+	n := j.cube.Cells()
+	residual := map[string][]float64{}
+	for _, r := range j.res {
+		residual[r.Set.Method] = make([]float64, n)
+	}
+	for _, b := range bottles {
+		i, ok := j.row[b]
+		if !ok {
+			if err := w.Append(b.Row.ID, nil, nil, nil, nil); err != nil {
+				return err
+			}
+			continue
+		}
+		for _, r := range j.res {
+			r.ResidualTo(residual[r.Set.Method], j.cube.Sample(i), i)
+		}
+		if err := w.Append(b.Row.ID, j.cube.Sample(i), nil, residual, j.cube.SampleWhy(i)); err != nil {
+			return err
+		}
+	}
+	return w.Close()
+}
+
+// writeModel freezes the chosen model, or the references where nothing was
+// resolved.
+func (j *job) writeModel(path string) error {
+	r := j.res[len(j.res)-1]
+	m := unmix.NewModel(r.Set, j.set.Title)
+	_, m.Cells = r.Set.Matrix()
+	if j.fit != nil {
+		m.Samples = j.fit.IDs
+		if e := j.fit.Explained; !math.IsNaN(e) {
+			m.Explained = &e
+		}
+	}
+	s := j.settingsUsed()
+	m.Settings = map[string]any{
+		"unit": string(j.cube.Unit), "inner_filter": s.Correct.InnerFilter, "blank": s.Correct.Blank, "fill": s.Scatter.Fill,
+		"bands": bandText(s.Scatter), "applied": append([]string{}, s.Scans.Applied...),
+	}
+	return writeJSON(path, m)
+}
+
+func bandText(s survey.Scatter) []string {
+	var out []string
+	for _, b := range prepare.Bands(s) {
+		out = append(out, fmt.Sprintf("%s: %g nm below to %g nm above", b.Reason, b.Below, b.Above))
+	}
+	return out
+}
+
+// status is status.json: the outcome for a scheduler.
+type status struct {
+	Outcome  string         `json:"outcome"` // done, doubt
+	ExitCode int            `json:"exit_code"`
+	Version  string         `json:"version"`
+	Title    string         `json:"title"`
+	Unit     string         `json:"unit"`
+	Methods  []string       `json:"methods"`
+	Bottles  map[string]int `json:"bottles"` // all, usable, rejected, excluded
+	Findings map[string]int `json:"findings"`
+	Tests    map[string]int `json:"tests"` // doubts and rejects by code
+	Rejected []string       `json:"rejected"`
+	Reasons  []string       `json:"reasons"` // the first ones, rejects first
+}
+
+func (j *job) status() status {
+	s := status{Outcome: "done", Version: version, Title: j.set.Title, Unit: string(j.cube.Unit), Methods: []string{},
+		Bottles:  map[string]int{"all": len(j.sv.Bottles), "usable": 0, "rejected": 0, "excluded": 0},
+		Findings: map[string]int{"notes": 0, "doubts": 0, "rejects": 0}, Tests: map[string]int{}, Rejected: []string{}, Reasons: []string{}}
+	for _, r := range j.res {
+		s.Methods = append(s.Methods, r.Set.Method)
+	}
+	rejected := j.rejected()
+	for _, b := range j.sv.Bottles {
+		switch {
+		case b.Excluded:
+			s.Bottles["excluded"]++
+		case rejected[b.Row.ID]:
+			s.Bottles["rejected"]++
+			s.Rejected = append(s.Rejected, b.Row.ID)
+		default:
+			s.Bottles["usable"]++
+		}
+	}
+	for _, f := range j.flags {
+		s.Findings[[...]string{"notes", "notes", "doubts", "rejects"}[f.Severity]]++
+		if f.Severity >= eem.Doubt {
+			s.Tests[f.Test]++
+		}
+	}
+	for _, f := range j.worst(10) {
+		s.Reasons = append(s.Reasons, flagLine(f))
+	}
+	if s.Findings["doubts"]+s.Findings["rejects"] > 0 {
+		s.Outcome, s.ExitCode = "doubt", exitDoubt
+		if j.strict && len(s.Rejected) > 0 {
+			s.ExitCode = exitFailed
+		}
+	}
+	return s
+}
+
+// rejected lists the bottles of which nothing can be used.
+func (j *job) rejected() map[string]bool {
+	out := map[string]bool{}
+	for _, f := range j.flags {
+		if f.Severity == eem.Reject && f.ID != "" {
+			out[f.ID] = true
+		}
+	}
+	return out
+}
+
+// worst returns up to n findings that a user must see: rejects before doubts,
+// one for each bottle and test.
+func (j *job) worst(n int) []eem.Flag {
+	var out []eem.Flag
+	seen := map[[2]string]bool{}
+	for _, sev := range []eem.Severity{eem.Reject, eem.Doubt} {
+		for _, f := range j.flags {
+			k := [2]string{f.ID, f.Test}
+			if f.Severity == sev && !seen[k] && len(out) < n {
+				seen[k] = true
+				out = append(out, f)
+			}
+		}
+	}
+	return out
+}
+
+func flagLine(f eem.Flag) string {
+	who := f.ID
+	if who == "" {
+		who = "survey"
+	}
+	return fmt.Sprintf("%s: %s (%s)", who, f.Msg, f.Test)
+}
+
+// collectFlags puts all findings into one list: what reading and correcting
+// found, then each method's, then the fit's and the batch checks.
+func (j *job) collectFlags() {
+	own := j.flags
+	j.flags = slices.Clone(j.sv.Flags)
+	for _, judged := range j.judge {
+		j.flags = append(j.flags, judged.Flags...)
+	}
+	j.flags = append(j.flags, own...)
+	j.flags = append(j.flags, j.lineFlags()...)
+	j.flags = append(j.flags, j.recoveryFlags()...)
+	j.flags = append(j.flags, j.duplicateFlags()...)
+}
+
+// provenance lists what the results rest on.
+func (j *job) provenance() outdir.Provenance {
+	p := outdir.Provenance{Version: version, Verb: j.verb, Steps: prepare.Steps}
+	for _, in := range j.sv.Inputs {
+		p.Inputs = append(p.Inputs, outdir.File{Path: in.Path, SHA256: in.SHA256, Size: in.Size})
+	}
+	extra := map[string]bool{j.sheet.Path: true, j.settingsPath(): true}
+	for _, name := range []string{j.set.Sheet.Exclusions, j.set.Resolve.Hold, j.set.Quantify.File} {
+		if name != "" {
+			extra[filepath.Join(j.dir, filepath.FromSlash(name))] = true
+		}
+	}
+	for _, path := range slices.Sorted(maps.Keys(extra)) {
+		if f, err := outdir.HashUnder(j.dir, path); err == nil {
+			p.Inputs = append(p.Inputs, f)
+		}
+	}
+	return p
+}
+
+func (j *job) settingsPath() string {
+	if j.settings != "" {
+		return j.settings
+	}
+	return filepath.Join(j.dir, "survey.toml")
+}
