@@ -82,7 +82,7 @@ func TestFaults(t *testing.T) {
 			return s
 		},
 	} {
-		for n := range uint64(10) {
+		for n := range uint64(4) {
 			e := bottle(in, 100+n)
 			before := e.Clone()
 			out := checks(spoil(e))
