@@ -35,12 +35,12 @@ var packages = []struct{ name, may string }{
 	{"eem/prepare", "gonum eem eem/netcdf eem/scanfile eem/correct eem/scatter eem/optics eem/survey"},
 
 	{"unmix", "gonum eem nnls"},
-	{"unmix/parafac", "gonum netlib eem nnls unmix"},
+	{"unmix/parafac", "gonum eem nnls unmix"},
 	{"unmix/merit", "gonum eem nnls unmix"},
-	{"unmix/outdir", "sys"}, // knows no spectroscopy
+	{"unmix/outdir", ""}, // knows no spectroscopy
 	{"unmix/report", "gonum plot fonts excelize eem eem/netcdf eem/optics eem/survey unmix unmix/parafac unmix/merit"},
 
-	{"cmd/tarnlight", "gonum netlib excelize toml text term sys cobra " +
+	{"cmd/tarnlight", "gonum excelize toml text term cobra " +
 		"eem eem/netcdf eem/scanfile eem/correct eem/scatter eem/optics eem/synth eem/survey eem/prepare " +
 		"nnls unmix unmix/parafac unmix/merit unmix/outdir unmix/report"},
 }
@@ -55,7 +55,6 @@ var modules = map[string][]string{
 	"toml":     {"github.com/pelletier/go-toml/v2"},
 	"text":     {"golang.org/x/text"},
 	"term":     {"golang.org/x/term"},
-	"sys":      {"golang.org/x/sys"},
 	"cobra":    {"github.com/spf13/cobra", "github.com/spf13/pflag"},
 }
 

@@ -45,7 +45,11 @@ func TestReadOnlyFolder(t *testing.T) {
 	if err := os.Chmod(above, 0o555); err != nil {
 		t.Fatal(err)
 	}
-	defer os.Chmod(above, 0o755)
+	t.Cleanup(func() {
+		if err := os.Chmod(above, 0o755); err != nil {
+			t.Error(err)
+		}
+	})
 	before := tree(t, above)
 	var err error
 	asNobody(t, func() { _, err = Begin(dir) })
