@@ -81,10 +81,10 @@ func (s *sheetReader) readRow(e xml.StartElement) error {
 		}
 		switch x := tok.(type) {
 		case xml.StartElement:
-			if x.Name.Local != "c" {
-				err = s.d.Skip()
-			} else {
+			if x.Name.Local == "c" {
 				err = s.readCell(x)
+			} else if err = s.d.Skip(); err != nil {
+				err = errorf(s.name, s.row, "sheet %s: %w; save the workbook again", s.sheet, err)
 			}
 			if err != nil {
 				return err
