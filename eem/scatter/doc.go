@@ -43,6 +43,9 @@ var (
 // +Inf where the shift takes all the energy. Wavelengths in air are used as they
 // are; the correction to vacuum is under 0.05 nm.
 func (l Line) Em(ex float64) float64 {
+	if l.Shift == 0 {
+		return float64(l.Order) * ex // without the rounding of two reciprocals
+	}
 	const nmPerCM = 1e7
 	d := 1/ex - l.Shift/nmPerCM
 	if d <= 0 {

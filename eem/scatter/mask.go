@@ -58,14 +58,27 @@ func cutsAt(bands []Band, ex float64) []cut {
 	return append(out, below...)
 }
 
+// sameNM, nm, is how near two wavelengths are one, as on the axes of package eem:
+// an end of a band that falls on a cell takes it, however a file rounded.
+const sameNM = 1e-4
+
 // reason says whether a cut holds em, and the first one that does.
 func reason(cuts []cut, em float64) (eem.Reason, bool) {
 	for _, c := range cuts {
-		if em >= c.lo && em <= c.hi {
+		if em >= c.lo-sameNM && em <= c.hi+sameNM {
 			return c.why, true
 		}
 	}
 	return eem.Measured, false
+}
+
+// In returns a function that says whether a band holds a cell, for tests that must
+// keep away from the lines.
+func In(bands []Band) func(exNM, emNM float64) bool {
+	return func(ex, em float64) bool {
+		_, cut := reason(cutsAt(bands, ex), em)
+		return cut
+	}
 }
 
 // params describes the band in a note.
