@@ -17,8 +17,8 @@ type factor struct {
 	a       []float64 // m×n by rows
 	ea      []int     // column j of a is W^½·a_j·2^−ea[j]
 	ew      int       // half was scaled by 2^−ew
-	q       []float64
-	stride  int // of q, even; columns from k on are zero
+	q       []float64 // m×stride, a panel for each block of rows
+	stride  int       // columns of q, even; those from k on are zero
 	tri     triangle
 }
 
@@ -41,9 +41,18 @@ func newFactor(p *problem) *factor {
 	lapack64.Orgqr(qr, tau, work, len(work))
 	f.q = make([]float64, p.m*f.stride)
 	for i := range p.m {
-		copy(f.q[i*f.stride:i*f.stride+k], qr.Data[i*qr.Stride:])
+		p := f.panel(i / block * block)
+		for c := range k {
+			p.q[c*p.ld+i%block] = qr.Data[i*qr.Stride+c]
+		}
 	}
 	return f
+}
+
+// panel returns the block of Q that starts at a row.
+func (f *factor) panel(row int) panel {
+	rows := min(block, f.m-row)
+	return panel{f.q[row*f.stride : (row+rows)*f.stride], rows}
 }
 
 // without returns the factor of the rows that are not gone, which must not be all.
@@ -80,21 +89,21 @@ const worstGap = 1e-6
 // H comes from the missing rows alone, or from those present where they are
 // fewer.
 type reduced struct {
-	tri triangle
-	l   []float64 // k×k by rows, lower
-	inv float64   // ‖L⁻¹‖²; the smallest eigenvalue of H is at least 1/inv
-	h   []float64 // k × stride
-	q   []float64 // gathered rows of Q
-	v   []float64 // one column of them
+	tri  triangle
+	l    []float64 // k×k by rows, lower
+	inv  float64   // ‖L⁻¹‖²; the smallest eigenvalue of H is at least 1/inv
+	h    []float64 // k × stride
+	q    panel     // gathered rows of Q, up to two blocks
+	rows []int32   // of a block
 }
 
 func newReduced(f *factor) *reduced {
 	return &reduced{
-		tri: newTriangle(f.k, f.n, f.tri.order),
-		l:   make([]float64, f.k*f.k),
-		h:   make([]float64, f.k*f.stride),
-		q:   make([]float64, block*f.stride),
-		v:   make([]float64, block),
+		tri:  newTriangle(f.k, f.n, f.tri.order),
+		l:    make([]float64, f.k*f.k),
+		h:    make([]float64, f.k*f.stride),
+		q:    panel{make([]float64, 2*block*f.stride), 2 * block},
+		rows: make([]int32, 0, block),
 	}
 }
 
@@ -123,45 +132,60 @@ func (d *reduced) reduce(f *factor, gone []byte, missing int) bool {
 	return true
 }
 
-// gram sets h to I minus the Gram matrix of the missing rows, or to that of the
-// rows present.
+// gram sets the upper triangle of h to I minus the Gram matrix of the missing
+// rows, or to that of the rows present.
 func (d *reduced) gram(f *factor, gone []byte, fromMissing bool) {
 	clear(d.h)
-	s, count := f.stride, 0
-	for at := 0; at < len(gone); at += 8 {
-		word := binary.LittleEndian.Uint64(gone[at:])
-		if !fromMissing {
-			word = ^word
+	count := 0
+	for at := 0; at < f.m; at += block {
+		p := f.panel(at)
+		d.list(gone, at, p.ld, fromMissing)
+		for c := range f.k {
+			from, to := p.column(c, p.ld), d.q.column(c, count+len(d.rows))[count:]
+			for t, i := range d.rows {
+				to[t] = from[i]
+			}
 		}
-		for ; word != 0; word &= word - 1 {
-			i := at*8 + bits.TrailingZeros64(word)
-			if i >= f.m {
-				break
-			}
-			copy(d.q[count*s:(count+1)*s], f.q[i*s:(i+1)*s])
-			if count++; count == block {
-				d.addGram(f.k, s, count)
-				count = 0
-			}
+		if count += len(d.rows); count > block {
+			d.addGram(f, count)
+			count = 0
 		}
 	}
-	d.addGram(f.k, s, count)
+	d.addGram(f, count)
 	if fromMissing {
 		for i := range d.h {
 			d.h[i] = -d.h[i]
 		}
 		for i := range f.k {
-			d.h[i*s+i]++
+			d.h[i*f.stride+i]++
 		}
 	}
 }
 
-func (d *reduced) addGram(k, s, count int) {
-	for c := range k {
-		for i := range count {
-			d.v[i] = d.q[i*s+c]
+// list puts the rows of the block at a row that are gone, or those that are not,
+// into rows, counted from there.
+func (d *reduced) list(gone []byte, at, rows int, missing bool) {
+	d.rows = d.rows[:0]
+	for from := 0; from < rows; from += 64 {
+		word := binary.LittleEndian.Uint64(gone[(at+from)/8:])
+		if !missing {
+			word = ^word
 		}
-		project(d.h[c*s:(c+1)*s], d.v[:count], d.q)
+		if left := rows - from; left < 64 {
+			word &= 1<<left - 1
+		}
+		for ; word != 0; word &= word - 1 {
+			d.rows = append(d.rows, int32(from+bits.TrailingZeros64(word)))
+		}
+	}
+}
+
+// addGram adds the products of the gathered columns: of each with those from its
+// own pair on.
+func (d *reduced) addGram(f *factor, count int) {
+	for c := range f.k {
+		first := c &^ 1
+		project(d.h[c*f.stride+first:(c+1)*f.stride], d.q.column(c, count), d.q.from(first))
 	}
 }
 
@@ -170,7 +194,7 @@ func (d *reduced) cholesky(k, s int) bool {
 		li := d.l[i*k : i*k+k]
 		for j := range i + 1 {
 			lj := d.l[j*k : j*k+k]
-			v := d.h[i*s+j]
+			v := d.h[j*s+i]
 			for l := range j {
 				v -= li[l] * lj[l]
 			}
@@ -188,7 +212,7 @@ func (d *reduced) cholesky(k, s int) bool {
 func (d *reduced) inverseNorm(k int) float64 {
 	sum := 0.0
 	for c := range k {
-		col := d.v[:0]
+		col := d.q.q[:0] // no longer needed
 		for i := c; i < k; i++ {
 			v := 0.0
 			if i == c {

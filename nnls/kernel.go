@@ -3,56 +3,63 @@ package nnls
 // block is the number of rows summed at a time: the rounding error of a sum over
 // m rows grows with block + m/block instead of m, and a block of Q stays in the
 // first-level cache.
-const block = 256
+const block = 320
+
+// panel is a matrix of some rows, at most block of them, by columns: column j is
+// q[j·ld : j·ld + rows].
+type panel struct {
+	q  []float64
+	ld int
+}
+
+func (p panel) from(j int) panel { return panel{p.q[j*p.ld:], p.ld} }
+
+func (p panel) column(j, rows int) []float64 { return p.q[j*p.ld : j*p.ld+rows] }
 
 // padded returns k rounded up to the even number of columns that the kernels
 // work on.
 func padded(k int) int { return (k + 1) &^ 1 }
 
-// project adds qᵀ·v to c. The matrix q has len(v) rows of stride len(c), which
-// is even. Each sum runs over the rows in order, whatever the machine or the
-// samples beside it. Plain Go with as many running sums as the registers hold
-// measured three times faster than a general matrix product of so few columns.
-func project(c, v, q []float64) {
-	stride := len(c)
-	if len(v) == 0 {
-		return
-	}
-	for p := 0; p < stride; {
-		switch left := stride - p; {
-		case left >= 8:
-			project8(c[p:p+8], v, q[p:], stride)
-			p += 8
-		case left == 6:
-			project6(c[p:p+6], v, q[p:], stride)
-			p += 6
-		case left == 4:
-			project4(c[p:p+4], v, q[p:], stride)
-			p += 4
+// project adds pᵀ·v to c, an even number of columns. Each sum runs over the rows
+// in order, whatever the machine or the samples beside it. Plain Go with as many
+// running sums as the registers hold measured three times faster than a general
+// matrix product of so few columns.
+func project(c, v []float64, p panel) {
+	for len(c) > 0 && len(v) > 0 {
+		width := 8
+		switch {
+		case len(c) >= 8:
+			project8(c, v, p)
+		case len(c) >= 6:
+			width = 6
+			project6(c, v, p)
+		case len(c) >= 4:
+			width = 4
+			project4(c, v, p)
 		default:
-			project2(c[p:p+2], v, q[p:], stride)
-			p += 2
+			width = 2
+			project2(c, v, p)
+		}
+		if c = c[width:]; len(c) > 0 {
+			p = p.from(width)
 		}
 	}
 }
 
-func project8(c, v, q []float64, stride int) {
+func project8(c, v []float64, p panel) {
 	var c0, c1, c2, c3, c4, c5, c6, c7 float64
-	at := 0
-	for _, x := range v {
-		// Two slices of four: with one of eight the compiler schedules all
-		// products first and spills a running sum, at half the speed.
-		r := q[at : at+4 : at+4]
-		c0 += x * r[0]
-		c1 += x * r[1]
-		c2 += x * r[2]
-		c3 += x * r[3]
-		r = q[at+4 : at+8 : at+8]
-		c4 += x * r[0]
-		c5 += x * r[1]
-		c6 += x * r[2]
-		c7 += x * r[3]
-		at += stride
+	n := len(v)
+	q0, q1, q2, q3 := p.column(0, n), p.column(1, n), p.column(2, n), p.column(3, n)
+	q4, q5, q6, q7 := p.column(4, n), p.column(5, n), p.column(6, n), p.column(7, n)
+	for i, x := range v {
+		c0 += x * q0[i]
+		c1 += x * q1[i]
+		c2 += x * q2[i]
+		c3 += x * q3[i]
+		c4 += x * q4[i]
+		c5 += x * q5[i]
+		c6 += x * q6[i]
+		c7 += x * q7[i]
 	}
 	c[0] += c0
 	c[1] += c1
@@ -64,18 +71,18 @@ func project8(c, v, q []float64, stride int) {
 	c[7] += c7
 }
 
-func project6(c, v, q []float64, stride int) {
+func project6(c, v []float64, p panel) {
 	var c0, c1, c2, c3, c4, c5 float64
-	at := 0
-	for _, x := range v {
-		r := q[at : at+6 : at+6]
-		c0 += x * r[0]
-		c1 += x * r[1]
-		c2 += x * r[2]
-		c3 += x * r[3]
-		c4 += x * r[4]
-		c5 += x * r[5]
-		at += stride
+	n := len(v)
+	q0, q1, q2 := p.column(0, n), p.column(1, n), p.column(2, n)
+	q3, q4, q5 := p.column(3, n), p.column(4, n), p.column(5, n)
+	for i, x := range v {
+		c0 += x * q0[i]
+		c1 += x * q1[i]
+		c2 += x * q2[i]
+		c3 += x * q3[i]
+		c4 += x * q4[i]
+		c5 += x * q5[i]
 	}
 	c[0] += c0
 	c[1] += c1
@@ -85,16 +92,15 @@ func project6(c, v, q []float64, stride int) {
 	c[5] += c5
 }
 
-func project4(c, v, q []float64, stride int) {
+func project4(c, v []float64, p panel) {
 	var c0, c1, c2, c3 float64
-	at := 0
-	for _, x := range v {
-		r := q[at : at+4 : at+4]
-		c0 += x * r[0]
-		c1 += x * r[1]
-		c2 += x * r[2]
-		c3 += x * r[3]
-		at += stride
+	n := len(v)
+	q0, q1, q2, q3 := p.column(0, n), p.column(1, n), p.column(2, n), p.column(3, n)
+	for i, x := range v {
+		c0 += x * q0[i]
+		c1 += x * q1[i]
+		c2 += x * q2[i]
+		c3 += x * q3[i]
 	}
 	c[0] += c0
 	c[1] += c1
@@ -102,14 +108,13 @@ func project4(c, v, q []float64, stride int) {
 	c[3] += c3
 }
 
-func project2(c, v, q []float64, stride int) {
+func project2(c, v []float64, p panel) {
 	var c0, c1 float64
-	at := 0
-	for _, x := range v {
-		r := q[at : at+2 : at+2]
-		c0 += x * r[0]
-		c1 += x * r[1]
-		at += stride
+	n := len(v)
+	q0, q1 := p.column(0, n), p.column(1, n)
+	for i, x := range v {
+		c0 += x * q0[i]
+		c1 += x * q1[i]
 	}
 	c[0] += c0
 	c[1] += c1

@@ -14,7 +14,7 @@ func BenchmarkProject(b *testing.B) {
 			for b.Loop() {
 				for at := 0; at < len(v); at += block {
 					e := min(at+block, len(v))
-					project(c, v[at:e], q[at*k:e*k])
+					project(c, v[at:e], panel{q[at*k : e*k], e - at})
 				}
 			}
 			b.ReportMetric(float64(2*4756*k)*float64(b.N)/b.Elapsed().Seconds()/1e9, "GF/s")

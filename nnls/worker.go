@@ -107,39 +107,38 @@ func (w *batchWorker) project(f *factor, c, b []float64, missing []bool) (bb flo
 	plain := f.half == nil && missing == nil && len(f.rows) == len(b)
 	for at := 0; at < f.m; at += block {
 		end := min(at+block, f.m)
-		var v []float64
-		sum := math.NaN()
-		if plain {
-			v = b[at:end]
-			sum = sumSquares(v)
+		if plain && gaps == 0 {
+			v := b[at:end]
+			if sum := sumSquares(v); sum <= math.MaxFloat64 {
+				bb += sum
+				project(c, v, f.panel(at))
+				continue
+			}
 		}
-		if !(sum <= math.MaxFloat64) {
-			v = w.v[:end-at]
-			gaps += w.fill(v, f, at, b, missing)
-			sum = sumSquares(v)
-		}
+		v := w.v[:end-at]
+		w.fill(v, f, at, b, missing)
+		sum, n := w.mark(v, at)
 		bb += sum
-		project(c, v, f.q[at*f.stride:end*f.stride])
+		gaps += n
+		project(c, v, f.panel(at))
 	}
 	return bb, gaps
 }
 
-// fill writes W^½·b of the rows from at on into v, with 0 for missing ones, and
-// returns the number of those.
-func (w *batchWorker) fill(v []float64, f *factor, at int, b []float64, missing []bool) (gaps int) {
-	rows := f.rows[at : at+len(v)]
+// fill writes W^½·b of the rows from at on into v, NaN for missing ones.
+func (w *batchWorker) fill(v []float64, f *factor, at int, b []float64, missing []bool) {
 	if len(f.rows) == len(b) {
 		copy(v, b[at:])
 	} else {
-		for i, k := range rows {
+		for i, k := range f.rows[at : at+len(v)] {
 			v[i] = b[k]
 		}
 	}
-	for i, x := range v {
-		if x != x || (missing != nil && missing[rows[i]]) {
-			v[i] = 0
-			gaps++
-			setBit(w.gone, at+i)
+	if missing != nil {
+		for i, k := range f.rows[at : at+len(v)] {
+			if missing[k] {
+				v[i] = math.NaN()
+			}
 		}
 	}
 	if f.half != nil {
@@ -147,7 +146,22 @@ func (w *batchWorker) fill(v []float64, f *factor, at int, b []float64, missing 
 			v[i] *= h
 		}
 	}
-	return gaps
+}
+
+// mark puts 0 for NaN in v, marks those rows in gone, and returns Σ v² and their
+// number.
+func (w *batchWorker) mark(v []float64, at int) (sum float64, gaps int) {
+	odd := 0.0
+	for i, x := range v {
+		if x != x {
+			v[i] = 0
+			gaps++
+			setBit(w.gone, at+i)
+			continue
+		}
+		sum, odd = odd+x*x, sum // two running sums
+	}
+	return sum + odd, gaps
 }
 
 // sample is one right-hand side on its way through a batch.
@@ -311,7 +325,7 @@ func (w *batchWorker) projectResidual(f *factor, b, y []float64, gone []byte) fl
 			v[i] = x - dot(f.a[k*f.n:(k+1)*f.n], y)
 		}
 		square += sumSquares(v)
-		project(w.c, v, f.q[at*f.stride:end*f.stride])
+		project(w.c, v, f.panel(at))
 	}
 	return square
 }
