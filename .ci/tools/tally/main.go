@@ -2,8 +2,9 @@
 //
 //	N passed, N failed, N skipped
 //
-// for all files together. With -failures it prints the output of what failed
-// first, and says that the counts are of one run only. It fails when a test or package failed, and when no test ran.
+// for all files together. With -failures it first prints the output of what
+// failed and the time of every package and slow test, and says that the counts
+// are of one run only. It fails when a test or package failed, and when no test ran.
 package main
 
 import (
@@ -21,14 +22,15 @@ import (
 // An event is one line of test2json, or of the build messages beside it.
 type event struct {
 	Action, Package, Test, Output string
-	ImportPath, FailedBuild       string
+	ImportPath                    string
+	Elapsed                       float64 // seconds
 }
 
 // A tally counts tests (subtests too); a package that failed without a failing
 // test (it did not build, it ran out of time) counts as one failed test.
 type tally struct {
 	pass, fail, skip int
-	failures         io.Writer
+	report           io.Writer
 	output           map[string][]string // by package and test, until its end
 	failedIn         map[string]bool     // packages with a failed test
 }
@@ -39,9 +41,9 @@ func main() {
 	flag.Parse()
 	var sum tally
 	for _, name := range flag.Args() {
-		t := tally{failures: io.Discard, output: map[string][]string{}, failedIn: map[string]bool{}}
+		t := tally{report: io.Discard, output: map[string][]string{}, failedIn: map[string]bool{}}
 		if *failures {
-			t.failures = os.Stdout
+			t.report = os.Stdout
 		}
 		if err := t.read(name); err != nil {
 			log.Fatal(err)
@@ -82,6 +84,10 @@ func (t *tally) read(name string) error {
 
 func (t *tally) add(e event) {
 	key := e.ImportPath + e.Package + " " + e.Test
+	const slow = 20 // seconds
+	if (e.Action == "pass" || e.Action == "fail") && (e.Test == "" || e.Elapsed > slow) {
+		fmt.Fprintf(t.report, "%6.1f s  %s\n", e.Elapsed, key)
+	}
 	switch e.Action {
 	case "output", "build-output":
 		t.output[key] = append(t.output[key], e.Output)
@@ -96,11 +102,11 @@ func (t *tally) add(e event) {
 		}
 		delete(t.output, key)
 	case "build-fail":
-		fmt.Fprintf(t.failures, "%s", strings.Join(t.output[key], ""))
+		fmt.Fprintf(t.report, "%s", strings.Join(t.output[key], ""))
 	case "fail":
 		if e.Test != "" || !t.failedIn[e.Package] {
 			t.fail++
-			fmt.Fprintf(t.failures, "--- %s\n%s", key, strings.Join(t.output[key], ""))
+			fmt.Fprintf(t.report, "--- %s\n%s", key, strings.Join(t.output[key], ""))
 		}
 		t.failedIn[e.Package] = true
 		delete(t.output, key)
