@@ -58,8 +58,12 @@ func meanCell(out *eem.EEM, blanks []*eem.EEM, i int, known bool) {
 			variance += b.Var[i]
 		}
 	}
-	if n == 0 {
+	switch {
+	case n == 0:
 		out.Drop(i, why)
+		return
+	case math.IsInf(sum, 0):
+		out.Drop(i, eem.Saturated)
 		return
 	}
 	out.F[i], out.Why[i] = sum/n, eem.Measured
@@ -128,6 +132,7 @@ func Blank(e, blank *eem.EEM) *eem.EEM {
 	for i := range out.F {
 		if !math.IsNaN(b.F[i]) {
 			out.F[i] -= b.F[i]
+			dropInf(out, i)
 			if out.Var != nil && b.Var != nil && !math.IsNaN(b.Var[i]) {
 				out.Var[i] += b.Var[i]
 			}

@@ -56,6 +56,9 @@ func FactorsFrom(cert, scan Curve, floor float64) (*Factors, error) {
 	if floor == 0 {
 		floor = 0.01
 	}
+	if len(cert.Y) == 0 || len(scan.Y) == 0 {
+		return nil, fmt.Errorf("the certificate of %s or its scan is empty", cert.Source)
+	}
 	top := slices.Max(cert.Y)
 	var nm, c, u []float64
 	for i, want := range cert.Y {

@@ -37,6 +37,7 @@ func Offset(e *eem.EEM, counts float64) *eem.EEM {
 	fix(out)
 	for i := range out.F {
 		out.F[i] -= counts
+		dropInf(out, i)
 	}
 	out.Note(record(StepOffset, num(counts)+" counts subtracted from every cell",
 		eem.Param{Name: "offset", Value: num(counts), Unit: "counts", Source: "settings: scans.offset"}))

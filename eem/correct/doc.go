@@ -61,7 +61,8 @@ func defaultLimit(code string, limit float64) float64 {
 func num(v float64) string { return strconv.FormatFloat(v, 'g', 6, 64) }
 
 // times multiplies cell i, its variance and the shapes of its causes by f. The
-// shapes must belong to e alone (see own).
+// shapes must belong to e alone (see own). A number beyond what a float64 holds
+// is no intensity: the cell becomes missing (Saturated).
 func times(e *eem.EEM, i int, f float64) {
 	e.F[i] *= f
 	if e.Var != nil {
@@ -71,6 +72,13 @@ func times(e *eem.EEM, i int, f float64) {
 		if s := e.Causes[c].Shape; s != nil {
 			s[i] *= f
 		}
+	}
+	dropInf(e, i)
+}
+
+func dropInf(e *eem.EEM, i int) {
+	if math.IsInf(e.F[i], 0) {
+		e.Drop(i, eem.Saturated)
 	}
 }
 

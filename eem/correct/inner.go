@@ -36,10 +36,16 @@ func InnerFilter(e *eem.EEM, a *eem.Absorbance, g Geometry, limit float64) (out 
 	lost, largest := 0, 1.0
 	for i, f := range g.Factors(ax, am) {
 		here := measured(e, i)
-		if math.IsNaN(f) || math.IsInf(f, 0) {
+		if math.IsNaN(f) {
 			if here {
 				lost++
 				out.Drop(i, eem.NoAbsorbance)
+			}
+			continue
+		}
+		if math.IsInf(f, 0) { // an absorbance above 600, flagged below
+			if here {
+				out.Drop(i, eem.OverAbsorbing)
 			}
 			continue
 		}
@@ -55,7 +61,8 @@ func InnerFilter(e *eem.EEM, a *eem.Absorbance, g Geometry, limit float64) (out 
 			"%d cells lie outside the absorbance spectrum (%g–%g nm) and were left out; measure the absorbance over ex %g–%g nm and em %g–%g nm",
 			lost, a.Axis.First(), a.Axis.Last(), e.Ex.First(), e.Ex.Last(), e.Em.First(), e.Em.Last())))
 	}
-	noteOver(out, overAbsorbing(out, ax, am, g.path(), limit), limit)
+	noteOver(out, overAbsorbing(e, ax, am, g.path(), limit), limit)
+	noteNegative(out, a)
 	return out, factor
 }
 
@@ -121,6 +128,24 @@ func noteOver(e *eem.EEM, o over, limit float64) {
 	e.Note(finding(StepInner, "absorbance-limit", o.total, limit, fmt.Sprintf(
 		"total absorbance reaches %.3g at ex %g / em %g nm (limit %s), %d cells are above the limit; dilute the scanned liquid at least %.2g-fold and measure again",
 		o.total, o.ex, o.em, num(limit), len(o.cells), math.Ceil(10*o.total/limit)/10)))
+}
+
+// noteNegative flags an absorbance spectrum that falls well below zero where the
+// EEM lies: its baseline is off, and so is the correction.
+func noteNegative(e *eem.EEM, a *eem.Absorbance) {
+	limit := defaultLimit("absorbance-negative", 0)
+	lowest, at := 0.0, 0.0
+	for _, ax := range []eem.Axis{e.Ex, e.Em} {
+		for i := range ax.Len() {
+			if v := a.PerCM(ax.At(i)); v < lowest {
+				lowest, at = v, ax.At(i)
+			}
+		}
+	}
+	if lowest < -limit {
+		e.Note(finding(StepInner, "absorbance-negative", lowest, -limit, fmt.Sprintf(
+			"the absorbance falls to %s per cm at %g nm; measure its baseline again, with pure water in the cell", num(lowest), at)))
+	}
 }
 
 // params describes the geometry in a note.

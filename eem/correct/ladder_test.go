@@ -1,7 +1,6 @@
 package correct_test
 
 import (
-	"fmt"
 	"math"
 	"math/rand/v2"
 	"testing"
@@ -62,7 +61,7 @@ func ladderStep(t *testing.T, out, truth *eem.EEM, a *eem.Absorbance) (worst, la
 			d := math.Abs(out.At(j, k)/truth.At(j, k) - 1)
 			worst = max(worst, d)
 			if t != nil && d > 0.02 {
-				t.Fatal(fmt.Sprintf("ex %g / em %g, total absorbance %.2f: off by %.2f %%", ex, em, total, 100*d))
+				t.Fatalf("ex %g / em %g, total absorbance %.2f: off by %.2f %%", ex, em, total, 100*d)
 			}
 		}
 	}

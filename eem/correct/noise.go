@@ -155,8 +155,8 @@ func fitGroups(level, variance []float64, dof float64, n int) (Noise, error) {
 			break
 		}
 	}
-	if !(a+b > 2*tiny) {
-		return Noise{}, errors.New("the scans show no noise at all; were they averaged or made up?")
+	if !(a+b > 2*tiny) || math.IsInf(a+b, 0) {
+		return Noise{}, errors.New("the scans show no noise that a detector has; were they averaged or made up?")
 	}
 	return Noise{Read: math.Sqrt(a), Shot: b}, nil
 }

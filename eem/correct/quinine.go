@@ -47,7 +47,7 @@ func Quinine(standards []*eem.EEM, microg []float64, exNM, emNM float64) (Quinin
 		}
 		cf, cc = cf+microg[i]*f[i], cc+microg[i]*microg[i]
 	}
-	if q.Slope = cf / cc; !(q.Slope > 0) {
+	if q.Slope = cf / cc; !usable(q.Slope) {
 		return q, fmt.Errorf("the quinine standards do not grow with concentration (slope %s at ex %g / em %g nm)", num(q.Slope), exNM, emNM)
 	}
 	if q.N > 1 {

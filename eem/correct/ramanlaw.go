@@ -34,7 +34,7 @@ func RamanLaw(blank *eem.EEM, refNM, exponent float64) ([]RamanRatio, error) {
 	if err != nil {
 		return nil, err
 	}
-	if !(ref > 0) {
+	if !usable(ref) {
 		return nil, fmt.Errorf("the Raman area at ex %g nm is %s; a blank with light in it has a positive one", refNM, num(ref))
 	}
 	var out []RamanRatio

@@ -36,7 +36,7 @@ func Area(blank *eem.EEM, exNM float64, window [2]float64, baseline string) (flo
 		return 0, fmt.Errorf("baseline %q is unknown; use %s or %s", baseline, NoBaseline, StraightBaseline)
 	}
 	if !(window[0] < window[1]) {
-		return 0, fmt.Errorf("Raman window %g–%g nm is empty", window[0], window[1])
+		return 0, fmt.Errorf("the Raman window %g–%g nm is empty", window[0], window[1])
 	}
 	if !blank.Ex.Covers(exNM) {
 		return 0, fmt.Errorf("the blank was not excited at %g nm (it has %s)", exNM, blank.Ex)
@@ -111,7 +111,7 @@ func Areas(blanks []*eem.EEM, exNM float64, window [2]float64, baseline string) 
 		areas[i] = a
 		r.Area += a / float64(len(blanks))
 	}
-	if !(r.Area > 0) {
+	if !usable(r.Area) {
 		return RamanArea{}, fmt.Errorf("the Raman area at ex %g nm is %s; a blank with light in it has a positive one", exNM, num(r.Area))
 	}
 	if n := float64(len(blanks)); n > 1 {
@@ -123,6 +123,10 @@ func Areas(blanks []*eem.EEM, exNM float64, window [2]float64, baseline string) 
 	}
 	return r, nil
 }
+
+// usable says whether one can divide by v: it is positive and neither it nor its
+// inverse beyond what a float64 holds.
+func usable(v float64) bool { return v > 0 && !math.IsInf(v, 0) && !math.IsInf(1/v, 0) }
 
 // RamanUnits divides e by the Raman area: intensities in Raman units, nm⁻¹. A
 // known uncertainty of the area becomes the cause "intensity scale" of the batch.
@@ -139,14 +143,15 @@ func RamanUnits(e *eem.EEM, r RamanArea, batch string) *eem.EEM {
 	return out
 }
 
-// Scale multiplies e by by (> 0), calls the result unit and appends note.
-func Scale(e *eem.EEM, by float64, unit eem.Unit, note eem.Note) *eem.EEM {
-	if !(by > 0) || math.IsInf(by, 0) {
-		panic(fmt.Sprintf("correct: scale %g", by))
+// Scale multiplies e by f (> 0), calls the result unit and appends note. It panics
+// on another f.
+func Scale(e *eem.EEM, f float64, unit eem.Unit, note eem.Note) *eem.EEM {
+	if !(f > 0) || math.IsInf(f, 0) {
+		panic(fmt.Sprintf("correct: scale %g", f))
 	}
 	out := own(e)
 	for i := range out.F {
-		times(out, i, by)
+		times(out, i, f)
 	}
 	out.Unit = unit
 	out.Note(note)

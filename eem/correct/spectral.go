@@ -50,7 +50,7 @@ func (f *Factors) On(ax eem.Axis) (factor, rel []float64) {
 	factor, rel = make([]float64, ax.Len()), make([]float64, ax.Len())
 	var fb interp.FritschButland
 	if f.Axis.Len() > 1 {
-		fb.Fit(f.Axis.Values(), f.Factor) // always nil; panics only on what NewFactors rejects
+		_ = fb.Fit(f.Axis.Values(), f.Factor) // always nil; panics only on what NewFactors rejects
 	}
 	for i := range ax.Len() {
 		nm := ax.At(i)
@@ -88,7 +88,7 @@ func Spectral(e *eem.EEM, ex, em *Factors) *eem.EEM {
 	for j := range fx {
 		for k := range fm {
 			i, f := e.Index(j, k), fx[j]*fm[k]
-			if !math.IsNaN(f) {
+			if !math.IsNaN(f) && !math.IsInf(f, 0) {
 				times(out, i, f)
 				continue
 			}

@@ -21,6 +21,7 @@ func Absorption(a *eem.Absorbance, docMgL float64) []Index {
 	}
 	for i := range out {
 		out[i].U = math.NaN()
+		out[i] = settled(out[i])
 	}
 	return out
 }

@@ -253,7 +253,7 @@ func readScans(t *testing.T, dir string) *eem.EEM {
 			if n, _ := fmt.Sscanf(line, "%g\t%g", &x, &y); n == 2 {
 				em, s.F = append(em, x), append(s.F, y)
 			} else {
-				fmt.Sscanf(line, "Excitation\t%g nm", &s.Ex)
+				_, _ = fmt.Sscanf(line, "Excitation\t%g nm", &s.Ex)
 			}
 		}
 		s.Em = axis(t, em)

@@ -82,6 +82,17 @@ func (s spec) index(e *eem.EEM) Index {
 		return ix
 	}
 	ix.Value, ix.U = v.v, v.uncertainty(e)
+	return settled(ix)
+}
+
+// settled sees to it that an index has a number or a reason, not both.
+func settled(ix Index) Index {
+	if ix.Refused == "" && (math.IsNaN(ix.Value) || math.IsInf(ix.Value, 0)) {
+		ix.Refused = fmt.Sprintf("it comes out as %g", ix.Value)
+	}
+	if ix.Refused != "" {
+		ix.Value, ix.U = math.NaN(), math.NaN()
+	}
 	return ix
 }
 

@@ -53,6 +53,7 @@ func Regions(e *eem.EEM) []Index {
 		if out[n].Refused = refused; refused == "" {
 			out[n].Value = 100 * means[n] / total
 		}
+		out[n] = settled(out[n])
 	}
 	return out
 }

@@ -96,7 +96,7 @@ func bridge(em eem.Axis, row []float64, why []eem.Reason, from, to int) {
 		}
 	}
 	var fb interp.FritschButland
-	fb.Fit(x, y) // always nil; the nodes are finite and increase
+	_ = fb.Fit(x, y) // always nil; the nodes are finite and increase
 	for k := from; k < to; k++ {
 		if v := fb.Predict(em.At(k)); !math.IsNaN(v) && !math.IsInf(v, 0) { // values near 1e308 overflow
 			row[k] = v
