@@ -13,10 +13,14 @@ type als struct {
 	dampB, dampC []bool    // entries the ridge stays on; nil: all, as at the start
 	kt           []float64 // F × P: model rows, weighted
 	z            []float64 // F × P: A'X
+	zc           []float64 // P × F: the same, weighted
 	m            []float64 // I × F: X·K
 	rk, coef     []float64 // (r+raw) × F
+	part         []float64 // scratch of a basis: scores, and F × r
+	col          []float64 // K: one column of c
 	ga, gk, gap  []float64
-	h, q         []float64 // one row's normal equations
+	hs, qs       []float64 // normal equations of one mode
+	h, q, inv    []float64 // one row's
 	lam          []float64 // F: ridge on the columns of the mode in work, and
 	lamDamped    []float64 // F: what is added to it on damped entries
 	loss         float64   // penalised, after the last update of a
@@ -25,21 +29,26 @@ type als struct {
 }
 
 func newALS(d *data, f int, s *Settings) *als {
-	n := d.r + len(d.raw)
+	n, long, r := d.r+len(d.raw), max(d.j, d.k), 0
+	for _, b := range d.bases {
+		r = max(r, len(b.rows))
+	}
 	return &als{
 		data: d, f: f, free: s.Unconstrained, eps: energyRidge,
 		a: make([]float64, d.i*f), b: make([]float64, d.j*f), c: make([]float64, d.k*f),
-		kt: make([]float64, f*d.p), z: make([]float64, f*d.p), m: make([]float64, d.i*f),
-		rk: make([]float64, n*f), coef: make([]float64, n*f),
+		kt: make([]float64, f*d.p), z: make([]float64, f*d.p), zc: make([]float64, f*d.p), m: make([]float64, d.i*f),
+		rk: make([]float64, n*f), coef: make([]float64, n*f), part: make([]float64, (d.i+r)*f), col: make([]float64, d.k),
 		ga: make([]float64, f*f), gk: make([]float64, f*f), gap: make([]float64, len(d.gapCell)*f*f),
-		h: make([]float64, f*f), q: make([]float64, f), lam: make([]float64, f), lamDamped: make([]float64, f),
+		hs: make([]float64, long*f*f), qs: make([]float64, long*f),
+		h: make([]float64, f*f), q: make([]float64, f), inv: make([]float64, f),
+		lam: make([]float64, f), lamDamped: make([]float64, f),
 	}
 }
 
 // modelRows sets kt to the weighted Khatri–Rao rows of the cells and gk to their
 // Gram matrix.
 func (s *als) modelRows() {
-	col := make([]float64, s.k)
+	col := s.col
 	for f := range s.f {
 		for k := range col {
 			col[k] = s.c[k*s.f+f]
@@ -69,8 +78,10 @@ func (s *als) updateA(sweeps int) {
 	s.loss = s.x2
 	gi := make([]float64, f*f)
 	copy(gi, s.gk)
-	for _, i := range s.mixed {
-		s.updateScores(i, s.gk, sweeps)
+	for _, b := range s.bases {
+		for _, i := range b.samples {
+			s.updateScores(i, s.gk, sweeps)
+		}
 	}
 	for _, i := range s.raw {
 		g := s.gk
@@ -116,12 +127,17 @@ func (s *als) gramTo(g []float64, i int) {
 func (s *als) products() {
 	f := s.f
 	rowsTimesTo(s.rk, s.rows, s.kt, f)
-	for n, i := range s.mixed {
-		m := s.m[i*f : (i+1)*f]
-		clear(m)
-		rk := s.rk[s.uAt[n]*f:]
-		for r, u := range s.u[n] {
-			axpy(u, rk[r*f:(r+1)*f], m)
+	for n, b := range s.bases { // m = U·(R·K)
+		r := len(b.rows)
+		rkt, m := s.part[:f*r], s.part[f*r:]
+		for q := range r {
+			for x := range f {
+				rkt[x*r+q] = s.rk[(s.at[n]+q)*f+x]
+			}
+		}
+		rowsTimesTo(m, b.u, rkt, f)
+		for q, i := range b.samples {
+			copy(s.m[i*f:(i+1)*f], m[q*f:])
 		}
 	}
 	for n, i := range s.raw {
@@ -211,10 +227,18 @@ func columnSquare(x []float64, n, f, col int) float64 {
 func (s *als) project() {
 	f := s.f
 	clear(s.coef)
-	for n, i := range s.mixed {
-		coef := s.coef[s.uAt[n]*f:]
-		for r, u := range s.u[n] {
-			axpy(u, s.a[i*f:(i+1)*f], coef[r*f:(r+1)*f])
+	for n, b := range s.bases { // (A'U)·R
+		r := len(b.rows)
+		coef, a := s.part[:f*r], s.part[f*r:]
+		for q, i := range b.samples {
+			copy(a[q*f:(q+1)*f], s.a[i*f:])
+		}
+		clear(coef)
+		addTransposed(coef, a, b.u, f)
+		for q := range r {
+			for x := range f {
+				s.coef[(s.at[n]+q)*f+x] = coef[x*r+q]
+			}
 		}
 	}
 	for n, i := range s.raw {
@@ -222,6 +246,11 @@ func (s *als) project() {
 	}
 	clear(s.z)
 	addTransposed(s.z, s.coef, s.rows, f)
+	for x := range f {
+		for q, v := range s.z[x*s.p : (x+1)*s.p] {
+			s.zc[q*f+x] = s.w[q] * v
+		}
+	}
 	gramTo(s.ga, s.a, s.i, f)
 	clear(s.gap)
 	for n := range s.gapCell {
@@ -238,13 +267,13 @@ func (s *als) project() {
 // updateB and updateC solve for one row of loadings after the other.
 func (s *als) updateB(sweeps int) {
 	s.ridgeB()
-	hs, qs := s.normal(s.j, s.c, s.atB)
+	hs, qs := s.normal(s.modeB())
 	s.updateRows(s.b, hs, qs, s.fixB, s.dampB, sweeps)
 }
 
 func (s *als) updateC(sweeps int) {
 	s.ridgeC()
-	hs, qs := s.normal(s.k, s.b, s.atC)
+	hs, qs := s.normal(s.modeC())
 	s.updateRows(s.c, hs, qs, s.fixC, s.dampC, sweeps)
 }
 
@@ -256,19 +285,34 @@ func (s *als) updateRows(x, hs, qs []float64, fixed, damped []bool, sweeps int) 
 	}
 }
 
-// normal gives, for each row of one mode of length n, H = (A'A) ∘ Σ w² o o'
-// less the gaps, and Σ w z o, over the cells of that row, where o is the row of
-// the other mode.
-func (s *als) normal(n int, other []float64, at func(q int) (row, o int)) (hs, qs []float64) {
+// mode is one of b and c as the updates see it: which row of it and which of
+// the other a cell belongs to, and the cells by row.
+type mode struct {
+	rows     int
+	other    []float64
+	row, oth []int32
+}
+
+func (s *als) modeB() mode { return mode{s.j, s.c, s.cj, s.ck} }
+func (s *als) modeC() mode { return mode{s.k, s.b, s.ck, s.cj} }
+
+// normal gives, for each row of one mode, H = (A'A) ∘ Σ w² o o' less the gaps,
+// and Σ w z o, over the cells of that row, where o is the row of the other mode.
+// They are valid until the next call.
+func (s *als) normal(m mode) (hs, qs []float64) {
 	f := s.f
-	hs, qs = s.sums(n, other, at)
-	for i := range hs {
-		hs[i] *= s.ga[i%(f*f)]
+	hs, qs = s.hs[:m.rows*f*f], s.qs[:m.rows*f]
+	s.sumsTo(hs, qs, m)
+	for at := 0; at < len(hs); at += f * f {
+		h := hs[at : at+f*f]
+		for i, g := range s.ga {
+			h[i] *= g
+		}
 	}
-	for m, q := range s.gapCell {
-		r, o := at(int(q))
-		v, w := other[o*f:(o+1)*f], s.w[q]
-		h, g := hs[r*f*f:(r+1)*f*f], s.gap[m*f*f:(m+1)*f*f]
+	for n, q := range s.gapCell {
+		r, o := int(m.row[q]), int(m.oth[q])
+		v, w := m.other[o*f:(o+1)*f], s.w[q]
+		h, g := hs[r*f*f:(r+1)*f*f], s.gap[n*f*f:(n+1)*f*f]
 		for x, vx := range v {
 			for y, vy := range v {
 				h[x*f+y] -= w * w * vx * vy * g[x*f+y]
@@ -278,31 +322,31 @@ func (s *als) normal(n int, other []float64, at func(q int) (row, o int)) (hs, q
 	return hs, qs
 }
 
-// sums returns Σ w² o o', n × F × F, and Σ w z o, n × F, over the cells of each
-// row.
-func (s *als) sums(n int, other []float64, at func(q int) (row, o int)) (ss, qs []float64) {
+// sumsTo writes Σ w² o o', rows × F × F, and Σ w z o, rows × F, over the cells of
+// each row.
+func (s *als) sumsTo(ss, qs []float64, m mode) {
 	f := s.f
-	ss, qs = make([]float64, n*f*f), make([]float64, n*f)
-	for q := range s.p {
-		r, o := at(q)
-		v, h, rhs := other[o*f:(o+1)*f], ss[r*f*f:(r+1)*f*f], qs[r*f:(r+1)*f]
-		w := s.w[q]
+	clear(ss)
+	clear(qs)
+	for q, r := range m.row {
+		o := int(m.oth[q])
+		w2 := s.w[q] * s.w[q]
+		v := m.other[o*f : (o+1)*f]
+		z, rhs := s.zc[q*f : (q+1)*f][:len(v)], qs[int(r)*f : (int(r)+1)*f][:len(v)]
+		h := ss[int(r)*f*f : (int(r)+1)*f*f]
 		for x, vx := range v {
-			rhs[x] += w * vx * s.z[x*s.p+q]
-			t := w * w * vx
-			for y := x; y < f; y++ {
-				h[x*f+y] += t * v[y]
+			rhs[x] += vx * z[x]
+			t := w2 * vx
+			to := h[x*f:][:len(v)]
+			for y := x; y < len(v); y++ {
+				to[y] += t * v[y]
 			}
 		}
 	}
-	for r := range n {
+	for r := range m.rows {
 		mirror(ss[r*f*f:(r+1)*f*f], f)
 	}
-	return ss, qs
 }
-
-func (s *als) atB(q int) (row, o int) { return int(s.cj[q]), int(s.ck[q]) }
-func (s *als) atC(q int) (row, o int) { return int(s.ck[q]), int(s.cj[q]) }
 
 // solveRow lowers ½ v'(h+Λ)v − q'v by sweeps over the entries of v that are
 // not fixed, each set to its best non-negative value; a sign-free row is solved
@@ -311,31 +355,38 @@ func (s *als) solveRow(v, h, q, lam []float64, fixed []bool, at, sweeps int) {
 	if s.free && s.solveFree(v, h, q, lam, fixed, at) {
 		return
 	}
-	f := s.f
-	for range sweeps {
-		moved := false
-		for x := range f {
-			d := h[x*f+x] + lam[x]
-			if d <= 0 || (fixed != nil && fixed[at+x]) {
-				continue
-			}
-			g := q[x] - lam[x]*v[x]
-			for y, hv := range h[x*f : (x+1)*f] {
-				g -= hv * v[y]
-			}
-			to := v[x] + g/d
-			if to < 0 && !s.free {
-				to = 0
-			}
-			if math.Abs(to-v[x]) > 1e-15*math.Abs(to) {
-				moved = true
-			}
-			v[x] = to
+	inv := s.inv
+	for x := range v {
+		inv[x] = 0
+		if d := h[x*len(v)+x] + lam[x]; d > 0 && (fixed == nil || !fixed[at+x]) {
+			inv[x] = 1 / d
 		}
-		if !moved {
+	}
+	for range sweeps {
+		if !sweep(v, h, q, lam, inv, s.free) {
 			return
 		}
 	}
+}
+
+// sweep sets each entry of v in turn to its best value. It says whether one
+// moved by more than 1e-5 of the largest.
+func sweep(v, h, q, lam, inv []float64, free bool) bool {
+	var most, moved float64
+	f := len(v)
+	for x := range v {
+		g := q[x] - lam[x]*v[x]
+		for y, hv := range h[x*f : x*f+f] {
+			g -= hv * v[y]
+		}
+		to := v[x] + g*inv[x]
+		if to < 0 && !free {
+			to = 0
+		}
+		most, moved = max(most, math.Abs(to)), max(moved, math.Abs(to-v[x]))
+		v[x] = to
+	}
+	return moved > 1e-5*most
 }
 
 // solveFree solves (h+Λ)v = q over the entries that are not fixed.

@@ -133,7 +133,7 @@ type model struct {
 // optima that random starts miss (NUMERICS 2f).
 func (pr *prepared) descend(ctx context.Context, c *eem.Cube, from, to int, set *Settings, ch *Choice) ([]*model, error) {
 	models := make([]*model, to-from+1)
-	var above *als
+	above := &als{} // none: the largest number starts from random alone
 	for f := to; f >= from; f-- {
 		set.Progress(to-f, to-from+1, fmt.Sprintf("%d components", f))
 		all, err := runStarts(ctx, pr.all, f, set, above)

@@ -105,9 +105,7 @@ func orthonormal(y []float64, n, r int) {
 func (p *problem) stacked(bases []*basis, raw []int) *data {
 	d := &data{problem: p, raw: raw}
 	for _, b := range bases {
-		for n, i := range b.samples {
-			d.mixed, d.u, d.uAt = append(d.mixed, i), append(d.u, b.u[n]), append(d.uAt, len(d.rows))
-		}
+		d.bases, d.at = append(d.bases, b), append(d.at, len(d.rows))
 		d.rows = append(d.rows, b.rows...)
 		d.x2 += b.x2
 	}

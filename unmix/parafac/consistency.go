@@ -125,7 +125,7 @@ func (s *als) coreConsistency() float64 {
 			axpy(pa[g*s.i+i], r, e[g*s.p:(g+1)*s.p])
 		}
 	}
-	return consistency(e, pseudoInverse(s.b, s.j, s.f), pseudoInverse(s.c, s.k, s.f), s.j, s.k, s.f, s.atB)
+	return consistency(e, pseudoInverse(s.b, s.j, s.f), pseudoInverse(s.c, s.k, s.f), s.j, s.k, s.f, func(q int) (int, int) { return int(s.cj[q]), int(s.ck[q]) })
 }
 
 // tripleCosine returns the cosine of largest size between two components,
@@ -143,6 +143,12 @@ func (s *als) tripleCosine() (float64, [2]int) {
 		}
 	}
 	return most, pair
+}
+
+// shared says whether two components are one.
+func (s *als) shared() bool {
+	t, _ := s.tripleCosine()
+	return t > sharedTriple && !s.free
 }
 
 // structure is the mean correlation of neighbouring residuals, along emission

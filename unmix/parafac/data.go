@@ -1,15 +1,13 @@
 package parafac
 
 // data is what an iteration touches instead of the samples: rows of length P.
-// The first r rows are bases of the samples in mixed: the row of mixed[n] is
-// about u[n]·rows[uAt[n]:]. The rows after them are the samples in raw, as they
-// are. Without compression r is 0 and every sample is raw.
+// The first r rows are bases; those after them are the samples in raw, as they
+// are. Without compression there is no basis and every sample is raw.
 type data struct {
 	*problem
 	r     int
-	u     [][]float64
-	uAt   []int
-	mixed []int
+	bases []*basis
+	at    []int // first row of each basis
 	raw   []int
 	rows  [][]float64 // (r + len(raw)) × P
 	x2    float64     // sum of squares of the samples

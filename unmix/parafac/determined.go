@@ -15,10 +15,10 @@ func (s *als) resolution() (rb, rc []float64) {
 	s.modelRows()
 	s.project()
 	s.ridgeB()
-	hs, _ := s.normal(s.j, s.c, s.atB)
+	hs, _ := s.normal(s.modeB())
 	rb = s.resolutionOf(hs, s.j)
 	s.ridgeC()
-	hs, _ = s.normal(s.k, s.b, s.atC)
+	hs, _ = s.normal(s.modeC())
 	return rb, s.resolutionOf(hs, s.k)
 }
 

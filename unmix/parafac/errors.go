@@ -3,6 +3,7 @@ package parafac
 import (
 	"math"
 
+	"gonum.org/v1/gonum/blas"
 	"gonum.org/v1/gonum/blas/blas64"
 	"gonum.org/v1/gonum/lapack/lapack64"
 )
@@ -16,32 +17,40 @@ type influence struct {
 	d []float64 // I × n
 }
 
-// influence needs a factored H at the optimum.
+// influence needs a factored H at the optimum. Without one, or when two
+// components share one so that errors mean nothing, all moves are zero.
 func (n *newton) influence() *influence {
 	m := len(n.theta)
 	in := &influence{newton: n, d: make([]float64, n.i*m)}
-	if m == 0 || n.chol.N != m {
+	if m == 0 || n.chol.N != m || n.shared() {
 		return in
 	}
-	gt := make([]float64, m*n.i)
-	for i := range n.i {
-		for x, g := range n.sampleGradient(i) {
-			gt[x*n.i+i] = g
+	// A sample's residual is smaller for its having been fitted; the factor
+	// brings the first order to what leaving out one sample gives.
+	grow := math.Sqrt(float64(n.i) / math.Max(1, float64(n.i-n.f)))
+	lapack64.Potri(n.triangle()) // in place: chol is not a factor any more
+	inv := blas64.General{Rows: m, Cols: m, Stride: m, Data: n.chol.Data}
+	for r := range m {
+		for c := range r {
+			inv.Data[r*m+c] = inv.Data[c*m+r]
 		}
 	}
-	lapack64.Potrs(n.triangle(), blas64.General{Rows: m, Cols: n.i, Stride: n.i, Data: gt})
-	// A sample's residual is smaller for its having been fitted.
-	grow := math.Sqrt(float64(n.i) / math.Max(1, float64(n.i-n.f)))
-	for x := range m {
-		for i := range n.i {
-			in.d[i*m+x] = gt[x*n.i+i] * grow
+	const batch = 256
+	g := make([]float64, batch*m)
+	for at := 0; at < n.i; at += batch {
+		rows := min(batch, n.i-at)
+		for i := range rows {
+			n.sampleGradientTo(g[i*m:(i+1)*m], at+i)
 		}
+		blas64.Gemm(blas.NoTrans, blas.NoTrans, grow, blas64.General{Rows: rows, Cols: m, Stride: m, Data: g}, inv,
+			0, blas64.General{Rows: rows, Cols: m, Stride: m, Data: in.d[at*m:]})
 	}
 	return in
 }
 
-// sampleGradient is the part of the gradient that sample i brings, over theta.
-func (n *newton) sampleGradient(i int) []float64 {
+// sampleGradientTo writes the part of the gradient that sample i brings, over
+// theta.
+func (n *newton) sampleGradientTo(dst []float64, i int) {
 	f := n.f
 	full := make([]float64, len(n.at))
 	r := n.residualOf(i)
@@ -56,11 +65,9 @@ func (n *newton) sampleGradient(i int) []float64 {
 			gc[x] -= e * v * b[x]
 		}
 	}
-	out := make([]float64, len(n.theta))
 	for x, e := range n.theta {
-		out[x] = full[e]
+		dst[x] = full[e]
 	}
-	return out
 }
 
 // loadingSE returns the standard errors of b and of c at unit norm.
@@ -168,7 +175,8 @@ func (in *influence) gapSlope(kd []float64, i, l int) {
 
 // tell fills in what the result says about errors: standard errors, what is
 // determined, leverage and influence.
-func (in *influence) tell(r *Result) {
+func (n *newton) tell(r *Result) {
+	in := n.influence()
 	f := in.f
 	sb, sc := in.loadingSE()
 	peakB, peakC := make([]int, f), make([]int, f)

@@ -86,7 +86,7 @@ func conclude(ctx context.Context, c *eem.Cube, p *problem, all []*outcome, set 
 	s.take(best)
 	n := s.newton()
 	steps := newtonSteps
-	if t, _ := s.tripleCosine(); t > sharedTriple && !s.free {
+	if s.shared() {
 		steps = 0
 	}
 	if err := n.finish(ctx, steps); err != nil {
@@ -98,7 +98,7 @@ func conclude(ctx context.Context, c *eem.Cube, p *problem, all []*outcome, set 
 	if n.delta <= certified {
 		r.Status = Converged
 	}
-	n.influence().tell(r)
+	n.tell(r)
 	return r, s, nil
 }
 
@@ -118,7 +118,8 @@ type outcome struct {
 }
 
 // runStarts screens all starts and lets the best go on. Beyond the random ones
-// there is one for each component of the model above, if any, without it.
+// there is one for each component of the model above, if any, without it; a start
+// that shares one component between two is then not worth going on with.
 func runStarts(ctx context.Context, d *data, f int, set *Settings, above *als) ([]*outcome, error) {
 	more := 0
 	if above != nil {
@@ -152,8 +153,8 @@ func runStarts(ctx context.Context, d *data, f int, set *Settings, above *als) (
 	err = parallel(ctx, set, len(best), "best starts", func(n int) (err error) {
 		o := best[n]
 		o.kept = true
-		if !o.converged {
-			o.converged, err = o.s.iterate(ctx, set.Tol, max(0, set.MaxIter-o.s.iter))
+		for !o.converged && o.s.iter < set.MaxIter && err == nil && !(above != nil && o.s.shared()) {
+			o.converged, err = o.s.iterate(ctx, set.Tol, min(2*screenIter, set.MaxIter-o.s.iter))
 		}
 		return err
 	})

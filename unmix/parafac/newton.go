@@ -64,10 +64,10 @@ func (n *newton) sse() float64 {
 func (n *newton) gradient() {
 	n.exactScores()
 	n.project()
-	hb, qb := n.normal(n.j, n.c, n.atB)
-	hc, qc := n.normal(n.k, n.b, n.atC)
+	hb, qb := n.normal(n.modeB())
 	n.ridgeB()
 	n.half(n.b, hb, qb, n.dampB, 0)
+	hc, qc := n.normal(n.modeC())
 	n.ridgeC()
 	n.half(n.c, hc, qc, n.dampC, n.nb)
 	n.theta = n.theta[:0]
@@ -93,9 +93,9 @@ func (n *newton) half(x, hs, qs []float64, damped []bool, from int) {
 		}
 	}
 	if from == 0 {
-		n.hb = hs
+		n.hb = append(n.hb[:0], hs...)
 	} else {
-		n.hc = hs
+		n.hc = append(n.hc[:0], hs...)
 	}
 }
 
@@ -196,10 +196,10 @@ func (n *newton) diagonal(hs []float64, rows, from int) {
 
 // derivatives sets mb and mc: (j,f) × g holds Σ_k w² c_kf c_kg b_jg.
 func (n *newton) derivatives() {
-	sb, _ := n.sums(n.j, n.c, n.atB)
-	sc, _ := n.sums(n.k, n.b, n.atC)
-	n.mb, n.mc = sb, sc
 	f := n.f
+	n.mb, n.mc = make([]float64, n.j*f*f), make([]float64, n.k*f*f)
+	n.sumsTo(n.mb, n.qs[:n.j*f], n.modeB())
+	n.sumsTo(n.mc, n.qs[:n.k*f], n.modeC())
 	for r, x := range n.mb {
 		n.mb[r] = x * n.b[r/(f*f)*f+r%f]
 	}

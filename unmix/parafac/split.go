@@ -34,7 +34,7 @@ func (pr *prepared) halvings(ctx context.Context, groups [][]int, sp *Splits, se
 			a, b := q[2*side], q[2*side+1]
 			h.rows[side] = merged(pr.quarter[a], pr.quarter[b])
 			if pr.part != nil {
-				h.data[side] = pr.halfOf(h.rows[side], pr.part[a], pr.part[b])
+				h.data[side] = pr.halfOf(set, h.rows[side], pr.part[a], pr.part[b])
 			}
 		}
 		out = append(out, h)
@@ -63,8 +63,8 @@ func merged(a, b []int) []int {
 	return m
 }
 
-// halfOf is the data of two quarters, as bases of their own side by side.
-func (pr *prepared) halfOf(rows []int, parts ...*basis) *data {
+// halfOf is the data of two quarters, compressed once more together.
+func (pr *prepared) halfOf(set *Settings, rows []int, parts ...*basis) *data {
 	sub := pr.subset(rows)
 	var bases []*basis
 	for _, b := range parts {
@@ -75,7 +75,8 @@ func (pr *prepared) halfOf(rows []int, parts ...*basis) *data {
 		}
 		bases = append(bases, &c)
 	}
-	return sub.stacked(bases, sub.beside(bases))
+	beside := sub.beside(bases)
+	return sub.stacked([]*basis{merge(bases, basisRank, set.Seed)}, beside)
 }
 
 // beside lists the rows that no basis holds.
