@@ -108,7 +108,7 @@ var widths = map[string]float64{"id": 18, "kind": 12, "scans": 34, "absorbance":
 // ids and names are text, so that 001 stays 001 and 3-4 does not become a date.
 func WriteSheetXLSX(w io.Writer, s *Sheet) (err error) {
 	f := excelize.NewFile()
-	defer f.Close() //nolint:errcheck // nothing was opened
+	defer f.Close()
 	b := book{f: f, name: "run sheet", d: newDraft(s)}
 	if err := f.SetSheetName("Sheet1", b.name); err != nil {
 		return err

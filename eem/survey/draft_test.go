@@ -91,7 +91,7 @@ func TestDraftedWorkbook(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	defer f.Close() //nolint:errcheck // read only
+	defer f.Close()
 	name := f.GetSheetName(0)
 	for cell, want := range map[string]string{"A1": "id", "A2": "001", "B2": "sample", "L1": "dilution", "L2": "2.5"} {
 		if got, err := f.GetCellValue(name, cell, excelize.Options{RawCellValue: true}); err != nil || got != want {
@@ -132,7 +132,7 @@ func TestDraftedWorkbook(t *testing.T) {
 func workbook(t *testing.T, cells map[string]any, change func(f *excelize.File, sheet string)) string {
 	t.Helper()
 	f := excelize.NewFile()
-	defer f.Close() //nolint:errcheck // nothing was opened
+	defer f.Close()
 	for at, v := range cells {
 		if err := f.SetCellValue("Sheet1", at, v); err != nil {
 			t.Fatal(err)

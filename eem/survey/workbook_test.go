@@ -61,6 +61,28 @@ func TestWorkbook(t *testing.T) {
 	}
 }
 
+// TestOtherSpreadsheet reads a workbook that LibreOffice made of formulas.csv, and
+// finds what its formulas and dates amount to.
+func TestOtherSpreadsheet(t *testing.T) {
+	data, err := os.ReadFile(testdata + "/formulas.xlsx")
+	must(t, err)
+	s, err := readTable("runsheet.xlsx", data)
+	must(t, err)
+	if len(s.Rows) != 3 {
+		t.Fatalf("%d rows, want 3", len(s.Rows))
+	}
+	w, a, b := s.Rows[0], s.Rows[1], s.Rows[2]
+	if w.Measured.Text != "2026-05-03T09:30:00" || w.Measured.DateOnly {
+		t.Errorf("measured %+v", w.Measured)
+	}
+	if a.Dilution != 10 || a.Conc[0].Value != 0.333 || a.Measured.Text != "2026-05-03" || a.Sampled.Text != "2026-05-01" {
+		t.Errorf("T1: %+v", a)
+	}
+	if b.Dilution != 2.5 || b.Conc[0].Value != 0.666 || b.Site != "Mill weir" || b.Sampled.Day() != "2026-05-02" {
+		t.Errorf("T2: %+v", b)
+	}
+}
+
 // TestFormulas: the stored result of a formula counts, and an error value is an
 // error. excelize stores no results, so that the cell is written as a spreadsheet
 // would.
