@@ -116,7 +116,6 @@ func Join(sections ...*Factors) (*Factors, error) {
 
 // join joins b, which starts later, to a.
 func join(a, b *Factors) (*Factors, error) {
-	overlap := func(nm float64) bool { return a.Axis.Covers(nm) && b.Axis.Covers(nm) }
 	nm := slices.Concat(a.Axis.Values(), b.Axis.Values())
 	slices.Sort(nm)
 	nm = slices.CompactFunc(nm, func(x, y float64) bool { return math.Abs(y-x) <= 1e-4 })
@@ -127,29 +126,18 @@ func join(a, b *Factors) (*Factors, error) {
 	ca, ra := a.On(ax)
 	cb, rb := b.On(ax)
 	known := a.U != nil && b.U != nil
-	num, den := 0.0, 0.0
-	for i, at := range nm {
-		if !overlap(at) {
-			continue
-		}
-		w := 1.0
-		if u2 := ca[i]*ca[i]*ra[i]*ra[i] + cb[i]*cb[i]*rb[i]*rb[i]; known && u2 > 0 {
-			w = 1 / u2
-		}
-		num, den = num+w*ca[i]*cb[i], den+w*cb[i]*cb[i]
-	}
-	if den == 0 {
+	k := overlapScale(ca, ra, cb, rb, known)
+	if math.IsNaN(k) {
 		return nil, fmt.Errorf("the sections %s (%s) and %s (%s) do not overlap; without an overlap their scales cannot be joined", a.Source, a.Axis, b.Source, b.Axis)
 	}
-	k := num / den
 	c, u := make([]float64, len(nm)), make([]float64, len(nm))
-	for i, at := range nm {
+	for i := range nm {
 		x, y := ca[i], k*cb[i]
 		ux, uy := x*ra[i], y*rb[i]
 		switch {
-		case !overlap(at) && a.Axis.Covers(at):
+		case math.IsNaN(y):
 			c[i], u[i] = x, ux
-		case !overlap(at):
+		case math.IsNaN(x):
 			c[i], u[i] = y, uy
 		case known && ux > 0 && uy > 0:
 			wx, wy := 1/(ux*ux), 1/(uy*uy)
@@ -162,6 +150,23 @@ func join(a, b *Factors) (*Factors, error) {
 		u = nil
 	}
 	return NewFactors(nm, c, u, a.Source+" + "+b.Source)
+}
+
+// overlapScale is k = Σ w·a·b / Σ w·b² where both curves have values, with relative
+// uncertainties ra and rb; NaN where they share none.
+func overlapScale(a, ra, b, rb []float64, known bool) float64 {
+	num, den := 0.0, 0.0
+	for i := range a {
+		if math.IsNaN(a[i]) || math.IsNaN(b[i]) {
+			continue
+		}
+		w := 1.0
+		if u2 := math.Pow(a[i]*ra[i], 2) + math.Pow(b[i]*rb[i], 2); known && u2 > 0 {
+			w = 1 / u2
+		}
+		num, den = num+w*a[i]*b[i], den+w*b[i]*b[i]
+	}
+	return num / den
 }
 
 // ScaledAt returns the factors divided by their value at refNM, which must be

@@ -3,6 +3,7 @@ package correct
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/stat"
 
@@ -49,50 +50,43 @@ func FindLines(scan Curve, lines []float64, window float64) []LampLine {
 }
 
 func findLine(scan Curve, nm, window, top float64) (LampLine, bool) {
-	peak := -1
-	lo, hi := math.Inf(1), math.Inf(1) // backgrounds on the short and the long side
-	for i, v := range scan.Y {
-		switch at := scan.Axis.At(i); {
-		case math.Abs(at-nm) > window:
-			continue
-		case math.IsNaN(v): // clipped: no position
-			return LampLine{}, false
-		case peak < 0 || v > scan.Y[peak]:
-			peak = i
-		}
-	}
-	if peak < 0 {
-		return LampLine{}, false
-	}
-	for i, v := range scan.Y {
+	lo, hi := -1, 0 // the window's cells are lo … hi−1
+	for i := range scan.Y {
 		if math.Abs(scan.Axis.At(i)-nm) > window {
 			continue
 		}
-		if i <= peak {
-			lo = min(lo, v)
+		if math.IsNaN(scan.Y[i]) { // clipped: no position
+			return LampLine{}, false
 		}
-		if i >= peak {
-			hi = min(hi, v)
+		if lo < 0 {
+			lo = i
+		}
+		hi = i + 1
+	}
+	if lo < 0 {
+		return LampLine{}, false
+	}
+	y := scan.Y[lo:hi]
+	peak := 0
+	for i, v := range y {
+		if v > y[peak] {
+			peak = i
 		}
 	}
-	base := max(lo, hi)
-	height := scan.Y[peak] - base
-	half := base + height/2
+	base := max(slices.Min(y[:peak+1]), slices.Min(y[peak:]))
+	half := (base + y[peak]) / 2
 	cross := func(step int) (float64, bool) {
-		for i := peak + step; i >= 0 && i < len(scan.Y); i += step {
-			at := scan.Axis.At(i)
-			if math.Abs(at-nm) > window {
-				return 0, false
-			}
-			if v, before := scan.Y[i], scan.Y[i-step]; v <= half {
-				return scan.Axis.At(i-step) + (before-half)/(before-v)*(at-scan.Axis.At(i-step)), true
+		for i := peak + step; i >= 0 && i < len(y); i += step {
+			if y[i] <= half {
+				at, before := scan.Axis.At(lo+i), scan.Axis.At(lo+i-step)
+				return before + (y[i-step]-half)/(y[i-step]-y[i])*(at-before), true
 			}
 		}
 		return 0, false
 	}
 	a, ok1 := cross(-1)
 	b, ok2 := cross(+1)
-	return LampLine{NM: nm, Found: (a + b) / 2, Width: b - a}, ok1 && ok2 && height > top/100
+	return LampLine{NM: nm, Found: (a + b) / 2, Width: b - a}, ok1 && ok2 && y[peak]-base > top/100
 }
 
 // LampCheck sums up the lines of a scan.

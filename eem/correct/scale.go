@@ -130,6 +130,7 @@ func usable(v float64) bool { return v > 0 && !math.IsInf(v, 0) && !math.IsInf(1
 
 // RamanUnits divides e by the Raman area: intensities in Raman units, nm⁻¹. A
 // known uncertainty of the area becomes the cause "intensity scale" of the batch.
+// It panics on an area that is not positive; Areas gives none.
 func RamanUnits(e *eem.EEM, r RamanArea, batch string) *eem.EEM {
 	out := Scale(e, 1/r.Area, eem.Raman, record(StepScale, "divided by the area of water's Raman line",
 		eem.Param{Name: "Raman area", Value: num(r.Area), Unit: "counts nm", Source: "blanks of the batch"},

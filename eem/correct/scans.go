@@ -17,30 +17,17 @@ func DeadScans(e *eem.EEM) *eem.EEM {
 	if e.Unit != eem.Counts {
 		return out
 	}
-	flat := func(j int, lo float64) (dead bool, cells int) {
-		first := math.NaN()
-		for k, v := range e.Row(j) {
-			if e.Em.At(k) < lo || !measured(e, e.Index(j, k)) {
-				continue
-			}
-			if cells == 0 {
-				first = v
-			} else if v != first {
-				return false, cells
-			}
-			cells++
-		}
-		return cells >= 5, cells // fewer may be equal by rounding
-	}
 	var lost []float64
 	for j := range e.Ex.Len() {
 		lo := e.Ex.At(j) + ridgeNM
-		dead, _ := flat(j, lo)
+		if cells, flat := oneNumber(e, j, lo); !flat || cells < 5 { // fewer may be equal by rounding
+			continue
+		}
 		for _, nb := range []int{j - 1, j + 1} {
-			if !dead || nb < 0 || nb >= e.Ex.Len() {
+			if nb < 0 || nb >= e.Ex.Len() {
 				continue
 			}
-			if quiet, cells := flat(nb, max(lo, e.Ex.At(nb)+ridgeNM)); quiet || cells == 0 {
+			if cells, flat := oneNumber(e, nb, max(lo, e.Ex.At(nb)+ridgeNM)); flat || cells == 0 {
 				continue
 			}
 			for k := range e.Em.Len() {
@@ -57,6 +44,23 @@ func DeadScans(e *eem.EEM) *eem.EEM {
 			"the scans at ex %s nm hold one number only and were left out; scan them again", nms(lost))))
 	}
 	return out
+}
+
+// oneNumber counts the measured cells of scan j from lo nm on and says whether
+// they are all alike.
+func oneNumber(e *eem.EEM, j int, lo float64) (cells int, flat bool) {
+	first := math.NaN()
+	flat = true
+	for k, v := range e.Row(j) {
+		if e.Em.At(k) < lo || !measured(e, e.Index(j, k)) {
+			continue
+		}
+		if cells++; cells == 1 {
+			first = v
+		}
+		flat = flat && v == first
+	}
+	return cells, flat
 }
 
 // RepeatedScans flags pairs of excitations whose scans hold the same numbers in

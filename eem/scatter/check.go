@@ -139,9 +139,18 @@ func seenAt(e, blank *eem.EEM, j int, at, window float64) (r, u float64, ok bool
 		t := (v - at) / window
 		a.SetRow(i, []float64{b[i] / scale, 1, t, t * t})
 	}
+	r, u, ok = firstCoefficient(a, y)
+	return r / scale, u / scale, ok && u > 0
+}
+
+// firstCoefficient solves min ‖a·c − y‖ and returns c₁ with its standard
+// uncertainty from the residuals. The first diagonal element of (aᵀa)⁻¹ is the
+// squared norm of the first row of R⁻¹.
+func firstCoefficient(a *mat.Dense, y []float64) (c1, u float64, ok bool) {
+	n, p := a.Dims()
 	var qr mat.QR
 	qr.Factorize(a)
-	if qr.Cond() > 1e10 { // the blank is a parabola itself: no line
+	if !(qr.Cond() <= 1e10) { // the first column is a parabola itself: no line
 		return 0, 0, false
 	}
 	var c, fit mat.VecDense
@@ -153,14 +162,12 @@ func seenAt(e, blank *eem.EEM, j int, at, window float64) (r, u float64, ok bool
 	for i, v := range y {
 		ss += (v - fit.AtVec(i)) * (v - fit.AtVec(i))
 	}
-	// The first diagonal element of (AᵀA)⁻¹ is the squared norm of the first row
-	// of R⁻¹.
-	var rm mat.Dense
-	qr.RTo(&rm)
-	tri := mat.NewTriDense(4, mat.Upper, nil)
-	for i := range 4 {
-		for k := i; k < 4; k++ {
-			tri.SetTri(i, k, rm.At(i, k))
+	var r mat.Dense
+	qr.RTo(&r)
+	tri := mat.NewTriDense(p, mat.Upper, nil)
+	for i := range p {
+		for k := i; k < p; k++ {
+			tri.SetTri(i, k, r.At(i, k))
 		}
 	}
 	var inv mat.TriDense
@@ -168,11 +175,10 @@ func seenAt(e, blank *eem.EEM, j int, at, window float64) (r, u float64, ok bool
 		return 0, 0, false
 	}
 	q := 0.0
-	for k := range 4 {
+	for k := range p {
 		q += inv.At(0, k) * inv.At(0, k)
 	}
-	u = math.Sqrt(q*ss/float64(n-4)) / scale
-	return c.AtVec(0) / scale, u, u > 0
+	return c.AtVec(0), math.Sqrt(q * ss / float64(n-p)), true
 }
 
 // CheckLight appends to e how strong its own line is against its blank's (Seen)
