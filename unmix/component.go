@@ -48,6 +48,7 @@ type Set struct {
 	Method     string   // "references", "parafac", "model"
 	Origin     string   // where the components come from, in words
 	Components []Component
+	Mask       []bool // J × K: cells of the mixing model; nil means all
 }
 
 // Len returns the number of components.
@@ -69,7 +70,7 @@ func (s *Set) Matrix() (a []float64, cells []int) {
 	row := make([]float64, n)
 	for j := range s.Grid.Ex.Len() {
 		for k := range s.Grid.Em.Len() {
-			known := true
+			known := s.Mask == nil || s.Mask[s.Grid.Index(j, k)]
 			for f := range s.Components {
 				row[f] = s.Components[f].At(s.Grid, j, k)
 				known = known && !math.IsNaN(row[f])
@@ -91,6 +92,7 @@ func (s *Set) OnGrid(g eem.Grid) *Set {
 	}
 	out := *s
 	out.Grid = g
+	out.Mask = maskOn(s.Grid, g, s.Mask)
 	out.Components = make([]Component, s.Len())
 	for f, c := range s.Components {
 		d := c
@@ -105,6 +107,25 @@ func (s *Set) OnGrid(g eem.Grid) *Set {
 	return &out
 }
 
+// maskOn brings a mask to grid g: a point counts where all its neighbours do.
+func maskOn(from, to eem.Grid, mask []bool) []bool {
+	if mask == nil {
+		return nil
+	}
+	e := eem.New(from, eem.Counts)
+	for i, in := range mask {
+		if in {
+			e.F[i], e.Why[i] = 1, eem.Measured
+		}
+	}
+	e = e.Regrid(to)
+	out := make([]bool, to.Cells())
+	for i := range out {
+		out[i] = e.Why[i] == eem.Measured
+	}
+	return out
+}
+
 func onAxis(from, to eem.Axis, y []float64) []float64 {
 	if y == nil {
 		return nil
@@ -112,6 +133,31 @@ func onAxis(from, to eem.Axis, y []float64) []float64 {
 	out := make([]float64, to.Len())
 	for i := range out {
 		out[i] = from.Interp(y, to.At(i))
+	}
+	return out
+}
+
+// Covered returns, for every component, the share of its energy (Σ surface² over
+// the cells of the set) that lies on cells which grid g covers.
+func (s *Set) Covered(g eem.Grid) []float64 {
+	out := make([]float64, s.Len())
+	for f := range s.Components {
+		var in, all float64
+		for j := range s.Grid.Ex.Len() {
+			for k := range s.Grid.Em.Len() {
+				v := s.Components[f].At(s.Grid, j, k)
+				if math.IsNaN(v) || (s.Mask != nil && !s.Mask[s.Grid.Index(j, k)]) {
+					continue
+				}
+				all += v * v
+				if g.Ex.Covers(s.Grid.Ex.At(j)) && g.Em.Covers(s.Grid.Em.At(k)) {
+					in += v * v
+				}
+			}
+		}
+		if all > 0 {
+			out[f] = in / all
+		}
 	}
 	return out
 }

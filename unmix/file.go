@@ -224,10 +224,15 @@ type Model struct {
 	Cells      []int            `json:"cells"` // indices ex·K + em of the cells that the fit used
 	Samples    []string         `json:"samples"`
 	Explained  *float64         `json:"explained_percent"`
-	Settings   map[string]any   `json:"settings"` // scatter bands, corrections and scale that the spectra stand for
-	Authors    []string         `json:"authors"`
-	Citation   string           `json:"citation"`
-	Licence    string           `json:"licence"`
+	// Corrections are the steps that were done to the intensities, and Settings
+	// (TOML) the settings in force: bands, scale and limits that a new bottle is
+	// treated with, whatever its own survey says.
+	Corrections []string  `json:"corrections"`
+	Settings    string    `json:"settings"`
+	Likeness    *Likeness `json:"likeness,omitempty"`
+	Authors     []string  `json:"authors"`
+	Citation    string    `json:"citation"`
+	Licence     string    `json:"licence"`
 }
 
 // ModelComponent is one component of a model file. A loading that the data do
@@ -246,7 +251,7 @@ type ModelComponent struct {
 // NewModel freezes a set.
 func NewModel(s *Set, title string) *Model {
 	m := &Model{Version: ModelVersion, Method: s.Method, Title: title, Unit: s.Unit, Grid: s.Grid,
-		Cells: []int{}, Samples: []string{}, Authors: []string{}}
+		Cells: []int{}, Samples: []string{}, Corrections: []string{}, Authors: []string{}}
 	for _, c := range s.Components {
 		m.Components = append(m.Components, ModelComponent{Name: c.Name, AmountUnit: c.AmountUnit, Scale: c.Scale,
 			Ex: toNull(c.Ex), Em: toNull(c.Em), Surface: toNull(c.Surface), Highest: c.Highest, Levels: c.Levels})
@@ -254,12 +259,18 @@ func NewModel(s *Set, title string) *Model {
 	return m
 }
 
-// Set returns the components of a model.
+// Set returns the components of a model, on the cells that its fit used.
 func (m *Model) Set() *Set {
 	s := &Set{Grid: m.Grid, Unit: m.Unit, Method: "model", Origin: m.Title}
 	for _, c := range m.Components {
 		s.Components = append(s.Components, Component{Name: c.Name, AmountUnit: c.AmountUnit, Scale: c.Scale,
 			Ex: fromNull(c.Ex), Em: fromNull(c.Em), Surface: fromNull(c.Surface), Highest: c.Highest, Levels: c.Levels})
+	}
+	if len(m.Cells) > 0 {
+		s.Mask = make([]bool, m.Grid.Cells())
+		for _, i := range m.Cells {
+			s.Mask[i] = true
+		}
 	}
 	return s
 }
@@ -285,6 +296,17 @@ func ParseModel(name string, data []byte) (*Model, error) {
 	for _, c := range m.Components {
 		if len(c.Ex) != nj || len(c.Em) != nk || (c.Surface != nil && len(c.Surface) != nj*nk) {
 			return nil, fmt.Errorf("%s: component %q does not have the length of the grid (%s)", name, c.Name, m.Grid)
+		}
+	}
+	if l := m.Likeness; l != nil {
+		n := len(m.Components)
+		if len(l.Mean) != n || len(l.Floor) != n || len(l.Inverse) != n {
+			return nil, fmt.Errorf("%s: likeness does not have the length of the components (%d)", name, n)
+		}
+		for _, row := range l.Inverse {
+			if len(row) != n {
+				return nil, fmt.Errorf("%s: likeness does not have the length of the components (%d)", name, n)
+			}
 		}
 	}
 	for _, i := range m.Cells {

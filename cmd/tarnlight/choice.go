@@ -2,37 +2,161 @@ package main
 
 import (
 	"context"
+	"fmt"
+	"math"
+	"slices"
+	"strconv"
+	"strings"
 
 	"tarnlight/eem"
+	"tarnlight/eem/prepare"
 	"tarnlight/eem/survey"
 	"tarnlight/unmix/parafac"
 	"tarnlight/unmix/report"
 )
 
-// choose fits every number of components asked for and takes the stated one, or
-// the largest that converged with half of its starts agreeing.
+// choose fits every number of components asked for and takes the one that the
+// settings state, or the largest that passes every test.
 func (j *job) choose(ctx context.Context, fit *eem.Cube, c survey.Components, set *parafac.Settings) error {
-	for n := c.From; n <= min(c.To, fit.Len()); n++ {
-		r, err := parafac.Fit(ctx, fit, n, set)
-		if err != nil {
-			return err
+	want := j.set.Resolve.Choose
+	from, to := c.From, c.To
+	if want > 0 {
+		from, to = min(from, want), max(to, want)
+	}
+	splits, err := j.splits(fit)
+	if err != nil {
+		return err
+	}
+	ch, err := parafac.Choose(ctx, fit, from, to, set, splits)
+	if err != nil {
+		return err
+	}
+	j.choice = ch
+	n := ch.Components
+	if want > 0 {
+		n = want
+	}
+	for _, cand := range ch.Candidates {
+		j.fits = append(j.fits, cand.Result)
+		if cand.Components == n {
+			j.fit = cand.Result
 		}
-		j.fits = append(j.fits, r)
-		agree := 0
-		for _, s := range r.Starts {
-			if s.Agrees {
-				agree++
-			}
-		}
-		if n == j.set.Resolve.Choose || j.fit == nil || (j.set.Resolve.Choose == 0 && r.Status == parafac.Converged && 2*agree >= len(r.Starts)) {
-			j.fit = r
-		}
+	}
+	switch {
+	case j.fit != nil && want > 0:
+		fmt.Fprintf(j.bar, "%d components, because: %s\nthe tests say: %s\n", n, j.set.Resolve.Because, ch.Verdict)
+	case want > 0:
+		return fmt.Errorf("settings, resolve.choose: %d components could not be fitted: %s", want, ch.Verdict)
+	case n == 0:
+		j.fit = j.fits[0]
+		j.flags = append(j.flags, j.sv.Accept(eem.Flag{Method: "parafac", Test: "no-model-passes", Severity: eem.Doubt, Value: nan, Limit: nan,
+			Msg: fmt.Sprintf("%s; %d components are shown all the same: state a number ([resolve] choose) or more bottles", ch.Verdict, j.fit.Components)}))
+	default:
+		fmt.Fprintf(j.bar, "%s\n", ch.Verdict)
 	}
 	return nil
 }
 
+// splits says which bottles belong together and which columns part them.
+func (j *job) splits(fit *eem.Cube) (*parafac.Splits, error) {
+	sp := &parafac.Splits{}
+	col := -1
+	if name := j.set.Resolve.SplitBy; name != "" {
+		if col = slices.IndexFunc(j.sheet.Columns, func(c string) bool { return strings.EqualFold(c, name) }); col < 0 {
+			return nil, fmt.Errorf("settings, resolve.split_by: the run sheet has no column %q; it has %s", name, strings.Join(j.sheet.Columns, ", "))
+		}
+		sp.By = []parafac.SplitBy{{Name: name}}
+	}
+	for _, id := range fit.IDs {
+		b := j.bottle(id)
+		sp.Group = append(sp.Group, j.origin(b))
+		if col >= 0 {
+			v := ""
+			if col < len(b.Row.Cells) {
+				v = b.Row.Cells[col]
+			}
+			sp.By[0].Value = append(sp.By[0].Value, v)
+		}
+	}
+	return sp, nil
+}
+
+// origin names the bottle that b repeats in the end, itself where it repeats none.
+func (j *job) origin(b *prepare.Bottle) string {
+	for range j.sv.Bottles { // no longer chain than there are bottles
+		of := b.Row.ReplicateOf
+		if of == "" {
+			of = b.Row.SpikeOf
+		}
+		next := j.bottle(of)
+		if next == nil {
+			break
+		}
+		b = next
+	}
+	return b.Row.ID
+}
+
+// modelTable makes models.csv.
+func (j *job) modelTable() *report.Table {
+	t := report.New("models.csv")
+	for i, fit := range j.fits {
+		cells, agree := 0, 0
+		for _, n := range fit.Cells {
+			cells += n
+		}
+		for _, s := range fit.Starts {
+			if s.Agrees {
+				agree++
+			}
+		}
+		ex, em, verdict, reason := nan, nan, "", "the settings state this number"
+		if j.choice != nil {
+			cand := j.choice.Candidates[i]
+			ex, em = j.leastHalves(fit.Components)
+			if verdict, reason = "fail", cand.Reason; cand.Passes {
+				verdict = "pass"
+			}
+			if fit == j.fit && j.set.Resolve.Choose > 0 {
+				reason = "chosen because: " + j.set.Resolve.Because + "; the tests: " + reason
+			}
+		}
+		t.Append(fit.Components, len(fit.IDs), cells, fit.Loss, fit.Explained, fit.CoreConsistency, ex, em, len(fit.Starts), agree, fit.Iterations,
+			fit.Status == parafac.Converged, fit.Certificate, fit.Structure, fit.TripleCosine, fit.Revived, "", verdict, fit == j.fit, reason,
+			strconv.FormatUint(j.set.Resolve.Seed, 10))
+	}
+	return t
+}
+
+// leastHalves returns the lowest congruences between halves of one candidate.
+func (j *job) leastHalves(components int) (ex, em float64) {
+	ex, em = nan, nan
+	for _, s := range j.choice.Splits {
+		if s.Components != components {
+			continue
+		}
+		if math.IsNaN(ex) || s.Ex < ex {
+			ex = s.Ex
+		}
+		if math.IsNaN(em) || s.Em < em {
+			em = s.Em
+		}
+	}
+	return ex, em
+}
+
 // splitTable makes splits.csv.
-func (j *job) splitTable() *report.Table { return report.New("splits.csv") }
+func (j *job) splitTable() *report.Table {
+	t := report.New("splits.csv")
+	if j.choice == nil {
+		return t
+	}
+	for _, s := range j.choice.Splits {
+		t.Append(s.Components, s.Name, fmt.Sprintf("C%d", s.Component+1), s.Ex, s.Em, 0.95, s.Agrees,
+			s.ExPeak, s.EmPeak, s.ExCentre, s.EmMean, s.First, s.Second)
+	}
+	return t
+}
 
 // splitSpectra makes split_spectra.csv.
 func (j *job) splitSpectra() *report.Table { return report.New("split_spectra.csv") }

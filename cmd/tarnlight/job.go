@@ -32,6 +32,7 @@ type jobOptions struct {
 
 	quantify, resolve bool // the parts of the work that the verb asks for
 	verb              string
+	model             string // file of a fixed model; empty: none
 }
 
 // flags adds the common flags to a verb.
@@ -51,17 +52,21 @@ type job struct {
 	streams streams
 	bar     *bar
 
-	set   *survey.Settings
-	sheet *survey.Sheet
-	sv    *prepare.Survey
-	cube  *eem.Cube               // usable bottles on the survey's grid
-	row   map[*prepare.Bottle]int // bottle → row of the cube
-	res   []*unmix.Resolution     // one a method
-	judge []*merit.Judged         // beside res
-	lines []unmix.Line            // of the references
-	fit   *parafac.Result         // nil without resolve
-	fits  []*parafac.Result       // candidates
-	flags []eem.Flag              // all of them, in order
+	set    *survey.Settings
+	sheet  *survey.Sheet
+	sv     *prepare.Survey
+	cube   *eem.Cube               // usable bottles on the survey's grid
+	row    map[*prepare.Bottle]int // bottle → row of the cube
+	res    []*unmix.Resolution     // one a method
+	judge  []*merit.Judged         // beside res
+	lines  []unmix.Line            // of the references
+	fit    *parafac.Result         // nil without resolve
+	fits   []*parafac.Result       // candidates
+	choice *parafac.Choice         // nil where the number was stated
+	flags  []eem.Flag              // all of them, in order
+
+	applied     *unmix.Model // the fixed model of apply, nil otherwise
+	appliedName string
 }
 
 // execute does the whole job. The results folder is replaced at the very end or
@@ -70,6 +75,9 @@ func (o jobOptions) execute(ctx context.Context, s streams) (*job, error) {
 	j := &job{jobOptions: o, streams: s, bar: newBar(s.err)}
 	if j.out == "" {
 		j.out = filepath.Join(j.dir, "out")
+	}
+	if err := j.readModel(); err != nil {
+		return nil, err
 	}
 	if err := j.readInputs(); err != nil {
 		return nil, err
@@ -95,6 +103,11 @@ func (j *job) readInputs() error {
 	}
 	if j.set, err = survey.ReadSettings(j.settingsPath()); err != nil {
 		return err
+	}
+	if j.applied != nil {
+		if err := j.freeze(); err != nil {
+			return err
+		}
 	}
 	j.sheet, err = survey.ReadSheet(j.dir, j.set)
 	return err
@@ -126,7 +139,11 @@ func (j *job) work(ctx context.Context, stage *outdir.Staging) error {
 // prepare reads and corrects the bottles and stacks the usable ones.
 func (j *job) prepare(ctx context.Context) error {
 	var err error
-	j.sv, err = prepare.Read(ctx, j.dir, j.sheet, j.set, prepare.Options{Workers: j.workers, Progress: j.bar.step})
+	opt := prepare.Options{Workers: j.workers, Progress: j.bar.step}
+	if j.applied != nil {
+		opt.Grid = &j.applied.Grid
+	}
+	j.sv, err = prepare.Read(ctx, j.dir, j.sheet, j.set, opt)
 	if err != nil {
 		return err
 	}
@@ -147,6 +164,9 @@ func (j *job) prepare(ctx context.Context) error {
 
 // unmix resolves the bottles by every method that is asked for.
 func (j *job) unmix(ctx context.Context) error {
+	if j.applied != nil {
+		return j.applyPart()
+	}
 	if err := j.quantifyPart(); err != nil {
 		return err
 	}
@@ -185,7 +205,7 @@ func (j *job) quantifyPart() error {
 	if err != nil {
 		return err
 	}
-	return j.resolveWith(set, "references")
+	return j.resolveWith(set, "references", nil)
 }
 
 // references builds the set from the sheet's standards.
@@ -243,18 +263,31 @@ func readReferences(path, name string) (*unmix.Set, error) {
 }
 
 // resolveWith resolves every usable bottle against a set and judges the result.
-func (j *job) resolveWith(set *unmix.Set, method string) error {
+// more, if given, raises flags on single bottles from the resolution itself; they
+// count in the judgement.
+func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolution) []eem.Flag) error {
 	set.Method = method
 	r, err := unmix.Quantify(j.cube, set)
 	if err != nil {
 		return err
+	}
+	var extra []eem.Flag
+	if more != nil {
+		extra = more(r)
+		j.flags = append(j.flags, extra...)
 	}
 	bottles := make([]merit.Bottle, 0, len(j.sv.Bottles))
 	for _, b := range j.sv.Bottles {
 		if b.Excluded {
 			continue
 		}
-		bottles = append(bottles, j.merit(b))
+		m := j.merit(b)
+		for _, f := range extra {
+			if f.ID == m.ID && f.Severity == eem.Doubt {
+				m.Doubts = append(m.Doubts, f.Msg)
+			}
+		}
+		bottles = append(bottles, m)
 	}
 	judged := merit.Judge(r, bottles, j.cube.Sample, j.sv.Limit, j.sv.Accept, set.Origin)
 	j.res = append(j.res, r)

@@ -43,7 +43,7 @@ func (j *job) resolvePart(ctx context.Context) error {
 		return err
 	}
 	j.fitNotes()
-	return j.resolveWith(componentsOf(j.fit, true), "parafac")
+	return j.resolveWith(componentsOf(j.fit, true), "parafac", nil)
 }
 
 // fits says whether a bottle takes part in the model.

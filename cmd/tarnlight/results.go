@@ -13,7 +13,6 @@ import (
 	"tarnlight/eem/scatter"
 	"tarnlight/eem/survey"
 	"tarnlight/unmix"
-	"tarnlight/unmix/parafac"
 	"tarnlight/unmix/report"
 )
 
@@ -324,26 +323,6 @@ func (j *job) budgetTable() *report.Table {
 				t.Append(c.ID, c.Component, c.Method, "scatter of the residual", "cell", c.U, c.Unit, 100.0, df[c.ID], "s²(AᵀA)⁻¹ of the bottle's own fit")
 			}
 		}
-	}
-	return t
-}
-
-// modelTable makes models.csv of fits that were not chosen among.
-func (j *job) modelTable() *report.Table {
-	t := report.New("models.csv")
-	for _, fit := range j.fits {
-		agree := 0
-		for _, s := range fit.Starts {
-			if s.Agrees {
-				agree++
-			}
-		}
-		cells := 0
-		for _, n := range fit.Cells {
-			cells += n
-		}
-		t.Append(fit.Components, len(fit.IDs), cells, fit.Loss, fit.Explained, nan, nan, nan, len(fit.Starts), agree, fit.Iterations,
-			fit.Status == parafac.Converged, fit.Certificate, nan, nan, fit.Revived, "", "", fit == j.fit, "number stated in the settings", strconv.FormatUint(j.set.Resolve.Seed, 10))
 	}
 	return t
 }

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"bytes"
 	"encoding/json"
 	"fmt"
 	"maps"
@@ -111,27 +112,76 @@ func (j *job) writeStore(path string) error {
 // writeModel freezes the chosen model, or the references where nothing was
 // resolved.
 func (j *job) writeModel(path string) error {
+	if j.applied != nil {
+		return writeJSON(path, j.applied)
+	}
 	r := j.res[len(j.res)-1]
 	m := unmix.NewModel(r.Set, j.set.Title)
-	_, m.Cells = r.Set.Matrix()
+	m.Corrections = j.corrections()
+	var used bytes.Buffer
+	if _, err := j.settingsUsed().WriteTo(&used); err != nil {
+		return err
+	}
+	m.Settings = used.String()
 	if j.fit != nil {
 		m.Samples = j.fit.IDs
 		if e := j.fit.Explained; !math.IsNaN(e) {
 			m.Explained = &e
 		}
 	}
-	s := j.settingsUsed()
-	m.Settings = map[string]any{
-		"unit": string(j.cube.Unit), "inner_filter": s.Correct.InnerFilter, "blank": s.Correct.Blank, "fill": s.Scatter.Fill,
-		"bands": bandText(s.Scatter), "applied": append([]string{}, s.Scans.Applied...),
-	}
+	j.describe(m, r)
 	return writeJSON(path, m)
 }
 
-func bandText(s survey.Scatter) []string {
-	var out []string
-	for _, b := range prepare.Bands(s) {
-		out = append(out, fmt.Sprintf("%s: %g nm below to %g nm above", b.Reason, b.Below, b.Above))
+// describe adds what the model's own bottles look like, and which cells it saw.
+func (j *job) describe(m *unmix.Model, r *unmix.Resolution) {
+	seen := make([]bool, j.cube.Cells())
+	var value, left []float64
+	for _, b := range j.sv.Bottles {
+		if !inFit(b) {
+			continue
+		}
+		i := j.row[b]
+		for c, why := range j.cube.SampleWhy(i) {
+			seen[c] = seen[c] || why == eem.Measured
+		}
+		if fit := r.Fits[i]; fit.Usable && !math.IsNaN(fit.Explained) {
+			value = append(value, r.Value[i*r.Set.Len():(i+1)*r.Set.Len()]...)
+			left = append(left, 1-fit.Explained/100)
+		}
+	}
+	_, cells := r.Set.Matrix()
+	for _, c := range cells {
+		if seen[c] {
+			m.Cells = append(m.Cells, c)
+		}
+	}
+	if l, err := unmix.NewLikeness(value, r.Set.Len(), left, 0.01); err == nil {
+		m.Likeness = l
+	}
+}
+
+// corrections lists the steps that the intensities have behind them, here or
+// before they came here, in order.
+func (j *job) corrections() []string {
+	done := map[string]bool{}
+	for _, b := range j.sv.Bottles {
+		if !b.Usable() || b.Row.Kind == survey.Blank {
+			continue
+		}
+		for _, step := range b.Setting.Scans.Applied {
+			done[step] = true
+		}
+		c := b.Setting.Correct
+		done["spectral"] = done["spectral"] || c.ExcitationFactors != "" || c.EmissionFactors != ""
+		done["inner-filter"] = done["inner-filter"] || c.InnerFilter != "none"
+		done["blank"] = done["blank"] || c.Blank != "none"
+	}
+	out := []string{}
+	for _, step := range []string{"spectral", "inner-filter", "blank"} {
+		if done[step] {
+			out = append(out, step)
+		}
 	}
 	return out
 }

@@ -124,9 +124,9 @@ func Bands(s survey.Scatter) []scatter.Band {
 	return out
 }
 
-// chooseGrid takes the grid of the most samples (or the stated one) and says who
-// lacks what.
-func (s *Survey) chooseGrid() error {
+// chooseGrid takes the given grid, the stated one or that of the most samples, and
+// says who lacks what.
+func (s *Survey) chooseGrid(given *eem.Grid) error {
 	type vote struct {
 		grid  eem.Grid
 		n     int
@@ -160,12 +160,15 @@ func (s *Survey) chooseGrid() error {
 	}
 	sort.SliceStable(votes, func(a, b int) bool { return votes[a].n > votes[b].n })
 	s.Grid = votes[0].grid
+	if given != nil {
+		s.Grid = *given
+	}
 	for _, a := range []struct {
 		want *survey.Range
 		axis *eem.Axis
 		key  string
 	}{{s.Settings.Grid.Excitation, &s.Grid.Ex, "excitation"}, {s.Settings.Grid.Emission, &s.Grid.Em, "emission"}} {
-		if a.want != nil {
+		if a.want != nil && given == nil {
 			ax, err := eem.Steps(a.want.From, a.want.To, a.want.Step)
 			if err != nil {
 				return fmt.Errorf("settings, grid.%s: %w", a.key, err)

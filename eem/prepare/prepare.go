@@ -26,6 +26,7 @@ import (
 type Options struct {
 	Workers  int // goroutines; 0 means GOMAXPROCS; no result depends on it
 	Progress func(done, total int, what string)
+	Grid     *eem.Grid // the survey's grid where it is given, that of a model; nil: that of the most samples
 }
 
 // Input is one file that a result rests on.
@@ -114,7 +115,7 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 	for _, b := range s.Bottles {
 		b.raw, b.scanned = nil, nil
 	}
-	if err := s.chooseGrid(); err != nil {
+	if err := s.chooseGrid(o.Grid); err != nil {
 		return nil, err
 	}
 	s.inherit()
