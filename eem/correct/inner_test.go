@@ -102,7 +102,7 @@ func TestNoAbsorbance(t *testing.T) {
 // and em 400. Molar absorption coefficients, L mol⁻¹ cm⁻¹, of Karcher et al.
 // 1985, Spectral Atlas of Polycyclic Aromatic Compounds, and Friedel & Orchin
 // 1952; the absorbances (coefficient × concentration) and the factors below were
-// worked out by hand from them.
+// worked out from them with 10^((A290+A400)/2) apart from this program.
 func TestPAH(t *testing.T) {
 	table := pahTable(t)
 	for _, c := range []struct {
