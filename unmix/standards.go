@@ -68,6 +68,8 @@ func FromStandards(g eem.Grid, unit eem.Unit, names, units []string, standards [
 	for f, name := range names {
 		c := Component{Name: name, AmountUnit: units[f], Surface: slopes[f]}
 		c.Ex, c.Em, c.Scale = rankOne(g, c.Surface)
+		c.ExDetermined = seen(c.Ex, c.Em, func(j, k int) bool { return !math.IsNaN(c.Surface[g.Index(j, k)]) })
+		c.EmDetermined = seen(c.Em, c.Ex, func(k, j int) bool { return !math.IsNaN(c.Surface[g.Index(j, k)]) })
 		if c.AmountUnit == "" {
 			c.AmountUnit = "1"
 		}
@@ -78,6 +80,30 @@ func FromStandards(g eem.Grid, unit eem.Unit, names, units []string, standards [
 		return nil, nil, err
 	}
 	return s, s.lines(standards), nil
+}
+
+// minSeen is the least share of the other mode's energy that the cells of a
+// wavelength must show for its loading to mean anything; below it the loading
+// is noise over next to nothing (common practice, no source).
+const minSeen = 0.01
+
+// seen says which loadings v the cells present determine.
+func seen(v, other []float64, present func(i, l int) bool) []bool {
+	out := make([]bool, len(v))
+	for i := range v {
+		var in, all float64
+		for l, o := range other {
+			if math.IsNaN(o) {
+				continue
+			}
+			all += o * o
+			if present(i, l) {
+				in += o * o
+			}
+		}
+		out[i] = !math.IsNaN(v[i]) && in >= minSeen*all
+	}
+	return out
 }
 
 // slopesByCell returns F surfaces of slopes, J × K each. Cells in which the same

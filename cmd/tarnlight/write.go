@@ -249,20 +249,23 @@ func (j *job) rejected() map[string]bool {
 	return out
 }
 
-// worst returns up to n findings that a user must see: rejects before doubts,
-// one for each bottle and test.
+// worst returns up to n findings that a user must see, one for each bottle and
+// test: what concerns the whole survey, then rejects, then doubts.
 func (j *job) worst(n int) []eem.Flag {
 	var out []eem.Flag
 	seen := map[[2]string]bool{}
-	for _, sev := range []eem.Severity{eem.Reject, eem.Doubt} {
+	take := func(pass func(eem.Flag) bool) {
 		for _, f := range j.flags {
 			k := [2]string{f.ID, f.Test}
-			if f.Severity == sev && !seen[k] && len(out) < n {
+			if pass(f) && !seen[k] && len(out) < n {
 				seen[k] = true
 				out = append(out, f)
 			}
 		}
 	}
+	take(func(f eem.Flag) bool { return f.ID == "" && f.Severity >= eem.Doubt })
+	take(func(f eem.Flag) bool { return f.Severity == eem.Reject })
+	take(func(f eem.Flag) bool { return f.Severity == eem.Doubt })
 	return out
 }
 

@@ -3,6 +3,7 @@ package prepare
 import (
 	"fmt"
 	"math"
+	"path/filepath"
 	"slices"
 	"strings"
 	"time"
@@ -78,7 +79,7 @@ func (s *Survey) formBatches() {
 		}
 	}
 	if unnamed > 0 {
-		s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "no-batch", Severity: eem.Remark, File: s.Sheet.Path,
+		s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "no-batch", Severity: eem.Remark, File: filepath.Base(s.Sheet.Path),
 			Msg: fmt.Sprintf("%d rows give neither batch nor measured; they form batches by setup alone", unnamed)}), "", ""))
 	}
 	for _, b := range s.Bottles {
@@ -188,7 +189,7 @@ func (s *Survey) chooseUnit() error {
 			}
 			bt.Unit = eem.Counts
 		}
-		s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "counts", Severity: eem.Doubt, File: s.Sheet.Path,
+		s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "counts", Severity: eem.Doubt, File: filepath.Base(s.Sheet.Path),
 			Msg: "results stay in counts, because these batches allow no intensity scale: " + strings.Join(without, ", ")}), "", ""))
 	}
 	s.Unit = s.Batches[0].Unit

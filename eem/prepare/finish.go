@@ -51,7 +51,7 @@ func (b *Bottle) finish(s *Survey) {
 		e = scatter.Fill(scatter.Mask(e, Bands(b.Setting.Scatter)), b.Setting.Scatter.Fill)
 	}
 	for _, step := range b.Setting.Scans.Applied {
-		e.Note(eem.Note{Step: step, Msg: "done to the files before they came here; not done again",
+		e.Note(eem.Note{Step: stepNames[step], Msg: "done to the files before they came here; not done again",
 			Params: []eem.Param{{Name: "applied", Value: "before", Source: "settings: scans.applied"}}})
 	}
 	b.EEM = e

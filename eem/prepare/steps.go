@@ -11,14 +11,12 @@ import (
 var Steps = []string{"read", correct.StepSaturation, correct.StepOffset, correct.StepSpectral, correct.StepInner,
 	correct.StepBlank, correct.StepScale, correct.StepDilution, scatter.Step}
 
-// StepOrder returns the place of a step, from 1; steps that were done before the
-// files came here stand last.
-func StepOrder(step string) int {
-	if i := slices.Index(Steps, step); i >= 0 {
-		return i + 1
-	}
-	return len(Steps) + 1
-}
+// stepNames maps the words of [scans] applied to the steps.
+var stepNames = map[string]string{stepOffset: correct.StepOffset, stepSpectral: correct.StepSpectral, stepInner: correct.StepInner,
+	stepBlank: correct.StepBlank, stepIntensity: correct.StepScale, stepDilution: correct.StepDilution, stepScatter: scatter.Step}
+
+// StepOrder returns the place of a step, from 1; 0 when there is no such step.
+func StepOrder(step string) int { return slices.Index(Steps, step) + 1 }
 
 // RamanPeak returns where the batch's blanks show water's Raman line at the
 // scale's excitation, nm, and its height over the noise, both the mean over the
