@@ -19,11 +19,12 @@ type als struct {
 	part         []float64 // scratch of a basis: scores, and F × r
 	col          []float64 // K: one column of c
 	ga, gk, gap  []float64
-	hs, qs       []float64 // normal equations of one mode
-	h, q, inv    []float64 // one row's
-	lam          []float64 // F: ridge on the columns of the mode in work, and
-	lamDamped    []float64 // F: what is added to it on damped entries
-	loss         float64   // penalised, after the last update of a
+	hs, qs       []float64          // normal equations of one mode
+	h, q, inv    []float64          // one row's
+	lam          []float64          // F: ridge on the columns of the mode in work, and
+	lamDamped    []float64          // F: what is added to it on damped entries
+	loss         float64            // penalised, after the last update of a
+	trace        func(loss float64) // told every accepted loss, for tests
 	iter         int
 	revived      int
 }

@@ -42,6 +42,9 @@ func (s *als) iterate(ctx context.Context, tol float64, max int) (bool, error) {
 			small, falls = 0, falls+1
 		}
 		last = math.Min(last, s.loss)
+		if s.trace != nil {
+			s.trace(s.loss)
+		}
 		if small == 2 {
 			return true, nil
 		}
