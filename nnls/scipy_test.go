@@ -2,6 +2,7 @@ package nnls_test
 
 import (
 	"bufio"
+	"fmt"
 	"math"
 	"math/big"
 	"os"
@@ -177,33 +178,36 @@ func objective(a *mat.Dense, b, x []float64) (norm, rounding float64) {
 
 func newBig() *big.Float { return new(big.Float).SetPrec(200) }
 
-// TestAgainstSciPy compares with the answers of an independent program.
+// TestAgainstSciPy compares objectives with those of an independent program: ours
+// may be larger by 1e-10 of theirs at most. Where the least norm is zero, both are
+// rounding errors: then ours may be four times what the rounding of x alone gives.
 func TestAgainstSciPy(t *testing.T) {
 	want := scipyObjectives(t)
 	if len(want) != 2000 {
 		t.Fatalf("%d stored objectives, want 2000", len(want))
 	}
 	for _, name := range []string{"SolveTo", "Batch"} {
-		worst, floor, equal, lower := 0.0, 0, 0, 0
+		same, lower, zero, worst := 0, 0, 0, 0.0
 		for i, theirs := range want {
 			a, b := scipyProblem(i)
 			x, res := solvers[name](t, a, b)
-			certified(t, strconv.Itoa(i), res)
-			ours, rounding := objective(a, b, x)
-			rel := (ours - theirs) / theirs
-			switch {
-			case math.Abs(rel) <= 1e-10 || ours == theirs:
-				equal++
-			case ours <= 4*rounding && theirs <= 100*rounding:
-				floor++
-			case rel < 0:
-				lower++
-				t.Logf("%s problem %d kind %d: objective %g, SciPy %g, rounding %g", name, i, i%10, ours, theirs, rounding)
-			default:
-				t.Errorf("%s problem %d kind %d: objective %.17g, SciPy %.17g, rounding %g", name, i, i%10, ours, theirs, rounding)
-			}
+			certified(t, fmt.Sprintf("%s, problem %d", name, i), res)
 			worst = max(worst, res.Violation)
+			ours, rounding := objective(a, b, x)
+			switch {
+			case math.Abs(ours-theirs) <= 1e-10*theirs:
+				same++
+			case ours <= 4*rounding:
+				zero++
+			case ours < theirs:
+				lower++
+			default: // also where SciPy gave up, so that a reader sees it
+				t.Errorf("%s, problem %d of kind %d: objective %.17g, SciPy %.17g, rounding %g", name, i, i%10, ours, theirs, rounding)
+			}
 		}
-		t.Logf("%s: %d equal to 1e-10, %d lower, %d at rounding error; largest violation %.1e", name, equal, lower, floor, worst)
+		t.Logf("%s: %d equal to 1e-10, %d lower, %d zero to rounding; largest violation %.1e", name, same, lower, zero, worst)
+		if same < 1500 {
+			t.Errorf("%s: only %d comparisons count", name, same)
+		}
 	}
 }
