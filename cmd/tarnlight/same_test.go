@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 
@@ -181,4 +182,65 @@ func parse(s string) float64 {
 		return math.NaN()
 	}
 	return v
+}
+
+// Bottles of two instruments (other form of files, other response, other
+// saturation) in one survey have the rows that each half has alone against the
+// same references.
+func TestSetupsAreIndependent(t *testing.T) {
+	sv := synth.Demo(1)
+	other := *sv.Instrument
+	other.Lamp = synth.Band{synth.PeakAt(420, 9000, 1)}
+	other.Detector = synth.Band{synth.PeakAt(480, 8000, 1)}
+	other.Gain *= 0.7
+	other.Saturation = 0.8 * sv.Instrument.Saturation
+	sv.Setups = map[string]*synth.Instrument{"two": &other}
+	for i := range sv.Bottles {
+		if b := &sv.Bottles[i]; b.Measured.Day() == sv.Bottles[len(sv.Bottles)-1].Measured.Day() {
+			b.Setup = "two"
+			b.Layout = synth.Layout{Form: synth.Long, Delimiter: ";", DecimalComma: true}
+		}
+	}
+	whole := t.TempDir()
+	if err := sv.Write(whole); err != nil {
+		t.Fatal(err)
+	}
+	runNoPictures(t, whole) // its standards make the references
+	model := read(t, whole, "out", "model.json")
+	settings := read(t, whole, "survey.toml") + "\n[quantify]\nreferences = { file = \"model.json\" }\n"
+	rows := strings.Split(strings.TrimSpace(read(t, whole, "runsheet.csv")), "\n")
+	at := slices.Index(strings.Split(rows[0], ","), "setup")
+	if at < 0 {
+		t.Fatalf("no setup column: %s", rows[0])
+	}
+	half := func(keep func(setup string) bool) (dir string, n int) {
+		dir = t.TempDir()
+		if err := sv.Write(dir); err != nil {
+			t.Fatal(err)
+		}
+		out := rows[:1:1]
+		for _, r := range rows[1:] {
+			if keep(strings.Split(r, ",")[at]) {
+				out = append(out, r)
+			}
+		}
+		put(t, dir, "runsheet.csv", strings.Join(out, "\n")+"\n")
+		put(t, dir, "model.json", model)
+		put(t, dir, "survey.toml", settings)
+		runNoPictures(t, dir)
+		return dir, len(out) - 1
+	}
+	all, n := half(func(string) bool { return true })
+	one, n1 := half(func(s string) bool { return s == "" })
+	two, n2 := half(func(s string) bool { return s == "two" })
+	if n1 == 0 || n2 == 0 || n1+n2 != n {
+		t.Fatalf("%d bottles in halves of %d and %d", n, n1, n2)
+	}
+	for _, name := range []string{"contributions.csv", "samples.csv"} {
+		apart := append(rowsOf(t, one, name, ""), rowsOf(t, two, name, "")...)
+		together := rowsOf(t, all, name, "")
+		slices.Sort(apart)
+		slices.Sort(together)
+		sameRows(t, name, together, apart)
+	}
 }
