@@ -43,13 +43,17 @@ func (b *Bottle) finish(s *Survey) {
 			e = less
 		}
 	}
+	s.tell(b, correct.StepBlank, e)
 	e = b.scaleTo(s, e)
+	s.tell(b, correct.StepScale, e)
 	if !b.done(stepDilution) && b.Row.Dilution != 1 {
 		e = correct.Dilute(e, b.Row.Dilution)
 	}
+	s.tell(b, correct.StepDilution, e)
 	if !b.done(stepScatter) {
 		e = scatter.Fill(scatter.Mask(e, Bands(b.Setting.Scatter)), b.Setting.Scatter.Fill)
 	}
+	s.tell(b, scatter.Step, e)
 	for _, step := range b.Setting.Scans.Applied {
 		e.Note(eem.Note{Step: stepNames[step], Msg: "done to the files before they came here; not done again",
 			Params: []eem.Param{{Name: "applied", Value: "before", Source: "settings: scans.applied"}}})

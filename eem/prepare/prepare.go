@@ -26,7 +26,10 @@ import (
 type Options struct {
 	Workers  int // goroutines; 0 means GOMAXPROCS; no result depends on it
 	Progress func(done, total int, what string)
-	Grid     *eem.Grid // the survey's grid where it is given, that of a model; nil: that of the most samples
+	// Trace is told what each step made of a bottle; it may be called from several
+	// goroutines, for one bottle in the order of the steps. e is not to be changed.
+	Trace func(b *Bottle, step string, e *eem.EEM)
+	Grid  *eem.Grid // the survey's grid where it is given, that of a model; nil: that of the most samples
 }
 
 // Input is one file that a result rests on.
@@ -74,6 +77,7 @@ type Survey struct {
 	Guesses  []Guess // how raw files were taken
 
 	factors map[string]factorPair // by setup
+	trace   func(b *Bottle, step string, e *eem.EEM)
 }
 
 // Guess counts the files that were taken in one way.
@@ -91,7 +95,7 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 		o.Workers = runtime.GOMAXPROCS(0)
 	}
 	own := *set
-	s := &Survey{Dir: dir, Sheet: sheet, Settings: &own}
+	s := &Survey{Dir: dir, Sheet: sheet, Settings: &own, trace: o.Trace}
 	if err := s.list(); err != nil {
 		return nil, err
 	}
@@ -207,6 +211,13 @@ func (b *Bottle) flag(s *Survey, n eem.Note) {
 	b.Flags = append(b.Flags, eem.FlagFrom(n, b.Row.ID, b.Batch))
 	if n.Severity == eem.Reject {
 		b.Rejected = true
+	}
+}
+
+// tell hands a step's outcome to whoever traces it.
+func (s *Survey) tell(b *Bottle, step string, e *eem.EEM) {
+	if s.trace != nil {
+		s.trace(b, step, e)
 	}
 }
 

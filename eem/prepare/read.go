@@ -57,6 +57,7 @@ func (b *Bottle) read(s *Survey, files []string) {
 		b.reject(s, "unreadable", fmt.Sprintf("%s: the emission axis has %d point; an EEM needs at least 2", s.short(files[0]), e.Em.Len()))
 		return
 	}
+	s.tell(b, Steps[0], e)
 	if !b.readAbsorbance(s) {
 		return
 	}
@@ -163,6 +164,7 @@ func geometry(c survey.Correct) correct.Geometry {
 func (b *Bottle) toInnerFilter(s *Survey, e *eem.EEM) *eem.EEM {
 	set := b.Setting
 	e = correct.Saturate(e, set.Scans.Saturation)
+	s.tell(b, correct.StepSaturation, e)
 	switch {
 	case b.done(stepOffset):
 	case set.Scans.Offset.Auto:
@@ -172,9 +174,11 @@ func (b *Bottle) toInnerFilter(s *Survey, e *eem.EEM) *eem.EEM {
 	case set.Scans.Offset.Counts != 0:
 		e = correct.Offset(e, set.Scans.Offset.Counts)
 	}
+	s.tell(b, correct.StepOffset, e)
 	if f := s.factors[b.Row.Setup]; !b.done(stepSpectral) && (f.ex != nil || f.em != nil) {
 		e = correct.Spectral(e, f.ex, f.em)
 	}
+	s.tell(b, correct.StepSpectral, e)
 	if !b.done(stepInner) && set.Correct.InnerFilter != "none" && b.needsAbsorbance() {
 		limit := set.Correct.AbsorbanceLimit
 		var factor []float64
@@ -188,6 +192,7 @@ func (b *Bottle) toInnerFilter(s *Survey, e *eem.EEM) *eem.EEM {
 		e, factor = correct.InnerFilter(e, b.scanned, g, limit)
 		b.Largest = largest(factor)
 	}
+	s.tell(b, correct.StepInner, e)
 	return e
 }
 
