@@ -140,7 +140,7 @@ func (r *results) overview() [][2]string {
 				names = append(names, plain(s.component))
 			}
 		}
-		out = append(out, [2]string{"Method", methodName(m) + ": " + strings.Join(names, ", ")})
+		out = append(out, [2]string{"Evaluation", methodName(m) + ": " + strings.Join(names, ", ")})
 	}
 	if r.unit != "" {
 		out = append(out, [2]string{"Intensity unit", unitWords(r.unit)})
@@ -313,7 +313,7 @@ func (r *results) resultsSheet(b *book) {
 
 func (r *results) resultRow(x *bottle, known []resultColumn) []cell {
 	t := r.table["samples.csv"]
-	row := []cell{{x.id, look{bold: true, wrap: true}}}
+	row := []cell{{visible(x.id), look{bold: true, wrap: true}}}
 	for _, k := range known {
 		row = append(row, sheetCell(k.name, t.Text(x.row, t.Col(k.name))))
 	}
@@ -454,7 +454,7 @@ func (r *results) flagsSheet(b *book) {
 			}
 			l.hair = true
 			g, w := look{format: "General", hair: true}, look{wrap: true, hair: true}
-			s.add(0, cell{severity.String(), l}, cell{text(i, "id"), w}, cell{text(i, "batch"), w}, cell{text(i, "component"), w},
+			s.add(0, cell{severity.String(), l}, cell{visible(text(i, "id")), w}, cell{text(i, "batch"), w}, cell{text(i, "component"), w},
 				cell{text(i, "message"), w}, cell{what, look{color: midGrey, wrap: true, hair: true}}, cell{t.Float(i, t.Col("value")), g},
 				cell{t.Float(i, t.Col("limit")), g}, cell{accepted, look{wrap: true, hair: true, indent: true}})
 		}

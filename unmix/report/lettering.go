@@ -2,6 +2,7 @@ package report
 
 import (
 	"image"
+	"strings"
 	"sync"
 	"unicode"
 
@@ -128,4 +129,19 @@ func plain(s string) string {
 		}
 	}
 	return string(out)
+}
+
+// visible makes text from a user fit for a cell or the page: marks that turn the
+// direction of what follows are left out, so that nobody reads another name than
+// the one that stands there; other characters without a shape are shown as �.
+func visible(s string) string {
+	return strings.Map(func(r rune) rune {
+		switch {
+		case r >= '\u202a' && r <= '\u202e', r >= '\u2066' && r <= '\u2069', r == '\u200e', r == '\u200f', r == '\u061c', r == '\r':
+			return -1
+		case r == '\n' || r == '\t' || !unicode.IsControl(r):
+			return r
+		}
+		return unicode.ReplacementChar
+	}, s)
 }

@@ -38,6 +38,18 @@ func (n numbers) sig(v float64, d int) string {
 	return n.fixed(v, d-1-e)
 }
 
+// short writes v with at most d significant digits and no zeros behind them.
+func (n numbers) short(v float64, d int) string {
+	s := numbers{}.sig(v, d)
+	if head, tail, ok := strings.Cut(s, "."); ok && !strings.Contains(s, "·") {
+		if tail = strings.TrimRight(tail, "0"); tail != "" {
+			tail = "." + tail
+		}
+		s = head + tail
+	}
+	return n.mark(s)
+}
+
 // nm writes a wavelength with at most two decimals.
 func (n numbers) nm(v float64) string {
 	if math.IsNaN(v) || math.IsInf(v, 0) {

@@ -118,18 +118,33 @@ func (r *results) writePage(p *pass, figures []*figure) error {
 			v.Model = append(v.Model, g)
 		}
 	}
-	v.Models = r.pageTable("models.csv", "seed", "loss")
-	v.Batches, v.Calibration = r.pageTable("batches.csv"), r.pageTable("calibration.csv")
+	v.Models = r.pageTable("models.csv", []string{"components", "chosen", "verdict", "reason", "explained_percent"}, "seed", "loss", "samples", "cells")
+	v.Batches = r.pageTable("batches.csv", []string{"batch", "verdict", "reason"})
+	v.Calibration = r.pageTable("calibration.csv", []string{"id", "batch", "kind", "component", "verdict", "reason"})
 	for _, m := range r.methodSteps() {
 		name := joinNonEmpty(" – ", m.name, m.setup)
 		v.Steps = append(v.Steps, pageStep{strings.TrimSuffix(name, " – "), strings.TrimSpace(m.words.what + " " + strings.Join(m.done, "; ")), m.words.formula, m.words.source, m.params})
 	}
-	data, err := json.Marshal(r.pageData(p))
+	data, err := json.Marshal(r.pageData(p)) // json.Marshal writes <, > and & as \u003c …: it cannot end the script
 	if err != nil {
 		return err
 	}
-	v.Data = template.JS(data) // json.Marshal writes <, > and & as \u003c …: it cannot end the script
+	v.Data = template.JS(escapeMarks(string(data)))
 	return writeFile(filepath.Join(r.dir, "report.html"), func(w io.Writer) error { return writePage(w, v, p) })
+}
+
+// escapeMarks writes the marks that visible leaves out as escapes: ids keep them,
+// but nothing in the file turns what a person reads in it.
+func escapeMarks(data string) string {
+	var b strings.Builder
+	for _, r := range data {
+		if visible(string(r)) == "" {
+			fmt.Fprintf(&b, "\\u%04x", r)
+		} else {
+			b.WriteRune(r)
+		}
+	}
+	return b.String()
 }
 
 // writePage executes the template and puts the maps in at its end.
@@ -208,6 +223,7 @@ type dataColumn struct {
 
 type dataBottle struct {
 	ID    string      `json:"id"`
+	Shown string      `json:"shown"`
 	Own   []num       `json:"own"` // scale ends of this bottle
 	Parts [][3]string `json:"parts"`
 	Flags [][2]string `json:"flags"`
@@ -234,7 +250,7 @@ func (r *results) pageData(p *pass) *pageData {
 	d.Common = nums(p.common())
 	f := r.table["flags.csv"]
 	for i, b := range r.bottles {
-		x := dataBottle{ID: b.id, Parts: [][3]string{}, Flags: [][2]string{}, Facts: r.facts(b), Note: r.remarks(b)}
+		x := dataBottle{ID: b.id, Shown: visible(b.id), Parts: [][3]string{}, Flags: [][2]string{}, Facts: r.facts(b), Note: r.remarks(b)}
 		if p.scales != nil {
 			x.Own = nums(p.scales[i])
 		}
@@ -318,7 +334,7 @@ func (r *results) pageRows(v *page) {
 	tests := map[string]bool{}
 	for i, b := range r.bottles {
 		word, _ := severityLook(b.worst)
-		row := pageRow{Index: i, ID: b.id, Kind: b.kind, Verdict: word, Class: strings.ReplaceAll(word, " ", "-")}
+		row := pageRow{Index: i, ID: visible(b.id), Kind: b.kind, Verdict: word, Class: strings.ReplaceAll(word, " ", "-")}
 		if b.kind == "" {
 			row.Kind = "sample"
 		}
@@ -386,15 +402,16 @@ func (r *results) numberCell(v float64, digits int) pageCell {
 	return pageCell{Text: r.num.sig(v, digits), Sort: Number(v)}
 }
 
-// pageTable is a results table for people: numbers rounded, columns without
-// content and those named left out.
-func (r *results) pageTable(name string, without ...string) pageTable {
+// pageTable is a results table for people: the columns named in ahead first,
+// without those named in without and those that are empty, numbers rounded.
+func (r *results) pageTable(name string, ahead []string, without ...string) pageTable {
 	t := r.table[name]
 	var out pageTable
 	var cols []int
-	for c, head := range t.Columns {
+	for _, head := range append(slices.Clone(ahead), t.Columns...) {
+		c := t.Col(head)
 		used := slices.ContainsFunc(t.Rows, func(row []string) bool { return row[c] != "" })
-		if used && !slices.Contains(without, head) {
+		if used && !slices.Contains(without, head) && !slices.Contains(cols, c) {
 			cols = append(cols, c)
 			out.Heads = append(out.Heads, strings.ReplaceAll(head, "_", " "))
 		}
@@ -404,12 +421,12 @@ func (r *results) pageTable(name string, without ...string) pageTable {
 		for _, c := range cols {
 			text := t.Text(i, c)
 			if v := t.Float(i, c); finite(v) {
-				text = r.num.sig(v, 5)
-				if v == math.Trunc(v) && math.Abs(v) < 1e9 {
-					text = r.num.fixed(v, 0)
-				}
+				text = r.num.short(v, 5)
 			}
-			row = append(row, text)
+			row = append(row, map[string]string{"true": "yes", "false": "no"}[text])
+			if row[len(row)-1] == "" {
+				row[len(row)-1] = text
+			}
 		}
 		out.Rows = append(out.Rows, row)
 	}

@@ -153,7 +153,7 @@ function axes(g, b, x, y, xt, yt) {
   g.strokeStyle = g.fillStyle = "#20242c";
   g.strokeRect(b.x - .5, b.y - .5, b.w + 1, b.h + 1);
   g.textAlign = "center"; g.textBaseline = "top";
-  const tx = ticks(x[0], x[1], Math.max(2, Math.floor(b.w / 48)));
+  const tx = ticks(x[0], x[1], Math.max(2, Math.floor(b.w / 38)));
   for (const v of tx) { const p = b.x + (v - x[0]) / (x[1] - x[0]) * b.w; g.fillRect(p, b.y + b.h, 1, 4); g.fillText(tickText(v, tx.step || 1), p, b.y + b.h + 6); }
   g.fillText(xt, b.x + b.w / 2, b.y + b.h + 21);
   g.textAlign = "right"; g.textBaseline = "middle";
@@ -195,7 +195,7 @@ function drawMap(c) {
     }
   }
   c.setAttribute("aria-label", at < 0 ? name + ": no numbers" :
-    `${name} map of ${D.bottles[S.i].id}: largest ${sig(v[at], 3)} ${D.unit} at excitation ${D.ex[Math.floor(at / nem)]}, emission ${D.em[at % nem]} nm; arrow keys move the reading`);
+    `${name} map of ${D.bottles[S.i].shown}: largest ${sig(v[at], 3)} ${D.unit} at excitation ${D.ex[Math.floor(at / nem)]}, emission ${D.em[at % nem]} nm; arrow keys move the reading`);
 }
 function drawSlice(c, alongEm) {
   const [g, w, h] = sharp(c), b = box(w, h);
@@ -273,7 +273,7 @@ async function open(row, focus) {
   $("split").classList.add("open");
   detail.hidden = false;
   row.scrollIntoView({ block: "nearest" });
-  $("detail-h").replaceChildren(el("bdi", b.id));
+  $("detail-h").replaceChildren(el("bdi", b.shown));
   $("note").textContent = b.note;
   $("parts").tBodies[0].replaceChildren(...b.parts.map((p, n) => {
     const tr = document.createElement("tr");

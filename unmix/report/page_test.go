@@ -242,9 +242,10 @@ func TestLookAtPage(t *testing.T) {
 		b.shot(t, filepath.Join(dir, fmt.Sprintf("page-%d-bottle.png", w)))
 		eval[bool](t, b, `document.getElementById("close").click(); document.querySelectorAll("img").forEach(i => i.loading = "eager"); true`)
 		b.wait(t, `[...document.images].every(i => i.complete)`)
-		png, err := chromedp.Run(b.ctx, chromedp.FullScreenshot(100))
-		must(t, err)
-		must(t, os.WriteFile(filepath.Join(dir, fmt.Sprintf("page-%d-all.png", w)), png, 0o600))
+		for _, part := range []string{"survey", "model", "quality", "methods"} {
+			eval[bool](t, b, `document.getElementById("`+part+`")?.scrollIntoView(); true`)
+			b.shot(t, filepath.Join(dir, fmt.Sprintf("page-%d-%s.png", w, part)))
+		}
 		for _, s := range b.wrong {
 			t.Error(s)
 		}

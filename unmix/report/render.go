@@ -44,6 +44,9 @@ func Render(ctx context.Context, dir string, s RenderSettings, progress func(don
 	if s.Workers <= 0 {
 		s.Workers = runtime.GOMAXPROCS(0)
 	}
+	for _, p := range []*string{&s.Title, &s.Client, &s.Order, &s.Number, &s.Method, &s.Remarks, &s.TestedBy, &s.ApprovedBy} {
+		*p = visible(*p)
+	}
 	r, err := loadResults(dir, &s)
 	if err != nil {
 		return err

@@ -86,6 +86,7 @@ func loadResults(dir string, s *RenderSettings) (*results, error) {
 			}
 		}
 		r.table[f.Name] = t
+		makeVisible(t)
 	}
 	raw, err := os.ReadFile(filepath.Join(dir, "contributions.csv"))
 	if err != nil {
@@ -104,6 +105,19 @@ func loadResults(dir string, s *RenderSettings) (*results, error) {
 		return nil, errors.Join(err, r.close())
 	}
 	return r, nil
+}
+
+// makeVisible takes from all cells but the ids, by which tables are joined, what
+// would mislead the eye.
+func makeVisible(t *Table) {
+	for c, name := range t.Columns {
+		if name == "id" {
+			continue
+		}
+		for _, row := range t.Rows {
+			row[c] = visible(row[c])
+		}
+	}
 }
 
 func (r *results) close() error {
