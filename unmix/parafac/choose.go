@@ -143,7 +143,7 @@ func (pr *prepared) descend(ctx context.Context, c *eem.Cube, from, to int, set 
 		if above, err = pr.continued(ctx, all, set); err != nil {
 			return nil, err
 		}
-		r, s, err := conclude(ctx, c, pr.problem, all, set)
+		r, s, err := conclude(ctx, c, pr.problem, all, goodForNow, set)
 		if err != nil {
 			return nil, err
 		}

@@ -31,7 +31,7 @@ func Fit(ctx context.Context, c *eem.Cube, components int, s *Settings) (*Result
 			return nil, err
 		}
 	}
-	r, _, err := conclude(ctx, c, p, all, &set)
+	r, _, err := conclude(ctx, c, p, all, goodEnough, &set)
 	return r, err
 }
 
@@ -72,7 +72,7 @@ func bestOf(all []*outcome) *outcome {
 // conclude brings the best start to its end on the samples themselves: takes the
 // ridge from what the data determine and finishes by Gauss–Newton steps, whose
 // matrix also gives the errors.
-func conclude(ctx context.Context, c *eem.Cube, p *problem, all []*outcome, set *Settings) (*Result, *als, error) {
+func conclude(ctx context.Context, c *eem.Cube, p *problem, all []*outcome, enough float64, set *Settings) (*Result, *als, error) {
 	best := bestOf(all).s
 	s := newALS(p.whole(), best.f, set)
 	starts, loss := summarise(all, best, p.x2), best.loss/p.x2
@@ -89,7 +89,7 @@ func conclude(ctx context.Context, c *eem.Cube, p *problem, all []*outcome, set 
 	if s.shared() {
 		steps = 0
 	}
-	if err := n.finish(ctx, steps); err != nil {
+	if err := n.finish(ctx, steps, enough); err != nil {
 		return nil, nil, err
 	}
 	r := s.result(c, set)

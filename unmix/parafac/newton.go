@@ -3,6 +3,7 @@ package parafac
 import (
 	"context"
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/blas"
 	"gonum.org/v1/gonum/blas/blas64"
@@ -29,6 +30,8 @@ type newton struct {
 	h     []float64 // n × n, upper
 	work  []float64 // n × n: what chol holds
 	chol  blas64.Symmetric
+	plain bool      // chol is the factor of H, all of it and without damping
+	built []int     // theta of H
 	mb    []float64 // (J·F) × F and (K·F) × F: D'K without the score in front
 	mc    []float64
 	inv   []float64 // F × F scratch
@@ -47,16 +50,7 @@ func (n *newton) sigma2() float64 {
 		cells += n.p - len(n.gaps[i])
 	}
 	dof := float64(cells - len(n.theta) - n.i*n.f)
-	return math.Max(n.sse(), roundOff*n.x2) / math.Max(dof, 1)
-}
-
-// sse sums the squares of the scaled residuals themselves.
-func (n *newton) sse() float64 {
-	var v float64
-	for i := range n.i {
-		v += sumSquares(n.residualOf(i))
-	}
-	return v
+	return math.Max(n.loss, roundOff*n.x2) / math.Max(dof, 1)
 }
 
 // gradient solves for the scores and sets grad and the list of entries that can
@@ -108,8 +102,13 @@ func (n *newton) entry(e int) (*float64, bool) {
 
 // build sets H over theta.
 func (n *newton) build() {
+	n.plain, n.built = false, append(n.built[:0], n.theta...)
 	m := len(n.theta)
-	n.h = make([]float64, m*m)
+	if cap(n.h) < m*m {
+		n.h = make([]float64, m*m)
+	}
+	n.h = n.h[:m*m]
+	clear(n.h)
 	n.blocks()
 	n.projectScores()
 	n.pin()
@@ -136,6 +135,7 @@ func (n *newton) factor(damp float64, keep []bool) bool {
 			}
 		}
 		n.chol = blas64.Symmetric{N: m, Stride: m, Data: h, Uplo: blas.Upper}
+		n.plain = shift == 0 && keep == nil
 		if _, ok := lapack64.Potrf(n.chol); ok {
 			return true
 		}
@@ -403,7 +403,7 @@ func (n *newton) triangle() blas64.Triangular {
 // decrement factors H and sets delta. It says false where H is singular.
 func (n *newton) decrement() bool {
 	n.delta = math.Inf(1)
-	if len(n.theta) == 0 || !n.factor(0, nil) {
+	if len(n.theta) == 0 || !n.plain && !n.factor(0, nil) {
 		return false
 	}
 	step := n.solve(nil, nil)
@@ -443,7 +443,7 @@ func (n *newton) solve(keep []bool, to []float64) []float64 {
 // below zero: entries that would go there are set there and the others solved
 // again, a few times.
 func (n *newton) bounded(damp float64) []float64 {
-	if !n.factor(damp, nil) {
+	if !(damp == 0 && n.plain) && !n.factor(damp, nil) {
 		return nil
 	}
 	step := n.solve(nil, nil)
@@ -474,34 +474,53 @@ func (n *newton) bounded(damp float64) []float64 {
 }
 
 const (
-	newtonSteps = 20   // at most, 0 for a model that two components share
+	newtonSteps = 40   // at most, 0 for a model that two components share
 	recuts      = 3    // times a step is solved again with what went below zero set there
 	certified   = 0.1  // δ of a converged fit
 	goodEnough  = 1e-3 // δ at which the steps end
+	goodForNow  = 0.03 // the same while a number of components is being chosen
 )
 
 // finish takes Gauss–Newton steps, damped as Levenberg and Marquardt do, until
-// the certificate is good or no step lowers the loss any more.
-func (n *newton) finish(ctx context.Context, steps int) error {
+// the certificate is enough or no step lowers the loss any more. H is built anew
+// only when other entries move or the last step did little: near the end it stays
+// what it was, and a step costs two readings of the samples.
+func (n *newton) finish(ctx context.Context, steps int, enough float64) error {
 	n.gradient()
-	before, damp := math.Inf(1), 0.0
+	n.build()
+	if !n.decrement() {
+		return nil
+	}
+	damp, stale := 0.0, 0
 	for range steps {
 		if err := ctx.Err(); err != nil {
 			return err
 		}
-		n.build()
-		if !n.decrement() || n.delta <= goodEnough || n.delta <= certified && n.delta > before/2 {
-			return nil
-		}
-		slow := n.delta > 0.9*before
-		if damp = n.step(damp); math.IsInf(damp, 1) || slow && damp > 1e-3 {
+		if n.delta <= enough {
 			break
 		}
-		before = n.delta
+		before := n.delta
+		if damp = n.step(damp); math.IsInf(damp, 1) {
+			break
+		}
 		n.iter++
+		if !n.plain || !slices.Equal(n.theta, n.built) {
+			n.build()
+		}
+		if !n.decrement() {
+			return nil
+		}
+		if n.delta > 0.9*before {
+			n.plain = false
+			if stale++; stale > 3 {
+				break
+			}
+		}
 	}
-	n.build()
-	n.decrement()
+	if !n.plain || !slices.Equal(n.theta, n.built) {
+		n.build()
+		n.decrement()
+	}
 	return nil
 }
 
