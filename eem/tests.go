@@ -74,6 +74,13 @@ var Tests = sortTests([]Test{
 	{"scan-repeated", Doubt, 0, "scans", "two excitations hold the same numbers", "common practice, no source"},
 	{"negative", Doubt, 1, "%", "share of the cells below −3 standard deviations after the blank was subtracted", "0.13 % expected of normal noise, computed; limit: common practice, no source"},
 	{"noise-default", Remark, 0, "", "fewer than three blanks, so that the noise was estimated from the bottle itself", "-"},
+	{"holding-time", Doubt, 7, "days", "the bottle was measured later after sampling than the limit", "at most 7 d cold and dark: common practice, no source"},
+	{"same-content", Doubt, 0, "files", "raw files of two bottles hold the same bytes", "-"},
+	{"unused-file", Remark, 0, "files", "raw files lie beside those of the sheet and no row uses them", "-"},
+	{"dilution-differs", Doubt, 10, "%", "a bottle and its replicate at another dilution differ by more than the limit after all corrections: inner filter, quenching or a wrong dilution", "common practice, no source"},
+	{"no-temperature", Doubt, 0, "", "the bottle's temperature is not given, so that it was not brought to the reference temperature", "-"},
+	{"index-refused", Remark, 0, "indices", "an index of the water is not given, because its wavelengths were not measured or were filled", "more than 20 % of its window filled: common practice, no source"},
+	{"band-default", Remark, 0, "", "a scatter band's width could not be found from the blanks, so that the stated one holds", "-"},
 	{"sheet-hidden", Remark, 0, "rows", "hidden rows of the workbook were read like the others", "-"},
 })
 

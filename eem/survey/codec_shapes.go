@@ -76,9 +76,10 @@ func offsetCodec() codec {
 	}
 }
 
-func stepsCodec() codec {
+// stepsCodec takes a list of some of the names, none twice.
+func stepsCodec(names []string) codec {
 	return codec{
-		what: "a list of " + oneOf(AppliedSteps),
+		what: "a list of " + oneOf(names),
 		read: func(field, v any) error {
 			list, ok := v.([]any)
 			if !ok {
@@ -90,8 +91,8 @@ func stepsCodec() codec {
 				switch {
 				case !ok:
 					return errRefused
-				case !slices.Contains(AppliedSteps, s):
-					return errors.New("it holds " + quote(s) + didYouMean(s, AppliedSteps))
+				case !slices.Contains(names, s):
+					return errors.New("it holds " + quote(s) + didYouMean(s, names))
 				case slices.Contains(steps, s):
 					return errors.New("it holds " + quote(s) + " twice")
 				}
@@ -218,11 +219,17 @@ func temperatureCodec() codec {
 }
 
 // bandCodec takes the widths of a band; "auto" keeps the stated default widths
-// beside it, which hold where nothing can be found.
-func bandCodec(below, above float64) codec {
-	names := []string{"below", "above"}
+// beside it, which hold where nothing can be found. A Raman band may also be given
+// as a stretch of shifts, cm⁻¹, which widens with the excitation as the line does;
+// below and above are then taken from its ends.
+func bandCodec(b Band, raman bool) codec {
+	below, above := b.Below, b.Above
+	what := `{below, above} in nm, 0 to 300 each, "auto" or "off"`
+	if raman {
+		what = `{below, above} in nm, 0 to 300 each, the same with {from_cm, to_cm} in cm⁻¹, "auto" or "off"`
+	}
 	return codec{
-		what: `{below, above} in nm, 0 to 300 each, "auto" or "off"`,
+		what: what,
 		read: func(field, v any) error {
 			switch v {
 			case any("auto"):
@@ -232,17 +239,11 @@ func bandCodec(below, above float64) codec {
 				*field.(*Band) = Band{Off: true}
 				return nil
 			}
-			vs, err := fields(v, names...)
-			if err != nil {
-				return err
+			b, err := readBand(v, raman)
+			if err == nil {
+				*field.(*Band) = b
 			}
-			width := bounds{hi: 300, unit: "nm"}
-			x, err := numbers(vs, names, width, width)
-			if err != nil {
-				return err
-			}
-			*field.(*Band) = Band{Below: x[0], Above: x[1]}
-			return nil
+			return err
 		},
 		write: func(field any) string {
 			b := field.(*Band)
@@ -251,8 +252,36 @@ func bandCodec(below, above float64) codec {
 				return `"off"`
 			case b.Auto:
 				return `"auto"`
+			case b.ToCM > 0:
+				return fmt.Sprintf("{below = %s, above = %s, from_cm = %s, to_cm = %s}",
+					tomlNumber(b.Below), tomlNumber(b.Above), tomlNumber(b.FromCM), tomlNumber(b.ToCM))
 			}
 			return fmt.Sprintf("{below = %s, above = %s}", tomlNumber(b.Below), tomlNumber(b.Above))
 		},
 	}
+}
+
+// readBand takes the widths of a band, those of a Raman band with or without shifts.
+func readBand(v any, raman bool) (Band, error) {
+	names := []string{"below", "above"}
+	width, shift := bounds{hi: 300, unit: "nm"}, bounds{lo: 1, hi: 10_000, unit: "cm⁻¹"}
+	within := []bounds{width, width}
+	if m, ok := v.(map[string]any); ok && raman && (m["from_cm"] != nil || m["to_cm"] != nil) {
+		names, within = append(names, "from_cm", "to_cm"), append(within, shift, shift)
+	}
+	vs, err := fields(v, names...)
+	if err != nil {
+		return Band{}, err
+	}
+	x, err := numbers(vs, names, within...)
+	if err != nil {
+		return Band{}, err
+	}
+	b := Band{Below: x[0], Above: x[1]}
+	if len(x) > 2 {
+		if b.FromCM, b.ToCM = x[2], x[3]; !(b.FromCM < b.ToCM) {
+			return Band{}, errors.New("from_cm must be below to_cm")
+		}
+	}
+	return b, nil
 }

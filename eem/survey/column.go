@@ -40,6 +40,7 @@ var columns = []column{
 	number1("dilution", func(r *Row) *float64 { return &r.Dilution }, from(1, "final volume / sample volume; 1 + 9 is 10"), 1),
 	number1("absorbance_dilution", func(r *Row) *float64 { return &r.AbsorbanceDilution }, from(1, "final volume / sample volume; 1 + 9 is 10"), math.NaN()),
 	words("replicate_of", func(r *Row) *string { return &r.ReplicateOf }),
+	{name: "replicate_kind", set: setReplicateKind, get: func(r *Row) string { return r.ReplicateKind }},
 	words("spike_of", func(r *Row) *string { return &r.SpikeOf }),
 	reason("exclude", func(r *Row) *string { return &r.Exclude }),
 	reason("exclude_from_fit", func(r *Row) *string { return &r.ExcludeFromFit }),
@@ -79,6 +80,15 @@ type limit struct {
 
 func above(lo float64, what string) limit { return limit{lo, true, what} }
 func from(lo float64, what string) limit  { return limit{lo, false, what} }
+
+func setReplicateKind(r *Row, cell, _ string) string {
+	switch cell = strings.ToLower(cell); cell {
+	case "", Laboratory, Field:
+		r.ReplicateKind = cell
+		return ""
+	}
+	return quote(cell) + " is no kind of replicate; write laboratory (measured again) or field (a bottle of its own)"
+}
 
 // number1 is a column of one number; empty cells give def.
 func number1(name string, field func(*Row) *float64, l limit, def float64) column {

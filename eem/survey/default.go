@@ -12,6 +12,7 @@ func Default() *Settings {
 			AbsorbanceLimit: 1.5,
 			Blank:           "batch-mean",
 			BlankMaxAgeDays: 7,
+			SpectralUnits:   "photons",
 		},
 		Intensity: Intensity{Unit: "auto", ExcitationNM: 350, WindowNM: [2]float64{371, 428}, Baseline: "none"},
 		Scatter: Scatter{

@@ -23,6 +23,12 @@ const (
 // Kinds lists every kind in the order of the documents.
 var Kinds = []Kind{Sample, Blank, FieldBlank, Standard, Control, Spike}
 
+// What a replicate repeats.
+const (
+	Laboratory = "laboratory" // the measurement, on liquid of the same bottle
+	Field      = "field"      // the sampling too: a bottle of its own, filled at the same place and time
+)
+
 // Conc is one known concentration of a row, in the liquid scanned and before
 // its dilution.
 type Conc struct {
@@ -65,6 +71,7 @@ type Row struct {
 	AbsorbanceDilution float64 // the same for the absorbance file, ≥ 1, default Dilution
 
 	ReplicateOf, SpikeOf    string // ids
+	ReplicateKind           string // of what ReplicateOf names: Laboratory (also empty) or Field
 	Exclude, ExcludeFromFit string // reasons; empty: the row takes part
 
 	DOC          float64 // dissolved organic carbon, mg/L, NaN unknown

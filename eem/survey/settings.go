@@ -73,10 +73,17 @@ type Correct struct {
 	Blank           string  // batch-mean, listed, latest, none
 	BlankMaxAgeDays float64 // how old a blank may be for "latest"; 0: any age
 	Temperature     Temperature
+	SpectralUnits   string   // photons, energy: what the factors bring intensities to
+	Off             []string // steps, of OffSteps, that are not done
 }
 
+// OffSteps are the names of the steps that correct.off may hold, in their order.
+// Tests that change nothing are no steps; quality.accept quiets them.
+var OffSteps = []string{"saturation", "dropped-scans", "spikes", "offset", "spectral", "inner-filter", "blank", "intensity",
+	"temperature", "dilution", "scatter"}
+
 // Temperature brings fluorescence to a reference temperature by
-// F·(1 + PercentPerC/100·(T − ReferenceC)). The zero value is off.
+// F / (1 − PercentPerC/100·(T − ReferenceC)). The zero value is off.
 type Temperature struct {
 	On          bool
 	ReferenceC  float64 // °C
@@ -107,6 +114,7 @@ type Orders struct {
 // stated ones that hold until then; with Off nothing is removed.
 type Band struct {
 	Below, Above float64
+	FromCM, ToCM float64 // cm⁻¹, of a Raman band that is stretched over these shifts; 0 of another
 	Auto, Off    bool
 }
 

@@ -163,11 +163,11 @@ func TestEveryKey(t *testing.T) {
 		Correct: Correct{ExcitationFactors: "correction/ex.csv", EmissionFactors: "correction/em.csv",
 			InnerFilter: "front-face", ExcitationWindowCM: [2]float64{0.3, 0.7}, EmissionWindowCM: [2]float64{0.4, 0.6},
 			AbsorbanceLimit: 2, Blank: "latest", BlankMaxAgeDays: 1,
-			Temperature: Temperature{On: true, ReferenceC: 20, PercentPerC: 1.1}},
+			Temperature: Temperature{On: true, ReferenceC: 20, PercentPerC: 1.1}, SpectralUnits: "energy", Off: []string{"spikes"}},
 		Intensity: Intensity{Unit: "raman", ExcitationNM: 275, WindowNM: [2]float64{290, 320}, Baseline: "straight"},
 		Scatter: Scatter{
 			Rayleigh: Orders{First: Band{Below: 20, Above: 12.5}, Second: Band{Off: true}},
-			Raman:    Orders{First: Band{Below: 10, Above: 15, Auto: true}, Second: Band{}},
+			Raman:    Orders{First: Band{Below: 10, Above: 15, Auto: true}, Second: Band{FromCM: 2400, ToCM: 4650}},
 			Fill:     "interpolate"},
 		Quantify: Quantify{References: "file", File: "library.csv", Limits: "limits.csv"},
 		Resolve: Resolve{Components: Components{"range", 3, 5}, Choose: 4, Because: "the fifth repeats the second",
