@@ -225,6 +225,14 @@ func uniqueIDs(list []*drafted) []*drafted {
 		if count[strings.ToLower(b.id)] > 1 || b.id == "" {
 			b.id = strings.NewReplacer("/", "-", "*", "").Replace(strings.TrimSuffix(b.scans, path.Ext(b.scans)))
 		}
+		b.id = strings.TrimLeft(b.id, "=+-@ ") // what a spreadsheet would take for a formula
+	}
+	taken := map[string]int{}
+	for _, b := range list {
+		l := strings.ToLower(b.id)
+		if taken[l]++; taken[l] > 1 || l == "" {
+			b.id = fmt.Sprintf("%s (%d)", b.id, taken[l])
+		}
 	}
 	slices.SortFunc(list, func(a, b *drafted) int { return strings.Compare(a.id, b.id) })
 	return list

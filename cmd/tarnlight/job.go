@@ -101,6 +101,11 @@ func (j *job) readInputs() error {
 	if err != nil || !info.IsDir() {
 		return fmt.Errorf("%s: no such survey folder; a survey is a folder with a runsheet.csv or runsheet.xlsx (tarnlight begin drafts one)", j.dir)
 	}
+	if j.settings != "" {
+		if _, err := os.Stat(j.settings); err != nil {
+			return fmt.Errorf("--settings: %w", err)
+		}
+	}
 	if j.set, err = survey.ReadSettings(j.settingsPath()); err != nil {
 		return err
 	}
