@@ -132,7 +132,7 @@ func (r *results) overview() [][2]string {
 	if excluded > 0 {
 		out[0][1] += fmt.Sprintf("; %d excluded by the run sheet", excluded)
 	}
-	out = append(out, [2]string{"Quality", fmt.Sprintf("%d without doubt, %d with a doubt (sheet Flags), %d not usable", count[eem.Remark], count[eem.Doubt], count[eem.Reject])})
+	out = append(out, [2]string{"Quality", fmt.Sprintf("%d without doubt, %d with a doubt, %d not usable", count[eem.Remark], count[eem.Doubt], count[eem.Reject])})
 	for _, m := range r.methods() {
 		var names []string
 		for _, s := range r.series {
@@ -191,9 +191,9 @@ func (r *results) componentSummary(s *sheet) {
 		if m := len(found); m > 0 {
 			lo, mid, hi = found[0], (found[m/2]+found[(m-1)/2])/2, found[m-1]
 		}
-		f := look{format: decimalFormat(decimals(hi/100, 1)), line: true}
+		f := func(v float64) cell { return cell{v, look{format: sigFormat(v, 3), line: true}} }
 		s.add(0, cell{fmt.Sprintf("%d %s", i+1, plain(r.label(c))), look{line: true, wrap: true}}, cell{c.unit, look{line: true}},
-			cell{fmt.Sprintf("%d of %d", len(found), n), look{line: true, right: true}}, cell{lo, f}, cell{mid, f}, cell{hi, f}, cell{cut(plain(where), 60), look{line: true, wrap: true, indent: true}})
+			cell{fmt.Sprintf("%d of %d", len(found), n), look{line: true, right: true}}, f(lo), f(mid), f(hi), cell{cut(plain(where), 60), look{line: true, wrap: true, indent: true}})
 	}
 	s.skip(1)
 }
@@ -207,6 +207,14 @@ func decimalFormat(d int) string {
 		return "0.00E+00"
 	}
 	return "0." + strings.Repeat("0", d)
+}
+
+// sigFormat is the number format that shows v with d significant digits.
+func sigFormat(v float64, d int) string {
+	if v == 0 || !finite(v) {
+		return "0"
+	}
+	return decimalFormat(d - 1 - exponent(v, d))
 }
 
 // batchSummary is the table of verdicts.
@@ -261,7 +269,7 @@ type resultColumn struct {
 func (r *results) knownColumns() []resultColumn {
 	t := r.table["samples.csv"]
 	var out []resultColumn
-	for _, c := range []resultColumn{{"Kind", "kind", 11}, {"Site", "site", 16}, {"Sampled", "sampled", 11}, {"Measured", "measured", 11}, {"Dilution", "dilution", 8}} {
+	for _, c := range []resultColumn{{"Kind", "kind", 11}, {"Site", "site", 16}, {"Sampled", "sampled", 15}, {"Measured", "measured", 15}, {"Dilution", "dilution", 8}} {
 		col, used := t.Col(c.name), false
 		for _, b := range r.bottles {
 			v := t.Text(b.row, col)
@@ -393,7 +401,7 @@ func severityLook(s eem.Severity) (string, look) {
 func (r *results) remarks(x *bottle) string {
 	var out []string
 	say := func(s string) {
-		if s != "" && !slices.Contains(out, s) {
+		if s != "" && !strings.Contains(strings.Join(out, "; "), s) {
 			out = append(out, s)
 		}
 	}
@@ -409,7 +417,9 @@ func (r *results) remarks(x *bottle) string {
 	}
 	for _, c := range r.series {
 		if k := x.of[c]; k != nil {
-			say(k.reasons)
+			for _, reason := range strings.Split(k.reasons, "; ") {
+				say(reason)
+			}
 		}
 	}
 	return strings.Join(out, "; ")
@@ -453,10 +463,13 @@ func (r *results) flagsSheet(b *book) {
 				accepted = r.s.Accepts[text(i, "test")]
 			}
 			l.hair = true
-			g, w := look{format: "General", hair: true}, look{wrap: true, hair: true}
+			w := look{wrap: true, hair: true}
+			g := func(name string) cell {
+				v := t.Float(i, t.Col(name))
+				return cell{v, look{format: sigFormat(v, 4), hair: true}}
+			}
 			s.add(0, cell{severity.String(), l}, cell{visible(text(i, "id")), w}, cell{text(i, "batch"), w}, cell{text(i, "component"), w},
-				cell{text(i, "message"), w}, cell{what, look{color: midGrey, wrap: true, hair: true}}, cell{t.Float(i, t.Col("value")), g},
-				cell{t.Float(i, t.Col("limit")), g}, cell{accepted, look{wrap: true, hair: true, indent: true}})
+				cell{text(i, "message"), w}, cell{what, look{color: midGrey, wrap: true, hair: true}}, g("value"), g("limit"), cell{accepted, look{wrap: true, hair: true, indent: true}})
 		}
 	}
 	s.table("Flags", 3, len(heads))

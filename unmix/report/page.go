@@ -41,6 +41,7 @@ type page struct {
 	Columns             []pageColumn
 	Rows                []pageRow
 	Kinds, Tests        []string
+	Others              bool // bottles that are not reported: water, standards, controls
 	Methods             []pageChoice
 	Unit                string
 	Components, Survey  []pageFigure
@@ -72,6 +73,7 @@ type pageRow struct {
 	Index                    int
 	ID, Kind, Tests, Verdict string
 	Class                    string
+	Other                    bool
 	Cells                    []pageCell
 }
 
@@ -324,7 +326,7 @@ func (r *results) pageRows(v *page) {
 		v.Columns = append(v.Columns, pageColumn{Head: k.head, Number: k.name == "dilution"})
 	}
 	for _, c := range r.series {
-		v.Columns = append(v.Columns, pageColumn{Head: r.label(c), Title: joinNonEmpty(", ", methodName(c.method), c.unit), Number: true})
+		v.Columns = append(v.Columns, pageColumn{Head: strings.TrimSpace(r.label(c) + " " + c.unit), Title: methodName(c.method), Number: true})
 	}
 	v.Columns = append(v.Columns, pageColumn{"Explained %", "share of the bottle's sum of squares that the components explain", true},
 		pageColumn{"Structure z", "how alike neighbouring residuals are: Moran's I in standard deviations", true},
@@ -341,9 +343,15 @@ func (r *results) pageRows(v *page) {
 		if !slices.Contains(v.Kinds, row.Kind) {
 			v.Kinds = append(v.Kinds, row.Kind)
 		}
+		if !b.reportable() {
+			row.Other, v.Others = true, true
+		}
 		row.Tests = r.bottleTests(b, tests)
 		for _, k := range known {
 			c := pageCell{Text: t.Text(b.row, t.Col(k.name))}
+			if _, ok := parseDay(c.Text); ok {
+				c.Text = strings.Replace(c.Text, "T", " ", 1)
+			}
 			if n, ok := number(c.Text); ok && k.name == "dilution" {
 				c.Sort = Number(n)
 			}

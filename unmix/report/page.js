@@ -74,7 +74,7 @@ function filter() {
   let n = 0;
   for (const r of rows) {
     const b = D.bottles[r.dataset.i];
-    const show = verdicts.has(r.dataset.verdict) && (!kind || r.dataset.kind === kind) && (!test || r.dataset.tests.includes(" " + test + " ")) &&
+    const show = verdicts.has(r.dataset.verdict) && (!kind || (kind === "*" ? r.dataset.other === undefined : r.dataset.kind === kind)) && (!test || r.dataset.tests.includes(" " + test + " ")) &&
       (!q || r.textContent.toLowerCase().includes(q) || b.note.toLowerCase().includes(q)) && cols.every(([c, f]) => f(text(r, c), value(r, c)));
     r.hidden = !show;
     n += show;
@@ -83,7 +83,12 @@ function filter() {
 }
 filters.addEventListener("input", filter);
 filters.addEventListener("submit", e => e.preventDefault());
-filters.addEventListener("reset", () => { table.querySelectorAll(".filter input").forEach(i => i.value = ""); setTimeout(filter); });
+$("all").addEventListener("click", () => {
+  table.querySelectorAll(".filter input").forEach(i => i.value = "");
+  filters.querySelectorAll("[name=verdict]").forEach(i => i.checked = true);
+  $("kind").value = $("test").value = $("search").value = "";
+  filter();
+});
 table.tHead.addEventListener("input", filter);
 filter();
 

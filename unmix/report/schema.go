@@ -123,6 +123,8 @@ var Schema = []File{
 		{"notes", "", "number of notes in flags.csv"},
 		{"doubts", "", "number of doubts in flags.csv"},
 		{"rejects", "", "number of rejects in flags.csv"},
+		{"leverage", "", "how much the bottle pulls the resolved model, 0 to 1; empty where it took no part"},
+		{"influence", "standard errors", "largest move of a loading when the bottle is left out"},
 	}},
 	{"flags.csv", "what the checks found", []Column{
 		{"id", "", "the bottle; empty where the finding concerns a batch or the survey"},

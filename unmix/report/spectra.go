@@ -186,7 +186,7 @@ func (n numbers) drawScale(c draw.Canvas, s scale, label string) {
 		v := lo + (float64(i)+0.5)/steps*(s.top-lo)
 		c.FillPolygon(mapPalette[s.index(v)], []vg.Point{{X: x, Y: top - thick}, {X: x + w/steps + 0.3, Y: top - thick}, {X: x + w/steps + 0.3, Y: top}, {X: x, Y: top}})
 	}
-	at := ticks(lo, s.top, 6)
+	at := ticks(lo, s.top, max(2, min(6, int(w/30))))
 	words, power := n.tickText(at)
 	st := textStyle(smallPoints, inkGrey)
 	st.XAlign = draw.XCenter

@@ -110,6 +110,28 @@ func (r *results) inOrder() *places {
 	return p
 }
 
+// labelLast leaves the words on the axis to the last of the plots that stand above
+// one another, and turns them where they would touch.
+func (at *places) labelLast(plots []*plot.Plot) {
+	bare := slices.Clone(at.ticks)
+	for i := range bare {
+		bare[i].Label = " " // a tick without a label would count as a minor one
+	}
+	last := plots[len(plots)-1]
+	for _, p := range plots[:len(plots)-1] {
+		p.X.Label.Text = ""
+		p.X.Tick.Marker = plot.ConstantTicks(bare)
+	}
+	longest := 0
+	for _, t := range at.ticks {
+		longest = max(longest, len([]rune(t.Label)))
+	}
+	if longest*len(at.ticks) > 105 { // letters that fit side by side on the width of the figure
+		last.X.Tick.Label.Rotation = math.Pi / 5
+		last.X.Tick.Label.XAlign, last.X.Tick.Label.YAlign = draw.XRight, draw.YTop
+	}
+}
+
 // figContributions draws a method's contributions across the survey.
 func (r *results) figContributions(method string, at *places) *figure {
 	if at == nil {
@@ -152,10 +174,6 @@ func (r *results) figContributions(method string, at *places) *figure {
 		p := r.num.newPlot(s.component, at.label, s.unit)
 		p.X.Min, p.X.Max, p.Y.Min, p.Y.Max = at.lo, at.hi, 0, 0
 		p.X.Tick.Marker = plot.ConstantTicks(at.ticks)
-		if len(at.ticks) > 12 {
-			p.X.Tick.Label.Rotation = math.Pi / 4
-			p.X.Tick.Label.XAlign, p.X.Tick.Label.YAlign = draw.XRight, draw.YCenter
-		}
 		p.Add(d)
 		if len(limit) > 0 {
 			slices.Sort(limit)
@@ -168,9 +186,7 @@ func (r *results) figContributions(method string, at *places) *figure {
 	if len(plots) == 0 {
 		return nil
 	}
-	for _, p := range plots[:len(plots)-1] {
-		p.X.Label.Text = ""
-	}
+	at.labelLast(plots)
 	return &figure{name: "contributions-" + method + "-by-" + at.name, numbers: num, height: vg.Length(len(plots)) * 34 * vg.Millimeter,
 		caption: "Contributions (" + methodName(method) + ") with 95 % intervals: filled circles found, open circles not detected, triangles unreliable (J); unusable bottles are left out; dashed: median detection limit.",
 		draw:    func(c draw.Canvas) { drawGrid(c, 1, plots) }}

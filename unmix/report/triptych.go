@@ -124,7 +124,7 @@ func (t *triptych) barText(c canvas, x, top int, s scale) {
 	if power != 0 {
 		unit = "10" + superscript(power) + " " + unit
 	}
-	c.text(t.small, unit, x-4, top+panelH+27, left)
+	c.text(t.small, unit, x-4, top+panelH+53, left)
 }
 
 // panels are the three maps of one method, J × K, NaN missing.

@@ -74,7 +74,7 @@ func (r *results) figUnexplained(method string, l *leftover, g eem.Grid) *figure
 	}
 	c.X.Min, c.X.Max, c.Y.Min, c.Y.Max = xmin, xmax, ymin, ymax
 	return &figure{name: "unexplained-" + method, numbers: num, height: 70 * vg.Millimeter,
-		caption: "What the components leave (" + methodName(method) + "), over all bottles. Right: circles mark the largest residual of a bottle where it is above five times the noise; a larger circle is a larger residual.",
+		caption: "What the components leave (" + methodName(method) + "), over all bottles. Right: circles mark where a bottle's largest residual lies (left out where it is within five times the noise); a larger circle is a larger residual.",
 		draw: func(k draw.Canvas) {
 			drawGrid(draw.Crop(k, 0, 0, 13*vg.Millimeter, 0), 3, []*plot.Plot{a, b, c})
 			third := figureWidth / 3
@@ -86,7 +86,8 @@ func (r *results) figUnexplained(method string, l *leftover, g eem.Grid) *figure
 		}}
 }
 
-// hotSpots are the largest residuals that stand out of the noise.
+// hotSpots are the largest residuals that stand out of the noise, where it is
+// known.
 func (r *results) hotSpots(method string) (d *dots, any bool) {
 	t := r.table["samples.csv"]
 	ex, em, v, noise, of := t.Own("hottest_ex_nm"), t.Own("hottest_em_nm"), t.Own("hottest_value"), t.Own("noise_rms"), t.Own("fit_method")
@@ -94,8 +95,8 @@ func (r *results) hotSpots(method string) (d *dots, any bool) {
 	top := 0.0
 	var size []float64
 	for _, b := range r.bottles {
-		h, n := math.Abs(t.Float(b.row, v)), t.Float(b.row, noise)
-		if m := t.Text(b.row, of); !(h > 5*n) || (m != "" && m != method) {
+		h, n := math.Abs(t.Float(b.row, v)), zero(t.Float(b.row, noise))
+		if m := t.Text(b.row, of); !(h > 5*n) || b.worst == eem.Reject || (m != "" && m != method) {
 			continue
 		}
 		d.x, d.y = append(d.x, t.Float(b.row, em)), append(d.y, t.Float(b.row, ex))
