@@ -86,7 +86,7 @@ func conclude(ctx context.Context, c *eem.Cube, p *problem, all []*outcome, enou
 	s.take(best)
 	n := s.newton()
 	steps := newtonSteps
-	if s.shared() {
+	if enough > goodEnough && s.shared() { // refused anyway
 		steps = 0
 	}
 	if err := n.finish(ctx, steps, enough); err != nil {
