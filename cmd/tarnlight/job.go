@@ -228,7 +228,7 @@ func (j *job) references() (*unmix.Set, error) {
 			if !slices.Contains(names, c.Name) {
 				names, units = append(names, c.Name), append(units, c.Unit)
 			}
-			st.Conc[c.Name] = c.Value * b.Row.Dilution // of the bottle, like the corrected EEM
+			st.Conc[c.Name] = c.Value * b.Undiluted() // of the bottle, like the corrected EEM
 		}
 		standards = append(standards, st)
 	}

@@ -4,7 +4,9 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"math"
 	"path/filepath"
+	"slices"
 
 	"tarnlight/eem"
 	"tarnlight/eem/prepare"
@@ -43,10 +45,12 @@ func (j *job) resolvePart(ctx context.Context) error {
 		return err
 	}
 	j.fitNotes()
-	return j.resolveWith(componentsOf(j.fit, true), "parafac", nil)
+	chosen := componentsOf(j.fit)
+	j.keepNames(chosen)
+	return j.resolveWith(chosen, "parafac", nil)
 }
 
-// fits says whether a bottle takes part in the model.
+// inFit says whether a bottle takes part in the model.
 func inFit(b *prepare.Bottle) bool {
 	k := b.Row.Kind
 	return b.Usable() && b.Row.ExcludeFromFit == "" && (k == survey.Sample || k == survey.Spike)
@@ -74,6 +78,9 @@ func (j *job) parafacSettings(g eem.Grid) (*parafac.Settings, error) {
 			return nil, err
 		}
 		for _, c := range held.OnGrid(g).Components {
+			if slices.ContainsFunc(append(slices.Clone(c.Ex), c.Em...), math.IsNaN) {
+				return nil, fmt.Errorf("settings, resolve.hold: %s knows %q only for %s, the survey was measured on %s; narrow [grid] to what it covers", r.Hold, c.Name, held.Grid, g)
+			}
 			s.Hold = append(s.Hold, parafac.Held{Name: c.Name, Ex: c.Ex, Em: c.Em})
 		}
 	}
@@ -81,7 +88,7 @@ func (j *job) parafacSettings(g eem.Grid) (*parafac.Settings, error) {
 }
 
 // componentsOf makes a set of a fit. Its contributions are Fmax.
-func componentsOf(r *parafac.Result, named bool) *unmix.Set {
+func componentsOf(r *parafac.Result) *unmix.Set {
 	s := &unmix.Set{Grid: r.Grid, Unit: r.Unit, Method: "parafac", Origin: fmt.Sprintf("%d components resolved from %d bottles", r.Components, len(r.IDs))}
 	for f := range r.Components {
 		c := unmix.Component{Name: fmt.Sprintf("C%d", f+1), Scale: 1, Ex: r.Ex[f], Em: r.Em[f],
@@ -89,7 +96,7 @@ func componentsOf(r *parafac.Result, named bool) *unmix.Set {
 		if r.ExSE != nil {
 			c.ExU, c.EmU = r.ExSE[f], r.EmSE[f]
 		}
-		if named && r.Held[f] != "" {
+		if r.Held[f] != "" {
 			c.Name = r.Held[f]
 		}
 		s.Components = append(s.Components, c)

@@ -55,6 +55,12 @@ func (j *job) sampleTable() *report.Table {
 			at++
 		}
 		set("largest_inner_filter_factor", b.Largest)
+		if j.fit != nil {
+			if i := slices.Index(j.fit.IDs, b.Row.ID); i >= 0 && j.fit.Leverage != nil {
+				set("leverage", j.fit.Leverage[i])
+				set("influence", j.fit.Influence[i])
+			}
+		}
 		j.opticsColumns(set, b)
 		c := count[b.Row.ID]
 		if c == nil {
@@ -129,16 +135,17 @@ func (j *job) flagTable() *report.Table {
 	return t
 }
 
-// componentTable makes components.csv: references, then every candidate model.
+// componentTable makes components.csv: what the results rest on, then every other
+// candidate model.
 func (j *job) componentTable() *report.Table {
 	t := report.New("components.csv")
 	for _, r := range j.res {
-		if r.Set.Method == "references" {
-			appendSet(t, r.Set, true)
-		}
+		appendSet(t, r.Set, true)
 	}
 	for _, fit := range j.fits {
-		appendSet(t, componentsOf(fit, true), fit == j.fit)
+		if fit != j.fit {
+			appendSet(t, componentsOf(fit), false)
+		}
 	}
 	return t
 }
@@ -192,7 +199,7 @@ func (j *job) batchTable() *report.Table {
 		case eem.Raman:
 			scale = bt.Raman.Area
 		case eem.Quinine:
-			scale = bt.Quinine
+			scale = bt.Quinine.Slope
 		}
 		peak, snr := bt.RamanPeak()
 		c := count[bt.Name]
@@ -281,7 +288,7 @@ func (j *job) given(b *prepare.Bottle, r *unmix.Resolution) []given {
 	var out []given
 	test := map[survey.Kind]string{survey.Control: "control-recovery", survey.Spike: "spike-recovery"}[b.Row.Kind]
 	for _, c := range b.Row.Conc {
-		g := given{component: c.Name, given: c.Value * b.Row.Dilution, test: test}
+		g := given{component: c.Name, given: c.Value * b.Undiluted(), test: test}
 		switch b.Row.Kind {
 		case survey.Standard, survey.Control:
 		case survey.Spike:
