@@ -229,12 +229,12 @@ func (ch *Choice) judge(asked, top int) {
 
 func (c *Candidate) judge() (bool, string) {
 	switch x, y := c.leastSeen(); {
-	case c.Status != Converged:
-		return false, fmt.Sprintf("the fit did not converge in %d iterations, a sign of too many components", c.Iterations)
 	case c.TripleCosine > sharedTriple:
 		return false, fmt.Sprintf("components %d and %d are one shared by two (triple cosine %.2f above %.1f)", c.TriplePair[0]+1, c.TriplePair[1]+1, c.TripleCosine, sharedTriple)
 	case c.TripleCosine < -0.85:
 		return false, fmt.Sprintf("components %d and %d cancel each other (triple cosine %.2f)", c.TriplePair[0]+1, c.TriplePair[1]+1, c.TripleCosine)
+	case c.Status != Converged:
+		return false, fmt.Sprintf("the fit did not converge in %d iterations, a sign of too many components", c.Iterations)
 	case y < mostlySeen:
 		return false, fmt.Sprintf("only %.0f %% of the loadings of component %d are open to the data", 100*y, x+1)
 	case c.Halves > 0 && 2*c.HalvesOK <= c.Halves:

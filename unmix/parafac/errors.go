@@ -25,9 +25,8 @@ func (n *newton) influence() *influence {
 	if m == 0 || n.chol.N != m || n.shared() {
 		return in
 	}
-	// A sample's residual is smaller for its having been fitted; the factor
-	// brings the first order to what leaving out one sample gives.
-	grow := math.Sqrt(float64(n.i) / math.Max(1, float64(n.i-n.f)))
+	// A sample's residuals are smaller for its having been fitted.
+	h := n.leverage()
 	lapack64.Potri(n.triangle()) // in place: chol is not a factor any more
 	inv := blas64.General{Rows: m, Cols: m, Stride: m, Data: n.chol.Data}
 	for r := range m {
@@ -41,11 +40,34 @@ func (n *newton) influence() *influence {
 		rows := min(batch, n.i-at)
 		for i := range rows {
 			n.sampleGradientTo(g[i*m:(i+1)*m], at+i)
+			scaleBy(g[i*m:(i+1)*m], 1/math.Sqrt(math.Max(1-h[at+i], 0.05)))
 		}
-		blas64.Gemm(blas.NoTrans, blas.NoTrans, grow, blas64.General{Rows: rows, Cols: m, Stride: m, Data: g}, inv,
+		blas64.Gemm(blas.NoTrans, blas.NoTrans, 1, blas64.General{Rows: rows, Cols: m, Stride: m, Data: g}, inv,
 			0, blas64.General{Rows: rows, Cols: m, Stride: m, Data: in.d[at*m:]})
 	}
 	return in
+}
+
+// leverage is the diagonal of A(A'A)⁻¹A', I; zero where A'A is singular.
+func (n *newton) leverage() []float64 {
+	h, f := make([]float64, n.i), n.f
+	l := append([]float64(nil), n.ga...)
+	if !cholesky(l, f, 1e-14) {
+		return h
+	}
+	v := make([]float64, f)
+	for i := range h {
+		copy(v, n.a[i*f:(i+1)*f])
+		forward(l, v, f)
+		h[i] = sumSquares(v)
+	}
+	return h
+}
+
+func scaleBy(x []float64, by float64) {
+	for i := range x {
+		x[i] *= by
+	}
 }
 
 // sampleGradientTo writes the part of the gradient that sample i brings, over
@@ -227,16 +249,11 @@ func (in *influence) modeSE(se, load []float64, damped []bool, rows, x, peak int
 
 func (in *influence) tellSamples(r *Result, sb, sc []float64) {
 	r.Leverage, r.Influence = make([]float64, in.total), make([]float64, in.total)
-	f, m := in.f, len(in.theta)
-	l := append([]float64(nil), in.ga...)
-	ok := cholesky(l, f, 1e-14)
-	v := make([]float64, f)
+	m := len(in.theta)
+	for row, h := range in.leverage() {
+		r.Leverage[in.sample[row]] = h
+	}
 	for row, i := range in.sample {
-		if ok {
-			copy(v, in.a[row*f:(row+1)*f])
-			forward(l, v, f)
-			r.Leverage[i] = sumSquares(v)
-		}
 		for x, e := range in.theta {
 			se := 0.0
 			if e < in.nb {

@@ -153,8 +153,11 @@ func runStarts(ctx context.Context, d *data, f int, set *Settings, above *als) (
 	err = parallel(ctx, set, len(best), "best starts", func(n int) (err error) {
 		o := best[n]
 		o.kept = true
-		for !o.converged && o.s.iter < set.MaxIter && err == nil && !(above != nil && o.s.shared()) {
+		for !o.converged && o.s.iter < set.MaxIter && err == nil {
 			o.converged, err = o.s.iterate(ctx, set.Tol, min(2*screenIter, set.MaxIter-o.s.iter))
+			if above != nil && o.s.shared() {
+				break
+			}
 		}
 		return err
 	})
