@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"io"
 	"os"
+	"slices"
 	"unicode/utf8"
 
 	"golang.org/x/text/encoding/charmap"
@@ -14,16 +15,14 @@ import (
 // Load reads a file of at most MaxFileBytes for the readers that take bytes, so
 // that a caller can hash and parse the same bytes. It refuses what is no regular
 // file.
-func Load(path string) ([]byte, error) {
-	f, err := os.Open(path)
-	if err != nil {
-		return nil, err // names the path
-	}
-	defer f.Close()
-	info, err := f.Stat()
+func Load(path string) ([]byte, error) { return load(path, nil) }
+
+// load reads a file into buf, or into a larger slice where that is too small.
+func load(path string, buf []byte) ([]byte, error) {
+	info, err := os.Stat(path) // before opening, which waits for ever on a pipe
 	switch {
 	case err != nil:
-		return nil, err
+		return nil, err // names the path
 	case info.IsDir():
 		return nil, fmt.Errorf("%s: is a folder; name a file", path)
 	case !info.Mode().IsRegular():
@@ -31,13 +30,18 @@ func Load(path string) ([]byte, error) {
 	case info.Size() > MaxFileBytes:
 		return nil, tooLarge(path)
 	}
+	f, err := openFile(path)
+	if err != nil {
+		return nil, err
+	}
+	defer f.Close()
 	// The file may grow or shrink while it is read: ask for one byte more than
 	// it had, and never for more than the limit.
-	data := make([]byte, 0, info.Size()+1)
+	data := slices.Grow(buf[:0], int(info.Size())+1)
 	for {
 		n, err := f.Read(data[len(data):cap(data)])
 		data = data[:len(data)+n]
-		if err == io.EOF {
+		if err == io.EOF || err == nil && int64(len(data)) == info.Size() && len(data) < cap(data) {
 			return data, nil
 		}
 		if err != nil {
@@ -119,6 +123,9 @@ func fromUTF16(data []byte, order unicode.Endianness) ([]byte, string, error) {
 // letters and digits have in it: nearly all at odd places, or nearly all at even.
 func utf16Order(data []byte) (unicode.Endianness, bool) {
 	head := data[:min(len(data), 4096)]
+	if bytes.IndexByte(head, 0) < 0 {
+		return unicode.LittleEndian, false
+	}
 	var nul [2]int
 	for i, b := range head {
 		if b == 0 {

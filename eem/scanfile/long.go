@@ -168,7 +168,7 @@ func (r *reader) readByColumn(l *longColumns) ([]block, error) {
 			return nil, err
 		}
 	}
-	rr := newRowReader(l.delim, dec, l.line)
+	rr := newRowReader(new(store), l.delim, dec, l.line)
 	rr.want, rr.label = make([]bool, len(l.head)), l.label
 	rr.want[l.ex], rr.want[l.em], rr.want[l.f] = true, true, true
 	if e := rr.read(r.text); e != nil {

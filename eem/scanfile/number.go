@@ -2,8 +2,10 @@ package scanfile
 
 import (
 	"bytes"
+	"encoding/binary"
 	"fmt"
 	"math"
+	"math/bits"
 	"strconv"
 	"strings"
 )
@@ -143,6 +145,23 @@ func prefixNumber(b []byte, dec byte) (float64, int) {
 		v = -v
 	}
 	return v, i
+}
+
+var wholePow10 = [9]uint64{1, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8}
+
+// eightDigits reads the digits at the start of b, eight at most, and says how
+// many there are. b has eight bytes or more.
+func eightDigits(b []byte) (v uint64, n int) {
+	const ones = 0x0101010101010101
+	x := binary.LittleEndian.Uint64(b) ^ '0'*ones // a digit is its value now
+	// The top bit of each byte that is above 9; a carry can only spoil bytes
+	// behind the first such one.
+	other := (x | x + (0x80-10)*ones) & (0x80 * ones)
+	n = bits.TrailingZeros64(other) / 8
+	x <<= uint(64 - 8*n)                   // leading zeros for the digits that are not there
+	x = (x*10 + x>>8) & 0x00ff00ff00ff00ff // pairs of digits
+	x = (x*100 + x>>16) & 0x0000ffff0000ffff
+	return (x*10000 + x>>32) & 0xffffffff, n
 }
 
 // exponent reads a sign and one to three digits.

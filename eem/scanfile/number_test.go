@@ -86,3 +86,40 @@ func TestMissing(t *testing.T) {
 		}
 	}
 }
+
+// The eight-digit path, the loop over digits and strconv agree on every text,
+// whatever follows.
+func TestRowsAgree(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		field := rapid.StringMatching(`[-+]?[0-9]{0,10}([.,][0-9]{0,10})?([eE][-+]?[0-9]{0,3})?[ x]?`)
+		fields := rapid.SliceOfN(field, 1, 5).Draw(t, "fields")
+		eol := rapid.SampledFrom([]string{"", "\n", "\r\n"}).Draw(t, "end")
+		for _, delim := range []byte("\t;") {
+			for _, dec := range []byte(".,") {
+				line := strings.Join(fields, string(delim))
+				quick, slow := newRowReader(new(store), delim, dec, 0), newRowReader(new(store), delim, dec, 0)
+				n, used := quick.plainRow([]byte(line + eol))
+				if n == 0 {
+					continue
+				}
+				m, kind := slow.row([]byte(line), false)
+				if used != len(line+eol) || m != n || kind != numberRow {
+					t.Fatalf("%q: %d cells in %d bytes, and %d of kind %d", line, n, used, m, kind)
+				}
+				for i := range n {
+					want := math.NaN()
+					if f := strings.TrimSpace(fields[i]); f != "" {
+						var err error
+						if want, err = strconv.ParseFloat(strings.Replace(f, string(dec), ".", 1), 64); err != nil {
+							t.Fatal(err)
+						}
+					}
+					a, b := math.Float64bits(quick.cells[i]), math.Float64bits(slow.cells[i])
+					if a != b || a != math.Float64bits(want) && want == want {
+						t.Fatalf("%q: %v and %v, want %v", line, quick.cells[i], slow.cells[i], want)
+					}
+				}
+			}
+		}
+	})
+}

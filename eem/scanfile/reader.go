@@ -10,13 +10,14 @@ import (
 
 // reader is one file on its way from bytes to scans.
 type reader struct {
-	name string
-	set  Settings
-	pat  *Pattern // of set.Excitation, nil where that is empty
-	text []byte
-	rows *rowReader
-	main []block // the blocks that hold scans
-	file *File
+	name  string
+	set   Settings
+	pat   *Pattern // of set.Excitation, nil where that is empty
+	text  []byte
+	store *store
+	rows  *rowReader
+	main  []block // the blocks that hold scans
+	file  *File
 
 	how         string // how the form was understood, for the note
 	exFrom      string // where the excitation was found
@@ -28,10 +29,19 @@ type reader struct {
 
 // ReadBytes is Read on bytes; name stands in messages and may hold the excitation.
 func ReadBytes(name string, data []byte, s *Settings) (*File, error) {
+	st := stores.Get().(*store)
+	defer st.release()
+	return read(name, data, s, st)
+}
+
+// read reads a file with the help of a store, of which nothing is left in the
+// result.
+func read(name string, data []byte, s *Settings, st *store) (*File, error) {
 	r, err := open(name, data, s)
 	if err != nil {
 		return nil, err
 	}
+	r.store = st
 	form := r.set.Form
 	if form == JCAMP || form == Auto && isJCAMP(r.text) {
 		err = r.jcamp()
@@ -47,7 +57,7 @@ func ReadBytes(name string, data []byte, s *Settings) (*File, error) {
 
 // open checks the settings and decodes the file.
 func open(name string, data []byte, s *Settings) (*reader, error) {
-	r := &reader{name: name, file: &File{Path: name}}
+	r := &reader{name: name, file: &File{Path: name}, store: new(store)}
 	if s != nil {
 		r.set = *s
 	}
@@ -124,7 +134,7 @@ func (r *reader) cut() error {
 			return errorf(r.name, line+r.set.Skip, `%w; set scans.decimal = "," or "."`, err)
 		}
 	}
-	r.rows = newRowReader(delim, dec, r.set.Skip)
+	r.rows = newRowReader(r.store, delim, dec, r.set.Skip)
 	if e := r.rows.read(r.text); e != nil {
 		return errorf(r.name, e.line, "%s", e.msg)
 	}

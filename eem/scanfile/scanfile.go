@@ -99,11 +99,14 @@ func (f *File) Of(sample string) []eem.Scan {
 // Read reads one raw file of any form. s may be nil. Errors name file, line and
 // remedy; the path stands in them as given.
 func Read(path string, s *Settings) (*File, error) {
-	data, err := Load(path)
+	st := stores.Get().(*store)
+	defer st.release()
+	data, err := load(path, st.text)
 	if err != nil {
 		return nil, err
 	}
-	return ReadBytes(path, data, s)
+	st.text = data
+	return read(path, data, s, st)
 }
 
 // Factors is a spectral correction: what intensities are multiplied with.

@@ -3,6 +3,7 @@ package scanfile
 import (
 	"bytes"
 	"math"
+	"slices"
 	"strings"
 
 	"tarnlight/eem"
@@ -11,7 +12,7 @@ import (
 // scans makes scans of the blocks: in the given form, or the one that fits.
 func (r *reader) scans(form Form) error {
 	byName := form == Auto || form == Long
-	if byName {
+	if byName && (len(r.rows.blocks) != 1 || len(r.rows.tail) > 0) {
 		if l, ok := r.longText(); ok && l.label >= 0 {
 			return r.named(l)
 		}
@@ -222,7 +223,7 @@ func (r *reader) oneScan(b *block, i int) error {
 // scanOf adds the scan of two columns of a block. Rows that lack both, where
 // scans of unequal length stand side by side, are left out.
 func (r *reader) scanOf(b *block, emCol, fCol int, ex float64, sample string) error {
-	em, f := make([]float64, 0, b.rows), make([]float64, 0, b.rows)
+	em, f := slices.Grow(r.store.em[:0], b.rows), make([]float64, 0, b.rows)
 	var at []int // rows of the block, where some are left out
 	for i := range b.rows {
 		row := r.rowCells(b, i)
@@ -250,6 +251,7 @@ func (r *reader) scanOf(b *block, emCol, fCol int, ex float64, sample string) er
 		}
 		return r.line(b, k)
 	}
+	r.store.em = em // an axis is a copy
 	r.toNM(em, r.saysWavenumber(b, emCol))
 	axis, o, err := r.axis(em, line)
 	if err != nil {

@@ -114,21 +114,31 @@ func sniffDelimiter(text []byte) byte {
 // no further than enoughRows.
 func likeRows(text []byte, delim byte) int {
 	best, run, cols := 0, 0, 0
+	quick := rowReader{store: new(store), delim: delim, dec: '.'}
 	for len(text) > 0 && best < enoughRows {
-		var line []byte
-		line, text = cutLine(text)
-		n := looseRow(line, delim)
-		switch {
-		case n == 0 && len(bytes.TrimSpace(line)) == 0:
-			continue
-		case n == 0:
-			run = 0
-			continue
-		case n != cols:
+		quick.cells = quick.cells[:0]
+		n, used := quick.plainRow(text)
+		if n > 0 {
+			text = text[used:]
+		} else {
+			var line []byte
+			line, text = cutLine(text)
+			n = looseRow(line, delim)
+			switch {
+			case n == 0 && len(bytes.TrimSpace(line)) == 0:
+				continue
+			case n == 0:
+				run = 0
+				continue
+			}
+		}
+		if n != cols {
 			run = 0
 		}
 		cols = n
-		run++
+		if run++; run*n >= enoughRows*enoughRows && run > 3 {
+			return enoughRows // wide rows settle it sooner
+		}
 		best = max(best, run)
 	}
 	return best

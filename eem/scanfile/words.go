@@ -91,6 +91,9 @@ func cellEx(cell string, p *Pattern) (nm float64, rest string, ok bool) {
 			return v, strings.TrimSpace(p.part.ReplaceAllString(cell, "")), true
 		}
 	}
+	if !strings.ContainsAny(cell, "0123456789") {
+		return 0, "", false
+	}
 	if m := plainNM.FindStringSubmatch(strings.TrimSpace(cell)); m != nil {
 		v, err := strconv.ParseFloat(strings.Replace(m[1], ",", ".", 1), 64)
 		return v, "", err == nil && v >= 100

@@ -1,0 +1,7 @@
+//go:build !unix
+
+package scanfile
+
+import "os"
+
+func openFile(path string) (*os.File, error) { return os.Open(path) }
