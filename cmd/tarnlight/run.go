@@ -9,10 +9,21 @@ import (
 	"github.com/spf13/cobra"
 )
 
+// jobCmd makes a verb that works on one survey.
+func jobCmd(s streams, o jobOptions, c *cobra.Command) *cobra.Command {
+	o.verb = c.Name()
+	o.flags(c)
+	c.Args = cobra.ExactArgs(1)
+	c.RunE = func(c *cobra.Command, args []string) error {
+		o.dir = args[0]
+		return runJob(c.Context(), s, o)
+	}
+	return c
+}
+
 // newRunCmd is the whole job.
 func newRunCmd(s streams) *cobra.Command {
-	o := jobOptions{quantify: true, resolve: true, verb: "run"}
-	c := &cobra.Command{
+	return jobCmd(s, jobOptions{quantify: true, resolve: true}, &cobra.Command{
 		Use:   "run SURVEY",
 		Short: "The whole job: read, correct, quantify and/or resolve, report",
 		Long: `run reads the run sheet and the raw files of a survey folder, corrects every
@@ -21,39 +32,25 @@ there are none) and writes the results to SURVEY/out. Raw files are never touche
 older results stay whole until the new ones are complete, and are then kept in
 out.previous.`,
 		Example: "  tarnlight run mysurvey\n  tarnlight run mysurvey --out results --json",
-		Args:    cobra.ExactArgs(1),
-	}
-	o.flags(c)
-	c.RunE = func(c *cobra.Command, args []string) error { o.dir = args[0]; return runJob(c.Context(), s, o) }
-	return c
+	})
 }
 
 // newQuantifyCmd is the part with references.
 func newQuantifyCmd(s streams) *cobra.Command {
-	o := jobOptions{quantify: true, verb: "quantify"}
-	c := &cobra.Command{
+	return jobCmd(s, jobOptions{quantify: true}, &cobra.Command{
 		Use:     "quantify SURVEY",
 		Short:   "Only against references: the sheet's standards or a reference file",
 		Example: "  tarnlight quantify mysurvey",
-		Args:    cobra.ExactArgs(1),
-	}
-	o.flags(c)
-	c.RunE = func(c *cobra.Command, args []string) error { o.dir = args[0]; return runJob(c.Context(), s, o) }
-	return c
+	})
 }
 
 // newResolveCmd is the part without references.
 func newResolveCmd(s streams) *cobra.Command {
-	o := jobOptions{resolve: true, verb: "resolve"}
-	c := &cobra.Command{
+	return jobCmd(s, jobOptions{resolve: true}, &cobra.Command{
 		Use:     "resolve SURVEY",
 		Short:   "Only without references: PARAFAC on the survey's samples",
 		Example: "  tarnlight resolve mysurvey",
-		Args:    cobra.ExactArgs(1),
-	}
-	o.flags(c)
-	c.RunE = func(c *cobra.Command, args []string) error { o.dir = args[0]; return runJob(c.Context(), s, o) }
-	return c
+	})
 }
 
 // runJob does the job and says how it ended.
