@@ -73,6 +73,13 @@ func ridgeScanned(e *eem.EEM) bool {
 	return n >= min(3, e.Ex.Len())
 }
 
+// What a median absolute second difference is divided by to be a standard
+// deviation.
+const (
+	normalMAD = 0.6744897501960817 // the upper quartile of a standard normal
+	sixth     = 2.449489742783178  // √(1+4+1)
+)
+
 // scanNoise is the standard deviation of a cell's noise: the median absolute
 // second difference over what a normal distribution would give, or the root
 // mean square where the median is 0 (counts that are mostly alike).
@@ -95,10 +102,6 @@ func scanNoise(e *eem.EEM) float64 {
 	if len(d) == 0 {
 		return 0
 	}
-	const (
-		normalMAD = 0.6744897501960817 // the upper quartile of a standard normal
-		sixth     = 2.449489742783178  // √(1+4+1)
-	)
 	if m := medianOf(d); m > 0 {
 		return m / normalMAD / sixth
 	}

@@ -148,15 +148,16 @@ func Swapped(e *eem.EEM) *eem.EEM {
 // Negative flags an EEM, blank subtracted, when more than limit percent of its
 // cells lie more than three standard deviations below zero (negative): the blank
 // is contaminated, or of another day. Standard deviations are those of the
-// cells' variances, or of the noise between scans where there are none. limit 0
-// means the default of the test.
+// cells' variances; where there are none, of the noise between scans or along the
+// scan, whichever is larger. limit 0 means the default of the test.
 func Negative(e *eem.EEM, limit float64) *eem.EEM {
 	out := e.Clone()
 	limit = defaultLimit("negative", limit)
-	noise := scanNoise(e)
+	between := scanNoise(e)
 	n, low := 0, 0
 	worst, ex, em := 0.0, 0.0, 0.0
 	for j := range e.Ex.Len() {
+		noise := max(between, alongNoise(e, j)) // spectral factors make some scans noisier
 		for k, v := range e.Row(j) {
 			i := e.Index(j, k)
 			if !measured(e, i) {
@@ -180,6 +181,23 @@ func Negative(e *eem.EEM, limit float64) *eem.EEM {
 			"%.1f %% of the cells are more than three standard deviations below zero after the blank, the lowest at ex %g / em %g nm; look for a contaminated blank or one of another day", share, ex, em)))
 	}
 	return out
+}
+
+// alongNoise is the standard deviation of the noise of scan j, from the median
+// absolute second difference along emission, as in scanNoise; 0 where too few
+// neighbours were measured.
+func alongNoise(e *eem.EEM, j int) float64 {
+	row := e.Row(j)
+	var d []float64
+	for k := 1; k+1 < len(row); k++ {
+		if i := e.Index(j, k); measured(e, i-1) && measured(e, i) && measured(e, i+1) {
+			d = append(d, math.Abs(row[k-1]-2*row[k]+row[k+1]))
+		}
+	}
+	if len(d) < 5 {
+		return 0
+	}
+	return median(d) / normalMAD / sixth
 }
 
 // nms lists wavelengths, the first few of many.

@@ -22,8 +22,8 @@ type Batch struct {
 	Bottles []*Bottle
 	Blanks  []*Bottle // usable blanks
 	Raman   correct.RamanArea
-	Quinine float64 // intensity of 1 µg/L quinine sulfate at ex 350 / em 450 nm, NaN unknown
-	Reason  string  // why the batch has no intensity scale, empty when it has one
+	Quinine correct.QuinineLine // of the batch's quinine standards; Slope NaN unknown
+	Reason  string              // why the batch has no intensity scale, empty when it has one
 	Unit    eem.Unit
 
 	peakNM, peakSNR float64
@@ -66,7 +66,7 @@ func (s *Survey) formBatches() {
 		}
 		bt := s.Find(b.Batch)
 		if bt == nil {
-			bt = &Batch{Name: b.Batch, Setup: b.Row.Setup, Day: b.Row.Measured.Day(), Quinine: nan}
+			bt = &Batch{Name: b.Batch, Setup: b.Row.Setup, Day: b.Row.Measured.Day(), Quinine: correct.QuinineLine{Slope: nan, U: nan}, Raman: correct.RamanArea{Area: nan, U: nan}}
 			s.Batches = append(s.Batches, bt)
 		}
 		bt.Bottles = append(bt.Bottles, b)
@@ -88,7 +88,8 @@ func (s *Survey) formBatches() {
 		}
 	}
 	for _, bt := range s.Batches {
-		bt.findScale(s)
+		bt.checkBlanks(s)
+		bt.findScale()
 		bt.findPeak()
 	}
 }
@@ -143,7 +144,7 @@ func (s *Survey) latest(b *Bottle) []*Bottle {
 }
 
 // findScale looks for what sets the batch's intensity scale.
-func (bt *Batch) findScale(s *Survey) {
+func (bt *Batch) findScale() {
 	first := bt.Bottles[0]
 	set := first.Setting.Intensity
 	blanks := bt.Blanks
@@ -205,7 +206,7 @@ func (s *Survey) chooseUnit() error {
 func (s *Survey) scaled() bool {
 	return slices.ContainsFunc(s.Batches, func(bt *Batch) bool {
 		first := bt.Bottles[0]
-		return first.Setting.Intensity.Unit == "auto" && !first.done(stepIntensity)
+		return first.Setting.Intensity.Unit == "auto" && !first.skips(stepIntensity)
 	})
 }
 
@@ -218,6 +219,9 @@ func (s *Survey) unitOf(bt *Batch) (eem.Unit, error) {
 	if first.done(stepIntensity) {
 		return map[string]eem.Unit{"auto": Given, "raman": eem.Raman, "quinine": eem.Quinine, "counts": eem.Counts}[want], nil
 	}
+	if first.off(stepIntensity) {
+		return eem.Counts, nil
+	}
 	switch want {
 	case "raman":
 		if bt.Reason != "" {
@@ -225,9 +229,8 @@ func (s *Survey) unitOf(bt *Batch) (eem.Unit, error) {
 		}
 		return eem.Raman, nil
 	case "quinine":
-		bt.findQuinine(s)
-		if math.IsNaN(bt.Quinine) {
-			return "", fmt.Errorf("batch %s cannot be given in quinine sulfate units: it has no usable standard with a column conc:quinine… [µg/L] that covers ex 350 / em 450 nm; add one, or set [intensity] unit = \"raman\"", bt.Name)
+		if err := bt.findQuinine(); err != nil {
+			return "", fmt.Errorf("batch %s cannot be given in quinine sulfate units: %w; add standards with a column conc:quinine… [µg/L] that cover ex %d / em %d nm, or set [intensity] unit = \"raman\"", bt.Name, err, quinineEx, quinineEm)
 		}
 		return eem.Quinine, nil
 	case "counts":
@@ -239,30 +242,32 @@ func (s *Survey) unitOf(bt *Batch) (eem.Unit, error) {
 	return eem.Raman, nil
 }
 
-// findQuinine fits the slope, through the blank, of intensity at ex 350 / em 450
-// nm against µg/L of quinine sulfate over the batch's standards.
-func (bt *Batch) findQuinine(s *Survey) {
-	var num, den float64
+// Where quinine sulfate is read, nm, by custom.
+const quinineEx, quinineEm = 350, 450
+
+// findQuinine fits the line of intensity at ex 350 / em 450 nm, blank subtracted,
+// against µg/L of quinine sulfate over the batch's standards.
+func (bt *Batch) findQuinine() error {
+	var es []*eem.EEM
+	var microg []float64
 	for _, b := range bt.Bottles {
-		if b.Row.Kind != survey.Standard || !b.Usable() {
+		if b.Row.Kind != survey.Standard || !b.Usable() || b.Row.ExcludeFromFit != "" {
 			continue
 		}
 		for _, c := range b.Row.Conc {
 			factor, ok := map[string]float64{"µg/l": 1, "μg/l": 1, "ug/l": 1, "ppb": 1, "mg/l": 1000, "ppm": 1000}[strings.ToLower(c.Unit)]
-			if !ok || !strings.Contains(strings.ToLower(c.Name), "quinine") || c.Value <= 0 {
+			if !ok || !strings.Contains(strings.ToLower(c.Name), "quinine") || !(c.Value > 0) {
 				continue
 			}
-			e, err := b.lessBlank()
-			if err != nil {
-				continue
-			}
-			if f := e.Interp(350, 450); !math.IsNaN(f) {
-				x := c.Value * factor
-				num, den = num+x*f, den+x*x
+			// A level that is clipped there has no say.
+			if e, err := b.lessBlank(); err == nil && !math.IsNaN(e.Interp(quinineEx, quinineEm)) {
+				es, microg = append(es, e), append(microg, c.Value*factor)
 			}
 		}
 	}
-	if den > 0 && num > 0 {
-		bt.Quinine = num / den
+	q, err := correct.Quinine(es, microg, quinineEx, quinineEm)
+	if err == nil {
+		bt.Quinine = q
 	}
+	return err
 }

@@ -11,59 +11,99 @@ import (
 	"tarnlight/eem/survey"
 )
 
-// lessBlank subtracts the mean of the bottle's blanks, each on the bottle's grid.
+// lessBlank subtracts the mean of the bottle's blanks.
 func (b *Bottle) lessBlank() (*eem.EEM, error) {
-	if len(b.blanks) == 0 {
-		return b.EEM, nil
-	}
-	es := make([]*eem.EEM, len(b.blanks))
-	for i, blank := range b.blanks {
-		es[i] = blank.raw.Regrid(b.EEM.Grid)
-	}
-	mean, err := correct.Mean(es)
-	if err != nil {
-		return nil, err
+	mean, err := b.blankMean()
+	if mean == nil || err != nil {
+		return b.EEM, err
 	}
 	return correct.Blank(b.raw, mean), nil
 }
 
-// finish does the steps that need the batch: blank, scale, dilution, scatter.
+// removeBlank holds the bottle against its blanks and subtracts their mean.
+func (b *Bottle) removeBlank(s *Survey, e *eem.EEM) *eem.EEM {
+	mean, err := b.blankMean()
+	switch {
+	case err != nil:
+		b.reject(s, "no-blank", err.Error())
+		return e
+	case mean != nil:
+		e = b.checkLight(s, e, mean)
+	}
+	if b.skips(stepBlank) || b.Setting.Correct.Blank == "none" {
+		return e
+	}
+	if mean == nil {
+		if b.Rejected { // it was given none
+			return e
+		}
+		b.flag(s, eem.Note{Test: "no-blank", Severity: eem.Doubt, Msg: b.noBlank()})
+		return e
+	}
+	return correct.Blank(e, mean)
+}
+
+// noBlank says why nothing was subtracted.
+func (b *Bottle) noBlank() string {
+	if b.Setting.Correct.Blank == "latest" {
+		return fmt.Sprintf("no usable blank of this setup was measured in the %g days before, so that none was subtracted; add one, or name one in the blanks column", b.Setting.Correct.BlankMaxAgeDays)
+	}
+	return fmt.Sprintf("batch %s has no usable blank, so that none was subtracted; add one, or name one in the blanks column", b.Batch)
+}
+
+// finish does the steps that need the batch: blank, temperature, scale, dilution,
+// scatter.
 func (b *Bottle) finish(s *Survey) {
 	if b.EEM == nil {
 		return
 	}
-	e := b.EEM
-	if !b.done(stepBlank) && b.Setting.Correct.Blank != "none" {
-		if len(b.blanks) == 0 {
-			b.flag(s, eem.Note{Test: "no-blank", Severity: eem.Doubt,
-				Msg: fmt.Sprintf("batch %s has no usable blank, so that none was subtracted; add one, or name one in the blanks column", b.Batch)})
-		} else if less, err := b.lessBlank(); err != nil {
-			b.reject(s, "no-blank", err.Error())
-		} else {
-			e = less
-		}
-	}
+	e := b.removeBlank(s, b.EEM)
 	s.tell(b, correct.StepBlank, e)
+	e = b.toReference(s, e)
+	s.tell(b, correct.StepTemperature, e)
 	e = b.scaleTo(s, e)
 	s.tell(b, correct.StepScale, e)
-	if !b.done(stepDilution) && b.Row.Dilution != 1 {
+	if !b.skips(stepDilution) && b.Row.Dilution != 1 {
 		e = correct.Dilute(e, b.Row.Dilution)
 	}
 	s.tell(b, correct.StepDilution, e)
-	if !b.done(stepScatter) {
-		e = scatter.Fill(scatter.Mask(e, Bands(b.Setting.Scatter)), b.Setting.Scatter.Fill)
+	if !b.skips(stepScatter) {
+		e = scatter.Mask(e, Bands(b.Setting.Scatter))
+		if len(b.blanks) > 0 && b.Row.Kind != survey.Blank {
+			e = correct.Negative(e, s.Limit("negative")) // what is left of the lines tells nothing
+		}
+		e = scatter.Fill(e, b.Setting.Scatter.Fill)
 	}
 	s.tell(b, scatter.Step, e)
 	for _, step := range b.Setting.Scans.Applied {
 		e.Note(eem.Note{Step: stepNames[step], Msg: "done to the files before they came here; not done again",
 			Params: []eem.Param{{Name: "applied", Value: "before", Source: "settings: scans.applied"}}})
 	}
-	b.EEM = e
-	for _, n := range e.Notes {
-		if n.Test != "" {
-			b.flag(s, n)
-		}
+	for _, step := range b.Setting.Correct.Off {
+		e.Note(eem.Note{Step: stepNames[step], Msg: step + " switched off",
+			Params: []eem.Param{{Name: step, Value: "off", Source: "settings: correct.off"}}})
 	}
+	b.EEM = e
+	b.flagNotes(s, e)
+}
+
+// toReference brings the bottle to the reference temperature of the settings.
+func (b *Bottle) toReference(s *Survey, e *eem.EEM) *eem.EEM {
+	t := b.Setting.Correct.Temperature
+	if !t.On || b.off(stepTemperature) || b.Row.Kind == survey.Blank {
+		return e
+	}
+	rho, msg := -t.PercentPerC/100, ""
+	switch c := b.Row.TemperatureC; {
+	case math.IsNaN(c):
+		msg = "temperature_c is empty, so that the bottle was not brought to the reference temperature; fill it in"
+	case !(1+rho*(c-t.ReferenceC) > 0):
+		msg = fmt.Sprintf("at %g °C a loss of %g %% per °C leaves nothing; correct the cell temperature_c or the setting correct.temperature", c, t.PercentPerC)
+	default:
+		return correct.Temperature(e, c, t.ReferenceC, rho)
+	}
+	b.flag(s, eem.Note{Test: "no-temperature", Severity: eem.Doubt, Msg: msg})
+	return e
 }
 
 // scaleTo brings the intensities to the survey's unit.
@@ -77,6 +117,9 @@ func (b *Bottle) scaleTo(s *Survey, e *eem.EEM) *eem.EEM {
 	switch s.Unit {
 	case eem.Raman:
 		r, err := b.raman(bt)
+		if err == nil && !(r.Area > 0) {
+			err = fmt.Errorf("no blank gives batch %s a Raman area: %s; name a blank in the blanks column", b.Batch, bt.Reason)
+		}
 		if err != nil {
 			b.reject(s, "raman-range", err.Error())
 			return e
@@ -84,9 +127,12 @@ func (b *Bottle) scaleTo(s *Survey, e *eem.EEM) *eem.EEM {
 		b.scale = r.Area
 		return correct.RamanUnits(e, r, b.Batch)
 	case eem.Quinine:
-		b.scale = bt.Quinine
-		return correct.Scale(e, 1/bt.Quinine, eem.Quinine, eem.Note{Step: correct.StepScale, Msg: "divided by the intensity of 1 µg/L quinine sulfate",
-			Params: []eem.Param{{Name: "intensity of 1 µg/L", Value: fmt.Sprint(bt.Quinine), Unit: "counts", Source: "quinine standards of batch " + b.Batch}}})
+		if !(bt.Quinine.Slope > 0) {
+			b.reject(s, "counts", fmt.Sprintf("batch %s has no line of quinine standards to take the intensity scale from", b.Batch))
+			return e
+		}
+		b.scale = bt.Quinine.Slope
+		return correct.QuinineUnits(e, bt.Quinine, b.Batch)
 	}
 	return e
 }
@@ -248,7 +294,7 @@ func (bt *Batch) Verdict() (verdict string, reasons []string) {
 			rejected++
 		}
 	}
-	if bt.Reason != "" && !bt.Bottles[0].done(stepIntensity) {
+	if bt.Reason != "" && !bt.Bottles[0].skips(stepIntensity) {
 		verdict, reasons = "doubt", append(reasons, "no intensity scale: "+bt.Reason)
 	}
 	if rejected > 0 {
@@ -270,8 +316,8 @@ func (bt *Batch) Verdict() (verdict string, reasons []string) {
 // ScaleU returns the relative standard uncertainty of the batch's scale, NaN
 // where it is not known.
 func (bt *Batch) ScaleU() float64 {
-	if bt.Raman.Area > 0 && !math.IsNaN(bt.Raman.U) {
-		return bt.Raman.U / bt.Raman.Area
+	if bt.Unit == eem.Quinine {
+		return bt.Quinine.U / bt.Quinine.Slope
 	}
-	return nan
+	return bt.Raman.U / bt.Raman.Area // NaN where there is no area
 }

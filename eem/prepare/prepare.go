@@ -2,8 +2,9 @@
 //
 // One plan fixes the order of everything that is done to a bottle:
 //
-//	read · no light? · offset · saturation · spectral factors · inner filter ·
-//	blank · intensity scale · dilution · scatter
+//	read · axes swapped? · no light? · saturation · detector · offset ·
+//	spectral factors · inner filter · blank · temperature · intensity scale ·
+//	dilution · scatter
 //
 // The steps up to the inner filter need the bottle alone; blank and scale need
 // the blanks of its batch; the grid needs all samples. One bad bottle never stops
@@ -55,6 +56,7 @@ type Bottle struct {
 	raw     *eem.EEM        // up to the inner filter: what blank and scale start from
 	scanned *eem.Absorbance // of the liquid scanned
 	guesses []Guess
+	told    int       // notes of EEM whose findings are flags already
 	area    float64   // Raman area of a blank, before the blank is removed; NaN unknown
 	scale   float64   // what the intensities were divided by; NaN when they stay as they are
 	blanks  []*Bottle // what its blank and its scale rest on
@@ -224,25 +226,6 @@ func (s *Survey) tell(b *Bottle, step string, e *eem.EEM) {
 // reject marks the bottle as unusable.
 func (b *Bottle) reject(s *Survey, test, msg string) {
 	b.flag(s, eem.Note{Test: test, Severity: eem.Reject, Msg: msg})
-}
-
-// inherit hands the doubts of a blank to every bottle that used it.
-func (s *Survey) inherit() {
-	for _, b := range s.Bottles {
-		if b.Excluded || b.Row.Kind == survey.Blank {
-			continue
-		}
-		for _, blank := range b.blanks {
-			for _, f := range blank.Flags {
-				if f.Severity < eem.Doubt {
-					continue
-				}
-				f.ID, f.Batch, f.Severity = b.Row.ID, b.Batch, eem.Doubt
-				f.Msg = "blank " + blank.Row.ID + ", used here: " + f.Msg
-				b.Flags = append(b.Flags, f)
-			}
-		}
-	}
 }
 
 // collect gathers what the bottles noted.

@@ -61,11 +61,13 @@ func (b *Bottle) read(s *Survey, files []string) {
 	if !b.readAbsorbance(s) {
 		return
 	}
-	if dark, why := b.noLight(e); dark {
-		b.reject(s, "no-light", why+"; look at lamp, shutter and cell, and measure again")
+	e, dead := b.faults(s, e)
+	for _, n := range dead {
+		b.flag(s, n)
 	}
 	b.raw = b.toInnerFilter(s, e)
 	b.EEM = b.raw
+	b.flagNotes(s, b.EEM)
 }
 
 // readScans reads the raw files. Findings of one kind are told once a bottle.
@@ -163,10 +165,8 @@ func geometry(c survey.Correct) correct.Geometry {
 // toInnerFilter does the steps from the detector to the inner filter.
 func (b *Bottle) toInnerFilter(s *Survey, e *eem.EEM) *eem.EEM {
 	set := b.Setting
-	e = correct.Saturate(e, set.Scans.Saturation)
-	s.tell(b, correct.StepSaturation, e)
 	switch {
-	case b.done(stepOffset):
+	case b.skips(stepOffset):
 	case set.Scans.Offset.Auto:
 		if counts, ok := correct.OffsetAuto(e); ok {
 			e = correct.Offset(e, counts)
@@ -175,11 +175,11 @@ func (b *Bottle) toInnerFilter(s *Survey, e *eem.EEM) *eem.EEM {
 		e = correct.Offset(e, set.Scans.Offset.Counts)
 	}
 	s.tell(b, correct.StepOffset, e)
-	if f := s.factors[b.Row.Setup]; !b.done(stepSpectral) && (f.ex != nil || f.em != nil) {
+	if f := s.factors[b.Row.Setup]; !b.skips(stepSpectral) && (f.ex != nil || f.em != nil) {
 		e = correct.Spectral(e, f.ex, f.em)
 	}
 	s.tell(b, correct.StepSpectral, e)
-	if !b.done(stepInner) && set.Correct.InnerFilter != "none" && b.needsAbsorbance() {
+	if !b.skips(stepInner) && set.Correct.InnerFilter != "none" && b.needsAbsorbance() {
 		limit := set.Correct.AbsorbanceLimit
 		var factor []float64
 		g := geometry(set.Correct)
@@ -194,6 +194,17 @@ func (b *Bottle) toInnerFilter(s *Survey, e *eem.EEM) *eem.EEM {
 	}
 	s.tell(b, correct.StepInner, e)
 	return e
+}
+
+// flagNotes turns the findings among the notes of e that were not told before into
+// flags. Steps only ever append notes.
+func (b *Bottle) flagNotes(s *Survey, e *eem.EEM) {
+	for _, n := range e.Notes[min(b.told, len(e.Notes)):] {
+		if n.Test != "" {
+			b.flag(s, n)
+		}
+	}
+	b.told = len(e.Notes)
 }
 
 // needsAbsorbance is false for pure water, which absorbs nothing, unless an

@@ -8,12 +8,14 @@ import (
 )
 
 // Steps lists what is done to a bottle, in order.
-var Steps = []string{"read", correct.StepSaturation, correct.StepOffset, correct.StepSpectral, correct.StepInner,
-	correct.StepBlank, correct.StepScale, correct.StepDilution, scatter.Step}
+var Steps = []string{"read", correct.StepSaturation, correct.StepDetector, correct.StepOffset, correct.StepSpectral, correct.StepInner,
+	correct.StepBlank, correct.StepTemperature, correct.StepScale, correct.StepDilution, scatter.Step}
 
-// stepNames maps the words of [scans] applied to the steps.
+// stepNames maps the words of [scans] applied and [correct] off to the steps.
 var stepNames = map[string]string{stepOffset: correct.StepOffset, stepSpectral: correct.StepSpectral, stepInner: correct.StepInner,
-	stepBlank: correct.StepBlank, stepIntensity: correct.StepScale, stepDilution: correct.StepDilution, stepScatter: scatter.Step}
+	stepBlank: correct.StepBlank, stepIntensity: correct.StepScale, stepDilution: correct.StepDilution, stepScatter: scatter.Step,
+	stepSaturation: correct.StepSaturation, stepDropped: correct.StepDetector, stepSpikes: correct.StepDetector,
+	stepTemperature: correct.StepTemperature}
 
 // StepOrder returns the place of a step, from 1; 0 when there is no such step.
 func StepOrder(step string) int { return slices.Index(Steps, step) + 1 }
