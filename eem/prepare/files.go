@@ -43,7 +43,7 @@ func (s *Survey) resolve() ([][]string, error) {
 			b.reject(s, "unreadable", err.Error())
 			continue
 		}
-		files[i] = list
+		files[i], b.claims = list, list
 		for _, f := range list {
 			if other, taken := owner[f]; taken {
 				return nil, fmt.Errorf("%s:%d: raw file %s belongs to %q (line %d) and to %q (line %d); make the scans cells more exact, for example %q instead of %q",

@@ -53,13 +53,15 @@ type Bottle struct {
 	Excluded bool // takes part in nothing
 	Rejected bool // no number of it is usable
 
-	raw     *eem.EEM        // up to the inner filter: what blank and scale start from
-	scanned *eem.Absorbance // of the liquid scanned
-	guesses []Guess
-	told    int       // notes of EEM whose findings are flags already
-	area    float64   // Raman area of a blank, before the blank is removed; NaN unknown
-	scale   float64   // what the intensities were divided by; NaN when they stay as they are
-	blanks  []*Bottle // what its blank and its scale rest on
+	raw       *eem.EEM        // up to the inner filter: what blank and scale start from
+	scanned   *eem.Absorbance // of the liquid scanned
+	guesses   []Guess
+	scanFiles []Input   // the raw scans among Files
+	claims    []string  // files that the scans cell names
+	told      int       // notes of EEM whose findings are flags already
+	area      float64   // Raman area of a blank, before the blank is removed; NaN unknown
+	scale     float64   // what the intensities were divided by; NaN when they stay as they are
+	blanks    []*Bottle // what its blank and its scale rest on
 }
 
 // Usable says whether the bottle has numbers that may be used.
@@ -125,6 +127,9 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 		return nil, err
 	}
 	s.inherit()
+	s.sameContent()
+	s.compareDilutions()
+	s.unusedFiles()
 	s.collect()
 	return s, nil
 }
@@ -142,6 +147,9 @@ func (s *Survey) list() error {
 			b.flag(s, eem.Note{Test: "excluded", Severity: eem.Remark, Msg: "excluded by the sheet: " + row.Exclude})
 		} else if row.ExcludeFromFit != "" {
 			b.flag(s, eem.Note{Test: "excluded-from-fit", Severity: eem.Remark, Msg: "left out of model, references and charts: " + row.ExcludeFromFit})
+		}
+		if !b.Excluded {
+			b.checkHolding(s)
 		}
 		s.Bottles = append(s.Bottles, b)
 	}

@@ -79,7 +79,7 @@ func (b *Bottle) readScans(s *Survey, files []string) ([]eem.Scan, bool) {
 	for _, path := range files {
 		data, in, err := s.load(path)
 		if err == nil {
-			b.Files = append(b.Files, in)
+			b.Files, b.scanFiles = append(b.Files, in), append(b.scanFiles, in)
 			var f *scanfile.File
 			if f, err = scanfile.ReadBytes(in.Path, data, set); err == nil {
 				scans = append(scans, b.own(f)...)
