@@ -92,6 +92,7 @@ func (s *Survey) formBatches() {
 		bt.findScale()
 		bt.findPeak()
 	}
+	s.findBands()
 }
 
 // blanksOf returns the blanks that serve a bottle.

@@ -69,6 +69,7 @@ func (b *Bottle) finish(s *Survey) {
 	s.tell(b, correct.StepDilution, e)
 	if !b.skips(stepScatter) {
 		e = scatter.Mask(e, Bands(b.Setting.Scatter))
+		s.sourceOfBands(e)
 		if len(b.blanks) > 0 && b.Row.Kind != survey.Blank {
 			e = correct.Negative(e, s.Limit("negative")) // what is left of the lines tells nothing
 		}
@@ -152,26 +153,6 @@ func (b *Bottle) raman(bt *Batch) (correct.RamanArea, error) {
 	}
 	set := b.Setting.Intensity
 	return correct.Areas(es, set.ExcitationNM, set.WindowNM, set.Baseline)
-}
-
-// Bands returns the bands that the settings remove, first order first.
-func Bands(s survey.Scatter) []scatter.Band {
-	var out []scatter.Band
-	for _, b := range []struct {
-		set    survey.Band
-		line   scatter.Line
-		reason eem.Reason
-	}{
-		{s.Rayleigh.First, scatter.Rayleigh1, eem.Rayleigh1},
-		{s.Raman.First, scatter.Raman1, eem.Raman1},
-		{s.Rayleigh.Second, scatter.Rayleigh2, eem.Rayleigh2},
-		{s.Raman.Second, scatter.Raman2, eem.Raman2},
-	} {
-		if !b.set.Off {
-			out = append(out, scatter.Band{Line: b.line, Below: b.set.Below, Above: b.set.Above, Reason: b.reason})
-		}
-	}
-	return out
 }
 
 // chooseGrid takes the given grid, the stated one or that of the most samples, and

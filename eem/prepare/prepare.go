@@ -80,8 +80,10 @@ type Survey struct {
 	Inputs   []Input // without repeats, sorted by path
 	Guesses  []Guess // how raw files were taken
 
-	factors map[string]factorPair // by setup
-	trace   func(b *Bottle, step string, e *eem.EEM)
+	factors      map[string]factorPair  // by setup
+	autoBands    map[string]survey.Band // what was found for "auto", by key of [scatter]
+	defaultBands []string               // the keys among them that no blank showed
+	trace        func(b *Bottle, step string, e *eem.EEM)
 }
 
 // Guess counts the files that were taken in one way.
