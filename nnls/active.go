@@ -18,6 +18,7 @@ type active struct {
 	c          []float64 // k, rotated
 	norm       []float64 // n, of the columns
 	normB      float64   // of the right-hand side, of which c may be a part
+	err, loss  float64   // of the triangle
 	order      []int     // the free variables, in the order of the triangle
 	free       []bool    // n
 	banned     []bool    // n: cannot become free before something else changes
@@ -42,7 +43,7 @@ func (a *active) load(t *triangle, c []float64, normB float64) {
 	copy(a.t, t.t)
 	copy(a.c, c)
 	copy(a.norm, t.norm)
-	a.normB = normB
+	a.normB, a.err, a.loss = normB, t.err, t.loss
 	a.order = a.order[:0]
 	a.iterations = 0
 	clear(a.free)
@@ -184,9 +185,7 @@ func (a *active) tail(j int) float64 { return norm2(a.column(j)[len(a.order):]) 
 
 // negligible is the length below which the part of column j that is orthogonal
 // to the free columns is rounding error.
-func (a *active) negligible(j int) float64 {
-	return float64(max(a.k, a.n)) * 2 * eps * a.norm[j]
-}
+func (a *active) negligible(j int) float64 { return a.err * a.loss * a.norm[j] }
 
 // add frees variable j: one Householder reflection.
 func (a *active) add(j int) {

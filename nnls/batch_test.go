@@ -96,6 +96,47 @@ func TestBatchGaps(t *testing.T) {
 	t.Logf("largest difference from one by one, by kind of gap: %.1e", worst)
 }
 
+// TestGapTakesInformation hides the rows of a component, which shows in the others
+// by 10^−e of its height only, and makes so much of it that it can still be told.
+// The small problem of H alone would be wrong by 10^(2e−16).
+func TestGapTakesInformation(t *testing.T) {
+	const m = 400
+	for e := 1; e <= 9; e++ {
+		d := newDraw(e)
+		a := mat.NewDense(m, 3, nil)
+		b := mat.NewDense(2, m, nil) // exact, and with noise
+		truth := []float64{2, math.Pow10(e), 1}
+		w := make([]float64, m)
+		for k := range m {
+			a.SetRow(k, []float64{d.unit(), math.Pow10(-e) * d.unit(), d.unit()})
+			if w[k] = 1; k >= 100 && k < 150 {
+				a.Set(k, 1, 1+d.unit())
+				w[k] = 0
+			}
+			for j, v := range a.RawRowView(k) {
+				b.Set(0, k, b.At(0, k)+v*truth[j])
+			}
+			b.Set(1, k, b.At(0, k)+3*d.sym())
+			if w[k] == 0 {
+				b.Set(0, k, math.NaN())
+				b.Set(1, k, math.NaN())
+			}
+		}
+		x, want := mat.NewDense(2, 3, nil), make([]float64, 3)
+		res, err := newBatch(t, a, nil).SolveTo(x, b, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if _, err := nnls.SolveTo(want, a, b.RawRowView(1), &nnls.Settings{Weights: w}); err != nil {
+			t.Fatal(err)
+		}
+		near(t, fmt.Sprintf("10^-%d", e), x.RawRowView(0), truth, 1e-12, 0)
+		near(t, fmt.Sprintf("10^-%d with noise", e), x.RawRowView(1), want, 1e-12, 0)
+		certified(t, fmt.Sprintf("10^-%d", e), res[0])
+		certified(t, fmt.Sprintf("10^-%d with noise", e), res[1])
+	}
+}
+
 // TestBatchSameBytes runs samples with other numbers of workers, other
 // neighbours and alone.
 func TestBatchSameBytes(t *testing.T) {
@@ -278,6 +319,57 @@ func TestIterationLimit(t *testing.T) {
 	}
 	if math.IsInf(last, 1) {
 		t.Errorf("%d iterations: the example is too easy", best.Iterations)
+	}
+}
+
+// TestCancellingTerms has an answer whose terms are 10⁶ times b and cancel; a random
+// search found it. Without refinement it is wrong in the fourteenth digit, which is
+// an optimality violated by 1e-10.
+func TestCancellingTerms(t *testing.T) {
+	a := mat.NewDense(4, 9, []float64{
+		1, 1, 1, 0, 1, 1, -1, 1, 1,
+		-1, 1, 1, 0, 1, 1, 0.5, 1, 1,
+		1.52587890625e-05, 1, 1, 0, 1, 1, 3.814697265625e-06, 1, -1,
+		1.52587890625e-05, 1, 1, 0, 1, 1, 7.62939453125e-06, 1, -1,
+	})
+	want := []float64{1376256, 229363, 0, 0, 0, 0, 1835008, 0, 229390}
+	for name, solve := range solvers {
+		x, res := solve(t, a, []float64{1, 1, 1, 8})
+		certified(t, name, res)
+		if x[1] == 0 { // one of four equal columns
+			t.Fatalf("%s: x = %v", name, x)
+		}
+		// SolveTo sums residuals in twice the precision, a batch does not.
+		near(t, name, x, want, map[string]float64{"SolveTo": 1e-15, "Batch": 1e-11}[name], 0)
+	}
+}
+
+// TestHiddenVariable has a variable whose dual the digits lost with the gap hide: the
+// answer without it is violated by 5e-11 only, and yet a ten-thousandth worse. A
+// random search found it.
+func TestHiddenVariable(t *testing.T) {
+	a := mat.NewDense(5, 4, []float64{
+		-9.313225746154785e-10, 1, 1, 4.5,
+		-4, 1, 1, 1,
+		5.960464477539063e-08, 1, 0.0625, 1,
+		5.820766091346741e-11, 0.5, -0.5, -1,
+		1, 1, 1, 30.5,
+	})
+	b := []float64{1.1641532182693481e-10, -1, 1.862645149230957e-09, 1.8189894035458565e-12, math.NaN()}
+	x := mat.NewDense(1, 4, nil)
+	res, err := newBatch(t, a, &nnls.Settings{Weights: []float64{1, .01, .01, 1, 1}}).SolveTo(x, mat.NewDense(1, 5, b), nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	want := make([]float64, 4)
+	one, err := nnls.SolveTo(want, a, b, &nnls.Settings{Weights: []float64{1, .01, .01, 1, 0}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	near(t, "norm", []float64{res[0].Norm}, []float64{one.Norm}, 1e-9, 0)
+	near(t, "x", x.RawRowView(0), want, 1e-6, 0) // the condition number is 10⁷
+	if !(res[0].Violation <= 1e-13) {
+		t.Errorf("optimality violated by %g", res[0].Violation)
 	}
 }
 

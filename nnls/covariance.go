@@ -69,10 +69,11 @@ func (p *Batch) Covariance(b, x []float64, missing []bool) (*Spread, error) {
 		return nil, fmt.Errorf("nnls: %w", r.errs[0])
 	}
 	var out *Spread
-	r.small(w, []int{0}, func(w *batchWorker, f *factor, t *triangle, _ sample) {
+	r.small(w, []int{0}, func(w *batchWorker, f *factor, t *triangle, _ sample) bool {
 		w.act.load(t, w.z, math.Sqrt(r.bb[0]))
 		w.act.restore(x)
 		out = w.act.spread(f.ea, r.eb[0], f.ew)
+		return true
 	})
 	return out, nil
 }

@@ -182,20 +182,28 @@ func normal(d *draw) float64 {
 
 // TestUndetermined: data that say nothing about a variable set no limit on it.
 func TestUndetermined(t *testing.T) {
-	a := mat.NewDense(3, 3, []float64{
-		1, 2, 0,
-		1, 2, 0,
-		0, 0, 0,
-	})
-	b := []float64{1, 1, 0}
+	a := mat.NewDense(4, 4, []float64{
+		1, 3, 0, 1,
+		0.1, 0.3, 0, 0,
+		0.7, 2.1, 0, -2,
+		0, 0, 0, 1,
+	}) // the second column is three times the first, the third zero
+	b := []float64{1, 0.1, 0.7, -1}
 	x, res := solveOne(t, a, b)
 	spread, err := nnls.Covariance(a, b, x, nil)
 	if err != nil {
 		t.Fatal(err)
 	}
-	for j, p := range res.Passive {
-		if p == math.IsInf(spread.Upper(j, 1, nnls.Z95), 1) {
-			t.Errorf("variable %d, passive %v: limit %g", j, p, spread.Upper(j, 1, nnls.Z95))
+	own, err := newBatch(t, a, nil).Covariance(b, x, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if x[3] != 0 || math.IsInf(spread.U[3], 1) {
+		t.Errorf("the fourth variable is %g ± %g, want a limit on a zero", x[3], spread.U[3])
+	}
+	for j, free := range res.Passive[:3] {
+		if free == math.IsInf(spread.Upper(j, 1, nnls.Z95), 1) || free == math.IsInf(own.U[j], 1) {
+			t.Errorf("variable %d, free %v: limit %g", j, free, spread.Upper(j, 1, nnls.Z95))
 		}
 	}
 }

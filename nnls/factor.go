@@ -114,7 +114,8 @@ func (d *reduced) reduce(f *factor, gone []byte, missing int) bool {
 	if !d.cholesky(f.k, f.stride) {
 		return false
 	}
-	if d.inv = d.inverseNorm(f.k); !(d.inv <= 1/worstGap) {
+	d.tri.err, d.tri.loss = f.tri.err, d.inverseNorm(f.k)
+	if !(d.tri.loss <= 1/worstGap) {
 		return false
 	}
 	k := f.k
@@ -208,7 +209,8 @@ func (d *reduced) cholesky(k, s int) bool {
 	return true
 }
 
-// inverseNorm returns ‖L⁻¹‖² (Frobenius).
+// inverseNorm returns ‖L⁻¹‖² (Frobenius), at least k; the smallest eigenvalue of H
+// is at least one by that.
 func (d *reduced) inverseNorm(k int) float64 {
 	sum := 0.0
 	for c := range k {

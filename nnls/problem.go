@@ -178,16 +178,17 @@ func applyQT(c []float64, qr blas64.General, tau []float64) {
 	lapack64.Ormqr(blas.Left, blas.Trans, qr, tau, g, work, len(work))
 }
 
-// rankOf returns the number of |r_ii| ≥ max(m, n)·2ε·|r_11|, not counting zeros.
-func rankOf(qr blas64.General) int {
-	rank, least := 0, float64(max(qr.Rows, qr.Cols))*2*eps*math.Abs(qr.Data[0])
+// rankOf returns the number of |r_ii| ≥ err·|r_11|, not counting zeros, with
+// err = max(m, n)·2ε.
+func rankOf(qr blas64.General) (rank int, err float64) {
+	err = float64(max(qr.Rows, qr.Cols)) * 2 * eps
 	for i := range min(qr.Rows, qr.Cols) {
-		if d := math.Abs(qr.Data[i*qr.Stride+i]); d == 0 || d < least {
+		if d := math.Abs(qr.Data[i*qr.Stride+i]); d == 0 || d < err*math.Abs(qr.Data[0]) {
 			break
 		}
 		rank++
 	}
-	return rank
+	return rank, err
 }
 
 func (p *problem) unscaleTo(dst, y []float64) {
@@ -217,13 +218,17 @@ func (p *problem) certify(y []float64) (norm float64, w []float64, v float64) {
 func (p *problem) refine(act *active) (norm, v float64) {
 	norm, w, v := p.certify(act.x)
 	before := make([]float64, p.n)
-	for steps := 0; steps < 3 && v > 4*eps; steps++ {
+	for range maxRefine {
+		d, gain := act.seminormal(w)
+		if !worthwhile(v, gain, norm*norm) {
+			break
+		}
 		copy(before, act.x)
-		if d, _ := act.seminormal(w); !act.step(d) {
+		if !act.step(d) {
 			break
 		}
 		norm2, w2, v2 := p.certify(act.x)
-		if !(v2 < v) {
+		if !better(v2, norm2, v, norm) {
 			copy(act.x, before)
 			break
 		}
@@ -231,6 +236,17 @@ func (p *problem) refine(act *active) (norm, v float64) {
 	}
 	return norm, v
 }
+
+// maxRefine limits the corrections of one answer.
+const maxRefine = 3
+
+// worthwhile reports whether a correction that lowers the square of the residual
+// norm by gain can change what a reader sees.
+func worthwhile(v, gain, square float64) bool { return v > 4*eps || gain > 1e-12*square }
+
+// better reports whether a corrected answer of violation v and residual norm r is
+// to be kept in place of that of v0 and r0.
+func better(v, r, v0, r0 float64) bool { return v < v0 || (r < r0 && v < mostViolation) }
 
 func finite(v float64) bool { return v-v == 0 }
 

@@ -9,10 +9,12 @@ type triangle struct {
 	t     []float64 // k×n by columns
 	norm  []float64 // n, of the columns
 	order []int     // k of the columns
+	err   float64   // rounding error of a column, relative to its norm
+	loss  float64   // times that t and c lost in digits on the way, ≥ 1
 }
 
 func newTriangle(k, n int, order []int) triangle {
-	return triangle{k, n, make([]float64, k*n), make([]float64, n), order}
+	return triangle{k: k, n: n, t: make([]float64, k*n), norm: make([]float64, n), order: order, loss: 1}
 }
 
 func (t *triangle) column(j int) []float64 { return t.t[j*t.k : (j+1)*t.k] }
@@ -25,8 +27,9 @@ func (t *triangle) measure() {
 
 // cutTriangle returns the first rows of R, as many as the rank.
 func cutTriangle(qr blas64.General, pivot []int) triangle {
-	k := rankOf(qr)
+	k, err := rankOf(qr)
 	t := newTriangle(k, qr.Cols, pivot[:k])
+	t.err = err
 	for q, j := range pivot {
 		col := t.column(j)
 		for i := range min(q+1, k) {

@@ -166,21 +166,21 @@ func (w *batchWorker) mark(v []float64, at int) (sum float64, gaps int) {
 
 // sample is one right-hand side on its way through a batch.
 type sample struct {
-	i    int     // its number
-	rows int     // used
-	loss float64 // of information by missing rows, on average over directions; 1 is none
-	gone []byte  // rows of the factor that it misses
+	i    int    // its number
+	rows int    // used
+	gone []byte // rows of the factor that it misses
 }
 
 // small calls do for samples that miss the same rows, each with the factor and
 // the triangle to solve it on and the right-hand side to that in w.z. The worker
-// is another one where the factor is.
-func (r *batchRun) small(w *batchWorker, samples []int, do func(*batchWorker, *factor, *triangle, sample)) {
+// is another one where the factor is. Where do reports failure on the problem from
+// H, it is called again with a factor of the rows present.
+func (r *batchRun) small(w *batchWorker, samples []int, do func(*batchWorker, *factor, *triangle, sample) bool) {
 	f, gone := r.f, []byte(r.gone[samples[0]-r.from])
 	if len(gone) == 0 {
 		for _, i := range samples {
 			copy(w.z, r.c[(i-r.from)*f.stride:])
-			do(w, f, &f.tri, sample{i, f.m, 1, nil})
+			do(w, f, &f.tri, sample{i, f.m, nil})
 		}
 		return
 	}
@@ -189,12 +189,17 @@ func (r *batchRun) small(w *batchWorker, samples []int, do func(*batchWorker, *f
 		missing += bits.OnesCount8(b)
 	}
 	if w.reduced.reduce(f, gone, missing) {
+		var failed []int
 		for _, i := range samples {
 			copy(w.z, r.c[(i-r.from)*f.stride:])
 			w.reduced.forward(w.z)
-			do(w, f, &w.reduced.tri, sample{i, f.m - missing, w.reduced.inv / float64(f.k), gone})
+			if !do(w, f, &w.reduced.tri, sample{i, f.m - missing, gone}) {
+				failed = append(failed, i)
+			}
 		}
-		return
+		if samples = failed; len(failed) == 0 {
+			return
+		}
 	}
 	f = f.without(gone)
 	w = newBatchWorker(f)
@@ -202,30 +207,33 @@ func (r *batchRun) small(w *batchWorker, samples []int, do func(*batchWorker, *f
 	for _, i := range samples {
 		w.project(f, c, r.scaled(w, i), nil)
 		copy(w.z, c)
-		do(w, f, &f.tri, sample{i, f.m, 1, nil})
+		do(w, f, &f.tri, sample{i, f.m, nil})
 	}
 }
 
-// solve solves a sample on the triangle t of the factor f.
-func (r *batchRun) solve(w *batchWorker, f *factor, t *triangle, s sample) {
+// solve solves a sample on the triangle t of the factor f, and reports whether it
+// is worth keeping where a better factor can be had.
+func (r *batchRun) solve(w *batchWorker, f *factor, t *triangle, s sample) bool {
 	bb := r.bb[s.i-r.from]
 	normB := math.Sqrt(bb)
 	w.act.load(t, w.z, normB)
 	w.act.warmAll(t)
 	res := &r.results[s.i]
-	if res.Status = w.act.run(r.maxIter); res.Status == IterationLimit {
-		r.errs[s.i] = ErrIterationLimit
-	}
+	res.Status = w.act.run(r.maxIter)
 	res.Iterations, res.Rank, res.Rows = w.act.iterations, t.k, s.rows
-	copy(res.Passive, w.act.free)
 	square := bb - sumSquares(w.z)
 	w.residual(t, w.act.x)
 	square += sumSquares(w.z)
 	res.Violation = violation(w.act.x, w.dual, t.norm, normB)
-	if square < leastDifference*s.loss*bb || s.loss > mostLoss || res.Violation > mostViolation {
+	if square < leastDifference*t.loss*bb || t.loss > mostLoss || res.Violation > mostViolation {
 		square, res.Violation = w.refine(f, t, r.scaled(w, s.i), normB, s.gone)
 	}
+	copy(res.Passive, w.act.free)
+	if r.errs[s.i] = nil; res.Status == IterationLimit {
+		r.errs[s.i] = ErrIterationLimit
+	}
 	r.finish(w, f, s.i, square)
+	return res.Violation <= mostViolation
 }
 
 // finish writes the answer in the caller's units.
@@ -246,8 +254,9 @@ const (
 	// The residual is less than a thousandth of b: the difference of squares
 	// that gives it keeps 9 digits to here.
 	leastDifference = 1e-6
-	// The missing rows left less than a hundredth of the information.
-	mostLoss = 100
+	// The missing rows took digits: they left a direction, or all of them
+	// together, about this share of their information.
+	mostLoss = 1000
 	// Large terms cancel.
 	mostViolation = 1e-13
 )
@@ -265,11 +274,13 @@ func (w *batchWorker) residual(t *triangle, y []float64) {
 // violation, and mends what small residuals and large gaps lose in the difference
 // of squares and in H.
 func (w *batchWorker) refine(f *factor, t *triangle, b []float64, normB float64, gone []byte) (square, v float64) {
-	y := w.act.x
 	square, v = w.certify(f, t, b, normB, gone)
-	for steps := 0; steps < 3 && v > 4*eps; steps++ {
-		copy(w.before, y)
+	for range maxRefine {
 		d, gain := w.act.seminormal(w.dual)
+		if !worthwhile(v, gain, square) {
+			break
+		}
+		copy(w.before, w.act.x)
 		if !w.act.step(d) {
 			break
 		}
@@ -280,15 +291,15 @@ func (w *batchWorker) refine(f *factor, t *triangle, b []float64, normB float64,
 			for j := range w.dual {
 				w.dual[j] += dot(t.column(j), w.z)
 			}
-			if better := violation(y, w.dual, t.norm, normB); better < v {
-				return square - gain, better
+			if v2 := violation(w.act.x, w.dual, t.norm, normB); better(v2, square-gain, v, square) {
+				return square - gain, v2
 			}
-			copy(y, w.before)
+			copy(w.act.x, w.before)
 			break
 		}
 		square2, v2 := w.certify(f, t, b, normB, gone)
-		if !(v2 < v) {
-			copy(y, w.before)
+		if !better(v2, square2, v, square) {
+			copy(w.act.x, w.before)
 			break
 		}
 		square, v = square2, v2
