@@ -198,8 +198,10 @@ func (s *Survey) judge(n eem.Note) eem.Note {
 	return n
 }
 
-// Accept applies the survey's quality settings to a flag raised elsewhere.
+// Accept applies the survey's quality settings to a flag raised elsewhere. It
+// panics like eem.NewFlag.
 func (s *Survey) Accept(f eem.Flag) eem.Flag {
+	f = eem.NewFlag(f)
 	n := s.judge(eem.Note{Test: f.Test, Severity: f.Severity, Msg: f.Msg})
 	f.Severity, f.Msg = n.Severity, n.Msg
 	return f

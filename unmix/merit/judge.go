@@ -74,7 +74,7 @@ func fitFlags(r *unmix.Resolution, b Bottle, m Moran, limit func(string) float64
 	fit := r.Fits[b.Row]
 	var out []eem.Flag
 	add := func(code string, sev eem.Severity, v, lim float64, msg string) {
-		out = append(out, eem.Flag{ID: b.ID, Batch: b.Batch, Method: r.Set.Method, Test: code, Severity: sev, Value: v, Limit: lim, Msg: msg})
+		out = append(out, eem.NewFlag(eem.Flag{ID: b.ID, Batch: b.Batch, Method: r.Set.Method, Test: code, Severity: sev, Value: v, Limit: lim, Msg: msg}))
 	}
 	if !fit.Usable {
 		add("few-cells", eem.Reject, float64(fit.Cells), float64(r.Set.Len()), fit.Reason)
