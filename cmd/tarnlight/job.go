@@ -22,13 +22,14 @@ import (
 
 // jobOptions are the flags of the verbs that work on a survey.
 type jobOptions struct {
-	dir      string
-	out      string // empty: dir/out
-	settings string // empty: dir/survey.toml
-	workers  int
-	strict   bool
-	json     bool
-	pictures bool
+	dir        string
+	out        string // empty: dir/out
+	settings   string // empty: dir/survey.toml
+	exclusions string // empty: those of the settings
+	workers    int
+	strict     bool
+	json       bool
+	pictures   bool
 
 	quantify, resolve bool // the parts of the work that the verb asks for
 	verb              string
@@ -40,9 +41,10 @@ func (o *jobOptions) flags(c *cobra.Command) {
 	f := c.Flags()
 	f.StringVar(&o.out, "out", "", "folder for the results (default SURVEY/out)")
 	f.StringVar(&o.settings, "settings", "", "settings file (default SURVEY/survey.toml)")
+	f.StringVar(&o.exclusions, "exclusions", "", "CSV of id, reason: bottles to leave out, such as the page saves (instead of [sheet] exclusions)")
 	f.IntVar(&o.workers, "workers", 0, "how many bottles at a time (default: all cores; results do not depend on it)")
 	f.BoolVar(&o.strict, "strict", false, "exit 1 when a bottle was rejected")
-	f.BoolVar(&o.json, "json", false, "print the outcome as JSON (status.json) instead of a table")
+	f.BoolVar(&o.json, "json", false, "print JSON lines (cmd/tarnlight/events.schema.json) instead of a table; the last one is the outcome")
 	f.BoolVar(&o.pictures, "pictures", true, "make report.xlsx, report.html and the pictures")
 }
 
@@ -109,6 +111,11 @@ func (j *job) readInputs() error {
 	if j.set, err = survey.ReadSettings(j.settingsPath()); err != nil {
 		return err
 	}
+	if j.exclusions != "" {
+		if j.set.Sheet.Exclusions, err = fromSurvey(j.dir, j.exclusions); err != nil {
+			return err
+		}
+	}
 	if j.applied != nil {
 		if err := j.freeze(); err != nil {
 			return err
@@ -116,6 +123,21 @@ func (j *job) readInputs() error {
 	}
 	j.sheet, err = survey.ReadSheet(j.dir, j.set)
 	return err
+}
+
+// fromSurvey gives a path of the command line as the settings want it: relative
+// to the survey folder, so that results name no folder of this machine.
+func fromSurvey(dir, path string) (string, error) {
+	base, err := filepath.Abs(dir)
+	if err != nil {
+		return "", err
+	}
+	abs, err := filepath.Abs(path)
+	if err != nil {
+		return "", err
+	}
+	rel, err := filepath.Rel(base, abs)
+	return filepath.ToSlash(rel), err
 }
 
 // work does everything between the raw files and the finished folder.

@@ -2,7 +2,6 @@ package main
 
 import (
 	"context"
-	"encoding/json"
 	"fmt"
 	"path/filepath"
 
@@ -57,22 +56,23 @@ func newResolveCmd(s streams) *cobra.Command {
 func runJob(ctx context.Context, s streams, o jobOptions) error {
 	j, err := o.execute(ctx, s)
 	if err != nil {
+		if o.json {
+			if told := emit(s, failedEvent{"failed", err.Error()}); told != nil {
+				return told
+			}
+		}
 		return err
 	}
-	st := j.status()
 	if o.json {
-		b, err := json.MarshalIndent(st, "", "  ")
-		if err != nil {
-			return err
-		}
-		if _, err := fmt.Fprintln(s.out, string(b)); err != nil {
-			return err
-		}
-	} else if err := j.printSummary(s); err != nil {
+		err = j.emitAll(s)
+	} else {
+		err = j.printSummary(s)
+	}
+	if err != nil {
 		return err
 	}
-	if st.ExitCode != exitDone {
-		return &codeError{code: st.ExitCode}
+	if code := j.status().ExitCode; code != exitDone {
+		return &codeError{code: code}
 	}
 	return nil
 }

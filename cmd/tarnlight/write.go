@@ -299,8 +299,10 @@ func (j *job) provenance() outdir.Provenance {
 	}
 	extra := map[string]bool{j.sheet.Path: true, j.settingsPath(): true}
 	for _, name := range []string{j.set.Sheet.Exclusions, j.set.Resolve.Hold, j.set.Quantify.File} {
-		if name != "" {
-			extra[filepath.Join(j.dir, filepath.FromSlash(name))] = true
+		if path := filepath.FromSlash(name); filepath.IsAbs(path) {
+			extra[path] = true
+		} else if name != "" {
+			extra[filepath.Join(j.dir, path)] = true
 		}
 	}
 	for _, path := range slices.Sorted(maps.Keys(extra)) {
