@@ -2,6 +2,11 @@
 
 package nnls
 
+// This one import puts OpenBLAS behind gonum's calls in every package of the
+// module that uses nnls; it needs cgo, libopenblas-dev and pkg-config. What this
+// package computes by its own kernels stays the same to the last bit, the QR
+// factorisations do not.
+
 // #cgo pkg-config: openblas
 import "C"
 
