@@ -263,3 +263,26 @@ func FuzzLook(f *testing.F) {
 		}
 	})
 }
+
+func FuzzJCAMP(f *testing.F) {
+	for _, name := range []string{"affn", "pac", "sqz", "dif", "difdup", "xypoints", "compound"} {
+		f.Add(jcampFile(f, name+".dx"))
+	}
+	f.Add([]byte(jcampText()))
+	f.Fuzz(func(t *testing.T, data []byte) {
+		// A run of equal ordinates is three bytes however long it is: what comes
+		// out is bounded by maxJCAMPPoints, not by the size of the file.
+		const runs = 8 * 8 * maxJCAMPPoints / 40
+		bounded(t, len(data)+runs, func() {
+			file, err := ReadBytes("s.dx", data, &Settings{Form: JCAMP})
+			if err != nil {
+				named(t, "s.dx", err)
+				return
+			}
+			for _, s := range file.Scans {
+				checkAxis(t, s.Em, s.F)
+			}
+			checkNotes(t, file.Notes)
+		})
+	})
+}

@@ -197,7 +197,7 @@ func (r *reader) emissionDown(b *block, h *gridHead) (bool, error) {
 	case words != 0 && words*physics > -2:
 		return words > 0, nil
 	case words != 0:
-		return false, errorf(r.name, b.first, `the header %q says one thing about the axes and the intensities another; set scans.across = "excitation" or "emission"`, clip(h.corner))
+		return false, errorf(r.name, b.first, `the words of the header say one thing about the axes, the intensities another; set scans.across = "excitation" or "emission"`)
 	}
 	return false, errorf(r.name, b.first, `cannot tell which axis is the excitation; set scans.across = "excitation" or "emission", or write em_nm\ex_nm above the first column`)
 }

@@ -139,6 +139,20 @@ func headWords(text []byte) (has [percentRole + 1]bool) {
 	return has
 }
 
+// lookJCAMP says what a JCAMP-DX file holds by its own YUNITS.
+func lookJCAMP(name string, data []byte) Guess {
+	f, err := ReadBytes(name, data, nil)
+	if err == nil {
+		return lookScans(f)
+	}
+	if a := lookAbsorbance(name, data, "JCAMP-DX with YUNITS of absorbance"); a.Err == nil {
+		return a
+	}
+	g := newGuess(ScanContent)
+	g.Form, g.Why, g.Err = JCAMP, "JCAMP-DX, but not readable as scans yet", err
+	return g
+}
+
 // isSheet says whether the header names bottles and kinds: a run sheet, not a
 // scan.
 func isSheet(text []byte) bool {
