@@ -160,6 +160,9 @@ func (j *job) work(ctx context.Context, stage *outdir.Staging) error {
 	if err := ctx.Err(); err != nil {
 		return err
 	}
+	if edited := stage.Edited(); len(edited) > 0 {
+		fmt.Fprintf(j.bar, "changed by hand since the last run, kept in %s.previous until the next one: %s\n", j.out, some(edited))
+	}
 	return stage.Commit(j.provenance())
 }
 
