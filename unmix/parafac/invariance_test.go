@@ -152,7 +152,7 @@ func TestWorkersDoNotChangeABit(t *testing.T) {
 	clip(s.cube, 20)
 	var want []byte
 	for _, w := range []int{1, 2, 8} {
-		ch, err := Choose(context.Background(), s.cube, 2, 4, &Settings{Workers: w, Starts: 4}, nil)
+		ch, err := Choose(context.Background(), s.cube, 2, 3, &Settings{Workers: w, Starts: 3}, nil)
 		if err != nil {
 			t.Fatal(err)
 		}
