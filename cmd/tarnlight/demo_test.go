@@ -9,15 +9,15 @@ import (
 )
 
 // The demo: every component's median error under 3 %, every planted fault
-// flagged, every file of the results there with its header, in under 30 s (the
-// race detector may take four times as long).
+// flagged, every file of the results there with its header, in under 30 s (which
+// says nothing under the race detector).
 func TestDemo(t *testing.T) {
 	dir := filepath.Join(t.TempDir(), "demo")
 	start := time.Now()
 	r := call("demo", dir).want(t, exitDone)
 	t.Logf("demo took %v\n%s%s", time.Since(start).Round(time.Millisecond), r.out, r.err)
-	if limit := 30 * time.Second * raceFactor; time.Since(start) > limit {
-		t.Errorf("took %v, limit %v", time.Since(start), limit)
+	if d := time.Since(start); !raceDetector && d > 30*time.Second {
+		t.Errorf("took %v, limit 30 s", d)
 	}
 	lines := strings.Split(strings.TrimSpace(r.out), "\n")
 	if len(lines) < 4 {

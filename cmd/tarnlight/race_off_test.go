@@ -2,4 +2,4 @@
 
 package main
 
-const raceFactor = 1
+const raceDetector = false

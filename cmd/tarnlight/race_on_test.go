@@ -2,4 +2,4 @@
 
 package main
 
-const raceFactor = 4
+const raceDetector = true

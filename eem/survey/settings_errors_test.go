@@ -114,7 +114,7 @@ survey.toml:5: scans.from: there is no such key; did you mean form?`
 	if len(lines) != maxProblems+1 || !strings.HasPrefix(lines[maxProblems], "and ") {
 		t.Errorf("%d lines, last %q", len(lines), lines[len(lines)-1])
 	}
-	if d := time.Since(start); d > 5*time.Second { // measured: 0.2 s
+	if d := time.Since(start); d > time.Minute { // measured: 0.2 s; the race detector on a busy machine needs 50 times that
 		t.Errorf("a file of %d bytes took %v", b.Len(), d)
 	}
 }

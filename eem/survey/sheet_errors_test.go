@@ -174,7 +174,7 @@ runsheet.csv:4: scans: the scans are missing; write the file, folder or pattern 
 	if len(lines) != maxProblems+1 || !strings.HasPrefix(lines[maxProblems], "and ") {
 		t.Errorf("%d lines, last %q", len(lines), lines[len(lines)-1])
 	}
-	if d := time.Since(start); d > 10*time.Second { // measured: 0.3 s for 0.9 MB
+	if d := time.Since(start); d > time.Minute { // measured: 0.3 s for 0.9 MB; the race detector on a busy machine needs 80 times that
 		t.Errorf("20,000 bad rows took %v", d)
 	}
 }
