@@ -211,13 +211,9 @@ func (a *active) add(j int) {
 }
 
 func reflect(u, v []float64, scale float64) {
-	dot := 0.0
-	for i := range v {
-		dot += v[i] * u[i]
-	}
-	dot /= scale
-	for i := range v {
-		u[i] += dot * v[i]
+	f := dot(v, u) / scale
+	for i, x := range v {
+		u[i] += f * x
 	}
 }
 
@@ -260,40 +256,4 @@ func (a *active) solve() {
 			a.s[l] -= x * a.s[q]
 		}
 	}
-}
-
-// seminormal solves TᵀT·d = g on the free variables, T their triangle, and
-// returns d, 0 elsewhere, and ‖T·d‖². With g = Aᵀ·r of the residual r it is the
-// corrected seminormal equation (Björck, Linear Algebra Appl. 1987, 88/89, 31),
-// which serves as QR does while the condition number of T is below 1/√ε.
-func (a *active) seminormal(g []float64) (d []float64, gain float64) {
-	u := a.s
-	for q, j := range a.order {
-		col := a.column(j)
-		u[q] = (g[j] - dot(col[:q], u)) / col[q]
-		gain += u[q] * u[q]
-	}
-	clear(a.d)
-	for q := len(a.order) - 1; q >= 0; q-- {
-		j := a.order[q]
-		v := u[q] / a.column(j)[q]
-		a.d[j] = v
-		for l, x := range a.column(j)[:q] {
-			u[l] -= x * v
-		}
-	}
-	return a.d, gain
-}
-
-// step adds d to x, and reports whether it could: free variables stay positive.
-func (a *active) step(d []float64) bool {
-	for _, j := range a.order {
-		if !(a.x[j]+d[j] > 0) {
-			return false
-		}
-	}
-	for _, j := range a.order {
-		a.x[j] += d[j]
-	}
-	return true
 }

@@ -213,41 +213,6 @@ func (p *problem) certify(y []float64) (norm float64, w []float64, v float64) {
 	return math.Sqrt(square), w, violation(y, w, p.norm, p.normB)
 }
 
-// refine certifies the answer of act and improves it from its residual as long as
-// that helps. It returns the residual norm, in the units of p, and the violation.
-func (p *problem) refine(act *active) (norm, v float64) {
-	norm, w, v := p.certify(act.x)
-	before := make([]float64, p.n)
-	for range maxRefine {
-		d, gain := act.seminormal(w)
-		if !worthwhile(v, gain, norm*norm) {
-			break
-		}
-		copy(before, act.x)
-		if !act.step(d) {
-			break
-		}
-		norm2, w2, v2 := p.certify(act.x)
-		if !better(v2, norm2, v, norm) {
-			copy(act.x, before)
-			break
-		}
-		norm, w, v = norm2, w2, v2
-	}
-	return norm, v
-}
-
-// maxRefine limits the corrections of one answer.
-const maxRefine = 3
-
-// worthwhile reports whether a correction that lowers the square of the residual
-// norm by gain can change what a reader sees.
-func worthwhile(v, gain, square float64) bool { return v > 4*eps || gain > 1e-12*square }
-
-// better reports whether a corrected answer of violation v and residual norm r is
-// to be kept in place of that of v0 and r0.
-func better(v, r, v0, r0 float64) bool { return v < v0 || (r < r0 && v < mostViolation) }
-
 func finite(v float64) bool { return v-v == 0 }
 
 func norm2(v []float64) float64 { return blas64.Nrm2(blas64.Vector{N: len(v), Inc: 1, Data: v}) }
