@@ -184,15 +184,3 @@ func afterLabel(line []byte, delim byte) []byte {
 	}
 	return nil
 }
-
-// addRow adds every field of a line.
-func (e *evidence) addRow(line []byte, delim byte, no int) {
-	if delim == ' ' {
-		line = bytes.TrimSpace(line)
-	}
-	for more := true; more; {
-		var f []byte
-		f, line, more = cutField(line, delim)
-		e.add(f, no)
-	}
-}
