@@ -52,7 +52,10 @@ const (
 	midGrey   = "6B6B6B"
 )
 
-const fontName = "Arial"
+const (
+	fontName  = "Arial"
+	rowHeight = 15.0 // points, of rows that say nothing else
+)
 
 func newBook(title, header, footer string) *book {
 	b := &book{f: excelize.NewFile(), styles: map[look]int{}, header: header, footer: footer}
@@ -140,6 +143,10 @@ func (b *book) add(name string, l layout, before ...func(f *excelize.File, sheet
 		b.try(err)
 	}
 	b.page(name, l)
+	for i, width := range l.widths { // before pictures and charts: their places are counted from it
+		c, _ := excelize.ColumnNumberToName(i + 1)
+		b.try(b.f.SetColWidth(name, c, c, width))
+	}
 	for _, f := range before {
 		if b.err == nil {
 			b.try(f(b.f, name))
@@ -151,23 +158,24 @@ func (b *book) add(name string, l layout, before ...func(f *excelize.File, sheet
 	w, err := b.f.NewStreamWriter(name)
 	b.try(err)
 	s.w = w
-	if err == nil {
-		for i, width := range l.widths {
-			b.try(w.SetColWidth(i+1, i+1, width))
-		}
-	}
 	return s
 }
 
 func (b *book) page(name string, l layout) {
-	yes, no, one, zero, a4 := true, false, 1, 0, 9
+	yes, no, zero, a4 := true, false, 0, 9
+	wide := 0.0
+	for _, w := range l.widths {
+		wide += w
+	}
+	pages := 1 + int(wide/320) // beyond that many letters a page would be too small to read
 	orientation := "landscape"
 	if l.portrait {
 		orientation = "portrait"
 	}
 	side, end, edge := 0.5, 0.6, 0.3 // inches; fits A4 and Letter
-	b.try(b.f.SetPageLayout(name, &excelize.PageLayoutOptions{Size: &a4, Orientation: &orientation, FitToWidth: &one, FitToHeight: &zero}))
-	b.try(b.f.SetSheetProps(name, &excelize.SheetPropsOptions{FitToPage: &yes}))
+	b.try(b.f.SetPageLayout(name, &excelize.PageLayoutOptions{Size: &a4, Orientation: &orientation, FitToWidth: &pages, FitToHeight: &zero}))
+	height := rowHeight
+	b.try(b.f.SetSheetProps(name, &excelize.SheetPropsOptions{FitToPage: &yes, DefaultRowHeight: &height, CustomHeight: &yes}))
 	b.try(b.f.SetPageMargins(name, &excelize.PageLayoutMarginsOptions{Left: &side, Right: &side, Top: &end, Bottom: &end, Header: &edge, Footer: &edge}))
 	b.try(b.f.SetHeaderFooter(name, &excelize.HeaderFooterOptions{
 		OddHeader: "&L&8" + headerText(b.header) + "&R&8" + headerText(name),
@@ -188,8 +196,18 @@ func (b *book) page(name string, l layout) {
 			Selection: []excelize.Selection{{SQRef: l.freeze, ActiveCell: l.freeze, Pane: pane}}}))
 	}
 	if l.repeat != "" {
-		b.try(b.f.SetDefinedName(&excelize.DefinedName{Name: "_xlnm.Print_Titles", RefersTo: "'" + name + "'!" + l.repeat, Scope: name}))
+		b.try(b.f.SetDefinedName(&excelize.DefinedName{Name: "_xlnm.Print_Titles", RefersTo: printTitles(name, l.repeat, pages), Scope: name}))
 	}
+}
+
+// printTitles names the rows that every page repeats, and the first column where
+// the sheet is cut into several pages side by side.
+func printTitles(sheet, rows string, pages int) string {
+	ref := "'" + sheet + "'!" + rows
+	if pages > 1 {
+		ref = "'" + sheet + "'!$A:$A," + ref
+	}
+	return ref
 }
 
 // headerText prepares text for a header or footer: & begins a code there, and the

@@ -59,6 +59,7 @@ type pass struct {
 	left   map[string]*leftover // by method
 	scales [][]float64          // by bottle: scale ends of the measured map and of each residual
 	packed []string             // by bottle: its maps for the page
+	thumbs [][]byte             // by bottle: small PNG, nil without a map
 	note   string               // how finely the page's maps are cut
 }
 
@@ -67,6 +68,7 @@ type shown struct {
 	residual map[string][]float32
 	scales   []float64
 	packed   string
+	thumb    []byte
 }
 
 // common is one scale for all bottles: what 95 % of their own scales lie below.
@@ -117,6 +119,9 @@ func (r *results) render(ctx context.Context, progress func(done, total int, wha
 	if err := r.writeClient(); err != nil {
 		return err
 	}
+	if err := errors.Join(ctx.Err(), r.writeWorkings(p)); err != nil {
+		return err
+	}
 	tell(len(r.bottles)+2, "page")
 	if err := r.writePage(p, figures); err != nil {
 		return err
@@ -151,12 +156,19 @@ func (r *results) walk(ctx context.Context, tell func(done int, what string)) (*
 		if err != nil || largest(s.Corrected) < 0 {
 			return &shown{}, err // nothing was measured
 		}
-		out := &shown{residual: s.Residual, scales: []float64{newPanels(s, "").scale}}
+		out := &shown{residual: s.Residual}
 		var ps []panels
 		for _, m := range methods {
-			n := newPanels(s, m)
-			ps, out.scales = append(ps, n), append(out.scales, n.residualScale)
+			ps = append(ps, newPanels(s, m))
 		}
+		if ps == nil {
+			ps = []panels{newPanels(s, "")}
+		}
+		out.scales = append(out.scales, ps[0].scale)
+		for _, q := range ps {
+			out.scales = append(out.scales, q.residualScale)
+		}
+		out.thumb = thumb(r.store.Grid, ps[0])
 		k := packers.Get().(*packer)
 		out.packed = k.pack(s)
 		packers.Put(k)
@@ -175,7 +187,7 @@ func (r *results) walk(ctx context.Context, tell func(done int, what string)) (*
 		if size += len(s.packed); size > pageLimit {
 			s.packed = "" // only a survey too large for the coarsest steps comes here
 		}
-		p.scales, p.packed = append(p.scales, s.scales), append(p.packed, s.packed)
+		p.scales, p.packed, p.thumbs = append(p.scales, s.scales), append(p.packed, s.packed), append(p.thumbs, s.thumb)
 		tell(i+1, "maps")
 		return nil
 	})
@@ -253,9 +265,6 @@ func (r *results) drawMap(tri *triptych, b *bottle, s *StoreSample, ps []panels)
 	text := triptychText{id: b.id, what: "no fit"}
 	if e := f("explained_percent"); !math.IsNaN(e) {
 		text.what = r.num.fitText(e, f("residual_rms"), f("noise_rms"), r.unit)
-	}
-	if ps == nil {
-		ps = []panels{newPanels(s, "")}
 	}
 	c := tri.draw(text, ps)
 	return writeFile(filepath.Join(r.dir, "maps", r.mapFile(b.id)), func(w io.Writer) error { return c.encode(w) })

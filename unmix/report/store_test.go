@@ -133,3 +133,25 @@ print(json.dumps({
 		t.Errorf("SciPy sees %s", out)
 	}
 }
+
+// Whatever the bytes, opening and reading neither panics nor takes much memory.
+func FuzzOpenStore(f *testing.F) {
+	path, _ := smallStore(f)
+	b, err := os.ReadFile(path)
+	must(f, err)
+	f.Add(b)
+	f.Fuzz(func(t *testing.T, b []byte) {
+		path := filepath.Join(t.TempDir(), "x.nc")
+		must(t, os.WriteFile(path, b, 0o600))
+		s, err := OpenStore(path)
+		if err != nil {
+			return
+		}
+		defer s.Close()
+		for i := range s.IDs[:min(3, len(s.IDs))] {
+			if x, err := s.Sample(i); err == nil && len(x.Corrected) > len(b) {
+				t.Fatalf("%d cells from %d bytes", len(x.Corrected), len(b))
+			}
+		}
+	})
+}

@@ -57,10 +57,29 @@ func (s *Store) open() error {
 	if s.Grid.Em, err = s.axis("emission"); err != nil {
 		return err
 	}
+	if err := s.shapes(); err != nil {
+		return err
+	}
 	unit, _ := s.nc.Attr("intensity_unit").(string)
 	methods, _ := s.nc.Attr("methods").(string)
 	s.Unit, s.Methods = eem.Unit(unit), strings.Fields(methods)
 	return s.ids()
+}
+
+// shapes checks that every sample has its own id and cells of the grid, before
+// any memory is taken for them.
+func (s *Store) shapes() error {
+	for _, name := range []string{"sample_id", "corrected", "uncertainty", "why_missing"} {
+		i := s.nc.Var(name)
+		if i < 0 {
+			return fmt.Errorf("no variable %q", name)
+		}
+		n, isRecord := s.nc.Cells(i)
+		if !isRecord || (name != "sample_id" && n != s.Grid.Cells()) {
+			return fmt.Errorf("variable %q is not sample × excitation × emission", name)
+		}
+	}
+	return nil
 }
 
 func (s *Store) axis(name string) (eem.Axis, error) {
@@ -77,11 +96,7 @@ func (s *Store) axis(name string) (eem.Axis, error) {
 }
 
 func (s *Store) ids() error {
-	i := s.nc.Var("sample_id")
-	if i < 0 {
-		return errors.New(`no variable "sample_id"`)
-	}
-	n, _ := s.nc.Cells(i)
+	n, _ := s.nc.Cells(s.nc.Var("sample_id"))
 	buf := make([]byte, n)
 	s.IDs = make([]string, s.nc.Records)
 	for r := range s.IDs {

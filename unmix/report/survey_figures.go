@@ -78,6 +78,9 @@ func (r *results) byDate() *places {
 			}
 		}
 		if p.hi > p.lo {
+			if p.hi-p.lo < 10 { // whole days
+				p.lo, p.hi = math.Floor(p.lo), math.Ceil(p.hi)
+			}
 			pad := (p.hi - p.lo) * 0.03
 			p.ticks = dayTicks(p.lo, p.hi)
 			p.lo, p.hi = p.lo-pad, p.hi+pad
@@ -91,7 +94,7 @@ func (r *results) byDate() *places {
 func dayTicks(lo, hi float64) []plot.Tick {
 	step := max(1, math.Ceil((hi-lo)/8))
 	var out []plot.Tick
-	for d := math.Floor(lo); d <= hi+0.5; d += step {
+	for d := math.Ceil(lo); d <= hi; d += step {
 		out = append(out, plot.Tick{Value: d, Label: time.Unix(int64(d)*86400, 0).UTC().Format("2006-01-02")})
 	}
 	return out
