@@ -5,6 +5,7 @@ import (
 	"math"
 	"path/filepath"
 	"slices"
+	"strconv"
 	"strings"
 
 	"tarnlight/eem"
@@ -364,10 +365,6 @@ func (r *results) valueCells(c *contribution) []cell {
 		return []cell{{}, {}, {}}
 	}
 	q := cell{c.qualifier, look{align: "center", bold: true}}
-	d := decimals(c.u, r.s.Digits)
-	if !(c.u > 0) {
-		d = decimals(math.Abs(c.value), 3)
-	}
 	switch c.qualifier {
 	case "R":
 		q.l.fill = paleGrey
@@ -376,12 +373,32 @@ func (r *results) valueCells(c *contribution) []cell {
 		if !finite(c.limit) {
 			return []cell{{c.reported, grey}, {}, q}
 		}
-		grey.format = `"< "` + decimalFormat(decimals(c.limit, 2))
+		grey.format = `"< "` + reportedFormat(c.reported, c.limit)
 		return []cell{{c.limit, grey}, {}, q}
 	case "J":
 		q.l.fill = paleAmber
 	}
-	return []cell{{c.value, look{format: decimalFormat(d)}}, {c.expanded(), look{format: decimalFormat(d), color: midGrey}}, q}
+	format := reportedFormat(c.reported, c.value)
+	return []cell{{c.value, look{format: format}}, {c.expanded(), look{format: format, color: midGrey}}, q}
+}
+
+// reportedFormat is the number format that shows a number as the text of reported
+// does: with its decimals, or with its exponent.
+func reportedFormat(reported string, v float64) string {
+	text := strings.TrimPrefix(reported, "< ")
+	mantissa, exponent, hasExponent := strings.Cut(text, "e")
+	if _, err := strconv.ParseFloat(text, 64); err != nil || (hasExponent && exponent == "") {
+		return sigFormat(v, 3)
+	}
+	_, tail, _ := strings.Cut(mantissa, ".")
+	format := "0"
+	if tail != "" {
+		format += "." + strings.Repeat("0", len(tail))
+	}
+	if hasExponent {
+		format += "E+0"
+	}
+	return format
 }
 
 // severityLook gives the worst finding its word and ground.

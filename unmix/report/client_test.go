@@ -116,6 +116,14 @@ func TestWorkbookEqualsContributions(t *testing.T) {
 }
 
 // What makes the workbook fit to hand over survives the writing.
+func TestReportedFormat(t *testing.T) {
+	for text, want := range map[string]string{"0.371": "0.000", "< 0.013": "0.000", "12": "0", "9.1e-5": "0.0E+0", "< 9.1e-5": "0.0E+0", "not usable": "0.00"} {
+		if got := reportedFormat(text, 1.5); got != want {
+			t.Errorf("%q: %s, want %s", text, got, want)
+		}
+	}
+}
+
 func TestWorkbookIsFitted(t *testing.T) {
 	dir := rendered(t, 12, func(s *RenderSettings) { s.Pictures = false; s.Title = "A & B" }, "parafac")
 	f, err := excelize.OpenFile(filepath.Join(dir, "report.xlsx"))
