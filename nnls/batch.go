@@ -64,6 +64,9 @@ func (p *Batch) SolveTo(dst, b *mat.Dense, missing []bool) ([]Result, error) {
 		panic(fmt.Sprintf("nnls: a is %d×%d, b %d×%d, dst %d×%d, missing has length %d", p.m, p.f.n, samples, m, r, c, len(missing)))
 	}
 	run := newBatchRun(p, dst, b, missing)
+	for range min(p.workers, samples) {
+		run.workers = append(run.workers, newBatchWorker(p.f))
+	}
 	for from := 0; from < samples; from += window {
 		run.window(from, min(from+window, samples))
 	}
@@ -96,14 +99,12 @@ func newBatchRun(p *Batch, dst, b *mat.Dense, missing []bool) *batchRun {
 	r := &batchRun{
 		Batch: p, dst: dst, b: b, missing: missing,
 		results: make([]Result, samples), errs: make([]error, samples),
-		c: make([]float64, held*p.f.stride), bb: make([]float64, held), eb: make([]int, held), gone: make([]string, held),
+		c: make([]float64, held*p.f.stride), bb: make([]float64, held),
+		eb: make([]int, held), gone: make([]string, held),
 	}
 	passive := make([]bool, samples*p.f.n)
 	for i := range r.results {
 		r.results[i].Passive = passive[i*p.f.n : (i+1)*p.f.n : (i+1)*p.f.n]
-	}
-	for range p.workers {
-		r.workers = append(r.workers, newBatchWorker(p.f))
 	}
 	return r
 }

@@ -8,7 +8,7 @@ import (
 // batchWorker is the memory of one goroutine.
 type batchWorker struct {
 	act     *active
-	reduced *reduced
+	reduced *reduced  // nil until a sample has a gap
 	v       []float64 // a block of one right-hand side
 	z, dual []float64
 	c       []float64 // Qᵀ·r of a refinement
@@ -19,8 +19,8 @@ type batchWorker struct {
 
 func newBatchWorker(f *factor) *batchWorker {
 	return &batchWorker{
-		act: newActive(f.k, f.n), reduced: newReduced(f),
-		v: make([]float64, block), z: make([]float64, f.k), dual: make([]float64, f.n),
+		act: newActive(f.k, f.n),
+		v:   make([]float64, block), z: make([]float64, f.k), dual: make([]float64, f.n),
 		c: make([]float64, f.stride), before: make([]float64, f.n),
 		gone: make([]byte, (f.m+63)/64*8),
 	}
@@ -49,6 +49,9 @@ func (r *batchRun) small(w *batchWorker, samples []int, do func(*batchWorker, *f
 	missing := 0
 	for _, b := range gone {
 		missing += bits.OnesCount8(b)
+	}
+	if w.reduced == nil {
+		w.reduced = newReduced(f)
 	}
 	if w.reduced.reduce(f, gone, missing) {
 		var failed []int

@@ -1,7 +1,9 @@
 #!/usr/bin/env python3
 """Prints how many times faster nnls.Batch is than SciPy's nnls called per sample.
 
-    python3 testdata/nnls/ratio.py            (from the root of the repository)
+    python3 testdata/nnls/ratio.py [SAMPLES]     (from the root of the repository)
+
+SAMPLES leaves out the surveys of another number of samples.
 
 Both solve the same surveys, those of BenchmarkBatch, in one run and by turns;
 the shortest of all turns counts for each. Batch includes its factorisation and
@@ -106,7 +108,7 @@ def main():
                        stdout=subprocess.DEVNULL)
         product = 2 / go_bench(binary, "MatrixProduct", 5)[0]
         print("1000x1000x1000 matrix product: %.1f GF/s in plain Go, %.1f GF/s in NumPy's BLAS" % (product, numpy_product()))
-        good = [compare(folder, binary, s, product) for s in SURVEYS]
+        good = [compare(folder, binary, s, product) for s in SURVEYS if sys.argv[1:] in ([], [str(s[0])])]
     sys.exit(0 if all(good) else 1)
 
 
