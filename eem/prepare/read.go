@@ -31,7 +31,8 @@ func (b *Bottle) done(step string) bool { return slices.Contains(b.Setting.Scans
 func scanSettings(s survey.Scans) *scanfile.Settings {
 	mark := map[string]string{"comma": ",", "semicolon": ";", "tab": "\t", "blank": " ", "point": "."}
 	return &scanfile.Settings{Form: scanfile.Form(s.Form), Delimiter: mark[s.Delimiter], Decimal: mark[s.Decimal],
-		Skip: s.Skip, Excitation: s.Excitation}
+		Skip: s.Skip, Excitation: s.Excitation,
+		Across: strings.TrimPrefix(s.Across, "auto")}
 }
 
 // read does everything to a bottle that needs the bottle alone.

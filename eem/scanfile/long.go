@@ -194,7 +194,7 @@ func (r *reader) columnDecimal(l *longColumns) (byte, error) {
 	}
 	d, err := e.decide()
 	if err != nil {
-		return 0, errorf(r.name, e.unclearAt, `%w; set scans.decimal = "," or "."`, err)
+		return 0, errorf(r.name, e.unclearAt, `%w; set scans.decimal to "comma" or "point"`, err)
 	}
 	return d[0], nil
 }

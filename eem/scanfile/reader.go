@@ -131,7 +131,7 @@ func (r *reader) cut() error {
 		var line int
 		var err error
 		if dec, line, err = sniffDecimal(body, delim); err != nil {
-			return errorf(r.name, line+r.set.Skip, `%w; set scans.decimal = "," or "."`, err)
+			return errorf(r.name, line+r.set.Skip, `%w; set scans.decimal to "comma" or "point"`, err)
 		}
 	}
 	r.rows = newRowReader(r.store, delim, dec, r.set.Skip)

@@ -6,7 +6,7 @@ import "tarnlight/eem"
 // what it is stands with its key (see Keys).
 func Default() *Settings {
 	return &Settings{
-		Scans: Scans{Form: "auto", Delimiter: "auto", Decimal: "auto"},
+		Scans: Scans{Form: "auto", Delimiter: "auto", Decimal: "auto", Across: "auto"},
 		Correct: Correct{
 			InnerFilter:     "right-angle",
 			AbsorbanceLimit: 1.5,

@@ -97,6 +97,8 @@ func readingKeys() []*key {
 			"lines left out at the top of every file; 0 finds the first line of numbers by itself"},
 		{"scans", "excitation", func(s *Settings) any { return &s.Scans.Excitation }, pattern("nm"),
 			"finds the excitation in a file name or header line; empty tries the header, then forms like ex350 in the name"},
+		{"scans", "across", func(s *Settings) any { return &s.Scans.Across }, choice("auto", "excitation", "emission"),
+			"what runs across a grid file; auto decides by its header, then by the light itself, and refuses what neither tells"},
 		{"scans", "saturation", func(s *Settings) any { return &s.Scans.Saturation }, number(bounds{hi: math.Inf(1), unit: "counts"}),
 			"cells at or above it are clipped and left out, in standards too; 0 is none stated, because only the instrument's manual tells it"},
 		{"scans", "offset", func(s *Settings) any { return &s.Scans.Offset }, offsetCodec(),

@@ -33,6 +33,7 @@ type Scans struct {
 	Decimal    string  // auto, point, comma
 	Skip       int     // lines to skip at the top of every file
 	Excitation string  // pattern that finds the excitation in a file name, such as "_ex{nm}"; empty: content and common forms
+	Across     string  // what runs across a grid file: auto, excitation, emission
 	Saturation float64 // counts at which the detector clips; 0: none stated
 	Offset     Offset
 	Applied    []string // corrections done to the files before they came here, of AppliedSteps
