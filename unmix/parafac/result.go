@@ -55,7 +55,8 @@ type Result struct {
 	Revived     int     // components that died on the way and were set again
 
 	// Leverage, I, is the diagonal of A(A'A)⁻¹A', and Influence, I, the largest
-	// move of a loading when the sample is left out, in its standard errors.
+	// move of a loading when the sample is left out, in standard errors of the
+	// loading: at 1 the sample alone makes the error of a loading.
 	Leverage, Influence []float64
 
 	Notes []eem.Note
