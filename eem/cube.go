@@ -55,6 +55,16 @@ func (c *Cube) SampleWhy(i int) []Reason {
 	return c.Why[i*n : (i+1)*n : (i+1)*n]
 }
 
+// SampleU returns the standard uncertainties of sample i, J × K; they are part of
+// c. It is nil while nobody knows them.
+func (c *Cube) SampleU(i int) []float32 {
+	if c.U == nil {
+		return nil
+	}
+	n := c.Cells()
+	return c.U[i*n : (i+1)*n : (i+1)*n]
+}
+
 // Select returns the cube of the samples idx, in that order.
 func (c *Cube) Select(idx []int) *Cube {
 	n := c.Cells()

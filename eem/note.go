@@ -92,8 +92,15 @@ type Cause struct {
 	Name  string // "intensity scale", "inner filter", …
 	Scope Scope
 	Key   string  // which batch, bottle or standard; empty for the survey
-	U     float64 // relative standard uncertainty when Shape is nil
+	U     float64 // relative standard uncertainty when Shape is nil; NaN: it acts and nobody stated its size
 	// Shape, J × K in the unit of the EEM, is the change of every cell when the
-	// cause is off by one standard uncertainty; nil means U·F.
+	// cause is off by one standard uncertainty; nil means (U + Ex[j] + Em[k])·F.
 	Shape []float64
+	// Ex, J, and Em, K, are the parts of the relative change that go with the
+	// wavelengths; nil means none.
+	Ex, Em []float64
+	Apart  bool // Ex and Em are no one error but one for each wavelength
+
+	DF     float64 // degrees of freedom of U; 0 means known without any
+	Source string  // where the figure comes from, in words
 }

@@ -59,6 +59,7 @@ func (b *Bottle) finish(s *Survey) {
 	}
 	e := b.removeBlank(s, b.EEM)
 	s.tell(b, correct.StepBlank, e)
+	e = b.withNoise(e)
 	e = b.toReference(s, e)
 	s.tell(b, correct.StepTemperature, e)
 	e = b.scaleTo(s, e)
@@ -84,6 +85,7 @@ func (b *Bottle) finish(s *Survey) {
 		e.Note(eem.Note{Step: stepNames[step], Msg: step + " switched off",
 			Params: []eem.Param{{Name: step, Value: "off", Source: "settings: correct.off"}}})
 	}
+	e = b.takeNoise(e)
 	b.EEM = e
 	b.flagNotes(s, e)
 }

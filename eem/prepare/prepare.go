@@ -20,6 +20,7 @@ import (
 	"sync/atomic"
 
 	"tarnlight/eem"
+	"tarnlight/eem/correct"
 	"tarnlight/eem/survey"
 )
 
@@ -53,6 +54,12 @@ type Bottle struct {
 	Excluded bool // takes part in nothing
 	Rejected bool // no number of it is usable
 
+	// Causes are the errors that the bottle's cells share, on the survey's grid,
+	// and BlankSet names the mean of blanks that was subtracted (see
+	// Survey.BlankU; empty where none was).
+	Causes   []eem.Cause
+	BlankSet string
+
 	raw       *eem.EEM        // up to the inner filter: what blank and scale start from
 	scanned   *eem.Absorbance // of the liquid scanned
 	guesses   []Guess
@@ -62,6 +69,11 @@ type Bottle struct {
 	area      float64   // Raman area of a blank, before the blank is removed; NaN unknown
 	scale     float64   // what the intensities were divided by; NaN when they stay as they are
 	blanks    []*Bottle // what its blank and its scale rest on
+
+	counts *eem.EEM       // a blank's counts without the offset, for the noise model
+	noise  *correct.Noise // nil while unknown
+	gain   []float32      // intensity, up to the inner filter, for one count
+	u      []float32      // noise of the corrected cells; nil while unknown
 }
 
 // Usable says whether the bottle has numbers that may be used.
@@ -79,6 +91,10 @@ type Survey struct {
 	Flags    []eem.Flag
 	Inputs   []Input // without repeats, sorted by path
 	Guesses  []Guess // how raw files were taken
+
+	// BlankU is the standard uncertainty of each cell of a mean of blanks from
+	// noise, J × K in Unit, by the name of the set; it is that of an undiluted bottle.
+	BlankU map[string][]float32
 
 	factors      map[string]factorPair  // by setup
 	autoBands    map[string]survey.Band // what was found for "auto", by key of [scatter]
@@ -119,14 +135,17 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 	if err := s.chooseUnit(); err != nil {
 		return nil, err
 	}
+	s.setNoise()
 	if err := s.each(ctx, o, "correcting", func(i int) { s.Bottles[i].finish(s) }); err != nil {
 		return nil, err
 	}
-	for _, b := range s.Bottles {
-		b.raw, b.scanned = nil, nil
-	}
 	if err := s.chooseGrid(o.Grid); err != nil {
 		return nil, err
+	}
+	s.listCauses()
+	s.blankNoise()
+	for _, b := range s.Bottles {
+		b.raw, b.scanned, b.counts, b.gain = nil, nil, nil, nil
 	}
 	s.inherit()
 	s.sameContent()
@@ -269,5 +288,6 @@ func (s *Survey) Cube(bottles []*Bottle) *eem.Cube {
 	}
 	c := eem.NewCube(s.Grid, ids, es)
 	c.Unit = s.Unit
+	c.U = s.cellNoise(bottles)
 	return c
 }

@@ -176,6 +176,7 @@ func (b *Bottle) toInnerFilter(s *Survey, e *eem.EEM) *eem.EEM {
 		e = correct.Offset(e, set.Scans.Offset.Counts)
 	}
 	s.tell(b, correct.StepOffset, e)
+	e = b.startNoise(s, e)
 	if f := s.factors[b.Row.Setup]; !b.skips(stepSpectral) && (f.ex != nil || f.em != nil) {
 		e = correct.Spectral(e, f.ex, f.em)
 	}
@@ -194,7 +195,7 @@ func (b *Bottle) toInnerFilter(s *Survey, e *eem.EEM) *eem.EEM {
 		b.Largest = largest(factor)
 	}
 	s.tell(b, correct.StepInner, e)
-	return e
+	return b.takeGain(e)
 }
 
 // flagNotes turns the findings among the notes of e that were not told before into

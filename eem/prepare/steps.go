@@ -8,7 +8,7 @@ import (
 )
 
 // Steps lists what is done to a bottle, in order.
-var Steps = []string{"read", correct.StepSaturation, correct.StepDetector, correct.StepOffset, correct.StepSpectral, correct.StepInner,
+var Steps = []string{"read", correct.StepSaturation, correct.StepDetector, correct.StepOffset, correct.StepNoise, correct.StepSpectral, correct.StepInner,
 	correct.StepBlank, correct.StepTemperature, correct.StepScale, correct.StepDilution, scatter.Step}
 
 // stepNames maps the words of [scans] applied and [correct] off to the steps.
