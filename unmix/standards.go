@@ -109,18 +109,7 @@ func seen(v, other []float64, present func(i, l int) bool) []bool {
 // slopesByCell returns F surfaces of slopes, J × K each. Cells in which the same
 // standards are present share one factorisation.
 func slopesByCell(g eem.Grid, names []string, standards []Standard) ([][]float64, error) {
-	on := make([]*eem.EEM, len(standards))
-	conc := make([][]float64, len(standards))
-	for s, st := range standards {
-		on[s] = st.EEM
-		if !st.EEM.Grid.Equal(g) {
-			on[s] = st.EEM.Regrid(g)
-		}
-		conc[s] = make([]float64, len(names))
-		for f, name := range names {
-			conc[s][f] = st.Conc[name]
-		}
-	}
+	on, conc := stacked(g, names, standards)
 	out := make([][]float64, len(names))
 	for f := range out {
 		out[f] = make([]float64, g.Cells())
@@ -134,12 +123,7 @@ func slopesByCell(g eem.Grid, names []string, standards []Standard) ([][]float64
 	solvers := map[string]*slopeSolver{}
 	present := make([]byte, len(standards))
 	for i := range g.Cells() {
-		for s := range on {
-			present[s] = '0'
-			if on[s].Why[i] == eem.Measured && !math.IsNaN(on[s].F[i]) {
-				present[s] = '1'
-			}
-		}
+		presentAt(present, on, i)
 		solver, ok := solvers[string(present)]
 		if !ok {
 			solver = newSlopeSolver(conc, present)
@@ -148,6 +132,33 @@ func slopesByCell(g eem.Grid, names []string, standards []Standard) ([][]float64
 		solver.solve(out, on, i)
 	}
 	return out, nil
+}
+
+// stacked brings the standards to grid g and lists their amounts.
+func stacked(g eem.Grid, names []string, standards []Standard) (on []*eem.EEM, conc [][]float64) {
+	on = make([]*eem.EEM, len(standards))
+	conc = make([][]float64, len(standards))
+	for s, st := range standards {
+		on[s] = st.EEM
+		if !st.EEM.Grid.Equal(g) {
+			on[s] = st.EEM.Regrid(g)
+		}
+		conc[s] = make([]float64, len(names))
+		for f, name := range names {
+			conc[s][f] = st.Conc[name]
+		}
+	}
+	return on, conc
+}
+
+// presentAt marks the standards whose number of cell i was measured.
+func presentAt(present []byte, on []*eem.EEM, i int) {
+	for s := range on {
+		present[s] = '0'
+		if on[s].Why[i] == eem.Measured && !math.IsNaN(on[s].F[i]) {
+			present[s] = '1'
+		}
+	}
 }
 
 // slopeSolver finds the slopes of one cell for one pattern of present standards.

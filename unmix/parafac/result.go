@@ -63,6 +63,7 @@ type Result struct {
 
 	order        []int    // place of each component in the fit
 	exRes, emRes [][]bool // F × J and F × K: not damped
+	moves        *moves   // nil where the errors are not known
 }
 
 // Start is one start of a fit.

@@ -22,6 +22,7 @@ func (n *newton) tell(r *Result) {
 		r.exRes = append(r.exRes, undamped(in.dampB, in.j, f, x))
 		r.emRes = append(r.emRes, undamped(in.dampC, in.k, f, x))
 	}
+	in.keep(r, peakB, peakC)
 	score := in.scoreSE(peakB, peakC)
 	for row, i := range in.sample {
 		for to, x := range r.order {
