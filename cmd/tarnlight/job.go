@@ -62,6 +62,7 @@ type job struct {
 	res    []*unmix.Resolution     // one a method
 	judge  []*merit.Judged         // beside res
 	lines  []unmix.Line            // of the references
+	refs   *merit.References       // how they came from standards; nil when they did not
 	fit    *parafac.Result         // nil without resolve
 	fits   []*parafac.Result       // candidates
 	choice *parafac.Choice         // nil where the number was stated
@@ -262,6 +263,12 @@ func (j *job) references() (*unmix.Set, error) {
 		return nil, fmt.Errorf("%s: %w", j.sheet.Path, err)
 	}
 	j.lines = lines
+	j.refs = &merit.References{Weights: unmix.WeightsOf(j.cube.Grid, names, standards)}
+	for _, b := range j.sv.Bottles {
+		if j.calibrates(b) && b.Usable() {
+			j.refs.Row = append(j.refs.Row, j.row[b])
+		}
+	}
 	return set, nil
 }
 
@@ -319,7 +326,8 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 		}
 		bottles = append(bottles, m)
 	}
-	judged := merit.Judge(r, bottles, j.cube.Sample, j.sv.Limit, j.sv.Accept, set.Origin)
+	spreads := merit.Spreads(j.cube, r, j.sources(method))
+	judged := merit.Judge(r, spreads, bottles, j.cube.Sample, j.sv.Limit, j.sv.Accept, set.Origin)
 	j.res = append(j.res, r)
 	j.judge = append(j.judge, judged)
 	return nil

@@ -65,7 +65,7 @@ func (j *job) recoveryFlags() []eem.Flag {
 func (j *job) duplicateFlags() []eem.Flag {
 	var out []eem.Flag
 	lim := j.sv.Limit("duplicate")
-	for _, r := range j.res {
+	for k, r := range j.res {
 		for _, b := range j.sv.Bottles {
 			if b.Row.ReplicateOf == "" {
 				continue
@@ -79,7 +79,7 @@ func (j *job) duplicateFlags() []eem.Flag {
 			for f, c := range r.Set.Components {
 				x, y := r.Value[i*r.Set.Len()+f], r.Value[l*r.Set.Len()+f]
 				// Near the detection limit a relative difference says nothing.
-				least := 10 * math.Max(r.U[i*r.Set.Len()+f], r.U[l*r.Set.Len()+f])
+				least := math.Max(j.judge[k].Spreads[i].Quantifiable[f], j.judge[k].Spreads[l].Quantifiable[f])
 				if !(x > least && y > least) {
 					continue
 				}

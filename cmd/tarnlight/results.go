@@ -94,6 +94,7 @@ func (j *job) fitColumns(set func(string, any), b *prepare.Bottle, at int) {
 	set("cells_used", fit.Cells)
 	set("explained_percent", fit.Explained)
 	set("residual_rms", fit.RMS)
+	set("noise_rms", j.judge[0].Spreads[i].NoiseRMS)
 	set("structure", j.judge[0].Structure[at].Z)
 	set("hottest_ex_nm", fit.HotEx)
 	set("hottest_em_nm", fit.HotEm)
@@ -270,7 +271,7 @@ func (j *job) calibrationTable() *report.Table {
 				}
 			}
 			t.Append(b.Row.ID, b.Batch, string(b.Row.Kind), g.component, g.given, found, r.Set.Components[f].AmountUnit,
-				r.U[i*r.Set.Len()+f], recovery, low, high, j.calibrates(b), verdict, reason, l.Slope, l.Intercept, l.InterceptSE)
+				j.judge[k].Spreads[i].U[f], recovery, low, high, j.calibrates(b), verdict, reason, l.Slope, l.Intercept, l.InterceptSE)
 		}
 	}
 	return t
@@ -315,23 +316,6 @@ func (j *job) bottle(id string) *prepare.Bottle {
 		}
 	}
 	return nil
-}
-
-// budgetTable makes budget.csv: so far the one cause that is known.
-func (j *job) budgetTable() *report.Table {
-	t := report.New("budget.csv")
-	for k, judged := range j.judge {
-		df := map[string]int{}
-		for i, id := range j.res[k].IDs {
-			df[id] = j.res[k].Fits[i].Cells - j.res[k].Set.Len()
-		}
-		for _, c := range judged.Contributions {
-			if !math.IsNaN(c.U) {
-				t.Append(c.ID, c.Component, c.Method, "scatter of the residual", "cell", c.U, c.Unit, 100.0, df[c.ID], "s²(AᵀA)⁻¹ of the bottle's own fit")
-			}
-		}
-	}
-	return t
 }
 
 // stepTable makes steps.csv: every step of every setup with its parameters. Where

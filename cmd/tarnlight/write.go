@@ -102,7 +102,7 @@ func (j *job) writeStore(path string) error {
 		for _, r := range j.res {
 			r.ResidualTo(residual[r.Set.Method], j.cube.Sample(i), i)
 		}
-		if err := w.Append(b.Row.ID, j.cube.Sample(i), nil, residual, j.cube.SampleWhy(i)); err != nil {
+		if err := w.Append(b.Row.ID, j.cube.Sample(i), j.cube.SampleU(i), residual, j.cube.SampleWhy(i)); err != nil {
 			return err
 		}
 	}

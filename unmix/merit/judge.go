@@ -31,17 +31,14 @@ const (
 type Judged struct {
 	Contributions []unmix.Contribution
 	Flags         []eem.Flag
-	Structure     []Moran // one a bottle; zero where it is not in the resolution
+	Structure     []Moran  // one a bottle; zero where it is not in the resolution
+	Spreads       []Spread // one a row of the resolution
 }
 
-// Judge makes one contribution for every bottle and component. x returns the
-// cells of a row of the resolution's cube; limit the limit of a test.
-//
-// Critical value, detection and quantification limit are Currie's, on the
-// standard uncertainty that the scatter of the bottle's own residual gives. They
-// know nothing of blanks and references.
-func Judge(r *unmix.Resolution, bottles []Bottle, x func(row int) []float64, limit func(code string) float64, accept func(eem.Flag) eem.Flag, model string) *Judged {
-	j := &Judged{Structure: make([]Moran, len(bottles))}
+// Judge makes one contribution for every bottle and component. spreads are those of
+// the resolution's rows, x returns the cells of one, limit the limit of a test.
+func Judge(r *unmix.Resolution, spreads []Spread, bottles []Bottle, x func(row int) []float64, limit func(code string) float64, accept func(eem.Flag) eem.Flag, model string) *Judged {
+	j := &Judged{Structure: make([]Moran, len(bottles)), Spreads: spreads}
 	dst := make([]float64, r.Set.Grid.Cells())
 	for i, b := range bottles {
 		doubts, rejects := b.Doubts, b.Rejects
@@ -60,7 +57,7 @@ func Judge(r *unmix.Resolution, bottles []Bottle, x func(row int) []float64, lim
 			}
 		}
 		for f := range r.Set.Components {
-			c, flags := contribution(r, b, f, doubts, rejects, accept)
+			c, flags := contribution(r, spreads, b, f, doubts, rejects, accept)
 			c.Model = model
 			j.Contributions = append(j.Contributions, c)
 			j.Flags = append(j.Flags, flags...)
@@ -97,7 +94,7 @@ func fitFlags(r *unmix.Resolution, b Bottle, m Moran, limit func(string) float64
 }
 
 // contribution judges component f of bottle b.
-func contribution(r *unmix.Resolution, b Bottle, f int, doubts, rejects []string, accept func(eem.Flag) eem.Flag) (unmix.Contribution, []eem.Flag) {
+func contribution(r *unmix.Resolution, spreads []Spread, b Bottle, f int, doubts, rejects []string, accept func(eem.Flag) eem.Flag) (unmix.Contribution, []eem.Flag) {
 	comp := r.Set.Components[f]
 	nan := math.NaN()
 	c := unmix.Contribution{ID: b.ID, Component: comp.Name, Method: r.Set.Method, Unit: comp.AmountUnit,
@@ -106,12 +103,10 @@ func contribution(r *unmix.Resolution, b Bottle, f int, doubts, rejects []string
 		c.Unit = string(r.Set.Unit)
 	}
 	if b.Row >= 0 {
-		i := b.Row*r.Set.Len() + f
-		c.Value, c.U = r.Value[i], r.U[i]
-		if math.IsInf(c.U, 0) {
-			c.U = nan
-		}
-		c.Critical, c.Detection, c.Quantification = kCritical*c.U, kDetect*c.U, kQuantify*c.U
+		s := &spreads[b.Row]
+		c.Value, c.U = r.Value[b.Row*r.Set.Len()+f], s.U[f]
+		c.Lower, c.Upper = s.Lower[f], s.Upper[f]
+		c.Critical, c.Detection, c.Quantification = s.Critical[f], s.Detection[f], s.Quantifiable[f]
 		c.Detected = c.Value > c.Critical
 	}
 	if len(rejects) > 0 || math.IsNaN(c.Value) {

@@ -1,0 +1,310 @@
+package merit_test
+
+import (
+	"encoding/json"
+	"math"
+	"os"
+	"strings"
+	"testing"
+
+	"gonum.org/v1/gonum/mat"
+
+	"tarnlight/unmix/merit"
+)
+
+// checks reads the inputs and the expected values of a published or recomputed
+// check; sources and tolerances stand in the file.
+func checks(t *testing.T, file, id string, in, want any) {
+	t.Helper()
+	raw, err := os.ReadFile("../../testdata/" + file + "/checks.json")
+	if err != nil {
+		t.Fatal(err)
+	}
+	var list []struct {
+		ID               string
+		Inputs, Expected json.RawMessage
+	}
+	if err := json.Unmarshal(raw, &list); err != nil {
+		t.Fatal(err)
+	}
+	for _, c := range list {
+		if c.ID != id {
+			continue
+		}
+		for _, v := range []struct {
+			raw json.RawMessage
+			to  any
+		}{{c.Inputs, in}, {c.Expected, want}} {
+			if v.to == nil {
+				continue
+			}
+			if err := json.Unmarshal(v.raw, v.to); err != nil {
+				t.Fatalf("%s: %v", id, err)
+			}
+		}
+		return
+	}
+	t.Fatalf("no check %s in testdata/%s", id, file)
+}
+
+func near(t *testing.T, what string, got, want, rel float64) {
+	t.Helper()
+	if !(math.Abs(got-want) <= rel*math.Abs(want)) {
+		t.Errorf("%s: %.12g, want %.12g (relative %.2g)", what, got, want, rel)
+	}
+}
+
+// Currie 1968, Anal. Chem. 40, 586, in the paired counting form.
+func TestCurrieCounts(t *testing.T) {
+	var in struct{ B []float64 }
+	var want struct{ L_C, L_D, L_Q []float64 }
+	checks(t, "merit", "CHK-6a", &in, &want)
+	for i, b := range in.B {
+		l := merit.CurrieCounts(b)
+		near(t, "critical", l.Critical, want.L_C[i], 1e-12)
+		near(t, "detection", l.Detection, want.L_D[i], 1e-12)
+		near(t, "quantification", l.Quantification, want.L_Q[i], 1e-12)
+	}
+	l := merit.Currie(1)
+	near(t, "1.645", l.Critical, 1.6448536269514722, 1e-15)
+	near(t, "3.29", l.Detection, 3.2897072539029444, 1e-15)
+}
+
+// ISO 11843-2: δ(ν; 0.05, 0.05), checked with scipy.stats.nct.
+func TestDelta(t *testing.T) {
+	var in struct{ Nu []float64 }
+	var want struct{ Delta, Approximation []float64 }
+	checks(t, "merit", "CHK-6b", &in, &want)
+	for i, nu := range in.Nu {
+		near(t, "delta", merit.Delta(nu, 0.05, 0.05), want.Delta[i], 1e-7)
+		near(t, "2t·4ν/(4ν+1)", 2*merit.TQuantile(0.95, nu)*4*nu/(4*nu+1), want.Approximation[i], 1e-7)
+	}
+	near(t, "infinite", merit.Delta(math.Inf(1), 0.05, 0.05), 2*1.6448536269514722, 1e-12)
+}
+
+// The published line of ISO 11843-2 in closed form: five levels twice, residuals
+// of ±0.1 around 2x + 1.
+func TestISO11843(t *testing.T) {
+	var x, y []float64
+	for i := range 5 {
+		x = append(x, float64(i), float64(i))
+		y = append(y, 2*float64(i)+1.1, 2*float64(i)+0.9)
+	}
+	got := merit.ISO11843(x, y, 1)
+	s := math.Sqrt(10 * 0.01 / 8)
+	root := math.Sqrt(1 + 0.1 + 4.0/20)
+	near(t, "x_c", got.Critical, merit.TQuantile(0.95, 8)*s/2*root, 1e-12)
+	near(t, "x_d", got.Detectable, 3.617126558895169*s/2*root, 1e-7) // δ(8), CHK-6b
+	near(t, "y_c", got.Response, 1+2*got.Critical, 1e-12)
+}
+
+// Lorber 1986: net analyte signal; variance inflation is that of CHK-4e.
+func TestOverlaps(t *testing.T) {
+	var in struct{ S [][]float64 }
+	var want struct{ SEN, SEL, VIF []float64 }
+	checks(t, "merit", "CHK-6c", &in, &want)
+	a := mat.NewDense(len(in.S), 2, nil)
+	for i, r := range in.S {
+		a.SetRow(i, r)
+	}
+	for f, o := range merit.Overlaps(a) {
+		near(t, "SEN", o.Sensitivity, want.SEN[f], 1e-12)
+		near(t, "SEL", o.Selectivity, want.SEL[f], 1e-12)
+		near(t, "VIF", o.VIF, want.VIF[f], 1e-12)
+	}
+	twice := mat.NewDense(3, 2, []float64{1, 2, 2, 4, 3, 6})
+	if o := merit.Overlaps(twice)[0]; o.Selectivity != 0 || !math.IsInf(o.VIF, 1) {
+		t.Errorf("dependent columns: %+v", o)
+	}
+}
+
+func TestSecondOrders(t *testing.T) {
+	var in struct{ B, C [][]float64 }
+	var want struct{ MKL, HCD float64 }
+	checks(t, "merit", "CHK-6d", &in, &want)
+	for _, s := range merit.SecondOrders(columns(in.B), columns(in.C)) {
+		near(t, "all known", s.All, want.MKL, 1e-12)
+		near(t, "unknown interferents", s.Unknown, want.HCD, 1e-12)
+	}
+}
+
+func columns(m [][]float64) [][]float64 {
+	out := make([][]float64, len(m[0]))
+	for f := range out {
+		for _, r := range m {
+			out[f] = append(out[f], r[f])
+		}
+	}
+	return out
+}
+
+// strd returns the residuals of a fit of the NIST StRD data sets.
+func strd(t *testing.T, name string) []float64 {
+	var in struct {
+		Y         []float64
+		X         json.RawMessage
+		Intercept bool
+		Model     string
+	}
+	checks(t, "nnls", "STRD-"+name, &in, nil)
+	var rows [][]float64
+	var list []float64
+	switch {
+	case json.Unmarshal(in.X, &list) == nil:
+		for _, x := range list {
+			row := []float64{x}
+			if strings.HasPrefix(name, "Wampler") {
+				row = []float64{x, x * x, x * x * x, x * x * x * x, x * x * x * x * x}
+			}
+			if name == "Pontius" {
+				row = []float64{x, x * x}
+			}
+			rows = append(rows, row)
+		}
+	default:
+		if err := json.Unmarshal(in.X, &rows); err != nil {
+			t.Fatal(err)
+		}
+	}
+	n := len(rows[0])
+	if in.Intercept {
+		n++
+	}
+	// Columns at unit length and two rounds of refinement: the residuals, not the
+	// coefficients, are what is asked.
+	a := mat.NewDense(len(rows), n, nil)
+	for i, r := range rows {
+		if in.Intercept {
+			r = append([]float64{1}, r...)
+		}
+		a.SetRow(i, r)
+	}
+	for f := range n {
+		norm := mat.Norm(a.ColView(f), 2)
+		for i := range rows {
+			a.Set(i, f, a.At(i, f)/norm)
+		}
+	}
+	var qr mat.QR
+	qr.Factorize(a)
+	res := mat.NewVecDense(len(in.Y), append([]float64(nil), in.Y...))
+	for range 3 {
+		var x, fit mat.VecDense
+		_ = qr.SolveVecTo(&x, false, res) // a warning of the condition number at most
+		fit.MulVec(a, &x)
+		res.SubVec(res, &fit)
+	}
+	return res.RawVector().Data
+}
+
+func TestRuns(t *testing.T) {
+	var want map[string]struct {
+		Pos            int `json:"n_pos"`
+		Neg            int `json:"n_neg"`
+		Runs           int
+		Mean, Variance float64
+		Z              float64
+	}
+	checks(t, "merit", "CHK-6e", nil, &want)
+	if len(want) != 5 {
+		t.Fatalf("%d data sets", len(want))
+	}
+	for name, w := range want {
+		r := merit.Runs(strd(t, name))
+		if r.Positive != w.Pos || r.Negative != w.Neg || r.Runs != w.Runs {
+			t.Errorf("%s: %+v, want %+v", name, r, w)
+		}
+		near(t, name+" mean", r.Mean, w.Mean, 1e-10)
+		near(t, name+" variance", r.Variance, w.Variance, 1e-10)
+		near(t, name+" Z", r.Z, w.Z, 1e-10)
+	}
+}
+
+func TestDurbinWatson(t *testing.T) {
+	var want map[string]float64
+	checks(t, "merit", "CHK-6f", nil, &want)
+	for name, w := range want {
+		near(t, name, merit.DurbinWatson(strd(t, name)), w, 1e-8)
+	}
+}
+
+func TestDurbinWatsonBounds(t *testing.T) {
+	var want struct {
+		Bounds []struct {
+			N, K   int
+			DL, DU float64
+		}
+	}
+	checks(t, "merit", "CHK-6f-bounds", nil, &want)
+	for _, w := range want.Bounds {
+		lo, hi := merit.DurbinWatsonBounds(w.N, w.K, 0.05)
+		if math.Abs(lo-w.DL) > 1e-6 || math.Abs(hi-w.DU) > 1e-6 {
+			t.Errorf("n %d, k %d: %.7f %.7f, want %.7f %.7f", w.N, w.K, lo, hi, w.DL, w.DU)
+		}
+	}
+}
+
+// Jackson & Mudholkar 1979, Box, and exact by an Imhof integral.
+func TestQLimit(t *testing.T) {
+	var in struct{ Eigenvalues []float64 }
+	var want struct {
+		Limits map[string]struct {
+			JM    float64 `json:"jackson_mudholkar"`
+			Box   float64
+			Exact float64
+		}
+	}
+	checks(t, "merit", "CHK-6h", &in, &want)
+	for p, w := range want.Limits {
+		level := map[string]float64{"0.95": 0.95, "0.99": 0.99}[p]
+		q := merit.QLimit(in.Eigenvalues, level)
+		near(t, "Jackson–Mudholkar", q.JacksonMudholkar, w.JM, 1e-10)
+		near(t, "Box", q.Box, w.Box, 1e-8)
+		near(t, "exact", q.Exact, w.Exact, 1e-8)
+	}
+}
+
+// Tracy, Young & Mason 1992.
+func TestT2Limits(t *testing.T) {
+	var want struct {
+		Cases []struct {
+			N, A     int
+			New      []float64 `json:"new_95_99"`
+			Training []float64 `json:"training_95_99"`
+		}
+	}
+	checks(t, "merit", "CHK-6i", nil, &want)
+	for _, w := range want.Cases {
+		for i, p := range []float64{0.95, 0.99} {
+			fresh, training := merit.T2Limits(w.A, w.N, p)
+			near(t, "new", fresh, w.New[i], 1e-10)
+			near(t, "training", training, w.Training[i], 1e-10)
+		}
+	}
+}
+
+func TestFromPairs(t *testing.T) {
+	var in struct{ D []float64 }
+	var want struct{ S float64 }
+	checks(t, "merit", "CHK-9a", &in, &want)
+	near(t, "s", merit.FromPairs(in.D), want.S, 1e-12)
+}
+
+// Welch–Satterthwaite, JCGM 100:2008.
+func TestSatterthwaite(t *testing.T) {
+	var want struct {
+		UC  float64 `json:"u_c"`
+		Nu  float64 `json:"nu_eff"`
+		K95 float64 `json:"k_95_nu_floor"`
+		K   float64 `json:"k_95"`
+	}
+	checks(t, "merit", "CHK-9b", nil, &want)
+	nu := merit.Satterthwaite([]float64{0.05 * 0.05, 0.03 * 0.03}, []float64{9, 0})
+	near(t, "ν_eff", nu, want.Nu, 1e-10)
+	near(t, "k", merit.TQuantile(0.975, nu), math.Max(want.K, merit.TQuantile(0.975, nu)*0), 0.01)
+	near(t, "k at ν rounded down", merit.TQuantile(0.975, math.Floor(nu)), merit.TQuantile(0.975, 16), 1e-12)
+	near(t, "u_c", math.Sqrt(0.05*0.05+0.03*0.03), want.UC, 1e-12)
+	if !math.IsInf(merit.Satterthwaite([]float64{1}, []float64{0}), 1) {
+		t.Error("a known variance has infinite degrees of freedom")
+	}
+}

@@ -1,0 +1,357 @@
+package merit
+
+import (
+	"math"
+	"math/rand/v2"
+	"slices"
+
+	"gonum.org/v1/gonum/mat"
+
+	"tarnlight/nnls"
+)
+
+// z975 is the 97.5 % point of the standard normal distribution.
+const z975 = 1.9599639845400545
+
+// combine adds up the sources and draws the conclusions.
+func (b *bottle) combine() {
+	n := b.e.n
+	mats := make([][]float64, len(b.sources))
+	total := make([]float64, n*n)
+	for t := range b.sources {
+		mats[t] = make([]float64, n*n)
+		b.sources[t].at(mats[t], b.x)
+		axpy(1, mats[t], total)
+		b.sources[t].U = nans(n)
+	}
+	passive := passiveSet(b.x, -1)
+	wp := inverse(b.m.gram, n, passive)
+	b.out.Cov = sandwich(wp, total, n)
+	v, df := make([]float64, len(mats)), make([]float64, len(mats))
+	for t := range mats {
+		df[t] = b.sources[t].DF
+	}
+	for f := range n {
+		row := b.sensitivity(f, wp)
+		if row == nil {
+			continue // the data say nothing about it
+		}
+		sum := 0.0
+		for t := range mats {
+			v[t] = math.Max(0, form(mats[t], row))
+			b.sources[t].U[f] = math.Sqrt(v[t])
+			sum += v[t]
+		}
+		b.out.U[f], b.out.DF[f] = math.Sqrt(sum), effective(v, df)
+		b.limits(f, row, df)
+		k := TQuantile(0.975, b.out.DF[f])
+		b.out.Lower[f], b.out.Upper[f] = math.Max(0, b.x[f]-k*b.out.U[f]), b.x[f]+k*b.out.U[f]
+	}
+	b.monteCarlo(total)
+	b.budget()
+}
+
+// sensitivity is row f of W for component f free beside those above zero; nil where
+// it depends on them.
+func (b *bottle) sensitivity(f int, wp []float64) []float64 {
+	n := b.e.n
+	w := wp
+	if b.x[f] <= 0 {
+		w = inverse(b.m.gram, n, passiveSet(b.x, f))
+	}
+	if w == nil || w[f*n+f] == 0 {
+		return nil
+	}
+	return w[f*n : (f+1)*n]
+}
+
+// effective sums variances of equal degrees of freedom before the formula of
+// Satterthwaite: they rest on the same few repetitions and are off together.
+func effective(v, df []float64) float64 {
+	var sum, of []float64
+	for t, d := range df {
+		at := slices.Index(of, d)
+		if at < 0 {
+			at = len(of)
+			of, sum = append(of, d), append(sum, 0)
+		}
+		sum[at] += v[t]
+	}
+	return Satterthwaite(sum, of)
+}
+
+// limits sets critical value, detection and quantification limit of component f
+// from what would be left of the uncertainty if the bottle held none of it, u0, and
+// what grows with the amount, r·x:
+//
+//	critical  t·u0                          5 % of bottles without it exceed it
+//	detection δ·u0/(1 − k²r²)               95 % of bottles with it exceed that
+//	quantification u0/√(0.1² − r²)          relative standard uncertainty 10 %
+//
+// with t Student's 95 % point, δ the non-centrality of ISO 11843-2 and k = 1.645.
+func (b *bottle) limits(f int, row, df []float64) {
+	n := b.e.n
+	none := slices.Clone(b.x)
+	none[f] = 0
+	one := make([]float64, n)
+	one[f] = 1
+	v := make([]float64, len(b.sources))
+	m := make([]float64, n*n)
+	u0, r2 := 0.0, 0.0
+	for t := range b.sources {
+		if b.sources[t].Cause == misfit {
+			continue // what is not in the model makes the decision doubtful, not lenient
+		}
+		clear(m)
+		b.sources[t].at(m, none)
+		v[t] = math.Max(0, form(m, row))
+		u0 += v[t]
+		clear(m)
+		b.sources[t].at(m, one)
+		at1 := math.Max(0, form(m, row))
+		clear(m)
+		b.sources[t].at(m, make([]float64, n))
+		r2 += math.Max(0, at1-math.Max(0, form(m, row)))
+	}
+	nu := effective(v, df)
+	u0 = math.Sqrt(u0)
+	b.out.Critical[f] = TQuantile(0.95, nu) * u0
+	if shrink := 1 - kCritical*kCritical*r2; shrink > 0 {
+		b.out.Detection[f] = Delta(nu, 0.05, 0.05) * u0 / shrink
+	}
+	if r2 < 0.01 {
+		b.out.Quantifiable[f] = u0 / math.Sqrt(0.01-r2)
+	}
+}
+
+// passiveSet lists the components above zero, and with.
+func passiveSet(x []float64, with int) []int {
+	var out []int
+	for f, v := range x {
+		if v > 0 || f == with {
+			out = append(out, f)
+		}
+	}
+	return out
+}
+
+func all(n int) []int {
+	out := make([]int, n)
+	for i := range out {
+		out[i] = i
+	}
+	return out
+}
+
+// inverse returns the inverse of the rows and columns idx of the n × n matrix g,
+// 0 elsewhere; nil where it is singular (condition number of the unit-norm columns
+// above 1e7).
+func inverse(g []float64, n int, idx []int) []float64 {
+	out := make([]float64, n*n)
+	k := len(idx)
+	if k == 0 {
+		return out
+	}
+	s := mat.NewSymDense(k, nil)
+	for a, x := range idx {
+		for c, y := range idx[:a+1] {
+			s.SetSym(a, c, g[x*n+y]/math.Sqrt(g[x*n+x]*g[y*n+y]))
+		}
+	}
+	var chol mat.Cholesky
+	if !finite(s) || !chol.Factorize(s) || chol.Cond() > 1e14 {
+		return nil
+	}
+	var inv mat.SymDense
+	if chol.InverseTo(&inv) != nil {
+		return nil
+	}
+	for a, x := range idx {
+		for c, y := range idx {
+			out[x*n+y] = inv.At(a, c) / math.Sqrt(g[x*n+x]*g[y*n+y])
+		}
+	}
+	return out
+}
+
+func finite(s *mat.SymDense) bool {
+	n := s.SymmetricDim()
+	for i := range n {
+		for j := range n {
+			if v := s.At(i, j); math.IsNaN(v) || math.IsInf(v, 0) {
+				return false
+			}
+		}
+	}
+	return true
+}
+
+// sandwich is w m w'.
+func sandwich(w, m []float64, n int) []float64 {
+	if w == nil {
+		return nans(n * n)
+	}
+	a, b := mat.NewDense(n, n, slices.Clone(w)), mat.NewDense(n, n, slices.Clone(m))
+	var t, out mat.Dense
+	t.Mul(a, b)
+	out.Mul(&t, a.T())
+	return out.RawMatrix().Data
+}
+
+// drawn is the number of Monte Carlo draws; the ends of an interval then have a
+// standard error of about 0.04 u.
+const drawn = 4000
+
+// normals returns n standard normal draws, the same for every bottle: each row of
+// the second half is one of the first with the opposite sign.
+func normals(seed uint64, n int) []float64 {
+	rnd := rand.New(rand.NewPCG(seed, 0x6d65726974))
+	v := make([]float64, n)
+	for i := range n / 2 {
+		v[i] = rnd.NormFloat64()
+		v[n/2+i] = -v[i]
+	}
+	return v
+}
+
+// monteCarlo replaces the interval of contributions under three standard
+// uncertainties, whose distribution is cut at zero, by the shortest one that holds
+// 95 % of what the resolution makes of disturbed data (JCGM 101). The draws are
+// made in the space of the contributions around those found, and each is brought
+// to the nearest mixture without negative amounts.
+func (b *bottle) monteCarlo(total []float64) {
+	n := b.e.n
+	var near []int
+	for f := range n {
+		if b.x[f] < 3*b.out.U[f] {
+			near = append(near, f)
+		}
+	}
+	if near == nil {
+		return
+	}
+	w := inverse(b.m.gram, n, all(n))
+	if w == nil {
+		return
+	}
+	draws := b.draw(sandwich(w, total, n))
+	if draws == nil {
+		return
+	}
+	solveDraws(draws, b.m.gram, n)
+	v := make([]float64, drawn)
+	for _, f := range near {
+		stretch := TQuantile(0.975, b.out.DF[f]) / z975
+		for d := range v {
+			v[d] = math.Max(0, b.x[f]+stretch*(draws[d*n+f]-b.x[f]))
+		}
+		b.out.Lower[f], b.out.Upper[f] = ShortestInterval(v, 0.95)
+	}
+}
+
+// draw returns draws × n of normal amounts around those found, nil where the
+// covariance is not positive definite.
+func (b *bottle) draw(cov []float64) []float64 {
+	n := b.e.n
+	sd := make([]float64, n)
+	for f := range sd {
+		sd[f] = math.Sqrt(cov[f*n+f])
+	}
+	s := mat.NewSymDense(n, nil)
+	for f := range n {
+		for h := range f + 1 {
+			v := cov[f*n+h] / sd[f] / sd[h]
+			if f == h {
+				v += 1e-12
+			}
+			s.SetSym(f, h, v)
+		}
+	}
+	var chol mat.Cholesky
+	if !finite(s) || !chol.Factorize(s) {
+		return nil
+	}
+	var l mat.TriDense
+	chol.LTo(&l)
+	out := make([]float64, drawn*n)
+	for d := range drawn {
+		z := b.e.draws[d*n : (d+1)*n]
+		for f := range n {
+			v := 0.0
+			for h := range f + 1 {
+				v += l.At(f, h) * z[h]
+			}
+			out[d*n+f] = b.x[f] + sd[f]*v
+		}
+	}
+	return out
+}
+
+// solveDraws replaces every draw z that has a negative amount by the x ≥ 0 that
+// minimises (x − z)'G(x − z).
+func solveDraws(draws, gram []float64, n int) {
+	var bad []int
+	for d := range len(draws) / n {
+		for _, v := range draws[d*n : (d+1)*n] {
+			if v < 0 {
+				bad = append(bad, d)
+				break
+			}
+		}
+	}
+	if bad == nil {
+		return
+	}
+	s := mat.NewSymDense(n, slices.Clone(gram))
+	var chol mat.Cholesky
+	if !finite(s) || !chol.Factorize(s) {
+		return
+	}
+	var u mat.TriDense
+	chol.UTo(&u)
+	z, rhs, dst := mat.NewDense(len(bad), n, nil), mat.NewDense(len(bad), n, nil), mat.NewDense(len(bad), n, nil)
+	for r, d := range bad {
+		z.SetRow(r, draws[d*n:(d+1)*n])
+	}
+	rhs.Mul(z, u.T())
+	batch, err := nnls.NewBatch(&u, &nnls.Settings{Workers: 1})
+	if err != nil {
+		return
+	}
+	results, _ := batch.SolveTo(dst, rhs, nil) // results mark what failed one by one
+	for r, d := range bad {
+		if results[r].Status == nnls.Optimal {
+			copy(draws[d*n:(d+1)*n], dst.RawRowView(r))
+		}
+	}
+}
+
+// budget lists the terms, largest first by their largest share of any component.
+func (b *bottle) budget() {
+	share := func(t Term) float64 {
+		s := 0.0
+		for f, u := range t.U {
+			if b.out.U[f] > 0 && u == u {
+				s = math.Max(s, u/b.out.U[f])
+			}
+		}
+		return s
+	}
+	for _, s := range b.sources {
+		b.out.Terms = append(b.out.Terms, s.Term)
+	}
+	slices.SortStableFunc(b.out.Terms, func(x, y Term) int {
+		switch a, c := share(x), share(y); {
+		case a > c:
+			return -1
+		case a < c:
+			return 1
+		}
+		return 0
+	})
+	for i, t := range b.silent { // one row a name
+		if !slices.ContainsFunc(b.silent[:i], func(o Term) bool { return o.Cause == t.Cause }) {
+			b.out.Terms = append(b.out.Terms, t)
+		}
+	}
+}

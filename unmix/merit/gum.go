@@ -1,0 +1,66 @@
+package merit
+
+import (
+	"math"
+	"slices"
+
+	"gonum.org/v1/gonum/stat/distuv"
+)
+
+// Satterthwaite returns the degrees of freedom of a variance that is the sum of
+// v[i], each on df[i] degrees of freedom (0 or +Inf: known): (Σv)²/Σ(v²/df), +Inf
+// where all are known (Welch–Satterthwaite, JCGM 100:2008, G.4.1).
+func Satterthwaite(v, df []float64) float64 {
+	sum, den := 0.0, 0.0
+	for i, x := range v {
+		sum += x
+		if df[i] > 0 && !math.IsInf(df[i], 1) {
+			den += x * x / df[i]
+		}
+	}
+	if den == 0 {
+		return math.Inf(1)
+	}
+	return sum * sum / den
+}
+
+// TQuantile returns the p quantile of Student's t with nu degrees of freedom, the
+// normal one for +Inf or 0.
+func TQuantile(p, nu float64) float64 {
+	if math.IsInf(nu, 1) || !(nu > 0) || nu > 1e6 {
+		return distuv.UnitNormal.Quantile(p)
+	}
+	return distuv.StudentsT{Mu: 0, Sigma: 1, Nu: nu}.Quantile(p)
+}
+
+// ShortestInterval returns the shortest interval that holds the share p of the
+// draws, which it sorts (JCGM 101:2008, 5.3.4 and 7.7). It panics on no draws.
+func ShortestInterval(draws []float64, p float64) (lo, hi float64) {
+	slices.Sort(draws)
+	m := len(draws)
+	q := min(m-1, int(math.Round(p*float64(m))))
+	lo, hi = draws[0], draws[q]
+	for r := 1; r+q < m; r++ {
+		if draws[r+q]-draws[r] < hi-lo {
+			lo, hi = draws[r], draws[r+q]
+		}
+	}
+	return lo, hi
+}
+
+// FromPairs returns the standard deviation of one measurement from the differences
+// of m duplicates: √(Σd²/2m).
+func FromPairs(d []float64) float64 {
+	ss := 0.0
+	for _, v := range d {
+		ss += v * v
+	}
+	return math.Sqrt(ss / float64(2*len(d)))
+}
+
+// Standard uncertainties of what is given as a half-width a (JCGM 100:2008, 4.3)
+// or as an expanded uncertainty.
+func Rectangular(a float64) float64 { return a / math.Sqrt(3) }
+
+// Triangular is the standard uncertainty of a symmetric triangle of half-width a.
+func Triangular(a float64) float64 { return a / math.Sqrt(6) }

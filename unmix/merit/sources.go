@@ -1,0 +1,89 @@
+package merit
+
+import (
+	"cmp"
+	"slices"
+
+	"tarnlight/eem"
+	"tarnlight/unmix"
+)
+
+// Sources is what is known of the errors behind a resolution, beside the noise of
+// the cells in Cube.U. Slices are by row of the cube. The zero Sources is lawful:
+// what is left then is the noise, or the scatter of the residual.
+type Sources struct {
+	Causes   [][]eem.Cause // errors that cells share, on the cube's grid
+	BlankSet []string      // which mean of blanks was subtracted, empty: none
+	Factor   []float64     // dilution, by which that mean's error was multiplied; nil means 1
+	Blank    []bool        // the bottle is itself one of its BlankSet
+
+	// BlankU is the standard uncertainty of the cells of a mean of blanks, J × K.
+	BlankU map[string][]float32
+
+	// References say how the components came from standards; nil when they did not.
+	References *References
+	// Loadings say how well resolved components are known; nil when they were given.
+	Loadings *Loadings
+
+	// Stock is the relative standard uncertainty of the standards' amounts, which a
+	// component's levels share; StockMissing says that it acts and nobody stated it.
+	Stock        float64
+	StockMissing bool
+
+	Seed uint64 // of the Monte Carlo draws
+}
+
+// References tie components to the standards they were made of.
+type References struct {
+	Weights *unmix.Weights
+	Row     []int // of the cube, one a standard in the order of Weights
+}
+
+// Loadings give, for every sample l that a model was fitted to, how far the
+// loadings move (first order) when it is left out: F × J and F × K, in units of
+// their maximum of 1. Their products summed over l are the covariance of the
+// loadings (infinitesimal jackknife).
+type Loadings struct {
+	Samples int
+	Move    func(l int) (ex, em [][]float64)
+}
+
+// Term is one row of an uncertainty budget: what one cause contributes to the
+// standard uncertainty of every component of a bottle.
+type Term struct {
+	Cause  string
+	Scope  string    // who shares the error: cell, bottle, standard, batch, survey
+	U      []float64 // F; nil: the cause acts and its size is not given
+	DF     float64   // degrees of freedom, 0 for known
+	Source string
+}
+
+// Spread is how sure the contributions of one bottle are, F values each, in the
+// components' units; NaN where the bottle was not usable.
+type Spread struct {
+	U, DF                             []float64 // combined standard uncertainty, effective degrees of freedom
+	Lower, Upper                      []float64 // of the 95 % interval, 0 or more
+	Critical, Detection, Quantifiable []float64
+	Cov                               []float64 // F × F covariance of the contributions above zero
+	Terms                             []Term    // largest first for the first component; not given ones last
+	NoiseRMS                          float64   // what noise alone would leave, intensity
+	ChiSquare                         float64   // Σ(residual²/variance) over the degrees of freedom: 1 is noise alone
+}
+
+// Largest returns the terms in falling order of what they contribute to component f,
+// those not given last.
+func (s *Spread) Largest(f int) []Term {
+	out := slices.Clone(s.Terms)
+	slices.SortStableFunc(out, func(x, y Term) int {
+		switch {
+		case x.U == nil && y.U == nil:
+			return 0
+		case y.U == nil:
+			return -1
+		case x.U == nil:
+			return 1
+		}
+		return cmp.Compare(y.U[f], x.U[f])
+	})
+	return out
+}
