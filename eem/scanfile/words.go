@@ -40,19 +40,22 @@ var (
 // mentionedEx returns the excitation, nm, that a header line or file name
 // mentions by the word. A range or list of wavelengths is none.
 func mentionedEx(s string) (float64, bool) {
-	for _, m := range exMention.FindAllStringSubmatchIndex(s, -1) {
+	for {
+		m := exMention.FindStringSubmatchIndex(s)
+		if m == nil {
+			return 0, false
+		}
 		end := m[3]
 		if end < len(s) && s[end]-'0' <= 9 { // 240,24|5: the comma of a list
 			end = m[2] + strings.IndexAny(s[m[2]:end], ".,")
 		}
-		if end < m[2] || rangeAfter.MatchString(s[end:]) {
-			continue
+		if end > m[2] && !rangeAfter.MatchString(s[end:]) {
+			if v, ok := plausibleNM(s[m[2]:end]); ok {
+				return v, true
+			}
 		}
-		if v, ok := plausibleNM(s[m[2]:end]); ok {
-			return v, true
-		}
+		s = s[m[1]:]
 	}
-	return 0, false
 }
 
 // plausibleNM parses a wavelength, in 1/cm where it can only be that.
