@@ -27,6 +27,7 @@ type Batch struct {
 	Unit    eem.Unit
 
 	peakNM, peakSNR float64
+	spread          float64 // of a cell among the blanks, counts
 }
 
 func batchName(r *survey.Row) string {
@@ -89,10 +90,14 @@ func (s *Survey) formBatches() {
 	}
 	for _, bt := range s.Batches {
 		bt.checkBlanks(s)
+		bt.checkLevels(s)
 		bt.findScale()
 		bt.findPeak()
 	}
 	s.findBands()
+	for _, bt := range s.Batches {
+		bt.findSpread()
+	}
 }
 
 // blanksOf returns the blanks that serve a bottle.

@@ -129,6 +129,14 @@ func (b *Bottle) unknown(name string, scope eem.Scope, key string) eem.Cause {
 // scaleCauses are the error of the batch's scale, which rests on the mean of n
 // blanks, and the bottle's own.
 func (b *Bottle) scaleCauses(s *Survey, r Repeat) (out []eem.Cause) {
+	if q := s.Find(b.Batch).Quinine; s.Unit == eem.Quinine && !b.skips(stepIntensity) && q.U > 0 {
+		out = append(out, eem.Cause{Name: CauseScale, Scope: eem.OfBatch, Key: b.Batch, U: q.U / q.Slope, DF: float64(q.N - 1),
+			Source: fmt.Sprintf("line of %d quinine standards", q.N)})
+		if math.IsNaN(r.U) {
+			return append(out, b.unknown(CauseRepeat, eem.OfBottle, b.Row.ID))
+		}
+		return append(out, eem.Cause{Name: CauseRepeat, Scope: eem.OfBottle, Key: b.Row.ID, U: r.U, DF: r.DF, Source: r.Source})
+	}
 	if math.IsNaN(r.U) {
 		return []eem.Cause{b.unknown(CauseRepeat, eem.OfBottle, b.Row.ID), b.unknown(CauseScale, eem.OfBatch, b.Batch)}
 	}

@@ -72,7 +72,7 @@ func (b *Bottle) finish(s *Survey) {
 		e = scatter.Mask(e, Bands(b.Setting.Scatter))
 		s.sourceOfBands(e)
 		if len(b.blanks) > 0 && b.Row.Kind != survey.Blank {
-			e = correct.Negative(e, s.Limit("negative")) // what is left of the lines tells nothing
+			e = b.checkNegative(s, e) // what is left of the lines tells nothing
 		}
 		e = scatter.Fill(e, b.Setting.Scatter.Fill)
 	}
@@ -88,6 +88,21 @@ func (b *Bottle) finish(s *Survey) {
 	e = b.takeNoise(e)
 	b.EEM = e
 	b.flagNotes(s, e)
+}
+
+// checkNegative holds the cells against the noise of bottle and blanks together; in
+// the dark, where it matters, a blank is as noisy as the bottle.
+func (b *Bottle) checkNegative(s *Survey, e *eem.EEM) *eem.EEM {
+	both := *e
+	if e.Var != nil {
+		both.Var = make([]float64, len(e.Var))
+		for i, v := range e.Var {
+			both.Var[i] = v * (1 + 1/float64(len(b.blanks)))
+		}
+	}
+	out := correct.Negative(&both, s.Limit("negative"))
+	out.Var = e.Var
+	return out
 }
 
 // toReference brings the bottle to the reference temperature of the settings.

@@ -1,0 +1,292 @@
+package prepare_test
+
+import (
+	"maps"
+	"math"
+	"math/rand/v2"
+	"path/filepath"
+	"slices"
+	"strings"
+	"testing"
+
+	"tarnlight/eem"
+	"tarnlight/eem/prepare"
+	"tarnlight/eem/synth"
+)
+
+// Each fault of a blank of one day is flagged on the blank and reaches every
+// bottle of that day once, and none of the other day.
+func TestFaultyBlanks(t *testing.T) {
+	brightener := synth.Substance("brightener")
+	off := *forty(t).Instrument
+	off.Off = [2]float64{0, 2.5}
+	for _, c := range []struct {
+		test  string
+		blank func(s *synth.Survey, b *synth.Bottle)
+	}{
+		{"blank-level", func(_ *synth.Survey, b *synth.Bottle) {
+			b.Liquid = b.Liquid.With(synth.Dose{Of: brightener, Amount: 0.3})
+		}},
+		{"blank-drift", func(_ *synth.Survey, b *synth.Bottle) { b.Power *= 0.88 }},
+		{"wavelength", func(_ *synth.Survey, b *synth.Bottle) {
+			b.Spoil = func(e *eem.EEM, rnd *rand.Rand) { copy(e.F, off.Scan(synth.Liquid{}, rnd).F) }
+		}},
+		{"raman-law", func(_ *synth.Survey, b *synth.Bottle) {
+			b.Spoil = func(e *eem.EEM, _ *rand.Rand) {
+				for i := range e.Row(4) { // ex 290, a fault of the lamp's reference
+					e.Row(4)[i] = 60 + 1.4*(e.Row(4)[i]-60)
+				}
+			}
+		}},
+	} {
+		t.Run(c.test, func(t *testing.T) {
+			s := forty(t)
+			c.blank(s, find(s, "PW1-1"))
+			dir := t.TempDir()
+			if err := s.Write(dir); err != nil {
+				t.Fatal(err)
+			}
+			sv := prepared(t, dir, 0)
+			got := map[string]int{}
+			for _, f := range sv.Flags {
+				if f.Test == c.test {
+					got[f.ID]++
+				}
+			}
+			for _, b := range sv.Bottles {
+				want := 0
+				switch {
+				case b.Row.Kind == "blank" && b.Row.Measured.Day() == "2031-05-06":
+					// Of two blanks that drift apart nobody knows which is wrong, and
+					// wavelengths show on two lines.
+					if n := got["PW1-1"] + got["PW1-2"]; n < 1 || (c.test != "blank-drift" && got["PW1-2"] > 0) {
+						t.Errorf("the blanks are flagged %d and %d times", got["PW1-1"], got["PW1-2"])
+					}
+					continue
+				case b.Row.Kind == "blank":
+				case b.Row.Measured.Day() == "2031-05-06":
+					want = 1
+				}
+				if got[b.Row.ID] != want {
+					t.Errorf("%s: flagged %d times, want %d", b.Row.ID, got[b.Row.ID], want)
+				}
+			}
+		})
+	}
+}
+
+// A blank of another day's water is contaminated for the bottles: more of their
+// cells lie below zero than noise explains.
+func TestNegativeAfterBlank(t *testing.T) {
+	s := forty(t)
+	for _, id := range []string{"PW1-1", "PW1-2"} {
+		b := find(s, id)
+		b.Liquid = b.Liquid.With(synth.Dose{Of: synth.Substance("dyestuff"), Amount: 20})
+	}
+	dir := t.TempDir()
+	if err := s.Write(dir); err != nil {
+		t.Fatal(err)
+	}
+	n := 0
+	for _, f := range prepared(t, dir, 0).Flags {
+		if f.Test == "negative" {
+			n++
+		}
+		if f.Test == "negative" && f.Batch != "2031-05-06" {
+			t.Errorf("%s is flagged: %s", f.ID, f.Msg)
+		}
+	}
+	if n < 15 {
+		t.Errorf("%d bottles of the day are flagged, want nearly all 20", n)
+	}
+}
+
+// variant writes the survey of forty with settings and an edited sheet, and reads
+// it.
+func variant(t *testing.T, settings string, sheet func(string) string, change func(*synth.Survey)) *prepare.Survey {
+	t.Helper()
+	s := forty(t)
+	s.Bottles = slices.DeleteFunc(s.Bottles, func(b synth.Bottle) bool { return strings.HasPrefix(b.ID, "S0") && b.ID > "S006" })
+	correct, here := strings.CutPrefix(settings, "[correct]\n")
+	if !here {
+		s.Settings, correct = settings, ""
+	}
+	if change != nil {
+		change(s)
+	}
+	dir := t.TempDir()
+	if err := s.Write(dir); err != nil {
+		t.Fatal(err)
+	}
+	name := filepath.Join(dir, "survey.toml")
+	write(t, name, strings.Replace(readText(t, name), "[correct]\n", "[correct]\n"+correct, 1))
+	if sheet != nil {
+		name := filepath.Join(dir, "runsheet.csv")
+		write(t, name, sheet(readText(t, name)))
+	}
+	return prepared(t, dir, 0)
+}
+
+// Each step can be switched off by name; what is left out stands in the notes.
+func TestStepsOff(t *testing.T) {
+	plain := variant(t, "", nil, nil)
+	at := func(sv *prepare.Survey) float64 { return find2(t, sv, "S002").EEM.Interp(350, 450) }
+	for _, step := range []string{"offset", "spectral", "inner-filter", "blank", "intensity", "scatter"} {
+		sv := variant(t, "[correct]\noff = [\""+step+"\"]\n", nil, nil)
+		b := find2(t, sv, "S002")
+		if at(sv) == at(plain) && step != "scatter" {
+			t.Errorf("without %s the same number comes out: %g", step, at(sv))
+		}
+		if step == "intensity" && sv.Unit != eem.Counts {
+			t.Errorf("the unit is %s without a scale", sv.Unit)
+		}
+		if step == "scatter" && (b.EEM.Why[b.EEM.Index(5, 10)] != eem.Measured || slices.Contains(b.EEM.Why, eem.Rayleigh1)) {
+			t.Error("cells are masked though scatter is off")
+		}
+		if !slices.ContainsFunc(b.EEM.Notes, func(n eem.Note) bool { return n.Msg == step+" switched off" }) {
+			t.Errorf("no note tells that %s was switched off", step)
+		}
+	}
+	spiky := func(s *synth.Survey) {
+		find(s, "S002").Spoil = func(e *eem.EEM, _ *rand.Rand) { e.F[e.Index(14, 75)] += 3e4 }
+	}
+	for text, want := range map[string]eem.Reason{"": eem.Spike, "[correct]\noff = [\"spikes\"]\n": eem.Measured} {
+		b := find2(t, variant(t, text, nil, spiky), "S002")
+		if got := b.EEM.Why[b.EEM.Index(14, 75)]; got != want {
+			t.Errorf("%q: the spike's cell is %v, want %v", text, got, want)
+		}
+	}
+}
+
+// Fluorescence lost by warming comes back: 1 %/°C at 30 °C is F/0.9 at 20 °C
+// (Watras et al. 2011, from memory). A bottle without temperature is told.
+func TestTemperature(t *testing.T) {
+	warm := func(s *synth.Survey) { find(s, "S002").TemperatureC = 30; find(s, "S003").TemperatureC = 20 }
+	plain := variant(t, "", nil, warm)
+	sv := variant(t, "[correct]\ntemperature = {reference_c = 20, percent_per_c = 1}\n", nil, warm)
+	for id, want := range map[string]float64{"S002": 1 / 0.9, "S003": 1, "S004": 1} {
+		r := find2(t, sv, id).EEM.Interp(350, 450) / find2(t, plain, id).EEM.Interp(350, 450)
+		if math.Abs(r-want) > 1e-12 {
+			t.Errorf("%s: %g times, want %g", id, r, want)
+		}
+		if told := said(sv)[id+" no-temperature"] > 0; told != (id == "S004") {
+			t.Errorf("%s: no-temperature %v", id, told)
+		}
+	}
+}
+
+// A bottle whose batch has no blank takes the latest of its setup, but none that
+// is older than the limit.
+func TestLatestBlank(t *testing.T) {
+	drop := func(s *synth.Survey) {
+		s.Bottles = slices.DeleteFunc(s.Bottles, func(b synth.Bottle) bool { return strings.HasPrefix(b.ID, "PW2") })
+	}
+	for text, want := range map[string]int{
+		"[correct]\nblank = \"latest\"\n":                           2,
+		"[correct]\nblank = \"latest\"\nblank_max_age_days = 0.5\n": 0,
+		"[correct]\nblank = \"latest\"\nblank_max_age_days = 0\n":   2,
+		"[correct]\nblank = \"batch-mean\"\n":                       0,
+	} {
+		sv := variant(t, text, nil, drop)
+		b := find2(t, sv, "S002") // of the second day
+		if len(b.Blanks()) != want || (said(sv)["S002 no-blank"] > 0) != (want == 0) {
+			t.Errorf("%q: %d blanks, flagged %v", text, len(b.Blanks()), flagsOf(sv, "S002"))
+		}
+	}
+}
+
+// A batch without Raman area among others in Raman units rejects its bottles; it
+// never divides by the area it lacks.
+func TestNoRamanArea(t *testing.T) {
+	settings := "[intensity]\nunit = \"raman\"\n[setup.done]\nscans.applied = [\"blank\", \"intensity\"]\n"
+	sv := variant(t, settings, func(text string) string {
+		// One batch, whose first bottle came scaled and whose second did not.
+		lines := strings.Split(strings.TrimSpace(text), "\n")
+		head := strings.Split(lines[0], ",")
+		setup, batch := slices.Index(head, "setup"), slices.Index(head, "batch")
+		if setup < 0 {
+			lines[0] += ",setup"
+		}
+		if batch < 0 {
+			lines[0] += ",batch"
+		}
+		out := lines[:1]
+		for _, l := range lines[1:] {
+			cells := strings.Split(l, ",")
+			if cells[1] == "blank" {
+				continue
+			}
+			set := map[bool]string{true: "done"}[len(out) == 1]
+			if setup >= 0 {
+				cells[setup] = set
+			} else {
+				cells = append(cells, set)
+			}
+			if batch >= 0 {
+				cells[batch] = "one"
+			} else {
+				cells = append(cells, "one")
+			}
+			out = append(out, strings.Join(cells, ","))
+		}
+		return strings.Join(out, "\n") + "\n"
+	}, nil)
+	got := said(sv)
+	if n := len(slices.Collect(maps.Keys(got))); n == 0 || got["S002 raman-range"] != 1 {
+		t.Errorf("S002 has no scale and is not rejected: %v", flagsOf(sv, "S002"))
+	}
+}
+
+// Quinine units come with the line's uncertainty, shared by the batch.
+func TestQuinineUnits(t *testing.T) {
+	sv := variant(t, "[intensity]\nunit = \"quinine\"\n", func(text string) string {
+		return strings.Replace(text, "conc:brightener", "conc:quinine sulfate", 1)
+	}, func(s *synth.Survey) {
+		b := synth.Substance("brightener")
+		s.Components = append(s.Components, b)
+		for i, day := range []string{"PW1-1", "PW1-2", "PW2-1", "PW2-2"} {
+			like := find(s, day)
+			for n, amount := range []float64{2, 4} {
+				dose := []synth.Dose{{Of: b, Amount: amount}}
+				s.Bottles = append(s.Bottles, synth.Bottle{ID: "Q" + day[2:] + string(rune('a'+n)), Kind: "standard", Measured: like.Measured,
+					Power: like.Power * (1 + 0.01*float64(i%2)), Liquid: synth.Liquid{Doses: dose}, Known: dose, Layout: like.Layout})
+			}
+		}
+	})
+	if sv.Unit != eem.Quinine {
+		t.Fatalf("unit %s", sv.Unit)
+	}
+	for _, bt := range sv.Batches {
+		if q := bt.Quinine; q.N < 4 || !(q.U > 0) || q.U > 0.05*q.Slope || math.Abs(bt.ScaleU()-q.U/q.Slope) > 1e-15 {
+			t.Errorf("batch %s: %+v, scale %g", bt.Name, q, bt.ScaleU())
+		}
+	}
+	b := find2(t, sv, "Q1-1a")
+	if v := b.EEM.Interp(350, 450); math.Abs(v-2) > 0.05 {
+		t.Errorf("2 µg/L reads %g at ex 350 / em 450", v)
+	}
+	if !slices.ContainsFunc(b.Causes, func(c eem.Cause) bool { return c.Scope == eem.OfBatch && c.Key == b.Batch && c.U > 0 }) {
+		t.Errorf("the scale's uncertainty is no cause: %+v", b.Causes)
+	}
+}
+
+// Results do not depend on the number of workers.
+func TestWorkers(t *testing.T) {
+	dir := t.TempDir()
+	s := forty(t)
+	s.Settings = "[scatter]\nrayleigh.first = \"auto\"\nraman.first = \"auto\"\n"
+	if err := s.Write(dir); err != nil {
+		t.Fatal(err)
+	}
+	a, b := prepared(t, dir, 1), prepared(t, dir, 7)
+	for i := range a.Bottles {
+		for c, v := range a.Bottles[i].EEM.F {
+			if w := b.Bottles[i].EEM.F[c]; math.Float64bits(v) != math.Float64bits(w) {
+				t.Fatalf("%s, cell %d: %g and %g", a.Bottles[i].Row.ID, c, v, w)
+			}
+		}
+	}
+	if set := a.Settings.Scatter; set.Rayleigh.First.Auto || set.Raman.First.ToCM == 0 || set != b.Settings.Scatter {
+		t.Errorf("bands found: %+v and %+v", set, b.Settings.Scatter)
+	}
+}
