@@ -103,7 +103,7 @@ func eightDigits(b []byte) (v uint64, n int) {
 	x := binary.LittleEndian.Uint64(b) ^ '0'*ones // a digit is its value now
 	// The top bit of each byte that is above 9; a carry can only spoil bytes
 	// behind the first such one.
-	other := (x | x + (0x80-10)*ones) & (0x80 * ones)
+	other := (x | (x + (0x80-10)*ones)) & (0x80 * ones)
 	n = bits.TrailingZeros64(other) / 8
 	x <<= uint(64 - 8*n)                   // leading zeros for the digits that are not there
 	x = (x*10 + x>>8) & 0x00ff00ff00ff00ff // pairs of digits

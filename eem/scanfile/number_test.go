@@ -91,7 +91,7 @@ func TestMissing(t *testing.T) {
 // whatever follows.
 func TestRowsAgree(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
-		field := rapid.StringMatching(`[-+]?[0-9]{0,10}([.,][0-9]{0,10})?([eE][-+]?[0-9]{0,3})?[ x]?`)
+		field := rapid.StringMatching(`[-+]?[0-9]{0,10}([.,][0-9]{0,10})?([eE][-+]?[0-9]{0,3})?[ xµºý]?`)
 		fields := rapid.SliceOfN(field, 1, 5).Draw(t, "fields")
 		eol := rapid.SampledFrom([]string{"", "\n", "\r\n"}).Draw(t, "end")
 		for _, delim := range []byte("\t;") {
@@ -122,4 +122,26 @@ func TestRowsAgree(t *testing.T) {
 			}
 		}
 	})
+}
+
+// Every byte that is no digit ends the digits, whatever stands around it.
+func TestEightDigits(t *testing.T) {
+	for n := range 9 {
+		for c := range 256 {
+			b := []byte("12345678")
+			if n < 8 {
+				if byte(c)-'0' <= 9 {
+					continue
+				}
+				b[n] = byte(c)
+			}
+			want := 0
+			for _, d := range b[:n] {
+				want = want*10 + int(d-'0')
+			}
+			if v, got := eightDigits(b); got != n || v != uint64(want) {
+				t.Fatalf("%q: %d of %d digits", b, v, got)
+			}
+		}
+	}
 }

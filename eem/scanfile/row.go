@@ -17,16 +17,13 @@ func (r *rowReader) plainRow(text []byte) (n, used int) {
 	cells, delim, dec := r.cells, r.delim, r.dec
 	i, numbers := 0, 0
 	for n < MaxColumns {
-		var v float64
-		end := 0 // place behind a number, in b
-		b := text[i:]
-		if len(b) >= 24 {
+		if b := text[i:]; len(b) >= 24 {
 			sign := 0
 			if b[0] == '-' {
 				sign = 1
 			}
 			m, whole := eightDigits(b[sign:])
-			end = sign + whole
+			end := sign + whole // place behind the number
 			places := 0
 			if b[end] == dec {
 				var f uint64
@@ -35,7 +32,7 @@ func (r *rowReader) plainRow(text []byte) (n, used int) {
 				end += 1 + places
 			}
 			if c := b[end]; (c == delim || c == '\n') && whole < 8 && places < 8 && whole+places > 0 {
-				v = float64(m) / pow10[places]
+				v := float64(m) / pow10[places]
 				if sign == 1 {
 					v = -v
 				}
@@ -52,14 +49,15 @@ func (r *rowReader) plainRow(text []byte) (n, used int) {
 		for i < len(text) && text[i] == ' ' {
 			i++
 		}
-		if v, end = prefixNumber(text[i:], dec); end == 0 {
+		v, used := prefixNumber(text[i:], dec)
+		if used == 0 {
 			if delim == ' ' || i < len(text) && text[i] != delim && text[i] != '\n' && text[i] != '\r' {
 				return 0, 0
 			}
 			v = math.NaN()
 		} else {
 			numbers++
-			i += end
+			i += used
 		}
 		cells = append(cells, v)
 		n++

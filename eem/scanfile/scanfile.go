@@ -20,7 +20,7 @@ import (
 
 // Limits on what is read.
 const (
-	MaxFileBytes = 256 << 20 // a raw or table file
+	MaxFileBytes = 256 << 20 // a raw file; a delimited table at most 32 MB
 	MaxBookBytes = 64 << 20  // an XLSX workbook, unpacked
 	MaxColumns   = 10_000    // columns of a raw file
 )

@@ -3,6 +3,7 @@ package scanfile
 import (
 	"bytes"
 	"encoding/xml"
+	"errors"
 	"fmt"
 	"io"
 	"math"
@@ -30,7 +31,7 @@ func (b *book) table(sheet string) (*Table, error) {
 	s := &sheetReader{book: b, d: xml.NewDecoder(bytes.NewReader(data)), t: &Table{Path: b.name}}
 	for {
 		tok, err := s.d.Token()
-		if err == io.EOF {
+		if errors.Is(err, io.EOF) {
 			break
 		}
 		if err != nil {

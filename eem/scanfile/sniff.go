@@ -24,11 +24,9 @@ func cutField(line []byte, delim byte) (field, rest []byte, more bool) {
 			}
 		}
 	}
-	i := -1
+	i := bytes.IndexByte(line, delim)
 	if delim == ' ' {
 		i = bytes.IndexAny(line, " \t")
-	} else {
-		i = bytes.IndexByte(line, delim)
 	}
 	if i < 0 {
 		return bytes.TrimSpace(line), nil, false

@@ -76,10 +76,10 @@ func tableError(name string, err error) error {
 		return errorf(name, 0, "%w", err)
 	}
 	line := p.StartLine
-	switch p.Err {
-	case csv.ErrBareQuote:
+	switch {
+	case errors.Is(p.Err, csv.ErrBareQuote):
 		return errorf(name, p.Line, `a quotation mark inside a cell; put the whole cell in quotes and double the mark inside: "a ""b"" c"`)
-	case csv.ErrQuote:
+	case errors.Is(p.Err, csv.ErrQuote):
 		return errorf(name, line, "a quoted cell begins here and does not end, or text follows its end; close it before the next delimiter")
 	}
 	return errorf(name, line, "%w", p.Err)
