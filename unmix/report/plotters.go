@@ -121,13 +121,19 @@ func runs(v []float64) [][2]int {
 	return out
 }
 
-// dots draws marks with bars from lo to hi (nil: none).
+// dots draws marks with bars from lo to hi.
 type dots struct {
-	x, y, lo, hi []float64
+	x, y, lo, hi []float64          // lo and hi: nil or NaN for no bar
 	glyph        []draw.GlyphDrawer // per point
 	color        []color.Color      // per point
 	radius       vg.Length
 	radii        []vg.Length // per point; nil: all of one radius
+}
+
+// add adds a mark; lo and hi may be NaN.
+func (d *dots) add(x, y, lo, hi float64, g draw.GlyphDrawer, c color.Color) {
+	d.x, d.y, d.lo, d.hi = append(d.x, x), append(d.y, y), append(d.lo, lo), append(d.hi, hi)
+	d.glyph, d.color = append(d.glyph, g), append(d.color, c)
 }
 
 // Plot implements plot.Plotter.

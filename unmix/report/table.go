@@ -126,3 +126,26 @@ func (t *Table) Float(row, col int) float64 {
 
 // Bool says whether a cell reads "true".
 func (t *Table) Bool(row, col int) bool { return t.Text(row, col) == "true" }
+
+// floats returns a whole column as numbers.
+func (t *Table) floats(name string) []float64 {
+	v := make([]float64, len(t.Rows))
+	for i := range v {
+		v[i] = t.Float(i, t.Col(name))
+	}
+	return v
+}
+
+// groups returns the rows of every text of a column, the texts in the order in
+// which they first appear.
+func (t *Table) groups(name string) (texts []string, rows map[string][]int) {
+	rows = map[string][]int{}
+	for i := range t.Rows {
+		v := t.Text(i, t.Col(name))
+		if rows[v] == nil {
+			texts = append(texts, v)
+		}
+		rows[v] = append(rows[v], i)
+	}
+	return texts, rows
+}

@@ -1,0 +1,155 @@
+package report
+
+import (
+	"maps"
+	"math"
+	"slices"
+	"strings"
+)
+
+type pageColumn struct {
+	Head, Title string
+	Number      bool
+}
+
+// pageCell is a cell of the table of bottles: what is shown and, for numbers, what
+// is sorted and filtered by.
+type pageCell struct {
+	Text, Sort string
+	Class      string
+}
+
+type pageRow struct {
+	Index                    int
+	ID, Kind, Tests, Verdict string
+	Class                    string
+	Other                    bool
+	Cells                    []pageCell
+}
+
+type pageTable struct {
+	Heads []string
+	Rows  [][]string
+}
+
+// pageRows makes the table of bottles.
+func (r *results) pageRows(v *page) {
+	known := r.knownColumns()
+	v.Columns = []pageColumn{{Head: "Bottle"}, {Head: "Check", Title: "the gravest finding: good, note, doubt or not usable"}}
+	for _, k := range known {
+		v.Columns = append(v.Columns, pageColumn{Head: k.head, Number: k.name == "dilution"})
+	}
+	for _, c := range r.series {
+		v.Columns = append(v.Columns, pageColumn{Head: strings.TrimSpace(r.label(c) + " " + c.unit), Title: methodName(c.method), Number: true})
+	}
+	v.Columns = append(v.Columns, pageColumn{"Explained %", "share of the bottle's sum of squares that the components explain", true},
+		pageColumn{"Structure z", "how alike neighbouring residuals are: Moran's I in standard deviations", true},
+		pageColumn{"Hottest " + r.unit, "largest residual", true}, pageColumn{"at ex/em nm", "where the largest residual lies", false})
+	tests := map[string]bool{}
+	for i, b := range r.bottles {
+		row := r.pageRow(b, known)
+		row.Index, row.Tests = i, r.bottleTests(b, tests)
+		if !slices.Contains(v.Kinds, row.Kind) {
+			v.Kinds = append(v.Kinds, row.Kind)
+		}
+		v.Others = v.Others || row.Other
+		v.Rows = append(v.Rows, row)
+	}
+	v.Tests = slices.Sorted(maps.Keys(tests))
+	if r.store != nil {
+		for _, m := range r.store.Methods {
+			v.Methods = append(v.Methods, pageChoice{m, methodName(m)})
+		}
+	}
+}
+
+func (r *results) pageRow(b *bottle, known []resultColumn) pageRow {
+	t := r.table["samples.csv"]
+	f := func(name string) float64 { return t.Float(b.row, t.Own(name)) }
+	word, _ := severityLook(b.worst)
+	row := pageRow{ID: visible(b.id), Kind: b.kind, Verdict: word, Class: strings.ReplaceAll(word, " ", "-"), Other: !b.reportable()}
+	if b.kind == "" {
+		row.Kind = "sample"
+	}
+	for _, k := range known {
+		c := pageCell{Text: t.Text(b.row, t.Col(k.name))}
+		if _, ok := parseDay(c.Text); ok {
+			c.Text = strings.Replace(c.Text, "T", " ", 1)
+		}
+		if n, ok := number(c.Text); ok && k.name == "dilution" {
+			c.Sort = Number(n)
+		}
+		row.Cells = append(row.Cells, c)
+	}
+	for _, c := range r.series {
+		row.Cells = append(row.Cells, valueCell(b.of[c]))
+	}
+	hot := pageCell{}
+	if ex, em := f("hottest_ex_nm"), f("hottest_em_nm"); finite(ex) && finite(em) {
+		hot.Text = r.num.nm(ex) + "/" + r.num.nm(em)
+	}
+	row.Cells = append(row.Cells, r.numberCell(f("explained_percent"), 4), r.numberCell(f("structure"), 3), r.numberCell(f("hottest_value"), 3), hot)
+	return row
+}
+
+// bottleTests lists the codes of a bottle's findings, between blanks.
+func (r *results) bottleTests(b *bottle, all map[string]bool) string {
+	f := r.table["flags.csv"]
+	out := " "
+	for _, k := range b.flags {
+		code := f.Text(k, f.Col("test"))
+		all[code] = true
+		out += code + " "
+	}
+	return out
+}
+
+// valueCell shows a contribution as reported; it is sorted by its value.
+func valueCell(c *contribution) pageCell {
+	if c == nil {
+		return pageCell{}
+	}
+	out := pageCell{Text: strings.TrimSpace(c.reported + " " + c.qualifier), Class: "q" + c.qualifier}
+	if c.qualifier != "R" {
+		out.Sort = Number(c.value)
+	}
+	return out
+}
+
+func (r *results) numberCell(v float64, digits int) pageCell {
+	if math.IsNaN(v) {
+		return pageCell{}
+	}
+	return pageCell{Text: r.num.sig(v, digits), Sort: Number(v)}
+}
+
+// pageTable is a results table for people: the columns named in ahead first,
+// without those named in without and those that are empty, numbers rounded.
+func (r *results) pageTable(name string, ahead []string, without ...string) pageTable {
+	t := r.table[name]
+	var out pageTable
+	var cols []int
+	for _, head := range append(slices.Clone(ahead), t.Columns...) {
+		c := t.Col(head)
+		used := slices.ContainsFunc(t.Rows, func(row []string) bool { return row[c] != "" })
+		if used && !slices.Contains(without, head) && !slices.Contains(cols, c) {
+			cols = append(cols, c)
+			out.Heads = append(out.Heads, strings.ReplaceAll(head, "_", " "))
+		}
+	}
+	for i := range t.Rows {
+		var row []string
+		for _, c := range cols {
+			text := t.Text(i, c)
+			if v := t.Float(i, c); finite(v) {
+				text = r.num.short(v, 5)
+			}
+			row = append(row, map[string]string{"true": "yes", "false": "no"}[text])
+			if row[len(row)-1] == "" {
+				row[len(row)-1] = text
+			}
+		}
+		out.Rows = append(out.Rows, row)
+	}
+	return out
+}

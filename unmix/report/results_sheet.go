@@ -1,0 +1,171 @@
+package report
+
+import (
+	"fmt"
+	"strings"
+
+	"tarnlight/eem"
+)
+
+// resultColumn is a column of the sheet Results that the run sheet brought.
+type resultColumn struct {
+	head, name string
+	width      float64
+}
+
+// knownColumns are those run-sheet columns that the results show, where used.
+func (r *results) knownColumns() []resultColumn {
+	t := r.table["samples.csv"]
+	var out []resultColumn
+	for _, c := range []resultColumn{{"Kind", "kind", 11}, {"Site", "site", 16}, {"Sampled", "sampled", 15}, {"Measured", "measured", 15}, {"Dilution", "dilution", 8}} {
+		col, used := t.Col(c.name), false
+		for _, b := range r.bottles {
+			v := t.Text(b.row, col)
+			if b.reportable() && v != "" && !(c.name == "kind" && v == "sample") && !(c.name == "dilution" && v == "1") {
+				used = true
+			}
+		}
+		if used {
+			out = append(out, c)
+		}
+	}
+	return out
+}
+
+// resultsSheet is one row a bottle.
+func (r *results) resultsSheet(b *book) {
+	known := r.knownColumns()
+	widths := []float64{16}
+	heads := []cell{{"Bottle", headLook}}
+	for _, k := range known {
+		widths, heads = append(widths, k.width), append(heads, cell{k.head, headLook})
+	}
+	for i, c := range r.series {
+		widths = append(widths, 11, 8, 4.5)
+		name := fmt.Sprintf("%d %s", i+1, cut(plain(r.label(c)), 60))
+		if c.unit != "" {
+			name += ", " + plain(c.unit)
+		}
+		mid := headLook
+		mid.align = "center"
+		heads = append(heads, cell{name, headRight}, cell{fmt.Sprintf("± %d", i+1), headRight}, cell{fmt.Sprintf("Q %d", i+1), mid})
+	}
+	widths = append(widths, 10, 12, 52)
+	heads = append(heads, cell{"Explained, %", headRight}, cell{"Check", headIndent}, cell{"Remarks", headLook})
+	const headRow = 4
+	s := b.add("Results", layout{widths: widths, freeze: fmt.Sprintf("B%d", headRow+1), repeat: fmt.Sprintf("$%d:$%d", headRow, headRow)})
+	s.add(20, cell{plain(r.title()) + " – results", look{bold: true, size: 13, color: inkBlue}})
+	s.add(0, cell{"± is the expanded uncertainty (k = 2, about 95 %). < is followed by the detection limit. Q: U not detected, J unreliable or above the highest standard, R not usable. Screening: see Cautions on the sheet Summary.", look{color: midGrey}})
+	s.skip(1)
+	s.add(52, heads...)
+	for _, x := range r.bottles {
+		if x.reportable() {
+			s.add(0, r.resultRow(x, known)...)
+		}
+	}
+	s.table("Results", headRow, len(heads))
+	s.done()
+}
+
+func (r *results) resultRow(x *bottle, known []resultColumn) []cell {
+	t := r.table["samples.csv"]
+	row := []cell{{visible(x.id), look{bold: true, wrap: true}}}
+	for _, k := range known {
+		row = append(row, sheetCell(k.name, t.Text(x.row, t.Col(k.name))))
+	}
+	for _, c := range r.series {
+		row = append(row, r.valueCells(x.of[c])...)
+	}
+	word, l := severityLook(x.worst)
+	l.indent = true
+	row = append(row, cell{t.Float(x.row, t.Own("explained_percent")), look{format: "0.0"}}, cell{word, l}, cell{r.remarks(x), wrapLook})
+	for i := range row {
+		row[i].l.hair = true
+	}
+	return row
+}
+
+// sheetCell is a run-sheet cell as what it is: a date, a number or text.
+func sheetCell(name, v string) cell {
+	switch name {
+	case "sampled", "measured":
+		if d, ok := parseDay(v); ok {
+			f := "yyyy-mm-dd"
+			if d.Hour()+d.Minute() > 0 {
+				f += " hh:mm"
+			}
+			return cell{d, look{format: f, align: "left"}}
+		}
+	case "dilution":
+		if f, ok := number(v); ok {
+			return cell{f, look{format: "0.###"}}
+		}
+	}
+	return cell{v, plainLook}
+}
+
+// valueCells are value, ± and qualifier of one contribution, as native numbers: a
+// contribution that was not detected shows its detection limit behind "<".
+func (r *results) valueCells(c *contribution) []cell {
+	grey := look{color: midGrey, right: true}
+	if c == nil {
+		return []cell{{}, {}, {}}
+	}
+	q := cell{c.qualifier, look{align: "center", bold: true}}
+	switch c.qualifier {
+	case "R":
+		q.l.fill = paleGrey
+		return []cell{{c.reported, look{color: midGrey, right: true, italic: true, fill: paleGrey}}, {nil, look{fill: paleGrey}}, q}
+	case "U":
+		if !finite(c.limit) {
+			return []cell{{c.reported, grey}, {}, q}
+		}
+		grey.format = `"< "` + reportedFormat(c.reported, c.limit)
+		return []cell{{c.limit, grey}, {}, q}
+	case "J":
+		q.l.fill = paleAmber
+	}
+	format := reportedFormat(c.reported, c.value)
+	return []cell{{c.value, look{format: format}}, {c.expanded(), look{format: format, color: midGrey}}, q}
+}
+
+// severityLook gives the worst finding its word and ground.
+func severityLook(s eem.Severity) (string, look) {
+	switch s {
+	case eem.Reject:
+		return "not usable", look{fill: paleRed, bold: true}
+	case eem.Doubt:
+		return "doubt", look{fill: paleAmber, bold: true}
+	case eem.Remark:
+		return "note", look{}
+	}
+	return "good", look{}
+}
+
+// remarks are the reasons of a bottle's qualifiers and its doubts, in words.
+func (r *results) remarks(x *bottle) string {
+	var out []string
+	say := func(s string) {
+		if s != "" && !strings.Contains(strings.Join(out, "; "), s) {
+			out = append(out, s)
+		}
+	}
+	t := r.table["samples.csv"]
+	if why := t.Text(x.row, t.Col("exclude")); why != "" {
+		say("excluded: " + why)
+	}
+	f := r.table["flags.csv"]
+	for _, i := range x.flags {
+		if parseSeverity(f.Text(i, f.Col("severity"))) >= eem.Doubt {
+			say(f.Text(i, f.Col("message")))
+		}
+	}
+	for _, c := range r.series {
+		if k := x.of[c]; k != nil {
+			for _, reason := range strings.Split(k.reasons, "; ") {
+				say(reason)
+			}
+		}
+	}
+	return strings.Join(out, "; ")
+}

@@ -1,0 +1,115 @@
+package report
+
+import (
+	"fmt"
+	"strings"
+	"unicode/utf8"
+
+	"github.com/xuri/excelize/v2"
+)
+
+// sheet is a worksheet written row by row.
+type sheet struct {
+	b    *book
+	name string
+	w    *excelize.StreamWriter
+	row  int // next row, from 1
+	wide []float64
+}
+
+// cell is one cell of a row. v is a string, a number, a time or nil; NaN and
+// infinity are written as an empty cell.
+type cell struct {
+	v any
+	l look
+}
+
+// add writes the next row; with height 0 it is as high as its wrapped text needs.
+func (s *sheet) add(height float64, cells ...cell) {
+	if s.b.err != nil {
+		return
+	}
+	row := make([]any, len(cells))
+	for i, c := range cells {
+		v := c.v
+		if f, ok := v.(float64); ok && !finite(f) {
+			v = nil
+		}
+		if t, ok := v.(string); ok {
+			v = cut(t, 32000)
+		}
+		row[i] = excelize.Cell{StyleID: s.b.style(c.l), Value: v}
+	}
+	if height == 0 {
+		height = s.height(cells)
+	}
+	s.b.try(s.w.SetRow(fmt.Sprintf("A%d", s.row), row, excelize.RowOpts{Height: min(height, 400)}))
+	s.row++
+}
+
+// height is what the wrapped texts of a row need in their columns. Programs do
+// not agree on whether they find it themselves.
+func (s *sheet) height(cells []cell) float64 {
+	h := 15.0
+	for i, c := range cells {
+		if t, ok := c.v.(string); ok && c.l.wrap && i < len(s.wide) {
+			h = max(h, lineHeight(t, int(s.wide[i]*1.15)))
+		}
+	}
+	return h
+}
+
+// lineHeight is the height, in points, of text in 9-point letters wrapped between
+// words at width letters.
+func lineHeight(text string, width int) float64 {
+	lines := 0
+	for _, l := range strings.Split(text, "\n") {
+		at := 0
+		lines++
+		for _, word := range strings.Fields(l) {
+			n := utf8.RuneCountInString(word)
+			if at > 0 && at+1+n > width {
+				lines++
+				at = 0
+			}
+			if n > width { // a word longer than the line is broken
+				lines += (n - 1) / width
+				n %= width
+			}
+			at += n + 1
+		}
+	}
+	return 3 + 12*float64(lines)
+}
+
+func finite(v float64) bool { return v-v == 0 }
+
+// skip leaves n rows empty.
+func (s *sheet) skip(n int) { s.row += n }
+
+// merge joins columns from to to (from 1) of the row written last.
+func (s *sheet) merge(from, to int) {
+	if s.b.err != nil {
+		return
+	}
+	a, _ := excelize.CoordinatesToCellName(from, s.row-1)
+	z, _ := excelize.CoordinatesToCellName(to, s.row-1)
+	s.b.try(s.w.MergeCell(a, z))
+}
+
+// table makes rows first … the last written, columns 1 … n, a defined table with
+// filters.
+func (s *sheet) table(name string, first, n int) {
+	if s.b.err != nil {
+		return
+	}
+	stripes := true
+	end, _ := excelize.CoordinatesToCellName(n, max(s.row-1, first+1))
+	s.b.try(s.w.AddTable(&excelize.Table{Range: fmt.Sprintf("A%d:%s", first, end), Name: name, StyleName: "TableStyleLight1", ShowRowStripes: &stripes}))
+}
+
+func (s *sheet) done() {
+	if s.b.err == nil {
+		s.b.try(s.w.Flush())
+	}
+}
