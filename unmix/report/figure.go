@@ -114,11 +114,6 @@ func textStyle(size float64, c color.Color) text.Style {
 		XAlign: draw.XLeft, YAlign: draw.YTop, Handler: plot.DefaultTextHandler}
 }
 
-// write puts s with its upper left corner at (x, y).
-func writeText(c draw.Canvas, size float64, s string, x, y vg.Length) {
-	c.FillText(textStyle(size, inkGrey), vg.Point{X: x, Y: y}, s)
-}
-
 // drawGrid draws plots in rows of cols, their data areas aligned.
 func drawGrid(c draw.Canvas, cols int, plots []*plot.Plot) {
 	rows := (len(plots) + cols - 1) / cols

@@ -5,6 +5,7 @@ import (
 	"compress/gzip"
 	"encoding/base64"
 	"encoding/binary"
+	"errors"
 	"math"
 )
 
@@ -70,8 +71,10 @@ func (p *packer) pack(s *StoreSample) string {
 	}
 	p.buf.Reset()
 	p.gz.Reset(&p.buf)
-	p.gz.Write(raw) // a bytes.Buffer takes everything
-	p.gz.Close()
+	_, err := p.gz.Write(raw)
+	if err = errors.Join(err, p.gz.Close()); err != nil {
+		panic("report: " + err.Error()) // a bytes.Buffer takes everything
+	}
 	return base64.StdEncoding.EncodeToString(p.buf.Bytes())
 }
 

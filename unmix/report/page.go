@@ -116,15 +116,16 @@ func writePage(w io.Writer, v *page, p *pass) error {
 		panic("report: the page has no place for its maps")
 	}
 	o := bufio.NewWriterSize(w, 1<<20)
-	o.Write(head) // the first error stays and Flush returns it
+	put := func(s string) { _, _ = o.WriteString(s) } // the first error stays, and Flush returns it
+	put(string(head))
 	for i, text := range p.packed {
 		if text != "" {
 			fmt.Fprintf(o, "<script type=\"text/plain\" id=\"map%d\">", i)
-			o.WriteString(text)
-			o.WriteString("</script>\n")
+			put(text)
+			put("</script>\n")
 		}
 	}
-	o.Write(tail)
+	put(string(tail))
 	return o.Flush()
 }
 

@@ -257,8 +257,8 @@ func (r *results) label(s *column) string {
 
 // sheetColumns are the columns of samples.csv that the run sheet brought.
 func (r *results) sheetColumns() []string {
-	t, f := r.table["samples.csv"], File{}
-	f, _ = FindFile("samples.csv")
+	t := r.table["samples.csv"]
+	f, _ := FindFile("samples.csv")
 	own := map[int]bool{}
 	for _, c := range f.Columns {
 		own[t.Own(c.Name)] = true

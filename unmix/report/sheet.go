@@ -87,7 +87,7 @@ func finite(v float64) bool { return v-v == 0 }
 // skip leaves n rows empty.
 func (s *sheet) skip(n int) { s.row += n }
 
-// merge joins columns from to to (from 1) of the row written last.
+// merge joins the columns from … to (counted from 1) of the row written last.
 func (s *sheet) merge(from, to int) {
 	if s.b.err != nil {
 		return

@@ -137,7 +137,6 @@ type panels struct {
 type triptychText struct {
 	id   string
 	what string // right of the id, small
-	row  []string
 }
 
 // draw paints one bottle. ps has one entry a method, at least one.

@@ -3,7 +3,6 @@ package report
 import (
 	"context"
 	"fmt"
-	"io"
 	"math"
 	"path/filepath"
 	"sync"
@@ -190,5 +189,5 @@ func (r *results) drawMap(tri *triptych, b *bottle, ps []panels) error {
 		text.what = r.num.fitText(e, f("residual_rms"), f("noise_rms"), r.unit)
 	}
 	c := tri.draw(text, ps)
-	return writeFile(filepath.Join(r.dir, "maps", r.mapFile(b.id)), func(w io.Writer) error { return c.encode(w) })
+	return writeFile(filepath.Join(r.dir, "maps", r.mapFile(b.id)), c.encode)
 }
