@@ -137,10 +137,47 @@ func (in *influence) scoreSE(peakB, peakC []int) []float64 {
 			peaks[l*f+x] = in.move(l, m, peakB[x]*f+x)*c + b*in.move(l, m, in.nb+peakC[x]*f+x)
 		}
 	}
+	moments := in.moments(ys, peaks)
 	for i := range in.i {
-		in.sampleSE(out[i*f:(i+1)*f], i, ys, peaks, peakB, peakC)
+		in.sampleSE(out[i*f:(i+1)*f], i, ys, peaks, moments, peakB, peakC)
 	}
 	return out
+}
+
+// moments sums u·u' over the moves, u being a move's F × F slopes and F peaks:
+// what a sample without gaps needs of them, so that the work for all errors is
+// in proportion to the samples and not to their square.
+func (in *influence) moments(ys, peaks []float64) []float64 {
+	f := in.f
+	n := f*f + f
+	s, u := make([]float64, n*n), make([]float64, n)
+	for l := range in.i {
+		copy(u, ys[l*f*f:(l+1)*f*f])
+		copy(u[f*f:], peaks[l*f:(l+1)*f])
+		for x, v := range u {
+			axpy(v, u, s[x*n:(x+1)*n])
+		}
+	}
+	return s
+}
+
+// momentSE adds to v the loadings' share of the variance of sample i's scores.
+func (in *influence) momentSE(v, height, inv, a, moments []float64) {
+	f := in.f
+	n := f*f + f
+	c := make([]float64, n)
+	for x := range f {
+		clear(c)
+		for y, ay := range a {
+			axpy(-height[x]*ay, inv[x*f:(x+1)*f], c[y*f:(y+1)*f])
+		}
+		c[f*f+x] = a[x]
+		for y, w := range c {
+			if w != 0 {
+				v[x] += w * dot(c, moments[y*n:(y+1)*n])
+			}
+		}
+	}
 }
 
 func (in *influence) move(l, m, e int) float64 {
@@ -150,18 +187,32 @@ func (in *influence) move(l, m, e int) float64 {
 	return 0
 }
 
-func (in *influence) sampleSE(out []float64, i int, ys, peaks []float64, peakB, peakC []int) {
+func (in *influence) sampleSE(out []float64, i int, ys, peaks, moments []float64, peakB, peakC []int) {
 	f := in.f
 	inv := append([]float64(nil), in.inverse(i)...)
 	dof := math.Max(1, float64(in.p-len(in.gaps[i])-f))
 	s2 := sumSquares(in.residualOf(i)) / dof
 	a := in.a[i*f : (i+1)*f]
 	height := make([]float64, f)
-	v, kd, da := make([]float64, f), make([]float64, f), make([]float64, f)
+	v := make([]float64, f)
 	for x := range f {
 		height[x] = in.b[peakB[x]*f+x] * in.c[peakC[x]*f+x]
 		v[x] = height[x] * height[x] * s2 * inv[x*f+x]
 	}
+	if len(in.gaps[i]) == 0 {
+		in.momentSE(v, height, inv, a, moments)
+	} else {
+		in.gappySE(v, height, inv, i, ys, peaks)
+	}
+	for x := range f {
+		out[x] = in.scale[i] * math.Sqrt(math.Max(0, v[x]))
+	}
+}
+
+// gappySE is momentSE for a sample with gaps, whose slopes lack their cells.
+func (in *influence) gappySE(v, height, inv []float64, i int, ys, peaks []float64) {
+	f := in.f
+	a, kd := in.a[i*f:(i+1)*f], make([]float64, f)
 	for l := range in.i {
 		y := ys[l*f*f : (l+1)*f*f]
 		clear(kd)
@@ -170,13 +221,9 @@ func (in *influence) sampleSE(out []float64, i int, ys, peaks []float64, peakB, 
 		}
 		in.gapSlope(kd, i, l)
 		for x := range f {
-			da[x] = -dot(inv[x*f:(x+1)*f], kd)
-			d := height[x]*da[x] + a[x]*peaks[l*f+x]
+			d := a[x]*peaks[l*f+x] - height[x]*dot(inv[x*f:(x+1)*f], kd)
 			v[x] += d * d
 		}
-	}
-	for x := range f {
-		out[x] = in.scale[i] * math.Sqrt(v[x])
 	}
 }
 

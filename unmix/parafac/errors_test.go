@@ -117,3 +117,41 @@ func TestWeightsUseTheCellsUncertainties(t *testing.T) {
 		t.Errorf("weights bring the squared error from %.3g to %.3g only", without, with)
 	}
 }
+
+// The two ways to the errors of scores agree on samples without gaps.
+func TestScoreErrorsByMomentsAndByMoves(t *testing.T) {
+	set := (&Settings{Starts: 2}).withDefaults()
+	p, err := newProblem(small(8).cube, 3, &set)
+	if err != nil {
+		t.Fatal(err)
+	}
+	all, err := runStarts(t.Context(), p.whole(), 3, &set, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	s := bestOf(all).s
+	s.damp()
+	n := s.newton()
+	if err := n.finish(t.Context(), newtonSteps, goodEnough); err != nil {
+		t.Fatal(err)
+	}
+	in, f := n.influence(), 3
+	ys, peaks, height := make([]float64, in.i*f*f), make([]float64, in.i*f), []float64{1, 2, 3}
+	for l := range in.i {
+		copy(ys[l*f*f:], in.slopes(l))
+		for x := range f {
+			peaks[l*f+x] = in.move(l, len(in.theta), 4*f+x)
+		}
+	}
+	for i := range in.i {
+		inv := slices.Clone(in.inverse(i))
+		v, w := make([]float64, f), make([]float64, f)
+		in.momentSE(v, height, inv, in.a[i*f:(i+1)*f], in.moments(ys, peaks))
+		in.gappySE(w, height, inv, i, ys, peaks)
+		for x := range f {
+			if math.Abs(v[x]-w[x]) > 1e-9*w[x] || w[x] == 0 && in.a[i*f+x] > 0 {
+				t.Errorf("sample %d component %d: variance %g by moments, %g by moves", i, x, v[x], w[x])
+			}
+		}
+	}
+}

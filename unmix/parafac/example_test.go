@@ -27,7 +27,7 @@ func ExampleFit() {
 // How many components do the data bear?
 func ExampleChoose() {
 	cube, _ := synth.Trilinear(synth.TrilinearSpec{Samples: 24, Components: 2, Noise: 0.01, Scatter: true, Seed: 3})
-	c, err := parafac.Choose(context.Background(), cube, 1, 3, &parafac.Settings{Starts: 4}, nil)
+	c, err := parafac.Choose(context.Background(), cube, 1, 3, &parafac.Settings{Starts: 2}, nil)
 	if err != nil {
 		fmt.Println(err)
 		return
