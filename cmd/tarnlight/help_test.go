@@ -48,7 +48,14 @@ func TestExamplesRun(t *testing.T) {
 			}
 			runNoPictures(t, "tarnlight-demo")
 		},
-		"factors": func() {}, "settings": func() {}, "tests": func() {}, "completion": func() {}, "demo": func() {},
+		"factors": func() {
+			for _, name := range []string{"certificate.csv", "scan.csv", "counter.csv", "blue.csv", "bluescan.csv"} {
+				curve(t, name, 400, 520, 5, 0.02, bell(450, 40))
+			}
+			curve(t, "red.csv", 480, 600, 5, 0.02, bell(540, 40))
+			curve(t, "redscan.csv", 480, 600, 5, 0.02, bell(540, 40))
+		},
+		"settings": func() {}, "tests": func() {}, "completion": func() {}, "demo": func() {},
 	}
 	for _, c := range newRoot(streams{}).Commands() {
 		t.Run(c.Name(), func(t *testing.T) {
