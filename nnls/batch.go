@@ -53,7 +53,7 @@ func (p *Batch) Dims() (m, n int) { return p.m, p.f.n }
 // names the first, and all others are solved. So it is with [IterationLimit],
 // where dst holds the best feasible answer. Wrong shapes panic.
 //
-// Norm is good to 1e-9 of itself. Violation is that of the small problem on R,
+// Norm is good to 1e-8 of itself. Violation is that of the small problem on R,
 // whose factors are good to about 1e-15, or where digits are short that of the rows.
 // Beside dst and the results, memory is a few blocks of rows a worker, 8·rank + m/8
 // bytes for each of at most 4,096 samples at a time, and where missing rows take what

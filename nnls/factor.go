@@ -10,11 +10,11 @@ type factor struct {
 	m, n, k int       // rows used, columns, rank
 	rows    []int     // which rows of the caller's matrix are used
 	half    []float64 // √w of the rows used, scaled; nil where all are 1
-	a       []float64 // m×n by rows
+	a       panels    // m×n
 	ea      []int     // column j of a is W^½·a_j·2^−ea[j]
 	ew      int       // half was scaled by 2^−ew
-	q       []float64 // m×stride, a panel for each block of rows
-	stride  int       // columns of q, even; those from k on are zero
+	q       panels    // m×stride
+	stride  int       // k rounded up to even; the columns of q from k on are zero
 	tri     triangle
 }
 
@@ -25,7 +25,7 @@ func newFactor(p *problem) *factor {
 	k := tri.k
 	f := &factor{
 		m: p.m, n: p.n, k: k, rows: p.rows, half: p.half,
-		a: p.a.RawMatrix().Data, ea: p.ea, ew: p.ew, stride: padded(k), tri: tri,
+		a: newPanels(p.a, p.n), ea: p.ea, ew: p.ew, stride: padded(k), tri: tri,
 	}
 	if k == 0 {
 		return f
@@ -35,20 +35,11 @@ func newFactor(p *problem) *factor {
 	lapack64.Orgqr(qr, tau, work, -1)
 	work = make([]float64, int(work[0]))
 	lapack64.Orgqr(qr, tau, work, len(work))
-	f.q = make([]float64, p.m*f.stride)
-	for i := range p.m {
-		p := f.panel(i / block * block)
-		for c := range k {
-			p.q[c*p.ld+i%block] = qr.Data[i*qr.Stride+c]
-		}
-	}
+	var q mat.Dense
+	qr.Cols = k
+	q.SetRawMatrix(qr)
+	f.q = newPanels(&q, f.stride)
 	return f
-}
-
-// panel returns the block of Q that starts at a row.
-func (f *factor) panel(row int) panel {
-	rows := min(block, f.m-row)
-	return panel{f.q[row*f.stride : (row+rows)*f.stride], rows}
 }
 
 // without returns the factor of the rows that are not gone, which must not be all.
@@ -65,7 +56,7 @@ func (f *factor) without(gone []byte) *factor {
 		}
 	}
 	p.m = len(at)
-	p.a, _, p.ea, _ = scaledColumns(mat.NewDense(f.m, f.n, f.a), at, nil) // finite
+	p.a, _, p.ea, _ = scaledColumns(f.a, at, nil) // finite
 	for j, e := range f.ea {
 		p.ea[j] += e
 	}

@@ -68,7 +68,7 @@ func (d *reduced) gram(f *factor, gone []byte, fromMissing bool) {
 	clear(d.h)
 	count := 0
 	for at := 0; at < f.m; at += block {
-		p := f.panel(at)
+		p := f.q.at(at)
 		d.list(gone, at, p.ld, fromMissing)
 		for c := range f.k {
 			from, to := p.column(c, p.ld), d.q.column(c, count+len(d.rows))[count:]

@@ -1,12 +1,48 @@
 package nnls
 
+import "gonum.org/v1/gonum/mat"
+
 // block is the number of rows summed at a time: the rounding error of a sum over
 // m rows grows with block + m/block instead of m, and a block of Q stays in the
-// first-level cache.
+// first-level cache. It is a multiple of 64, the bits of a word, but no power of
+// two, so that columns of a block do not compete for the same lines of the cache.
 const block = 320
 
-// panel is a matrix of some rows, at most block of them, by columns: column j is
-// q[j·ld : j·ld + rows].
+// panels is a matrix that holds blocks of rows, each by columns.
+type panels struct {
+	rows, cols int
+	data       []float64
+}
+
+// newPanels copies a and adds zero columns up to cols.
+func newPanels(a mat.Matrix, cols int) panels {
+	m, n := a.Dims()
+	p := panels{m, cols, make([]float64, m*cols)}
+	for i := range m {
+		at := p.at(i / block * block)
+		for j := range n {
+			at.q[j*at.ld+i%block] = a.At(i, j)
+		}
+	}
+	return p
+}
+
+func (p panels) Dims() (r, c int) { return p.rows, p.cols }
+
+func (p panels) At(i, j int) float64 {
+	at := p.at(i / block * block)
+	return at.q[j*at.ld+i%block]
+}
+
+func (p panels) T() mat.Matrix { return mat.Transpose{Matrix: p} }
+
+// at returns the block that starts at a row.
+func (p panels) at(row int) panel {
+	rows := min(block, p.rows-row)
+	return panel{p.data[row*p.cols : (row+rows)*p.cols], rows}
+}
+
+// panel is a block of a matrix: column j is q[j·ld : j·ld + rows].
 type panel struct {
 	q  []float64
 	ld int

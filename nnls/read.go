@@ -85,10 +85,16 @@ func (w *batchWorker) project(f *factor, c, b []float64, missing []bool) (bb flo
 	for at := 0; at < f.m; at += block {
 		end := min(at+block, f.m)
 		if plain && gaps == 0 {
+			// The product first: it is slow enough to hide the memory that the
+			// sum of squares would wait for. That shows whether it counts.
 			v := b[at:end]
+			clear(w.part)
+			project(w.part, v, f.q.at(at))
 			if sum := sumSquares(v); sum <= math.MaxFloat64 {
 				bb += sum
-				project(c, v, f.panel(at))
+				for j, x := range w.part {
+					c[j] += x
+				}
 				continue
 			}
 		}
@@ -97,7 +103,7 @@ func (w *batchWorker) project(f *factor, c, b []float64, missing []bool) (bb flo
 		sum, n := w.mark(v, at)
 		bb += sum
 		gaps += n
-		project(c, v, f.panel(at))
+		project(c, v, f.q.at(at))
 	}
 	return bb, gaps
 }

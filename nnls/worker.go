@@ -10,6 +10,7 @@ type batchWorker struct {
 	act     *active
 	reduced *reduced  // nil until a sample has a gap
 	v       []float64 // a block of one right-hand side
+	part    []float64 // of Qᵀ·b, by one block
 	z, dual []float64
 	c       []float64 // Qᵀ·r of a refinement
 	before  []float64 // the answer before it
@@ -20,7 +21,8 @@ type batchWorker struct {
 func newBatchWorker(f *factor) *batchWorker {
 	return &batchWorker{
 		act: newActive(f.k, f.n),
-		v:   make([]float64, block), z: make([]float64, f.k), dual: make([]float64, f.n),
+		v:   make([]float64, block), part: make([]float64, f.stride),
+		z: make([]float64, f.k), dual: make([]float64, f.n),
 		c: make([]float64, f.stride), before: make([]float64, f.n),
 		gone: make([]byte, (f.m+63)/64*8),
 	}
