@@ -97,7 +97,7 @@ func TestCompareResults(t *testing.T) {
 	text := read(t, out, "contributions.csv")
 	c := table(t, out, "contributions.csv")
 	v := cell(t, c, "value", "id", "W1", "component", "a")
-	put(t, dir, "other/contributions.csv", strings.Replace(text, v, "9.99", 1))
+	put(t, dir, "other/contributions.csv", strings.Replace(text, "W1,a,references,"+v+",", "W1,a,references,9.99,", 1))
 	r := call("compare", out, filepath.Join(dir, "other")).want(t, exitDoubt)
 	if !strings.Contains(r.out, "W1") || !strings.Contains(r.out, "9.99") {
 		t.Errorf("differences:\n%s", r.out)
