@@ -17,6 +17,7 @@ func (bt *Batch) checkLevels(s *Survey) {
 			continue
 		}
 		v, ex, em, ok := b.glow()
+		b.glowPercent, b.glowFound = v, ok
 		if limit := s.Limit("blank-level"); ok && v > limit {
 			b.flag(s, eem.Note{Test: "blank-level", Severity: eem.Doubt, Measure: true, Value: v, Limit: limit,
 				Msg: fmt.Sprintf("glows at ex %g / em %g nm by %.0f %% of its Raman line, where pure water does not; look for a dirty cell or spoiled water", ex, em, v)})

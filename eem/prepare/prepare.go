@@ -60,15 +60,17 @@ type Bottle struct {
 	Causes   []eem.Cause
 	BlankSet string
 
-	raw       *eem.EEM        // up to the inner filter: what blank and scale start from
-	scanned   *eem.Absorbance // of the liquid scanned
-	guesses   []Guess
-	scanFiles []Input   // the raw scans among Files
-	claims    []string  // files that the scans cell names
-	told      int       // notes of EEM whose findings are flags already
-	area      float64   // Raman area of a blank, before the blank is removed; NaN unknown
-	scale     float64   // what the intensities were divided by; NaN when they stay as they are
-	blanks    []*Bottle // what its blank and its scale rest on
+	raw         *eem.EEM        // up to the inner filter: what blank and scale start from
+	scanned     *eem.Absorbance // of the liquid scanned
+	guesses     []Guess
+	scanFiles   []Input  // the raw scans among Files
+	claims      []string // files that the scans cell names
+	told        int      // notes of EEM whose findings are flags already
+	area        float64  // Raman area of a blank, before the blank is removed; NaN unknown
+	scale       float64  // what the intensities were divided by; NaN when they stay as they are
+	glowPercent float64  // of a blank, see glow
+	glowFound   bool
+	blanks      []*Bottle // what its blank and its scale rest on
 
 	counts *eem.EEM       // a blank's counts without the offset, for the noise model
 	noise  *correct.Noise // nil while unknown

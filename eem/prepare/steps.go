@@ -1,6 +1,7 @@
 package prepare
 
 import (
+	"math"
 	"slices"
 
 	"tarnlight/eem/correct"
@@ -25,13 +26,18 @@ func StepOrder(step string) int { return slices.Index(Steps, step) + 1 }
 // blanks; NaN where no blank shows it.
 func (bt *Batch) RamanPeak() (nm, snr float64) { return bt.peakNM, bt.peakSNR }
 
+// wantedPeak is where that line should be, nm.
+func (bt *Batch) wantedPeak() float64 {
+	return scatter.Raman1.Em(bt.Bottles[0].Setting.Intensity.ExcitationNM)
+}
+
 // findPeak looks for the Raman line in the blanks before they are subtracted.
 func (bt *Batch) findPeak() {
 	bt.peakNM, bt.peakSNR = nan, nan
 	var nm, snr, n float64
 	for _, b := range bt.Blanks {
 		for _, p := range scatter.Ridge(b.raw, scatter.Raman1, 25) {
-			if p.ExNM == bt.Raman.ExNM {
+			if math.Abs(p.ExNM-b.Setting.Intensity.ExcitationNM) < 1e-4 {
 				nm, snr, n = nm+p.Em, snr+p.Snr, n+1
 			}
 		}
