@@ -106,7 +106,7 @@ def main():
         subprocess.run(["go", "test", "-c", "-o", binary, "./nnls"], check=True)
         subprocess.run([binary, "-test.run=TestWriteSurveys", "-survey=" + folder], cwd="nnls", check=True,
                        stdout=subprocess.DEVNULL)
-        product = 2 / go_bench(binary, "MatrixProduct", 5)[0]
+        product = 2 / go_bench(binary, "MatrixProduct/1000x1000x1000", 5)[0]
         print("1000x1000x1000 matrix product: %.1f GF/s in plain Go, %.1f GF/s in NumPy's BLAS" % (product, numpy_product()))
         good = [compare(folder, binary, s, product) for s in SURVEYS if sys.argv[1:] in ([], [str(s[0])])]
     sys.exit(0 if all(good) else 1)
