@@ -184,3 +184,80 @@ func contributions(j *job) map[[2]string]unmix.Contribution {
 	}
 	return out
 }
+
+// The same for components that nobody gave: truth is the height that a perfect
+// instrument would show at the component's maximum. A survey in which a component
+// was not found again (congruence under 0.95 in either mode) is counted apart.
+func TestCoverageParafac(t *testing.T) {
+	n, long := surveys(t, 3)
+	var total tally
+	each := map[string]*tally{}
+	lost := 0
+	for seed := range n {
+		d := erring(uint64(seed)+1, long)
+		d.Absent = 0
+		s := d.Survey()
+		s.Settings = erringSettings + "[resolve]\ncomponents = 5\n"
+		j := simulated(t, s, true)
+		got := contributions(j)
+		for _, comp := range s.Components {
+			one := s.Instrument.Ideal(synth.Liquid{}.With(synth.Dose{Of: comp, Amount: 1}))
+			name, height := foundAs(j.res[0].Set, one)
+			if name == "" {
+				lost++
+				continue
+			}
+			for _, r := range s.Truth() {
+				c := got[[2]string{r.ID, name}]
+				if r.Component != comp.Name || !(c.Value > c.Quantification) {
+					continue
+				}
+				if each[comp.Name] == nil {
+					each[comp.Name] = &tally{}
+				}
+				each[comp.Name].add(r.Value*height, c.Lower, c.Upper)
+				total.add(r.Value*height, c.Lower, c.Upper)
+			}
+		}
+	}
+	t.Logf("%d surveys, %d components not found: %v", n, lost, total)
+	for name, c := range each {
+		t.Logf("%s: %v", name, *c)
+	}
+	if lost > n/2 {
+		t.Errorf("%d components of %d surveys were not found", lost, n)
+	}
+	within(t, "all", total.share(), 0.93, 0.97, n)
+}
+
+// foundAs names the component of a set that has the spectra of one, and the height
+// of one at its maximum; empty where there is none.
+func foundAs(set *unmix.Set, one *eem.EEM) (name string, height float64) {
+	top := 0
+	for i, v := range one.F {
+		if v > one.F[top] {
+			top = i
+		}
+	}
+	nk := one.Em.Len()
+	ex, em := make([]float64, one.Ex.Len()), one.Row(top/nk)
+	for j := range ex {
+		ex[j] = one.At(j, top%nk)
+	}
+	for _, c := range set.Components {
+		if cosine(c.Ex, ex, c.ExDetermined) > 0.95 && cosine(c.Em, em, c.EmDetermined) > 0.95 {
+			return c.Name, one.F[top]
+		}
+	}
+	return "", 0
+}
+
+func cosine(a, b []float64, in []bool) float64 {
+	var ab, aa, bb float64
+	for i := range a {
+		if in == nil || in[i] {
+			ab, aa, bb = ab+a[i]*b[i], aa+a[i]*a[i], bb+b[i]*b[i]
+		}
+	}
+	return ab / math.Sqrt(aa*bb)
+}

@@ -328,6 +328,9 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 	}
 	spreads := merit.Spreads(j.cube, r, j.sources(method))
 	judged := merit.Judge(r, spreads, bottles, j.cube.Sample, j.sv.Limit, j.sv.Accept, set.Origin)
+	if err := j.unknowns(judged, r, bottles, set.Origin); err != nil {
+		return err
+	}
 	j.res = append(j.res, r)
 	j.judge = append(j.judge, judged)
 	return nil

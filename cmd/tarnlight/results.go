@@ -13,6 +13,7 @@ import (
 	"tarnlight/eem/scatter"
 	"tarnlight/eem/survey"
 	"tarnlight/unmix"
+	"tarnlight/unmix/merit"
 	"tarnlight/unmix/report"
 )
 
@@ -23,7 +24,7 @@ var nan = math.NaN()
 func (j *job) contributionTable() *report.Table {
 	t := report.New("contributions.csv")
 	for _, judged := range j.judge {
-		for _, c := range judged.Contributions {
+		for _, c := range slices.Concat(judged.Contributions, judged.Beyond) {
 			t.Append(c.ID, c.Component, c.Method, c.Value, c.Unit, c.U, c.Lower, c.Upper, c.Detection, c.Qualifier,
 				c.Critical, c.Quantification, c.Detected, c.Reported, strings.Join(c.Reasons, "; "), c.Model)
 		}
@@ -146,6 +147,11 @@ func (j *job) componentTable() *report.Table {
 	for _, fit := range j.fits {
 		if fit != j.fit {
 			appendSet(t, componentsOf(fit), false)
+		}
+	}
+	for _, judged := range j.judge {
+		for _, u := range judged.Unknown {
+			appendSet(t, &unmix.Set{Grid: u.Set.Grid, Method: merit.MethodUnknown, Components: []unmix.Component{u.Component}}, false)
 		}
 	}
 	return t

@@ -243,7 +243,10 @@ func (b *bottle) monteCarlo(total []float64) {
 	for _, f := range near {
 		stretch := TQuantile(0.975, b.out.DF[f]) / z975
 		for d := range v {
-			v[d] = math.Max(0, b.x[f]+stretch*(draws[d*n+f]-b.x[f]))
+			v[d] = 0
+			if y := draws[d*n+f]; y > 0 {
+				v[d] = math.Max(0, b.x[f]+stretch*(y-b.x[f]))
+			}
 		}
 		b.out.Lower[f], b.out.Upper[f] = ShortestInterval(v, 0.95)
 	}

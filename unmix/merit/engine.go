@@ -488,7 +488,7 @@ func (m *mask) moves(e *engine) {
 	for l := range e.src.Loadings.Samples {
 		ex, em := e.src.Loadings.Move(l)
 		clear(y)
-		for g := range n {
+		for g := range ex { // a component that was added to the model does not move
 			for h := range n {
 				for j, d := range ex[g] {
 					y[h*n+g] += d * hx[(j*n+h)*n+g]

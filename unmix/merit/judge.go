@@ -33,6 +33,9 @@ type Judged struct {
 	Flags         []eem.Flag
 	Structure     []Moran  // one a bottle; zero where it is not in the resolution
 	Spreads       []Spread // one a row of the resolution
+
+	Unknown []*Unknown           // what was found beyond the model
+	Beyond  []unmix.Contribution // its contributions, bottle after bottle
 }
 
 // Judge makes one contribution for every bottle and component. spreads are those of
