@@ -29,7 +29,7 @@ func (r *results) figModels() *figure {
 	for _, m := range []modelPanel{
 		{title: "Explained", y: "% of the sum of squares", lo: nan, hi: 100.4, limit: nan, v: [][]float64{t.floats("explained_percent")}},
 		{title: "Core consistency", y: "%", lo: min(0, minOf(core)), hi: 104, limit: nan, v: [][]float64{core}},
-		{title: "Split halves: lowest congruence", y: "Congruence", lo: min(0.5, minOf(ex), minOf(em)), hi: 1.01, limit: 0.95, names: []string{"excitation", "emission"}, v: [][]float64{ex, em}},
+		{title: "Split halves: lowest congruence", y: "Congruence", lo: roomBelow(min(0.5, minOf(ex), minOf(em))), hi: 1.01, limit: 0.95, names: []string{"excitation", "emission"}, v: [][]float64{ex, em}},
 		{title: "Starts that reached the best fit", y: "%", lo: 0, hi: 104, limit: nan, v: [][]float64{agree}},
 	} {
 		if p := r.drawModelPanel(m, k, chosen); p != nil {
@@ -81,6 +81,9 @@ func (r *results) drawModelPanel(m modelPanel, k []float64, chosen float64) *plo
 	}
 	return p
 }
+
+// roomBelow leaves room for the names of the lines below congruences from lo to 1.
+func roomBelow(lo float64) float64 { return lo - 0.25*(1-lo) }
 
 func minOf(v []float64) float64 { lo, _ := bounds(v); return lo }
 

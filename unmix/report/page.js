@@ -13,7 +13,10 @@ function sig(v, d) {
   if (v === null || !isFinite(v)) return "–";
   if (v === 0) return "0";
   const e = Math.floor(Math.log10(Math.abs(v)));
-  if (e < -4 || e >= 6) return mark(v.toExponential(d - 1).replace("e", "·10^"));
+  if (e < -4 || e >= 6) {
+    const [m, p] = v.toExponential(d - 1).split("e");
+    return mark(m) + " · 10" + p.replace(/[-+0-9]/g, c => c === "+" ? "" : "⁻⁰¹²³⁴⁵⁶⁷⁸⁹"["-0123456789".indexOf(c)]);
+  }
   return mark(v.toFixed(Math.max(0, d - 1 - e)));
 }
 function ticks(lo, hi, n) {
@@ -190,7 +193,7 @@ function drawMap(c) {
   g.textAlign = "left"; g.textBaseline = "middle";
   const lo = div ? -top : 0, t = ticks(lo, top, 4);
   for (const q of t) { const p = b.y + b.h - (q - lo) / (top - lo) * b.h; g.fillRect(bx + 10, p, 3, 1); g.fillText(tickText(q, t.step), bx + 15, p); }
-  g.textBaseline = "top"; g.fillText(D.unit, bx - 2, b.y + b.h + 6);
+  g.textBaseline = "top"; g.fillText(D.unit, bx - 2, b.y + b.h + 21);
   if (S.j >= 0) {
     const px = b.x + (D.em[S.k] - X[0]) / (X[1] - X[0]) * b.w, py = b.y + b.h - (D.ex[S.j] - Y[0]) / (Y[1] - Y[0]) * b.h;
     for (const [style, lw] of [["rgba(255,255,255,.85)", 3], ["#20242c", 1]]) {

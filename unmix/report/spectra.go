@@ -55,9 +55,10 @@ func (r *results) components(method string) []*component {
 	return out
 }
 
-// peak is the wavelength of the largest loading, NaN without any.
+// peak is the wavelength of the largest loading; NaN where the data leave it open:
+// the maximum is 1, so that a spectrum without a loading near 1 lacks its peak.
 func (l *line) peak() float64 {
-	at, top := math.NaN(), math.Inf(-1)
+	at, top := math.NaN(), 0.9
 	for i, v := range l.v {
 		if v > top {
 			at, top = l.nm[i], v
