@@ -26,6 +26,7 @@ func TestRefusals(t *testing.T) {
 			[]string{`water_03.csv:4: "abc" is not a number`, "blank"}},
 		{"text in the first column", "w.csv", rows("em,ex=240", "300,1.5", "301,1.6", "3O2,1.5", "303,1.7"), nil,
 			[]string{`w.csv:4: "3O2" is not a number`}},
+		{"a letter beyond ASCII", "w.csv", rows("em,ex=240", "300,1.5", "301,12º", "302,1.6", "303,1.7"), nil, []string{`w.csv:3: "12º" is not a number`}},
 		{"text in the last row", "w.txt", scan + rows("300\t1", "301\t2", "302\tx"), nil, []string{`w.txt:5: "x" is not a number`}},
 		{"text in the first row", "w.txt", scan + rows("300\tx", "301\t2", "302\t3"), nil, []string{`w.txt:3: "x" is not a number`}},
 		{"text in a grid", "g.csv", rows(`em\ex,240,250`, "300,1,2", "305,1,q", "310,1,2"), nil, []string{`g.csv:3: "q" is not a number`}},

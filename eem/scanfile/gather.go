@@ -10,21 +10,47 @@ import (
 // maxScans bounds the scans of one file.
 const maxScans = 200_000
 
-// longScan gathers the rows of one scan.
+// longScan is the rows of one scan.
 type longScan struct {
 	ex    float64
 	label string
+	n     int
 	em, f []float64
 	lines []int32
 }
 
 // long gathers the rows of a long table by sample and excitation.
 func (r *reader) long(blocks []block, l longColumns) error {
+	scans, of, err := r.longKeys(blocks, l)
+	if err != nil {
+		return err
+	}
+	em, f, lines := make([]float64, len(of)), make([]float64, len(of)), make([]int32, len(of))
+	at := 0
+	for i := range scans {
+		s := &scans[i]
+		s.em, s.f, s.lines = em[at:at:at+s.n], f[at:at:at+s.n], lines[at:at:at+s.n]
+		at += s.n
+	}
+	row := 0
+	for i := range blocks {
+		for k := range blocks[i].rows {
+			if of[row] >= 0 {
+				s, c := &scans[of[row]], r.rowCells(&blocks[i], k)
+				s.em, s.f, s.lines = append(s.em, c[l.em]), append(s.f, c[l.f]), append(s.lines, int32(r.line(&blocks[i], k)))
+			}
+			row++
+		}
+	}
 	said := func(c int) bool { return len(l.head) > c && wavenumberWord.Match(l.head[c]) }
+	return r.longScans(scans, said(l.ex), said(l.em))
+}
+
+// longKeys finds the scan that each row belongs to, −1 for a row of blanks.
+func (r *reader) longKeys(blocks []block, l longColumns) (scans []longScan, of []int32, err error) {
 	type key struct{ ex, label float64 }
-	at := map[key]int{}
-	var scans []longScan
-	last, cur := key{math.NaN(), 0}, -1
+	at := map[key]int32{}
+	last, cur := key{math.NaN(), 0}, int32(-1)
 	for i := range blocks {
 		b := &blocks[i]
 		for k := range b.rows {
@@ -35,16 +61,17 @@ func (r *reader) long(blocks []block, l longColumns) error {
 			}
 			switch {
 			case id.ex != id.ex && row[l.em] != row[l.em] && row[l.f] != row[l.f]:
+				of = append(of, -1)
 				continue
 			case id.ex != id.ex:
-				return errorf(r.name, r.line(b, k), "no excitation in this row; fill it in, or take the row out")
+				return nil, nil, errorf(r.name, r.line(b, k), "no excitation in this row; fill it in, or take the row out")
 			case id != last:
 				var ok bool
 				if cur, ok = at[id]; !ok {
 					if len(scans) == maxScans {
-						return errorf(r.name, r.line(b, k), "more than %d different excitations; is this the excitation column? Write ex_nm, em_nm, intensity above the columns", maxScans)
+						return nil, nil, errorf(r.name, r.line(b, k), "more than %d different excitations; is this the excitation column? Write ex_nm, em_nm, intensity above the columns", maxScans)
 					}
-					cur = len(scans)
+					cur = int32(len(scans))
 					at[id] = cur
 					s := longScan{ex: id.ex}
 					if l.label >= 0 {
@@ -54,11 +81,11 @@ func (r *reader) long(blocks []block, l longColumns) error {
 				}
 				last = id
 			}
-			s := &scans[cur]
-			s.em, s.f, s.lines = append(s.em, row[l.em]), append(s.f, row[l.f]), append(s.lines, r.rows.lines[b.row+k])
+			scans[cur].n++
+			of = append(of, cur)
 		}
 	}
-	return r.longScans(scans, said(l.ex), said(l.em))
+	return scans, of, nil
 }
 
 func (r *reader) longScans(scans []longScan, exSaid, emSaid bool) error {
