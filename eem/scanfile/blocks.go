@@ -9,7 +9,7 @@ import (
 // much shorter than the longest. A damaged row between or beside them is an
 // error; free text inside one scan joins its halves.
 func (r *reader) mainBlocks() error {
-	var all []block
+	all := make([]block, 0, len(r.rows.blocks))
 	longest := 0
 	for i := range r.rows.blocks {
 		b := r.rows.blocks[i]
@@ -30,7 +30,7 @@ func (r *reader) mainBlocks() error {
 		longest = max(longest, b.rows)
 	}
 	var gap []textLine // above the next main block
-	r.main = r.main[:0]
+	r.main = all[:0] // never ahead of i
 	for i, b := range all {
 		if i > 0 && len(b.gap) == 0 && all[i-1].rows == 1 {
 			b.above = r.rowCells(&all[i-1], 0)

@@ -9,7 +9,9 @@ import (
 // rubble costs no more memory than a few times its size.
 const (
 	maxGapLines = 2000   // text lines kept between two blocks of numbers
-	maxBlocks   = 20_000 // blocks of numbers in one file
+	maxBlocks   = 20_000 // blocks of numbers in one file, and
+	freeBlocks  = 500    // how many it may have, beside one for every
+	blockBytes  = 32     // bytes of text: a scan with its header has more
 )
 
 // textLine is a line that is no row of numbers.
@@ -36,6 +38,7 @@ type rowReader struct {
 	blocks     []block
 	tail       []textLine // the text below the last block
 	total      int        // lines of the file
+	most       int        // blocks that it may have
 	// A file whose rows hold text too (a sample's name) is read by column:
 	// only want[i] columns are numbers, and in column label the place of the
 	// text in labels stands for it.
@@ -76,6 +79,7 @@ func (s *store) release() {
 func (r *rowReader) read(text []byte) *lineError {
 	r.cells = slices.Grow(r.cells[:0], min(len(text)/4, maxStore))
 	r.lines = r.lines[:0]
+	r.most = min(maxBlocks, freeBlocks+len(text)/blockBytes)
 	quick := r.want == nil && r.delim != r.dec
 	open := false // the last block may go on
 	for no := 1; len(text) > 0; no++ {
@@ -121,7 +125,7 @@ func (r *rowReader) read(text []byte) *lineError {
 // addRow adds the row of n cells from at on to the open block, or begins one.
 func (r *rowReader) addRow(no, n, at int, open bool) *lineError {
 	if !open || r.blocks[len(r.blocks)-1].cols != n {
-		if len(r.blocks) == maxBlocks {
+		if len(r.blocks) == r.most {
 			return &lineError{no, "numbers and text alternate all through the file; is it a scan? Export it again as a table"}
 		}
 		r.blocks = append(r.blocks, block{gap: r.tail, first: no, cols: n, cell: at, row: len(r.lines)})

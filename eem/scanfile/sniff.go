@@ -47,7 +47,7 @@ func splitFields(line []byte, delim byte) [][]byte {
 	if delim == ' ' {
 		line = bytes.TrimSpace(line)
 	}
-	var out [][]byte
+	out := make([][]byte, 0, min(bytes.Count(line, []byte{delim}), MaxColumns)+1)
 	for more := true; more && len(out) <= MaxColumns; {
 		var f []byte
 		f, line, more = cutField(line, delim)
