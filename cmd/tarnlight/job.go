@@ -10,6 +10,7 @@ import (
 	"github.com/spf13/cobra"
 
 	"tarnlight/eem"
+	"tarnlight/eem/optics"
 	"tarnlight/eem/prepare"
 	"tarnlight/eem/scanfile"
 	"tarnlight/eem/survey"
@@ -67,6 +68,7 @@ type job struct {
 	fits   []*parafac.Result       // candidates
 	choice *parafac.Choice         // nil where the number was stated
 	flags  []eem.Flag              // all of them, in order
+	optics map[*prepare.Bottle][]optics.Index
 
 	applied     *unmix.Model // the fixed model of apply, nil otherwise
 	appliedName string

@@ -8,10 +8,7 @@ import (
 	"strings"
 
 	"tarnlight/eem"
-	"tarnlight/eem/optics"
 	"tarnlight/eem/prepare"
-	"tarnlight/eem/scatter"
-	"tarnlight/eem/survey"
 	"tarnlight/unmix"
 	"tarnlight/unmix/merit"
 	"tarnlight/unmix/report"
@@ -103,27 +100,6 @@ func (j *job) fitColumns(set func(string, any), b *prepare.Bottle, at int) {
 	set("condition_number", fit.Condition)
 }
 
-// opticsNames maps the columns of samples.csv to the indices.
-var opticsNames = map[string]string{"suva254": "suva254", "s275_295": "s_275_295", "s350_400": "s_350_400", "slope_ratio": "s_r",
-	"e2_e3": "e2_e3", "fi": "fi_470_520", "bix": "bix", "hix": "hix_sum", "hix_ratio": "hix_ratio", "freshness": "freshness",
-	"peak_b": "peak_b", "peak_t": "peak_t", "peak_a": "peak_a", "peak_m": "peak_m", "peak_c": "peak_c"}
-
-func (j *job) opticsColumns(set func(string, any), b *prepare.Bottle) {
-	if !b.Usable() {
-		return
-	}
-	list := optics.Fluorescence(b.EEM)
-	if b.Absorb != nil {
-		list = append(list, optics.Absorption(b.Absorb, b.Row.DOC)...)
-	}
-	flat := optics.Flat(list)
-	for column, name := range opticsNames {
-		if v, ok := flat[name]; ok {
-			set(column, v)
-		}
-	}
-}
-
 // flagTable makes flags.csv.
 func (j *job) flagTable() *report.Table {
 	t := report.New("flags.csv")
@@ -180,138 +156,6 @@ func appendSet(t *report.Table, s *unmix.Set, chosen bool) {
 			t.Append(c.Name, unmix.ModeScale, "", c.Scale, nan, true, s.Method, s.Len(), chosen, c.AmountUnit)
 		}
 	}
-}
-
-// batchTable makes batches.csv.
-func (j *job) batchTable() *report.Table {
-	t := report.New("batches.csv")
-	count := map[string]*[4]int{}
-	for _, f := range j.flags {
-		if count[f.Batch] == nil {
-			count[f.Batch] = &[4]int{}
-		}
-		count[f.Batch][f.Severity]++
-	}
-	for _, bt := range j.sv.Batches {
-		kinds := map[survey.Kind]int{}
-		for _, b := range bt.Bottles {
-			kinds[b.Row.Kind]++
-		}
-		var blanks []string
-		for _, b := range bt.Blanks {
-			blanks = append(blanks, b.Row.ID)
-		}
-		scale := nan
-		switch j.sv.Unit {
-		case eem.Raman:
-			scale = bt.Raman.Area
-		case eem.Quinine:
-			scale = bt.Quinine.Slope
-		}
-		peak, snr := bt.RamanPeak()
-		c := count[bt.Name]
-		if c == nil {
-			c = &[4]int{}
-		}
-		verdict, reasons := bt.Verdict()
-		t.Append(bt.Name, bt.Setup, bt.Day, kinds[survey.Sample]+kinds[survey.FieldBlank], strings.Join(blanks, " "), kinds[survey.Standard],
-			kinds[survey.Control]+kinds[survey.Spike], string(j.sv.Unit), scale, bt.ScaleU(), peak, snr, nan,
-			c[eem.Remark], c[eem.Doubt], c[eem.Reject], verdict, strings.Join(reasons, "; "))
-	}
-	return t
-}
-
-// chartTable makes charts.csv: the quality variables that every batch has.
-func (j *job) chartTable() *report.Table {
-	t := report.New("charts.csv")
-	for _, bt := range j.sv.Batches {
-		if bt.Raman.N == 0 {
-			continue
-		}
-		t.Append("Raman area", bt.Name, "", bt.Day, bt.Raman.Area, "counts nm", nan, nan, nan, nan, nan, "", "")
-		if peak, _ := bt.RamanPeak(); !math.IsNaN(peak) {
-			want := scatter.Raman1.Em(bt.Raman.ExNM)
-			t.Append("Raman peak", bt.Name, "", bt.Day, peak, "nm", want, nan, nan, nan, nan, "", "")
-		}
-	}
-	return t
-}
-
-// calibrationTable makes calibration.csv: every standard and control (and what a
-// spike recovered), against what the references find.
-func (j *job) calibrationTable() *report.Table {
-	t := report.New("calibration.csv")
-	k := slices.IndexFunc(j.res, func(r *unmix.Resolution) bool { return r.Set.Method == "references" })
-	if k < 0 {
-		return t
-	}
-	r := j.res[k]
-	lines := map[string]unmix.Line{}
-	for _, l := range j.lines {
-		lines[l.Component] = l
-	}
-	for _, b := range j.sv.Bottles {
-		i, ok := j.row[b]
-		if !ok {
-			continue
-		}
-		for _, g := range j.given(b, r) {
-			f := slices.Index(r.Set.Names(), g.component)
-			if f < 0 {
-				continue
-			}
-			found := r.Value[i*r.Set.Len()+f] - g.before
-			l, has := lines[g.component]
-			if !has {
-				l = unmix.Line{Slope: nan, Intercept: nan, InterceptSE: nan}
-			}
-			recovery, low, high := nan, nan, nan
-			verdict, reason := "", ""
-			if g.given > 0 {
-				recovery = 100 * found / g.given
-				if lim := j.sv.Limit(g.test); g.test != "" && lim > 0 {
-					low, high = 100-lim, 100+lim
-					if verdict = "pass"; recovery < low || recovery > high {
-						verdict, reason = "doubt", fmt.Sprintf("recovery %.1f %%, accepted %g–%g %%", recovery, low, high)
-					}
-				}
-			}
-			t.Append(b.Row.ID, b.Batch, string(b.Row.Kind), g.component, g.given, found, r.Set.Components[f].AmountUnit,
-				j.judge[k].Spreads[i].U[f], recovery, low, high, j.calibrates(b), verdict, reason, l.Slope, l.Intercept, l.InterceptSE)
-		}
-	}
-	return t
-}
-
-// given is a known amount in a bottle.
-type given struct {
-	component string
-	given     float64 // amount in the bottle
-	before    float64 // what it held before a spike
-	test      string  // the test of its recovery
-}
-
-func (j *job) given(b *prepare.Bottle, r *unmix.Resolution) []given {
-	var out []given
-	test := map[survey.Kind]string{survey.Control: "control-recovery", survey.Spike: "spike-recovery"}[b.Row.Kind]
-	for _, c := range b.Row.Conc {
-		g := given{component: c.Name, given: c.Value * b.Undiluted(), test: test}
-		switch b.Row.Kind {
-		case survey.Standard, survey.Control:
-		case survey.Spike:
-			of := j.bottle(b.Row.SpikeOf)
-			i, ok := j.row[of]
-			f := slices.Index(r.Set.Names(), c.Name)
-			if !ok || f < 0 {
-				continue
-			}
-			g.before = r.Value[i*r.Set.Len()+f]
-		default:
-			continue
-		}
-		out = append(out, g)
-	}
-	return out
 }
 
 // bottle finds a bottle by id, nil when there is none.

@@ -289,6 +289,9 @@ func (j *job) collectFlags() {
 	j.flags = append(j.flags, j.lineFlags()...)
 	j.flags = append(j.flags, j.recoveryFlags()...)
 	j.flags = append(j.flags, j.duplicateFlags()...)
+	j.flags = append(j.flags, j.fieldBlankFlags()...)
+	j.flags = append(j.flags, j.chartFlags()...)
+	j.flags = append(j.flags, j.opticsFlags()...)
 }
 
 // provenance lists what the results rest on.

@@ -292,7 +292,7 @@ func (bt *Batch) Verdict() (verdict string, reasons []string) {
 			rejected++
 		}
 	}
-	if bt.Reason != "" && !bt.Bottles[0].skips(stepIntensity) {
+	if first := bt.Bottles[0]; bt.Reason != "" && bt.Unit == eem.Counts && first.Setting.Intensity.Unit != "counts" && !first.skips(stepIntensity) {
 		verdict, reasons = "doubt", append(reasons, "no intensity scale: "+bt.Reason)
 	}
 	if rejected > 0 {
