@@ -53,11 +53,11 @@ func (p *Batch) Dims() (m, n int) { return p.m, p.f.n }
 // names the first, and all others are solved. So it is with [IterationLimit],
 // where dst holds the best feasible answer. Wrong shapes panic.
 //
-// Norm is good to 1e-8 of itself. Violation is that of the small problem on R,
-// whose factors are good to about 1e-15, or where digits are short that of the rows.
-// Beside dst and the results, memory is a few blocks of rows a worker, 8·rank + m/8
-// bytes for each of at most 4,096 samples at a time, and where missing rows take what
-// a variable is known by, a factorisation of the others a worker.
+// Norm is good to 1e-8 of itself. Violation comes from the small problem on R, or
+// where digits are short from the rows, and is good to 1e-12. Beside dst and the
+// results, memory is a few blocks of rows a worker, 8·rank + m/8 bytes for each of at
+// most 4,096 samples at a time, and where missing rows take what a variable is known
+// by, a factorisation of the others a worker.
 func (p *Batch) SolveTo(dst, b *mat.Dense, missing []bool) ([]Result, error) {
 	samples, m := b.Dims()
 	if r, c := dst.Dims(); r != samples || c != p.f.n || m != p.m || (missing != nil && len(missing) != samples*m) {

@@ -92,15 +92,21 @@ func (r *batchRun) solve(w *batchWorker, f *factor, t *triangle, s sample) bool 
 	w.residual(t, w.act.x)
 	square += sumSquares(w.z)
 	res.Violation = violation(w.act.x, w.dual, t.norm, normB)
+	digits := eps * t.loss
 	if square < leastDifference*t.loss*bb || t.loss > mostLoss || res.Violation > mostViolation {
 		square, res.Violation = w.refine(f, t, r.scaled(w, s.i), normB, s.gone)
+		digits = eps
+	}
+	good := res.Violation <= mostViolation
+	if normB > 0 { // what the evaluation cannot show
+		res.Violation += digits * dot(t.norm, w.act.x) / normB
 	}
 	copy(res.Passive, w.act.free)
 	if r.errs[s.i] = nil; res.Status == IterationLimit {
 		r.errs[s.i] = ErrIterationLimit
 	}
 	r.finish(w, f, s.i, square)
-	return res.Violation <= mostViolation
+	return good
 }
 
 // finish writes the answer in the caller's units.
