@@ -96,10 +96,9 @@ func terms(a *mat.Dense, b, x []float64) float64 {
 	return sum
 }
 
-// A reported violation is believed to 1e-12 or a factor of four.
-//
 // passes is the violation that an answer may have: 1e-10, and where the terms of
-// the fit cancel, the rounding of x.
+// the fit cancel, the rounding of x. A reported one is held to 1e-12 or a factor of
+// four of it.
 func passes(a *mat.Dense, b, x []float64) float64 {
 	if norm(b) == 0 {
 		return 0
