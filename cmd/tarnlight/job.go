@@ -64,6 +64,7 @@ type job struct {
 	judge  []*merit.Judged         // beside res
 	lines  []unmix.Line            // of the references
 	refs   *merit.References       // how they came from standards; nil when they did not
+	limits map[string]merit.Limits // the laboratory's own, by component
 	fit    *parafac.Result         // nil without resolve
 	fits   []*parafac.Result       // candidates
 	choice *parafac.Choice         // nil where the number was stated
@@ -306,6 +307,9 @@ func readReferences(path, name string) (*unmix.Set, error) {
 // count in the judgement.
 func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolution) []eem.Flag) error {
 	set.Method = method
+	if err := j.readLimits(set); err != nil {
+		return err
+	}
 	r, err := unmix.Quantify(j.cube, set)
 	if err != nil {
 		return err

@@ -11,7 +11,7 @@ import (
 func (j *job) sources(method string) *merit.Sources {
 	n := j.cube.Len()
 	s := &merit.Sources{Causes: make([][]eem.Cause, n), BlankSet: make([]string, n), Factor: make([]float64, n), Blank: make([]bool, n),
-		BlankU: j.sv.BlankU, Seed: j.set.Resolve.Seed}
+		BlankU: j.sv.BlankU, Seed: j.set.Resolve.Seed, Limits: j.limits}
 	for b, i := range j.row {
 		s.Causes[i], s.BlankSet[i], s.Factor[i], s.Blank[i] = b.Causes, b.BlankSet, b.Undiluted(), b.Row.Kind == survey.Blank
 	}

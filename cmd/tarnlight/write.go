@@ -301,7 +301,7 @@ func (j *job) provenance() outdir.Provenance {
 		p.Inputs = append(p.Inputs, outdir.File{Path: in.Path, SHA256: in.SHA256, Size: in.Size})
 	}
 	extra := map[string]bool{j.sheet.Path: true, j.settingsPath(): true}
-	for _, name := range []string{j.set.Sheet.Exclusions, j.set.Resolve.Hold, j.set.Quantify.File} {
+	for _, name := range []string{j.set.Sheet.Exclusions, j.set.Resolve.Hold, j.set.Quantify.File, j.set.Quantify.Limits} {
 		if path := filepath.FromSlash(name); filepath.IsAbs(path) {
 			extra[path] = true
 		} else if name != "" {

@@ -82,6 +82,7 @@ func (b *bottle) noise() {
 	b.own = make([]float64, n*n)
 	sse, sum, known := 0.0, 0.0, u != nil
 	b.e.r.ResidualTo(b.r, e.c.Sample(b.i), b.i)
+	b.residual(u)
 	for _, l := range b.m.use {
 		r := b.r[e.cells[l]]
 		sse += r * r
@@ -116,6 +117,21 @@ func (b *bottle) noise() {
 		axpy((s2-mean)*tau, b.m.gram, m)
 		b.add(misfit, "bottle", 0, "residual beyond the noise; neighbours alike, so that "+strconv.FormatFloat(tau, 'f', 0, 64)+" cells count as one", fixed(m))
 	}
+}
+
+// residual looks at the residual map, on the cells that took part.
+func (b *bottle) residual(u []float32) {
+	e, at := b.e, 0
+	for c := range b.r {
+		for at < len(b.m.use) && e.cells[b.m.use[at]] < c {
+			at++
+		}
+		if at == len(b.m.use) || e.cells[b.m.use[at]] != c {
+			b.r[c] = math.NaN()
+		}
+	}
+	b.out.Hot = HottestSpot(e.c.Grid, b.r, u)
+	b.out.Runs = RunsMap(b.r, e.c.Ex.Len(), e.c.Em.Len()).Z
 }
 
 // misfit is the name of what the model misses, a cause of its own.

@@ -43,12 +43,35 @@ func (b *bottle) combine() {
 			sum += v[t]
 		}
 		b.out.U[f], b.out.DF[f] = math.Sqrt(sum), effective(v, df)
-		b.limits(f, row, df)
+		b.out.Critical[f], b.out.Detection[f], b.out.Quantifiable[f] = b.limits([]int{f}, row, df)
+		b.ownLimits(f)
 		k := TQuantile(0.975, b.out.DF[f])
 		b.out.Lower[f], b.out.Upper[f] = math.Max(0, b.x[f]-k*b.out.U[f]), b.x[f]+k*b.out.U[f]
 	}
+	b.sums(total, wp, df)
 	b.monteCarlo(total)
 	b.budget()
+}
+
+// sums judges the pairs that cannot be told apart.
+func (b *bottle) sums(total, wp, df []float64) {
+	n := b.e.n
+	for _, p := range b.e.pairs {
+		w := wp
+		if b.x[p.F] <= 0 && b.x[p.H] <= 0 {
+			w = inverse(b.m.gram, n, passiveSet(b.x, p.F))
+		}
+		nan := math.NaN()
+		s := Sum{p, b.x[p.F] + b.x[p.H], nan, nan, nan, nan, nan, nan}
+		if w != nil {
+			row := slices.Clone(w[p.F*n : (p.F+1)*n])
+			axpy(1, w[p.H*n:(p.H+1)*n], row)
+			s.U = math.Sqrt(math.Max(0, form(total, row)))
+			s.Lower, s.Upper = math.Max(0, s.Value-z975*s.U), s.Value+z975*s.U
+			s.Critical, s.Detection, s.Quantifiable = b.limits([]int{p.F, p.H}, row, df)
+		}
+		b.out.Sums = append(b.out.Sums, s)
+	}
 }
 
 // sensitivity is row f of W for component f free beside those above zero; nil where
@@ -80,21 +103,21 @@ func effective(v, df []float64) float64 {
 	return Satterthwaite(sum, of)
 }
 
-// limits sets critical value, detection and quantification limit of component f
-// from what would be left of the uncertainty if the bottle held none of it, u0, and
-// what grows with the amount, r·x:
+// limits returns critical value, detection and quantification limit of a component
+// (or the sum of several) from what would be left of the uncertainty if the bottle
+// held none of it, u0, and what grows with the amount, r·x:
 //
 //	critical  t·u0                          5 % of bottles without it exceed it
 //	detection δ·u0/(1 − k²r²)               95 % of bottles with it exceed that
 //	quantification u0/√(0.1² − r²)          relative standard uncertainty 10 %
 //
 // with t Student's 95 % point, δ the non-centrality of ISO 11843-2 and k = 1.645.
-func (b *bottle) limits(f int, row, df []float64) {
+func (b *bottle) limits(of []int, row, df []float64) (critical, detection, quantifiable float64) {
 	n := b.e.n
-	none := slices.Clone(b.x)
-	none[f] = 0
-	one := make([]float64, n)
-	one[f] = 1
+	none, one := slices.Clone(b.x), make([]float64, n)
+	for _, f := range of {
+		none[f], one[f] = 0, 1/float64(len(of))
+	}
 	v := make([]float64, len(b.sources))
 	m := make([]float64, n*n)
 	u0, r2 := 0.0, 0.0
@@ -115,12 +138,29 @@ func (b *bottle) limits(f int, row, df []float64) {
 	}
 	nu := effective(v, df)
 	u0 = math.Sqrt(u0)
-	b.out.Critical[f] = TQuantile(0.95, nu) * u0
+	critical, detection, quantifiable = TQuantile(0.95, nu)*u0, math.NaN(), math.NaN()
 	if shrink := 1 - kCritical*kCritical*r2; shrink > 0 {
-		b.out.Detection[f] = Delta(nu, 0.05, 0.05) * u0 / shrink
+		detection = Delta(nu, 0.05, 0.05) * u0 / shrink
 	}
 	if r2 < 0.01 {
-		b.out.Quantifiable[f] = u0 / math.Sqrt(0.01-r2)
+		quantifiable = u0 / math.Sqrt(0.01-r2)
+	}
+	return critical, detection, quantifiable
+}
+
+// ownLimits puts the laboratory's limits in the place of the computed ones.
+func (b *bottle) ownLimits(f int) {
+	l, ok := b.e.src.Limits[b.e.r.Set.Components[f].Name]
+	if !ok {
+		return
+	}
+	for _, v := range []struct {
+		to  *float64
+		own float64
+	}{{&b.out.Critical[f], l.Critical}, {&b.out.Detection[f], l.Detection}, {&b.out.Quantifiable[f], l.Quantification}} {
+		if v.own == v.own {
+			*v.to = v.own
+		}
 	}
 }
 

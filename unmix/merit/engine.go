@@ -36,6 +36,7 @@ type engine struct {
 	blanks []string    // blank sets that act, in order of appearance
 	blankV [][]float64 // variance on cells, one a blank set
 	draws  []float64   // standard normal, for Monte Carlo
+	pairs  []Alike
 
 	mu    sync.Mutex
 	masks map[string]*mask
@@ -133,6 +134,7 @@ func newEngine(c *eem.Cube, r *unmix.Resolution, src *Sources) *engine {
 		}
 	}
 	e.listBlanks()
+	e.pairs = Pairs(r.Set)
 	e.draws = normals(src.Seed, drawn*e.n)
 	return e
 }

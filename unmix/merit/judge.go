@@ -48,7 +48,7 @@ func Judge(r *unmix.Resolution, spreads []Spread, bottles []Bottle, x func(row i
 		if b.Row >= 0 {
 			r.ResidualTo(dst, x(b.Row), b.Row)
 			j.Structure[i] = MoranI(dst, r.Set.Grid.Ex.Len(), r.Set.Grid.Em.Len())
-			for _, f := range fitFlags(r, b, j.Structure[i], limit) {
+			for _, f := range fitFlags(r, &spreads[b.Row], b, j.Structure[i], limit) {
 				f = accept(f)
 				j.Flags = append(j.Flags, f)
 				switch f.Severity {
@@ -66,11 +66,12 @@ func Judge(r *unmix.Resolution, spreads []Spread, bottles []Bottle, x func(row i
 			j.Flags = append(j.Flags, flags...)
 		}
 	}
+	j.addSums(r, bottles, accept, model)
 	return j
 }
 
 // fitFlags are the tests of one bottle's fit.
-func fitFlags(r *unmix.Resolution, b Bottle, m Moran, limit func(string) float64) []eem.Flag {
+func fitFlags(r *unmix.Resolution, s *Spread, b Bottle, m Moran, limit func(string) float64) []eem.Flag {
 	fit := r.Fits[b.Row]
 	var out []eem.Flag
 	add := func(code string, sev eem.Severity, v, lim float64, msg string) {
@@ -89,11 +90,21 @@ func fitFlags(r *unmix.Resolution, b Bottle, m Moran, limit func(string) float64
 	structured := m.Z > limit("structure")
 	if lim := limit("unexplained"); structured && fit.Explained < 100*lim {
 		add("unexplained", eem.Doubt, fit.Explained/100, lim,
-			fmt.Sprintf("the model explains %.1f %% of the signal; the residual is largest at ex %g / em %g nm: something in this bottle is not in the model", fit.Explained, fit.HotEx, fit.HotEm))
+			fmt.Sprintf("the model explains %.1f %% of the signal; the residual is largest at ex %g / em %g nm: something in this bottle is not in the model (%s)", fit.Explained, fit.HotEx, fit.HotEm, s.residual()))
 	} else if structured {
-		add("structure", eem.Remark, m.Z, limit("structure"), fmt.Sprintf("the residual is not noise alone; it is largest at ex %g / em %g nm", fit.HotEx, fit.HotEm))
+		add("structure", eem.Remark, m.Z, limit("structure"), "the residual is not noise alone: "+s.residual())
 	}
 	return out
+}
+
+// residual tells in words how the residual compares with the noise, and which
+// yardstick that was.
+func (s *Spread) residual() string {
+	text := s.Hot.String()
+	if s.ChiSquare == s.ChiSquare {
+		text += fmt.Sprintf("; its variance is %s times that of the noise model, runs along emission Z %s", digits(s.ChiSquare, 3), digits(s.Runs, 2))
+	}
+	return text
 }
 
 // contribution judges component f of bottle b.

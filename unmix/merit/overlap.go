@@ -2,8 +2,11 @@ package merit
 
 import (
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/mat"
+
+	"tarnlight/unmix"
 )
 
 // Overlap says how well one column of a mixing model stands out of the others.
@@ -92,10 +95,29 @@ func cosines(v [][]float64) []float64 {
 	return out
 }
 
-// Alike is a pair of components that a bottle's cells cannot tell apart.
+// maxVIF is the variance inflation beyond which two components are not reported
+// apart (Belsley, Kuh & Welsch 1980; from memory).
+const maxVIF = 10
+
+// Alike is a pair of components that cells cannot tell apart.
 type Alike struct {
 	F, H        int
 	Correlation float64 // of their estimates
+}
+
+// Pairs lists the components of a set that cannot be told apart and whose amounts
+// have one unit: estimates correlated as those of two with a variance inflation
+// above 10. Only their sum is sure.
+func Pairs(set *unmix.Set) []Alike {
+	a, cells := set.Matrix()
+	n := set.Len()
+	gram := make([]float64, n*n)
+	for l := range cells {
+		addOuter(gram, a[l*n:(l+1)*n], 1)
+	}
+	return slices.DeleteFunc(alike(gram, n, maxVIF), func(p Alike) bool {
+		return set.Components[p.F].AmountUnit != set.Components[p.H].AmountUnit
+	})
 }
 
 // alike lists pairs whose estimates are correlated as those of two components with

@@ -30,6 +30,10 @@ type Sources struct {
 	Stock        float64
 	StockMissing bool
 
+	// Limits are the laboratory's own, by component; they replace the computed ones.
+	// What is NaN among them stays computed.
+	Limits map[string]Limits
+
 	Seed uint64 // of the Monte Carlo draws
 }
 
@@ -58,6 +62,13 @@ type Term struct {
 	Source string
 }
 
+// Sum is how sure the sum of a pair of components is.
+type Sum struct {
+	Alike
+	Value, U, Lower, Upper            float64
+	Critical, Detection, Quantifiable float64
+}
+
 // Spread is how sure the contributions of one bottle are, F values each, in the
 // components' units; NaN where the bottle was not usable.
 type Spread struct {
@@ -66,6 +77,9 @@ type Spread struct {
 	Critical, Detection, Quantifiable []float64
 	Cov                               []float64 // F × F covariance of the contributions above zero
 	Terms                             []Term    // largest first for the first component; not given ones last
+	Sums                              []Sum     // of the pairs that cannot be told apart
+	Hot                               Hot       // where the residual stands out most
+	Runs                              float64   // Z of the runs of signs along emission: below 0, neighbours are alike
 	NoiseRMS                          float64   // what noise alone would leave, intensity
 	ChiSquare                         float64   // Σ(residual²/variance) over the degrees of freedom: 1 is noise alone
 }
