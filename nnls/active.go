@@ -1,6 +1,10 @@
 package nnls
 
-import "math"
+import (
+	"math"
+
+	"gonum.org/v1/gonum/floats"
+)
 
 // active is the active-set method of Lawson and Hanson (1974, ch. 23) for
 // min ‖t·x − c‖, x ≥ 0, with t of k rows and n columns. It keeps t and c
@@ -168,7 +172,7 @@ func (a *active) entering() int {
 		if tail <= a.negligible(j) {
 			continue // depends on the free columns: its dual is zero
 		}
-		w := dot(a.column(j)[p:], a.c[p:])
+		w := floats.Dot(a.column(j)[p:], a.c[p:])
 		// The rounding error of w: of the column's tail times c, of the
 		// column times c's tail.
 		if w <= 8*eps*(tail*a.normB+a.norm[j]*rest) {
@@ -211,7 +215,7 @@ func (a *active) add(j int) {
 }
 
 func reflect(u, v []float64, scale float64) {
-	f := dot(v, u) / scale
+	f := floats.Dot(v, u) / scale
 	for i, x := range v {
 		u[i] += f * x
 	}

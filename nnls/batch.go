@@ -99,7 +99,7 @@ func newBatchRun(p *Batch, dst, b *mat.Dense, missing []bool) *batchRun {
 	r := &batchRun{
 		Batch: p, dst: dst, b: b, missing: missing,
 		results: make([]Result, samples), errs: make([]error, samples),
-		c: make([]float64, held*p.f.stride), bb: make([]float64, held),
+		c: make([]float64, held*p.f.k), bb: make([]float64, held),
 		eb: make([]int, held), gone: make([]string, held),
 	}
 	passive := make([]bool, samples*p.f.n)

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 
+	"gonum.org/v1/gonum/floats"
 	"gonum.org/v1/gonum/mat"
 )
 
@@ -115,7 +116,7 @@ func (a *active) spread(ea []int, eb, ew int) *Spread {
 			continue
 		}
 		p := len(a.order)
-		w := dot(a.column(j)[p:], a.c[p:])
+		w := floats.Dot(a.column(j)[p:], a.c[p:])
 		out.Free[j] = math.Ldexp(w/(tail*tail), eb-ea[j])
 		out.U[j] = unit(j) / tail
 	}

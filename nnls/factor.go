@@ -13,8 +13,7 @@ type factor struct {
 	a       panels    // m×n
 	ea      []int     // column j of a is W^½·a_j·2^−ea[j]
 	ew      int       // half was scaled by 2^−ew
-	q       panels    // m×stride
-	stride  int       // k rounded up to even; the columns of q from k on are zero
+	q       panels    // m×k
 	tri     triangle
 }
 
@@ -25,7 +24,7 @@ func newFactor(p *problem) *factor {
 	k := tri.k
 	f := &factor{
 		m: p.m, n: p.n, k: k, rows: p.rows, half: p.half,
-		a: newPanels(p.a, p.n), ea: p.ea, ew: p.ew, stride: padded(k), tri: tri,
+		a: newPanels(p.a), ea: p.ea, ew: p.ew, tri: tri,
 	}
 	if k == 0 {
 		return f
@@ -38,7 +37,7 @@ func newFactor(p *problem) *factor {
 	var q mat.Dense
 	qr.Cols = k
 	q.SetRawMatrix(qr)
-	f.q = newPanels(&q, f.stride)
+	f.q = newPanels(&q)
 	return f
 }
 

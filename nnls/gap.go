@@ -4,6 +4,8 @@ import (
 	"encoding/binary"
 	"math"
 	"math/bits"
+
+	"gonum.org/v1/gonum/floats"
 )
 
 // worstGap is the least share of its information that a direction may keep when
@@ -21,7 +23,7 @@ const worstGap = 1e-6
 type reduced struct {
 	tri  triangle
 	l    []float64 // k×k by rows, lower
-	h    []float64 // k × stride
+	h    []float64 // k×k by rows, upper
 	q    panel     // gathered rows of Q, up to two blocks
 	rows []int32   // of a block
 }
@@ -30,8 +32,8 @@ func newReduced(f *factor) *reduced {
 	return &reduced{
 		tri:  newTriangle(f.k, f.n, f.tri.order),
 		l:    make([]float64, f.k*f.k),
-		h:    make([]float64, f.k*f.stride),
-		q:    panel{make([]float64, 2*block*f.stride), 2 * block},
+		h:    make([]float64, f.k*f.k),
+		q:    panel{make([]float64, 2*block*f.k), 2 * block},
 		rows: make([]int32, 0, block),
 	}
 }
@@ -40,7 +42,7 @@ func newReduced(f *factor) *reduced {
 // and reports whether H is fit for it.
 func (d *reduced) reduce(f *factor, gone []byte, missing int) bool {
 	d.gram(f, gone, 2*missing <= f.m)
-	if !d.cholesky(f.k, f.stride) {
+	if !d.cholesky(f.k) {
 		return false
 	}
 	d.tri.err, d.tri.loss = f.tri.err, d.inverseNorm(f.k)
@@ -87,7 +89,7 @@ func (d *reduced) gram(f *factor, gone []byte, fromMissing bool) {
 			d.h[i] = -d.h[i]
 		}
 		for i := range f.k {
-			d.h[i*f.stride+i]++
+			d.h[i*f.k+i]++
 		}
 	}
 }
@@ -110,21 +112,21 @@ func (d *reduced) list(gone []byte, at, rows int, missing bool) {
 	}
 }
 
-// addGram adds the products of the gathered columns: of each with those from its
-// own pair on.
+// addGram adds the products of the gathered columns.
 func (d *reduced) addGram(f *factor, count int) {
-	for c := range f.k {
-		first := c &^ 1
-		project(d.h[c*f.stride+first:(c+1)*f.stride], d.q.column(c, count), d.q.from(first))
+	for j := range f.k {
+		for i := j; i < f.k; i++ {
+			d.h[j*f.k+i] += floats.Dot(d.q.column(j, count), d.q.column(i, count))
+		}
 	}
 }
 
-func (d *reduced) cholesky(k, s int) bool {
+func (d *reduced) cholesky(k int) bool {
 	for i := range k {
 		li := d.l[i*k : i*k+k]
 		for j := range i + 1 {
 			lj := d.l[j*k : j*k+k]
-			v := d.h[j*s+i]
+			v := d.h[j*k+i]
 			for l := range j {
 				v -= li[l] * lj[l]
 			}

@@ -1,29 +1,23 @@
 package nnls
 
-import "testing"
+import (
+	"fmt"
+	"testing"
+
+	"gonum.org/v1/gonum/mat"
+)
 
 func BenchmarkProject(b *testing.B) {
 	for _, k := range []int{2, 4, 6, 8} {
-		v := make([]float64, 4756)
-		q := make([]float64, 4756*k)
-		c := make([]float64, k)
-		for i := range v {
-			v[i] = float64(i)
-		}
-		b.Run(string(rune('0'+k)), func(b *testing.B) {
+		b.Run(fmt.Sprint(k), func(b *testing.B) {
+			const m = 4756
+			v, c, q := make([]float64, m), make([]float64, k), newPanels(mat.NewDense(m, k, nil))
 			for b.Loop() {
-				for at := 0; at < len(v); at += block {
-					e := min(at+block, len(v))
-					project(c, v[at:e], panel{q[at*k : e*k], e - at})
+				for at := 0; at < m; at += block {
+					project(c, v[at:min(at+block, m)], q.at(at))
 				}
 			}
-			b.ReportMetric(float64(2*4756*k)*float64(b.N)/b.Elapsed().Seconds()/1e9, "GF/s")
+			b.ReportMetric(float64(2*m*k)*float64(b.N)/b.Elapsed().Seconds()/1e9, "GF/s")
 		})
 	}
-	b.Run("squares", func(b *testing.B) {
-		v := make([]float64, 4756)
-		for b.Loop() {
-			sumSquares(v)
-		}
-	})
 }

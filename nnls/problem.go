@@ -214,5 +214,3 @@ func (p *problem) certify(y []float64) (norm float64, w []float64, v float64) {
 }
 
 func finite(v float64) bool { return v-v == 0 }
-
-func norm2(v []float64) float64 { return blas64.Nrm2(blas64.Vector{N: len(v), Inc: 1, Data: v}) }

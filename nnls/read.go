@@ -11,7 +11,7 @@ const (
 // read projects sample i: c, ‖b‖² and the missing rows.
 func (r *batchRun) read(w *batchWorker, i int) {
 	at := i - r.from
-	c := r.c[at*r.f.stride : (at+1)*r.f.stride]
+	c := r.c[at*r.f.k : (at+1)*r.f.k]
 	b, missing := r.b.RawRowView(i), r.missingRow(i)
 	r.eb[at] = 0
 	bb, gaps := w.project(r.f, c, b, missing)

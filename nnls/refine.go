@@ -33,7 +33,7 @@ func (a *active) seminormal(g []float64) (d []float64, gain float64) {
 	u := a.s
 	for q, j := range a.order {
 		col := a.column(j)
-		u[q] = (g[j] - dot(col[:q], u)) / col[q]
+		u[q] = (g[j] - floats.Dot(col[:q], u[:q])) / col[q]
 		gain += u[q] * u[q]
 	}
 	clear(a.d)
@@ -89,7 +89,7 @@ func (p *problem) refine(act *active) (norm, v float64) {
 func (w *batchWorker) residual(t *triangle, y []float64) {
 	t.subtract(w.z, y)
 	for j := range w.dual {
-		w.dual[j] = dot(t.column(j), w.z)
+		w.dual[j] = floats.Dot(t.column(j), w.z)
 	}
 }
 
@@ -113,7 +113,7 @@ func (w *batchWorker) refine(f *factor, t *triangle, b []float64, normB float64,
 			clear(w.z)
 			t.subtract(w.z, d)
 			for j := range w.dual {
-				w.dual[j] += dot(t.column(j), w.z)
+				w.dual[j] += floats.Dot(t.column(j), w.z)
 			}
 			if v2 := violation(w.act.x, w.dual, t.norm, normB); better(v2, square-gain, v, square) {
 				return square - gain, v2
@@ -136,7 +136,7 @@ func (w *batchWorker) refine(f *factor, t *triangle, b []float64, normB float64,
 func (w *batchWorker) certify(f *factor, t *triangle, b []float64, normB float64, gone []byte) (square, v float64) {
 	square = w.projectResidual(f, b, w.act.x, gone)
 	for j := range w.dual {
-		w.dual[j] = dot(f.tri.column(j), w.c[:f.k])
+		w.dual[j] = floats.Dot(f.tri.column(j), w.c[:f.k])
 	}
 	return square, violation(w.act.x, w.dual, t.norm, normB)
 }

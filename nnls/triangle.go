@@ -51,12 +51,3 @@ func (t *triangle) subtract(z, y []float64) {
 		}
 	}
 }
-
-func dot(x, y []float64) float64 {
-	sum := 0.0
-	y = y[:len(x)]
-	for i, v := range x {
-		sum += v * y[i]
-	}
-	return sum
-}

@@ -3,6 +3,8 @@ package nnls
 import (
 	"math"
 	"math/bits"
+
+	"gonum.org/v1/gonum/floats"
 )
 
 // batchWorker is the memory of one goroutine.
@@ -21,9 +23,9 @@ type batchWorker struct {
 func newBatchWorker(f *factor) *batchWorker {
 	return &batchWorker{
 		act: newActive(f.k, f.n),
-		v:   make([]float64, block), part: make([]float64, f.stride),
+		v:   make([]float64, block), part: make([]float64, f.k),
 		z: make([]float64, f.k), dual: make([]float64, f.n),
-		c: make([]float64, f.stride), before: make([]float64, f.n),
+		c: make([]float64, f.k), before: make([]float64, f.n),
 		gone: make([]byte, (f.m+63)/64*8),
 	}
 }
@@ -43,7 +45,7 @@ func (r *batchRun) small(w *batchWorker, samples []int, do func(*batchWorker, *f
 	f, gone := r.f, []byte(r.gone[samples[0]-r.from])
 	if len(gone) == 0 {
 		for _, i := range samples {
-			copy(w.z, r.c[(i-r.from)*f.stride:])
+			copy(w.z, r.c[(i-r.from)*f.k:])
 			do(w, f, &f.tri, sample{i, f.m, nil})
 		}
 		return
@@ -58,7 +60,7 @@ func (r *batchRun) small(w *batchWorker, samples []int, do func(*batchWorker, *f
 	if w.reduced.reduce(f, gone, missing) {
 		var failed []int
 		for _, i := range samples {
-			copy(w.z, r.c[(i-r.from)*f.stride:])
+			copy(w.z, r.c[(i-r.from)*f.k:])
 			w.reduced.forward(w.z)
 			if !do(w, f, &w.reduced.tri, sample{i, f.m - missing, gone}) {
 				failed = append(failed, i)
@@ -70,7 +72,7 @@ func (r *batchRun) small(w *batchWorker, samples []int, do func(*batchWorker, *f
 	}
 	f = f.without(gone)
 	w = newBatchWorker(f)
-	c := make([]float64, f.stride)
+	c := make([]float64, f.k)
 	for _, i := range samples {
 		w.project(f, c, r.scaled(w, i), nil)
 		copy(w.z, c)
@@ -99,7 +101,7 @@ func (r *batchRun) solve(w *batchWorker, f *factor, t *triangle, s sample) bool 
 	}
 	good := res.Violation <= mostViolation
 	if normB > 0 { // what the evaluation cannot show
-		res.Violation += digits * dot(t.norm, w.act.x) / normB
+		res.Violation += digits * floats.Dot(t.norm, w.act.x) / normB
 	}
 	copy(res.Passive, w.act.free)
 	if r.errs[s.i] = nil; res.Status == IterationLimit {
