@@ -30,7 +30,7 @@ func (r *reader) mainBlocks() error {
 		longest = max(longest, b.rows)
 	}
 	var gap []textLine // above the next main block
-	r.main = all[:0] // never ahead of i
+	r.main = all[:0]   // never ahead of i
 	for i, b := range all {
 		if i > 0 && len(b.gap) == 0 && all[i-1].rows == 1 {
 			b.above = r.rowCells(&all[i-1], 0)
