@@ -344,7 +344,8 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 
 // merit gathers what the judgement of a bottle needs.
 func (j *job) merit(b *prepare.Bottle) merit.Bottle {
-	m := merit.Bottle{ID: b.Row.ID, Batch: b.Batch, Row: -1, Unlike: b.Row.Kind == survey.Blank || b.Row.Kind == survey.FieldBlank}
+	m := merit.Bottle{ID: b.Row.ID, Batch: b.Batch, Row: -1, Unlike: b.Row.Kind == survey.Blank || b.Row.Kind == survey.FieldBlank,
+		Standard: b.Row.Kind == survey.Standard}
 	if i, ok := j.row[b]; ok {
 		m.Row = i
 	}

@@ -53,6 +53,7 @@ func (j *job) sampleTable() *report.Table {
 			at++
 		}
 		set("largest_inner_filter_factor", b.Largest)
+		set("linear_from_nm", b.LinearFrom)
 		if j.fit != nil {
 			if i := slices.Index(j.fit.IDs, b.Row.ID); i >= 0 && j.fit.Leverage != nil {
 				set("leverage", j.fit.Leverage[i])

@@ -290,3 +290,22 @@ func TestWorkers(t *testing.T) {
 		t.Errorf("bands found: %+v and %+v", set, b.Settings.Scatter)
 	}
 }
+
+// From which excitation on the water is thin enough is stated for every bottle; it
+// is a finding only where the inner filter is not corrected.
+func TestLinearRange(t *testing.T) {
+	brown := func(s *synth.Survey) {
+		b := find(s, "S002")
+		b.Liquid = synth.Liquid{Color: synth.Tail{At254: 0.1, Slope: 0.015}} // ln(10)·A = 0.05 at 254 + ln(4.6)/0.015 = 355.8 nm
+	}
+	for off, want := range map[string]int{"": 0, "[correct]\noff = [\"inner-filter\"]\n": 1} {
+		sv := variant(t, off, nil, brown)
+		b := find2(t, sv, "S002")
+		if b.LinearFrom != 360 {
+			t.Errorf("linear from %g nm, want 360", b.LinearFrom)
+		}
+		if got := said(sv)["S002 linear-range"]; got != want {
+			t.Errorf("%q: flagged %d times, want %d", off, got, want)
+		}
+	}
+}

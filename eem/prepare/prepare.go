@@ -43,16 +43,17 @@ type Input struct {
 
 // Bottle is one row of the sheet with what became of it.
 type Bottle struct {
-	Row      *survey.Row
-	Setting  *survey.Settings // with the row's setup merged in
-	Batch    string
-	EEM      *eem.EEM        // corrected, on the bottle's own grid; nil when it could not be read or is excluded
-	Absorb   *eem.Absorbance // of the liquid in the bottle, nil when none was given
-	Largest  float64         // largest inner-filter factor of a cell, NaN without correction
-	Files    []Input
-	Flags    []eem.Flag
-	Excluded bool // takes part in nothing
-	Rejected bool // no number of it is usable
+	Row        *survey.Row
+	Setting    *survey.Settings // with the row's setup merged in
+	Batch      string
+	EEM        *eem.EEM        // corrected, on the bottle's own grid; nil when it could not be read or is excluded
+	Absorb     *eem.Absorbance // of the liquid in the bottle, nil when none was given
+	Largest    float64         // largest inner-filter factor of a cell, NaN without correction
+	LinearFrom float64         // shortest excitation, nm, from which on ln(10)·A of the liquid scanned is within the linear range; NaN unknown or none
+	Files      []Input
+	Flags      []eem.Flag
+	Excluded   bool // takes part in nothing
+	Rejected   bool // no number of it is usable
 
 	// Causes are the errors that the bottle's cells share, on the survey's grid,
 	// and BlankSet names the mean of blanks that was subtracted (see
@@ -165,7 +166,7 @@ func (s *Survey) list() error {
 		if err != nil {
 			return fmt.Errorf("%s:%d: %w", s.Sheet.Path, row.Line, err)
 		}
-		b := &Bottle{Row: row, Setting: set, Batch: batchName(row), Excluded: row.Exclude != "", Largest: nan, area: nan, scale: nan}
+		b := &Bottle{Row: row, Setting: set, Batch: batchName(row), Excluded: row.Exclude != "", Largest: nan, LinearFrom: nan, area: nan, scale: nan}
 		if b.Excluded {
 			b.flag(s, eem.Note{Test: "excluded", Severity: eem.Remark, Msg: "excluded by the sheet: " + row.Exclude})
 		} else if row.ExcludeFromFit != "" {

@@ -181,15 +181,13 @@ func (b *Bottle) toInnerFilter(s *Survey, e *eem.EEM) *eem.EEM {
 		e = correct.Spectral(e, f.ex, f.em)
 	}
 	s.tell(b, correct.StepSpectral, e)
+	e = b.linearRange(s, e)
 	if !b.skips(stepInner) && set.Correct.InnerFilter != "none" && b.needsAbsorbance() {
 		limit := set.Correct.AbsorbanceLimit
 		var factor []float64
 		g := geometry(set.Correct)
-		if b.scanned != nil {
-			e = correct.LinearRange(e, b.scanned, 1, s.Limit("linear-range"))
-			if b.Row.Kind == survey.Standard {
-				e = correct.DropOverAbsorbing(e, b.scanned, g, limit)
-			}
+		if b.scanned != nil && b.Row.Kind == survey.Standard {
+			e = correct.DropOverAbsorbing(e, b.scanned, g, limit)
 		}
 		e, factor = correct.InnerFilter(e, b.scanned, g, limit)
 		b.Largest = largest(factor)

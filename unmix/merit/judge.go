@@ -17,6 +17,7 @@ type Bottle struct {
 	Rejects   []string // in words; any makes them not usable
 	Row       int      // of the resolution; −1 when the bottle is not in it
 	Unlike    bool     // a bottle that need not look like the model (a blank): no test of the residual
+	Standard  bool     // a standard: the highest one is not above itself
 }
 
 // Currie's factors for known standard deviation and 5 % errors of both kinds
@@ -130,7 +131,7 @@ func contribution(r *unmix.Resolution, spreads []Spread, b Bottle, f int, doubts
 	}
 	var flags []eem.Flag
 	c.Reasons = append(c.Reasons, doubts...)
-	if comp.Highest > 0 && c.Value > comp.Highest*(1+1e-9) {
+	if comp.Highest > 0 && !b.Standard && c.Value > comp.Highest*(1+1e-9) {
 		fl := accept(eem.Flag{ID: b.ID, Batch: b.Batch, Component: comp.Name, Method: r.Set.Method, Test: "above-standards", Severity: eem.Doubt,
 			Value: c.Value, Limit: comp.Highest, Msg: fmt.Sprintf("%s: %.4g %s is above the highest standard (%.4g)", comp.Name, c.Value, c.Unit, comp.Highest)})
 		flags = append(flags, fl)

@@ -125,6 +125,7 @@ var Schema = []File{
 		{"rejects", "", "number of rejects in flags.csv"},
 		{"leverage", "", "how much the bottle pulls the resolved model, 0 to 1; empty where it took no part"},
 		{"influence", "standard errors", "largest move of a loading when the bottle is left out"},
+		{"linear_from_nm", "nm", "shortest excitation from which on ln(10)·absorbance is 0.05 or less: there emission is proportional to concentration even without correction"},
 	}},
 	{"flags.csv", "what the checks found", []Column{
 		{"id", "", "the bottle; empty where the finding concerns a batch or the survey"},
