@@ -93,10 +93,11 @@ func (r *results) render(ctx context.Context, progress func(done, total int, wha
 // figures makes every figure that the results have numbers for.
 func (r *results) figures(p *pass) []*figure {
 	var all []*figure
-	for _, m := range r.methods() {
+	shown := append(r.methods(), "unexplained") // what is left over may have a spectrum of its own
+	for _, m := range shown {
 		all = append(all, r.figSpectra(m), r.figComponentMaps(m))
 	}
-	for _, m := range r.methods() {
+	for _, m := range shown {
 		all = append(all, r.figContributions(m, r.bySite()), r.figContributions(m, r.byDate()), r.figContributions(m, r.inOrder()))
 	}
 	for _, m := range r.methods() {
