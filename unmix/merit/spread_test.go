@@ -157,7 +157,7 @@ func TestPairs(t *testing.T) {
 // What is not there: over many bottles without b the interval holds 0, and b is
 // detected in 5 % of them; intervals near zero come from draws and start at 0.
 func TestAbsent(t *testing.T) {
-	const n = 2000
+	const n = 600
 	amounts := make([][]float64, n)
 	for i := range amounts {
 		amounts[i] = []float64{1, 0}
@@ -176,8 +176,8 @@ func TestAbsent(t *testing.T) {
 			holds++
 		}
 	}
-	// 5 % ± three standard errors of 0.49 %.
-	if share := float64(detected) / n; share < 0.035 || share > 0.065 {
+	// 5 % ± three standard errors of 0.9 %.
+	if share := float64(detected) / n; share < 0.023 || share > 0.077 {
 		t.Errorf("%.2f %% detected of what is not there", 100*share)
 	}
 	if share := float64(holds) / n; share < 0.965 {
