@@ -15,7 +15,7 @@ import (
 func (b *Bottle) lessBlank() (*eem.EEM, error) {
 	mean, err := b.blankMean()
 	if mean == nil || err != nil {
-		return b.EEM, err
+		return b.raw, err
 	}
 	return correct.Blank(b.raw, mean), nil
 }
@@ -46,9 +46,9 @@ func (b *Bottle) removeBlank(s *Survey, e *eem.EEM) *eem.EEM {
 // noBlank says why nothing was subtracted.
 func (b *Bottle) noBlank() string {
 	if b.Setting.Correct.Blank == "latest" {
-		return fmt.Sprintf("no usable blank of this setup was measured in the %g days before, so that none was subtracted; add one, or name one in the blanks column", b.Setting.Correct.BlankMaxAgeDays)
+		return fmt.Sprintf("no usable blank of this setup was measured in the %g days before, so that none was subtracted; add one, name one in the blanks column, or say in [scans] applied that the files come corrected", b.Setting.Correct.BlankMaxAgeDays)
 	}
-	return fmt.Sprintf("batch %s has no usable blank, so that none was subtracted; add one, or name one in the blanks column", b.Batch)
+	return fmt.Sprintf("batch %s has no usable blank, so that none was subtracted; add one, name one in the blanks column, or say in [scans] applied that the files come corrected", b.Batch)
 }
 
 // finish does the steps that need the batch: blank, temperature, scale, dilution,
@@ -59,7 +59,7 @@ func (b *Bottle) finish(s *Survey) {
 	}
 	e := b.removeBlank(s, b.EEM)
 	s.tell(b, correct.StepBlank, e)
-	e = b.withNoise(e)
+	e = b.byDilution(s, b.withNoise(e))
 	e = b.toReference(s, e)
 	s.tell(b, correct.StepTemperature, e)
 	e = b.scaleTo(s, e)

@@ -27,7 +27,7 @@ func (b *Bottle) blankMean() (*eem.EEM, error) {
 	}
 	es := make([]*eem.EEM, len(b.blanks))
 	for i, blank := range b.blanks {
-		es[i] = blank.raw.Regrid(b.EEM.Grid)
+		es[i] = blank.raw.Regrid(b.raw.Grid)
 	}
 	return correct.Mean(es)
 }

@@ -66,6 +66,7 @@ type Bottle struct {
 	guesses     []Guess
 	scanFiles   []Input  // the raw scans among Files
 	claims      []string // files that the scans cell names
+	twofold     *Bottle  // the same water at another dilution, which corrects the inner filter; nil without
 	told        int      // notes of EEM whose findings are flags already
 	area        float64  // Raman area of a blank, before the blank is removed; NaN unknown
 	scale       float64  // what the intensities were divided by; NaN when they stay as they are
@@ -124,6 +125,11 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 	if err := s.list(); err != nil {
 		return nil, err
 	}
+	for _, b := range s.Bottles {
+		if !b.Excluded {
+			b.twofold = s.sameWater(b)
+		}
+	}
 	files, err := s.resolve()
 	if err != nil {
 		return nil, err
@@ -139,6 +145,7 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 		return nil, err
 	}
 	s.setNoise()
+	s.pairDilutions()
 	if err := s.each(ctx, o, "correcting", func(i int) { s.Bottles[i].finish(s) }); err != nil {
 		return nil, err
 	}

@@ -182,7 +182,7 @@ func (b *Bottle) toInnerFilter(s *Survey, e *eem.EEM) *eem.EEM {
 	}
 	s.tell(b, correct.StepSpectral, e)
 	e = b.linearRange(s, e)
-	if !b.skips(stepInner) && set.Correct.InnerFilter != "none" && b.needsAbsorbance() {
+	if !b.skips(stepInner) && set.Correct.InnerFilter != "none" && b.needsAbsorbance() && b.twofold == nil {
 		limit := set.Correct.AbsorbanceLimit
 		var factor []float64
 		g := geometry(set.Correct)

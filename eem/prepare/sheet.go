@@ -140,7 +140,7 @@ func (s *Survey) unusedFiles() {
 	}
 	s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "unused-file", Severity: eem.Remark, Measure: true, Value: float64(len(left)),
 		File: filepath.ToSlash(filepath.Base(s.Sheet.Path)),
-		Msg:  fmt.Sprintf("%d raw files are used by no row (%s); add rows for them (tarnlight begin --add) or move them away", len(left), show)}), "", ""))
+		Msg:  fmt.Sprintf("%d raw files are used by no row (%s); add rows for them or move them away", len(left), show)}), "", ""))
 }
 
 // claimed lists the files that a row names, an excluded one too.
@@ -178,7 +178,7 @@ func (s *Survey) compareDilutions() {
 	limit := s.Limit("dilution-differs")
 	for _, b := range s.Bottles {
 		of := s.bottle(b.Row.ReplicateOf)
-		if of == nil || !b.Usable() || !of.Usable() || b.skips(stepDilution) || of.skips(stepDilution) || b.Row.Dilution == of.Row.Dilution {
+		if of == nil || !b.Usable() || !of.Usable() || b.skips(stepDilution) || of.skips(stepDilution) || b.Row.Dilution == of.Row.Dilution || b.twofold == of {
 			continue
 		}
 		r, ok := times(b.EEM, of.EEM.Regrid(b.EEM.Grid))
