@@ -20,6 +20,7 @@ type als struct {
 	col          []float64 // K: one column of c
 	ga, gk, gap  []float64
 	hs, qs       []float64          // normal equations of one mode
+	pair         []float64          // J + K: product of two columns, and its sums
 	h, q, inv    []float64          // one row's
 	lam          []float64          // F: ridge on the columns of the mode in work, and
 	lamDamped    []float64          // F: what is added to it on damped entries
@@ -40,7 +41,7 @@ func newALS(d *data, f int, s *Settings) *als {
 		kt: make([]float64, f*d.p), z: make([]float64, f*d.p), zc: make([]float64, f*d.p), m: make([]float64, d.i*f),
 		rk: make([]float64, n*f), coef: make([]float64, n*f), part: make([]float64, (d.i+r)*f), col: make([]float64, d.k),
 		ga: make([]float64, f*f), gk: make([]float64, f*f), gap: make([]float64, len(d.gapCell)*f*f),
-		hs: make([]float64, long*f*f), qs: make([]float64, long*f),
+		hs: make([]float64, long*f*f), qs: make([]float64, long*f), pair: make([]float64, d.j+d.k),
 		h: make([]float64, f*f), q: make([]float64, f), inv: make([]float64, f),
 		lam: make([]float64, f), lamDamped: make([]float64, f),
 	}
@@ -77,33 +78,32 @@ func (s *als) updateA(sweeps int) {
 	f := s.f
 	s.ridgeA()
 	s.loss = s.x2
-	gi := make([]float64, f*f)
-	copy(gi, s.gk)
-	for _, b := range s.bases {
-		for _, i := range b.samples {
-			s.updateScores(i, s.gk, sweeps)
+	if s.free {
+		for _, i := range s.complete {
+			s.solveRow(s.a[i*f:(i+1)*f], s.gk, s.m[i*f:(i+1)*f], s.lam, nil, 0, sweeps)
+			s.addLoss(i, s.gk)
 		}
+	} else {
+		s.sweepTogether(s.complete, sweeps)
 	}
+	g := make([]float64, f*f)
 	for _, i := range s.raw {
-		g := s.gk
 		if len(s.gaps[i]) > 0 {
-			s.gramTo(gi, i)
-			g = gi
+			s.gramTo(g, i)
+			s.solveRow(s.a[i*f:(i+1)*f], g, s.m[i*f:(i+1)*f], s.lam, nil, 0, sweeps)
+			s.addLoss(i, g)
 		}
-		s.updateScores(i, g, sweeps)
 	}
 }
 
-// updateScores updates row i of a, whose Gram matrix is g, and adds its part of
-// the loss.
-func (s *als) updateScores(i int, g []float64, sweeps int) {
+// addLoss adds the part of the loss of sample i, whose Gram matrix is g.
+func (s *als) addLoss(i int, g []float64) {
 	f := s.f
 	a, m := s.a[i*f:(i+1)*f], s.m[i*f:(i+1)*f]
-	s.solveRow(a, g, m, s.lam, nil, 0, sweeps)
 	for x := range f {
 		v := -2 * m[x]
-		for y := range f {
-			v += g[x*f+y] * a[y]
+		for y, gv := range g[x*f : (x+1)*f] {
+			v += gv * a[y]
 		}
 		s.loss += a[x] * (v + s.lam[x]*a[x])
 	}

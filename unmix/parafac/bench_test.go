@@ -51,6 +51,7 @@ func BenchmarkStart(b *testing.B) {
 		}
 		b.Run(fmt.Sprint(n), func(b *testing.B) {
 			b.ReportAllocs()
+			defer reportCPU(b)()
 			var it, k int
 			for b.Loop() {
 				set.Seed++
@@ -72,6 +73,7 @@ func BenchmarkFit(b *testing.B) {
 		c := bench(n)
 		b.Run(fmt.Sprint(n), func(b *testing.B) {
 			b.ReportAllocs()
+			defer reportCPU(b)()
 			for b.Loop() {
 				if _, err := Fit(context.Background(), c, 5, nil); err != nil {
 					b.Fatal(err)
@@ -88,6 +90,7 @@ func BenchmarkChoose(b *testing.B) {
 		c := bench(n)
 		b.Run(fmt.Sprint(n), func(b *testing.B) {
 			b.ReportAllocs()
+			defer reportCPU(b)()
 			for b.Loop() {
 				if _, err := Choose(context.Background(), c, 2, 7, nil, nil); err != nil {
 					b.Fatal(err)

@@ -261,7 +261,7 @@ func TestCheck5fLossThreeWays(t *testing.T) {
 		s.products()
 		s.loss = s.x2
 		for i := range s.i {
-			s.updateScores(i, s.gk, 0)
+			s.addLoss(i, s.gk)
 		}
 		near(t, name, s.loss, want.Loss, 1e-10*want.Loss)
 		var direct float64

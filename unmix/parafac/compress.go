@@ -114,7 +114,7 @@ func (p *problem) stacked(bases []*basis, raw []int) *data {
 		d.rows = append(d.rows, p.x[i])
 		d.x2 += sumSquares(p.x[i])
 	}
-	d.listGaps()
+	d.finish()
 	return d
 }
 

@@ -12,6 +12,9 @@ type data struct {
 	rows  [][]float64 // (r + len(raw)) × P
 	x2    float64     // sum of squares of the samples
 
+	w2       []float64 // J × K: squared weights, zero where there is no cell
+	complete []int     // samples whose cells are all there: all but raw ones with gaps
+
 	gapCell []int32   // cells that some raw sample lacks
 	gapOf   [][]int32 // which rows lack it
 }
@@ -22,8 +25,25 @@ func (p *problem) whole() *data {
 	for i := range d.raw {
 		d.raw[i] = i
 	}
-	d.listGaps()
+	d.finish()
 	return d
+}
+
+// finish sets what follows from the rest.
+func (d *data) finish() {
+	d.w2 = make([]float64, d.j*d.k)
+	for q, w := range d.w {
+		d.w2[int(d.cj[q])*d.k+int(d.ck[q])] = w * w
+	}
+	for _, b := range d.bases {
+		d.complete = append(d.complete, b.samples...)
+	}
+	for _, i := range d.raw {
+		if len(d.gaps[i]) == 0 {
+			d.complete = append(d.complete, i)
+		}
+	}
+	d.listGaps()
 }
 
 func (d *data) listGaps() {

@@ -12,10 +12,12 @@ func (s *als) exactScores() {
 	g := make([]float64, f*f)
 	for i := range s.i {
 		s.gramTo(g, i)
-		if !s.free {
+		if s.free {
+			s.solveFree(s.a[i*f:(i+1)*f], g, s.m[i*f:(i+1)*f], s.lam, nil, 0)
+		} else {
 			solveNNLS(s.a[i*f:(i+1)*f], g, s.m[i*f:(i+1)*f], s.lam)
 		}
-		s.updateScores(i, g, 0)
+		s.addLoss(i, g)
 	}
 }
 

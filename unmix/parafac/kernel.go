@@ -1,11 +1,27 @@
 package parafac
 
-import "math"
+import (
+	"math"
+	"sync"
 
-// Own scalar kernels: the products of a fit are skinny (F columns), where they
-// run two to three times as fast as a general matrix product.
+	"gonum.org/v1/gonum/blas"
+	"gonum.org/v1/gonum/blas/gonum"
+)
+
+// The products of a fit are skinny, F columns against thousands of rows. They go
+// through gonum's matrix–vector kernel on panels that stay in the cache, which
+// runs at about twice the speed of scalar loops, and three to six times that of a
+// general matrix product; it is called as such because the calls are too small
+// for a library behind blas64 to use its threads on.
+var kernel gonum.Implementation
+
+// longVector is the length from which a call of the library pays.
+const longVector = 48
 
 func dot(x, y []float64) float64 {
+	if len(x) >= longVector {
+		return kernel.Ddot(len(x), x, 1, y, 1)
+	}
 	var s0, s1, s2, s3 float64
 	y = y[:len(x)]
 	i := 0
@@ -27,98 +43,87 @@ func sumSquares(x []float64) float64 { return dot(x, x) }
 func norm(x []float64) float64 { return math.Sqrt(dot(x, x)) }
 
 func axpy(a float64, x, y []float64) {
+	if len(x) >= longVector {
+		kernel.Daxpy(len(x), a, x, 1, y, 1)
+		return
+	}
 	y = y[:len(x)]
 	for i, v := range x {
 		y[i] += a * v
 	}
 }
 
-// block is how many cells of a row are worked on at a time, so that all the rows
-// of the smaller operand stay in the cache.
-const block = 512
+// A panel is panelRows rows by panelCells cells of the larger operand.
+const (
+	panelRows  = 16
+	panelCells = 256
+)
+
+type panel [panelRows * panelCells]float64
+
+var panels = sync.Pool{New: func() any { return new(panel) }}
+
+// eachPanel calls do with every panel of x: rows that are stride apart in p, its
+// first row and cell and its extent. Rows that are not neighbours in memory are
+// copied, which costs a tenth of a product.
+func eachPanel(x [][]float64, do func(p []float64, stride, row, rows, cell, cells int)) {
+	if len(x) == 0 {
+		return
+	}
+	copied := panels.Get().(*panel)
+	defer panels.Put(copied)
+	n := len(x[0])
+	for row := 0; row < len(x); row += panelRows {
+		now := x[row:min(row+panelRows, len(x))]
+		all := joinedRows(now)
+		for cell := 0; cell < n; cell += panelCells {
+			cells := min(panelCells, n-cell)
+			if all != nil {
+				do(all[cell:], n, row, len(now), cell, cells)
+				continue
+			}
+			for r, v := range now {
+				copy(copied[r*panelCells:], v[cell:cell+cells])
+			}
+			do(copied[:], panelCells, row, len(now), cell, cells)
+		}
+	}
+}
+
+// joinedRows returns rows that follow one another in memory as one, else nil.
+func joinedRows(rows [][]float64) []float64 {
+	n := len(rows[0])
+	if cap(rows[0]) < len(rows)*n {
+		return nil
+	}
+	all := rows[0][:len(rows)*n]
+	for r, v := range rows {
+		if len(v) != n || &v[0] != &all[r*n] {
+			return nil
+		}
+	}
+	return all
+}
 
 // rowsTimesTo writes dst = X·KT', rows × f, for the rows of X and KT f × n.
 func rowsTimesTo(dst []float64, x [][]float64, kt []float64, f int) {
 	clear(dst[:len(x)*f])
-	if len(x) == 0 {
-		return
-	}
-	n := len(x[0])
-	for lo := 0; lo < n; lo += block {
-		hi := min(lo+block, n)
-		for r, xr := range x {
-			d, xr := dst[r*f:(r+1)*f], xr[lo:hi]
-			g := 0
-			for ; g+5 <= f; g += 5 {
-				dot5(d[g:g+5], xr, kt[g*n+lo:], n)
-			}
-			for ; g+3 <= f; g += 3 {
-				dot3(d[g:g+3], xr, kt[g*n+lo:], n)
-			}
-			for ; g < f; g++ {
-				d[g] += dot(xr, kt[g*n+lo:g*n+hi])
-			}
+	eachPanel(x, func(p []float64, stride, row, rows, cell, cells int) {
+		n := len(x[0])
+		for g := range f {
+			kernel.Dgemv(blas.NoTrans, rows, cells, 1, p, stride, kt[g*n+cell:], 1, 1, dst[row*f+g:], f)
 		}
-	}
+	})
 }
 
-// dot5 and dot3 add the products of x with 5 or 3 rows of k, stride n.
-func dot5(d, x, k []float64, n int) {
-	m := len(x)
-	k0, k1, k2, k3, k4 := k[:m], k[n:][:m], k[2*n:][:m], k[3*n:][:m], k[4*n:][:m]
-	var s0, s1, s2, s3, s4 float64
-	for i, v := range x {
-		s0 += v * k0[i]
-		s1 += v * k1[i]
-		s2 += v * k2[i]
-		s3 += v * k3[i]
-		s4 += v * k4[i]
-	}
-	d[0], d[1], d[2], d[3], d[4] = d[0]+s0, d[1]+s1, d[2]+s2, d[3]+s3, d[4]+s4
-}
-
-func dot3(d, x, k []float64, n int) {
-	m := len(x)
-	k0, k1, k2 := k[:m], k[n:][:m], k[2*n:][:m]
-	var s0, s1, s2 float64
-	for i, v := range x {
-		s0 += v * k0[i]
-		s1 += v * k1[i]
-		s2 += v * k2[i]
-	}
-	d[0], d[1], d[2] = d[0]+s0, d[1]+s1, d[2]+s2
-}
-
-// addTransposed adds A'·X to dst, f × n, for A rows × f and the rows of X, four
-// rows at a time.
+// addTransposed adds A'·X to dst, f × n, for A rows × f and the rows of X.
 func addTransposed(dst, a []float64, x [][]float64, f int) {
-	if len(x) == 0 {
-		return
-	}
-	n := len(x[0])
-	for lo := 0; lo < n; lo += block {
-		hi := min(lo+block, n)
-		r := 0
-		for ; r+4 <= len(x); r += 4 {
-			for g := range f {
-				add4(dst[g*n+lo:g*n+hi], x[r][lo:], x[r+1][lo:], x[r+2][lo:], x[r+3][lo:],
-					a[r*f+g], a[(r+1)*f+g], a[(r+2)*f+g], a[(r+3)*f+g])
-			}
+	eachPanel(x, func(p []float64, stride, row, rows, cell, cells int) {
+		n := len(x[0])
+		for g := range f {
+			kernel.Dgemv(blas.Trans, rows, cells, 1, p, stride, a[row*f+g:], f, 1, dst[g*n+cell:], 1)
 		}
-		for ; r < len(x); r++ {
-			for g := range f {
-				axpy(a[r*f+g], x[r][lo:hi], dst[g*n+lo:g*n+hi])
-			}
-		}
-	}
-}
-
-func add4(d, x0, x1, x2, x3 []float64, a0, a1, a2, a3 float64) {
-	m := len(d)
-	x0, x1, x2, x3 = x0[:m], x1[:m], x2[:m], x3[:m]
-	for i := range d {
-		d[i] += (a0*x0[i] + a1*x1[i]) + (a2*x2[i] + a3*x3[i])
-	}
+	})
 }
 
 // gramTo writes the f × f Gram matrix of the columns of a, rows × f.

@@ -222,7 +222,7 @@ func (p *problem) fill(c *eem.Cube, s *Settings) error {
 	lo, hi := math.Inf(1), math.Inf(-1)
 	for r, i := range p.sample {
 		row, why := c.Sample(i), c.SampleWhy(i)
-		x := all[r*p.p : (r+1)*p.p : (r+1)*p.p]
+		x := all[r*p.p : (r+1)*p.p] // not cut off: neighbours are read as one (joinedRows)
 		p.x = append(p.x, x)
 		for q := range x {
 			at := int(p.cj[q])*p.k + int(p.ck[q])
