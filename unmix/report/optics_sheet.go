@@ -9,9 +9,12 @@ func (r *results) opticsSheet(b *book) {
 	t := r.table["samples.csv"]
 	f, _ := FindFile("samples.csv")
 	var cols []Column
-	for _, c := range f.Columns[slices.IndexFunc(f.Columns, func(c Column) bool { return c.Name == "suva254" }):] {
+	at := func(name string) int {
+		return slices.IndexFunc(f.Columns, func(c Column) bool { return c.Name == name })
+	}
+	for _, c := range f.Columns[at("suva254") : at("peak_c")+1] {
 		used := slices.ContainsFunc(r.bottles, func(x *bottle) bool { return finite(t.Float(x.row, t.Own(c.Name))) })
-		if used && !slices.Contains([]string{"notes", "doubts", "rejects"}, c.Name) {
+		if used {
 			cols = append(cols, c)
 		}
 	}

@@ -29,7 +29,7 @@ func (r *results) components(method string) []*component {
 	var out []*component
 	byName := map[string]*component{}
 	for i := range t.Rows {
-		if t.Text(i, meth) != method || !t.Bool(i, chosen) {
+		if t.Text(i, meth) != method || (!t.Bool(i, chosen) && method != "unexplained") {
 			continue
 		}
 		c := byName[t.Text(i, name)]

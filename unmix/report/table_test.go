@@ -69,11 +69,11 @@ func TestSchemaOrder(t *testing.T) {
 }
 
 func TestSamplesKeepTheSheetsColumns(t *testing.T) {
-	x := NewSamples([]string{"id", "kind", "notes", "bix", "bix_found"})
-	if got := x.Columns[:5]; !reflect.DeepEqual(got, []string{"id", "kind", "notes", "bix", "bix_found"}) {
+	x := NewSamples([]string{"id", "kind", "notes", "peak_t", "peak_t_found"})
+	if got := x.Columns[:5]; !reflect.DeepEqual(got, []string{"id", "kind", "notes", "peak_t", "peak_t_found"}) {
 		t.Errorf("the sheet's columns became %v", got)
 	}
-	for name, want := range map[string]string{"notes": "notes_found", "bix": "bix_found_found", "doubts": "doubts"} {
+	for name, want := range map[string]string{"notes": "notes_found", "peak_t": "peak_t_found_found", "doubts": "doubts"} {
 		if got := x.Columns[x.Own(name)]; got != want {
 			t.Errorf("own column %s is %s, want %s", name, got, want)
 		}
