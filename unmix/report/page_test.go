@@ -33,7 +33,7 @@ func newBrowser(t testing.TB, width, height int64) *browser {
 	path := outside(t, "chromium", "chromium-browser", "google-chrome")
 	opts := append(chromedp.DefaultExecAllocatorOptions[:], chromedp.ExecPath(path), chromedp.NoSandbox, chromedp.DisableGPU,
 		chromedp.UserDataDir(t.TempDir()), chromedp.Flag("disable-quic", true), chromedp.Flag("disable-component-update", true))
-	ctx, stop := context.WithTimeout(context.Background(), 90*time.Second)
+	ctx, stop := context.WithTimeout(context.Background(), 180*time.Second)
 	t.Cleanup(stop)
 	ctx, stop2 := chromedp.NewExecAllocator(ctx, opts...)
 	t.Cleanup(stop2)

@@ -151,13 +151,15 @@ func TestRenderWithLittle(t *testing.T) {
 	dir := t.TempDir()
 	newFixture(t, 9).write(t, dir) // nothing but maps
 	must(t, Render(context.Background(), dir, testSettings(), nil))
+	set := testSettings()
+	set.Pictures = false
 	must(t, os.Remove(filepath.Join(dir, StoreName)))
 	must(t, os.Remove(filepath.Join(dir, "models.csv")))
-	must(t, Render(context.Background(), dir, testSettings(), nil))
+	must(t, Render(context.Background(), dir, set, nil))
 	empty := t.TempDir()
 	must(t, NewSamples([]string{"id", "kind"}).WriteFile(empty))
 	must(t, New("contributions.csv").WriteFile(empty))
-	must(t, Render(context.Background(), empty, testSettings(), nil))
+	must(t, Render(context.Background(), empty, set, nil))
 }
 
 func TestRenderStops(t *testing.T) {
