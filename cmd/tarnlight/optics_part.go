@@ -11,8 +11,8 @@ import (
 )
 
 // opticsNames maps the columns of samples.csv to the indices.
-var opticsNames = map[string]string{"suva254": "suva254", "s275_295": "s_275_295", "s350_400": "s_350_400", "slope_ratio": "s_r",
-	"e2_e3": "e2_e3", "fi": "fi_470_520", "bix": "bix", "hix": "hix_sum", "hix_ratio": "hix_ratio", "freshness": "freshness",
+var opticsNames = map[string]string{"suva254": "suva254", "slope_275_295": "s_275_295", "slope_350_400": "s_350_400", "slope_ratio": "s_r",
+	"absorbance_250_365": "e2_e3", "fluorescence_index": "fi_470_520", "biological_index": "bix", "humification_index": "hix_sum", "humification_ratio": "hix_ratio", "freshness_index": "freshness",
 	"peak_b": "peak_b", "peak_t": "peak_t", "peak_a": "peak_a", "peak_m": "peak_m", "peak_c": "peak_c"}
 
 // indices returns the indices of a usable bottle's water, computed once.

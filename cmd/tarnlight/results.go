@@ -47,7 +47,13 @@ func (j *job) sampleTable() *report.Table {
 	at := 0
 	for _, b := range j.sv.Bottles {
 		own := make([]any, len(t.Columns)-n)
-		set := func(name string, v any) { own[place[name]] = v }
+		set := func(name string, v any) {
+			i, ok := place[name]
+			if !ok {
+				panic("tarnlight: samples.csv has no column " + name)
+			}
+			own[i] = v
+		}
 		if !b.Excluded {
 			j.fitColumns(set, b, at)
 			at++

@@ -173,9 +173,10 @@ func (j *job) corrections() []string {
 			done[step] = true
 		}
 		c := b.Setting.Correct
-		done["spectral"] = done["spectral"] || c.ExcitationFactors != "" || c.EmissionFactors != ""
-		done["inner-filter"] = done["inner-filter"] || c.InnerFilter != "none"
-		done["blank"] = done["blank"] || c.Blank != "none"
+		for step, does := range map[string]bool{"spectral": c.ExcitationFactors != "" || c.EmissionFactors != "",
+			"inner-filter": c.InnerFilter != "none", "blank": c.Blank != "none"} {
+			done[step] = done[step] || does && !slices.Contains(c.Off, step)
+		}
 	}
 	out := []string{}
 	for _, step := range []string{"spectral", "inner-filter", "blank"} {
