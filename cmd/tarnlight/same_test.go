@@ -239,6 +239,9 @@ func TestSetupsAreIndependent(t *testing.T) {
 	for _, name := range []string{"contributions.csv", "samples.csv"} {
 		apart := append(rowsOf(t, one, name, ""), rowsOf(t, two, name, "")...)
 		together := rowsOf(t, all, name, "")
+		// What the model misses is looked for in all bottles together.
+		unknown := func(row string) bool { return strings.Contains(row, "|unexplained|") }
+		apart, together = slices.DeleteFunc(apart, unknown), slices.DeleteFunc(together, unknown)
 		slices.Sort(apart)
 		slices.Sort(together)
 		sameRows(t, name, together, apart)

@@ -20,7 +20,7 @@ func (j *job) unknowns(judged *merit.Judged, r *unmix.Resolution, bottles []meri
 	var rows []int
 	for _, b := range bottles {
 		own := j.bottle(b.ID)
-		if b.Row >= 0 && !b.Unlike && len(b.Rejects) == 0 && own.Row.Kind != survey.Standard && !bent(own) {
+		if b.Row >= 0 && !b.Unlike && len(b.Rejects) == 0 && own.Row.Kind != survey.Standard && own.Row.ExcludeFromFit == "" && !bent(own) {
 			rows = append(rows, b.Row)
 		}
 	}
