@@ -52,6 +52,7 @@ var Tests = sortTests([]Test{
 	{"structure", Remark, 4, "z", "Moran's I of the residual map: neighbouring residuals are alike", "Cliff & Ord 1981 (from memory)"},
 	{"not-converged", Doubt, 0, "", "the fit stopped before its tolerance was met", "-"},
 	{"components-changed", Remark, 0, "", "a refit of the survey has other components than the results that it replaces", "Lorenzo-Seva & ten Berge 2006, Methodology 2, 57: congruence 0.95"},
+	{"peak-open", Doubt, 0, "", "the data leave a resolved component open at its own peak", "-"},
 	{"no-model-passes", Doubt, 0, "", "no number of components passes every test of the choice", "-"},
 	{"unlike-residual", Doubt, 0, "", "a bottle leaves more of its signal over than the bottles of the fixed model do (99 % limit)", "Box 1954 (from memory)"},
 	{"unlike-scores", Doubt, 0, "", "a bottle's mixture is unlike that of the bottles of the fixed model (99 % limit of T²)", "Tracy, Young & Mason 1992 (from memory)"},

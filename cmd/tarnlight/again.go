@@ -31,6 +31,9 @@ settings-used.toml were completed. No number changes.`,
 }
 
 func runReport(ctx context.Context, s streams, dir string) error {
+	if err := resultsFolder(dir); err != nil {
+		return err
+	}
 	old, err := outdir.ReadProvenance(dir)
 	if err != nil {
 		return err
@@ -103,7 +106,10 @@ func newVerifyCmd(s streams) *cobra.Command {
 		Use:   "verify OUT",
 		Short: "After: can this be trusted? Results whole, inputs there and equal, inputs gone",
 		Long: `verify holds every file of a results folder and every raw file it rests on against
-the hashes that were written with the results. It needs nothing but the folders.`,
+the hashes that were written with the results. It needs nothing but the folders.
+
+Exit codes: 0 results whole and inputs equal, 1 results missing or changed, 3 results
+whole but an input is gone or another than it was.`,
 		Example: "  tarnlight verify mysurvey/out",
 		Args:    cobra.ExactArgs(1),
 		RunE:    func(_ *cobra.Command, args []string) error { return runVerify(s, args[0]) },
@@ -114,6 +120,9 @@ the hashes that were written with the results. It needs nothing but the folders.
 // runVerify exits 1 where the results are not what was written, 3 where an input
 // is gone or another.
 func runVerify(s streams, dir string) error {
+	if err := resultsFolder(dir); err != nil {
+		return err
+	}
 	r, err := outdir.Verify(dir)
 	if err != nil {
 		return err

@@ -55,6 +55,9 @@ type drafted struct {
 }
 
 func runBegin(s streams, o beginOptions) error {
+	if err := surveyFolder(o.dir); err != nil {
+		return err
+	}
 	for _, name := range []string{"runsheet.csv", "runsheet.xlsx"} {
 		if _, err := os.Stat(filepath.Join(o.dir, name)); err == nil {
 			return fmt.Errorf("%s is there already and is not touched; move it away to draft a new one", filepath.Join(o.dir, name))

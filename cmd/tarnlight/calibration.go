@@ -139,7 +139,7 @@ func (j *job) recoveryFlags() []eem.Flag {
 }
 
 // lineFlags tells where the standards' own line does not pass through zero or is
-// left, and where it rests on few levels.
+// left.
 func (j *job) lineFlags() []eem.Flag {
 	var out []eem.Flag
 	add := func(component, test string, sev eem.Severity, v, limit float64, msg string) {
@@ -156,12 +156,16 @@ func (j *job) lineFlags() []eem.Flag {
 				fmt.Sprintf("from %.4g on the standards of %s leave the line of the lower levels, by %+.0f %% at the highest; use lower standards, and dilute bottles above that", at, l.Component, d))
 		}
 	}
-	if r := j.references0(); r != nil {
-		for _, c := range r.Set.Components {
-			if limit := j.sv.Limit("reference-levels"); c.Levels > 0 && float64(c.Levels) < limit {
-				add(c.Name, "reference-levels", eem.Remark, float64(c.Levels), limit,
-					fmt.Sprintf("the reference of %s rests on %d level; whether the response is a line cannot be told", c.Name, c.Levels))
-			}
+	return out
+}
+
+// levelFlags tells which references rest on few levels.
+func (j *job) levelFlags(set *unmix.Set) []eem.Flag {
+	var out []eem.Flag
+	for _, c := range set.Components {
+		if limit := j.sv.Limit("reference-levels"); c.Levels > 0 && float64(c.Levels) < limit {
+			out = append(out, j.sv.Accept(eem.NewFlag(eem.Flag{Component: c.Name, Method: "references", Test: "reference-levels", Severity: eem.Remark,
+				Value: float64(c.Levels), Limit: limit, Msg: fmt.Sprintf("the reference of %s rests on %d level; whether the response is a line cannot be told", c.Name, c.Levels)})))
 		}
 	}
 	return out

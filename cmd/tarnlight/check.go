@@ -3,6 +3,8 @@ package main
 import (
 	"context"
 	"fmt"
+	"io"
+	"slices"
 
 	"github.com/spf13/cobra"
 
@@ -50,18 +52,8 @@ func runCheck(ctx context.Context, s streams, o jobOptions) error {
 	if err := t.print(s.out); err != nil {
 		return err
 	}
-	for _, f := range j.flags {
-		if f.Severity < eem.Doubt {
-			continue
-		}
-		place := ""
-		if f.File != "" {
-			if place = f.File; f.Line > 0 {
-				place += fmt.Sprintf(":%d", f.Line)
-			}
-			place += ": "
-		}
-		fmt.Fprintf(s.out, "%s: %s%s\n", f.Severity, place, flagLine(f))
+	if err := printFindings(s.out, j.flags); err != nil {
+		return err
 	}
 	st := j.status()
 	fmt.Fprintf(s.err, "%d bottles: %d usable, %d rejected, %d excluded; %d doubts, %d notes\n", st.Bottles["all"], st.Bottles["usable"],
@@ -70,4 +62,60 @@ func runCheck(ctx context.Context, s streams, o jobOptions) error {
 		return &codeError{code: st.ExitCode}
 	}
 	return nil
+}
+
+// few is how many findings of one test are told one by one.
+const few = 3
+
+// printFindings tells what was found: rejects and doubts one by one, with place,
+// where they are few; many of one test, and notes, on one line.
+func printFindings(w io.Writer, flags []eem.Flag) error {
+	for _, sev := range []eem.Severity{eem.Reject, eem.Doubt, eem.Remark} {
+		byTest := map[string][]eem.Flag{}
+		var order []string
+		for _, f := range flags {
+			if f.Severity == sev {
+				if byTest[f.Test] == nil {
+					order = append(order, f.Test)
+				}
+				byTest[f.Test] = append(byTest[f.Test], f)
+			}
+		}
+		for _, test := range order {
+			list := byTest[test]
+			if len(list) <= few && sev > eem.Remark {
+				for _, f := range list {
+					if _, err := fmt.Fprintf(w, "%s: %s%s\n", sev, place(f), flagLine(f)); err != nil {
+						return err
+					}
+				}
+				continue
+			}
+			var ids []string
+			for _, f := range list {
+				if f.ID != "" && !slices.Contains(ids, f.ID) {
+					ids = append(ids, f.ID)
+				}
+			}
+			who := ""
+			if len(ids) > 0 {
+				who = fmt.Sprintf("%s (%s): ", count(len(ids), "bottle"), some(ids))
+			}
+			if _, err := fmt.Fprintf(w, "%s: %s%s (%s)\n", sev, who, list[0].Msg, test); err != nil {
+				return err
+			}
+		}
+	}
+	return nil
+}
+
+// place names file and line of a finding.
+func place(f eem.Flag) string {
+	switch {
+	case f.File == "":
+		return ""
+	case f.Line > 0:
+		return fmt.Sprintf("%s:%d: ", f.File, f.Line)
+	}
+	return f.File + ": "
 }

@@ -33,28 +33,52 @@ func (j *job) choose(ctx context.Context, fit *eem.Cube, c survey.Components, se
 	}
 	j.choice = ch
 	n := ch.Components
-	if want > 0 {
+	stated := want > 0 || from == to
+	if want == 0 && stated {
+		want = from
+	}
+	if stated {
 		n = want
 	}
+	passes := ""
 	for _, cand := range ch.Candidates {
 		j.fits = append(j.fits, cand.Result)
 		if cand.Components == n {
 			j.fit = cand.Result
+			if !cand.Passes {
+				passes = cand.Reason
+			}
 		}
 	}
-	switch {
-	case j.fit != nil && want > 0:
-		fmt.Fprintf(j.bar, "%d components, because: %s\nthe tests say: %s\n", n, j.set.Resolve.Because, ch.Verdict)
-	case want > 0:
-		return fmt.Errorf("settings, resolve.choose: %d components could not be fitted: %s", want, ch.Verdict)
-	case n == 0:
+	doubt := func(sev eem.Severity, format string, a ...any) {
+		j.flags = append(j.flags, j.sv.Accept(eem.NewFlag(eem.Flag{Method: "parafac", Test: "no-model-passes", Severity: sev, Value: nan, Limit: nan, Msg: fmt.Sprintf(format, a...)})))
+	}
+	const remedy = "exclude odd bottles (leverage and influence in samples.csv), widen the scatter bands, narrow the grid to where there is signal, or measure more bottles"
+	switch because := j.set.Resolve.Because; {
+	case j.fit == nil && stated:
+		return fmt.Errorf("settings, resolve.components: %d components could not be fitted: %s", want, ch.Verdict)
+	case stated && because != "":
+		fmt.Fprintf(j.bar, "%d components, because: %s\nthe tests say: %s\n", n, because, ch.Verdict)
+		if passes != "" {
+			doubt(eem.Remark, "%s, chosen because: %s; they do not pass every test: %s", count(n, "component"), because, passes)
+		}
+	case stated && passes != "":
+		doubt(eem.Doubt, "the stated %s do not pass every test: %s; %s, or give the reason for the number ([resolve] choose and because)", count(n, "component"), passes, remedy)
+	case n == 0 && !stated:
 		j.fit = j.fits[0]
-		j.flags = append(j.flags, j.sv.Accept(eem.Flag{Method: "parafac", Test: "no-model-passes", Severity: eem.Doubt, Value: nan, Limit: nan,
-			Msg: fmt.Sprintf("%s; %d components are shown all the same: state a number ([resolve] choose) or more bottles", ch.Verdict, j.fit.Components)}))
+		doubt(eem.Doubt, "%s %s are shown all the same: %s, or choose a number with a reason ([resolve] choose and because)", strings.TrimRight(ch.Verdict, ".; ")+".", count(j.fit.Components, "component"), remedy)
 	default:
 		fmt.Fprintf(j.bar, "%s\n", ch.Verdict)
 	}
 	return nil
+}
+
+// count gives a number with its noun.
+func count(n int, noun string) string {
+	if n == 1 {
+		return "1 " + noun
+	}
+	return fmt.Sprintf("%d %ss", n, noun)
 }
 
 // splits says which bottles belong together and which columns part them.
@@ -110,7 +134,7 @@ func (j *job) modelTable() *report.Table {
 				agree++
 			}
 		}
-		ex, em, verdict, reason := nan, nan, "", "the settings state this number"
+		ex, em, verdict, reason := nan, nan, "", ""
 		if j.choice != nil {
 			cand := j.choice.Candidates[i]
 			ex, em = j.leastHalves(fit.Components)

@@ -57,6 +57,13 @@ func runCompare(s streams, o compareOptions) error {
 	case ia.IsDir() != ib.IsDir():
 		return misuse("%s and %s: give two folders of results, or two files of spectra", o.a, o.b)
 	case ia.IsDir():
+		for _, dir := range []string{o.a, o.b} {
+			if _, err := os.Stat(filepath.Join(dir, "contributions.csv")); err != nil {
+				if err := resultsFolder(dir); err != nil {
+					return err
+				}
+			}
+		}
 		return compareResults(s, o)
 	}
 	return compareSpectra(s, o)
@@ -162,15 +169,7 @@ func noNaN(v []float64) []float64 {
 }
 
 // peak is the wavelength of the maximum.
-func peak(a eem.Axis, v []float64) float64 {
-	best := 0
-	for i := range v {
-		if v[i] > v[best] {
-			best = i
-		}
-	}
-	return a.At(best)
-}
+func peak(a eem.Axis, v []float64) float64 { return a.At(top(v)) }
 
 func compareResults(s streams, o compareOptions) error {
 	type key struct{ id, component, method string }

@@ -78,6 +78,9 @@ func runExplain(ctx context.Context, s streams, o explainOptions) error {
 	if o.survey == "" {
 		o.survey = filepath.Dir(filepath.Clean(o.out))
 	}
+	if err := resultsFolder(o.out); err != nil {
+		return err
+	}
 	x := &explainer{explainOptions: o}
 	if err := x.open(); err != nil {
 		return err
@@ -131,7 +134,7 @@ func (x *explainer) open() error {
 	}
 	i := indexOf(x.store.IDs, x.id)
 	if i < 0 {
-		return fmt.Errorf("%s has no bottle %q; it has %s", x.out, x.id, some(x.store.IDs))
+		return fmt.Errorf("%s has no bottle %q; %s", x.out, x.id, meant(x.id, x.store.IDs))
 	}
 	if x.sample, err = x.store.Sample(i); err != nil {
 		return err

@@ -103,19 +103,22 @@ func (o jobOptions) execute(ctx context.Context, s streams) (*job, error) {
 
 // readInputs reads settings and run sheet.
 func (j *job) readInputs() error {
-	info, err := os.Stat(j.dir)
-	if err != nil || !info.IsDir() {
-		return fmt.Errorf("%s: no such survey folder; a survey is a folder with a runsheet.csv or runsheet.xlsx (tarnlight begin drafts one)", j.dir)
+	err := surveyFolder(j.dir)
+	if err != nil {
+		return err
 	}
 	if j.settings != "" {
 		if _, err := os.Stat(j.settings); err != nil {
-			return fmt.Errorf("--settings: %w", err)
+			return fmt.Errorf("--settings %s: no such file; leave the flag out for SURVEY/survey.toml", j.settings)
 		}
 	}
 	if j.set, err = survey.ReadSettings(j.settingsPath()); err != nil {
 		return err
 	}
 	if j.exclusions != "" {
+		if _, err := os.Stat(j.exclusions); err != nil {
+			return fmt.Errorf("--exclusions %s: no such file; it is a CSV with the columns id and reason", j.exclusions)
+		}
 		if j.set.Sheet.Exclusions, err = fromSurvey(j.dir, j.exclusions); err != nil {
 			return err
 		}
@@ -239,6 +242,8 @@ func (j *job) quantifyPart() error {
 	if err != nil {
 		return err
 	}
+	j.flags = append(j.flags, j.lineFlags()...)
+	j.flags = append(j.flags, j.levelFlags(set)...)
 	return j.resolveWith(set, "references", nil)
 }
 
@@ -324,14 +329,9 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 		if b.Excluded {
 			continue
 		}
-		m := j.merit(b)
-		for _, f := range extra {
-			if f.ID == m.ID && f.Severity == eem.Doubt {
-				m.Doubts = append(m.Doubts, f.Msg)
-			}
-		}
-		bottles = append(bottles, m)
+		bottles = append(bottles, j.merit(b))
 	}
+	j.reach(bottles, method, extra)
 	spreads := merit.Spreads(j.cube, r, j.sources(method))
 	judged := merit.Judge(r, spreads, bottles, j.cube.Sample, j.sv.Limit, j.sv.Accept, set.Origin)
 	if err := j.unknowns(judged, r, bottles, set.Origin); err != nil {
@@ -340,6 +340,43 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 	j.res = append(j.res, r)
 	j.judge = append(j.judge, judged)
 	return nil
+}
+
+// reach hands doubts on to the bottles that they concern: flags on one bottle,
+// and those on the model or the references of a method, which every value used.
+// A standard's doubt reaches the components that it stands for; cells that were
+// left out of the reference for it do no harm.
+func (j *job) reach(bottles []merit.Bottle, method string, extra []eem.Flag) {
+	all := map[string][]string{} // component, empty for all of them
+	for _, f := range j.flags {
+		if f.ID == "" && f.Severity == eem.Doubt && f.Method == method {
+			all[f.Component] = append(all[f.Component], f.Msg)
+		}
+	}
+	for _, b := range j.sv.Bottles {
+		if method != "references" || j.refs == nil || !j.calibrates(b) || !b.Usable() {
+			continue
+		}
+		for _, f := range b.Flags {
+			if f.Severity != eem.Doubt || f.Test == "saturated" || f.Test == "absorbance-limit" {
+				continue
+			}
+			for _, c := range b.Row.Conc {
+				if c.Value > 0 {
+					all[c.Name] = append(all[c.Name], "standard "+b.Row.ID+": "+f.Msg)
+				}
+			}
+		}
+	}
+	for i := range bottles {
+		for _, f := range extra {
+			if f.ID == bottles[i].ID && f.Severity == eem.Doubt {
+				bottles[i].Doubts = append(bottles[i].Doubts, f.Msg)
+			}
+		}
+		bottles[i].Doubts = append(bottles[i].Doubts, all[""]...)
+		bottles[i].Of = all
+	}
 }
 
 // merit gathers what the judgement of a bottle needs.

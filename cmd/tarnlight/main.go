@@ -137,7 +137,7 @@ func usageArgs(check cobra.PositionalArgs) cobra.PositionalArgs {
 			return nil
 		}
 		if err := check(c, args); err != nil {
-			return misuse("%w; usage: %s", err, c.UseLine())
+			return misuse("%s takes other arguments: %s", c.CommandPath(), c.UseLine())
 		}
 		return nil
 	}

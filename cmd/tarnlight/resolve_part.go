@@ -35,18 +35,12 @@ func (j *job) resolvePart(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	if c.From == c.To {
-		r, err := parafac.Fit(ctx, fit, c.From, set)
-		if err != nil {
-			return err
-		}
-		j.fits, j.fit = []*parafac.Result{r}, r
-	} else if err := j.choose(ctx, fit, c, set); err != nil {
+	if err := j.choose(ctx, fit, c, set); err != nil {
 		return err
 	}
-	j.fitNotes()
 	chosen := componentsOf(j.fit)
 	j.keepNames(chosen)
+	j.fitNotes(chosen)
 	return j.resolveWith(chosen, "parafac", nil)
 }
 
@@ -105,7 +99,7 @@ func componentsOf(r *parafac.Result) *unmix.Set {
 }
 
 // fitNotes turns what the fit says about itself into flags of the survey.
-func (j *job) fitNotes() {
+func (j *job) fitNotes(chosen *unmix.Set) {
 	add := func(code string, sev eem.Severity, v, lim float64, msg string) {
 		j.flags = append(j.flags, j.sv.Accept(eem.Flag{Method: "parafac", Test: code, Severity: sev, Value: v, Limit: lim, Msg: msg}))
 	}
@@ -131,4 +125,22 @@ func (j *job) fitNotes() {
 			j.flags = append(j.flags, j.sv.Accept(f))
 		}
 	}
+	for _, c := range chosen.Components {
+		if j1, k1 := top(c.Ex), top(c.Em); !c.ExDetermined[j1] || !c.EmDetermined[k1] {
+			j.flags = append(j.flags, j.sv.Accept(eem.NewFlag(eem.Flag{Component: c.Name, Method: "parafac", Test: "peak-open", Severity: eem.Doubt, Value: nan, Limit: nan,
+				Msg: fmt.Sprintf("the data do not determine %s at its own peak (ex %g / em %g nm), so that its contributions have no sure scale; too much of it lies under scatter or beyond the scans", c.Name,
+					chosen.Grid.Ex.At(j1), chosen.Grid.Em.At(k1))})))
+		}
+	}
+}
+
+// top is the place of the largest loading.
+func top(v []float64) int {
+	best := 0
+	for i, x := range v {
+		if x > v[best] {
+			best = i
+		}
+	}
+	return best
 }

@@ -287,7 +287,6 @@ func (j *job) collectFlags() {
 		j.flags = append(j.flags, judged.Flags...)
 	}
 	j.flags = append(j.flags, own...)
-	j.flags = append(j.flags, j.lineFlags()...)
 	j.flags = append(j.flags, j.recoveryFlags()...)
 	j.flags = append(j.flags, j.duplicateFlags()...)
 	j.flags = append(j.flags, j.fieldBlankFlags()...)

@@ -26,7 +26,7 @@ func InnerFilter(e *eem.EEM, a *eem.Absorbance, g Geometry, limit float64) (out 
 	}
 	out = own(e)
 	if a == nil {
-		n := finding(StepInner, "no-absorbance", 0, 0, "no absorbance is given, so that the inner filter was not corrected; results are low wherever the water absorbs")
+		n := finding(StepInner, "no-absorbance", 0, 0, "no absorbance is given, so that the inner filter was not corrected: results are low where the water absorbs, and high where standards lack it too; name an absorbance file, or say in [scans] applied that the files come corrected")
 		n.Measure = false
 		out.Note(n)
 		return out, factor

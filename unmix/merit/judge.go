@@ -14,10 +14,12 @@ import (
 type Bottle struct {
 	ID, Batch string
 	Doubts    []string // in words; any makes the contributions unreliable
-	Rejects   []string // in words; any makes them not usable
-	Row       int      // of the resolution; −1 when the bottle is not in it
-	Unlike    bool     // a bottle that need not look like the model (a blank): no test of the residual
-	Standard  bool     // a standard: the highest one is not above itself
+	// Of holds doubts on single components: of their spectra, of their standards.
+	Of       map[string][]string
+	Rejects  []string // in words; any makes them not usable
+	Row      int      // of the resolution; −1 when the bottle is not in it
+	Unlike   bool     // a bottle that need not look like the model (a blank): no test of the residual
+	Standard bool     // a standard: the highest one is not above itself
 }
 
 // Currie's factors for known standard deviation and 5 % errors of both kinds
@@ -120,7 +122,9 @@ func contribution(r *unmix.Resolution, spreads []Spread, b Bottle, f int, doubts
 	if b.Row >= 0 {
 		s := &spreads[b.Row]
 		c.Value, c.U = r.Value[b.Row*r.Set.Len()+f], s.U[f]
-		c.Lower, c.Upper = s.Lower[f], s.Upper[f]
+		if c.Lower, c.Upper = s.Lower[f], s.Upper[f]; c.Lower < 1e-9*c.Upper {
+			c.Lower = 0 // what rounding left
+		}
 		c.Critical, c.Detection, c.Quantification = s.Critical[f], s.Detection[f], s.Quantifiable[f]
 		c.Detected = c.Value > c.Critical
 	}
@@ -131,7 +135,11 @@ func contribution(r *unmix.Resolution, spreads []Spread, b Bottle, f int, doubts
 	}
 	var flags []eem.Flag
 	c.Reasons = append(c.Reasons, doubts...)
-	if comp.Highest > 0 && !b.Standard && c.Value > comp.Highest*(1+1e-9) {
+	c.Reasons = append(c.Reasons, b.Of[comp.Name]...)
+	if c.Detected && c.Value < kCritical*c.U {
+		c.Reasons = append(c.Reasons, "its standard uncertainty is so large that the interval reaches zero")
+	}
+	if comp.Highest > 0 && !b.Standard && c.Value-2*notNaN(c.U) > comp.Highest {
 		fl := accept(eem.Flag{ID: b.ID, Batch: b.Batch, Component: comp.Name, Method: r.Set.Method, Test: "above-standards", Severity: eem.Doubt,
 			Value: c.Value, Limit: comp.Highest, Msg: fmt.Sprintf("%s: %.4g %s is above the highest standard (%.4g)", comp.Name, c.Value, c.Unit, comp.Highest)})
 		flags = append(flags, fl)
@@ -153,6 +161,14 @@ func contribution(r *unmix.Resolution, spreads []Spread, b Bottle, f int, doubts
 		c.Reported = Rounded(c.Value, c.U)
 	}
 	return c, flags
+}
+
+// notNaN is v, 0 where it is not known.
+func notNaN(v float64) float64 {
+	if math.IsNaN(v) || math.IsInf(v, 0) {
+		return 0
+	}
+	return v
 }
 
 // Rounded gives value to the decimal of the second digit of u (GUM 7.2.6), plain
