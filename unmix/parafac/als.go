@@ -146,10 +146,10 @@ func (s *als) products() {
 	}
 }
 
-// residualOf returns the weighted, scaled residual of sample i at its cells. The
+// residualTo writes the weighted, scaled residual of sample i at its cells. The
 // model rows must be up to date.
-func (s *als) residualOf(i int) []float64 {
-	r := append([]float64(nil), s.x[i]...)
+func (s *als) residualTo(r []float64, i int) {
+	copy(r, s.x[i])
 	for f := range s.f {
 		if a := s.a[i*s.f+f]; a != 0 {
 			axpy(-a, s.kt[f*s.p:(f+1)*s.p], r)
@@ -158,6 +158,12 @@ func (s *als) residualOf(i int) []float64 {
 	for _, q := range s.gaps[i] {
 		r[q] = 0
 	}
+}
+
+// residualOf returns the same.
+func (s *als) residualOf(i int) []float64 {
+	r := make([]float64, s.p)
+	s.residualTo(r, i)
 	return r
 }
 

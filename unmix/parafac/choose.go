@@ -55,7 +55,16 @@ type Split struct {
 	ExPeak, EmPeak   float64 // nm, second half's peak less the first's
 	ExCentre, EmMean float64 // nm, the same for the centroid
 	Agrees           bool    // both congruences at least 0.95
+
+	// Spectra are those of the component in the first and in the second half,
+	// at a maximum of 1 over the loadings that the whole survey's mask leaves open.
+	// A loading that the model of the whole survey does not determine is not
+	// determined in its halves either: plot a gap.
+	Spectra [2]Spectra
 }
+
+// Spectra are the loadings of one component, J and K.
+type Spectra struct{ Ex, Em []float64 }
 
 const (
 	sameSpectrum = 0.95 // Lorenzo-Seva & ten Berge 2006
@@ -131,7 +140,7 @@ type model struct {
 // starts from the models of one more with one component left out, which find
 // optima that random starts miss (NUMERICS 2f).
 func (pr *prepared) descend(ctx context.Context, c *eem.Cube, from, to int, set *Settings, ch *Choice) ([]*model, error) {
-	models := make([]*model, to-from+1)
+	starts := make([][]*outcome, to-from+1)
 	above := &als{} // none: the largest number starts from random alone
 	for f := to; f >= from; f-- {
 		set.Progress(to-f, to-from+1, fmt.Sprintf("%d components", f))
@@ -142,11 +151,17 @@ func (pr *prepared) descend(ctx context.Context, c *eem.Cube, from, to int, set 
 		if above, err = pr.continued(ctx, all, set); err != nil {
 			return nil, err
 		}
-		r, s, err := conclude(ctx, c, pr.problem, all, goodForNow, set)
-		if err != nil {
-			return nil, err
-		}
-		models[f-from] = &model{s: s, r: r}
+		starts[f-from] = all
+	}
+	models := make([]*model, len(starts))
+	err := parallel(ctx, set, len(starts), "finishing", func(n int) error {
+		n = len(starts) - 1 - n // the longest first
+		r, s, err := conclude(ctx, c, pr.problem, starts[n], goodForNow, set)
+		models[n] = &model{s: s, r: r}
+		return err
+	})
+	if err != nil {
+		return nil, err
 	}
 	for n, m := range models {
 		cand := &Candidate{Result: m.r, Agree: m.r.agree()}

@@ -113,19 +113,48 @@ func pseudoInverse(a []float64, n, f int) []float64 {
 	return out
 }
 
-// coreConsistency is that of the fit, in the fit's own scale and weights. Missing
-// cells take the model's value.
-func (s *als) coreConsistency() float64 {
+// residualTests returns two figures that need the residuals of every sample: the
+// core consistency of the fit, in its own scale and weights, where missing cells
+// take the model's value; and the mean correlation of neighbouring residuals, along
+// emission and excitation, about 0 for noise and towards 1 where the model leaves
+// out something with a spectrum.
+func (s *als) residualTests() (core, structure float64) {
 	s.modelRows()
 	pa := pseudoInverse(s.a, s.i, s.f)
-	e := make([]float64, s.f*s.p)
+	e, r := make([]float64, s.f*s.p), make([]float64, s.p)
+	var num, den float64
 	for i := range s.i {
-		r := s.residualOf(i)
+		s.residualTo(r, i)
 		for g := range s.f {
 			axpy(pa[g*s.i+i], r, e[g*s.p:(g+1)*s.p])
 		}
+		n, d := s.neighbours(r)
+		num, den = num+n, den+d
 	}
-	return consistency(e, pseudoInverse(s.b, s.j, s.f), pseudoInverse(s.c, s.k, s.f), s.j, s.k, s.f, func(q int) (int, int) { return int(s.cj[q]), int(s.ck[q]) })
+	if den > 0 {
+		structure = num / den
+	}
+	core = consistency(e, pseudoInverse(s.b, s.j, s.f), pseudoInverse(s.c, s.k, s.f), s.j, s.k, s.f, func(q int) (int, int) { return int(s.cj[q]), int(s.ck[q]) })
+	return core, structure
+}
+
+// neighbours sums products, and mean squares, over the pairs of cells of r that
+// are next to each other.
+func (s *als) neighbours(r []float64) (num, den float64) {
+	for q := 1; q < len(r); q++ {
+		if s.ck[q] == s.ck[q-1]+1 && s.cj[q] == s.cj[q-1] {
+			num += r[q] * r[q-1]
+			den += r[q]*r[q] + r[q-1]*r[q-1]
+		}
+	}
+	for n := 1; n < len(s.emCell); n++ {
+		q, p := s.emCell[n], s.emCell[n-1]
+		if s.cj[q] == s.cj[p]+1 && s.ck[q] == s.ck[p] {
+			num += r[q] * r[p]
+			den += r[q]*r[q] + r[p]*r[p]
+		}
+	}
+	return num, den / 2
 }
 
 // tripleCosine returns the cosine of largest size between two components,
@@ -149,33 +178,4 @@ func (s *als) tripleCosine() (float64, [2]int) {
 func (s *als) shared() bool {
 	t, _ := s.tripleCosine()
 	return t > sharedTriple && !s.free
-}
-
-// structure is the mean correlation of neighbouring residuals, along emission
-// and excitation: about 0 for noise, towards 1 where the model leaves out
-// something with a spectrum.
-func (s *als) structure() float64 {
-	s.modelRows()
-	var num, den float64
-	for i := range s.i {
-		r := s.residualOf(i)
-		for q := range s.p {
-			if q > 0 && s.cj[q] == s.cj[q-1] && s.ck[q] == s.ck[q-1]+1 {
-				num += r[q] * r[q-1]
-				den += (r[q]*r[q] + r[q-1]*r[q-1]) / 2
-			}
-		}
-		for n, q := range s.emCell {
-			if n > 0 {
-				if p := s.emCell[n-1]; s.ck[q] == s.ck[p] && s.cj[q] == s.cj[p]+1 {
-					num += r[q] * r[p]
-					den += (r[q]*r[q] + r[p]*r[p]) / 2
-				}
-			}
-		}
-	}
-	if den == 0 {
-		return 0
-	}
-	return num / den
 }

@@ -74,8 +74,9 @@ func scaleBy(x []float64, by float64) {
 // theta.
 func (n *newton) sampleGradientTo(dst []float64, i int) {
 	f := n.f
-	full := make([]float64, len(n.at))
-	r := n.residualOf(i)
+	full, r := n.scratch[:len(n.at)], n.scratch[len(n.at):]
+	clear(full)
+	n.residualTo(r, i)
 	a := n.a[i*f : (i+1)*f]
 	for q, e := range r {
 		e *= n.w[q]
@@ -191,7 +192,8 @@ func (in *influence) sampleSE(out []float64, i int, ys, peaks, moments []float64
 	f := in.f
 	inv := append([]float64(nil), in.inverse(i)...)
 	dof := math.Max(1, float64(in.p-len(in.gaps[i])-f))
-	s2 := sumSquares(in.residualOf(i)) / dof
+	in.residualTo(in.scratch[:in.p], i)
+	s2 := sumSquares(in.scratch[:in.p]) / dof
 	a := in.a[i*f : (i+1)*f]
 	height := make([]float64, f)
 	v := make([]float64, f)

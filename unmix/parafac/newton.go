@@ -21,26 +21,27 @@ import (
 // F × F Gram matrices, so that no data are touched (NUMERICS 2e).
 type newton struct {
 	*als
-	nb    int       // entries of b, before those of c
-	theta []int     // entries that can move: index into b, or nb + index into c
-	at    []int     // place of each entry in theta, −1 if it cannot move
-	grad  []float64 // of ½ loss by every entry
-	hb    []float64 // J × F × F: diagonal blocks, ridge included
-	hc    []float64 // K × F × F
-	h     []float64 // n × n, upper
-	work  []float64 // n × n: what chol holds
-	chol  blas64.Symmetric
-	plain bool      // chol is the factor of H, all of it and without damping
-	built []int     // theta of H
-	mb    []float64 // (J·F) × F and (K·F) × F: D'K without the score in front
-	mc    []float64
-	inv   []float64 // F × F scratch
-	delta float64   // certificate at the last gradient
+	nb      int       // entries of b, before those of c
+	theta   []int     // entries that can move: index into b, or nb + index into c
+	at      []int     // place of each entry in theta, −1 if it cannot move
+	grad    []float64 // of ½ loss by every entry
+	hb      []float64 // J × F × F: diagonal blocks, ridge included
+	hc      []float64 // K × F × F
+	h       []float64 // n × n, upper
+	work    []float64 // n × n: what chol holds
+	chol    blas64.Symmetric
+	plain   bool      // chol is the factor of H, all of it and without damping
+	built   []int     // theta of H
+	mb      []float64 // (J·F) × F and (K·F) × F: D'K without the score in front
+	mc      []float64
+	inv     []float64 // F × F scratch
+	scratch []float64 // (J+K)·F + P: a sample's gradient and residual
+	delta   float64   // certificate at the last gradient
 }
 
 func (s *als) newton() *newton {
 	nb := s.j * s.f
-	return &newton{als: s, nb: nb, at: make([]int, nb+s.k*s.f), grad: make([]float64, nb+s.k*s.f)}
+	return &newton{als: s, nb: nb, at: make([]int, nb+s.k*s.f), grad: make([]float64, nb+s.k*s.f), scratch: make([]float64, nb+s.k*s.f+s.p)}
 }
 
 // sigma2 is the residual variance of the scaled data.

@@ -118,7 +118,7 @@ func (s *als) result(c *eem.Cube, set *Settings) *Result {
 		r.Fitted[i] = true
 	}
 	s.residuals(c, r)
-	r.CoreConsistency, r.Structure = s.coreConsistency(), s.structure()
+	r.CoreConsistency, r.Structure = s.residualTests()
 	t, pair := s.tripleCosine()
 	r.TripleCosine = t
 	r.TriplePair = [2]int{slices.Index(order, pair[0]), slices.Index(order, pair[1])}

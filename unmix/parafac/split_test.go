@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"os"
+	"slices"
 	"strings"
 	"testing"
 
@@ -157,6 +158,29 @@ func TestReplicatesDoNotHelpTheHalves(t *testing.T) {
 	}
 }
 
+// halvesAgreeWith checks that the spectra of halves are those that were compared,
+// and that each is near the whole survey's.
+func halvesAgreeWith(t *testing.T, s Split, r *Result) {
+	t.Helper()
+	a, b := s.Spectra[0], s.Spectra[1]
+	if ex := Congruence(only(a.Ex, r.exRes[s.Component]), only(b.Ex, r.exRes[s.Component])); math.Abs(ex-s.Ex) > 1e-12 {
+		t.Errorf("excitation spectra have congruence %g, the split says %g", ex, s.Ex)
+	}
+	if em := Congruence(only(a.Em, r.emRes[s.Component]), only(b.Em, r.emRes[s.Component])); math.Abs(em-s.Em) > 1e-12 {
+		t.Errorf("emission spectra have congruence %g, the split says %g", em, s.Em)
+	}
+	for _, h := range s.Spectra {
+		if top := slices.Max(only(h.Em, r.emRes[s.Component])); math.Abs(top-1) > 1e-12 {
+			t.Errorf("the largest loading of a half is %g", top)
+		}
+		for k, v := range r.Em[s.Component] {
+			if r.EmDetermined[s.Component][k] && math.Abs(v-h.Em[k]) > 0.1 {
+				t.Errorf("emission loading %d: %g in a half, %g in all", k, h.Em[k], v)
+			}
+		}
+	}
+}
+
 func TestSplitsByColumn(t *testing.T) {
 	s := simulate(simulation{samples: 36, nj: 12, nk: 30, comps: 2, noise: 0.01, scatter: true, seed: 5})
 	by := SplitBy{Name: "site", Value: make([]string, 36)}
@@ -168,6 +192,7 @@ func TestSplitsByColumn(t *testing.T) {
 	for _, r := range ch.Splits {
 		if r.Name == "site: A, C against B" {
 			rows++
+			halvesAgreeWith(t, r, ch.Candidates[0].Result)
 			if r.First != 24 || r.Second != 12 || !r.Agrees || r.Ex < 0.99 || math.Abs(r.EmMean) > 3 {
 				t.Errorf("%+v", r)
 			}
