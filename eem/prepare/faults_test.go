@@ -209,6 +209,17 @@ func TestFaultySurveys(t *testing.T) {
 			t.Errorf("a clean survey is flagged: %s", k)
 		}
 	}
+	// Results beside the scans are no raw files.
+	for _, name := range []string{"provenance.json", "contributions.csv"} {
+		dir := filepath.Join(clean, "scans", "results")
+		if err := os.MkdirAll(dir, 0o755); err != nil {
+			t.Fatal(err)
+		}
+		write(t, filepath.Join(dir, name), "{}")
+	}
+	if said(prepared(t, clean, 0))[" unused-file"] > 0 {
+		t.Error("results are told as raw files that no row uses")
+	}
 	for i, c := range faults() {
 		t.Run(fmt.Sprintf("%s %d", c.test, i), func(t *testing.T) {
 			s := forty(t)

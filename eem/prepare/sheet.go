@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"io/fs"
 	"math"
+	"os"
 	"path/filepath"
 	"slices"
 	"strings"
@@ -118,7 +119,7 @@ func (s *Survey) unusedFiles() {
 		}
 		name := d.Name()
 		if d.IsDir() {
-			if path != s.root() && (strings.HasPrefix(name, ".") || strings.HasPrefix(name, "out") && filepath.Dir(path) == filepath.Clean(s.Dir)) {
+			if path != s.root() && (strings.HasPrefix(name, ".") || results(path)) {
 				return fs.SkipDir
 			}
 			return nil
@@ -141,6 +142,15 @@ func (s *Survey) unusedFiles() {
 	s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "unused-file", Severity: eem.Remark, Measure: true, Value: float64(len(left)),
 		File: filepath.ToSlash(filepath.Base(s.Sheet.Path)),
 		Msg:  fmt.Sprintf("%d raw files are used by no row (%s); add rows for them or move them away", len(left), show)}), "", ""))
+}
+
+// results says whether a folder holds results, finished or in the making.
+func results(path string) bool {
+	if strings.HasSuffix(path, ".work") {
+		return true
+	}
+	_, err := os.Stat(filepath.Join(path, "provenance.json"))
+	return err == nil
 }
 
 // claimed lists the files that a row names, an excluded one too.
