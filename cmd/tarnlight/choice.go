@@ -11,6 +11,7 @@ import (
 	"tarnlight/eem"
 	"tarnlight/eem/prepare"
 	"tarnlight/eem/survey"
+	"tarnlight/unmix"
 	"tarnlight/unmix/parafac"
 	"tarnlight/unmix/report"
 )
@@ -182,5 +183,37 @@ func (j *job) splitTable() *report.Table {
 	return t
 }
 
-// splitSpectra makes split_spectra.csv.
-func (j *job) splitSpectra() *report.Table { return report.New("split_spectra.csv") }
+// splitSpectra makes split_spectra.csv: loadings stay empty where the model of all
+// bottles does not determine them.
+func (j *job) splitSpectra() *report.Table {
+	t := report.New("split_spectra.csv")
+	if j.choice == nil {
+		return t
+	}
+	whole := make(map[int]*parafac.Result)
+	for _, c := range j.choice.Candidates {
+		whole[c.Components] = c.Result
+	}
+	for _, s := range j.choice.Splits {
+		r := whole[s.Components]
+		for n, half := range []string{"first", "second"} {
+			for _, m := range []struct {
+				mode string
+				axis eem.Axis
+				v    []float64
+				ok   []bool
+			}{
+				{unmix.ModeEx, r.Grid.Ex, s.Spectra[n].Ex, r.ExDetermined[s.Component]},
+				{unmix.ModeEm, r.Grid.Em, s.Spectra[n].Em, r.EmDetermined[s.Component]},
+			} {
+				for i, v := range m.v {
+					if !m.ok[i] {
+						v = nan
+					}
+					t.Append(s.Components, s.Name, half, fmt.Sprintf("C%d", s.Component+1), m.mode, m.axis.At(i), v)
+				}
+			}
+		}
+	}
+	return t
+}

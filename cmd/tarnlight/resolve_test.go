@@ -1,6 +1,7 @@
 package main
 
 import (
+	"math"
 	"strings"
 	"testing"
 
@@ -100,8 +101,28 @@ func TestChoice(t *testing.T) {
 	if chosen != 1 {
 		t.Errorf("%d models chosen", chosen)
 	}
-	if s := table(t, dir, "out", "splits.csv"); len(s.Rows) == 0 {
+	s := table(t, dir, "out", "splits.csv")
+	if len(s.Rows) == 0 {
 		t.Error("no split halves")
+	}
+	// Every split component has the spectra of both halves, on the grid of
+	// components.csv, of maximum 1 (to the digits written).
+	h := table(t, dir, "out", "split_spectra.csv")
+	points, top := map[string]int{}, map[string]float64{}
+	for r := range h.Rows {
+		id := strings.Join([]string{h.Text(r, h.Col("components")), h.Text(r, h.Col("split")), h.Text(r, h.Col("half")), h.Text(r, h.Col("component")), h.Text(r, h.Col("mode"))}, "|")
+		points[id]++
+		if v := h.Float(r, h.Col("loading")); v > top[id] {
+			top[id] = v
+		}
+	}
+	if len(points) != 4*len(s.Rows) {
+		t.Errorf("%d spectra of halves for %d rows of splits.csv", len(points), len(s.Rows))
+	}
+	for id, n := range points {
+		if n < 5 || math.Abs(top[id]-1) > 1e-4 {
+			t.Errorf("%s: %d points, the largest %g", id, n, top[id])
+		}
 	}
 	own := resolveDemo(t, "components = [3, 5]\nchoose = 4\nbecause = \"four stocks were mixed\"\n", nil)
 	m = table(t, own, "out", "models.csv")

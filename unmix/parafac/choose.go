@@ -57,9 +57,9 @@ type Split struct {
 	Agrees           bool    // both congruences at least 0.95
 
 	// Spectra are those of the component in the first and in the second half,
-	// at a maximum of 1 over the loadings that the whole survey's mask leaves open.
-	// A loading that the model of the whole survey does not determine is not
-	// determined in its halves either: plot a gap.
+	// at a maximum of 1 over the loadings that the model of the whole survey
+	// determines. What it does not determine is not determined in its halves
+	// either: plot a gap.
 	Spectra [2]Spectra
 }
 

@@ -100,7 +100,7 @@ func (pr *prepared) split(ctx context.Context, m *model, h *halving, set *Settin
 		s.Em, s.EmPeak, s.EmMean = compare(pr.grid.Em, em[0][a[f].B], em[1][b[f].B], m.r.emRes[f])
 		s.Agrees = s.Ex >= sameSpectrum && s.Em >= sameSpectrum
 		for side, n := range []int{a[f].B, b[f].B} {
-			s.Spectra[side] = Spectra{Ex: maxOne(ex[side][n], m.r.exRes[f]), Em: maxOne(em[side][n], m.r.emRes[f])}
+			s.Spectra[side] = Spectra{Ex: maxOne(ex[side][n], m.r.ExDetermined[f]), Em: maxOne(em[side][n], m.r.EmDetermined[f])}
 		}
 		out = append(out, s)
 	}
@@ -141,10 +141,14 @@ func only(v []float64, ok []bool) []float64 {
 	return out
 }
 
-// maxOne returns v over its largest entry where ok.
+// maxOne returns v over its largest entry where ok, over its largest entry at all
+// where that is zero.
 func maxOne(v []float64, ok []bool) []float64 {
-	out := slices.Clone(v)
-	if top := slices.Max(only(v, ok)); top > 0 {
+	out, top := slices.Clone(v), slices.Max(only(v, ok))
+	if !(top > 0) {
+		top = slices.Max(v)
+	}
+	if top > 0 {
 		scaleBy(out, 1/top)
 	}
 	return out

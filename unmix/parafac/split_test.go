@@ -170,7 +170,7 @@ func halvesAgreeWith(t *testing.T, s Split, r *Result) {
 		t.Errorf("emission spectra have congruence %g, the split says %g", em, s.Em)
 	}
 	for _, h := range s.Spectra {
-		if top := slices.Max(only(h.Em, r.emRes[s.Component])); math.Abs(top-1) > 1e-12 {
+		if top := slices.Max(only(h.Em, r.EmDetermined[s.Component])); math.Abs(top-1) > 1e-12 {
 			t.Errorf("the largest loading of a half is %g", top)
 		}
 		for k, v := range r.Em[s.Component] {
