@@ -1,6 +1,7 @@
 package prepare_test
 
 import (
+	"fmt"
 	"maps"
 	"math"
 	"math/rand/v2"
@@ -343,6 +344,38 @@ func TestControlledDilution(t *testing.T) {
 			if said(without)[id+" "+test] > 0 || said(with)[id+" "+test] > 0 {
 				t.Errorf("%s is flagged: %s", id, test)
 			}
+		}
+	}
+}
+
+// The scan of a mercury lamp whose lines lie 1.6 nm too high is flagged for each
+// batch; one that is right to 0.3 nm is not, and a scan without lines is an error.
+func TestLamp(t *testing.T) {
+	scan := func(off float64) string {
+		var b strings.Builder
+		b.WriteString("wavelength_nm,counts\n")
+		for nm := 240.0; nm <= 600; nm += 0.5 {
+			v := 20.0
+			for i, line := range []float64{253.652, 296.728, 302.150, 334.148, 404.656, 435.833, 546.074} {
+				z := (nm - line - off) / 0.9
+				v += 1000 * float64(i+2) * math.Exp(-z*z/2)
+			}
+			fmt.Fprintf(&b, "%g,%.1f\n", nm, v)
+		}
+		return b.String()
+	}
+	for off, want := range map[float64]int{0.3: 0, 1.6: 2} {
+		s := forty(t)
+		s.Bottles = slices.DeleteFunc(s.Bottles, func(b synth.Bottle) bool { return strings.HasPrefix(b.ID, "S0") && b.ID > "S004" })
+		dir := t.TempDir()
+		if err := s.Write(dir); err != nil {
+			t.Fatal(err)
+		}
+		name := filepath.Join(dir, "survey.toml")
+		write(t, name, strings.Replace(readText(t, name), "[correct]\n", "[correct]\nlamp_scan = \"correction/lamp.csv\"\n", 1))
+		write(t, filepath.Join(dir, "correction", "lamp.csv"), scan(off))
+		if got := said(prepared(t, dir, 0))[" lamp-lines"]; got != want {
+			t.Errorf("lines off by %g nm: %d batches flagged, want %d: %v", off, got, want, flagsOf(prepared(t, dir, 0), ""))
 		}
 	}
 }

@@ -141,6 +141,9 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 		return nil, err
 	}
 	s.formBatches()
+	if err := s.checkLamps(); err != nil {
+		return nil, err
+	}
 	if err := s.chooseUnit(); err != nil {
 		return nil, err
 	}

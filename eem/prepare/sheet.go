@@ -176,7 +176,7 @@ func (s *Survey) knownFiles() map[string]bool {
 	}
 	for _, b := range s.Bottles {
 		c := b.Setting.Correct
-		out[c.ExcitationFactors], out[c.EmissionFactors] = true, true
+		out[c.ExcitationFactors], out[c.EmissionFactors], out[c.LampScan] = true, true, true
 	}
 	return out
 }

@@ -13,6 +13,7 @@ func Default() *Settings {
 			Blank:           "batch-mean",
 			BlankMaxAgeDays: 7,
 			SpectralUnits:   "photons",
+			Lamp:            "mercury",
 		},
 		Intensity: Intensity{Unit: "auto", ExcitationNM: 350, WindowNM: [2]float64{371, 428}, Baseline: "none"},
 		Scatter: Scatter{

@@ -75,6 +75,7 @@ type Correct struct {
 	BlankMaxAgeDays float64 // how old a blank may be for "latest"; 0: any age
 	Temperature     Temperature
 	SpectralUnits   string   // photons, energy: what the factors bring intensities to
+	LampScan, Lamp  string   // scan of a line lamp that checks the wavelengths, empty: none; mercury, mercury-argon
 	Off             []string // steps, of OffSteps, that are not done
 }
 

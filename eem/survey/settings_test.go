@@ -163,7 +163,8 @@ func TestEveryKey(t *testing.T) {
 		Correct: Correct{ExcitationFactors: "correction/ex.csv", EmissionFactors: "correction/em.csv",
 			InnerFilter: "front-face", ExcitationWindowCM: [2]float64{0.3, 0.7}, EmissionWindowCM: [2]float64{0.4, 0.6},
 			AbsorbanceLimit: 2, Blank: "latest", BlankMaxAgeDays: 1,
-			Temperature: Temperature{On: true, ReferenceC: 20, PercentPerC: 1.1}, SpectralUnits: "energy", Off: []string{"spikes"}},
+			Temperature: Temperature{On: true, ReferenceC: 20, PercentPerC: 1.1}, SpectralUnits: "energy",
+			LampScan: "lamp.csv", Lamp: "mercury-argon", Off: []string{"spikes"}},
 		Intensity: Intensity{Unit: "raman", ExcitationNM: 275, WindowNM: [2]float64{290, 320}, Baseline: "straight"},
 		Scatter: Scatter{
 			Rayleigh: Orders{First: Band{Below: 20, Above: 12.5}, Second: Band{Off: true}},
