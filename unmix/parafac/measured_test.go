@@ -4,6 +4,7 @@ import (
 	"encoding/csv"
 	"math"
 	"os"
+	"slices"
 	"strconv"
 	"strings"
 	"testing"
@@ -163,6 +164,50 @@ func TestMeasuredSugarProcess(t *testing.T) {
 	tellStarts(t, more)
 	if more.Loss < r.Loss*(1-1e-4) {
 		t.Errorf("60 more starts find a loss of %.6f of the one of ten", more.Loss/r.Loss)
+	}
+}
+
+// Without the ridge the models of six components with one left out lead to the best
+// five, which random starts seldom find (NUMERICS 2f). With it the best optimum,
+// 99.765 %, is another one, all of whose loadings are determined: what the six lead
+// to leans on loadings that the mask leaves open, has 0.85 % more loss, and still
+// 0.9 % more, 99.76 %, once only those are damped.
+func TestMeasuredSugarStartsFromSix(t *testing.T) {
+	set := (&Settings{RawSamples: true}).withDefaults()
+	p, err := newProblem(sugar(t), 6, &set)
+	if err != nil {
+		t.Fatal(err)
+	}
+	d := p.stacked([]*basis{compress(p.x, identity(p.i), basisRank, 0)}, nil)
+	start := func(f int, begin func(*als)) *als {
+		s := newALS(d, f, &set)
+		s.eps = 0
+		begin(s)
+		if _, err := s.iterate(t.Context(), 1e-8, 250); err != nil {
+			t.Fatal(err)
+		}
+		return s
+	}
+	six := start(6, func(s *als) { s.random(0, 1, nil) })
+	var random, left []float64
+	for n := range 10 {
+		random = append(random, start(5, func(s *als) { s.random(0, n, nil) }).loss)
+	}
+	for drop := range 6 {
+		left = append(left, start(5, func(s *als) { s.without(six, drop, nil) }).loss)
+	}
+	best := min(slices.Min(random), slices.Min(left))
+	reach := func(loss []float64) (n int) {
+		for _, v := range loss {
+			if v < best*(1+1e-3) {
+				n++
+			}
+		}
+		return n
+	}
+	t.Logf("without ridge %d of 10 random starts and %d of 6 from six components come within 0.1 %% of the best", reach(random), reach(left))
+	if reach(left) < 4 {
+		t.Errorf("%d of 6 starts from six components reach the best", reach(left))
 	}
 }
 
