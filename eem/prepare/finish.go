@@ -111,7 +111,8 @@ func (b *Bottle) toReference(s *Survey, e *eem.EEM) *eem.EEM {
 	if !t.On || b.off(stepTemperature) || b.Row.Kind == survey.Blank {
 		return e
 	}
-	rho, msg := -t.PercentPerC/100, ""
+	rho := -t.PercentPerC / 100
+	var msg string
 	switch c := b.Row.TemperatureC; {
 	case math.IsNaN(c):
 		msg = "temperature_c is empty, so that the bottle was not brought to the reference temperature; fill it in"

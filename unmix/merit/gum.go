@@ -58,8 +58,8 @@ func FromPairs(d []float64) float64 {
 	return math.Sqrt(ss / float64(2*len(d)))
 }
 
-// Standard uncertainties of what is given as a half-width a (JCGM 100:2008, 4.3)
-// or as an expanded uncertainty.
+// Rectangular is the standard uncertainty of anything within ± a, all values alike
+// (JCGM 100:2008, 4.3).
 func Rectangular(a float64) float64 { return a / math.Sqrt(3) }
 
 // Triangular is the standard uncertainty of a symmetric triangle of half-width a.

@@ -18,7 +18,7 @@ func Runs(v []float64) RunCount {
 	r := RunCount{}
 	last := 0
 	for _, x := range v {
-		s := 0
+		var s int
 		switch {
 		case x > 0:
 			s = 1

@@ -33,7 +33,7 @@ func (s *als) iterate(ctx context.Context, tol float64, max int) (bool, error) {
 			copy(s.b, plain[:n])
 			copy(s.c, plain[n:])
 			copy(s.a, a)
-			jumped, falls, run = false, 0, 0
+			falls, run = 0, 0
 			s.updateA(innerSweeps)
 		}
 		if last-s.loss <= tol*math.Abs(s.loss)+roundOff*s.x2 {

@@ -67,10 +67,9 @@ func (c *Candidate) leastSeen() (int, float64) {
 
 func (ch *Choice) words(asked, top int) string {
 	var w string
-	next := -1
+	next := 0
 	if ch.Components == 0 {
 		w = "No number of components passes."
-		next = 0
 	} else {
 		n := slices.IndexFunc(ch.Candidates, func(c *Candidate) bool { return c.Components == ch.Components })
 		w = fmt.Sprintf("%d components: %s.", ch.Components, ch.Candidates[n].Reason)

@@ -63,7 +63,7 @@ func (in *influence) tellSamples(r *Result, sb, sc []float64) {
 	}
 	for row, i := range in.sample {
 		for x, e := range in.theta {
-			se := 0.0
+			var se float64
 			if e < in.nb {
 				se = sb[e]
 			} else {
