@@ -178,7 +178,7 @@ func (s *Survey) list() error {
 		}
 		b := &Bottle{Row: row, Setting: set, Batch: batchName(row), Excluded: row.Exclude != "", Largest: nan, LinearFrom: nan, area: nan, scale: nan}
 		if b.Excluded {
-			b.flag(s, eem.Note{Test: "excluded", Severity: eem.Remark, Msg: "excluded by the sheet: " + row.Exclude})
+			b.flag(s, eem.Note{Test: "excluded", Severity: eem.Remark, Msg: "excluded: " + row.Exclude})
 		} else if row.ExcludeFromFit != "" {
 			b.flag(s, eem.Note{Test: "excluded-from-fit", Severity: eem.Remark, Msg: "left out of model, references and charts: " + row.ExcludeFromFit})
 		}

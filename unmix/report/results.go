@@ -35,6 +35,7 @@ type bottle struct {
 	at       int // in the store, −1 where it has no EEM
 	flags    []int
 	worst    eem.Severity // of the flags that are not accepted
+	excluded string       // why it takes part in nothing, empty where it does
 	of       map[*column]*contribution
 }
 
@@ -140,6 +141,9 @@ func (r *results) index() error {
 		if byID[b.id] != nil {
 			return fmt.Errorf("samples.csv: two rows of id %q; results are not edited by hand: run again", b.id)
 		}
+		if why := samples.Text(i, samples.Col("exclude")); why != "" {
+			b.excluded = "excluded: " + why
+		}
 		byID[b.id] = b
 		r.bottles = append(r.bottles, b)
 	}
@@ -165,6 +169,9 @@ func (r *results) indexFlags(byID map[string]*bottle) {
 			continue
 		}
 		b.flags = append(b.flags, i)
+		if t.Text(i, test) == "excluded" {
+			b.excluded = t.Text(i, t.Col("message"))
+		}
 		s := parseSeverity(t.Text(i, severity))
 		if _, ok := r.s.Accepts[t.Text(i, test)]; ok && s == eem.Doubt {
 			s = eem.Remark
@@ -206,6 +213,13 @@ func (r *results) indexContributions(byID map[string]*bottle) {
 			lower: t.Float(i, col["lower95"]), upper: t.Float(i, col["upper95"]), limit: t.Float(i, col["detection_limit"]),
 			qualifier: t.Text(i, col["qualifier"]), reported: t.Text(i, col["reported"]), reasons: t.Text(i, col["reasons"]),
 			detected: t.Bool(i, col["detected"]),
+		}
+		// A doubt on a model or a batch has no flag of the bottle's own.
+		switch b.of[s].qualifier {
+		case "J":
+			b.worst = max(b.worst, eem.Doubt)
+		case "R":
+			b.worst = max(b.worst, eem.Reject)
 		}
 	}
 	for _, s := range r.series {

@@ -150,10 +150,7 @@ func (r *results) remarks(x *bottle) string {
 			out = append(out, s)
 		}
 	}
-	t := r.table["samples.csv"]
-	if why := t.Text(x.row, t.Col("exclude")); why != "" {
-		say("excluded: " + why)
-	}
+	say(x.excluded)
 	f := r.table["flags.csv"]
 	for _, i := range x.flags {
 		if parseSeverity(f.Text(i, f.Col("severity"))) >= eem.Doubt {

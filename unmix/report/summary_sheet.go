@@ -70,12 +70,11 @@ func (r *results) wide(s *sheet, label, text string) {
 func (r *results) overview() [][2]string {
 	n, field, excluded := 0, 0, 0
 	count := map[eem.Severity]int{}
-	t := r.table["samples.csv"]
 	for _, b := range r.bottles {
 		switch {
 		case !b.reportable():
 			continue
-		case t.Text(b.row, t.Col("exclude")) != "":
+		case b.excluded != "":
 			excluded++
 			continue
 		case b.kind == "field-blank":
@@ -89,7 +88,7 @@ func (r *results) overview() [][2]string {
 		out[0][1] += fmt.Sprintf(", %s among them", plural(field, "field blank", "field blanks"))
 	}
 	if excluded > 0 {
-		out[0][1] += fmt.Sprintf("; %d excluded by the run sheet", excluded)
+		out[0][1] += fmt.Sprintf("; %d excluded, which take part in nothing", excluded)
 	}
 	out = append(out, [2]string{"Quality", fmt.Sprintf("%d without doubt, %d with a doubt, %d not usable", count[eem.Remark], count[eem.Doubt], count[eem.Reject])})
 	for _, m := range r.methods() {
@@ -101,8 +100,29 @@ func (r *results) overview() [][2]string {
 		}
 		out = append(out, [2]string{"Evaluation", methodName(m) + ": " + strings.Join(names, ", ")})
 	}
+	out = append(out, r.onAll()...)
 	if r.unit != "" {
 		out = append(out, [2]string{"Intensity unit", unitWords(r.unit)})
+	}
+	return out
+}
+
+// onAll tells the doubts that concern every bottle, and why the model that the
+// results rest on was chosen.
+func (r *results) onAll() [][2]string {
+	var out [][2]string
+	t := r.table["flags.csv"]
+	for i := range t.Rows {
+		_, accepted := r.s.Accepts[t.Text(i, t.Col("test"))]
+		if t.Text(i, t.Col("id")) == "" && parseSeverity(t.Text(i, t.Col("severity"))) >= eem.Doubt && !accepted {
+			out = append(out, [2]string{"Doubt on all", t.Text(i, t.Col("message"))})
+		}
+	}
+	m := r.table["models.csv"]
+	for i := range m.Rows {
+		if why := m.Text(i, m.Col("reason")); m.Bool(i, m.Col("chosen")) && why != "" {
+			out = append(out, [2]string{"Model", fmt.Sprintf("%s components: %s", m.Text(i, m.Col("components")), why)})
+		}
 	}
 	return out
 }
