@@ -157,7 +157,7 @@ func results(path string) bool {
 func (s *Survey) claimed(b *Bottle) []string {
 	out := b.claims
 	if b.Excluded {
-		out, _ = expand(s.root(), b.Row.Scans) //nolint:errcheck // what is not there is not unused
+		out, _ = expand(s.root(), b.Row.Scans) // what is not there is not unused
 	}
 	if b.Row.Absorbance != "" {
 		out = append(slices.Clip(out), filepath.Join(s.root(), filepath.FromSlash(b.Row.Absorbance)))

@@ -2,6 +2,7 @@ package prepare
 
 import (
 	"fmt"
+	"slices"
 
 	"tarnlight/eem"
 	"tarnlight/eem/correct"
@@ -77,7 +78,7 @@ func (b *Bottle) byDilution(s *Survey, e *eem.EEM) *eem.EEM {
 		out, _ = correct.ControlledDilution(other, e, 1/p)
 		out = correct.Scale(out, p, e.Unit, out.Notes[len(out.Notes)-1])
 	}
-	own := append(e.Notes[:len(e.Notes):len(e.Notes)], out.Notes[len(out.Notes)-1])
+	own := slices.Concat(e.Notes, out.Notes[len(out.Notes)-1:])
 	own[len(own)-1].Params = append(own[len(own)-1].Params, eem.Param{Name: "with", Value: o.Row.ID, Source: "run sheet: replicate_of"})
 	out.Notes = own
 	return out
