@@ -65,6 +65,7 @@ func TestApply(t *testing.T) {
 // A model does not fit another unit, other corrections, or scans that cover too
 // little of a component; the message says what to do.
 func TestApplyRefuses(t *testing.T) {
+	heavy(t)
 	model := model5(t)
 	y := newTiny()
 	dir := y.write(t)

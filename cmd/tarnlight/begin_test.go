@@ -13,6 +13,7 @@ import (
 // the draft is accepted by check and run, ids, kinds and absorbance files are
 // those of the sheet that was taken away, and nothing that is there is touched.
 func TestBeginDrafts(t *testing.T) {
+	heavy(t)
 	for _, asCSV := range []bool{false, true} {
 		dir := t.TempDir()
 		if err := synth.Demo(1).Write(dir); err != nil {

@@ -120,6 +120,7 @@ func within(t *testing.T, what string, share, lo, hi float64, n int) {
 // 60 surveys gave 96.2 % of 4,797 contributions, components 95.5 to 96.5 %; 5.7 % of
 // 1,203 absent ones detected, and 94.0 % of as many at the detection limit.
 func TestCoverageReferences(t *testing.T) {
+	heavy(t)
 	n, long := surveys(t, 4)
 	var total, small tally
 	each := map[string]*tally{}
@@ -192,6 +193,7 @@ func contributions(j *job) map[[2]string]unmix.Contribution {
 // instrument would show at the component's maximum. A survey in which a component
 // was not found again (congruence under 0.95 in either mode) is counted apart.
 func TestCoverageParafac(t *testing.T) {
+	heavy(t)
 	n, long := surveys(t, 3)
 	var total tally
 	each := map[string]*tally{}

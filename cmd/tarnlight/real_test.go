@@ -221,6 +221,7 @@ pictures = "none"
 
 // The same survey in three forms and with both decimal marks gives the same bytes.
 func TestFormsAgree(t *testing.T) {
+	heavy(t)
 	data := shared(t, "amino_acids")
 	known := aminoKnown(t, data)
 	ids := []string{"S1", "S2", "S3", "S4", "S5"}

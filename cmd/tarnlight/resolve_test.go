@@ -20,6 +20,7 @@ func resolveDemo(t *testing.T, settings string, change func(rows []string) []str
 // A bottle with exclude_from_fit is corrected, scored and reported, and the
 // spectra are those of a survey without it.
 func TestExcludeFromFit(t *testing.T) {
+	heavy(t)
 	without := resolveDemo(t, "components = 4\n", func(rows []string) []string {
 		var out []string
 		for _, r := range rows {
@@ -52,6 +53,7 @@ func TestExcludeFromFit(t *testing.T) {
 // Names that a user gave in model.json stay over a refit; a component that was
 // not there before gets a number that was never used.
 func TestNamesStay(t *testing.T) {
+	heavy(t)
 	dir := resolveDemo(t, "components = 3\n", nil)
 	path := "out/model.json"
 	put(t, dir, path, strings.Replace(read(t, dir, path), `"name": "C2"`, `"name": "sluice glow"`, 1))

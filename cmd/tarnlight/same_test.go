@@ -62,6 +62,7 @@ func sameRows(t *testing.T, what string, a, b []string) {
 // A blank turned into a field blank changes no other row: it is as if it were not
 // there.
 func TestFieldBlankIsNoBlank(t *testing.T) {
+	heavy(t)
 	id := ""
 	turned := demoFolder(t, func(rows []string) []string {
 		for i, r := range rows {
@@ -111,6 +112,7 @@ func TestWorkersDoNotMatter(t *testing.T) {
 // The absorbance given of the diluted and of the undiluted liquid is the same
 // liquid: brought to what was scanned, both give the same row.
 func TestAbsorbanceDilution(t *testing.T) {
+	heavy(t)
 	rows := map[string][]string{}
 	for _, diluted := range []bool{false, true} {
 		dir := folder(t, nil)
@@ -188,6 +190,7 @@ func parse(s string) float64 {
 // saturation) in one survey have the rows that each half has alone against the
 // same references.
 func TestSetupsAreIndependent(t *testing.T) {
+	heavy(t)
 	sv := synth.Demo(1)
 	other := *sv.Instrument
 	other.Lamp = synth.Band{synth.PeakAt(420, 9000, 1)}
