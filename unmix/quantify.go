@@ -176,7 +176,7 @@ func (q *quantifier) spread(u []float64, fit *Fit, b, x []float64, res nnls.Resu
 		}
 	}
 	fit.Condition = q.condition(w)
-	sp, err := nnls.Covariance(q.a, b, x, &nnls.Settings{Weights: w})
+	sp, err := q.batch.Covariance(b, x, nil)
 	if err != nil {
 		for f := range u {
 			u[f] = math.NaN()

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"math"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
 	"sync"
@@ -132,7 +133,7 @@ func (x *explainer) open() error {
 	if x.store, err = report.OpenStore(filepath.Join(x.out, report.StoreName)); err != nil {
 		return err
 	}
-	i := indexOf(x.store.IDs, x.id)
+	i := slices.Index(x.store.IDs, x.id)
 	if i < 0 {
 		return fmt.Errorf("%s has no bottle %q; %s", x.out, x.id, meant(x.id, x.store.IDs))
 	}

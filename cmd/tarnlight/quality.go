@@ -3,7 +3,6 @@ package main
 import (
 	"fmt"
 	"math"
-	"slices"
 
 	"tarnlight/eem"
 	"tarnlight/eem/prepare"
@@ -109,5 +108,3 @@ func (j *job) references0() *unmix.Resolution {
 	}
 	return nil
 }
-
-func indexOf(list []string, s string) int { return slices.Index(list, s) }

@@ -80,7 +80,7 @@ func runJob(ctx context.Context, s streams, o jobOptions) error {
 // printSummary ends a run: a compact table on out, what to look at first on err.
 func (j *job) printSummary(s streams) error {
 	t := newText("component", "method", "detected", "of", "lowest", "median", "highest", "unit")
-	for k, judged := range j.judge {
+	for k := range j.judge {
 		for f, c := range j.res[k].Set.Components {
 			v, n, unit := j.detectedValues(k, f)
 			row := []string{c.Name, j.res[k].Set.Method, fmt.Sprint(len(v)), fmt.Sprint(n), "", "", "", unit}
@@ -89,7 +89,6 @@ func (j *job) printSummary(s streams) error {
 			}
 			t.add(row...)
 		}
-		_ = judged
 	}
 	if err := t.print(s.out); err != nil {
 		return err
