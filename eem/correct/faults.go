@@ -85,12 +85,15 @@ func Spikes(e *eem.EEM, limit float64, avoid func(exNM, emNM float64) bool) *eem
 	for j := range e.Ex.Len() {
 		for k := range e.Em.Len() {
 			i := e.Index(j, k)
-			if !measured(e, i) || e.F[i] < dark+limit*noise || (avoid != nil && avoid(e.Ex.At(j), e.Em.At(k))) {
+			if !measured(e, i) || e.F[i] < dark+limit*noise {
 				continue
 			}
 			around, known := surroundings(e, j, k)
 			z := (e.F[i] - around) / noise
 			if !known || z <= limit || e.F[i]-around <= 0.5*math.Abs(around-dark) {
+				continue
+			}
+			if avoid != nil && avoid(e.Ex.At(j), e.Em.At(k)) { // last: it costs more than all the rest
 				continue
 			}
 			out.Drop(i, eem.Spike)
