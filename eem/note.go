@@ -104,3 +104,11 @@ type Cause struct {
 	DF     float64 // degrees of freedom of U; 0 means known without any
 	Source string  // where the figure comes from, in words
 }
+
+// Count writes a number of things: "1 sample", "2 samples".
+func Count(n int, thing string) string {
+	if n == 1 || n == -1 {
+		return fmt.Sprintf("%d %s", n, thing)
+	}
+	return fmt.Sprintf("%d %ss", n, thing)
+}

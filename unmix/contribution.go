@@ -24,3 +24,15 @@ const (
 	Unreliable  = "J"
 	NotUsable   = "R"
 )
+
+// Doubt adds reasons why the value is unreliable. One that is not usable stays
+// that, and one that is not detected stays below its limit.
+func (c *Contribution) Doubt(reasons ...string) {
+	if len(reasons) == 0 || c.Qualifier == NotUsable {
+		return
+	}
+	c.Reasons = append(c.Reasons[:len(c.Reasons):len(c.Reasons)], reasons...)
+	if c.Detected {
+		c.Qualifier = Unreliable
+	}
+}

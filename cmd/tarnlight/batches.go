@@ -52,12 +52,15 @@ func (j *job) batchTable() *report.Table {
 }
 
 // batchTests are the tests that speak of a batch and not of the water in a bottle.
-var batchTests = []string{"control-recovery", "spike-recovery", "standard-recovery", "duplicate", "field-duplicate", "chart-rule"}
+var batchTests = []string{"batch-rejected", "batch-scale", "control-action", "control-recovery", "spike-recovery", "standard-recovery",
+	"duplicate", "field-duplicate", "chart-rule", "lamp-lines"}
 
 // verdict says what a batch is worth: what reading it found, then what its quality
-// samples show, one reason a test.
+// samples show, one reason a test. A reject on the batch, or a doubt that the
+// settings make one, rejects it.
 func (j *job) verdict(bt *prepare.Batch) (string, []string) {
 	verdict, reasons := bt.Verdict()
+	rejecting := j.set.Quality.RejectBatch
 	told := map[string]int{}
 	var order []string
 	first := map[string]eem.Flag{}
@@ -69,10 +72,15 @@ func (j *job) verdict(bt *prepare.Batch) (string, []string) {
 		if f.Test == "field-blank" {
 			blank = true
 		}
-		if !slices.Contains(batchTests, f.Test) {
+		switch {
+		case f.ID == "" && f.Severity == eem.Reject || slices.Contains(rejecting, f.Test):
+			verdict = "reject"
+		case !slices.Contains(batchTests, f.Test):
 			continue
+		case verdict == "good":
+			verdict = "doubt"
 		}
-		if told[f.Test]++; told[f.Test] == 1 {
+		if told[f.Test]++; told[f.Test] == 1 && !slices.ContainsFunc(reasons, func(r string) bool { return strings.Contains(r, f.Msg) }) {
 			order, first[f.Test] = append(order, f.Test), f
 		}
 	}
@@ -82,15 +90,23 @@ func (j *job) verdict(bt *prepare.Batch) (string, []string) {
 		if n := told[test] - 1; n > 0 {
 			more = fmt.Sprintf(" (and %d more)", n)
 		}
-		reasons = append(reasons, fmt.Sprintf("%s, %s: %s%s", test, strings.TrimSpace(f.ID+" "+f.Component), f.Msg, more))
+		reasons = append(reasons, fmt.Sprintf("%s: %s%s", joined(test, strings.TrimSpace(f.ID+" "+f.Component)), f.Msg, more))
 	}
 	if blank {
 		reasons = append(reasons, "a field blank holds what some of its samples hold little more of")
 	}
-	if verdict == "good" && (len(order) > 0 || blank) {
+	if verdict == "good" && blank {
 		verdict = "doubt"
 	}
 	return verdict, reasons
+}
+
+// joined puts a comma between what is not empty.
+func joined(a, b string) string {
+	if b == "" {
+		return a
+	}
+	return a + ", " + b
 }
 
 // charts lists every quality variable: those of the blanks, recoveries of controls
@@ -120,7 +136,7 @@ func (j *job) charts() []prepare.Chart {
 func (j *job) duplicateCharts() []prepare.Chart {
 	var out []prepare.Chart
 	at := map[[3]string]int{}
-	for _, d := range j.duplicates() {
+	for _, d := range j.allDuplicates() {
 		key := [3]string{d.test, d.method, d.component}
 		k, ok := at[key]
 		if !ok {

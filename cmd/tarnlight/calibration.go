@@ -134,6 +134,11 @@ func (j *job) recoveryFlags() []eem.Flag {
 		}
 		out = append(out, j.sv.Accept(eem.Flag{ID: g.bottle.Row.ID, Batch: g.bottle.Batch, Component: g.component, Method: "references", Test: g.test,
 			Severity: eem.Doubt, Value: g.recovery(), Limit: g.limit, Msg: msg}))
+		if act := j.sv.Limit("control-action"); g.test == "control-recovery" && math.Abs(g.recovery()-100) > act {
+			out = append(out, j.sv.Accept(eem.Flag{Batch: g.bottle.Batch, Component: g.component, Method: "references", Test: "control-action",
+				Severity: eem.Reject, Value: g.recovery(), Limit: act,
+				Msg: fmt.Sprintf("%.1f %% of the %s given was found in control %s, beyond the action limits of %g–%g %%; look for the cause and measure the batch again", g.recovery(), g.component, g.bottle.Row.ID, 100-act, 100+act)}))
+		}
 	}
 	return out
 }

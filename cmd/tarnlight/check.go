@@ -41,7 +41,7 @@ func runCheck(ctx context.Context, s streams, o jobOptions) error {
 	j.flags = j.sv.Flags
 	t := newText("batch", "bottles", "blanks", "unit", "verdict", "why")
 	for _, bt := range j.sv.Batches {
-		verdict, why := bt.Verdict()
+		verdict, why := j.verdict(bt)
 		reason := ""
 		if len(why) > 0 {
 			reason = why[0]
@@ -99,7 +99,7 @@ func printFindings(w io.Writer, flags []eem.Flag) error {
 			}
 			who := ""
 			if len(ids) > 0 {
-				who = fmt.Sprintf("%s (%s): ", count(len(ids), "bottle"), some(ids))
+				who = fmt.Sprintf("%s (%s): ", eem.Count(len(ids), "bottle"), some(ids))
 			}
 			if _, err := fmt.Fprintf(w, "%s: %s%s (%s)\n", sev, who, list[0].Msg, test); err != nil {
 				return err

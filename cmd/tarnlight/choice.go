@@ -61,25 +61,17 @@ func (j *job) choose(ctx context.Context, fit *eem.Cube, c survey.Components, se
 	case stated && because != "":
 		fmt.Fprintf(j.bar, "%d components, because: %s\nthe tests say: %s\n", n, because, ch.Verdict)
 		if passes != "" {
-			doubt(eem.Remark, "%s, chosen because: %s; they do not pass every test: %s", count(n, "component"), because, passes)
+			doubt(eem.Remark, "%s, chosen because: %s; they do not pass every test: %s", eem.Count(n, "component"), because, passes)
 		}
 	case stated && passes != "":
-		doubt(eem.Doubt, "the stated %s do not pass every test: %s; %s, or give the reason for the number ([resolve] choose and because)", count(n, "component"), passes, remedy)
+		doubt(eem.Doubt, "the stated %s do not pass every test: %s; %s, or give the reason for the number ([resolve] choose and because)", eem.Count(n, "component"), passes, remedy)
 	case n == 0 && !stated:
 		j.fit = j.fits[0]
-		doubt(eem.Doubt, "%s %s are shown all the same: %s, or choose a number with a reason ([resolve] choose and because)", strings.TrimRight(ch.Verdict, ".; ")+".", count(j.fit.Components, "component"), remedy)
+		doubt(eem.Doubt, "%s %s are shown all the same: %s, or choose a number with a reason ([resolve] choose and because)", strings.TrimRight(ch.Verdict, ".; ")+".", eem.Count(j.fit.Components, "component"), remedy)
 	default:
 		fmt.Fprintf(j.bar, "%s\n", ch.Verdict)
 	}
 	return nil
-}
-
-// count gives a number with its noun.
-func count(n int, noun string) string {
-	if n == 1 {
-		return "1 " + noun
-	}
-	return fmt.Sprintf("%d %ss", n, noun)
 }
 
 // splits says which bottles belong together and which columns part them.

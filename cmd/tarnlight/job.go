@@ -339,6 +339,7 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 	}
 	j.res = append(j.res, r)
 	j.judge = append(j.judge, judged)
+	j.qualify(len(j.res) - 1)
 	return nil
 }
 
@@ -368,7 +369,9 @@ func (j *job) reach(bottles []merit.Bottle, method string, extra []eem.Flag) {
 			}
 		}
 	}
+	batch := j.batchDoubts()
 	for i := range bottles {
+		bottles[i].Doubts = append(bottles[i].Doubts, batch[bottles[i].Batch]...)
 		for _, f := range extra {
 			if f.ID == bottles[i].ID && f.Severity == eem.Doubt {
 				bottles[i].Doubts = append(bottles[i].Doubts, f.Msg)

@@ -3,6 +3,7 @@ package main
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 	"testing"
 
@@ -84,6 +85,73 @@ func TestQualitySamples(t *testing.T) {
 				t.Errorf("verdict %q: %s", verdict, reason)
 			}
 		})
+	}
+}
+
+// A quality sample that is off makes the values that it speaks of unreliable, and
+// no others (rules of concerns).
+func TestQualityReaches(t *testing.T) {
+	for _, c := range []struct {
+		name string
+		add  func(y *tiny)
+		want string // "id component" of every J, sorted
+	}{
+		{"control", func(y *tiny) { y.watch("C1", "control", 1.75, 1, "1.5,1", ",,,one") }, "C1 a,W1 a,W2 a"},
+		{"spike", func(y *tiny) { y.watch("W1S", "spike", 2.2, 0.5, "1,", ",,W1,one") }, "W1 a,W1S a"},
+		{"duplicate", func(y *tiny) { y.watch("W1R", "sample", 1.9, 0.5, "", "W1,laboratory,,one") }, "W1 a,W1R a"},
+		{"field blank", func(y *tiny) { y.watch("FB", "field-blank", 0.12, 0, "", ",,,one") }, "W2 a"},
+	} {
+		y := watched()
+		c.add(y)
+		dir := y.write(t)
+		call("quantify", dir, "--pictures=false").want(t, exitDoubt)
+		if got := unreliable(t, dir); got != c.want {
+			t.Errorf("%s: unreliable are %q, want %q", c.name, got, c.want)
+		}
+	}
+}
+
+// unreliable lists "id component" of every J that is no standard's, sorted.
+func unreliable(t *testing.T, dir string) string {
+	t.Helper()
+	tab := table(t, dir, "out", "contributions.csv")
+	var out []string
+	for _, r := range tab.Rows {
+		if r[tab.Col("qualifier")] == "J" && r[tab.Col("reasons")] == "" {
+			t.Errorf("%v has no reason", r)
+		}
+		if r[tab.Col("qualifier")] == "J" {
+			out = append(out, r[0]+" "+r[1])
+		}
+	}
+	slices.Sort(out)
+	return strings.Join(out, ",")
+}
+
+// A control beyond its action limit rejects its batch, and so does a test that the
+// settings name; a reject on the batch rejects no bottle.
+func TestBatchRejected(t *testing.T) {
+	for _, c := range []struct {
+		name, settings, verdict, reason string
+		found                           float64 // of 1.5 given
+	}{
+		{"in doubt", "", "doubt", "control-recovery", 1.75},
+		{"beyond action", "", "reject", "control-action", 1.95},
+		{"limit set", "[quality]\nlimit = {control-action = 15}\n", "reject", "control-action", 1.75},
+		{"test named", "[quality]\nreject_batch = [\"control-recovery\"]\n", "reject", "control-recovery", 1.75},
+	} {
+		y := watched()
+		y.watch("C1", "control", c.found, 1, "1.5,1", ",,,one")
+		dir := y.write(t)
+		put(t, dir, "survey.toml", read(t, dir, "survey.toml")+c.settings)
+		call("quantify", dir, "--pictures=false").want(t, exitDoubt)
+		b := table(t, dir, "out", "batches.csv")
+		if v, why := b.Rows[0][b.Col("verdict")], b.Rows[0][b.Col("reason")]; v != c.verdict || !strings.Contains(why, c.reason) {
+			t.Errorf("%s: verdict %q: %s", c.name, v, why)
+		}
+		if s := read(t, dir, "out", "status.json"); !strings.Contains(s, `"rejected": []`) {
+			t.Errorf("%s: a bottle is rejected: %s", c.name, s)
+		}
 	}
 }
 

@@ -272,7 +272,10 @@ func (j *job) worst(n int) []eem.Flag {
 
 func flagLine(f eem.Flag) string {
 	who := f.ID
-	if who == "" {
+	switch {
+	case who == "" && f.Batch != "":
+		who = "batch " + f.Batch
+	case who == "":
 		who = "survey"
 	}
 	return fmt.Sprintf("%s: %s (%s)", who, f.Msg, f.Test)
@@ -287,9 +290,9 @@ func (j *job) collectFlags() {
 		j.flags = append(j.flags, judged.Flags...)
 	}
 	j.flags = append(j.flags, own...)
-	j.flags = append(j.flags, j.recoveryFlags()...)
-	j.flags = append(j.flags, j.duplicateFlags()...)
-	j.flags = append(j.flags, j.fieldBlankFlags()...)
+	for k := range j.res {
+		j.flags = append(j.flags, j.qualityFlags(k)...)
+	}
 	j.flags = append(j.flags, j.chartFlags()...)
 	j.flags = append(j.flags, j.opticsFlags()...)
 }

@@ -3,6 +3,7 @@ package prepare
 import (
 	"fmt"
 	"math"
+	"path/filepath"
 	"sort"
 
 	"tarnlight/eem"
@@ -284,23 +285,15 @@ func (s *Survey) compareGrid(b *Bottle) {
 	}
 }
 
-// Verdict says in one word what a batch is worth, and why.
+// Verdict says in one word what a batch is worth by its reading, and why; what
+// checkBatches found on it as a whole is not among the reasons.
 func (bt *Batch) Verdict() (verdict string, reasons []string) {
 	verdict = "good"
-	rejected := 0
-	for _, b := range bt.Bottles {
-		if b.Rejected {
-			rejected++
-		}
-	}
-	if first := bt.Bottles[0]; bt.Reason != "" && bt.Unit == eem.Counts && first.Setting.Intensity.Unit != "counts" && !first.skips(stepIntensity) {
+	if bt.lacksScale() {
 		verdict, reasons = "doubt", append(reasons, "no intensity scale: "+bt.Reason)
 	}
-	if rejected > 0 {
-		reasons = append(reasons, fmt.Sprintf("%d of %d bottles rejected", rejected, len(bt.Bottles)))
-	}
-	if rejected == len(bt.Bottles) {
-		verdict = "reject"
+	if n := bt.rejected(); n > 0 {
+		reasons = append(reasons, fmt.Sprintf("%d of %s rejected", n, eem.Count(len(bt.Bottles), "bottle")))
 	}
 	for _, b := range bt.Blanks {
 		for _, f := range b.Flags {
@@ -310,6 +303,43 @@ func (bt *Batch) Verdict() (verdict string, reasons []string) {
 		}
 	}
 	return verdict, reasons
+}
+
+// rejected counts the batch's bottles of which nothing can be used.
+func (bt *Batch) rejected() int {
+	n := 0
+	for _, b := range bt.Bottles {
+		if b.Rejected {
+			n++
+		}
+	}
+	return n
+}
+
+// lacksScale says whether the batch should have got an intensity scale and did not.
+func (bt *Batch) lacksScale() bool {
+	first := bt.Bottles[0]
+	return bt.Reason != "" && bt.Unit == eem.Counts && first.Setting.Intensity.Unit != "counts" && !first.skips(stepIntensity)
+}
+
+// checkBatches rejects batches that cannot be used as they are: most of their
+// bottles failed, or nothing brings them to the scale of the others.
+func (s *Survey) checkBatches() {
+	limit := s.Limit("batch-rejected")
+	reject := func(bt *Batch, n eem.Note) {
+		n.Severity, n.File = eem.Reject, filepath.ToSlash(filepath.Base(s.Sheet.Path))
+		s.Flags = append(s.Flags, eem.FlagFrom(n, "", bt.Name))
+	}
+	for _, bt := range s.Batches {
+		if n := bt.rejected(); float64(n) > limit*float64(len(bt.Bottles)) {
+			reject(bt, eem.Note{Test: "batch-rejected", Measure: true, Value: float64(n) / float64(len(bt.Bottles)), Limit: limit,
+				Msg: fmt.Sprintf("%d of %s rejected; look for a common cause and measure the batch again", n, eem.Count(len(bt.Bottles), "bottle"))})
+		}
+		if bt.lacksScale() && len(s.Batches) > 1 {
+			reject(bt, eem.Note{Test: "batch-scale", Msg: fmt.Sprintf("%s: no blank was subtracted and nothing brings its intensities to the scale of the other batches; "+
+				"name a blank of another batch in the blanks column, measure the batch again, or leave it out with exclude", bt.Reason)})
+		}
+	}
 }
 
 // ScaleU returns the relative standard uncertainty of the batch's scale, NaN

@@ -161,6 +161,7 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 		b.raw, b.scanned, b.counts, b.gain = nil, nil, nil, nil
 	}
 	s.inherit()
+	s.checkBatches()
 	s.sameContent()
 	s.compareDilutions()
 	s.unusedFiles()

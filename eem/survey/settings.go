@@ -168,7 +168,14 @@ type Uncertainty struct {
 type Quality struct {
 	Limit  map[string]float64 // limit in force of every test that has one, but for correct.absorbance_limit
 	Accept map[string]string  // code → reason: the doubt is only a note here; nil when none is
+	// RejectBatch are tests, of RejectingTests, a doubt of which rejects the batch.
+	RejectBatch []string
 }
+
+// RejectingTests are the tests on blanks and quality samples that
+// quality.reject_batch may hold.
+var RejectingTests = []string{"blank-drift", "blank-level", "chart-rule", "control-recovery", "duplicate", "field-duplicate", "lamp-lines",
+	"no-blank", "raman-law", "spike-recovery", "standard-recovery", "wavelength"}
 
 // Report holds what goes on the report as it is, and how numbers look there.
 type Report struct {
