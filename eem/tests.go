@@ -45,6 +45,7 @@ var Tests = sortTests([]Test{
 	{"reference-clipped", Doubt, 0, "cells", "saturated or over-absorbing cells of a standard were left out of the reference", "-"},
 	{"reference-intercept", Doubt, 3, "standard errors", "the standards' own line does not pass through zero", "common practice, no source"},
 	{"reference-levels", Remark, 2, "levels", "a reference rests on fewer levels than this", "-"},
+	{"limits-low", Remark, 2, "times", "the laboratory's own critical value of a component is this many times below what the budgets of most samples give: a limit from pure water says nothing of what else is in a bottle", "common practice, no source"},
 	{"few-cells", Reject, 0, "cells", "fewer cells than components are left", "-"},
 	{"overlap", Doubt, 30, "", "condition number of the unit-norm components above the limit: they cannot be told apart well", "Belsley, Kuh & Welsch 1980 (from memory)"},
 	{"unexplained", Doubt, 0.9, "", "share of the bottle's signal explained by the model below the limit", "common practice, no source"},

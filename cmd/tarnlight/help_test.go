@@ -55,6 +55,12 @@ func TestExamplesRun(t *testing.T) {
 			curve(t, "red.csv", 480, 600, 5, 0.02, bell(540, 40))
 			curve(t, "redscan.csv", 480, 600, 5, 0.02, bell(540, 40))
 		},
+		"limits": func() {
+			if err := lowStudy(3, 1).Write("mystudy"); err != nil {
+				t.Fatal(err)
+			}
+			runNoPictures(t, "mystudy")
+		},
 		"settings": func() {}, "tests": func() {}, "completion": func() {}, "demo": func() {},
 	}
 	for _, c := range newRoot(streams{}).Commands() {

@@ -26,7 +26,7 @@ func (j *job) write(stage *outdir.Staging) error {
 	dir := stageDir(stage)
 	for _, t := range []*report.Table{
 		j.contributionTable(), j.sampleTable(), j.flagTable(), j.componentTable(), j.modelTable(), j.splitTable(),
-		j.splitSpectra(), j.batchTable(), j.calibrationTable(), j.chartTable(), j.budgetTable(), j.stepTable(),
+		j.splitSpectra(), j.batchTable(), j.calibrationTable(), j.chartTable(), j.budgetTable(), j.stepTable(), j.limitsTable(),
 	} {
 		if err := t.WriteFile(dir); err != nil {
 			return err
@@ -293,6 +293,7 @@ func (j *job) collectFlags() {
 	for k := range j.res {
 		j.flags = append(j.flags, j.qualityFlags(k)...)
 	}
+	j.flags = append(j.flags, j.limitsLowFlags()...)
 	j.flags = append(j.flags, j.chartFlags()...)
 	j.flags = append(j.flags, j.opticsFlags()...)
 }

@@ -154,6 +154,10 @@ func (b *bottle) ownLimits(f int) {
 	if !ok {
 		return
 	}
+	if b.out.Computed == nil {
+		b.out.Computed = make([]Limits, b.e.n)
+	}
+	b.out.Computed[f] = Limits{b.out.Critical[f], b.out.Detection[f], b.out.Quantifiable[f]}
 	for _, v := range []struct {
 		to  *float64
 		own float64

@@ -18,14 +18,6 @@ func Currie(s0 float64) Limits {
 	return Limits{kCritical * s0, kDetect * s0, kQuantify * s0}
 }
 
-// CurrieBlanks gives the limits from the standard deviation s of n replicate blanks
-// whose mean is subtracted: s0 = s√(1 + 1/n), Student's t with n−1 degrees of
-// freedom, and the non-centrality in place of 3.29.
-func CurrieBlanks(s float64, n int) Limits {
-	s0, nu := s*math.Sqrt(1+1/float64(n)), float64(n-1)
-	return Limits{TQuantile(0.95, nu) * s0, Delta(nu, 0.05, 0.05) * s0, kQuantify * s0}
-}
-
 // CurrieCounts gives the limits of a count above a paired background of B counts:
 // k√(2B), k² + 2k√(2B), 50(1 + √(1 + 2B/25)) (Currie 1968).
 func CurrieCounts(background float64) Limits {
@@ -82,6 +74,7 @@ func NoncentralT(t, nu, delta float64) float64 {
 type ISO struct {
 	Critical, Detectable float64 // net amounts x_c and x_d
 	Response             float64 // y_c, critical value of the signal
+	SD                   float64 // of the residuals, in the unit of the signal
 	DF                   float64
 }
 
@@ -91,7 +84,7 @@ type ISO struct {
 func ISO11843(x, y []float64, k int) ISO {
 	n := float64(len(x))
 	nan := math.NaN()
-	out := ISO{nan, nan, nan, n - 2}
+	out := ISO{nan, nan, nan, nan, n - 2}
 	if len(x) < 3 {
 		return out
 	}
@@ -114,6 +107,7 @@ func ISO11843(x, y []float64, k int) ISO {
 	s := math.Sqrt(rss / (n - 2))
 	root := math.Sqrt(1/float64(k) + 1/n + mx*mx/sxx)
 	t := TQuantile(0.95, n-2)
+	out.SD = s
 	out.Response = my - slope*mx + t*s*root
 	out.Critical = t * s / slope * root
 	out.Detectable = Delta(n-2, 0.05, 0.05) * s / slope * root

@@ -75,6 +75,7 @@ type Spread struct {
 	U, DF                             []float64 // combined standard uncertainty, effective degrees of freedom
 	Lower, Upper                      []float64 // of the 95 % interval, 0 or more
 	Critical, Detection, Quantifiable []float64
+	Computed                          []Limits  // what the budget gives where the laboratory's own limits took its place; nil elsewhere
 	Cov                               []float64 // F × F covariance of the contributions above zero
 	Terms                             []Term    // largest first for the first component; not given ones last
 	Sums                              []Sum     // of the pairs that cannot be told apart

@@ -21,6 +21,7 @@ func (r *results) writeWorkings(p *pass) error {
 	r.thumbnailSheet(b, p)
 	r.opticsSheet(b)
 	r.tableSheet(b, "Budget", "budget.csv", "Uncertainty by cause")
+	r.tableSheet(b, "Limits", "limits.csv", "Limits of detection: those in force, and the published forms beside them")
 	r.tableSheet(b, "Batches", "batches.csv", "Batches")
 	r.tableSheet(b, "Calibration", "calibration.csv", "Given, found and recovery of standards, controls and spikes")
 	r.tableSheet(b, "Samples", "samples.csv", "Run sheet and fit, one row a bottle")
