@@ -277,6 +277,13 @@ func (j *job) references() (*unmix.Set, error) {
 			j.refs.Row = append(j.refs.Row, j.row[b])
 		}
 	}
+	for _, st := range standards {
+		given := make([]float64, len(names))
+		for f, name := range names {
+			given[f] = st.Conc[name]
+		}
+		j.refs.Given = append(j.refs.Given, given)
+	}
 	return set, nil
 }
 
@@ -332,9 +339,10 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 		bottles = append(bottles, j.merit(b))
 	}
 	j.reach(bottles, method, extra)
-	spreads := merit.Spreads(j.cube, r, j.sources(method))
+	src := j.sources(r)
+	spreads := merit.Spreads(j.cube, r, src)
 	judged := merit.Judge(r, spreads, bottles, j.cube.Sample, j.sv.Limit, j.sv.Accept, set.Origin)
-	if err := j.unknowns(judged, r, bottles, set.Origin); err != nil {
+	if err := j.unknowns(judged, r, bottles, src, set.Origin); err != nil {
 		return err
 	}
 	j.res = append(j.res, r)

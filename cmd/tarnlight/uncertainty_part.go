@@ -3,21 +3,24 @@ package main
 import (
 	"tarnlight/eem"
 	"tarnlight/eem/survey"
+	"tarnlight/unmix"
 	"tarnlight/unmix/merit"
 	"tarnlight/unmix/report"
 )
 
-// sources gathers what is known of the errors behind the contributions of a method.
-func (j *job) sources(method string) *merit.Sources {
+// sources gathers what is known of the errors behind the contributions of a
+// resolution.
+func (j *job) sources(r *unmix.Resolution) *merit.Sources {
 	n := j.cube.Len()
 	s := &merit.Sources{Causes: make([][]eem.Cause, n), BlankSet: make([]string, n), Factor: make([]float64, n), Blank: make([]bool, n),
 		BlankU: j.sv.BlankU, Seed: j.set.Resolve.Seed, Limits: j.limits}
 	for b, i := range j.row {
 		s.Causes[i], s.BlankSet[i], s.Factor[i], s.Blank[i] = b.Causes, b.BlankSet, b.Undiluted(), b.Row.Kind == survey.Blank
 	}
-	switch method {
+	switch r.Set.Method {
 	case "references":
 		s.References = j.refs
+		s.Scatter = merit.Scatters(j.cube, r, s)
 		if d := j.set.Uncertainty.StandardsPercent; d.Given {
 			s.Stock = d.Value / 100
 		} else {

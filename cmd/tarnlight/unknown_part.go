@@ -13,7 +13,7 @@ import (
 
 // unknowns looks for components that the model lacks in the bottles that should be
 // like it.
-func (j *job) unknowns(judged *merit.Judged, r *unmix.Resolution, bottles []merit.Bottle, model string) error {
+func (j *job) unknowns(judged *merit.Judged, r *unmix.Resolution, bottles []merit.Bottle, src *merit.Sources, model string) error {
 	if j.applied != nil {
 		return nil // a bottle scored on a fixed model has nothing to do with the others
 	}
@@ -24,7 +24,7 @@ func (j *job) unknowns(judged *merit.Judged, r *unmix.Resolution, bottles []meri
 			rows = append(rows, b.Row)
 		}
 	}
-	us, err := merit.FindUnknowns(j.cube, r, rows, j.sources(r.Set.Method), judged.Spreads)
+	us, err := merit.FindUnknowns(j.cube, r, rows, src, judged.Spreads)
 	if err != nil {
 		return err
 	}

@@ -19,7 +19,7 @@ func search(t testing.TB, j *job) *merit.Unknown {
 			rows = append(rows, j.row[b])
 		}
 	}
-	u, err := merit.FindUnknown(j.cube, j.res[0], rows, j.sources(j.res[0].Set.Method), j.judge[0].Spreads)
+	u, err := merit.FindUnknown(j.cube, j.res[0], rows, j.sources(j.res[0]), j.judge[0].Spreads)
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -22,6 +22,7 @@ type Design struct {
 	Brown   float64 // A254 of coloured matter that does not fluoresce, its mean over the samples
 
 	Stock float64 // relative standard deviation of a component's stock solution, shared by its levels
+	Dose  float64 // relative standard deviation of every single standard's amount beside that
 	Stand float64 // relative standard deviation of how a bottle stands in the beam
 
 	Instrument *Instrument // nil means NewInstrument()
@@ -30,7 +31,7 @@ type Design struct {
 }
 
 // Survey draws the survey. What the run sheet says of the standards is their
-// nominal concentration; the bottles hold what the erring stock gave.
+// nominal concentration; the bottles hold what the erring stock and hand gave.
 func (d Design) Survey() *Survey {
 	d = d.withDefaults()
 	rnd := rand.New(rand.NewPCG(d.Seed, streamDemo+1))
@@ -40,6 +41,7 @@ func (d Design) Survey() *Survey {
 		s.Components = append(s.Components, levels[f].of)
 		stock[f] = 1 + d.Stock*rnd.NormFloat64()
 	}
+	dosing := rand.New(rand.NewPCG(d.Seed, streamDemo+2)) // of its own, so that the rest of a survey is the same with and without
 	days := make([][]Bottle, d.Days)
 	for day := range days {
 		for n := range d.Blanks {
@@ -51,7 +53,7 @@ func (d Design) Survey() *Survey {
 			amount := l.amount[3] * float64(n+1) / float64(d.Levels)
 			day := (n + f) % d.Days
 			days[day] = append(days[day], Bottle{ID: fmt.Sprintf("%s-%d", l.code, n+1), Kind: "standard",
-				Liquid: Liquid{Doses: []Dose{{l.of, amount * stock[f]}}}, Known: []Dose{{l.of, amount}}})
+				Liquid: Liquid{Doses: []Dose{{l.of, amount * stock[f] * (1 + d.Dose*dosing.NormFloat64())}}}, Known: []Dose{{l.of, amount}}})
 		}
 	}
 	for i := range d.Samples {

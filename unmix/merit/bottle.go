@@ -34,27 +34,40 @@ type bottle struct {
 	sources []source
 	own     []float64 // K'VK of the cells' own noise
 	silent  []Term    // of causes whose size nobody stated
+	repeats bool      // how the bottle repeats itself is taken from the standards
 	out     Spread
 }
 
 // spread judges row i.
 func (w *worker) spread(i int) Spread {
+	b := w.bottle(i)
+	if b.m != nil {
+		b.gather()
+		b.combine()
+	}
+	return b.out
+}
+
+// bottle begins row i; its m is nil where the bottle was not usable.
+func (w *worker) bottle(i int) *bottle {
 	n := w.e.n
 	b := &bottle{worker: w, i: i, x: w.e.r.Value[i*n : (i+1)*n]}
 	for _, v := range []*[]float64{&b.out.U, &b.out.DF, &b.out.Lower, &b.out.Upper, &b.out.Critical, &b.out.Detection, &b.out.Quantifiable, &b.out.Cov} {
 		*v = nans(n)
 	}
 	b.out.NoiseRMS, b.out.ChiSquare = math.NaN(), math.NaN()
-	if !w.e.r.Fits[i].Usable {
-		return b.out
+	if w.e.r.Fits[i].Usable {
+		b.m = w.e.maskOf(i)
 	}
-	b.m = w.e.maskOf(i)
+	return b
+}
+
+// gather lists the sources.
+func (b *bottle) gather() {
 	b.noise()
 	b.blanks()
 	b.references()
 	b.shared()
-	b.combine()
-	return b.out
 }
 
 func nans(n int) []float64 {
@@ -332,6 +345,7 @@ func (b *bottle) references() {
 	if b.m.ref != nil {
 		b.add("noise of the standards", "standard", 0, "noise model of the blanks", tensor(b.m.ref, n))
 	}
+	b.scatter()
 	if b.m.apart != nil {
 		b.add("absorbance noise of the standards", "standard", 0, "roughness of the absorbance spectrum", tensor(b.m.apart, n))
 	}
@@ -386,6 +400,9 @@ func (b *bottle) shared() {
 	}
 	done := map[int]bool{}
 	for _, c := range e.causesOf(b.i) {
+		if c.U != c.U && b.repeats && c.Name == CauseRepeat {
+			continue
+		}
 		if c.U != c.U {
 			b.silent = append(b.silent, Term{Cause: c.Name, Scope: scopes[c.Scope], Source: "not given"})
 			continue

@@ -33,6 +33,8 @@ type engine struct {
 
 	causes []shared    // of the standards
 	place  map[id]int  // in causes
+	doses  []dose      // of the standards
+	groups []Scatter   // the different sizes of their scatter
 	blanks []string    // blank sets that act, in order of appearance
 	blankV [][]float64 // variance on cells, one a blank set
 	draws  []float64   // standard normal, for Monte Carlo
@@ -134,6 +136,7 @@ func newEngine(c *eem.Cube, r *unmix.Resolution, src *Sources) *engine {
 		}
 	}
 	e.listBlanks()
+	e.listDoses()
 	e.pairs = Pairs(r.Set)
 	e.draws = normals(src.Seed, drawn*e.n)
 	return e
@@ -195,15 +198,18 @@ type mask struct {
 	use   []int32   // of engine.cells
 	gram  []float64 // K'K
 	q     [][]float64
+	dose  [][]float64 // by dose: what a relative error of it does to K'K
 	ref   []float64   // [h][h'][g][g']: noise of the references
 	load  []float64   // the same: loadings
 	apart []float64   // the same: errors of the standards that each wavelength has for itself
-	kx    []float64   // [j][h][g]: Σ K_h K_g over the cells of one excitation
-	km    []float64   // [k][h][g]: of one emission
-	b0    [][]float64 // by blank set: K'VK
-	b1    [][]float64 // by blank set: [h][h'][g]
-	b2    []float64   // [h][h'][g][g'], all sets
-	sums  sums
+	// scatter, by group, is the same: the standards' own scatter.
+	scatter [][]float64
+	kx      []float64   // [j][h][g]: Σ K_h K_g over the cells of one excitation
+	km      []float64   // [k][h][g]: of one emission
+	b0      [][]float64 // by blank set: K'VK
+	b1      [][]float64 // by blank set: [h][h'][g]
+	b2      []float64   // [h][h'][g][g'], all sets
+	sums    sums
 }
 
 // sums are the same variances summed over the cells, for what noise should leave of
@@ -330,12 +336,18 @@ func (m *mask) standards(e *engine) {
 	}
 	c := standardCell{e: e, setOf: setOf, cov: make([]float64, n*n), w: make([]float64, n*len(refs.Row)), blank: make([]float64, n*max(1, len(e.blanks)))}
 	c.apart = make([][]float64, len(refs.Row))
+	m.dose = make([][]float64, len(e.doses))
+	for z := range m.dose {
+		m.dose[z] = make([]float64, n*n)
+	}
 	for _, l := range m.use {
 		c.read(l)
 		c.shared(m, l, of)
+		c.doses(m, l)
 		c.noise(m, l)
 	}
 	c.apartTo(m, of)
+	m.scatterTo(e)
 }
 
 // standardCell is one cell on its way into the references.

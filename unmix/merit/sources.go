@@ -30,6 +30,10 @@ type Sources struct {
 	Stock        float64
 	StockMissing bool
 
+	// Scatter, by component, is how far single standards are off their line beyond
+	// their budget (Scatters); nil where that was not asked.
+	Scatter []Scatter
+
 	// Limits are the laboratory's own, by component; they replace the computed ones.
 	// What is NaN among them stays computed.
 	Limits map[string]Limits
@@ -41,6 +45,9 @@ type Sources struct {
 type References struct {
 	Weights *unmix.Weights
 	Row     []int // of the cube, one a standard in the order of Weights
+	// Given, by standard, holds the amounts of the components in the bottle, 0 where
+	// it has none; nil where nobody asks how standards scatter.
+	Given [][]float64
 }
 
 // Loadings give, for every sample l that a model was fitted to, how far the
