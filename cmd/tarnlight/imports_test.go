@@ -37,12 +37,13 @@ var packages = []struct{ name, may string }{
 	{"unmix", "gonum eem nnls"},
 	{"unmix/parafac", "gonum eem nnls unmix"},
 	{"unmix/merit", "gonum eem nnls unmix"},
+	{"unmix/plan", "gonum eem eem/scatter eem/correct unmix unmix/merit"},
 	{"unmix/outdir", ""}, // knows no spectroscopy
-	{"unmix/report", "gonum plot fonts excelize eem eem/netcdf eem/optics eem/survey unmix unmix/parafac unmix/merit"},
+	{"unmix/report", "gonum plot fonts excelize eem eem/netcdf eem/optics eem/survey unmix unmix/parafac unmix/merit unmix/plan"},
 
 	{"cmd/tarnlight", "gonum excelize toml text term cobra " +
 		"eem eem/netcdf eem/scanfile eem/correct eem/scatter eem/optics eem/synth eem/survey eem/prepare " +
-		"nnls unmix unmix/parafac unmix/merit unmix/outdir unmix/report"},
+		"nnls unmix unmix/parafac unmix/merit unmix/plan unmix/outdir unmix/report"},
 }
 
 // modules gives the short names of the table above as import path prefixes.

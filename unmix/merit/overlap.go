@@ -99,6 +99,10 @@ func cosines(v [][]float64) []float64 {
 // apart (Belsley, Kuh & Welsch 1980; from memory).
 const maxVIF = 10
 
+// AlikeIn lists the pairs that cannot be told apart among the columns of K whose Gram
+// matrix KᵀK, n × n, is given.
+func AlikeIn(gram []float64, n int) []Alike { return alike(gram, n, maxVIF) }
+
 // Alike is a pair of components that cells cannot tell apart.
 type Alike struct {
 	F, H        int
