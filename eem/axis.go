@@ -1,6 +1,7 @@
 package eem
 
 import (
+	"encoding/binary"
 	"encoding/json"
 	"errors"
 	"fmt"
@@ -136,6 +137,29 @@ func (a *Axis) UnmarshalJSON(b []byte) error {
 	var nm []float64
 	if err := json.Unmarshal(b, &nm); err != nil {
 		return err
+	}
+	v, err := NewAxis(nm)
+	if err == nil {
+		*a = v
+	}
+	return err
+}
+
+// MarshalBinary writes the wavelengths, 8 bytes each.
+func (a Axis) MarshalBinary() ([]byte, error) {
+	return binary.Append(make([]byte, 0, 8*len(a.nm)), binary.LittleEndian, a.nm)
+}
+
+// UnmarshalBinary reads what MarshalBinary wrote and checks it like NewAxis; no
+// bytes are the empty Axis.
+func (a *Axis) UnmarshalBinary(b []byte) error {
+	if len(b) == 0 {
+		*a = Axis{}
+		return nil
+	}
+	nm := make([]float64, len(b)/8)
+	if n, err := binary.Decode(b, binary.LittleEndian, nm); err != nil || n != len(b) {
+		return fmt.Errorf("a wavelength axis of %d bytes; 8 bytes are a wavelength", len(b))
 	}
 	v, err := NewAxis(nm)
 	if err == nil {

@@ -82,10 +82,15 @@ func TestBadInput(t *testing.T) {
 	}
 }
 
+// listing names every file below dir. The cache is left out: a run that failed keeps
+// what it has read, so that the next one, with the fault mended, is quicker.
 func listing(t *testing.T, dir string) string {
 	t.Helper()
 	var names []string
 	err := filepath.WalkDir(dir, func(p string, d os.DirEntry, err error) error {
+		if d.IsDir() && filepath.Ext(p) == ".cache" {
+			return filepath.SkipDir
+		}
 		names = append(names, p)
 		return err
 	})

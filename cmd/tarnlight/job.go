@@ -31,6 +31,7 @@ type jobOptions struct {
 	strict     bool
 	json       bool
 	pictures   bool
+	fresh      bool // no cache
 
 	quantify, resolve bool // the parts of the work that the verb asks for
 	verb              string
@@ -46,6 +47,7 @@ func (o *jobOptions) flags(c *cobra.Command) {
 	f.IntVar(&o.workers, "workers", 0, "how many bottles at a time (default: all cores; results do not depend on it)")
 	f.BoolVar(&o.strict, "strict", false, "exit 1 when a bottle was rejected")
 	f.BoolVar(&o.json, "json", false, "print JSON lines (cmd/tarnlight/events.schema.json) instead of a table; the last one is the outcome")
+	f.BoolVar(&o.fresh, "fresh", false, "read and correct every bottle again and keep none (default: unchanged ones are taken over from OUT.cache)")
 	f.BoolVar(&o.pictures, "pictures", true, "make report.xlsx, report.html and the pictures")
 }
 
@@ -58,6 +60,7 @@ type job struct {
 	set    *survey.Settings
 	sheet  *survey.Sheet
 	sv     *prepare.Survey
+	cache  *prepare.Cache          // nil without one
 	cube   *eem.Cube               // usable bottles on the survey's grid
 	row    map[*prepare.Bottle]int // bottle → row of the cube
 	res    []*unmix.Resolution     // one a method
@@ -92,7 +95,9 @@ func (o jobOptions) execute(ctx context.Context, s streams) (*job, error) {
 	if err != nil {
 		return nil, err
 	}
+	j.openCache()
 	if err := j.work(ctx, stage); err != nil {
+		j.yieldCache(err)
 		if abort := stage.Abort(); abort != nil {
 			fmt.Fprintf(j.bar, "the unfinished results could not be removed: %v\n", abort)
 		}
@@ -176,7 +181,7 @@ func (j *job) work(ctx context.Context, stage *outdir.Staging) error {
 // prepare reads and corrects the bottles and stacks the usable ones.
 func (j *job) prepare(ctx context.Context) error {
 	var err error
-	opt := prepare.Options{Workers: j.workers, Progress: j.bar.step}
+	opt := prepare.Options{Workers: j.workers, Progress: j.bar.step, Cache: j.cache}
 	if j.applied != nil {
 		opt.Grid = &j.applied.Grid
 	}
@@ -184,6 +189,7 @@ func (j *job) prepare(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
+	j.tellCache()
 	for _, g := range j.sv.Guesses {
 		fmt.Fprintf(j.bar, "%d files: %s (first: %s)\n", g.Files, g.Text, g.First)
 	}

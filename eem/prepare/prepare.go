@@ -31,6 +31,9 @@ type Options struct {
 	// Trace is told what each step made of a bottle; it may be called from several
 	// goroutines, for one bottle in the order of the steps. e is not to be changed.
 	Trace func(b *Bottle, step string, e *eem.EEM)
+	// Cache takes over bottles that are as they were; nil reads all of them. With
+	// Trace it is left alone: what was taken over passed no step.
+	Cache *Cache
 	Grid  *eem.Grid // the survey's grid where it is given, that of a model; nil: that of the most samples
 }
 
@@ -64,13 +67,14 @@ type Bottle struct {
 	raw         *eem.EEM        // up to the inner filter: what blank and scale start from
 	scanned     *eem.Absorbance // of the liquid scanned
 	guesses     []Guess
-	scanFiles   []Input  // the raw scans among Files
-	claims      []string // files that the scans cell names
-	twofold     *Bottle  // the same water at another dilution, which corrects the inner filter; nil without
-	told        int      // notes of EEM whose findings are flags already
-	area        float64  // Raman area of a blank, before the blank is removed; NaN unknown
-	scale       float64  // what the intensities were divided by; NaN when they stay as they are
-	glowPercent float64  // of a blank, see glow
+	said        []eem.Note // findings as they came, before the quality settings
+	scanFiles   []Input    // the raw scans among Files
+	claims      []string   // files that the scans cell names
+	twofold     *Bottle    // the same water at another dilution, which corrects the inner filter; nil without
+	told        int        // notes of EEM whose findings are flags already
+	area        float64    // Raman area of a blank, before the blank is removed; NaN unknown
+	scale       float64    // what the intensities were divided by; NaN when they stay as they are
+	glowPercent float64    // of a blank, see glow
 	glowFound   bool
 	blanks      []*Bottle // what its blank and its scale rest on
 
@@ -104,6 +108,7 @@ type Survey struct {
 	autoBands    map[string]survey.Band // what was found for "auto", by key of [scatter]
 	defaultBands []string               // the keys among them that no blank showed
 	trace        func(b *Bottle, step string, e *eem.EEM)
+	cache        *Cache
 }
 
 // Guess counts the files that were taken in one way.
@@ -122,6 +127,9 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 	}
 	own := *set
 	s := &Survey{Dir: dir, Sheet: sheet, Settings: &own, trace: o.Trace}
+	if o.Trace == nil {
+		s.cache = o.Cache
+	}
 	if err := s.list(); err != nil {
 		return nil, err
 	}
@@ -139,6 +147,9 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 	}
 	if err := s.each(ctx, o, "reading", func(i int) { s.Bottles[i].read(s, files[i]) }); err != nil {
 		return nil, err
+	}
+	if s.cache != nil {
+		s.cache.sweep()
 	}
 	s.formBatches()
 	if err := s.checkLamps(); err != nil {
@@ -251,6 +262,7 @@ func (s *Survey) Limit(code string) float64 {
 
 // flag records a note that a test raised.
 func (b *Bottle) flag(s *Survey, n eem.Note) {
+	b.said = append(b.said, n)
 	n = s.judge(n)
 	if n.File == "" {
 		n.File, n.Line = filepath.ToSlash(filepath.Base(s.Sheet.Path)), b.Row.Line

@@ -35,12 +35,50 @@ func scanSettings(s survey.Scans) *scanfile.Settings {
 		Across: strings.TrimPrefix(s.Across, "auto")}
 }
 
-// read does everything to a bottle that needs the bottle alone.
+// read does everything to a bottle that needs the bottle alone, or takes over what
+// it made of the same files before.
 func (b *Bottle) read(s *Survey, files []string) {
 	if b.Rejected {
 		return
 	}
-	scans, ok := b.readScans(s, files)
+	raw := &rawFiles{s: s}
+	if s.cache == nil {
+		b.readAnew(s, raw, files)
+		return
+	}
+	inputs, name, ok := b.entry(s, raw, files)
+	if ok && s.cache.load(name, s, b) {
+		b.Files, b.scanFiles = inputs, inputs[:len(files):len(files)]
+		return
+	}
+	before := len(b.said)
+	b.readAnew(s, raw, files)
+	if ok && !b.Rejected {
+		s.cache.store(name, b, b.said[before:])
+	}
+}
+
+// entry hashes the bottle's raw files and names its entry in the cache.
+func (b *Bottle) entry(s *Survey, raw *rawFiles, files []string) (in []Input, name string, ok bool) {
+	paths := files
+	if b.Row.Absorbance != "" {
+		paths = append(slices.Clip(files), b.absorbancePath(s))
+	}
+	if in, ok = raw.hold(paths); !ok {
+		return nil, "", false
+	}
+	name, err := s.cache.name(s, b, in)
+	return in, name, err == nil
+}
+
+// absorbancePath is where the absorbance file that the row names should be.
+func (b *Bottle) absorbancePath(s *Survey) string {
+	return filepath.Join(s.root(), filepath.FromSlash(b.Row.Absorbance))
+}
+
+// readAnew reads the raw files and corrects the scans up to the inner filter.
+func (b *Bottle) readAnew(s *Survey, raw *rawFiles, files []string) {
+	scans, ok := b.readScans(s, raw, files)
 	if !ok {
 		return
 	}
@@ -59,7 +97,7 @@ func (b *Bottle) read(s *Survey, files []string) {
 		return
 	}
 	s.tell(b, Steps[0], e)
-	if !b.readAbsorbance(s) {
+	if !b.readAbsorbance(s, raw) {
 		return
 	}
 	e, dead := b.faults(s, e)
@@ -72,13 +110,13 @@ func (b *Bottle) read(s *Survey, files []string) {
 }
 
 // readScans reads the raw files. Findings of one kind are told once a bottle.
-func (b *Bottle) readScans(s *Survey, files []string) ([]eem.Scan, bool) {
+func (b *Bottle) readScans(s *Survey, raw *rawFiles, files []string) ([]eem.Scan, bool) {
 	var scans []eem.Scan
 	found := map[string]int{}
 	var notes []eem.Note
 	set := scanSettings(b.Setting.Scans)
 	for _, path := range files {
-		data, in, err := s.load(path)
+		data, in, err := raw.load(path)
 		if err == nil {
 			b.Files, b.scanFiles = append(b.Files, in), append(b.scanFiles, in)
 			var f *scanfile.File
@@ -124,11 +162,11 @@ func (b *Bottle) own(f *scanfile.File) []eem.Scan {
 
 // readAbsorbance reads the absorbance and brings it to the liquid scanned and to
 // the bottle. False: the file is named and cannot be used.
-func (b *Bottle) readAbsorbance(s *Survey) bool {
+func (b *Bottle) readAbsorbance(s *Survey, raw *rawFiles) bool {
 	if b.Row.Absorbance == "" {
 		return true
 	}
-	data, in, err := s.load(filepath.Join(s.root(), filepath.FromSlash(b.Row.Absorbance)))
+	data, in, err := raw.load(b.absorbancePath(s))
 	var a *eem.Absorbance
 	var notes []eem.Note
 	if err == nil {
@@ -224,18 +262,25 @@ func largest(v []float64) float64 {
 }
 
 // factorPair holds the spectral factors of a setup, nil where none are stated.
-type factorPair struct{ ex, em *correct.Factors }
+type factorPair struct {
+	ex, em *correct.Factors
+	sums   [2]string // SHA-256 of both files
+}
 
 // readFactors reads the spectral factors of every setup in use.
 func (s *Survey) readFactors() error {
 	s.factors = map[string]factorPair{}
-	cache := map[string]*correct.Factors{}
-	read := func(name string) (*correct.Factors, error) {
+	type known struct {
+		f   *correct.Factors
+		sum string
+	}
+	seen := map[string]known{}
+	read := func(name string) (*correct.Factors, string, error) {
 		if name == "" {
-			return nil, nil
+			return nil, "", nil
 		}
-		if f, ok := cache[name]; ok {
-			return f, nil
+		if k, ok := seen[name]; ok {
+			return k.f, k.sum, nil
 		}
 		path := filepath.FromSlash(name)
 		if !filepath.IsAbs(path) {
@@ -243,19 +288,19 @@ func (s *Survey) readFactors() error {
 		}
 		data, in, err := s.load(path)
 		if err != nil {
-			return nil, err
+			return nil, "", err
 		}
 		t, _, err := scanfile.ReadFactorsBytes(in.Path, data, nil)
 		if err != nil {
-			return nil, err
+			return nil, "", err
 		}
 		f, err := correct.NewFactors(t.Axis.Values(), t.Factor, t.U, in.Path)
 		if err != nil {
-			return nil, fmt.Errorf("%s: %w", in.Path, err)
+			return nil, "", fmt.Errorf("%s: %w", in.Path, err)
 		}
 		s.Inputs = append(s.Inputs, in)
-		cache[name] = f
-		return f, nil
+		seen[name] = known{f, in.SHA256}
+		return f, in.SHA256, nil
 	}
 	for _, b := range s.Bottles {
 		if _, ok := s.factors[b.Row.Setup]; ok || b.Excluded {
@@ -263,10 +308,10 @@ func (s *Survey) readFactors() error {
 		}
 		var p factorPair
 		var err error
-		if p.ex, err = read(b.Setting.Correct.ExcitationFactors); err != nil {
+		if p.ex, p.sums[0], err = read(b.Setting.Correct.ExcitationFactors); err != nil {
 			return fmt.Errorf("settings, correct.excitation_factors: %w", err)
 		}
-		if p.em, err = read(b.Setting.Correct.EmissionFactors); err != nil {
+		if p.em, p.sums[1], err = read(b.Setting.Correct.EmissionFactors); err != nil {
 			return fmt.Errorf("settings, correct.emission_factors: %w", err)
 		}
 		s.factors[b.Row.Setup] = p

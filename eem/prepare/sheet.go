@@ -144,9 +144,10 @@ func (s *Survey) unusedFiles() {
 		Msg:  fmt.Sprintf("%d raw files are used by no row (%s); add rows for them or move them away", len(left), show)}), "", ""))
 }
 
-// results says whether a folder holds results, finished or in the making.
+// results says whether a folder holds results, finished or in the making, or what
+// was kept of the last ones.
 func results(path string) bool {
-	if strings.HasSuffix(path, ".work") {
+	if strings.HasSuffix(path, ".work") || strings.HasSuffix(path, ".cache") {
 		return true
 	}
 	_, err := os.Stat(filepath.Join(path, "provenance.json"))

@@ -8,7 +8,8 @@
 //	out.previous  the results before these, kept until the next Commit
 //	out.work      while a run is under way: its lock, and in new/ its files
 //
-// and nothing else. Siblings names them to whoever walks the folder above.
+// and out.cache, which belongs to those who read and is not touched here; nothing
+// else. Siblings names them to whoever walks the folder above.
 package outdir
 
 import (
@@ -75,7 +76,7 @@ func locate(dir string) (places, error) {
 // included, whether they are there or not.
 func Siblings(dir string) []string {
 	dir = filepath.Clean(dir)
-	return []string{dir, dir + ".previous", dir + ".work"}
+	return []string{dir, dir + ".previous", dir + ".work", dir + ".cache"}
 }
 
 // A Staging takes the files of one run. Its methods may be called from several
