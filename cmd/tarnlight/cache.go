@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"syscall"
 
+	"tarnlight/eem"
 	"tarnlight/eem/prepare"
 )
 
@@ -32,7 +33,7 @@ func (j *job) tellCache() {
 		return
 	}
 	if n := j.cache.Hits(); n > 0 {
-		fmt.Fprintf(j.bar, "%s as they were read last; --fresh reads them again\n", count(n, "unchanged bottle"))
+		fmt.Fprintf(j.bar, "%s as they were read last; --fresh reads them again\n", eem.Count(n, "unchanged bottle"))
 	}
 	if err := j.cache.Err(); err != nil {
 		fmt.Fprintf(j.bar, "the next run will read all bottles again: %v\n", err)
