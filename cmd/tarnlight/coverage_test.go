@@ -58,6 +58,12 @@ absorbance = 0.0005
 // simulated runs a survey as far as the contributions.
 func simulated(t testing.TB, s *synth.Survey, resolve bool) *job {
 	t.Helper()
+	return simulatedWith(t, s, resolve, func(text string) string { return text })
+}
+
+// simulatedWith does so with changed settings.
+func simulatedWith(t testing.TB, s *synth.Survey, resolve bool, settings func(text string) string) *job {
+	t.Helper()
 	for i := range s.Bottles {
 		s.Bottles[i].Layout.Form = synth.Matrix
 	}
@@ -69,6 +75,7 @@ func simulated(t testing.TB, s *synth.Survey, resolve bool) *job {
 	if err := s.Write(dir); err != nil {
 		t.Fatal(err)
 	}
+	put(t, dir, "survey.toml", settings(read(t, dir, "survey.toml")))
 	j := &job{jobOptions: jobOptions{dir: dir, quantify: !resolve, resolve: resolve}, bar: newBar(io.Discard)}
 	if err := j.readInputs(); err != nil {
 		t.Fatal(err)
