@@ -133,8 +133,10 @@ func (j *job) readInputs() error {
 			return err
 		}
 	}
-	j.sheet, err = survey.ReadSheet(j.dir, j.set)
-	return err
+	if j.sheet, err = survey.ReadSheet(j.dir, j.set); err != nil {
+		return err
+	}
+	return j.checkYieldStandard()
 }
 
 // fromSurvey gives a path of the command line as the settings want it: relative

@@ -2,6 +2,8 @@ package main
 
 import (
 	"fmt"
+	"path/filepath"
+	"slices"
 	"strings"
 
 	"tarnlight/eem"
@@ -13,14 +15,20 @@ import (
 // opticsNames maps the columns of samples.csv to the indices.
 var opticsNames = map[string]string{"suva254": "suva254", "slope_275_295": "s_275_295", "slope_350_400": "s_350_400", "slope_ratio": "s_r",
 	"absorbance_250_365": "e2_e3", "fluorescence_index": "fi_470_520", "biological_index": "bix", "humification_index": "hix_sum", "humification_ratio": "hix_ratio", "freshness_index": "freshness",
-	"peak_b": "peak_b", "peak_t": "peak_t", "peak_a": "peak_a", "peak_m": "peak_m", "peak_c": "peak_c"}
+	"peak_b": "peak_b", "peak_t": "peak_t", "peak_a": "peak_a", "peak_m": "peak_m", "peak_c": "peak_c",
+	"quantum_yield": "quantum_yield", "absorption_254": "a254", "absorption_350": "a350", "absorption_440": "a440", "aromaticity": "aromaticity",
+	"absorbance_465_665": "e4_e6", "fluorescence_index_first": "fi_450_500", "freshness_boxes": "freshness_boxes",
+	"region_1": "region_1", "region_2": "region_2", "region_3": "region_3", "region_4": "region_4", "region_5": "region_5"}
 
 // indices returns the indices of a usable bottle's water, computed once.
 func (j *job) indices(b *prepare.Bottle) []optics.Index {
 	if list, ok := j.optics[b]; ok || !b.Usable() {
 		return list
 	}
-	list := optics.Fluorescence(b.EEM)
+	list := append(optics.Fluorescence(b.EEM), optics.Regions(b.EEM)...)
+	if o := j.set.Optics; o.YieldStandard != "" {
+		list = append(list, j.quantumYield(b))
+	}
 	if b.Absorb != nil {
 		list = append(list, optics.Absorption(b.Absorb, b.Row.DOC)...)
 	}
@@ -69,25 +77,89 @@ func (j *job) opticsFlags() []eem.Flag {
 		}
 	}
 	if len(list) == 0 {
-		return nil
+		return j.yieldFlags()
 	}
 	var words []string
 	for _, r := range list {
-		words = append(words, fmt.Sprintf("%s for %d of %d samples (%s: %s)", r.name, r.n, bottles, r.id, r.why))
+		words = append(words, fmt.Sprintf("%s for %d of %s (%s: %s)", r.name, r.n, eem.Count(bottles, "sample"), r.id, r.why))
 	}
-	return []eem.Flag{j.sv.Accept(eem.Flag{Test: "index-refused", Severity: eem.Remark, Value: float64(len(list)), Limit: nan,
-		Msg: "indices not given: " + strings.Join(words, "; ")})}
+	return append(j.yieldFlags(), j.sv.Accept(eem.Flag{Test: "index-refused", Severity: eem.Remark, Value: float64(len(list)), Limit: nan,
+		Msg: "indices not given: " + strings.Join(words, "; ")}))
 }
-
-// fluorescent are the indices without a unit that rest on fluorescence.
-var fluorescent = map[string]bool{"fi_470_520": true, "bix": true, "hix_sum": true, "hix_ratio": true, "freshness": true}
 
 // listed says whether an index rests on fluorescence and has a column in samples.csv.
 func listed(name string) bool {
-	for _, n := range opticsNames {
+	for column, n := range opticsNames {
 		if n == name {
-			return strings.HasPrefix(n, "peak_") || fluorescent[n]
+			return !strings.HasPrefix(column, "abs") && !slices.Contains(absorbing, name)
 		}
 	}
 	return false
+}
+
+// absorbing are the other indices that rest on absorbance alone.
+var absorbing = []string{"suva254", "aromaticity", "s_275_295", "s_350_400", "s_r"}
+
+// quantumYield is the apparent quantum yield of a bottle against the standard of the
+// settings.
+func (j *job) quantumYield(b *prepare.Bottle) optics.Index {
+	o := j.set.Optics
+	refuse := func(why string) optics.Index {
+		return optics.Index{Name: "quantum_yield", Value: nan, U: nan, Refused: why}
+	}
+	std := j.bottle(o.YieldStandard)
+	if std == nil || !std.Usable() {
+		return refuse("yield standard " + o.YieldStandard + " cannot be used")
+	}
+	x, why := j.emitter(b)
+	if why != "" {
+		return refuse(why)
+	}
+	s, why := j.emitter(std)
+	if why != "" {
+		return refuse("yield standard " + o.YieldStandard + ": " + why)
+	}
+	return optics.YieldIndex(x, optics.YieldStandard{Emitter: s, Yield: o.Yield.Value, Refractive: o.RefractiveIndex, Source: o.YieldSource}, o.ExcitationNM, o.WindowNM)
+}
+
+// emitter is a bottle as a yield needs it; why says what it lacks.
+func (j *job) emitter(b *prepare.Bottle) (x optics.Emitter, why string) {
+	spectral, inner := j.sv.Corrected(b)
+	x = optics.Emitter{EEM: b.EEM, Absorbance: b.Absorb, InnerFilter: inner}
+	switch {
+	case b.Absorb == nil:
+		why = "no absorbance is given"
+	case !spectral:
+		why = "its emission is not spectrally corrected; name [correct] emission_factors"
+	case b.Setting.Correct.SpectralUnits != "photons":
+		why = "a yield counts photons, and the emission is in energy units; make factors with --units photons"
+	case !inner && b.Row.Dilution != 1:
+		why = "it was diluted and its inner filter is not corrected"
+	}
+	return x, why
+}
+
+// checkYieldStandard says that the standard of the settings is not in the sheet.
+func (j *job) checkYieldStandard() error {
+	if id := j.set.Optics.YieldStandard; id != "" {
+		if _, ok := j.sheet.Find(id); !ok {
+			return fmt.Errorf("%s: optics.yield_standard: %s has no row with the id %q", filepath.Base(j.settingsPath()), filepath.Base(j.sheet.Path), id)
+		}
+	}
+	return nil
+}
+
+// yieldFlags tells of a yield standard that absorbs more than such standards should.
+func (j *job) yieldFlags() []eem.Flag {
+	o := j.set.Optics
+	std := j.bottle(o.YieldStandard)
+	if std == nil || std.Absorb == nil {
+		return nil
+	}
+	a, limit := std.Absorb.PerCM(o.ExcitationNM), j.sv.Limit("yield-standard")
+	if !(a > limit) {
+		return nil
+	}
+	return []eem.Flag{j.sv.Accept(eem.Flag{ID: std.Row.ID, Batch: std.Batch, Test: "yield-standard", Severity: eem.Remark, Value: a, Limit: limit,
+		Msg: fmt.Sprintf("the yield standard has an absorbance of %.3g at ex %g nm; below %g the inner filter does not matter", a, o.ExcitationNM, limit)})}
 }

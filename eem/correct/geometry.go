@@ -23,6 +23,30 @@ type Geometry struct {
 	Form   string // RightAngle (also empty), FrontFace, Transmission
 	Ex, Em [2]float64
 	PathCM float64 // inner width of the cell, cm; 0 means 1
+
+	// InDeg and OutDeg are the angles in air, degrees from the normal of the face, at
+	// which light of a front-face or transmission cell enters and is seen. In the
+	// liquid it goes at arcsin(sin θ/n), so that a depth x is passed over x/cos of that.
+	InDeg, OutDeg float64
+}
+
+// nWater is the refractive index of water (589 nm, 25 °C, from memory).
+const nWater = 1.333
+
+// slant is the path in the liquid for a unit of depth, of light that meets the face
+// at deg in air (Snell's law; the parallel walls of a window change nothing).
+func slant(deg float64) float64 {
+	s := math.Sin(deg*math.Pi/180) / nWater
+	return 1 / math.Sqrt(1-s*s)
+}
+
+// attenuation is β of excitation and emission per cm of depth.
+func (g Geometry) attenuation(aEx, aEm float64) (bx, bm float64) {
+	bx, bm = math.Ln10*aEx, math.Ln10*aEm
+	if g.Form == FrontFace || g.Form == Transmission {
+		bx, bm = bx*slant(g.InDeg), bm*slant(g.OutDeg)
+	}
+	return bx, bm
 }
 
 // Check says what is wrong with g: an unknown form or a stretch outside the cell.
@@ -40,6 +64,11 @@ func (g Geometry) Check() error {
 			return fmt.Errorf("viewed window %g–%g cm does not lie in a cell of %g cm", w[0], w[1], g.path())
 		}
 	}
+	for _, deg := range [2]float64{g.InDeg, g.OutDeg} {
+		if !(deg >= 0 && deg < 90) {
+			return fmt.Errorf("an angle of %g°; it lies from 0 to below 90° from the normal of the face", deg)
+		}
+	}
 	return nil
 }
 
@@ -51,7 +80,8 @@ func (g Geometry) path() float64 {
 }
 
 // Factor returns true over observed intensity for a liquid of decadic absorbance
-// aEx and aEm per cm at the excitation and the emission. With β = ln10·a the
+// aEx and aEm per cm at the excitation and the emission. With β = ln10·a (over the
+// cosine of its angle in the liquid, where the face is not met straight on) the
 // light of a slice at depth x is weakened by e^(−βx), and its mean over a
 // stretch of centre m and width w is e^(−βm)·sinh(βw/2)/(βw/2). Hence
 //
@@ -64,7 +94,7 @@ func (g Geometry) path() float64 {
 // of width 0 in the middle of a 1 cm cell gives 10^((aEx+aEm)/2), the centre
 // form of Parker & Rees, Analyst 1962, 87, 83. It panics on an unknown form.
 func (g Geometry) Factor(aEx, aEm float64) float64 {
-	bx, bm := math.Ln10*aEx, math.Ln10*aEm
+	bx, bm := g.attenuation(aEx, aEm)
 	switch g.Form {
 	case "", RightAngle:
 		return meanInverse(bx, g.stretch(g.Ex)) * meanInverse(bm, g.stretch(g.Em))

@@ -92,6 +92,28 @@ func TestAgainstIntegration(t *testing.T) {
 	}
 }
 
+// TestSlantedAgainstIntegration: a ray that meets the face at an angle, traced in
+// steps through the liquid. Its direction obeys Snell's law, sin θ = 1.333·sin θ′; it
+// is weakened over the length of the ray and not over the depth, on the way in and on
+// the way out.
+func TestSlantedAgainstIntegration(t *testing.T) {
+	for _, deg := range [][2]float64{{0, 0}, {30, 0}, {30, 22.5}, {60, 30}, {0, 45}, {80, 10}} {
+		along := func(depth, deg float64) float64 { // length of a ray down to depth
+			in := math.Asin(math.Sin(deg*math.Pi/180) / 1.333)
+			return math.Hypot(depth, depth*math.Tan(in))
+		}
+		for _, a := range [][2]float64{{0, 0}, {0.3, 0.1}, {2, 1}} {
+			bx, bm := math.Ln10*a[0], math.Ln10*a[1]
+			front := correct.Geometry{Form: correct.FrontFace, InDeg: deg[0], OutDeg: deg[1]}
+			seen := quad.Fixed(func(x float64) float64 { return math.Exp(-bx*along(x, deg[0]) - bm*along(x, deg[1])) }, 0, 1, 60, nil, 0)
+			near(t, "front-face", front.Factor(a[0], a[1])*seen, 1, 1e-12)
+			through := correct.Geometry{Form: correct.Transmission, InDeg: deg[0], OutDeg: deg[1]}
+			seen = quad.Fixed(func(x float64) float64 { return math.Exp(-bx*along(x, deg[0]) - bm*along(1-x, deg[1])) }, 0, 1, 60, nil, 0)
+			near(t, "transmission", through.Factor(a[0], a[1])*seen, 1, 1e-12)
+		}
+	}
+}
+
 // TestCellLength: 0.4 cm of a liquid attenuate like 1 cm of one 0.4 times as
 // concentrated.
 func TestCellLength(t *testing.T) {
@@ -119,6 +141,7 @@ func TestGeometryCheck(t *testing.T) {
 	for _, g := range []correct.Geometry{
 		{Form: "sideways"}, {PathCM: -1}, {PathCM: math.NaN()}, {PathCM: math.Inf(1)},
 		{Ex: [2]float64{0.7, 0.3}}, {Em: [2]float64{0.5, 1.2}}, {Ex: [2]float64{0.3, 0.7}, PathCM: 0.4}, {Ex: [2]float64{math.NaN(), 1}},
+		{Form: correct.FrontFace, InDeg: 90}, {Form: correct.FrontFace, OutDeg: -1},
 	} {
 		if g.Check() == nil {
 			t.Errorf("%+v passed", g)

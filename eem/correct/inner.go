@@ -162,8 +162,12 @@ func (g Geometry) params(largest, limit float64) []eem.Param {
 	if form == RightAngle {
 		p = append(p, eem.Param{Name: "viewed along emission", Value: fmt.Sprintf("%g–%g", em[0], em[1]), Unit: "cm", Source: "settings"})
 	}
+	if form != RightAngle {
+		p = append(p, eem.Param{Name: "angle of incidence, in air", Value: num(g.InDeg), Unit: "°", Source: "settings: correct.incidence_deg"},
+			eem.Param{Name: "angle of observation, in air", Value: num(g.OutDeg), Unit: "°", Source: "settings: correct.observation_deg"})
+	}
 	return append(p,
-		eem.Param{Name: "cell path", Value: num(g.path()), Unit: "cm", Source: "settings"},
+		eem.Param{Name: "cell path", Value: num(g.path()), Unit: "cm", Source: "settings: correct.cell_cm"},
 		eem.Param{Name: "absorbance limit", Value: num(limit), Source: "settings: correct.absorbance_limit"},
 		eem.Param{Name: "largest factor", Value: num(largest), Source: "absorbance"})
 }

@@ -10,14 +10,15 @@ import (
 // aEm), cm: by how much k changes, relative, for a change of the absorbance per
 // cm. In the centre form of a 1 cm cell both are ln(10)/2.
 func (g Geometry) Sensitivity(aEx, aEm float64) (dEx, dEm float64) {
-	bx, bm := math.Ln10*aEx, math.Ln10*aEm
+	bx, bm := g.attenuation(aEx, aEm)
+	sx, sm := g.attenuation(1, 1) // dβ/da
 	switch g.Form {
 	case FrontFace:
-		d := math.Ln10 * logSlope(bx+bm, g.stretch(g.Ex))
-		return d, d
+		d := logSlope(bx+bm, g.stretch(g.Ex))
+		return sx * d, sm * d
 	case Transmission:
-		d := math.Ln10 * logSlope(bx-bm, g.stretch(g.Ex))
-		return d, math.Ln10*g.path() - d
+		d := logSlope(bx-bm, g.stretch(g.Ex))
+		return sx * d, sm * (g.path() - d)
 	}
 	return math.Ln10 * logSlope(bx, g.stretch(g.Ex)), math.Ln10 * logSlope(bm, g.stretch(g.Em))
 }

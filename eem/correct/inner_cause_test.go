@@ -27,7 +27,8 @@ func TestFactorUncertainty(t *testing.T) {
 func TestSensitivity(t *testing.T) {
 	w := [2]float64{0.2, 0.7}
 	for _, g := range []correct.Geometry{{}, {Ex: w, Em: w}, {Ex: [2]float64{0, 1}}, {Form: correct.FrontFace}, {Form: correct.FrontFace, Ex: w},
-		{Form: correct.Transmission}, {Form: correct.Transmission, Ex: w}, {PathCM: 0.4}} {
+		{Form: correct.Transmission}, {Form: correct.Transmission, Ex: w}, {PathCM: 0.4},
+		{Form: correct.FrontFace, InDeg: 30, OutDeg: 60}, {Form: correct.Transmission, InDeg: 45, OutDeg: 10, Ex: w}} {
 		for _, a := range [][2]float64{{1e-5, 0}, {0.02, 0.01}, {0.5, 0.1}, {2, 1}, {1, 1}} {
 			x, m := g.Sensitivity(a[0], a[1])
 			set := &fd.Settings{Formula: fd.Central, Step: 1e-5}

@@ -13,7 +13,7 @@ func (b *Bottle) linearRange(s *Survey, e *eem.EEM) *eem.EEM {
 	if b.scanned == nil || b.done(stepInner) || b.Row.Kind == survey.Blank {
 		return e
 	}
-	const pathCM = 1 // of the measuring cell
+	pathCM := b.Setting.Correct.CellCM
 	limit := s.Limit("linear-range")
 	for _, l := range correct.Linear(e.Ex, b.scanned, pathCM) {
 		switch {

@@ -198,7 +198,8 @@ func (b *Bottle) noLight(e *eem.EEM) (bool, string) { return correct.NoLight(e) 
 
 // geometry of the measuring cell.
 func geometry(c survey.Correct) correct.Geometry {
-	return correct.Geometry{Form: c.InnerFilter, Ex: c.ExcitationWindowCM, Em: c.EmissionWindowCM}
+	return correct.Geometry{Form: c.InnerFilter, Ex: c.ExcitationWindowCM, Em: c.EmissionWindowCM,
+		PathCM: c.CellCM, InDeg: c.IncidenceDeg, OutDeg: c.ObservationDeg}
 }
 
 // toInnerFilter does the steps from the detector to the inner filter.

@@ -2,6 +2,7 @@ package survey
 
 import (
 	"fmt"
+	"slices"
 )
 
 // agree reports settings that are right by themselves and wrong together. at is
@@ -20,8 +21,15 @@ func (r *settingsReader) agree(s *Settings, at []string) {
 		}
 		r.add(p, "%s", msg)
 	}
+	r.cell(s.Correct, at, path)
 	if at != nil {
 		return
+	}
+	switch o := s.Optics; {
+	case o.YieldStandard != "" && !o.Yield.Given:
+		r.add(path("optics", "yield_standard"), `a yield standard needs its quantum yield; add yield = … and yield_source = "…" below it`)
+	case o.Yield.Given && o.YieldSource == "":
+		r.add(path("optics", "yield"), `a quantum yield depends on the medium; add yield_source = "medium, and where the value comes from" below it`)
 	}
 	if c := s.Resolve; c.Choose > 0 {
 		if c.Because == "" {
@@ -33,6 +41,28 @@ func (r *settingsReader) agree(s *Settings, at []string) {
 				min(c.Choose, c.Components.From), max(c.Choose, c.Components.To))
 		}
 	}
+}
+
+// cell reports windows that do not lie in the measuring cell, and angles of a cell
+// that has none; for a setup only where it changes one of them.
+func (r *settingsReader) cell(c Correct, at []string, path func(...string) []string) {
+	changes := func(names ...string) bool {
+		return at == nil || slices.ContainsFunc(names, func(n string) bool { return r.stands(append(slices.Clone(at), "correct", n)) })
+	}
+	window := func(name string, cm [2]float64) {
+		if cm[1] > c.CellCM && changes(name, "cell_cm") {
+			r.add(path("correct", name), "[%g, %g] does not lie in a cell of %g cm; correct it, or set cell_cm to the inner width of the cell", cm[0], cm[1], c.CellCM)
+		}
+	}
+	window("excitation_window_cm", c.ExcitationWindowCM)
+	window("emission_window_cm", c.EmissionWindowCM)
+	slanted := func(name string, deg float64) {
+		if deg != 0 && c.InnerFilter == "right-angle" && changes(name, "inner_filter") {
+			r.add(path("correct", name), `a right-angle cell is lit and seen straight on; set inner_filter = "front-face", or leave the angles out`)
+		}
+	}
+	slanted("incidence_deg", c.IncidenceDeg)
+	slanted("observation_deg", c.ObservationDeg)
 }
 
 // ramanWindow says that water's Raman line lies outside the window in which it is

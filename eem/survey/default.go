@@ -10,6 +10,7 @@ func Default() *Settings {
 		Correct: Correct{
 			InnerFilter:     "right-angle",
 			AbsorbanceLimit: 1.5,
+			CellCM:          1,
 			Blank:           "batch-mean",
 			BlankMaxAgeDays: 7,
 			SpectralUnits:   "photons",
@@ -21,6 +22,7 @@ func Default() *Settings {
 			Raman:    Orders{First: Band{Below: 10, Above: 15}, Second: Band{Below: 10, Above: 10}},
 			Fill:     "missing",
 		},
+		Optics:   Optics{RefractiveIndex: 1.333, ExcitationNM: 350, WindowNM: [2]float64{370, 600}},
 		Quantify: Quantify{References: "auto"},
 		Resolve: Resolve{
 			Components:   Components{Mode: "auto", From: 2, To: 7},

@@ -112,6 +112,9 @@ func readingKeys() []*key {
 	}
 }
 
+// angle in air, degrees from the normal of a face.
+var angle = bounds{lo: 0, hi: 85, unit: "°"}
+
 func correctionKeys() []*key {
 	def := Default().Scatter
 	return []*key{
@@ -125,8 +128,14 @@ func correctionKeys() []*key {
 			"stretch of the excitation beam that the detector sees, from the wall where light enters; centre (0.5 cm) is within 1 % of a 0.3–0.7 cm window up to A = 0.5"},
 		{"correct", "emission_window_cm", func(s *Settings) any { return &s.Correct.EmissionWindowCM }, windowCodec(),
 			"stretch from which light leaves, from the wall where it leaves; centre for the same reason"},
-		{"correct", "absorbance_limit", func(s *Settings) any { return &s.Correct.AbsorbanceLimit }, number(bounds{hi: 10, open: true, unit: "total absorbance of 1 cm"}),
+		{"correct", "absorbance_limit", func(s *Settings) any { return &s.Correct.AbsorbanceLimit }, number(bounds{hi: 10, open: true, unit: "total absorbance over the measuring cell"}),
 			"above it (excitation + emission) a bottle is flagged with the dilution that would help; 1.5 after Kothawala et al. 2013, Limnol. Oceanogr. Methods 11, 616"},
+		{"correct", "cell_cm", func(s *Settings) any { return &s.Correct.CellCM }, number(bounds{hi: 10, open: true, unit: "cm"}),
+			"inner width of the cell in the fluorometer; 1, the usual one (that of the absorbance cell is the column absorbance_path_cm)"},
+		{"correct", "incidence_deg", func(s *Settings) any { return &s.Correct.IncidenceDeg }, number(angle),
+			"angle in air at which the excitation meets the face of a front-face or transmission cell; 0 is straight on; refracted by Snell's law (n = 1.333) it lengthens the path by 1/cos"},
+		{"correct", "observation_deg", func(s *Settings) any { return &s.Correct.ObservationDeg }, number(angle),
+			"angle in air at which that cell is looked at, likewise"},
 		{"correct", "blank", func(s *Settings) any { return &s.Correct.Blank }, choice("batch-mean", "listed", "latest", "none"),
 			"which blanks are subtracted: the mean of the batch, those of the column blanks, or the last one measured before the bottle; the mean halves the noise of one of four"},
 		{"correct", "blank_max_age_days", func(s *Settings) any { return &s.Correct.BlankMaxAgeDays }, number(bounds{hi: 3660, unit: "days"}),
@@ -164,6 +173,18 @@ func correctionKeys() []*key {
 
 func modelKeys() []*key {
 	return []*key{
+		{"optics", "yield_standard", func(s *Settings) any { return &s.Optics.YieldStandard }, text("an id of the run sheet"),
+			"quinine standard (or another) against which the apparent quantum yield of every sample is computed; it needs an absorbance; empty: no yields"},
+		{"optics", "yield", func(s *Settings) any { return &s.Optics.Yield }, declaredCodec(bounds{hi: 1, open: true, unit: "quantum yield"}),
+			"quantum yield of that standard; no default: for quinine sulfate 0.51, 0.546 and 0.60 are all in print, for different acids and concentrations (IUPAC: Resch-Genger & Rurack 2013, Pure Appl. Chem. 85, 2005)"},
+		{"optics", "yield_source", func(s *Settings) any { return &s.Optics.YieldSource }, text("text"),
+			"medium of that standard and where its yield comes from; needed with yield, and printed with the results"},
+		{"optics", "refractive_index", func(s *Settings) any { return &s.Optics.RefractiveIndex }, number(bounds{lo: 1, hi: 2, unit: "refractive index"}),
+			"of the standard's medium; 1.333, water at 589 nm and 25 °C; 0.05–0.5 mol/L sulfuric acid has 1.333–1.338 (from memory)"},
+		{"optics", "yield_excitation_nm", func(s *Settings) any { return &s.Optics.ExcitationNM }, number(wavelength),
+			"where both are excited; 350, at the second absorption maximum of quinine sulfate (347.5 nm: SRM 936 certificate)"},
+		{"optics", "yield_window_nm", func(s *Settings) any { return &s.Optics.WindowNM }, pair(wavelength),
+			"emission over which both are integrated; 370–600 nm: between the Rayleigh line of 350 nm and the end of most scans (common practice, no source)"},
 		{"quantify", "references", func(s *Settings) any { return &s.Quantify }, referencesCodec(),
 			"what samples are quantified against; auto is the sheet's standards where there are any, else none"},
 		{"quantify", "limits", func(s *Settings) any { return &s.Quantify.Limits }, text("a CSV file"),

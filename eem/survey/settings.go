@@ -11,6 +11,7 @@ type Settings struct {
 	Correct     Correct
 	Intensity   Intensity
 	Scatter     Scatter
+	Optics      Optics
 	Quantify    Quantify
 	Resolve     Resolve
 	Uncertainty Uncertainty
@@ -69,7 +70,11 @@ type Correct struct {
 	// (excitation) and from the wall where it leaves (emission). Zero means the
 	// centre form, all light made and seen in the middle of a 1 cm cell.
 	ExcitationWindowCM, EmissionWindowCM [2]float64
-	AbsorbanceLimit                      float64 // total absorbance, excitation + emission, of 1 cm
+	AbsorbanceLimit                      float64 // total absorbance, excitation + emission, over the measuring cell
+	CellCM                               float64 // inner width of the measuring cell, cm
+	// Angles in air, degrees from the normal of the cell's face, at which light of a
+	// front-face or transmission geometry enters and is seen.
+	IncidenceDeg, ObservationDeg float64
 
 	Blank           string  // batch-mean, listed, latest, none
 	BlankMaxAgeDays float64 // how old a blank may be for "latest"; 0: any age
@@ -118,6 +123,17 @@ type Band struct {
 	Below, Above float64
 	FromCM, ToCM float64 // cm⁻¹, of a Raman band that is stretched over these shifts; 0 of another
 	Auto, Off    bool
+}
+
+// Optics says how the apparent quantum yield of the water is found: against a
+// standard of the run sheet. Nothing is known of it while YieldStandard is empty.
+type Optics struct {
+	YieldStandard   string     // id of the bottle that the yields rest on
+	Yield           Declared   // quantum yield of that standard in its medium
+	YieldSource     string     // medium, and where the yield comes from
+	RefractiveIndex float64    // of its medium
+	ExcitationNM    float64    // at which both are compared
+	WindowNM        [2]float64 // emission, over which both are integrated
 }
 
 // Quantify says what samples are quantified against.

@@ -12,7 +12,7 @@ func (r *results) opticsSheet(b *book) {
 	at := func(name string) int {
 		return slices.IndexFunc(f.Columns, func(c Column) bool { return c.Name == name })
 	}
-	for _, c := range f.Columns[at("suva254") : at("peak_c")+1] {
+	for _, c := range slices.Concat(f.Columns[at("suva254"):at("peak_c")+1], f.Columns[at("quantum_yield"):at("region_5")+1]) {
 		used := slices.ContainsFunc(r.bottles, func(x *bottle) bool { return finite(t.Float(x.row, t.Own(c.Name))) })
 		if used {
 			cols = append(cols, c)
