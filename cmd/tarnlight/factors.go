@@ -4,7 +4,6 @@ import (
 	"bytes"
 	"errors"
 	"fmt"
-	"io"
 	"math"
 	"os"
 	"path/filepath"
@@ -219,7 +218,7 @@ func sourceNames(s string) string {
 }
 
 // writeNew writes a file that must not be there yet: a factor file in use is never
-// changed behind a survey's back.
+// changed behind a survey's back. What could not be written whole is removed.
 func writeNew(path string, data []byte) error {
 	f, err := os.OpenFile(path, os.O_WRONLY|os.O_CREATE|os.O_EXCL, 0o644)
 	if errors.Is(err, os.ErrExist) {
@@ -228,11 +227,11 @@ func writeNew(path string, data []byte) error {
 	if err != nil {
 		return err
 	}
-	_, err = io.Copy(f, bytes.NewReader(data))
-	if cerr := f.Close(); err == nil {
-		err = cerr
+	_, err = f.Write(data)
+	if err = errors.Join(err, f.Sync(), f.Close()); err != nil {
+		return errors.Join(err, os.Remove(path))
 	}
-	return err
+	return nil
 }
 
 // readCurve reads a table of wavelength, value and perhaps uncertainty.

@@ -10,6 +10,7 @@ import (
 	"strings"
 	"testing"
 
+	"tarnlight/eem/survey"
 	"tarnlight/unmix/report"
 )
 
@@ -201,4 +202,13 @@ func (y *tiny) write(t testing.TB) string {
 	put(t, dir, "runsheet.csv", strings.Join(y.sheet, "\n")+"\n")
 	put(t, dir, "survey.toml", y.settings)
 	return dir
+}
+
+func readSheet(t testing.TB, path string) *survey.Sheet {
+	t.Helper()
+	s, err := survey.ParseSheet(path, []byte(read(t, path)), survey.Default())
+	if err != nil {
+		t.Fatal(err)
+	}
+	return s
 }

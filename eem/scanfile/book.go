@@ -37,25 +37,46 @@ type xmlRel struct {
 }
 
 func readBook(name string, data []byte) (*Table, error) {
+	b, sheet, err := openBook(name, data)
+	if err != nil {
+		return nil, err
+	}
+	return b.table(sheet)
+}
+
+// FirstSheet returns the name, in the archive, of the part of a workbook that
+// ReadTable reads.
+func FirstSheet(name string, data []byte) (string, error) {
+	b, sheet, err := openBook(name, data)
+	if err != nil {
+		return "", err
+	}
+	f := b.parts[strings.ToLower(sheet)]
+	if f == nil {
+		return "", errorf(name, 0, "the workbook lacks its part %s; save it again", sheet)
+	}
+	return f.Name, nil
+}
+
+// openBook reads everything of a workbook but its first sheet, and returns the
+// sheet's path.
+func openBook(name string, data []byte) (*book, string, error) {
 	if bytes.HasPrefix(data, []byte("\xd0\xcf\x11\xe0")) {
-		return nil, errorf(name, 0, "is protected by a password or of the old binary format; save it as .xlsx without a password")
+		return nil, "", errorf(name, 0, "is protected by a password or of the old binary format; save it as .xlsx without a password")
 	}
 	if len(data) == 0 {
-		return nil, errorf(name, 0, "is empty; save the workbook again")
+		return nil, "", errorf(name, 0, "is empty; save the workbook again")
 	}
 	z, err := zip.NewReader(bytes.NewReader(data), int64(len(data)))
 	if err != nil {
-		return nil, errorf(name, 0, "is no .xlsx workbook, or was cut short (%w); save it again", err)
+		return nil, "", errorf(name, 0, "is no .xlsx workbook, or was cut short (%w); save it again", err)
 	}
 	b := &book{name: name, parts: map[string]*zip.File{}, left: MaxBookBytes}
 	for _, f := range z.File {
 		b.parts[strings.ToLower(strings.TrimPrefix(strings.ReplaceAll(f.Name, `\`, "/"), "/"))] = f
 	}
 	sheet, err := b.open()
-	if err != nil {
-		return nil, err
-	}
-	return b.table(sheet)
+	return b, sheet, err
 }
 
 // part unpacks one part of the workbook.

@@ -82,6 +82,8 @@ func topKeys() []*key {
 			"rows excluded by eye after a look at the report are merged by id; empty is none"},
 		{"sheet", "name", func(s *Settings) any { return &s.Sheet.Name }, pattern("id"),
 			"how begin reads ids, kinds and days from file names; empty lets begin look by itself"},
+		{"sheet", "kinds", func(s *Settings) any { return &s.Sheet.Kinds }, kindsCodec(),
+			"the laboratory's own words for kinds, beside sample, blank, standard …: what {kind} of name says, or without it the letters that an id begins with; empty, because no two laboratories use the same"},
 	}
 }
 

@@ -25,6 +25,9 @@ type SheetSettings struct {
 	Root       string // folder that scans and absorbance cells are relative to; empty: the survey folder
 	Exclusions string // CSV of id, reason that is merged by id; empty: none
 	Name       string // pattern by which begin reads ids, kinds and batches from file names; empty: none
+	// Kinds are the laboratory's own words for kinds, in lower case: what {kind} of
+	// Name stands for or, where Name has none, the letters that an id begins with.
+	Kinds map[string]Kind
 }
 
 // Scans says how raw scan files are read.

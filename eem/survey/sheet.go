@@ -67,8 +67,15 @@ func findSheet(dir string) (string, error) {
 	case like != "":
 		return "", fmt.Errorf("%s: there is no run sheet; %s", dir, like)
 	}
-	return "", fmt.Errorf("%s: there is no run sheet (%s); `tarnlight begin %s` drafts one from the raw files",
-		dir, strings.Join(sheetNames, " or "), dir)
+	return "", &noSheet{dir}
+}
+
+// noSheet is the error of a survey folder without any run sheet.
+type noSheet struct{ dir string }
+
+func (e *noSheet) Error() string {
+	return fmt.Sprintf("%s: there is no run sheet (%s); `tarnlight begin %s` drafts one from the raw files",
+		e.dir, strings.Join(sheetNames, " or "), e.dir)
 }
 
 // sheetOf makes a sheet of a table, and of the table of exclusions where there is

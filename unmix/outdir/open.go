@@ -28,8 +28,7 @@ func openElsewhere(dir string) error {
 			return &Error{ErrOpenElsewhere, path, "is open in another program; close it there and run again (nothing was touched)"}
 		}
 		if doc := ownedBy(path); doc != "" {
-			return &Error{ErrOpenElsewhere, doc, "is open in another program; close it there and run again (nothing was touched). " +
-				"If it is open nowhere, that program left " + d.Name() + " behind: delete that file"}
+			return &Error{ErrOpenElsewhere, doc, leftBehind(d.Name())}
 		}
 		return nil
 	})

@@ -1,0 +1,98 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"io/fs"
+	"os"
+	"path/filepath"
+	"slices"
+	"strings"
+	"time"
+
+	"tarnlight/eem/scanfile"
+	"tarnlight/eem/survey"
+)
+
+// found is one raw file and what its content says.
+type found struct {
+	path    string // relative to the root, with slashes
+	written time.Time
+	guess   scanfile.Guess
+}
+
+// single says whether a file holds scans of one excitation, of which a bottle may
+// have more.
+func (f *found) single() bool {
+	return f.guess.Content == scanfile.ScanContent && f.guess.Excitations <= 1
+}
+
+// lookAround looks at every file below the root by content, but for those that
+// rows claim. Links are not followed, so that nothing outside is read.
+func (b *beginning) lookAround(ctx context.Context, claims map[string]*survey.Row) ([]found, error) {
+	paths, err := b.list(claims)
+	if err != nil {
+		return nil, err
+	}
+	out := make([]found, 0, len(paths))
+	for i, p := range paths {
+		if err := interrupted(ctx); err != nil {
+			return nil, err
+		}
+		f := found{path: b.rel(p)}
+		info, err := os.Lstat(p)
+		if err == nil {
+			f.written = info.ModTime()
+			var data []byte
+			if data, err = scanfile.Load(p); err == nil {
+				f.guess = scanfile.Look(f.path, data)
+			}
+		}
+		if errors.Is(err, fs.ErrNotExist) {
+			b.leave(f.path, "vanished while it was looked at")
+			continue
+		}
+		if err != nil {
+			f.guess = scanfile.Guess{Content: scanfile.Unknown, Why: err.Error(), Err: err}
+		}
+		out = append(out, f)
+		b.bar.step(i+1, len(paths), "looking")
+	}
+	return out, nil
+}
+
+// list finds the files in order of their paths. Results, hidden files and those
+// that office programs leave are passed over.
+func (b *beginning) list(claims map[string]*survey.Row) ([]string, error) {
+	var paths []string
+	err := filepath.WalkDir(b.root, func(p string, d fs.DirEntry, err error) error {
+		if err != nil {
+			if p != b.root && errors.Is(err, fs.ErrNotExist) {
+				return nil // vanished
+			}
+			return err
+		}
+		name := d.Name()
+		switch {
+		case d.IsDir() && p != b.root && (strings.HasPrefix(name, ".") || name == "out" || strings.HasPrefix(name, "out.") ||
+			strings.HasSuffix(name, ".work") || isResults(p)):
+			return filepath.SkipDir
+		case !d.Type().IsRegular() || strings.HasPrefix(name, ".") || strings.HasPrefix(name, "~$"):
+			return nil
+		case claims[p] != nil || own(b.rel(p)):
+			return nil
+		}
+		paths = append(paths, p)
+		return nil
+	})
+	slices.Sort(paths)
+	return paths, err
+}
+
+func (b *beginning) rel(path string) string {
+	r, err := filepath.Rel(b.root, path)
+	if err != nil {
+		return path
+	}
+	return filepath.ToSlash(r)
+}

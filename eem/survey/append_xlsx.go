@@ -1,0 +1,272 @@
+package survey
+
+import (
+	"archive/zip"
+	"bytes"
+	"encoding/xml"
+	"errors"
+	"fmt"
+	"io"
+	"regexp"
+	"strconv"
+	"strings"
+
+	"tarnlight/eem/scanfile"
+)
+
+// Rows are added to a workbook in the XML of its first sheet (ECMA-376, part 1,
+// 18.3) and not through the library that writes ours: that one reads a whole
+// workbook into its own model and writes that, so that what it does not know is
+// lost. Here every other part is copied as it is packed, and of the sheet every
+// byte stays but those of empty rows in the way and of its stated size.
+
+// appendXLSX writes records behind the last row with content.
+func appendXLSX(name string, data []byte, records [][]string) ([]byte, error) {
+	part, err := scanfile.FirstSheet(name, data)
+	if err != nil {
+		return nil, err
+	}
+	z, err := zip.NewReader(bytes.NewReader(data), int64(len(data)))
+	if err != nil {
+		return nil, fmt.Errorf("%s: %w", name, err)
+	}
+	var b bytes.Buffer
+	w := zip.NewWriter(&b)
+	for _, f := range z.File {
+		if f.Name != part {
+			err = w.Copy(f)
+		} else {
+			err = copyWithRows(w, f, records)
+		}
+		if err != nil {
+			return nil, fmt.Errorf("%s: %s: %w", name, f.Name, err)
+		}
+	}
+	if err := errors.Join(w.SetComment(z.Comment), w.Close()); err != nil {
+		return nil, fmt.Errorf("%s: %w", name, err)
+	}
+	return b.Bytes(), nil
+}
+
+func copyWithRows(w *zip.Writer, f *zip.File, records [][]string) error {
+	r, err := f.Open()
+	if err != nil {
+		return err
+	}
+	defer r.Close()
+	sheet, err := io.ReadAll(io.LimitReader(r, scanfile.MaxBookBytes+1))
+	if err != nil {
+		return err
+	}
+	g := &grownSheet{xml: sheet}
+	if err := g.scan(); err != nil {
+		return err
+	}
+	out, err := w.CreateHeader(&zip.FileHeader{Name: f.Name, Comment: f.Comment, Method: zip.Deflate, Modified: f.Modified})
+	if err != nil {
+		return err
+	}
+	_, err = out.Write(g.with(records))
+	return err
+}
+
+// grownSheet knows where things stand in the XML of a sheet.
+type grownSheet struct {
+	xml     []byte
+	prefix  string // of element names, such as "x:"
+	columns []columnStyle
+	rows    []sheetRow
+	end     int // of the list of rows
+	size    [2]int
+}
+
+// columnStyle is the style of the columns from, …, to, counted from 1.
+type columnStyle struct {
+	from, to int
+	style    string
+}
+
+// sheetRow is one row: its bytes, and the styles of its cells by column.
+type sheetRow struct {
+	from, to int
+	number   int
+	content  bool
+	styles   map[int]string
+}
+
+// scan walks the sheet once.
+func (g *grownSheet) scan() error {
+	d := xml.NewDecoder(bytes.NewReader(g.xml))
+	number := 0
+	var row *sheetRow
+	for {
+		at := int(d.InputOffset())
+		tok, err := d.RawToken()
+		if errors.Is(err, io.EOF) {
+			break
+		}
+		if err != nil {
+			return err
+		}
+		switch e := tok.(type) {
+		case xml.StartElement:
+			switch e.Name.Local {
+			case "dimension":
+				g.size = [2]int{at, int(d.InputOffset())}
+			case "col":
+				g.column(e)
+			case "sheetData":
+				if g.prefix = e.Name.Space; g.prefix != "" {
+					g.prefix += ":"
+				}
+			case "row":
+				number++
+				if n, err := strconv.Atoi(attribute(e, "r")); err == nil {
+					number = n
+				}
+				row = &sheetRow{from: at, number: number, styles: map[int]string{}}
+			case "c":
+				if row != nil {
+					row.cell(e)
+				}
+			case "v", "f", "is":
+				if row != nil {
+					row.content = true
+				}
+			}
+		case xml.EndElement:
+			switch {
+			case e.Name.Local == "row" && row != nil:
+				row.to = int(d.InputOffset())
+				g.rows = append(g.rows, *row)
+				row = nil
+			case e.Name.Local == "sheetData":
+				g.end = at
+			}
+		}
+	}
+	if g.end == 0 || len(g.rows) == 0 {
+		return errors.New("the sheet has no rows; save the workbook again")
+	}
+	return nil
+}
+
+func (g *grownSheet) column(e xml.StartElement) {
+	from, err1 := strconv.Atoi(attribute(e, "min"))
+	to, err2 := strconv.Atoi(attribute(e, "max"))
+	if style := attribute(e, "style"); err1 == nil && err2 == nil && style != "" {
+		g.columns = append(g.columns, columnStyle{from, to, style})
+	}
+}
+
+// cell notes the style of a cell; without a reference it follows the one before.
+func (r *sheetRow) cell(e xml.StartElement) {
+	col := len(r.styles) + 1
+	if letters := strings.TrimRight(attribute(e, "r"), "0123456789"); letters != "" && len(letters) <= 3 {
+		col = 0
+		for _, l := range strings.ToUpper(letters) {
+			col = col*26 + int(l-'A') + 1
+		}
+	}
+	r.styles[col] = attribute(e, "s")
+}
+
+func attribute(e xml.StartElement, name string) string {
+	for _, a := range e.Attr {
+		if a.Name.Local == name {
+			return a.Value
+		}
+	}
+	return ""
+}
+
+// with returns the sheet with the records behind its last row with content. Empty
+// rows that a spreadsheet keeps there, because they were formatted once, make room
+// and leave their styles to the new ones.
+func (g *grownSheet) with(records [][]string) []byte {
+	last := 0
+	for i, r := range g.rows {
+		if r.content {
+			last = i
+		}
+	}
+	number, at := g.rows[last].number, g.rows[last].to
+	from, empty := at, g.rows[last+1:]
+	var b bytes.Buffer
+	for _, record := range records {
+		number++
+		var styles map[int]string
+		for ; len(empty) > 0 && empty[0].number <= number; empty = empty[1:] {
+			from = empty[0].to
+			if empty[0].number == number {
+				styles = empty[0].styles
+			}
+		}
+		g.writeRow(&b, number, record, styles)
+	}
+	return g.sized(joined(g.xml[:at], b.Bytes(), g.xml[from:]), number)
+}
+
+func joined(parts ...[]byte) []byte { return bytes.Join(parts, nil) }
+
+func (g *grownSheet) writeRow(b *bytes.Buffer, number int, record []string, styles map[int]string) {
+	p := g.prefix
+	fmt.Fprintf(b, `<%srow r="%d">`, p, number)
+	for j, text := range record {
+		style := styles[j+1]
+		if style == "" && text == "" {
+			continue
+		}
+		fmt.Fprintf(b, `<%sc r="%s%d"`, p, columnName(j+1), number)
+		if style == "" {
+			style = g.styleOf(j + 1)
+		}
+		if style != "" {
+			fmt.Fprintf(b, ` s="%s"`, style)
+		}
+		if text == "" {
+			b.WriteString("/>")
+			continue
+		}
+		fmt.Fprintf(b, ` t="inlineStr"><%sis><%st xml:space="preserve">`, p, p)
+		_ = xml.EscapeText(b, []byte(text)) // a bytes.Buffer takes everything
+		fmt.Fprintf(b, `</%st></%sis></%sc>`, p, p, p)
+	}
+	fmt.Fprintf(b, `</%srow>`, p)
+}
+
+func (g *grownSheet) styleOf(col int) string {
+	for _, c := range g.columns {
+		if c.from <= col && col <= c.to {
+			return c.style
+		}
+	}
+	return ""
+}
+
+// columnName gives the letters of a column counted from 1.
+func columnName(col int) string {
+	name := ""
+	for ; col > 0; col = (col - 1) / 26 {
+		name = string(rune('A'+(col-1)%26)) + name
+	}
+	return name
+}
+
+var stated = regexp.MustCompile(`(ref="[A-Z]+[0-9]+:[A-Z]+)([0-9]+)"`)
+
+// sized brings the stated size of the sheet up to its last row: programs that read
+// a sheet as a stream go by it. It stands before the rows.
+func (g *grownSheet) sized(out []byte, last int) []byte {
+	if g.size[1] == 0 {
+		return out
+	}
+	tag := stated.ReplaceAllFunc(out[g.size[0]:g.size[1]], func(m []byte) []byte {
+		part := stated.FindSubmatch(m)
+		if n, err := strconv.Atoi(string(part[2])); err != nil || n >= last {
+			return m
+		}
+		return []byte(fmt.Sprintf(`%s%d"`, part[1], last))
+	})
+	return joined(out[:g.size[0]], tag, out[g.size[1]:])
+}
