@@ -10,6 +10,7 @@ import (
 	"strings"
 	"time"
 
+	"tarnlight/eem"
 	"tarnlight/eem/prepare"
 	"tarnlight/eem/scanfile"
 	"tarnlight/eem/survey"
@@ -102,7 +103,7 @@ func (b *beginning) outcome(path string, bottles []*drafted) error {
 		if err := b.print(bottles); err != nil {
 			return err
 		}
-		fmt.Fprintf(b.bar, "added to %s: %s\n", path, count(len(bottles), "row"))
+		fmt.Fprintf(b.bar, "added to %s: %s\n", path, eem.Count(len(bottles), "row"))
 	}
 	if b.look {
 		return &codeError{code: exitDoubt}
@@ -127,7 +128,7 @@ func (b *beginning) append(p *present, bottles []*drafted) error {
 // settled leaves out bottles of which a file is younger than the settling time.
 func (b *beginning) settled(bottles []*drafted, serve map[string]*found) []*drafted {
 	return slices.DeleteFunc(bottles, func(d *drafted) bool {
-		what, when := fmt.Sprintf("%s, first: %s", count(len(d.files), "file"), d.files[0]), d.youngest
+		what, when := fmt.Sprintf("%s, first: %s", eem.Count(len(d.files), "file"), d.files[0]), d.youngest
 		if f := serve[d.absorbance]; f != nil && f.written.After(when) {
 			what, when = f.path, f.written
 		}
