@@ -48,8 +48,9 @@ const (
 )
 
 const (
-	fontName  = "Arial"
-	rowHeight = 15.0 // points, of rows that say nothing else
+	fontName    = "Arial"
+	rowHeight   = 15.0 // points, of rows that say nothing else
+	pageLetters = 210  // the widest sheet on one page, letters: beyond that print is too small to read
 )
 
 func newBook(title, header, footer string) *book {
@@ -153,13 +154,14 @@ func (b *book) page(name string, l layout) {
 	for _, w := range l.widths {
 		wide += w
 	}
-	pages := 1 + int(wide/320) // beyond that many letters a page would be too small to read
+	pages := 1 + int(wide/pageLetters)
 	orientation := "landscape"
 	if l.portrait {
 		orientation = "portrait"
 	}
 	side, end, edge := 0.5, 0.6, 0.3 // inches; fits A4 and Letter
-	b.try(b.f.SetPageLayout(name, &excelize.PageLayoutOptions{Size: &a4, Orientation: &orientation, FitToWidth: &pages, FitToHeight: &zero}))
+	order := "overThenDown"          // the halves of a wide sheet follow one another
+	b.try(b.f.SetPageLayout(name, &excelize.PageLayoutOptions{Size: &a4, Orientation: &orientation, FitToWidth: &pages, FitToHeight: &zero, PageOrder: &order}))
 	height := rowHeight
 	b.try(b.f.SetSheetProps(name, &excelize.SheetPropsOptions{FitToPage: &yes, DefaultRowHeight: &height, CustomHeight: &yes}))
 	b.try(b.f.SetPageMargins(name, &excelize.PageLayoutMarginsOptions{Left: &side, Right: &side, Top: &end, Bottom: &end, Header: &edge, Footer: &edge}))

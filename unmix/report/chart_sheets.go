@@ -14,6 +14,7 @@ import (
 const (
 	chartFirst   = 4
 	qualityRows  = 17
+	qualityWide  = 690 // pixels; two stand side by side
 	spectraRows  = 21
 	qualityHigh  = 300 // pixels
 	spectraHigh  = 390
@@ -29,14 +30,21 @@ func (r *results) qualitySheet(b *book) {
 	if len(names) == 0 {
 		return
 	}
-	head := chartFirst + qualityRows*len(names)
-	s := b.add("Quality", layout{widths: []float64{24, 14, 12, 16, 12, 10, 12, 12, 12, 12, 12, 10, 24}}, func(f *excelize.File, sheet string) error {
+	head := chartFirst + qualityRows*((len(names)+1)/2)
+	s := b.add("Quality", layout{widths: []float64{34, 12, 12, 15, 11, 10, 11, 11, 11, 11, 11, 9, 26}}, func(f *excelize.File, sheet string) error {
 		at := head + 1
 		for k, name := range names {
 			n := len(rows[name])
 			c := qualityChart(sheet, plain(name), t.Text(rows[name][0], t.Col("unit")), head, at, at+n-1)
-			if err := f.AddChart(sheet, fmt.Sprintf("A%d", chartFirst+qualityRows*k), c); err != nil {
+			r.chartRange(c, rows[name])
+			row := chartFirst + qualityRows*(k/2)
+			if err := f.AddChart(sheet, fmt.Sprintf("%c%d", "AG"[k%2], row), c); err != nil {
 				return err
+			}
+			if k > 0 && k%4 == 0 {
+				if err := f.InsertPageBreak(sheet, fmt.Sprintf("A%d", row)); err != nil {
+					return err
+				}
 			}
 			at += n
 		}
@@ -50,7 +58,7 @@ func (r *results) qualitySheet(b *book) {
 		for _, i := range rows[name] {
 			var row []cell
 			for _, h := range qualityHeads {
-				c := tableCell(t.Text(i, t.Col(h)))
+				c := tableCell(visible(t.Text(i, t.Col(h))))
 				if h == "measured" {
 					c = sheetCell("measured", t.Text(i, t.Col(h)))
 				}
@@ -72,7 +80,7 @@ func qualityChart(sheet, title, unit string, head, from, to int) *excelize.Chart
 			Fill: solidFill(color), Line: excelize.LineOptions{Type: excelize.LineSolid, Dash: dash, Width: 1}}
 	}
 	c := baseChart(excelize.Line, title, "Batch", unit)
-	c.Dimension = excelize.ChartDimension{Width: 900, Height: qualityHigh}
+	c.Dimension = excelize.ChartDimension{Width: qualityWide, Height: qualityHigh}
 	c.Series = []excelize.ChartSeries{
 		{Name: name("E"), Categories: ref("B"), Values: ref("E"), Line: excelize.LineOptions{Type: excelize.LineNone},
 			Marker: excelize.ChartMarker{Symbol: "circle", Size: 6, Fill: solidFill("1F4FA8")}},
@@ -81,6 +89,28 @@ func qualityChart(sheet, title, unit string, head, from, to int) *excelize.Chart
 		line("J", "901818", excelize.LineDashSysDot), line("K", "901818", excelize.LineDashSysDot),
 	}
 	return c
+}
+
+// chartRange ends the axis of a quality chart a little beyond its values and
+// limits: from zero on, limits a few percent apart would be one line.
+func (r *results) chartRange(c *excelize.Chart, rows []int) {
+	t := r.table["charts.csv"]
+	var all []float64
+	for _, i := range rows {
+		for _, h := range []string{"value", "centre", "warn_low", "warn_high", "act_low", "act_high"} {
+			all = append(all, t.Float(i, t.Col(h)))
+		}
+	}
+	lo, hi := bounds(all)
+	if !(hi > lo) {
+		return
+	}
+	step := niceStep(hi-lo, 4)
+	lo, hi = math.Floor(lo/step-0.1)*step, math.Ceil(hi/step+0.1)*step
+	if low, _ := bounds(all); low >= 0 {
+		lo = max(lo, 0)
+	}
+	c.YAxis.Minimum, c.YAxis.Maximum, c.YAxis.MajorUnit = &lo, &hi, step
 }
 
 func solidFill(color string) excelize.Fill {

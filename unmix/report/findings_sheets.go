@@ -8,17 +8,21 @@ import (
 
 // flagsSheet lists every finding in words, the gravest first.
 func (r *results) flagsSheet(b *book) {
-	heads := []string{"Severity", "Bottle", "Batch", "Component", "Finding", "What is looked for", "Found", "Limit", "Accepted because"}
-	s := b.add("Flags", layout{widths: []float64{11, 16, 14, 18, 62, 46, 10, 10, 26}, freeze: "C4", repeat: "$3:$3"})
+	heads := []string{"Severity", "Bottle", "Batch", "Component", "Finding", "What is looked for", "Found", "Limit"}
+	widths := []float64{9, r.idWidth(), 12, 16, 60, 38, 9, 9}
+	if len(r.s.Accepts) > 0 {
+		heads, widths = append(heads, "Accepted because"), append(widths, 26)
+	}
+	s := b.add("Flags", layout{widths: widths, freeze: "C4", repeat: "$3:$3"})
 	s.add(20, cell{"What the checks found", look{bold: true, size: 13, color: inkBlue}})
 	s.add(0, cell{"A reject makes a result unusable; a doubt must be seen and travels with the result; a note needs no action.", look{color: midGrey}})
 	var row []cell
 	for _, h := range heads {
 		l := headLook
-		if h == "Found" || h == "Limit" {
+		switch h {
+		case "Found", "Limit":
 			l = headRight
-		}
-		if h == "Accepted because" {
+		case "What is looked for", "Accepted because":
 			l = headIndent
 		}
 		row = append(row, cell{h, l})
@@ -56,18 +60,22 @@ func (r *results) flagRow(i int, severity eem.Severity) []cell {
 	}
 	l.hair = true
 	w := look{wrap: true, hair: true}
-	return []cell{{severity.String(), l}, {text("id"), w}, {text("batch"), w}, {text("component"), w}, {text("message"), w},
-		{what, look{color: midGrey, wrap: true, hair: true}}, figure("value"), figure("limit"), {accepted, look{wrap: true, hair: true, indent: true}}}
+	row := []cell{{severity.String(), l}, {text("id"), w}, {text("batch"), w}, {text("component"), w}, {cut(text("message"), 2000), w},
+		{what, look{color: midGrey, wrap: true, hair: true, indent: true}}, figure("value"), figure("limit")}
+	if len(r.s.Accepts) > 0 {
+		row = append(row, cell{accepted, look{wrap: true, hair: true, indent: true}})
+	}
+	return row
 }
 
 // methodsSheet tells every step with formula, parameters and source.
 func (r *results) methodsSheet(b *book) {
-	s := b.add("Methods", layout{widths: []float64{5, 19, 52, 46, 44, 34}, freeze: "A4", repeat: "$3:$3"})
+	s := b.add("Methods", layout{widths: []float64{4, 16, 46, 40, 48, 32}, freeze: "A4", repeat: "$3:$3"})
 	s.add(20, cell{"How the results were made", look{bold: true, size: 13, color: inkBlue}})
 	s.add(0, cell{"In the order of the work. Parameters are those in force for this survey.", look{color: midGrey}})
 	var row []cell
-	for _, h := range []string{"No.", "Step", "What was done", "Formula", "Parameters", "Published source"} {
-		row = append(row, cell{h, headLook})
+	for i, h := range []string{"No.", "Step", "What was done", "Formula", "Parameters", "Published source"} {
+		row = append(row, cell{h, []look{headLook, headIndent}[min(i/3, 1)]})
 	}
 	s.add(20, row...)
 	for i, m := range r.methodSteps() {
@@ -79,9 +87,9 @@ func (r *results) methodsSheet(b *book) {
 		if len(m.done) > 0 {
 			what = strings.TrimSpace(what + " Here: " + strings.Join(m.done, "; ") + ".")
 		}
-		ruled := look{wrap: true, line: true}
-		s.add(0, cell{float64(i + 1), look{line: true, align: "left"}}, cell{name, look{bold: true, wrap: true, line: true}}, cell{what, ruled}, cell{m.words.formula, ruled},
-			cell{strings.Join(m.params, "\n"), ruled}, cell{m.words.source, look{wrap: true, line: true, color: midGrey}})
+		first, ruled := look{wrap: true, line: true}, look{wrap: true, line: true, indent: true}
+		s.add(0, cell{float64(i + 1), look{line: true, align: "left"}}, cell{name, look{bold: true, wrap: true, line: true}}, cell{what, first}, cell{m.words.formula, ruled},
+			cell{strings.Join(m.params, "\n"), ruled}, cell{m.words.source, look{wrap: true, line: true, color: midGrey, indent: true}})
 	}
 	s.done()
 }

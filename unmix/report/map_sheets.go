@@ -7,6 +7,7 @@ import (
 	"image"
 	"image/png"
 	"slices"
+	"strings"
 
 	"github.com/xuri/excelize/v2"
 
@@ -79,12 +80,18 @@ func (r *results) residualSheet(b *book) error {
 	if err != nil {
 		return err
 	}
-	every := 1 + (g.Em.Len()-1)/200 // at most 200 columns
+	perPage := max(1, 130/(g.Ex.Len()+6)) // maps, each with two rows of text, on a page of 130 low rows
+	every := 1 + (g.Em.Len()-1)/200       // at most 200 columns
 	cols := (g.Em.Len() + every - 1) / every
 	s := b.add("Residual maps", layout{widths: append([]float64{10}, slices.Repeat([]float64{0.9}, cols)...), zoom: 70}, func(f *excelize.File, sheet string) error {
-		for _, m := range maps {
+		for i, m := range maps {
 			if err := m.colour(f, sheet, cols, g.Ex.Len()); err != nil {
 				return err
+			}
+			if i > 0 && i%perPage == 0 {
+				if err := f.InsertPageBreak(sheet, fmt.Sprintf("A%d", m.row)); err != nil {
+					return err
+				}
 			}
 		}
 		return nil
@@ -137,7 +144,7 @@ func hexOf(level int) string {
 // hotSheet lists the hottest spot of every bottle, worst bottle first.
 func (r *results) hotSheet(b *book, worst []*bottle) {
 	t := r.table["samples.csv"]
-	s := b.add("Hottest spots", layout{portrait: true, widths: []float64{22, 12, 12, 14, 14, 14, 12, 12}, freeze: "B4", repeat: "$3:$3"})
+	s := b.add("Hottest spots", layout{portrait: true, widths: []float64{r.idWidth(), 12, 12, 14, 14, 14, 12, 12}, freeze: "B4", repeat: "$3:$3"})
 	s.add(20, cell{"Largest residual of every bottle", look{bold: true, size: 13, color: inkBlue}})
 	s.add(0, cell{"In " + r.unit + "; the bottle with the largest residual rms over noise first.", look{color: midGrey}})
 	var heads []cell
@@ -146,10 +153,14 @@ func (r *results) hotSheet(b *book, worst []*bottle) {
 	}
 	s.add(28, heads...)
 	for _, x := range worst {
-		row := []cell{{visible(x.id), look{bold: true}}}
+		row := []cell{{visible(x.id), look{bold: true, hair: true}}}
 		for _, name := range []string{"hottest_ex_nm", "hottest_em_nm", "hottest_value", "residual_rms", "noise_rms", "explained_percent", "structure"} {
 			v := t.Float(x.row, t.Own(name))
-			row = append(row, cell{v, look{format: sigFormat(v, 4)}})
+			l := look{format: sigFormat(v, 4), hair: true}
+			if strings.HasSuffix(name, "_nm") {
+				l.format = "0.##"
+			}
+			row = append(row, cell{v, l})
 		}
 		s.add(rowHeight, row...)
 	}

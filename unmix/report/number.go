@@ -2,6 +2,7 @@ package report
 
 import (
 	"math"
+	"regexp"
 	"strconv"
 	"strings"
 )
@@ -48,6 +49,20 @@ func (n numbers) short(v float64, d int) string {
 		s = head + tail
 	}
 	return n.mark(s)
+}
+
+var fraction = regexp.MustCompile(`-?\d+\.\d+(e[-+]?\d+)?`)
+
+// rounded is a text in which every number with decimals has at most four
+// significant digits: what a measured parameter is worth in a description.
+func (n numbers) rounded(text string) string {
+	return fraction.ReplaceAllStringFunc(text, func(s string) string {
+		v, err := strconv.ParseFloat(s, 64)
+		if err != nil {
+			return s
+		}
+		return n.short(v, 4)
+	})
 }
 
 // nm writes a wavelength with at most two decimals.

@@ -108,7 +108,7 @@ func (r *results) pageData(p *pass) *pageData {
 
 // bottleData is what the page shows beside one bottle's maps.
 func (r *results) bottleData(b *bottle) dataBottle {
-	x := dataBottle{ID: b.id, Shown: visible(b.id), Parts: [][3]string{}, Flags: [][2]string{}, Facts: r.facts(b), Note: r.remarks(b)}
+	x := dataBottle{ID: b.id, Shown: visible(b.id), Parts: [][3]string{}, Flags: [][2]string{}, Facts: r.facts(b), Note: r.remarks(b, "Overview")}
 	if r.s.Pictures && b.at >= 0 {
 		x.File = r.mapFile(b.id)
 	}
@@ -122,7 +122,7 @@ func (r *results) bottleData(b *bottle) dataBottle {
 		if k.qualifier != "U" && k.qualifier != "R" && k.u > 0 {
 			pm = r.num.fixed(k.expanded(), decimals(k.u, r.s.Digits))
 		}
-		x.Parts = append(x.Parts, [3]string{k.reported, pm, strings.TrimSpace(k.qualifier + " " + k.reasons)})
+		x.Parts = append(x.Parts, [3]string{k.reported, pm, strings.TrimSpace(k.qualifier + " " + strings.Join(r.distinct(b, k), "; "))})
 	}
 	f := r.table["flags.csv"]
 	for _, k := range b.flags {
@@ -149,10 +149,7 @@ func (r *results) facts(b *bottle) [][2]string {
 		switch v := t.Float(b.row, t.Own(c.Name)); {
 		case slices.Contains([]string{"notes", "doubts", "rejects", "fit_method"}, c.Name) || math.IsNaN(v):
 		default:
-			unit := c.Unit
-			if unit == "intensity" {
-				unit = r.unit
-			}
+			unit := r.unitOf(c)
 			if unit == "z" || unit == "cells" {
 				unit = ""
 			}

@@ -23,6 +23,8 @@ type results struct {
 	store *Store            // nil where there is no survey.nc
 
 	bottles []*bottle // in the order of samples.csv
+	byID    map[string]*bottle
+	shared  []shared  // doubts on more than one bottle
 	series  []*column // method × component, in the order of contributions.csv
 	unit    string    // of intensities; empty where unknown
 	mark    string    // first letters of the SHA-256 of contributions.csv
@@ -155,6 +157,8 @@ func (r *results) index() error {
 			}
 		}
 	}
+	r.byID = byID
+	r.indexShared()
 	r.indexFlags(byID)
 	r.indexContributions(byID)
 	return nil

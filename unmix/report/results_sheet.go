@@ -2,7 +2,6 @@ package report
 
 import (
 	"fmt"
-	"strings"
 
 	"tarnlight/eem"
 )
@@ -32,16 +31,29 @@ func (r *results) knownColumns() []resultColumn {
 	return out
 }
 
+// idWidth is the width, in letters, of a column that shows most ids whole.
+func (r *results) idWidth() float64 {
+	wide := 0
+	for _, b := range r.bottles {
+		wide = max(wide, boldLetters().width(cut(visible(b.id), 40)))
+	}
+	return min(max(float64(wide)/8+1.5, 10), 28)
+}
+
 // resultsSheet is one row a bottle.
 func (r *results) resultsSheet(b *book) {
 	known := r.knownColumns()
-	widths := []float64{16}
+	widths := []float64{r.idWidth()}
 	heads := []cell{{"Bottle", headLook}}
 	for _, k := range known {
-		widths, heads = append(widths, k.width), append(heads, cell{k.head, headLook})
+		l := headLook
+		if k.name == "dilution" {
+			l = headRight
+		}
+		widths, heads = append(widths, k.width), append(heads, cell{k.head, l})
 	}
 	for i, c := range r.series {
-		widths = append(widths, 11, 8, 4.5)
+		widths = append(widths, 11, 8.5, 5)
 		name := fmt.Sprintf("%d %s", i+1, cut(plain(r.label(c)), 60))
 		if c.unit != "" {
 			name += ", " + plain(c.unit)
@@ -50,7 +62,7 @@ func (r *results) resultsSheet(b *book) {
 		mid.align = "center"
 		heads = append(heads, cell{name, headRight}, cell{fmt.Sprintf("± %d", i+1), headRight}, cell{fmt.Sprintf("Q %d", i+1), mid})
 	}
-	widths = append(widths, 10, 12, 52)
+	widths = append(widths, 10, 11, 50)
 	heads = append(heads, cell{"Explained, %", headRight}, cell{"Check", headIndent}, cell{"Remarks", headLook})
 	const headRow = 4
 	s := b.add("Results", layout{widths: widths, freeze: fmt.Sprintf("B%d", headRow+1), repeat: fmt.Sprintf("$%d:$%d", headRow, headRow)})
@@ -78,7 +90,7 @@ func (r *results) resultRow(x *bottle, known []resultColumn) []cell {
 	}
 	word, l := severityLook(x.worst)
 	l.indent = true
-	row = append(row, cell{t.Float(x.row, t.Own("explained_percent")), look{format: "0.0"}}, cell{word, l}, cell{r.remarks(x), wrapLook})
+	row = append(row, cell{t.Float(x.row, t.Own("explained_percent")), look{format: "0.0"}}, cell{word, l}, cell{cut(r.remarks(x, "Summary"), 1500), wrapLook})
 	for i := range row {
 		row[i].l.hair = true
 	}
@@ -140,29 +152,4 @@ func severityLook(s eem.Severity) (string, look) {
 		return "note", look{}
 	}
 	return "good", look{}
-}
-
-// remarks are the reasons of a bottle's qualifiers and its doubts, in words.
-func (r *results) remarks(x *bottle) string {
-	var out []string
-	say := func(s string) {
-		if s != "" && !strings.Contains(strings.Join(out, "; "), s) {
-			out = append(out, s)
-		}
-	}
-	say(x.excluded)
-	f := r.table["flags.csv"]
-	for _, i := range x.flags {
-		if parseSeverity(f.Text(i, f.Col("severity"))) >= eem.Doubt {
-			say(f.Text(i, f.Col("message")))
-		}
-	}
-	for _, c := range r.series {
-		if k := x.of[c]; k != nil {
-			for _, reason := range strings.Split(k.reasons, "; ") {
-				say(reason)
-			}
-		}
-	}
-	return strings.Join(out, "; ")
 }

@@ -2,8 +2,6 @@ package report
 
 import (
 	"fmt"
-	"strings"
-	"unicode/utf8"
 
 	"github.com/xuri/excelize/v2"
 )
@@ -50,36 +48,21 @@ func (s *sheet) add(height float64, cells ...cell) {
 // height is what the wrapped texts of a row need in their columns. Programs do
 // not agree on whether they find it themselves.
 func (s *sheet) height(cells []cell) float64 {
-	h := 15.0
+	h := rowHeight
 	for i, c := range cells {
 		if t, ok := c.v.(string); ok && c.l.wrap && i < len(s.wide) {
-			h = max(h, lineHeight(t, int(s.wide[i]*1.15)))
+			letters := cellLetters()
+			if c.l.bold {
+				letters = boldLetters()
+			}
+			px := columnPixels(s.wide[i])
+			if c.l.indent {
+				px -= 9
+			}
+			h = max(h, lineHeight(t, px, letters))
 		}
 	}
 	return h
-}
-
-// lineHeight is the height, in points, of text in 9-point letters wrapped between
-// words at width letters.
-func lineHeight(text string, width int) float64 {
-	lines := 0
-	for _, l := range strings.Split(text, "\n") {
-		at := 0
-		lines++
-		for _, word := range strings.Fields(l) {
-			n := utf8.RuneCountInString(word)
-			if at > 0 && at+1+n > width {
-				lines++
-				at = 0
-			}
-			if n > width { // a word longer than the line is broken
-				lines += (n - 1) / width
-				n %= width
-			}
-			at += n + 1
-		}
-	}
-	return 3 + 12*float64(lines)
 }
 
 func finite(v float64) bool { return v-v == 0 }

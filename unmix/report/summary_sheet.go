@@ -62,7 +62,11 @@ func (r *results) part(s *sheet, name string) {
 
 // wide writes a label and a text that runs across the page.
 func (r *results) wide(s *sheet, label, text string) {
-	s.add(lineHeight(text, 112), cell{label, look{bold: true, wrap: true}}, cell{text, wrapLook})
+	px := 0
+	for _, w := range s.wide[1:summaryColumns] {
+		px += columnPixels(w)
+	}
+	s.add(lineHeight(text, px, cellLetters()), cell{label, look{bold: true, wrap: true}}, cell{text, wrapLook})
 	s.merge(2, summaryColumns)
 }
 
@@ -111,17 +115,13 @@ func (r *results) overview() [][2]string {
 // results rest on was chosen.
 func (r *results) onAll() [][2]string {
 	var out [][2]string
-	t := r.table["flags.csv"]
-	for i := range t.Rows {
-		_, accepted := r.s.Accepts[t.Text(i, t.Col("test"))]
-		if t.Text(i, t.Col("id")) == "" && parseSeverity(t.Text(i, t.Col("severity"))) >= eem.Doubt && !accepted {
-			out = append(out, [2]string{"Doubt on all", t.Text(i, t.Col("message"))})
-		}
+	for _, d := range r.shared {
+		out = append(out, [2]string{"Doubt on " + d.on, d.message})
 	}
 	m := r.table["models.csv"]
 	for i := range m.Rows {
 		if why := m.Text(i, m.Col("reason")); m.Bool(i, m.Col("chosen")) && why != "" {
-			out = append(out, [2]string{"Model", fmt.Sprintf("%s components: %s", m.Text(i, m.Col("components")), why)})
+			out = append(out, [2]string{"Model", fmt.Sprintf("%s: %s", plural(int(m.Float(i, m.Col("components"))), "component", "components"), why)})
 		}
 	}
 	return out
@@ -185,7 +185,7 @@ func (r *results) batchSummary(s *sheet) {
 	}
 	r.part(s, "Batches")
 	var row []cell
-	for i, h := range []string{"Batch", "Measured", "Bottles", "Blanks", "Unit", "Verdict", "Why"} {
+	for i, h := range []string{"Batch", "Measured", "Samples", "Blanks", "Unit", "Verdict", "Why"} {
 		row = append(row, cell{h, []look{headLook, headLook, headRight, headRight, headIndent, headLook, headIndent}[i]})
 	}
 	s.add(16, row...)

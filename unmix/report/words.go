@@ -34,7 +34,11 @@ type stepWords struct {
 var stepText = map[string]stepWords{
 	"read":       {"The instrument's text files were read; nothing was changed in them.", "", ""},
 	"saturation": {"Readings at or above the limit of the detector were left out.", "F missing where F ≥ limit", ""},
-	"offset":     {"The dark reading of the detector was subtracted.", "F = F_read − offset", ""},
+	"detector":   {"Faults of single readings were looked for: scans with dropped readings, and spikes that stand out alone; such readings were left out.", "", ""},
+	"noise": {"The noise of the readings was estimated from the blanks of each setup; it weighs the cells and enters every uncertainty.",
+		"variance of a reading = (read noise)² + factor · counts", ""},
+	"temperature": {"Intensities were brought to one temperature with the coefficient given.", "F = F / (1 + ρ · (T − T_ref))", "Watras et al. 2011, Limnol. Oceanogr. Methods 9, 296 (from memory)"},
+	"offset":      {"The dark reading of the detector was subtracted.", "F = F_read − offset", ""},
 	"spectral factors": {"Excitation and emission were corrected for the wavelength-dependent response of the instrument; cells outside the certified range were left out, never extrapolated.",
 		"F = F · C_ex(λ_ex) · C_em(λ_em)", "ASTM E3029-15"},
 	"inner filter": {"Light that the sample absorbed itself (inner-filter effect) was restored from the sample's own absorbance; cells above the limit were left out.",
@@ -91,7 +95,7 @@ func (r *results) methodSteps() []*methodStep {
 			m.done = append(m.done, v)
 		}
 		if p := t.Text(i, par); p != "" {
-			text := fmt.Sprintf("%s = %s", p, strings.TrimSpace(t.Text(i, value)+" "+t.Text(i, unit)))
+			text := fmt.Sprintf("%s = %s", p, strings.TrimSpace(r.num.rounded(t.Text(i, value))+" "+t.Text(i, unit)))
 			if v := baseName(t.Text(i, source)); v != "" {
 				text += " (" + v + ")"
 			}

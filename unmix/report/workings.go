@@ -13,14 +13,14 @@ func (r *results) writeWorkings(p *pass) error {
 	for _, m := range r.methods() {
 		r.componentsSheet(b, m)
 	}
-	r.tableSheet(b, "Models", "models.csv", "Candidate numbers of components")
+	r.modelsSheet(b)
 	r.tableSheet(b, "Splits", "splits.csv", "Congruence of split halves")
 	if err := r.residualSheet(b); err != nil {
 		return err
 	}
 	r.thumbnailSheet(b, p)
 	r.opticsSheet(b)
-	r.tableSheet(b, "Budget", "budget.csv", "Uncertainty by cause")
+	r.budgetSheet(b)
 	r.tableSheet(b, "Limits", "limits.csv", "Limits of detection: those in force, and the published forms beside them")
 	r.tableSheet(b, "Batches", "batches.csv", "Batches")
 	r.tableSheet(b, "Calibration", "calibration.csv", "Given, found and recovery of standards, controls and spikes")
@@ -44,13 +44,13 @@ func (r *results) tableSheet(b *book, name, file, title string) {
 	s := b.add(name, layout{widths: columnWidths(t), freeze: "B4", repeat: "$3:$3"})
 	s.add(20, cell{title, look{bold: true, size: 13, color: inkBlue}})
 	s.add(0, cell{"The content of " + file + "; " + f.What + ".", look{color: midGrey}})
-	s.add(30, uniqueHeads(t.Columns)...)
+	s.add(0, uniqueHeads(t.Columns)...)
 	for i := range t.Rows[:min(len(t.Rows), maxRows)] {
 		row := make([]cell, len(t.Columns))
 		for c := range row {
 			row[c] = tableCell(visible(t.Text(i, c)))
 		}
-		s.add(rowHeight, row...)
+		s.add(0, row...)
 	}
 	s.table(strings.ReplaceAll(name, " ", "_"), 3, len(t.Columns))
 	s.done()
@@ -62,7 +62,18 @@ func tableCell(text string) cell {
 	if v, ok := number(text); ok && !strings.Contains(text, ",") {
 		return cell{v, look{format: shortFormat(v)}}
 	}
-	return cell{text, look{indent: true}}
+	return cell{cut(yesNo(text), 2000), look{indent: true, wrap: true}}
+}
+
+// yesNo writes a truth value as a word.
+func yesNo(text string) string {
+	switch text {
+	case "true":
+		return "yes"
+	case "false":
+		return "no"
+	}
+	return text
 }
 
 // filled is the table without the columns that are empty throughout.
@@ -96,7 +107,7 @@ func uniqueHeads(names []string) []cell {
 	return out
 }
 
-// columnWidths suits the first rows of a table.
+// columnWidths suits the first rows of a table; longer texts are wrapped.
 func columnWidths(t *Table) []float64 {
 	w := make([]float64, len(t.Columns))
 	for c, name := range t.Columns {
@@ -104,11 +115,11 @@ func columnWidths(t *Table) []float64 {
 		for i := range t.Rows[:min(len(t.Rows), 200)] {
 			text := t.Text(i, c)
 			if _, ok := number(text); ok {
-				text = text[:min(len(text), 9)]
+				text = text[:min(len(text), 8)]
 			}
 			longest = max(longest, len([]rune(text)))
 		}
-		w[c] = float64(min(max(longest+2, 9), 60))
+		w[c] = min(max(0.85*float64(longest)+2, 8), 30)
 	}
 	return w
 }
