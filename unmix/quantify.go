@@ -6,6 +6,7 @@ import (
 	"runtime"
 	"sync"
 
+	"gonum.org/v1/gonum/floats"
 	"gonum.org/v1/gonum/mat"
 
 	"tarnlight/eem"
@@ -152,7 +153,7 @@ func (q *quantifier) residual(g eem.Grid, fit *Fit, b, x []float64) {
 		if math.IsNaN(v) {
 			continue
 		}
-		d := v - mat.Dot(q.a.RowView(l), mat.NewVecDense(q.n, x))
+		d := v - floats.Dot(q.a.RawRowView(l), x)
 		sse, sst = sse+d*d, sst+v*v
 		if d > fit.Hot {
 			hot, fit.Hot = q.cells[l], d
@@ -192,18 +193,19 @@ func (q *quantifier) spread(u []float64, fit *Fit, b, x []float64, res nnls.Resu
 // condition returns the condition number of the unit-norm columns on the cells
 // of weight 1, +Inf where they are dependent.
 func (q *quantifier) condition(w []float64) float64 {
-	gram := mat.NewSymDense(q.n, nil)
+	sum := make([]float64, q.n*q.n)
 	for l, on := range w {
 		if on == 0 {
 			continue
 		}
 		row := q.a.RawRowView(l)
-		for f := range row {
+		for f, x := range row {
 			for h := f; h < q.n; h++ {
-				gram.SetSym(f, h, gram.At(f, h)+row[f]*row[h])
+				sum[f*q.n+h] += x * row[h]
 			}
 		}
 	}
+	gram := mat.NewSymDense(q.n, sum) // the upper triangle
 	norm := make([]float64, q.n)
 	for f := range norm {
 		norm[f] = math.Sqrt(gram.At(f, f))
@@ -230,14 +232,21 @@ func (q *quantifier) condition(w []float64) float64 {
 // ModelTo writes the modelled cells of sample i, J × K, into dst; NaN where a
 // component is not determined or the bottle was not usable.
 func (r *Resolution) ModelTo(dst []float64, i int) {
-	g := r.Set.Grid
-	for j := range g.Ex.Len() {
-		for k := range g.Em.Len() {
-			v := 0.0
-			for f := range r.Set.Components {
-				v += r.Value[i*r.Set.Len()+f] * r.Set.Components[f].At(g, j, k)
+	clear(dst)
+	nk := r.Set.Grid.Em.Len()
+	for f := range r.Set.Components {
+		c, x := &r.Set.Components[f], r.Value[i*r.Set.Len()+f]
+		if c.Surface != nil {
+			for l, v := range c.Surface {
+				dst[l] += x * v
 			}
-			dst[g.Index(j, k)] = v
+			continue
+		}
+		for j, ex := range c.Ex {
+			row := dst[j*nk : (j+1)*nk]
+			for k, em := range c.Em {
+				row[k] += x * (c.Scale * ex * em)
+			}
 		}
 	}
 }

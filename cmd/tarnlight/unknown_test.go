@@ -19,11 +19,14 @@ func search(t testing.TB, j *job) *merit.Unknown {
 			rows = append(rows, j.row[b])
 		}
 	}
-	u, err := merit.FindUnknown(j.cube, j.res[0], rows, j.sources(j.res[0]), j.judge[0].Spreads)
+	us, err := merit.FindUnknowns(j.cube, j.res[0], rows, j.sources(j.res[0]), j.judge[0].Spreads)
 	if err != nil {
 		t.Fatal(err)
 	}
-	return u
+	if us == nil {
+		return nil
+	}
+	return us[0]
 }
 
 // A dyestuff that the references lack, in 3 of 40 samples at 2, 5 and 20 times the

@@ -84,11 +84,16 @@ func relative(c *eem.Cause, j, k int32) float64 {
 // row. It panics when src does not have the length of the cube. Rows do not depend
 // on one another but for the standards and blanks that they share.
 func Spreads(c *eem.Cube, r *unmix.Resolution, src *Sources) []Spread {
+	return spreadsOf(c, r, src, all(c.Len()))
+}
+
+// spreadsOf is Spreads of some rows; the others stay zero.
+func spreadsOf(c *eem.Cube, r *unmix.Resolution, src *Sources, rows []int) []Spread {
 	e := newEngine(c, r, src)
 	out := make([]Spread, c.Len())
 	var wg sync.WaitGroup
 	next := make(chan int)
-	for range min(runtime.GOMAXPROCS(0), max(1, c.Len())) {
+	for range min(runtime.GOMAXPROCS(0), max(1, len(rows))) {
 		wg.Go(func() {
 			w := e.worker()
 			for i := range next {
@@ -96,7 +101,7 @@ func Spreads(c *eem.Cube, r *unmix.Resolution, src *Sources) []Spread {
 			}
 		})
 	}
-	for i := range out {
+	for _, i := range rows {
 		next <- i
 	}
 	close(next)
