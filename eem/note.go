@@ -3,6 +3,7 @@ package eem
 import (
 	"fmt"
 	"math"
+	"strconv"
 )
 
 // Severity is the one ladder on which everything that is said about a number
@@ -112,3 +113,6 @@ func Count(n int, thing string) string {
 	}
 	return fmt.Sprintf("%d %ss", n, thing)
 }
+
+// NM writes a wavelength for a message, to 0.1 nm at most: no instrument is better.
+func NM(nm float64) string { return strconv.FormatFloat(math.Round(10*nm)/10, 'f', -1, 64) }

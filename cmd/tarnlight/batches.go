@@ -9,6 +9,7 @@ import (
 	"tarnlight/eem"
 	"tarnlight/eem/prepare"
 	"tarnlight/eem/survey"
+	"tarnlight/unmix"
 	"tarnlight/unmix/report"
 )
 
@@ -195,4 +196,27 @@ func (j *job) chartFlags() []eem.Flag {
 		}
 	}
 	return out
+}
+
+// blankTable makes blanks.csv.
+func (j *job) blankTable() *report.Table {
+	t := report.New("blanks.csv")
+	limit := j.sv.Limit("blank-level")
+	for _, bt := range j.sv.Batches {
+		for _, b := range bt.Blanks {
+			if b.Glow == nil {
+				continue
+			}
+			for _, s := range []struct {
+				mode   string
+				at     float64
+				points []prepare.GlowPoint
+			}{{unmix.ModeEx, b.Glow.EmNM, b.Glow.Excitation}, {unmix.ModeEm, b.Glow.ExNM, b.Glow.Emission}} {
+				for _, p := range s.points {
+					t.Append(bt.Name, b.Row.ID, s.mode, s.at, p.NM, p.Percent, p.Others, b.Glow.Percent > limit)
+				}
+			}
+		}
+	}
+	return t
 }

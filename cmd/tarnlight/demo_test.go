@@ -34,7 +34,7 @@ func TestDemo(t *testing.T) {
 		t.Error("a planted fault was not found")
 	}
 	for _, name := range []string{"contributions.csv", "samples.csv", "flags.csv", "components.csv", "models.csv", "splits.csv", "batches.csv",
-		"calibration.csv", "charts.csv", "budget.csv", "steps.csv", "model.json", "survey.nc", "report.xlsx", "status.json",
+		"calibration.csv", "charts.csv", "blanks.csv", "budget.csv", "steps.csv", "model.json", "survey.nc", "report.xlsx", "status.json",
 		"settings-used.toml", "provenance.json", "maps", "figures"} {
 		info, err := os.Stat(filepath.Join(dir, "out", name))
 		if err != nil || (!info.IsDir() && info.Size() == 0) {

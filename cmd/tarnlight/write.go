@@ -26,7 +26,7 @@ func (j *job) write(stage *outdir.Staging) error {
 	dir := stageDir(stage)
 	for _, t := range []*report.Table{
 		j.contributionTable(), j.sampleTable(), j.flagTable(), j.componentTable(), j.modelTable(), j.splitTable(),
-		j.splitSpectra(), j.batchTable(), j.calibrationTable(), j.chartTable(), j.budgetTable(), j.stepTable(), j.limitsTable(),
+		j.splitSpectra(), j.batchTable(), j.calibrationTable(), j.chartTable(), j.blankTable(), j.budgetTable(), j.stepTable(), j.limitsTable(),
 	} {
 		if err := t.WriteFile(dir); err != nil {
 			return err

@@ -92,3 +92,26 @@ func overlap(ax eem.Axis, i int, lo, hi float64) float64 {
 	}
 	return max(0, min(hi, to)-max(lo, from))
 }
+
+// peakBoxes are where the peaks of Coble 1996 lie (from memory), with some room.
+var peakBoxes = []struct {
+	name               string
+	ex0, ex1, em0, em1 float64
+}{
+	{"B, tyrosine-like", 265, 285, 295, 318},
+	{"T, tryptophan-like", 265, 290, 318, 370},
+	{"A, humic-like", 230, 265, 380, 480},
+	{"M, humic-like", 290, 319, 370, 430},
+	{"C, humic-like", 319, 370, 400, 500},
+}
+
+// Like names the common peak near a place of the plane for a message, ", like peak
+// T, tryptophan-like"; empty where there is none. What glows alike need not be that.
+func Like(exNM, emNM float64) string {
+	for _, b := range peakBoxes {
+		if exNM >= b.ex0 && exNM <= b.ex1 && emNM >= b.em0 && emNM <= b.em1 {
+			return ", like peak " + b.name
+		}
+	}
+	return ""
+}

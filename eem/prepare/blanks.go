@@ -7,29 +7,54 @@ import (
 
 	"tarnlight/eem"
 	"tarnlight/eem/correct"
+	"tarnlight/eem/optics"
 	"tarnlight/eem/scatter"
 )
 
 // checkLevels tells which blanks glow and which one departs from the others.
 func (bt *Batch) checkLevels(s *Survey) {
-	for _, b := range bt.Blanks {
-		if !b.rawLight() {
+	maps := make([]*glowMap, len(bt.Blanks))
+	for i, b := range bt.Blanks {
+		if b.rawLight() {
+			maps[i] = b.glowMap()
+		}
+	}
+	for i, b := range bt.Blanks {
+		if maps[i] == nil {
 			continue
 		}
-		v, ex, em, ok := b.glow()
-		b.glowPercent, b.glowFound = v, ok
-		if limit := s.Limit("blank-level"); ok && v > limit {
-			b.flag(s, eem.Note{Test: "blank-level", Severity: eem.Doubt, Measure: true, Value: v, Limit: limit,
-				Msg: fmt.Sprintf("glows at ex %g / em %g nm by %.0f %% of its Raman line, where pure water does not; look for a dirty cell or spoiled water", ex, em, v)})
+		g := maps[i].glow(maps)
+		b.Glow = &g
+		if limit := s.Limit("blank-level"); g.Percent > limit {
+			b.flag(s, eem.Note{Test: "blank-level", Severity: eem.Doubt, Measure: true, Value: g.Percent, Limit: limit,
+				Msg: fmt.Sprintf("glows at ex %s / em %s nm by %.0f %% of its Raman line, where pure water does not%s; its spectra stand in blanks.csv of the results; look for a dirty cell or spoiled water",
+					eem.NM(g.ExNM), eem.NM(g.EmNM), g.Percent, optics.Like(g.ExNM, g.EmNM))})
 		}
 	}
 	bt.checkDrift(s)
 }
 
-// glow returns the brightest spot of a blank outside the scatter bands, a mean of
-// 3 × 5 neighbouring cells above the lower quartile of all of them, in percent of
-// the height of its own Raman line at the scale's excitation.
-func (b *Bottle) glow() (percent, ex, em float64, ok bool) {
+// Glow tells where and how much a blank shines outside the scatter bands, in percent
+// of the height of its own Raman line at the scale's excitation.
+type Glow struct {
+	Percent, ExNM, EmNM  float64     // of the brightest spot
+	Excitation, Emission []GlowPoint // spectra through it, on the blank's own axes
+}
+
+// GlowPoint is one point of a spectrum of a blank. Others is what the batch's other
+// blanks show there, their mean. NaN: in a scatter band, or no other blank.
+type GlowPoint struct{ NM, Percent, Others float64 }
+
+// glowMap is a blank without its scatter bands, in percent of its own Raman line
+// above the lower quartile of its cells.
+type glowMap struct {
+	*eem.EEM
+	percent, ex, em float64 // of the brightest spot, a mean of 3 × 5 cells
+	j, k            int     // where that is
+}
+
+// glowMap returns nil where the blank shows no Raman line or too few cells are left.
+func (b *Bottle) glowMap() *glowMap {
 	height := nan
 	for _, p := range scatter.Ridge(b.raw, scatter.Raman1, ramanWindow) {
 		if math.Abs(p.ExNM-b.Setting.Intensity.ExcitationNM) < 3 {
@@ -37,47 +62,91 @@ func (b *Bottle) glow() (percent, ex, em float64, ok bool) {
 		}
 	}
 	if !(height > 0) {
-		return nan, nan, nan, false
+		return nil
 	}
-	e := b.raw.Clone()
+	m := &glowMap{EEM: b.raw.Clone()}
 	near := nearLines(b.Setting.Scatter)
-	for j := range e.Ex.Len() {
-		for k := range e.Em.Len() {
-			if x, m := e.Ex.At(j), e.Em.At(k); m < x || near(x, m) {
-				e.Drop(e.Index(j, k), eem.BelowExcitation)
+	for j := range m.Ex.Len() {
+		for k := range m.Em.Len() {
+			if x, y := m.Ex.At(j), m.Em.At(k); y < x || near(x, y) {
+				m.Drop(m.Index(j, k), eem.BelowExcitation)
 			}
 		}
 	}
+	if !m.brightest(height) {
+		return nil
+	}
+	return m
+}
+
+// brightest finds the brightest spot and brings the cells to percent; false where too
+// few cells are left to tell a spot from the rest.
+func (m *glowMap) brightest(height float64) bool {
 	var means []float64
 	top := math.Inf(-1)
-	for j := 1; j+1 < e.Ex.Len(); j++ {
-		for k := 2; k+2 < e.Em.Len(); k++ {
-			v := spot(e, j, k)
+	for j := 1; j+1 < m.Ex.Len(); j++ {
+		for k := 2; k+2 < m.Em.Len(); k++ {
+			v := spot(m.EEM, j, k, 1, 2)
 			if math.IsNaN(v) {
 				continue
 			}
 			means = append(means, v)
 			if v > top {
-				top, ex, em = v, e.Ex.At(j), e.Em.At(k)
+				top, m.j, m.k = v, j, k
 			}
 		}
 	}
-	if len(means) < 20 { // too few cells are left to tell a spot from the rest
-		return nan, nan, nan, false
+	if len(means) < 20 {
+		return false
 	}
 	slices.Sort(means)
-	return 100 * (top - means[len(means)/4]) / height, ex, em, true
+	base := means[len(means)/4]
+	m.percent, m.ex, m.em = 100*(top-base)/height, m.Ex.At(m.j), m.Em.At(m.k)
+	for i := range m.F {
+		m.F[i] = 100 * (m.F[i] - base) / height
+	}
+	return true
 }
 
-// spot is the mean of the 3 × 5 cells around (j, k), NaN where one is missing.
-func spot(e *eem.EEM, j, k int) float64 {
+// spot is the mean of the cells up to dj excitations and dk emissions off (j, k), NaN
+// where one is missing.
+func spot(e *eem.EEM, j, k, dj, dk int) float64 {
 	sum := 0.0
-	for dj := -1; dj <= 1; dj++ {
-		for dk := -2; dk <= 2; dk++ {
-			sum += e.At(j+dj, k+dk)
+	for x := max(0, j-dj); x <= min(e.Ex.Len()-1, j+dj); x++ {
+		for m := max(0, k-dk); m <= min(e.Em.Len()-1, k+dk); m++ {
+			sum += e.At(x, m)
 		}
 	}
-	return sum / 15
+	return sum / float64((min(e.Ex.Len()-1, j+dj)-max(0, j-dj)+1)*(min(e.Em.Len()-1, k+dk)-max(0, k-dk)+1))
+}
+
+// glow reads the spectra through the brightest spot, each a mean over three
+// excitations or five emissions, beside those of the other blanks.
+func (m *glowMap) glow(all []*glowMap) Glow {
+	g := Glow{Percent: m.percent, ExNM: m.ex, EmNM: m.em}
+	others := make([]*eem.EEM, 0, len(all))
+	for _, o := range all {
+		if o != nil && o != m {
+			others = append(others, o.Regrid(m.Grid))
+		}
+	}
+	point := func(nm float64, at func(e *eem.EEM) float64) GlowPoint {
+		p := GlowPoint{NM: nm, Percent: at(m.EEM), Others: 0}
+		for _, o := range others {
+			p.Others += at(o) / float64(len(others))
+		}
+		if len(others) == 0 {
+			p.Others = nan
+		}
+		return p
+	}
+	for j := range m.Ex.Len() {
+		g.Excitation = append(g.Excitation, point(m.Ex.At(j), func(e *eem.EEM) float64 { return spot(e, j, m.k, 0, 2) }))
+	}
+	for k := range m.Em.Len() {
+		g.Emission = append(g.Emission, point(m.Em.At(k), func(e *eem.EEM) float64 { return spot(e, m.j, k, 1, 0) }))
+	}
+	return g
 }
 
 // checkDrift flags the blank whose Raman area departs most from the mean of the

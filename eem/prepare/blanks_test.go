@@ -76,6 +76,46 @@ func TestFaultyBlanks(t *testing.T) {
 	}
 }
 
+// The spectra through the brightest spot of a contaminated blank, less those of its
+// neighbour, are the contaminant's; the flag names the place and what it is like.
+func TestContaminationSpectrum(t *testing.T) {
+	s := forty(t)
+	of := synth.Substance("brightener")
+	b := find(s, "PW1-1")
+	b.Liquid = b.Liquid.With(synth.Dose{Of: of, Amount: 2})
+	dir := t.TempDir()
+	if err := s.Write(dir); err != nil {
+		t.Fatal(err)
+	}
+	sv := prepared(t, dir, 0)
+	g := find2(t, sv, "PW1-1").Glow
+	if g == nil || math.Abs(g.ExNM-350) > 10 || math.Abs(g.EmNM-432) > 12 { // where the brightener is brightest
+		t.Fatalf("brightest spot %+v", g)
+	}
+	for _, c := range []struct {
+		what   string
+		points []prepare.GlowPoint
+		of     synth.Band
+	}{{"excitation", g.Excitation, of.Absorbs}, {"emission", g.Emission, of.Emits}} {
+		var ab, aa, bb float64
+		n := 0
+		for _, p := range c.points {
+			if v := p.Percent - p.Others; !math.IsNaN(v) {
+				w := c.of.At(p.NM)
+				ab, aa, bb, n = ab+v*w, aa+v*v, bb+w*w, n+1
+			}
+		}
+		if cos := ab / math.Sqrt(aa*bb); n < 10 || cos < 0.99 {
+			t.Errorf("%s: congruence %.4f over %d points with the contaminant's", c.what, cos, n)
+		}
+	}
+	for _, f := range sv.Flags {
+		if f.ID == "PW1-1" && f.Test == "blank-level" && !strings.Contains(f.Msg, "like peak C, humic-like; its spectra stand in blanks.csv") {
+			t.Error(f.Msg)
+		}
+	}
+}
+
 // A blank of another day's water is contaminated for the bottles: more of their
 // cells lie below zero than noise explains.
 func TestNegativeAfterBlank(t *testing.T) {

@@ -136,8 +136,8 @@ func (s *Survey) Charts() []Chart {
 				p.Low, p.High = p.Centre*(1-drift/100), p.Centre*(1+drift/100)
 				area.Points = append(area.Points, p)
 			}
-			if b.glowFound {
-				p.Value, p.Centre, p.Low, p.High = b.glowPercent, 0, nan, level
+			if b.Glow != nil {
+				p.Value, p.Centre, p.Low, p.High = b.Glow.Percent, 0, nan, level
 				glow.Points = append(glow.Points, p)
 			}
 		}

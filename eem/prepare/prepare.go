@@ -63,20 +63,19 @@ type Bottle struct {
 	// Survey.BlankU; empty where none was).
 	Causes   []eem.Cause
 	BlankSet string
+	Glow     *Glow // of a blank, nil where it shows no Raman line
 
-	raw         *eem.EEM        // up to the inner filter: what blank and scale start from
-	scanned     *eem.Absorbance // of the liquid scanned
-	guesses     []Guess
-	said        []eem.Note // findings as they came, before the quality settings
-	scanFiles   []Input    // the raw scans among Files
-	claims      []string   // files that the scans cell names
-	twofold     *Bottle    // the same water at another dilution, which corrects the inner filter; nil without
-	told        int        // notes of EEM whose findings are flags already
-	area        float64    // Raman area of a blank, before the blank is removed; NaN unknown
-	scale       float64    // what the intensities were divided by; NaN when they stay as they are
-	glowPercent float64    // of a blank, see glow
-	glowFound   bool
-	blanks      []*Bottle // what its blank and its scale rest on
+	raw       *eem.EEM        // up to the inner filter: what blank and scale start from
+	scanned   *eem.Absorbance // of the liquid scanned
+	guesses   []Guess
+	said      []eem.Note // findings as they came, before the quality settings
+	scanFiles []Input    // the raw scans among Files
+	claims    []string   // files that the scans cell names
+	twofold   *Bottle    // the same water at another dilution, which corrects the inner filter; nil without
+	told      int        // notes of EEM whose findings are flags already
+	area      float64    // Raman area of a blank, before the blank is removed; NaN unknown
+	scale     float64    // what the intensities were divided by; NaN when they stay as they are
+	blanks    []*Bottle  // what its blank and its scale rest on
 
 	counts *eem.EEM       // a blank's counts without the offset, for the noise model
 	noise  *correct.Noise // nil while unknown

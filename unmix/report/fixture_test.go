@@ -235,7 +235,20 @@ func (f fixture) surveyTables(rnd *rand.Rand) []*Table {
 		put(steps, k+1, "", s, "", "", "", "", s+" was done as the settings say")
 		put(steps, k+1, "", s, "limit", 1.5, "", "settings: default", "")
 	}
-	return []*Table{models, splits, halves, batches, calibration, charts, budget, steps}
+	blanks := New("blanks.csv")
+	for n, id := range []string{"PW1", "PW2"} {
+		for _, nm := range f.grid.Ex.Values() {
+			put(blanks, "2031-05-03", id, "excitation", 450.0, nm, 2+20*float64(n)*fixturePeaks[2].excitation(nm), 2.0, n == 1)
+		}
+		for _, nm := range f.grid.Em.Values() {
+			v := any(2 + 20*float64(n)*fixturePeaks[2].emission(nm))
+			if nm > 390 && nm < 410 {
+				v = nan
+			}
+			put(blanks, "2031-05-03", id, "emission", 350.0, nm, v, 2.0, n == 1)
+		}
+	}
+	return []*Table{models, splits, halves, batches, calibration, charts, blanks, budget, steps}
 }
 
 // put appends a row; columns that were appended to the schema later stay empty.

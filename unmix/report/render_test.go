@@ -58,6 +58,22 @@ func rendered(t testing.TB, n int, change func(*RenderSettings), methods ...stri
 	return dir
 }
 
+// The spectra of a contaminated blank are drawn and stand beside the picture; a clean
+// one is not drawn.
+func TestBlankFigure(t *testing.T) {
+	dir := rendered(t, 3, nil, "parafac")
+	svg, err := os.ReadFile(filepath.Join(dir, "figures", "blanks.svg"))
+	must(t, err)
+	if text := string(svg); !strings.Contains(text, "PW2, emission at ex 350 nm") || strings.Contains(text, "PW1, ") {
+		t.Error("the picture does not show the contaminated blank alone")
+	}
+	num, err := ReadTable(filepath.Join(dir, "figures", "blanks.csv"))
+	must(t, err)
+	if len(num.Rows) < 100 || num.Text(0, num.Col("id")) != "PW2" {
+		t.Errorf("%d rows", len(num.Rows))
+	}
+}
+
 // hash of every file in a folder.
 func hashes(t testing.TB, dir string) map[string]string {
 	t.Helper()

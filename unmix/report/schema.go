@@ -310,5 +310,14 @@ var Schema = []File{
 		{"note", "", "why not, or what makes it less than it should be"},
 		{"values", "", "the values, batches parted by |; of blanks and standards as least squares sees them, below zero too"},
 		{"source", "", "published source of the formula"},
+	}}, {"blanks.csv", "how blanks shine outside the scatter bands: spectra through the brightest spot of each", []Column{
+		{"batch", "", "the batch"},
+		{"id", "", "the blank"},
+		{"mode", "", "excitation or emission"},
+		{"at_nm", "nm", "the other wavelength, that of the brightest spot"},
+		{"wavelength_nm", "nm", "wavelength"},
+		{"percent", "%", "intensity in percent of the height of the blank's own Raman line; empty in a scatter band"},
+		{"others_percent", "%", "the same of the batch's other blanks, their mean; empty where there is none"},
+		{"doubtful", "", "true where the blank's brightest spot is above the limit of the test blank-level"},
 	}},
 }
