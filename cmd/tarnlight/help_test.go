@@ -61,6 +61,10 @@ func TestExamplesRun(t *testing.T) {
 			}
 			runNoPictures(t, "mystudy")
 		},
+		"plan": func() {
+			writePlanned(t, "mysurvey")
+			runNoPictures(t, "mysurvey")
+		},
 		"settings": func() {}, "tests": func() {}, "completion": func() {}, "demo": func() {},
 	}
 	for _, c := range newRoot(streams{}).Commands() {

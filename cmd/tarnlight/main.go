@@ -122,7 +122,7 @@ Use accredited, approved methods for that, and confirm identities.`,
 	root.AddCommand(
 		newRunCmd(s), newDemoCmd(s), newBeginCmd(s), newCheckCmd(s), newQuantifyCmd(s), newResolveCmd(s),
 		newApplyCmd(s), newCompareCmd(s), newExplainCmd(s),
-		newReportCmd(s), newVerifyCmd(s), newFactorsCmd(s), newLimitsCmd(s), newSettingsCmd(s), newTestsCmd(s),
+		newReportCmd(s), newVerifyCmd(s), newFactorsCmd(s), newPlanCmd(s), newLimitsCmd(s), newSettingsCmd(s), newTestsCmd(s),
 	)
 	for _, c := range root.Commands() {
 		c.Args = usageArgs(c.Args)

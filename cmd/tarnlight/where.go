@@ -53,3 +53,8 @@ func meant(id string, ids []string) string {
 	}
 	return "it has " + some(ids)
 }
+
+func isFolder(path string) bool {
+	info, err := os.Stat(path)
+	return err == nil && info.IsDir()
+}

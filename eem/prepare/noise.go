@@ -245,7 +245,7 @@ func (s *Survey) cellNoise(bottles []*Bottle) []float32 {
 			for l, u := range b.u {
 				e.Var[l] = float64(u) * float64(u)
 			}
-			for l, v := range e.Regrid(s.Grid).Var {
+			for l, v := range s.onGrid(&e).Var {
 				row[l] = float32(math.Sqrt(v))
 			}
 		}

@@ -103,6 +103,8 @@ type Survey struct {
 	// noise, J × K in Unit, by the name of the set; it is that of an undiluted bottle.
 	BlankU map[string][]float32
 
+	Noise *BareNoise // of pure water on the survey's grid; nil while unknown
+
 	factors      map[string]factorPair  // by setup
 	autoBands    map[string]survey.Band // what was found for "auto", by key of [scatter]
 	defaultBands []string               // the keys among them that no blank showed
@@ -167,6 +169,7 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 	}
 	s.listCauses()
 	s.blankNoise()
+	s.Noise = s.bareNoise()
 	for _, b := range s.Bottles {
 		b.raw, b.scanned, b.counts, b.gain = nil, nil, nil, nil
 	}
@@ -309,7 +312,7 @@ func (s *Survey) Cube(bottles []*Bottle) *eem.Cube {
 	ids := make([]string, len(bottles))
 	es := make([]*eem.EEM, len(bottles))
 	for i, b := range bottles {
-		ids[i], es[i] = b.Row.ID, b.EEM
+		ids[i], es[i] = b.Row.ID, s.onGrid(b.EEM)
 	}
 	c := eem.NewCube(s.Grid, ids, es)
 	c.Unit = s.Unit

@@ -12,7 +12,7 @@ type Timing struct {
 // Minutes is the time of n scans over the points that w leaves of the emission axis
 // of the design.
 func (t Timing) Minutes(d *Design, w Window, n int) float64 {
-	from, to, stride := d.ends(w)
+	from, to, stride := d.Ends(w)
 	em := d.Grid().Em
 	seconds := t.SettleSeconds
 	if t.NMPerMinute > 0 {
@@ -22,8 +22,8 @@ func (t Timing) Minutes(d *Design, w Window, n int) float64 {
 	return float64(n) * seconds / 60
 }
 
-// ends gives the zero Window its meaning.
-func (d *Design) ends(w Window) (from, to, stride int) {
+// Ends gives the points that w leaves: from, from + stride, … below to.
+func (d *Design) Ends(w Window) (from, to, stride int) {
 	if w.To == 0 {
 		return 0, d.Grid().Em.Len(), 1
 	}
@@ -59,7 +59,7 @@ func (d *Design) Narrow(lines []int, loss float64, t Timing) (Window, Prediction
 
 // smaller lists the windows one step smaller than w.
 func (d *Design) smaller(w Window, t Timing) []Window {
-	from, to, stride := d.ends(w)
+	from, to, stride := d.Ends(w)
 	piece := max(1, d.Grid().Em.Len()/20)
 	var out []Window
 	if to-from > piece+d.n*stride {

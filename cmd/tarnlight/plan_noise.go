@@ -1,0 +1,156 @@
+package main
+
+import (
+	"cmp"
+	"context"
+	"fmt"
+	"math"
+	"slices"
+
+	"tarnlight/eem"
+	"tarnlight/eem/prepare"
+	"tarnlight/eem/scanfile"
+	"tarnlight/eem/survey"
+	"tarnlight/unmix/plan"
+)
+
+// usualBlanks is how many blanks are taken to be averaged where nobody says it.
+const usualBlanks = 3
+
+// noise fills in the noise: stated, of a survey, or assumed. own is the survey that
+// the references come from, nil without one.
+func (o planOptions) noise(ctx context.Context, s streams, in *planInput, own *job) error {
+	set := in.problem.Set
+	blanks := usualBlanks
+	if own != nil && own.sv.Noise != nil {
+		blanks = own.sv.Noise.Blanks
+	}
+	if o.like != "" {
+		like, err := o.readSurvey(ctx, s, o.like)
+		if err != nil {
+			return err
+		}
+		if like.sv.Noise == nil {
+			return fmt.Errorf("--like %s: the survey has no three blanks on one grid, so that its noise is not known; state --read and --shot", o.like)
+		}
+		if set.Unit != "" && set.Unit != like.sv.Unit {
+			return fmt.Errorf("--like %s is in %s, the references are in %s; give a survey in that unit, or --read and --shot", o.like, like.sv.Unit, set.Unit)
+		}
+		in.setting = like.sv.Settings
+		in.mask(prepare.Bands(in.setting.Scatter))
+		own, blanks = like, like.sv.Noise.Blanks
+		if in.seen == nil {
+			in.seen = medianAbsorbance(like)
+		}
+	}
+	if o.blanks >= 0 {
+		blanks = o.blanks
+	}
+	switch {
+	case o.read+o.shot > 0:
+		in.problem.Noise = plan.Even(set.Grid.Cells(), o.read, o.shot, blanks)
+		in.noise = "stated"
+	case own != nil && own.sv.Noise != nil:
+		in.problem.Noise = bareOn(own, set.Grid)
+		in.problem.Noise.Blanks = blanks
+		in.noise = fmt.Sprintf("blanks of the survey (cells of %s)", own.sv.Noise.ID)
+	default:
+		in.assume(blanks)
+	}
+	if own != nil && in.seen == nil {
+		in.seen = medianAbsorbance(own)
+	}
+	return nil
+}
+
+// bareOn brings a survey's noise to a grid; what it does not cover is NaN.
+func bareOn(j *job, g eem.Grid) plan.Noise {
+	on := func(v []float64) []float64 { return eem.FromCells(j.sv.Grid, j.sv.Unit, v).Regrid(g).F }
+	b := j.sv.Noise
+	return plan.Noise{Read2: on(b.Read2), Shot: on(b.Shot), Water: on(b.Water)}
+}
+
+// Noise where nobody stated any, relative to the brightest cell of a typical bottle:
+// of the order that a good instrument has (common practice, no source).
+const (
+	assumedRead = 0.002
+	assumedShot = 0.005
+)
+
+func (in *planInput) assume(blanks int) {
+	set := in.problem.Set
+	a, cells := set.Matrix()
+	top, n := 0.0, set.Len()
+	for l := range cells {
+		v := 0.0
+		for f := range n {
+			v += in.problem.Level[f] * a[l*n+f]
+		}
+		top = math.Max(top, v)
+	}
+	in.problem.Noise = plan.Even(set.Grid.Cells(), assumedRead*top, assumedShot*assumedShot*top, blanks)
+	in.assumed, in.noise = true, "assumed"
+	in.note("the noise is not known and was assumed: %.3g without light and %.3g at the brightest cell (%.3g) of a typical bottle; the choice of lines hardly depends on it, uncertainties and detection limits do: give --like SURVEY, or --read and --shot",
+		assumedRead*top, math.Hypot(assumedRead, assumedShot)*top, top)
+}
+
+// medianAbsorbance is that of the sample whose absorbance at the shortest excitation
+// is in the middle; nil where no sample has one.
+func medianAbsorbance(j *job) *eem.Absorbance {
+	type one struct {
+		v float64
+		a *eem.Absorbance
+	}
+	var list []one
+	for _, b := range j.sv.Bottles {
+		if b.Usable() && b.Row.Kind == survey.Sample && b.Absorb != nil {
+			if v := b.Absorb.PerCM(max(j.sv.Grid.Ex.First(), b.Absorb.Axis.First())); v == v {
+				list = append(list, one{v, b.Absorb})
+			}
+		}
+	}
+	if len(list) == 0 {
+		return nil
+	}
+	slices.SortStableFunc(list, func(x, y one) int { return cmp.Compare(x.v, y.v) })
+	return list[len(list)/2].a
+}
+
+// innerFilter fills in the factors of a typical bottle.
+func (o planOptions) innerFilter(in *planInput) error {
+	if o.absorbance != "" {
+		a, _, err := scanfile.ReadAbsorbance(o.absorbance, nil)
+		if err != nil {
+			return err
+		}
+		a.PathCM = o.pathCM
+		in.seen = a
+	}
+	g, on := prepare.Geometry(in.setting.Correct)
+	if in.seen == nil || !on {
+		if on {
+			in.note("no absorbance of a typical bottle is known: the inner filter is left out of the prediction (--absorbance FILE)")
+		}
+		return nil
+	}
+	grid := in.problem.Set.Grid
+	a := in.seen.Times(o.times)
+	at := func(ax eem.Axis) []float64 {
+		v := make([]float64, ax.Len())
+		for i := range v {
+			v[i] = a.PerCM(ax.At(i))
+		}
+		return v
+	}
+	in.problem.Factor = g.Factors(at(grid.Ex), at(grid.Em))
+	lost := 0
+	for i, f := range in.problem.Factor {
+		if f != f && grid.Em.At(i%grid.Em.Len()) >= grid.Ex.At(i/grid.Em.Len()) {
+			lost++
+		}
+	}
+	if lost > 0 {
+		in.note("%d cells lie outside the absorbance spectrum (%s) and are left out", lost, a.Axis)
+	}
+	return nil
+}
