@@ -32,9 +32,10 @@ type bottle struct {
 	m       *mask
 	x       []float64
 	sources []source
-	own     []float64 // K'VK of the cells' own noise
-	silent  []Term    // of causes whose size nobody stated
-	repeats bool      // how the bottle repeats itself is taken from the standards
+	own     []float64   // K'VK of the cells' own noise
+	silent  []Term      // of causes whose size nobody stated
+	nothing [][]float64 // by source, n × n: at amounts of 0
+	repeats bool        // how the bottle repeats itself is taken from the standards
 	out     Spread
 }
 
@@ -247,8 +248,9 @@ func (b *bottle) blanks() {
 	} else if b.m.b2 != nil && len(e.blanks) > 0 {
 		b.add("blank", "batch", 0, "noise of the standards' blanks", tensor(b.m.b2, n))
 	}
-	if m, df := b.blankScatter(key); m != nil {
-		axpy(a*a-1, slices.Clone(m), m)
+	if once, df := b.m.blankScatter(e, key); once != nil {
+		m := slices.Clone(once)
+		axpy(a*a-1, once, m)
 		b.add("blank, beyond noise", "batch", df, "scatter of the blanks as the components see it", fixed(m))
 	}
 }
@@ -287,11 +289,32 @@ func tensor(t []float64, n int) func(dst, x []float64) {
 	}
 }
 
-// blankScatter returns the covariance of K'(blank) that the scatter of the bottle's
+// beyond is what blankScatter found of a set of blanks.
+type beyond struct {
+	cov []float64
+	df  float64
+}
+
+// blankScatter returns the covariance of K'(blank) that the scatter of a bottle's
 // own blanks shows beyond their noise, for one measurement and the mean subtracted
-// together; nil where noise explains it (F test at 1 %).
-func (b *bottle) blankScatter(key string) ([]float64, float64) {
-	e, n := b.e, b.e.n
+// together; nil where noise explains it (F test at 1 %). Bottles that miss the same
+// cells and have the same blanks share it.
+func (m *mask) blankScatter(e *engine, key string) ([]float64, float64) {
+	m.mu.Lock()
+	defer m.mu.Unlock()
+	s, ok := m.beyond[key]
+	if !ok {
+		s.cov, s.df = m.scatterOf(e, key)
+		if m.beyond == nil {
+			m.beyond = map[string]beyond{}
+		}
+		m.beyond[key] = s
+	}
+	return s.cov, s.df
+}
+
+func (m *mask) scatterOf(e *engine, key string) ([]float64, float64) {
+	n := e.n
 	if key == "" || e.src.Blank == nil {
 		return nil, 0
 	}
@@ -306,7 +329,7 @@ func (b *bottle) blankScatter(key string) ([]float64, float64) {
 		count++
 		clear(q)
 		x := e.c.Sample(i)
-		for _, l := range b.m.use {
+		for _, l := range m.use {
 			v, s := x[e.cells[l]], float64(u[e.cells[l]])
 			if v != v || s != s {
 				continue
@@ -320,17 +343,17 @@ func (b *bottle) blankScatter(key string) ([]float64, float64) {
 		return nil, 0
 	}
 	limit := distuv.ChiSquared{K: count - 1}.Quantile(0.99) / (count - 1)
-	out, beyond := make([]float64, n*n), false
-	w := inverse(b.m.gram, n, all(n))
+	out, more := make([]float64, n*n), false
+	w := inverse(m.gram, n, all(n))
 	if w == nil {
 		return nil, 0
 	}
 	for h := range n {
 		row := w[h*n : (h+1)*n]
 		have, want := form(scatter, row)/(count-1), form(noise, row)/count
-		beyond = beyond || have > limit*want
+		more = more || have > limit*want
 	}
-	if !beyond {
+	if !more {
 		return nil, 0
 	}
 	for i := range out {

@@ -6,8 +6,6 @@ import (
 	"slices"
 
 	"gonum.org/v1/gonum/mat"
-
-	"tarnlight/nnls"
 )
 
 // z975 is the 97.5 % point of the standard normal distribution.
@@ -118,6 +116,9 @@ func (b *bottle) limits(of []int, row, df []float64) (critical, detection, quant
 	for _, f := range of {
 		none[f], one[f] = 0, 1/float64(len(of))
 	}
+	if b.nothing == nil {
+		b.nothing = b.atNothing()
+	}
 	v := make([]float64, len(b.sources))
 	m := make([]float64, n*n)
 	u0, r2 := 0.0, 0.0
@@ -132,9 +133,7 @@ func (b *bottle) limits(of []int, row, df []float64) (critical, detection, quant
 		clear(m)
 		b.sources[t].at(m, one)
 		at1 := math.Max(0, form(m, row))
-		clear(m)
-		b.sources[t].at(m, make([]float64, n))
-		r2 += math.Max(0, at1-math.Max(0, form(m, row)))
+		r2 += math.Max(0, at1-math.Max(0, form(b.nothing[t], row)))
 	}
 	nu := effective(v, df)
 	u0 = math.Sqrt(u0)
@@ -146,6 +145,17 @@ func (b *bottle) limits(of []int, row, df []float64) (critical, detection, quant
 		quantifiable = u0 / math.Sqrt(0.01-r2)
 	}
 	return critical, detection, quantifiable
+}
+
+// atNothing is what every source does to a bottle that holds nothing.
+func (b *bottle) atNothing() [][]float64 {
+	n := b.e.n
+	out, none := make([][]float64, len(b.sources)), make([]float64, n)
+	for t := range out {
+		out[t] = make([]float64, n*n)
+		b.sources[t].at(out[t], none)
+	}
+	return out
 }
 
 // ownLimits puts the laboratory's limits in the place of the computed ones.
@@ -318,59 +328,26 @@ func (b *bottle) draw(cov []float64) []float64 {
 	if !finite(s) || !chol.Factorize(s) {
 		return nil
 	}
-	var l mat.TriDense
-	chol.LTo(&l)
+	var tri mat.TriDense
+	chol.LTo(&tri)
+	l := make([]float64, n*n)
+	for f := range n {
+		for h := range f + 1 {
+			l[f*n+h] = tri.At(f, h)
+		}
+	}
 	out := make([]float64, drawn*n)
 	for d := range drawn {
 		z := b.e.draws[d*n : (d+1)*n]
 		for f := range n {
 			v := 0.0
 			for h := range f + 1 {
-				v += l.At(f, h) * z[h]
+				v += l[f*n+h] * z[h]
 			}
 			out[d*n+f] = b.x[f] + sd[f]*v
 		}
 	}
 	return out
-}
-
-// solveDraws replaces every draw z that has a negative amount by the x ≥ 0 that
-// minimises (x − z)'G(x − z).
-func solveDraws(draws, gram []float64, n int) {
-	var bad []int
-	for d := range len(draws) / n {
-		for _, v := range draws[d*n : (d+1)*n] {
-			if v < 0 {
-				bad = append(bad, d)
-				break
-			}
-		}
-	}
-	if bad == nil {
-		return
-	}
-	s := mat.NewSymDense(n, slices.Clone(gram))
-	var chol mat.Cholesky
-	if !finite(s) || !chol.Factorize(s) {
-		return
-	}
-	var u mat.TriDense
-	chol.UTo(&u)
-	z, rhs, dst := mat.NewDense(len(bad), n, nil), mat.NewDense(len(bad), n, nil), mat.NewDense(len(bad), n, nil)
-	for r, d := range bad {
-		z.SetRow(r, draws[d*n:(d+1)*n])
-	}
-	rhs.Mul(z, u.T())
-	batch, err := nnls.NewBatch(&u, &nnls.Settings{Workers: 1})
-	if err != nil {
-		return
-	}
-	results, _ := batch.SolveTo(dst, rhs, nil) // results mark what failed one by one
-	for r, d := range bad {
-		if results[r].Status == nnls.Optimal {
-			copy(draws[d*n:(d+1)*n], dst.RawRowView(r))
-		}
-	}
 }
 
 // budget lists the terms, largest first by their largest share of any component.

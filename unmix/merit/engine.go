@@ -215,6 +215,9 @@ type mask struct {
 	b1      [][]float64 // by blank set: [h][h'][g]
 	b2      []float64   // [h][h'][g][g'], all sets
 	sums    sums
+
+	mu     sync.Mutex
+	beyond map[string]beyond // by blank set
 }
 
 // sums are the same variances summed over the cells, for what noise should leave of
