@@ -12,8 +12,8 @@ import (
 
 	"github.com/spf13/cobra"
 
-	"tarnlight/eem"
 	"tarnlight/eem/correct"
+	"tarnlight/eem/scanfile"
 )
 
 type factorsOptions struct {
@@ -38,9 +38,9 @@ certificate's wavelengths, with the uncertainty of both:
               responsivity; without one the detector counts photons (quantum counter)
 
 Several materials, given in pairs, are joined where they overlap. Nothing is
-extrapolated: cells outside the table stay uncorrected and are left out. All files
-are tables with a header row: wavelength_nm, value and, if known, its standard
-uncertainty. Certificates differ in what they certify, so that --certified must say
+extrapolated: cells outside the table stay uncorrected and are left out. Files are
+scans as the instrument exports them (text with any header, JCAMP-DX), or tables or
+workbooks of wavelength_nm, value and, if known, its standard_uncertainty. Certificates differ in what they certify, so that --certified must say
 it: energy or photons per wavelength interval (of a responsivity: per energy or
 per photon).`,
 		Example: "  tarnlight factors emission --certified energy --certificate certificate.csv --scan scan.csv -o emission.csv\n" +
@@ -234,15 +234,12 @@ func writeNew(path string, data []byte) error {
 	return nil
 }
 
-// readCurve reads a table of wavelength, value and perhaps uncertainty.
+// readCurve reads a spectrum: a certificate's table or a scan as the instrument
+// exports it.
 func readCurve(path string) (correct.Curve, error) {
-	nm, y, u, err := readColumns(path)
+	c, _, err := scanfile.ReadCurve(path, nil)
 	if err != nil {
 		return correct.Curve{}, err
 	}
-	ax, err := eem.NewAxis(nm)
-	if err != nil {
-		return correct.Curve{}, fmt.Errorf("%s: %w", path, err)
-	}
-	return correct.Curve{Axis: ax, Y: y, U: u, Source: filepath.Base(path)}, nil
+	return correct.Curve{Axis: c.Axis, Y: c.Y, U: c.U, Source: filepath.Base(path)}, nil
 }

@@ -5,6 +5,7 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 
@@ -122,22 +123,28 @@ func TestFactorsExcitation(t *testing.T) {
 	}
 }
 
-// Tables come with comma or point, with a header or without, and what is wrong
-// with one is told with its line.
-func TestFactorsReads(t *testing.T) {
+// A scan is read as the instrument exports it, and gives the same factors as the
+// plain table of its numbers; what is wrong with a file is told with its line.
+func TestFactorsReadExports(t *testing.T) {
 	t.Chdir(t.TempDir())
-	for text, want := range map[string]float64{"400;1,234\n410;2,5\n": 1.234, "nm\tvalue\n400\t1.234\n410\t2.5\n": 1.234, "400,1.234\n410,2.5\n": 1.234} {
-		put(t, ".", "curve.csv", text)
-		nm, y, u, err := readColumns("curve.csv")
-		if err != nil || len(nm) != 2 || nm[0] != 400 || y[0] != want || u != nil {
-			t.Errorf("%q: %v %v %v %v", text, nm, y, u, err)
-		}
+	lamp := func(nm float64) float64 { return 2 + math.Sin(nm/50) }
+	curve(t, "table.csv", 250, 450, 5, 0, lamp)
+	rows := strings.Split(strings.TrimSpace(read(t, "table.csv")), "\n")[1:]
+	slices.Reverse(rows)
+	text := strings.NewReplacer(",", "\t", ".", ",").Replace(strings.Join(rows, "\r\n"))
+	put(t, ".", "export.txt", "Fluorometer F-1\r\nSlit\t2,5 nm\r\n\r\nWavelength (nm)\tIntensity (a.u.)\r\n"+text+"\r\nEnd of scan\r\n")
+	factors := func(scan string) string {
+		return call("factors", "excitation", "--certified", "photons", "--scan", scan, "--reference", "350").want(t, exitDone).out
 	}
-	for text, want := range map[string]string{"nm,value\n400,1\n410,x\n": "curve.csv:3", "nm\n400\n": "one column", "nm,value\n400,1\n": "at least two",
-		"nm,value,u\n400,1,0.1\n410,1\n": "column 3"} {
+	_, want, _ := strings.Cut(factors("table.csv"), "\n")
+	if _, got, _ := strings.Cut(factors("export.txt"), "\n"); got != want || strings.Count(got, "\n") < 40 {
+		t.Errorf("factors of the export:\n%s\nof the table:\n%s", got, want)
+	}
+	for text, want := range map[string]string{"nm,value\n400,1\n410,x\n420,2\n": "curve.csv:3", "hello\n": "curve.csv: holds no rows", "nm,value\n400,1\n": "only 1 wavelength",
+		"nm,value,u\n400,1,0.1\n410,1\n": "curve.csv:3"} {
 		put(t, ".", "curve.csv", text)
-		if _, _, _, err := readColumns("curve.csv"); err == nil || !strings.Contains(err.Error(), want) {
-			t.Errorf("%q: %v, want %q", text, err, want)
+		if r := call("factors", "excitation", "--certified", "photons", "--scan", "curve.csv").want(t, exitFailed); !strings.Contains(r.err, want) {
+			t.Errorf("%q: %s, want %q", text, r.err, want)
 		}
 	}
 }

@@ -413,7 +413,12 @@ func TestLamp(t *testing.T) {
 		}
 		name := filepath.Join(dir, "survey.toml")
 		write(t, name, strings.Replace(readText(t, name), "[correct]\n", "[correct]\nlamp_scan = \"correction/lamp.csv\"\n", 1))
-		write(t, filepath.Join(dir, "correction", "lamp.csv"), scan(off))
+		text := scan(off)
+		if want > 0 { // as an instrument exports it
+			text = "Fluorometer F-1\r\nSlit\t2.5 nm\r\n\r\nWavelength (nm)\tCounts\r\n" +
+				strings.NewReplacer("wavelength_nm,counts\n", "", ",", "\t", "\n", "\r\n").Replace(text) + "End of scan\r\n"
+		}
+		write(t, filepath.Join(dir, "correction", "lamp.csv"), text)
 		if got := said(prepared(t, dir, 0))[" lamp-lines"]; got != want {
 			t.Errorf("lines off by %g nm: %d batches flagged, want %d: %v", off, got, want, flagsOf(prepared(t, dir, 0), ""))
 		}

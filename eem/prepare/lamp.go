@@ -48,10 +48,11 @@ func (s *Survey) checkLamp(name, lamp string) (*eem.Note, error) {
 	if err != nil {
 		return nil, err
 	}
-	c, err := lampCurve(in.Path, data)
+	scan, _, err := scanfile.ReadCurveBytes(in.Path, data, nil)
 	if err != nil {
 		return nil, err
 	}
+	c := correct.Curve{Axis: scan.Axis, Y: scan.Y, Source: in.Path}
 	s.Inputs = append(s.Inputs, in)
 	lines := correct.MercuryLines
 	if lamp == "mercury-argon" {
@@ -63,34 +64,4 @@ func (s *Survey) checkLamp(name, lamp string) (*eem.Note, error) {
 	}
 	n.File = in.Path
 	return &n, nil
-}
-
-// lampCurve reads a table of wavelength and counts with a header row.
-func lampCurve(name string, data []byte) (correct.Curve, error) {
-	t, err := scanfile.ReadTableBytes(name, data)
-	if err != nil {
-		return correct.Curve{}, err
-	}
-	var nm, y []float64
-	for _, r := range t.Rows {
-		var v [2]float64
-		for i := range v {
-			if len(r.Cells) < 2 {
-				return correct.Curve{}, fmt.Errorf("%s:%d: one column; a lamp's scan has wavelength_nm and counts", name, r.Line)
-			}
-			decimal := ""
-			if t.Delimiter == "," {
-				decimal = "."
-			}
-			if v[i], err = scanfile.ParseNumber(r.Cells[i], decimal); err != nil {
-				return correct.Curve{}, fmt.Errorf("%s:%d: %w", name, r.Line, err)
-			}
-		}
-		nm, y = append(nm, v[0]), append(y, v[1])
-	}
-	ax, err := eem.NewAxis(nm)
-	if err != nil {
-		return correct.Curve{}, fmt.Errorf("%s: %w", name, err)
-	}
-	return correct.Curve{Axis: ax, Y: y, Source: name}, nil
 }

@@ -146,7 +146,7 @@ func correctionKeys() []*key {
 			"brings fluorescence to one temperature by the column temperature_c; off, because the coefficient depends on the water"},
 		{"correct", "spectral_units", func(s *Settings) any { return &s.Correct.SpectralUnits }, choice("photons", "energy"),
 			"what the factors bring intensities to; water's Raman line is held against the law for it (Bartlett et al. 1998, Appl. Opt. 37, 3324); photons, because a fluorometer counts them"},
-		{"correct", "lamp_scan", func(s *Settings) any { return &s.Correct.LampScan }, text("a table wavelength_nm, counts"),
+		{"correct", "lamp_scan", func(s *Settings) any { return &s.Correct.LampScan }, text("a scan as exported, or a table wavelength_nm, counts"),
 			"scan of a line lamp, held against the tabulated lines; empty is none; data are never shifted"},
 		{"correct", "lamp", func(s *Settings) any { return &s.Correct.Lamp }, choice("mercury", "mercury-argon"),
 			"which lamp that is; mercury, the one in most laboratories (lines: NIST Atomic Spectra Database)"},
