@@ -1,6 +1,7 @@
 package report
 
 import (
+	"fmt"
 	"math"
 
 	"gonum.org/v1/plot"
@@ -8,8 +9,11 @@ import (
 	"gonum.org/v1/plot/vg/draw"
 )
 
-// figCharts draws the quality charts, one panel a variable.
-func (r *results) figCharts() *figure {
+// panelsPerFigure is how many quality charts fit on a page under one another.
+const panelsPerFigure = 16
+
+// figCharts draws the quality charts, one panel a variable, two side by side.
+func (r *results) figCharts() []*figure {
 	t := r.table["charts.csv"]
 	names, rows := t.groups("variable")
 	var plots []*plot.Plot
@@ -18,15 +22,21 @@ func (r *results) figCharts() *figure {
 			plots = append(plots, p)
 		}
 	}
-	if len(plots) == 0 {
-		return nil
+	var out []*figure
+	for n := 0; n < len(plots); n += panelsPerFigure {
+		f := &figure{name: "charts", numbers: &Table{Columns: t.Columns, Rows: t.Rows},
+			caption: "Quality charts: solid the value expected, dashed the warning limits, dotted the action limits; crosses break a rule."}
+		if n > 0 {
+			f.name = fmt.Sprintf("charts-%d", n/panelsPerFigure+1)
+		}
+		out = append(out, f.panels(2, 30*vg.Millimeter, plots[n:min(len(plots), n+panelsPerFigure)],
+			keyEntry{word: "found", glyph: draw.CircleGlyph{}, color: series(0)},
+			keyEntry{word: "breaks a rule", glyph: draw.CrossGlyph{}, color: series(3)},
+			keyEntry{word: "expected", line: &chartLimits[0].style},
+			keyEntry{word: "warning limit", line: &chartLimits[1].style},
+			keyEntry{word: "action limit", line: &chartLimits[3].style}))
 	}
-	for _, p := range plots[:len(plots)-1] {
-		p.X.Label.Text = ""
-	}
-	return &figure{name: "charts", numbers: &Table{Columns: t.Columns, Rows: t.Rows}, height: vg.Length(len(plots)) * 36 * vg.Millimeter,
-		caption: "Quality charts: solid the value expected, dashed the warning limits, dotted the action limits; crosses break a rule.",
-		draw:    func(c draw.Canvas) { drawGrid(c, 1, plots) }}
+	return out
 }
 
 // chartLimits are the limits of a quality chart and how they are drawn.
@@ -44,7 +54,7 @@ var chartLimits = []struct {
 // qualityPanel draws one variable; nil where it has no numbers.
 func (r *results) qualityPanel(name string, rows []int) *plot.Plot {
 	t := r.table["charts.csv"]
-	p := r.num.newPlot(name, "Batch", t.Text(rows[0], t.Col("unit")))
+	p := r.num.newPlot(name, "", t.Text(rows[0], t.Col("unit")))
 	d := &dots{radius: 2}
 	var marks []plot.Tick
 	last, none := "", math.NaN()
@@ -61,10 +71,9 @@ func (r *results) qualityPanel(name string, rows []int) *plot.Plot {
 			marks = append(marks, plot.Tick{Value: x, Label: plain(b)})
 		}
 	}
-	for len(marks) > 14 {
+	for len(marks) > 1 && len(marks)*(longestLabel(marks)+3) > 62 { // letters on half the width of a figure
 		marks = everySecond(marks)
 	}
-	p.Add(&curve{x: d.x, y: d.y, style: draw.LineStyle{Color: faint(series(0)), Width: 0.6}}, d)
 	for _, l := range chartLimits {
 		all := t.floats(l.column)
 		y := make([]float64, len(rows))
@@ -76,6 +85,7 @@ func (r *results) qualityPanel(name string, rows []int) *plot.Plot {
 	if !(p.Y.Max >= p.Y.Min) {
 		return nil
 	}
+	p.Add(d)
 	p.X.Min, p.X.Max = 0.4, float64(len(rows))+0.6
 	p.X.Tick.Marker = plot.ConstantTicks(marks)
 	pad := (p.Y.Max - p.Y.Min) * 0.06
@@ -84,6 +94,15 @@ func (r *results) qualityPanel(name string, rows []int) *plot.Plot {
 	}
 	p.Y.Min, p.Y.Max = p.Y.Min-pad, p.Y.Max+pad
 	return p
+}
+
+// longestLabel is the number of letters of the longest label.
+func longestLabel(t []plot.Tick) int {
+	n := 0
+	for _, m := range t {
+		n = max(n, len([]rune(m.Label)))
+	}
+	return n
 }
 
 func everySecond(t []plot.Tick) []plot.Tick {

@@ -106,7 +106,7 @@ func (r *results) inOrder() *places {
 	for i := range p.x {
 		p.x[i] = float64(i + 1)
 	}
-	for _, v := range ticks(1, p.hi, 8) {
+	for _, v := range ticks(1, max(p.hi, 9), 8) { // whole steps
 		p.ticks = append(p.ticks, plot.Tick{Value: v, Label: r.num.fixed(v, 0)})
 	}
 	return p
@@ -124,11 +124,7 @@ func (at *places) labelLast(plots []*plot.Plot) {
 		p.X.Label.Text = ""
 		p.X.Tick.Marker = plot.ConstantTicks(bare)
 	}
-	longest := 0
-	for _, t := range at.ticks {
-		longest = max(longest, len([]rune(t.Label)))
-	}
-	if longest*len(at.ticks) > 105 { // letters that fit side by side on the width of the figure
+	if longestLabel(at.ticks)*len(at.ticks) > 105 { // letters that fit side by side on the width of the figure
 		last.X.Tick.Label.Rotation = math.Pi / 5
 		last.X.Tick.Label.XAlign, last.X.Tick.Label.YAlign = draw.XRight, draw.YTop
 	}
@@ -153,10 +149,17 @@ func (r *results) figContributions(method string, at *places) *figure {
 		return nil
 	}
 	at.labelLast(plots)
-	return &figure{name: "contributions-" + method + "-by-" + at.name, numbers: num, height: vg.Length(len(plots)) * 34 * vg.Millimeter,
-		caption: "Contributions (" + methodName(method) + ") with 95 % intervals: filled circles found, open circles not detected, triangles unreliable (J); unusable bottles are left out; dashed: median detection limit.",
-		draw:    func(c draw.Canvas) { drawGrid(c, 1, plots) }}
+	f := &figure{name: "contributions-" + method + "-by-" + at.name, numbers: num,
+		caption: "Contributions (" + methodName(method) + ") with 95 % intervals: filled circles found, open circles not detected, triangles unreliable (J); unusable bottles are left out; dashed: median detection limit."}
+	return f.panels(1, 34*vg.Millimeter, plots,
+		keyEntry{word: "found", glyph: draw.CircleGlyph{}, color: series(0)},
+		keyEntry{word: "not detected", glyph: draw.RingGlyph{}, color: series(0)},
+		keyEntry{word: "unreliable (J)", glyph: draw.PyramidGlyph{}, color: series(1)},
+		keyEntry{word: "95 % interval", line: &draw.LineStyle{Color: series(0), Width: 0.5}},
+		keyEntry{word: "median detection limit", line: &limitLine})
 }
+
+var limitLine = draw.LineStyle{Color: hatchGrey, Width: 0.7, Dashes: dashed}
 
 // contributionPanel draws one component and adds its numbers to num; nil where
 // nothing can be used.
@@ -186,7 +189,7 @@ func (r *results) contributionPanel(s *column, at *places, num *Table) *plot.Plo
 	p.Add(d)
 	if len(limits) > 0 {
 		slices.Sort(limits)
-		p.Add(&levelLine{at: limits[len(limits)/2], style: draw.LineStyle{Color: hatchGrey, Width: 0.7, Dashes: dashed}})
+		p.Add(&levelLine{at: limits[len(limits)/2], style: limitLine})
 	}
 	p.X.Min, p.X.Max = at.lo, at.hi
 	p.Y.Max = ceilNice(p.Y.Max * 1.02)

@@ -77,7 +77,7 @@ func (n numbers) newPlot(title, x, y string) *plot.Plot {
 	p.Title.Text, p.X.Label.Text, p.Y.Label.Text = plain(title), x, y
 	p.Title.Padding = 3
 	for _, s := range []*text.Style{&p.Title.TextStyle, &p.X.Label.TextStyle, &p.Y.Label.TextStyle,
-		&p.X.Tick.Label, &p.Y.Tick.Label, &p.Legend.TextStyle} {
+		&p.X.Tick.Label, &p.Y.Tick.Label} {
 		s.Font.Typeface, s.Font.Variant, s.Font.Size, s.Color = "Liberation", "Sans", smallPoints, inkGrey
 	}
 	p.Title.TextStyle.Font.Size = headPoints
@@ -88,8 +88,6 @@ func (n numbers) newPlot(title, x, y string) *plot.Plot {
 		a.Tick.Length = 3
 		a.Tick.Marker = n.ticker(5)
 	}
-	p.Legend.ThumbnailWidth = 16
-	p.Legend.Top = true
 	return p
 }
 

@@ -171,6 +171,9 @@ func (r *results) hotSheet(b *book, worst []*bottle) {
 // thumb is a small picture of a bottle: measured beside residual.
 func thumb(g eem.Grid, p panels) []byte {
 	const w, h = 110, 90
+	if oneScan(g) {
+		return scanThumb(p, w, h)
+	}
 	c := newCanvas(2*w+6, h)
 	newMapping(image.Rect(0, 0, w, h), g).drawTo(c, p.measured, scale{p.scale, false})
 	if p.residual != nil {

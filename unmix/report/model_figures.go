@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"image/color"
 	"math"
+	"slices"
 
 	"gonum.org/v1/plot"
 	"gonum.org/v1/plot/vg"
@@ -29,7 +30,7 @@ func (r *results) figModels() *figure {
 	for _, m := range []modelPanel{
 		{title: "Explained", y: "% of the sum of squares", lo: nan, hi: 100.4, limit: nan, v: [][]float64{t.floats("explained_percent")}},
 		{title: "Core consistency", y: "%", lo: min(0, minOf(core)), hi: 104, limit: nan, v: [][]float64{core}},
-		{title: "Split halves: lowest congruence", y: "Congruence", lo: roomBelow(min(0.5, minOf(ex), minOf(em))), hi: 1.01, limit: 0.95, names: []string{"excitation", "emission"}, v: [][]float64{ex, em}},
+		{title: "Split halves: excitation (solid), emission (dashed)", y: "Lowest congruence", lo: min(0.5, minOf(ex), minOf(em)) - 0.02, hi: 1.01, limit: 0.95, v: [][]float64{ex, em}},
 		{title: "Starts that reached the best fit", y: "%", lo: 0, hi: 104, limit: nan, v: [][]float64{agree}},
 	} {
 		if p := r.drawModelPanel(m, k, chosen); p != nil {
@@ -39,16 +40,15 @@ func (r *results) figModels() *figure {
 	if len(plots) == 0 {
 		return nil
 	}
-	return &figure{name: "models", numbers: &Table{Columns: t.Columns, Rows: t.Rows}, height: vg.Length((len(plots)+1)/2) * 50 * vg.Millimeter,
-		caption: "Choosing the number of components; the grey bar marks the number chosen, dotted lines the limits. Why each number passed or failed stands in models.csv.",
-		draw:    func(c draw.Canvas) { drawGrid(c, 2, plots) }}
+	f := &figure{name: "models", numbers: &Table{Columns: t.Columns, Rows: t.Rows},
+		caption: "Choosing the number of components; the grey bar marks the number chosen, dotted lines the limits. Why each number passed or failed stands in models.csv."}
+	return f.panels(2, 50*vg.Millimeter, plots, keyEntry{word: "number chosen", line: &chosenBar}, keyEntry{word: "limit", line: &modelLimit})
 }
 
 // modelPanel is one figure of merit against the number of components.
 type modelPanel struct {
 	title, y      string
 	lo, hi, limit float64 // NaN: from the data, none
-	names         []string
 	v             [][]float64
 }
 
@@ -63,13 +63,8 @@ func (r *results) drawModelPanel(m modelPanel, k []float64, chosen float64) *plo
 			d.add(k[n], v[n], none, none, []draw.GlyphDrawer{draw.CircleGlyph{}, draw.SquareGlyph{}}[i%2], series(i))
 		}
 		p.Add(l, d)
-		if len(m.names) > i {
-			p.Legend.Add(m.names[i], l)
-		}
 	}
-	p.Legend.Top, p.Legend.Left = false, true
-	p.Add(&levelLine{at: chosen, up: true, style: draw.LineStyle{Color: color.NRGBA{60, 60, 70, 60}, Width: 6}},
-		&levelLine{at: m.limit, style: draw.LineStyle{Color: inkGrey, Width: 0.5, Dashes: dotted}})
+	p.Add(&levelLine{at: chosen, up: true, style: chosenBar}, &levelLine{at: m.limit, style: modelLimit})
 	p.X.Min, p.X.Max = k[0]-0.4, k[len(k)-1]+0.4
 	p.X.Tick.Marker = wholeTicks(k)
 	if !(p.Y.Max >= p.Y.Min) {
@@ -82,8 +77,10 @@ func (r *results) drawModelPanel(m modelPanel, k []float64, chosen float64) *plo
 	return p
 }
 
-// roomBelow leaves room for the names of the lines below congruences from lo to 1.
-func roomBelow(lo float64) float64 { return lo - 0.25*(1-lo) }
+var (
+	chosenBar  = draw.LineStyle{Color: color.NRGBA{60, 60, 70, 60}, Width: 6}
+	modelLimit = draw.LineStyle{Color: inkGrey, Width: 0.5, Dashes: dotted}
+)
 
 func minOf(v []float64) float64 { lo, _ := bounds(v); return lo }
 
@@ -122,43 +119,49 @@ func (r *results) halves(num *Table) (order []half, lines map[half]*line) {
 	return order, lines
 }
 
-// figSplits lays the spectra of the halves over one another.
+// figSplits lays the spectra of the halves over one another: a row a component, a
+// colour a split, the second half dashed.
 func (r *results) figSplits() *figure {
 	num := &Table{Columns: r.table["split_spectra.csv"].Columns}
 	order, lines := r.halves(num)
-	var names []string
-	panel := map[string]*plot.Plot{}
-	number := map[string]int{} // of a half: its line style
+	var names, splits []string
+	panel := map[[2]string]*plot.Plot{} // by component and mode
 	for _, h := range order {
-		p := panel[h.component]
-		if p == nil {
-			p = r.num.newPlot(h.component, "Wavelength (nm)", "Relative intensity")
-			panel[h.component] = p
+		at := [2]string{h.component, h.mode}
+		if panel[at] == nil {
+			panel[at] = r.num.newPlot(h.component+": "+h.mode, "Wavelength (nm)", "Relative intensity")
+			panel[at].Y.Min, panel[at].Y.Max = 0, 1.08
+		}
+		if !slices.Contains(names, h.component) {
 			names = append(names, h.component)
 		}
-		id := h.split + ", " + h.half
-		n, old := number[id]
-		if !old {
-			n = len(number)
-			number[id] = n
+		if !slices.Contains(splits, h.split) {
+			splits = append(splits, h.split)
 		}
-		l := &curve{x: lines[h].nm, y: lines[h].v, style: draw.LineStyle{Color: series(n), Width: 0.8, Dashes: [][]vg.Length{solid, dashed}[n%2]}}
-		p.Add(l)
-		p.Y.Min, p.Y.Max = 0, 1.08
-		if !old && n < 6 {
-			p.Legend.Add(id, l)
+		dashes := solid
+		if h.half == "second" {
+			dashes = dashed
 		}
+		panel[at].Add(&curve{x: lines[h].nm, y: lines[h].v, style: draw.LineStyle{Color: series(slices.Index(splits, h.split)), Width: 0.8, Dashes: dashes}})
+		panel[at].Y.Min, panel[at].Y.Max = 0, 1.08
 	}
 	if len(names) == 0 {
 		return nil
 	}
 	var plots []*plot.Plot
 	for _, name := range names {
-		plots = append(plots, panel[name])
+		for _, mode := range []string{"excitation", "emission"} {
+			if p := panel[[2]string{name, mode}]; p != nil {
+				plots = append(plots, p)
+			}
+		}
 	}
-	return &figure{name: "splits", numbers: num, height: vg.Length((len(plots)+1)/2) * 48 * vg.Millimeter,
-		caption: "Split halves laid over one another: spectra of the model fitted to independent halves of the bottles.",
-		draw:    func(c draw.Canvas) { drawGrid(c, 2, plots) }}
+	key := []keyEntry{{word: "first half", line: &draw.LineStyle{Color: inkGrey, Width: 0.8}}, {word: "second half", line: &draw.LineStyle{Color: inkGrey, Width: 0.8, Dashes: dashed}}}
+	for n, s := range splits {
+		key = append(key, keyEntry{word: s, line: &draw.LineStyle{Color: series(n), Width: 1.6}})
+	}
+	f := &figure{name: "splits", numbers: num, caption: "Split halves laid over one another: spectra of the model fitted to independent halves of the bottles; a gap where the model of all bottles leaves a loading open."}
+	return f.panels(2, 40*vg.Millimeter, plots, key...)
 }
 
 // chosenComponents is the number of components of the chosen model, as written.

@@ -65,12 +65,12 @@ func (n numbers) rounded(text string) string {
 	})
 }
 
-// nm writes a wavelength with at most two decimals.
+// nm writes a wavelength with at most one decimal.
 func (n numbers) nm(v float64) string {
 	if math.IsNaN(v) || math.IsInf(v, 0) {
 		return n.sig(v, 1)
 	}
-	return n.mark(strconv.FormatFloat(math.Round(v*100)/100, 'f', -1, 64))
+	return n.mark(strconv.FormatFloat(math.Round(v*10)/10, 'f', -1, 64))
 }
 
 // exponent is the decimal exponent of v rounded to d significant digits.

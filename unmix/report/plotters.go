@@ -68,12 +68,6 @@ func (l *curve) Plot(c draw.Canvas, p *plot.Plot) {
 	}
 }
 
-// Thumbnail implements plot.Thumbnailer.
-func (l *curve) Thumbnail(c *draw.Canvas) {
-	y := c.Center().Y
-	c.StrokeLine2(l.style, c.Min.X, y, c.Max.X, y)
-}
-
 // DataRange implements plot.DataRanger.
 func (l *curve) DataRange() (xmin, xmax, ymin, ymax float64) {
 	xmin, xmax = bounds(l.x)

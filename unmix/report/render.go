@@ -105,7 +105,7 @@ func (r *results) figures(p *pass) []*figure {
 			all = append(all, r.figUnexplained(m, p.left[m], r.store.Grid))
 		}
 	}
-	all = append(all, r.figModels(), r.figSplits(), r.figCharts(), r.figBlanks())
+	all = append(append(all, r.figModels(), r.figSplits(), r.figBlanks()), r.figCharts()...)
 	out := all[:0]
 	for _, f := range all {
 		if f != nil {

@@ -13,7 +13,10 @@ import (
 
 // line is a spectrum: loadings, NaN where undetermined, with standard
 // uncertainties (NaN where unknown).
-type line struct{ nm, v, u []float64 }
+type line struct {
+	nm, v, u []float64
+	open     []float64 // the loadings as they are written, also where undetermined
+}
 
 // component is one component of the model that the results rest on.
 type component struct {
@@ -47,6 +50,7 @@ func (r *results) components(method string) []*component {
 			continue
 		}
 		loading := t.Float(i, v)
+		l.open = append(l.open, loading)
 		if t.Text(i, det) == "false" {
 			loading = math.NaN()
 		}
@@ -55,25 +59,29 @@ func (r *results) components(method string) []*component {
 	return out
 }
 
-// peak is the wavelength of the largest loading; NaN where the data leave it open:
-// the maximum is 1, so that a spectrum without a loading near 1 lacks its peak.
+// peak is the wavelength of the largest loading, NaN where the data leave it open.
+// The maximum is 1: a spectrum without a loading near 1 lacks its peak.
 func (l *line) peak() float64 {
-	at, top := math.NaN(), 0.9
-	for i, v := range l.v {
-		if v > top {
-			at, top = l.nm[i], v
+	at := -1
+	for i, v := range l.open {
+		if v == v && (at < 0 || v > l.open[at]) {
+			at = i
 		}
 	}
-	return at
+	if at < 0 || !(l.v[at] > 0.9) {
+		return math.NaN()
+	}
+	return l.nm[at]
 }
 
-// surface returns the product of both spectra on their own axes; ok is false
-// where they do not form a grid.
+// surface returns the product of both spectra on their own axes; ok is false where
+// they do not form a grid, or one of a single
+// excitation, whose spectrum says all.
 func (c *component) surface() (g eem.Grid, v []float64, ok bool) {
 	var err1, err2 error
 	g.Ex, err1 = eem.NewAxis(c.ex.nm)
 	g.Em, err2 = eem.NewAxis(c.em.nm)
-	if err1 != nil || err2 != nil {
+	if err1 != nil || err2 != nil || oneScan(g) {
 		return g, nil, false
 	}
 	v = make([]float64, 0, g.Cells())
@@ -87,7 +95,17 @@ func (c *component) surface() (g eem.Grid, v []float64, ok bool) {
 
 // peakText is the component's name with the peaks of its spectra.
 func (r *results) peakText(c *component) string {
-	return fmt.Sprintf("%s  (ex %s, em %s nm)", c.name, r.num.nm(c.ex.peak()), r.num.nm(c.em.peak()))
+	word := func(mode string, l *line) string {
+		if at := l.peak(); finite(at) {
+			return mode + " " + r.num.nm(at)
+		}
+		return mode + " peak undetermined"
+	}
+	text := word("ex", &c.ex) + ", " + word("em", &c.em)
+	if finite(c.ex.peak()) || finite(c.em.peak()) {
+		text += " nm"
+	}
+	return fmt.Sprintf("%s  (%s)", c.name, text)
 }
 
 var (
@@ -109,32 +127,38 @@ func (r *results) figSpectra(method string) *figure {
 			mode string
 			*line
 		}{{"excitation", &c.ex}, {"emission", &c.em}} {
-			a, b := bounds(l.nm)
-			lo, hi = min(lo, a), max(hi, b)
+			if a, b := bounds(l.nm); b > a { // a single excitation is no range
+				lo, hi = min(lo, a), max(hi, b)
+			}
 			for i := range l.nm {
 				num.Append(c.name, l.mode, l.nm[i], l.v[i], l.u[i])
 			}
 		}
 	}
 	var plots []*plot.Plot
-	for i, c := range cs {
+	for _, c := range cs {
 		p := r.num.newPlot(r.peakText(c), "Wavelength (nm)", "Relative intensity")
-		ex := r.spectrum(&c.ex, draw.LineStyle{Color: series(0), Width: 1, Dashes: dashed})
-		em := r.spectrum(&c.em, draw.LineStyle{Color: series(1), Width: 1.1})
-		p.X.Min, p.X.Max, p.Y.Min, p.Y.Max = lo, hi, 0, 1.08
-		p.Add(em, ex)
-		if i == 0 {
-			p.Legend.Add("excitation", ex)
-			p.Legend.Add("emission", em)
-			p.Y.Max = 1.08
+		p.Add(r.spectrum(&c.em, emissionLine))
+		if len(c.ex.nm) > 1 {
+			p.Add(r.spectrum(&c.ex, excitationLine))
 		}
+		p.X.Min, p.X.Max, p.Y.Min, p.Y.Max = lo, hi, 0, 1.08
 		plots = append(plots, p)
 	}
-	rows := (len(cs) + 1) / 2
-	return &figure{name: "components-" + method, numbers: num, height: vg.Length(rows) * 48 * vg.Millimeter,
-		caption: "Spectra of the components (" + methodName(method) + "): excitation dashed, emission solid, bands of two standard uncertainties; gaps where the data leave a loading open.",
-		draw:    func(c draw.Canvas) { drawGrid(c, 2, plots) }}
+	f := &figure{name: "components-" + method, numbers: num,
+		caption: "Spectra of the components (" + methodName(method) + "): excitation dashed, emission solid, bands of two standard uncertainties; gaps where the data leave a loading open."}
+	key := []keyEntry{{word: "excitation", line: &excitationLine}, {word: "emission", line: &emissionLine},
+		{word: "two standard uncertainties", line: &draw.LineStyle{Color: faint(series(1)), Width: 6}}}
+	if len(cs[0].ex.nm) == 1 {
+		key = key[1:]
+	}
+	return f.panels(2, 48*vg.Millimeter, plots, key...)
 }
+
+var (
+	excitationLine = draw.LineStyle{Color: series(0), Width: 1, Dashes: dashed}
+	emissionLine   = draw.LineStyle{Color: series(1), Width: 1.1}
+)
 
 func (r *results) spectrum(l *line, style draw.LineStyle) *curve {
 	half := make([]float64, len(l.u))

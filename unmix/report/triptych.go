@@ -12,7 +12,7 @@ import (
 // Sizes of a triptych in pixels: 170 mm wide at 200 dpi, letters of 7 points.
 const (
 	triW      = 1340
-	panelW    = 344
+	panelW    = 330
 	panelH    = 300
 	triLeft   = 84
 	triHead   = 62
@@ -20,9 +20,9 @@ const (
 	rowFoot   = 74
 	barW      = 16
 	triRow    = rowTitle + panelH + rowFoot
-	triModelX = triLeft + panelW + 22
+	triModelX = triLeft + panelW + 50
 	triBarX   = triModelX + panelW + 12
-	triResX   = triBarX + barW + 70
+	triResX   = triBarX + barW + 84
 	triResBar = triResX + panelW + 12
 )
 

@@ -61,6 +61,9 @@ func (r *results) figUnexplained(method string, l *leftover, g eem.Grid) *figure
 		num.Append(g.Ex.At(i/g.Em.Len()), g.Em.At(i%g.Em.Len()), mean[i], rms[i], l.n[i])
 		abs[i] = math.Abs(mean[i])
 	}
+	if oneScan(g) {
+		return r.figUnexplainedScan(method, mean, rms, g, num)
+	}
 	ms, rs := scale{ceilNice(topOf(abs, 0.999)), true}, scale{ceilNice(topOf(rms, 0.999)), false}
 	a := r.num.newPlot("Mean residual", "Emission wavelength (nm)", "Excitation wavelength (nm)")
 	a.Add(&heat{g, mean, ms})
@@ -83,6 +86,9 @@ func (r *results) figUnexplained(method string, l *leftover, g eem.Grid) *figure
 			}
 			bar(0, ms)
 			bar(1, rs)
+			st := textStyle(smallPoints, inkGrey)
+			st.XAlign = draw.XCenter
+			k.FillText(st, vg.Point{X: k.Min.X + 2.5*third + 5*vg.Millimeter, Y: k.Min.Y + 10*vg.Millimeter}, "larger circle: larger residual")
 		}}
 }
 

@@ -180,14 +180,22 @@ func plural(n int, one, many string) string {
 	return fmt.Sprintf("%d %s", n, many)
 }
 
-// drawMap writes one bottle's picture to maps/.
-func (r *results) drawMap(tri *triptych, b *bottle, ps []panels) error {
+// pictureText is what stands above a bottle's picture.
+func (r *results) pictureText(b *bottle) triptychText {
 	t := r.table["samples.csv"]
 	f := func(name string) float64 { return t.Float(b.row, t.Own(name)) }
 	text := triptychText{id: b.id, what: "no fit"}
 	if e := f("explained_percent"); !math.IsNaN(e) {
 		text.what = r.num.fitText(e, f("residual_rms"), f("noise_rms"), r.unit)
 	}
-	c := tri.draw(text, ps)
+	return text
+}
+
+// drawMap writes one bottle's picture to maps/.
+func (r *results) drawMap(tri *triptych, b *bottle, ps []panels) error {
+	if oneScan(r.store.Grid) {
+		return r.drawScan(b, tri.methods, ps)
+	}
+	c := tri.draw(r.pictureText(b), ps)
 	return writeFile(filepath.Join(r.dir, "maps", r.mapFile(b.id)), c.encode)
 }
