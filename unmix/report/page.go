@@ -46,7 +46,7 @@ type page struct {
 	Steps               []pageStep
 	Cautions            []string
 	Qualifiers          [][2]string
-	HasMaps             bool
+	HasMaps, OneScan    bool
 	MapNote             string
 }
 
@@ -66,7 +66,7 @@ type pageStep struct {
 // writePage writes report.html: one file that asks the network for nothing.
 func (r *results) writePage(p *pass, figures []*figure) error {
 	v := &page{Title: r.title(), Mark: r.mark, Unit: r.unit, Cautions: cautions, Qualifiers: qualifiers,
-		CSS: template.CSS(pageCSS), JS: template.JS(pageJS), MapNote: p.note, HasMaps: p.packed != nil}
+		CSS: template.CSS(pageCSS), JS: template.JS(pageJS), MapNote: p.note, HasMaps: p.packed != nil, OneScan: r.store != nil && oneScan(r.store.Grid)}
 	v.Policy = fmt.Sprintf("default-src 'none'; script-src '%s'; style-src '%s'; img-src data:; base-uri 'none'; form-action 'none'",
 		sourceHash(pageJS), sourceHash(pageCSS))
 	for _, f := range [][2]string{{"Client", r.s.Client}, {"Order", r.s.Order}, {"Report number", r.s.Number}, {"Method", r.s.Method},
@@ -90,7 +90,7 @@ func (r *results) writePage(p *pass, figures []*figure) error {
 			v.Model = append(v.Model, g)
 		}
 	}
-	v.Models = r.pageTable("models.csv", []string{"components", "chosen", "verdict", "reason", "explained_percent"}, "seed", "loss", "samples", "cells")
+	v.Models = r.pageModels()
 	v.Batches = r.pageTable("batches.csv", []string{"batch", "verdict", "reason"})
 	v.Calibration = r.pageTable("calibration.csv", []string{"id", "batch", "kind", "component", "verdict", "reason"})
 	for _, m := range r.methodSteps() {

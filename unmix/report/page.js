@@ -19,6 +19,7 @@ function sig(v, d) {
   }
   return mark(v.toFixed(Math.max(0, d - 1 - e)));
 }
+const nm = v => mark(String(Math.round(v * 10) / 10));
 function ticks(lo, hi, n) {
   if (!(hi > lo)) return [lo];
   const raw = (hi - lo) / n, p = 10 ** Math.floor(Math.log10(raw));
@@ -169,7 +170,22 @@ function axes(g, b, x, y, xt, yt) {
   for (const v of ty) { const p = b.y + b.h - (v - y[0]) / (y[1] - y[0]) * b.h; g.fillRect(b.x - 4, p, 4, 1); g.fillText(tickText(v, ty.step || 1), b.x - 6, p); }
   g.save(); g.translate(9, b.y + b.h / 2); g.rotate(-Math.PI / 2); g.textAlign = "center"; g.fillText(yt, 0, 0); g.restore();
 }
+// A scan of one excitation is a line, with zero and the place of the reading.
+function drawLine(c) {
+  const name = c.dataset.layer, v = layerOf(name), top = topOf(name), div = name === "residual";
+  const [g, w, h] = sharp(c), b = box(w, h), X = edges(D.em), Y = [div ? -top : 0, top];
+  axes(g, b, X, Y, "emission (nm)", D.unit);
+  const px = x => b.x + (x - X[0]) / (X[1] - X[0]) * b.w, py = y => b.y + b.h - (Math.min(Y[1], Math.max(Y[0], y)) - Y[0]) / (Y[1] - Y[0]) * b.h;
+  g.strokeStyle = "#9aa4b1"; g.beginPath(); g.moveTo(b.x, py(0)); g.lineTo(b.x + b.w, py(0)); g.moveTo(px(D.em[S.k]), b.y); g.lineTo(px(D.em[S.k]), b.y + b.h); g.stroke();
+  g.strokeStyle = { measured: "#1f4fa8", model: "#c05a00", residual: "#901818" }[name]; g.lineWidth = 1.4; g.beginPath();
+  let pen = false, at = -1;
+  if (v) v.forEach((y, n) => { if (y !== y) { pen = false; return; } if (at < 0 || Math.abs(y) > Math.abs(v[at])) at = n; g[pen ? "lineTo" : "moveTo"](px(D.em[n]), py(y)); pen = true; });
+  g.stroke();
+  c.setAttribute("aria-label", at < 0 ? name + ": no numbers" :
+    `${name} spectrum of ${D.bottles[S.i].shown}: largest ${sig(v[at], 3)} ${D.unit} at emission ${nm(D.em[at])} nm; arrow keys move the reading`);
+}
 function drawMap(c) {
+  if (nex === 1) { drawLine(c); return; }
   const name = c.dataset.layer, v = layerOf(name), top = topOf(name), div = name === "residual", map = div ? DIV : SEQ;
   const [g, w, h, dpr] = sharp(c), b = box(w, h), X = edges(D.em), Y = edges(D.ex);
   const pw = Math.round(b.w * dpr), ph = Math.round(b.h * dpr), img = g.createImageData(pw, ph);
@@ -203,7 +219,7 @@ function drawMap(c) {
     }
   }
   c.setAttribute("aria-label", at < 0 ? name + ": no numbers" :
-    `${name} map of ${D.bottles[S.i].shown}: largest ${sig(v[at], 3)} ${D.unit} at excitation ${D.ex[Math.floor(at / nem)]}, emission ${D.em[at % nem]} nm; arrow keys move the reading`);
+    `${name} map of ${D.bottles[S.i].shown}: largest ${sig(v[at], 3)} ${D.unit} at excitation ${nm(D.ex[Math.floor(at / nem)])}, emission ${nm(D.em[at % nem])} nm; arrow keys move the reading`);
 }
 function drawSlice(c, alongEm) {
   const [g, w, h] = sharp(c), b = box(w, h);
@@ -235,13 +251,13 @@ function draw() {
     if (!S.data) return;
     mapCanvases.forEach(drawMap);
     drawSlice($("slice-em"), true);
-    drawSlice($("slice-ex"), false);
+    if (nex > 1) drawSlice($("slice-ex"), false);
     readout();
   });
 }
 function readout() {
   const at = S.j * nem + S.k, why = S.data.why[at], m = S.data.layer[0][at], r = S.data.layer[1 + S.method];
-  let s = `ex ${mark(String(D.ex[S.j]))} nm, em ${mark(String(D.em[S.k]))} nm: `;
+  let s = `ex ${nm(D.ex[S.j])} nm, em ${nm(D.em[S.k])} nm: `;
   if (why & 128) s += "no number – " + D.reasons[why & 127];
   else {
     s += `measured ${sig(m, 5)} ${D.unit}`;

@@ -10,6 +10,7 @@ import (
 type pageColumn struct {
 	Head, Title string
 	Number      bool
+	Class       string
 }
 
 // pageCell is a cell of the table of bottles: what is shown and, for numbers, what
@@ -37,14 +38,14 @@ func (r *results) pageRows(v *page) {
 	known := r.knownColumns()
 	v.Columns = []pageColumn{{Head: "Bottle"}, {Head: "Check", Title: "the gravest finding: good, note, doubt or not usable"}}
 	for _, k := range known {
-		v.Columns = append(v.Columns, pageColumn{Head: k.head, Number: k.name == "dilution"})
+		v.Columns = append(v.Columns, pageColumn{Head: k.head, Number: k.name == "dilution", Class: "k"})
 	}
 	for _, c := range r.series {
-		v.Columns = append(v.Columns, pageColumn{Head: strings.TrimSpace(r.label(c) + " " + c.unit), Title: methodName(c.method), Number: true})
+		v.Columns = append(v.Columns, pageColumn{Head: strings.TrimSpace(r.label(c) + " " + c.unit), Title: methodName(c.method), Number: true, Class: "n"})
 	}
-	v.Columns = append(v.Columns, pageColumn{"Explained %", "share of the bottle's sum of squares that the components explain", true},
-		pageColumn{"Structure z", "how alike neighbouring residuals are: Moran's I in standard deviations", true},
-		pageColumn{"Hottest " + r.unit, "largest residual", true}, pageColumn{"at ex/em nm", "where the largest residual lies", false})
+	v.Columns = append(v.Columns, pageColumn{"Explained %", "share of the bottle's sum of squares that the components explain", true, "n"},
+		pageColumn{"Structure z", "how alike neighbouring residuals are: Moran's I in standard deviations", true, "n"},
+		pageColumn{"Hottest " + r.unit, "largest residual", true, "n"}, pageColumn{"at ex/em nm", "where the largest residual lies", false, ""})
 	tests := map[string]bool{}
 	for i, b := range r.bottles {
 		row := r.pageRow(b, known)
@@ -72,7 +73,7 @@ func (r *results) pageRow(b *bottle, known []resultColumn) pageRow {
 		row.Kind = "sample"
 	}
 	for _, k := range known {
-		c := pageCell{Text: t.Text(b.row, t.Col(k.name))}
+		c := pageCell{Text: t.Text(b.row, t.Col(k.name)), Class: "k"}
 		if _, ok := parseDay(c.Text); ok {
 			c.Text = strings.Replace(c.Text, "T", " ", 1)
 		}
@@ -82,7 +83,7 @@ func (r *results) pageRow(b *bottle, known []resultColumn) pageRow {
 		row.Cells = append(row.Cells, c)
 	}
 	for _, c := range r.series {
-		row.Cells = append(row.Cells, valueCell(b.of[c]))
+		row.Cells = append(row.Cells, r.valueCell(b.of[c]))
 	}
 	hot := pageCell{}
 	if ex, em := f("hottest_ex_nm"), f("hottest_em_nm"); finite(ex) && finite(em) {
@@ -104,12 +105,16 @@ func (r *results) bottleTests(b *bottle, all map[string]bool) string {
 	return out
 }
 
-// valueCell shows a contribution as reported; it is sorted by its value.
-func valueCell(c *contribution) pageCell {
+// valueCell shows a contribution as reported, which says by itself what was not
+// detected or cannot be used; it is sorted by its value.
+func (r *results) valueCell(c *contribution) pageCell {
 	if c == nil {
 		return pageCell{}
 	}
-	out := pageCell{Text: strings.TrimSpace(c.reported + " " + c.qualifier), Class: "q" + c.qualifier}
+	out := pageCell{Text: r.num.mark(c.reported), Class: "q" + c.qualifier}
+	if c.qualifier == "J" {
+		out.Text += " J"
+	}
 	if c.qualifier != "R" {
 		out.Sort = Number(c.value)
 	}
@@ -144,10 +149,35 @@ func (r *results) pageTable(name string, ahead []string, without ...string) page
 			if v := t.Float(i, c); finite(v) {
 				text = r.num.short(v, 5)
 			}
-			row = append(row, map[string]string{"true": "yes", "false": "no"}[text])
-			if row[len(row)-1] == "" {
-				row[len(row)-1] = text
+			row = append(row, yesNo(text))
+		}
+		out.Rows = append(out.Rows, row)
+	}
+	return out
+}
+
+// pageModels is the table of candidate models, a column a number of components, so
+// that it fits on a page.
+func (r *results) pageModels() pageTable {
+	t := r.table["models.csv"]
+	if len(t.Rows) == 0 {
+		return pageTable{}
+	}
+	out := pageTable{Heads: []string{"components"}}
+	for i := range t.Rows {
+		out.Heads = append(out.Heads, t.Text(i, t.Col("components")))
+	}
+	for _, name := range r.modelRows() {
+		if slices.Contains([]string{"seed", "loss", "samples", "cells"}, name) {
+			continue
+		}
+		row := []string{strings.ReplaceAll(name, "_", " ")}
+		for i := range t.Rows {
+			text := yesNo(t.Text(i, t.Col(name)))
+			if v := t.Float(i, t.Col(name)); finite(v) {
+				text = r.num.short(v, 5)
 			}
+			row = append(row, text)
 		}
 		out.Rows = append(out.Rows, row)
 	}

@@ -101,11 +101,11 @@ func (r *results) remarks(x *bottle, where string) string {
 }
 
 // distinct are the reasons that one contribution does not share with all others
-// of its bottle.
-func (r *results) distinct(x *bottle, c *contribution) []string {
+// that its method gives for the bottle.
+func (r *results) distinct(x *bottle, of *column) []string {
 	times, with := map[string]int{}, 0
 	for _, s := range r.series {
-		if k := x.of[s]; k != nil && k.qualifier != "" && k.qualifier != "U" {
+		if k := x.of[s]; k != nil && s.method == of.method && k.qualifier != "" && k.qualifier != "U" {
 			with++
 			own, _ := r.reasons(x, k)
 			for _, reason := range own {
@@ -113,6 +113,6 @@ func (r *results) distinct(x *bottle, c *contribution) []string {
 			}
 		}
 	}
-	own, _ := r.reasons(x, c)
+	own, _ := r.reasons(x, x.of[of])
 	return slices.DeleteFunc(own, func(reason string) bool { return with > 1 && times[reason] >= with })
 }

@@ -1,0 +1,71 @@
+package report
+
+import (
+	"context"
+	"os"
+	"path/filepath"
+	"strings"
+	"testing"
+
+	"github.com/xuri/excelize/v2"
+)
+
+// A doubt on all bottles is told once, in the Summary; a bottle's remarks point to
+// it and keep what is its own, though messages hold the "; " that parts them.
+func TestDoubtOnAllIsToldOnce(t *testing.T) {
+	dir := t.TempDir()
+	newFixture(t, 9, "parafac").write(t, dir)
+	const all = "no number of components passes; two are shown all the same; look at the splits"
+	flags, err := ReadTable(filepath.Join(dir, "flags.csv"))
+	must(t, err)
+	put(flags, "", "", "", "parafac", "no-model-passes", "doubt", nil, nil, all)
+	must(t, flags.WriteFile(dir))
+	c, err := ReadTable(filepath.Join(dir, "contributions.csv"))
+	must(t, err)
+	for i := range c.Rows {
+		if q := c.Col("qualifier"); c.Rows[i][q] == "" {
+			c.Rows[i][q], c.Rows[i][c.Col("reasons")] = "J", all+"; above the highest standard"
+		}
+	}
+	must(t, c.WriteFile(dir))
+	set := testSettings()
+	set.Pictures = false
+	must(t, Render(context.Background(), dir, set, nil))
+	f, err := excelize.OpenFile(filepath.Join(dir, "report.xlsx"))
+	must(t, err)
+	defer f.Close()
+	summary, err := f.GetRows("Summary")
+	must(t, err)
+	told := 0
+	for _, row := range summary {
+		told += strings.Count(strings.Join(row, "|"), all)
+	}
+	if told != 1 {
+		t.Errorf("the Summary tells it %d times", told)
+	}
+	rows, err := f.GetRows("Results")
+	must(t, err)
+	for _, row := range rows[4:5] {
+		if last := row[len(row)-1]; last != "above the highest standard; see Summary, doubt on all bottles" {
+			t.Errorf("remarks %q", last)
+		}
+	}
+	page, err := os.ReadFile(filepath.Join(dir, "report.html"))
+	must(t, err)
+	if n := strings.Count(string(page), all); n > 2 { // overview, and the table of models' reasons
+		t.Errorf("the page tells it %d times", n)
+	}
+}
+
+// Row heights follow the widths of the letters: a line that fits takes one line.
+func TestLineHeight(t *testing.T) {
+	l := cellLetters()
+	for text, want := range map[string]float64{"one line": 15, "two\nlines": 27, strings.Repeat("word ", 40): 3 + 12*6, strings.Repeat("m", 100): 3 + 12*6} {
+		if got := lineHeight(text, 200, l); got < want-12 || got > want+12 {
+			t.Errorf("%.20q: %g, want about %g", text, got, want)
+		}
+	}
+	if narrow, wide := lineHeight("iiiiiiiiiiiiiiiiiiii iiiiiiiii", 120, l), lineHeight("MMMMMMMMMMMMMMMMMMMM MMMMMMMMM", 120, l); narrow != 15 || wide <= 27 {
+		t.Errorf("narrow letters %g, wide ones %g", narrow, wide)
+	}
+}
