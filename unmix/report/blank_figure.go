@@ -32,10 +32,15 @@ func (r *results) figBlanks() *figure {
 	if len(plots) == 0 {
 		return nil
 	}
-	return &figure{name: "blanks", numbers: num, height: vg.Length((len(plots)+1)/2) * 48 * vg.Millimeter,
-		caption: "Contaminated blanks: spectra through the brightest spot, in percent of the blank's own Raman line; dashed the mean of the batch's other blanks, gaps where scatter was cut out.",
-		draw:    func(c draw.Canvas) { drawGrid(c, 2, plots) }}
+	f := &figure{name: "blanks", numbers: num,
+		caption: "Contaminated blanks: spectra through the brightest spot, in percent of the blank's own Raman line; dashed the mean of the batch's other blanks, gaps where scatter was cut out."}
+	return f.panels(2, 48*vg.Millimeter, plots, keyEntry{word: "the blank", line: &blankLine}, keyEntry{word: "other blanks", line: &otherBlanks})
 }
+
+var (
+	blankLine   = draw.LineStyle{Color: series(3), Width: 1}
+	otherBlanks = draw.LineStyle{Color: inkGrey, Width: 0.8, Dashes: dashed}
+)
 
 // blankPanel draws one spectrum of a blank; nil where it has no numbers.
 func (r *results) blankPanel(id, mode string, rows []int) *plot.Plot {
@@ -52,14 +57,10 @@ func (r *results) blankPanel(id, mode string, rows []int) *plot.Plot {
 	}
 	other := map[string]string{"excitation": "em", "emission": "ex"}[mode]
 	p := r.num.newPlot(id+", "+mode+" at "+other+" "+at+" nm", "Wavelength (nm)", "% of the Raman line")
-	l := &curve{x: nm, y: own, style: draw.LineStyle{Color: series(3), Width: 1}}
-	o := &curve{x: nm, y: others, style: draw.LineStyle{Color: inkGrey, Width: 0.8, Dashes: dashed}}
-	p.Add(l, o)
-	p.Legend.Add(id, l)
-	p.Legend.Add("other blanks", o)
+	p.Add(&curve{x: nm, y: own, style: blankLine}, &curve{x: nm, y: others, style: otherBlanks})
 	if !(p.Y.Max > p.Y.Min) {
 		return nil
 	}
-	p.Y.Max += 0.25 * (p.Y.Max - p.Y.Min) // room for the names
+	p.Y.Max += 0.05 * (p.Y.Max - p.Y.Min)
 	return p
 }

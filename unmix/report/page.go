@@ -84,7 +84,7 @@ func (r *results) writePage(p *pass, figures []*figure) error {
 			v.Components = append(v.Components, g)
 		case strings.HasPrefix(f.name, "contributions"), strings.HasPrefix(f.name, "unexplained"):
 			v.Survey = append(v.Survey, g)
-		case strings.HasPrefix(f.name, "charts"):
+		case strings.HasPrefix(f.name, "charts"), f.name == "blanks":
 			v.Quality = append(v.Quality, g)
 		default:
 			v.Model = append(v.Model, g)

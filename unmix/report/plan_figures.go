@@ -48,10 +48,23 @@ func (n numbers) planTradeOff(d *PlanDrawing) *figure {
 		num.Append(len(l.Excitations), l.Minutes, "all together", l.Criterion)
 	}
 	a, b := n.planByScans(d), n.planByMinutes(d)
-	return &figure{name: "plan-tradeoff", numbers: num, height: 78 * vg.Millimeter,
-		caption: "Predicted relative standard uncertainty of each component by number of scans (right end: all scans of the grid), and of all together by instrument time.",
-		draw:    func(c draw.Canvas) { drawGrid(c, 2, []*plot.Plot{a, b}) }}
+	var key []keyEntry
+	for f, c := range d.Set.Components {
+		style := planLine(f)
+		key = append(key, keyEntry{word: plain(c.Name), line: &style})
+	}
+	key = append(key, keyEntry{word: "all together", line: &planTogether})
+	f := &figure{name: "plan-tradeoff", numbers: num,
+		caption: "Predicted relative standard uncertainty of each component by number of scans (right end: all scans of the grid), and of all together by instrument time."}
+	return f.panels(2, 72*vg.Millimeter, []*plot.Plot{a, b}, key...)
 }
+
+// planLine is the line of component f.
+func planLine(f int) draw.LineStyle {
+	return draw.LineStyle{Color: series(f), Width: 0.9, Dashes: [][]vg.Length{solid, dashed, dotted}[f/len(seriesColours)%3]}
+}
+
+var planTogether = draw.LineStyle{Color: inkGrey, Width: 1.6, Dashes: dashed}
 
 func (n numbers) planByScans(d *PlanDrawing) *plot.Plot {
 	p := n.newPlot("What more scans bring", "Scans", "Relative standard uncertainty (%)")
@@ -63,7 +76,7 @@ func (n numbers) planByScans(d *PlanDrawing) *plot.Plot {
 		ticks = append(ticks, plot.Tick{Value: x[i], Label: fmt.Sprint(len(d.Lines[i].Excitations))})
 	}
 	ticks = append(ticks, plot.Tick{Value: end, Label: fmt.Sprintf("all %d", len(d.Lines[last].Excitations))})
-	add := func(name string, style draw.LineStyle, of func(PlanLine) float64) {
+	add := func(style draw.LineStyle, of func(PlanLine) float64) {
 		y := make([]float64, last)
 		for i := range y {
 			y[i] = log10(of(d.Lines[i]))
@@ -74,13 +87,11 @@ func (n numbers) planByScans(d *PlanDrawing) *plot.Plot {
 		}
 		marks.add(end, log10(of(d.Lines[last])), math.NaN(), math.NaN(), draw.RingGlyph{}, style.Color)
 		p.Add(l, marks)
-		p.Legend.Add(plain(name), l)
 	}
-	for f, c := range d.Set.Components {
-		add(c.Name, draw.LineStyle{Color: series(f), Width: 0.9, Dashes: [][]vg.Length{solid, dashed, dotted}[f/len(seriesColours)%3]}, func(l PlanLine) float64 { return l.Components[f] })
+	for f := range d.Set.Components {
+		add(planLine(f), func(l PlanLine) float64 { return l.Components[f] })
 	}
-	add("all together", draw.LineStyle{Color: inkGrey, Width: 1.6, Dashes: dashed}, func(l PlanLine) float64 { return l.Criterion })
-	p.Legend.Padding = 1.5
+	add(planTogether, func(l PlanLine) float64 { return l.Criterion })
 	p.X.Min, p.X.Max = x[0]-0.4, end+0.5
 	p.X.Tick.Marker = plot.ConstantTicks(ticks)
 	n.logAxis(&p.Y)
