@@ -212,13 +212,10 @@ func (r *rawFiles) hold(paths []string) ([]Input, bool) {
 	in := make([]Input, 0, len(paths))
 	left := int64(heldBytes)
 	for _, p := range paths {
-		if info, err := os.Stat(p); err != nil || info.Size() > left {
-			return nil, false
-		}
 		var f rawFile
 		f.data, f.in, f.err = r.s.load(p)
 		r.held[p] = f
-		if left -= f.in.Size; f.err != nil {
+		if left -= f.in.Size; left < 0 || f.err != nil {
 			return nil, false
 		}
 		in = append(in, f.in)

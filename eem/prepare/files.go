@@ -12,13 +12,11 @@ import (
 	"sort"
 	"strings"
 
+	"tarnlight/eem/scanfile"
 	"tarnlight/eem/survey"
 )
 
 var nan = math.NaN()
-
-// maxRaw bounds one raw file, bytes: a scan of 100,000 points is 3 MB.
-const maxRaw = 256 << 20
 
 // root is the folder that cells of the sheet are relative to.
 func (s *Survey) root() string {
@@ -128,16 +126,9 @@ func (s *Survey) short(path string) string {
 // load reads a raw file once: its bytes and what provenance needs.
 func (s *Survey) load(path string) ([]byte, Input, error) {
 	name := s.short(path)
-	info, err := os.Stat(path)
+	data, err := scanfile.Load(path)
 	if err != nil {
-		return nil, Input{}, fmt.Errorf("%s: %w", name, plain(err))
-	}
-	if info.Size() > maxRaw {
-		return nil, Input{}, fmt.Errorf("%s: %d MB; a raw file has at most %d MB: is this a scan?", name, info.Size()>>20, maxRaw>>20)
-	}
-	data, err := os.ReadFile(path)
-	if err != nil {
-		return nil, Input{}, fmt.Errorf("%s: %w", name, plain(err))
+		return nil, Input{}, fmt.Errorf("%s: %s", name, strings.TrimPrefix(plain(err).Error(), path+": "))
 	}
 	sum := sha256.Sum256(data)
 	return data, Input{Path: name, SHA256: hex.EncodeToString(sum[:]), Size: int64(len(data))}, nil

@@ -122,6 +122,7 @@ func BenchmarkFolder(b *testing.B) {
 	if math.Abs(sum-want) > 1e-6*math.Abs(want) {
 		b.Fatalf("sum %.6f, NumPy %.6f", sum, want)
 	}
+	b.ReportMetric(numpy.peak, "MB-numpy")
 	b.ReportMetric((numpy.cpu[0]+numpy.cpu[1])/(took.cpu[0]+took.cpu[1]), "×numpy-core")
 	b.ReportMetric((numpy.wall[0]+numpy.wall[1])/(took.wall[0]+took.wall[1]), "×numpy")
 }
@@ -168,7 +169,7 @@ func numpyUsage(b *testing.B, dir string) (u usage, sum float64, ok bool) {
 			return u, 0, false
 		}
 		var v usage
-		if _, err := fmt.Sscan(string(out), &v.cpu[0], &v.cpu[1], &v.wall[0], &v.wall[1], &sum); err != nil {
+		if _, err := fmt.Sscan(string(out), &v.cpu[0], &v.cpu[1], &v.wall[0], &v.wall[1], &sum, &u.peak); err != nil {
 			b.Fatal(err)
 		}
 		for i := range 2 {

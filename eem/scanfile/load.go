@@ -4,7 +4,6 @@ import (
 	"bytes"
 	"fmt"
 	"io"
-	"os"
 	"slices"
 	"unicode/utf8"
 
@@ -19,29 +18,26 @@ func Load(path string) ([]byte, error) { return load(path, nil) }
 
 // load reads a file into buf, or into a larger slice where that is too small.
 func load(path string, buf []byte) ([]byte, error) {
-	info, err := os.Stat(path) // before opening, which waits for ever on a pipe
-	switch {
-	case err != nil:
-		return nil, err // names the path
-	case info.IsDir():
-		return nil, fmt.Errorf("%s: is a folder; name a file", path)
-	case !info.Mode().IsRegular():
-		return nil, fmt.Errorf("%s: is no regular file; copy its content to a file", path)
-	case info.Size() > MaxFileBytes:
-		return nil, tooLarge(path)
-	}
-	f, err := openFile(path)
+	f, mode, size, err := openFile(path)
 	if err != nil {
-		return nil, err
+		return nil, err // names the path
 	}
 	defer f.Close()
+	switch {
+	case mode.IsDir():
+		return nil, fmt.Errorf("%s: is a folder; name a file", path)
+	case !mode.IsRegular():
+		return nil, fmt.Errorf("%s: is no regular file; copy its content to a file", path)
+	case size > MaxFileBytes:
+		return nil, tooLarge(path)
+	}
 	// The file may grow or shrink while it is read: ask for one byte more than
 	// it had, and never for more than the limit.
-	data := slices.Grow(buf[:0], int(info.Size())+1)
+	data := slices.Grow(buf[:0], int(size)+1)
 	for {
 		n, err := f.Read(data[len(data):cap(data)])
 		data = data[:len(data)+n]
-		if err == io.EOF || err == nil && int64(len(data)) == info.Size() && len(data) < cap(data) {
+		if err == io.EOF || err == nil && int64(len(data)) == size && len(data) < cap(data) {
 			return data, nil
 		}
 		if err != nil {

@@ -1,6 +1,6 @@
 """Reads a folder of scan files the plain way, with NumPy, and prints the seconds
-of processor time for stacks and grids, the same of wall time, and the sum of all
-intensities.
+of processor time for stacks and grids, the same of wall time, the sum of all
+intensities, and the largest resident memory in MB.
 
 usage: read_with_numpy.py FOLDER
 
@@ -11,6 +11,7 @@ column emissions. The time to start Python and to import NumPy is not counted.
 
 import glob
 import re
+import resource
 import sys
 import time
 
@@ -45,6 +46,7 @@ def main():
     for kind in (0, 1):
         print(" ".join(f"{b[kind] - a[kind]:.4f}" for a, b in zip(clocks, clocks[1:])))
     print(f"{total:.6f}")
+    print(f"{resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024:.0f}")
 
 
 main()
