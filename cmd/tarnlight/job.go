@@ -2,6 +2,7 @@ package main
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"os"
 	"path/filepath"
@@ -160,6 +161,9 @@ func (j *job) work(ctx context.Context, stage *outdir.Staging) error {
 		return err
 	}
 	if err := j.unmix(ctx); err != nil {
+		if ctx.Err() == nil { // what is wrong with the bottles may be why
+			err = errors.Join(printFindings(j.bar, j.sv.Flags), err)
+		}
 		return err
 	}
 	j.collectFlags()

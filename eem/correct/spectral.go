@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"gonum.org/v1/gonum/interp"
 
@@ -105,10 +106,18 @@ func Spectral(e *eem.EEM, ex, em *Factors) *eem.EEM {
 	out.Note(record(StepSpectral, "multiplied by the factor at each excitation and emission", append(ex.params("excitation"), em.params("emission")...)...))
 	if lost > 0 {
 		out.Note(finding(StepSpectral, "factor-range", float64(lost), 0, fmt.Sprintf(
-			"%d cells lie outside the spectral factors and were left out; bring factors for ex %g–%g nm and em %g–%g nm",
-			lost, e.Ex.First(), e.Ex.Last(), e.Em.First(), e.Em.Last())))
+			"%d cells lie outside the spectral factors (%s) and were left out; bring factors for ex %g–%g nm and em %g–%g nm",
+			lost, strings.Join(append(ex.short(e.Ex), em.short(e.Em)...), ", "), e.Ex.First(), e.Ex.Last(), e.Em.First(), e.Em.Last())))
 	}
 	return out
+}
+
+// short names the table and what it covers, when that is less than ax.
+func (f *Factors) short(ax eem.Axis) []string {
+	if f == nil || f.Axis.Covers(ax.First()) && f.Axis.Covers(ax.Last()) {
+		return nil
+	}
+	return []string{fmt.Sprintf("%s: %s", f.Source, f.Axis)}
 }
 
 // onAxis gives factors and relative uncertainties on ax, ones and zeros for nil.
