@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"runtime"
+	"slices"
 	"sync"
 
 	"gonum.org/v1/gonum/floats"
@@ -72,6 +73,9 @@ type quantifier struct {
 	cells []int
 	a     *mat.Dense // cells × n
 	batch *nnls.Batch
+
+	once  sync.Once
+	whole float64 // condition number on all cells
 }
 
 func newQuantifier(s *Set) (*quantifier, error) {
@@ -176,7 +180,12 @@ func (q *quantifier) spread(u []float64, fit *Fit, b, x []float64, res nnls.Resu
 			w[l] = 1
 		}
 	}
-	fit.Condition = q.condition(w)
+	if slices.Contains(w, 0) {
+		fit.Condition = q.condition(w)
+	} else {
+		q.once.Do(func() { q.whole = q.condition(w) })
+		fit.Condition = q.whole
+	}
 	sp, err := q.batch.Covariance(b, x, nil)
 	if err != nil {
 		for f := range u {

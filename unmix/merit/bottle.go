@@ -12,8 +12,9 @@ import (
 
 // worker judges one bottle after another.
 type worker struct {
-	e *engine
-	r []float64 // J × K residual
+	e     *engine
+	r     []float64 // J × K residual
+	draws []float64 // Monte Carlo, used again by every bottle
 }
 
 func (e *engine) worker() *worker { return &worker{e: e, r: make([]float64, e.c.Cells())} }
@@ -496,8 +497,14 @@ func (b *bottle) onBottle(c *eem.Cause) []float64 {
 		axpy(c.U, b.m.gram, out)
 		return out
 	}
-	for _, l := range b.m.use {
-		addOuter(out, e.row(l), relative(c, e.ja[l], e.ka[l]))
+	// Σ (U + ex_j + em_k) K_h K_g by what wavelengths sum up to.
+	axpy(c.U, b.m.gram, out)
+	for _, mode := range []struct{ shape, sums []float64 }{{c.Ex, b.m.kx}, {c.Em, b.m.km}} {
+		for i, v := range mode.shape {
+			if sum := mode.sums[i*n*n : (i+1)*n*n]; slices.Max(sum) > 0 { // a wavelength that no cell has need not be known
+				axpy(v, sum, out)
+			}
+		}
 	}
 	return out
 }

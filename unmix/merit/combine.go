@@ -336,7 +336,10 @@ func (b *bottle) draw(cov []float64) []float64 {
 			l[f*n+h] = tri.At(f, h)
 		}
 	}
-	out := make([]float64, drawn*n)
+	if b.draws == nil {
+		b.draws = make([]float64, drawn*n)
+	}
+	out := b.draws
 	for d := range drawn {
 		z := b.e.draws[d*n : (d+1)*n]
 		for f := range n {

@@ -17,6 +17,8 @@ type nearest struct {
 	n    int
 	gram []float64
 	inv  map[uint64][]float64 // of the Gram matrix on a set of components; nil where singular
+	last uint64
+	kept []float64 // inv[last]
 	rhs  []float64
 }
 
@@ -80,6 +82,9 @@ func (s *nearest) solve(z []float64) bool {
 
 // inverse is that of the Gram matrix on a set, 0 elsewhere.
 func (s *nearest) inverse(set uint64) []float64 {
+	if s.kept != nil && set == s.last {
+		return s.kept
+	}
 	inv, ok := s.inv[set]
 	if !ok {
 		idx := make([]int, 0, s.n)
@@ -89,6 +94,7 @@ func (s *nearest) inverse(set uint64) []float64 {
 		inv = inverse(s.gram, s.n, idx)
 		s.inv[set] = inv
 	}
+	s.last, s.kept = set, inv
 	return inv
 }
 

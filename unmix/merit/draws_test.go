@@ -64,6 +64,31 @@ func TestNearest(t *testing.T) {
 	}
 }
 
+// The shortest interval by parts of the order is that by all of it.
+func TestShortestByParts(t *testing.T) {
+	rnd := rand.New(rand.NewPCG(1, 2))
+	for _, m := range []int{1, 2, 3, 20, 101, 4000} {
+		v := make([]float64, m)
+		for i := range v {
+			v[i] = math.Max(0, rnd.NormFloat64()) // half of them alike
+		}
+		for _, p := range []float64{0.5, 0.9, 0.95, 1} {
+			lo, hi := ShortestInterval(slices.Clone(v), p)
+			all := slices.Sorted(slices.Values(v))
+			q := min(m-1, int(math.Round(p*float64(m))))
+			a, b := all[0], all[q]
+			for r := 1; r+q < m; r++ {
+				if all[r+q]-all[r] < b-a {
+					a, b = all[r], all[r+q]
+				}
+			}
+			if lo != a || hi != b {
+				t.Errorf("%d draws, %g: %g to %g, want %g to %g", m, p, lo, hi, a, b)
+			}
+		}
+	}
+}
+
 func BenchmarkSolveDraws(b *testing.B) {
 	rnd := rand.New(rand.NewPCG(7, 8))
 	const n = 5

@@ -34,11 +34,20 @@ func TQuantile(p, nu float64) float64 {
 }
 
 // ShortestInterval returns the shortest interval that holds the share p of the
-// draws, which it sorts (JCGM 101:2008, 5.3.4 and 7.7). It panics on no draws.
+// draws, whose order it changes (JCGM 101:2008, 5.3.4 and 7.7). It panics on no
+// draws.
 func ShortestInterval(draws []float64, p float64) (lo, hi float64) {
-	slices.Sort(draws)
 	m := len(draws)
 	q := min(m-1, int(math.Round(p*float64(m))))
+	// Only the m−q lowest and the m−q highest draws can be its ends.
+	if tail := m - q; 2*tail < m {
+		partition(draws, tail)
+		partition(draws[tail:], m-2*tail)
+		slices.Sort(draws[:tail])
+		slices.Sort(draws[m-tail:])
+	} else {
+		slices.Sort(draws)
+	}
 	lo, hi = draws[0], draws[q]
 	for r := 1; r+q < m; r++ {
 		if draws[r+q]-draws[r] < hi-lo {
@@ -46,6 +55,34 @@ func ShortestInterval(draws []float64, p float64) (lo, hi float64) {
 		}
 	}
 	return lo, hi
+}
+
+// partition brings the k smallest values to the front (Hoare 1961, Commun. ACM 4,
+// 321).
+func partition(v []float64, k int) {
+	for lo, hi := 0, len(v)-1; lo < hi; {
+		pivot, i, j := v[(lo+hi)/2], lo, hi
+		for i <= j {
+			for v[i] < pivot {
+				i++
+			}
+			for pivot < v[j] {
+				j--
+			}
+			if i <= j {
+				v[i], v[j] = v[j], v[i]
+				i, j = i+1, j-1
+			}
+		}
+		switch {
+		case k-1 <= j:
+			hi = j
+		case k-1 >= i:
+			lo = i
+		default:
+			return
+		}
+	}
 }
 
 // FromPairs returns the standard deviation of one measurement from the differences
