@@ -34,10 +34,7 @@ type Resolution struct {
 	Set   *Set // on the cube's grid
 	IDs   []string
 	Value []float64 // I × F contributions, never negative; NaN where the bottle was not usable
-	// U is the standard uncertainty, I × F, that the scatter of the residual
-	// alone explains (s²(AᵀA)⁻¹). Scale, references and blanks are not in it.
-	U    []float64
-	Fits []Fit
+	Fits  []Fit
 }
 
 // Quantify resolves every sample of the cube against the set by non-negative
@@ -57,8 +54,7 @@ func Quantify(c *eem.Cube, s *Set) (*Resolution, error) {
 	if err != nil {
 		return nil, err
 	}
-	r := &Resolution{Set: s, IDs: c.IDs, Fits: make([]Fit, c.Len()),
-		Value: make([]float64, c.Len()*s.Len()), U: make([]float64, c.Len()*s.Len())}
+	r := &Resolution{Set: s, IDs: c.IDs, Fits: make([]Fit, c.Len()), Value: make([]float64, c.Len()*s.Len())}
 	// A chunk at a time, so that memory does not grow with the survey.
 	const chunk = 256
 	for lo := 0; lo < c.Len(); lo += chunk {
@@ -127,7 +123,7 @@ func (q *quantifier) chunk(r *Resolution, c *eem.Cube, lo, hi int) {
 func (q *quantifier) judge(r *Resolution, i int, b, x []float64, res nnls.Result) {
 	fit := &r.Fits[i]
 	fit.Status, fit.Violation, fit.Cells = res.Status, res.Violation, res.Rows
-	value, u := r.Value[i*q.n:(i+1)*q.n], r.U[i*q.n:(i+1)*q.n]
+	value := r.Value[i*q.n : (i+1)*q.n]
 	copy(value, x)
 	fit.Usable = true
 	switch {
@@ -138,13 +134,18 @@ func (q *quantifier) judge(r *Resolution, i int, b, x []float64, res nnls.Result
 	}
 	if !fit.Usable {
 		for f := range value {
-			value[f], u[f] = math.NaN(), math.NaN()
+			value[f] = math.NaN()
 		}
 		fit.Explained, fit.RMS, fit.Condition = math.NaN(), math.NaN(), math.NaN()
 		fit.Hot, fit.HotEx, fit.HotEm = math.NaN(), math.NaN(), math.NaN()
 		return
 	}
-	q.spread(u, fit, b, x, res)
+	if slices.ContainsFunc(b, math.IsNaN) {
+		fit.Condition = q.condition(b)
+	} else {
+		q.once.Do(func() { q.whole = q.condition(b) })
+		fit.Condition = q.whole
+	}
 	q.residual(r.Set.Grid, fit, b, x)
 }
 
@@ -171,40 +172,12 @@ func (q *quantifier) residual(g eem.Grid, fit *Fit, b, x []float64) {
 	fit.HotEx, fit.HotEm = g.Ex.At(hot/g.Em.Len()), g.Em.At(hot%g.Em.Len())
 }
 
-// spread fills the standard uncertainties from the residual's scatter, and the
-// condition number of the columns that this bottle's cells see.
-func (q *quantifier) spread(u []float64, fit *Fit, b, x []float64, res nnls.Result) {
-	w := make([]float64, len(b))
-	for l, v := range b {
-		if !math.IsNaN(v) {
-			w[l] = 1
-		}
-	}
-	if slices.Contains(w, 0) {
-		fit.Condition = q.condition(w)
-	} else {
-		q.once.Do(func() { q.whole = q.condition(w) })
-		fit.Condition = q.whole
-	}
-	sp, err := q.batch.Covariance(b, x, nil)
-	if err != nil {
-		for f := range u {
-			u[f] = math.NaN()
-		}
-		return
-	}
-	s := math.Sqrt(res.Variance())
-	for f := range u {
-		u[f] = s * sp.U[f]
-	}
-}
-
-// condition returns the condition number of the unit-norm columns on the cells
-// of weight 1, +Inf where they are dependent.
-func (q *quantifier) condition(w []float64) float64 {
+// condition returns the condition number of the unit-norm columns on the cells that
+// b has, +Inf where they are dependent.
+func (q *quantifier) condition(b []float64) float64 {
 	sum := make([]float64, q.n*q.n)
-	for l, on := range w {
-		if on == 0 {
+	for l, v := range b {
+		if math.IsNaN(v) {
 			continue
 		}
 		row := q.a.RawRowView(l)

@@ -16,15 +16,15 @@ func (j *job) qualityFlags(k int) []eem.Flag {
 	if j.res[k].Set.Method == "references" {
 		out = j.recoveryFlags()
 	}
-	out = append(out, j.duplicateFlags(j.res[k])...)
+	out = append(out, j.duplicateFlags(k)...)
 	return append(out, j.fieldBlankFlags(k)...)
 }
 
 // allDuplicates are the duplicates of every resolution.
 func (j *job) allDuplicates() []duplicate {
 	var out []duplicate
-	for _, r := range j.res {
-		out = append(out, j.duplicates(r)...)
+	for k := range j.res {
+		out = append(out, j.duplicates(k)...)
 	}
 	return out
 }

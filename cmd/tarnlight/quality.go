@@ -19,10 +19,15 @@ type duplicate struct {
 	test              string  // duplicate, or field-duplicate for a second bottle
 }
 
+// plainly is how many detection limits two values must be above before their relative
+// difference says something (METHODS 9.1 asks for 5 reporting limits, from memory).
+const plainly = 3
+
 // duplicates compares each replicate with its bottle, for components that both
 // show plainly: near the detection limit a relative difference says nothing.
-func (j *job) duplicates(r *unmix.Resolution) []duplicate {
+func (j *job) duplicates(k int) []duplicate {
 	var out []duplicate
+	r, spreads := j.res[k], j.judge[k].Spreads
 	n := r.Set.Len()
 	for _, b := range j.sv.Bottles {
 		if b.Row.ReplicateOf == "" {
@@ -40,7 +45,7 @@ func (j *job) duplicates(r *unmix.Resolution) []duplicate {
 		}
 		for f, c := range r.Set.Components {
 			x, y := r.Value[i*n+f], r.Value[l*n+f]
-			if least := 10 * math.Max(r.U[i*n+f], r.U[l*n+f]); x > least && y > least {
+			if least := plainly * math.Max(spreads[i].Detection[f], spreads[l].Detection[f]); x > least && y > least {
 				out = append(out, duplicate{b, of, c.Name, r.Set.Method, rpd(x, y), j.sv.Limit(test), test})
 			}
 		}
@@ -52,9 +57,9 @@ func (j *job) duplicates(r *unmix.Resolution) []duplicate {
 func rpd(x, y float64) float64 { return 200 * math.Abs(x-y) / (x + y) }
 
 // duplicateFlags tells which duplicates differ by more than their limit.
-func (j *job) duplicateFlags(r *unmix.Resolution) []eem.Flag {
+func (j *job) duplicateFlags(k int) []eem.Flag {
 	var out []eem.Flag
-	for _, d := range j.duplicates(r) {
+	for _, d := range j.duplicates(k) {
 		if d.rpd > d.limit {
 			what := map[string]string{"duplicate": "of which this is a replicate", "field-duplicate": "filled at the same place"}[d.test]
 			out = append(out, j.sv.Accept(eem.Flag{ID: d.bottle.Row.ID, Batch: d.bottle.Batch, Component: d.component, Method: d.method, Test: d.test,

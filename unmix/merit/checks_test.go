@@ -290,21 +290,69 @@ func TestFromPairs(t *testing.T) {
 	near(t, "s", merit.FromPairs(in.D), want.S, 1e-12)
 }
 
-// Welch–Satterthwaite, JCGM 100:2008.
+// Welch–Satterthwaite, JCGM 100:2008, G.4.1: the worked example of METHODS 9.6. Its
+// k is Student's 97.5 % point at ν rounded down (G.6.4), which SciPy's t.ppf and the
+// printed table of t give too.
 func TestSatterthwaite(t *testing.T) {
-	var want struct {
-		UC  float64 `json:"u_c"`
-		Nu  float64 `json:"nu_eff"`
-		K95 float64 `json:"k_95_nu_floor"`
-		K   float64 `json:"k_95"`
+	var in struct {
+		U  []float64
+		Nu []*float64
 	}
-	checks(t, "merit", "CHK-9b", nil, &want)
-	nu := merit.Satterthwaite([]float64{0.05 * 0.05, 0.03 * 0.03}, []float64{9, 0})
+	var want struct {
+		UC    float64 `json:"u_c"`
+		U2    float64 `json:"U_k2"`
+		Nu    float64 `json:"nu_eff"`
+		K     float64 `json:"k_95"`
+		Floor float64 `json:"k_95_nu_floor"`
+	}
+	checks(t, "merit", "CHK-9b", &in, &want)
+	v, df, sum := make([]float64, len(in.U)), make([]float64, len(in.U)), 0.0
+	for i, u := range in.U {
+		v[i] = u * u
+		sum += v[i]
+		if in.Nu[i] != nil {
+			df[i] = *in.Nu[i]
+		}
+	}
+	nu := merit.Satterthwaite(v, df)
 	near(t, "ν_eff", nu, want.Nu, 1e-10)
-	near(t, "k", merit.TQuantile(0.975, nu), math.Max(want.K, merit.TQuantile(0.975, nu)*0), 0.01)
-	near(t, "k at ν rounded down", merit.TQuantile(0.975, math.Floor(nu)), merit.TQuantile(0.975, 16), 1e-12)
-	near(t, "u_c", math.Sqrt(0.05*0.05+0.03*0.03), want.UC, 1e-12)
+	near(t, "ν rounded down", math.Floor(nu), want.Floor, 0)
+	near(t, "k", merit.TQuantile(0.975, math.Floor(nu)), want.K, 1e-8)
+	near(t, "k at ν itself", merit.TQuantile(0.975, nu), 2.1132346878958286, 1e-8) // scipy.stats.t.ppf(0.975, 16.6464)
+	near(t, "u_c", math.Sqrt(sum), want.UC, 1e-12)
+	near(t, "U", 2*math.Sqrt(sum), want.U2, 1e-12)
 	if !math.IsInf(merit.Satterthwaite([]float64{1}, []float64{0}), 1) {
 		t.Error("a known variance has infinite degrees of freedom")
+	}
+}
+
+// Jackson & Mudholkar where h0 is below 0: the normal quantile carries its sign.
+func TestQLimitNegative(t *testing.T) {
+	var in struct{ Eigenvalues []float64 }
+	var want struct {
+		Limits map[string]struct {
+			JM    float64 `json:"jackson_mudholkar"`
+			Exact float64
+		}
+	}
+	checks(t, "merit", "SEC-6.5-negative-h0", &in, &want)
+	for p, level := range map[string]float64{"0.95": 0.95, "0.99": 0.99} {
+		q := merit.QLimit(in.Eigenvalues, level)
+		near(t, "Jackson–Mudholkar", q.JacksonMudholkar, want.Limits[p].JM, 1e-8)
+		near(t, "exact", q.Exact, want.Limits[p].Exact, 1e-6)
+	}
+}
+
+// Type B divisors (JCGM 100:2008, 4.3.7 and 4.3.9) and the digits of a result (7.2.6).
+func TestTypeB(t *testing.T) {
+	near(t, "rectangular", merit.Rectangular(3), math.Sqrt(3), 1e-15)
+	near(t, "triangular", merit.Triangular(3), 3/math.Sqrt(6), 1e-15)
+	for _, c := range []struct {
+		value, u float64
+		want     string
+	}{{10.05762, 0.0274, "10.058"}, {100.02147, 0.00035, "100.02147"}, {1234.5, 56, "1234"}, {0.00123456, 0.000012, "0.001235"}} {
+		if got := merit.Rounded(c.value, c.u); got != c.want {
+			t.Errorf("%g ± %g: %s, want %s", c.value, c.u, got, c.want)
+		}
 	}
 }

@@ -3,6 +3,7 @@ package merit_test
 import (
 	"math"
 	"math/rand/v2"
+	"slices"
 	"testing"
 
 	"tarnlight/eem"
@@ -182,6 +183,104 @@ func TestAbsent(t *testing.T) {
 	}
 	if share := float64(holds) / n; share < 0.965 {
 		t.Errorf("%.2f %% of the intervals hold 0", 100*share)
+	}
+}
+
+// Where the noise is not known the scatter of the residual stands for it: the error of
+// a contribution is as large as that says, the mean of squared z is 1 (400 values:
+// ± 0.2 at 3 σ).
+func TestSpreadUnknownNoise(t *testing.T) {
+	amounts := make([][]float64, 200)
+	for i := range amounts {
+		amounts[i] = []float64{3, 4}
+	}
+	c, set := mixture(amounts, []float64{430, 455}, 0.05, 21)
+	c.U = nil
+	r, sp := spreads(t, c, set, nil)
+	sum := 0.0
+	for i := range amounts {
+		for f, want := range amounts[i] {
+			z := (r.Value[2*i+f] - want) / sp[i].U[f]
+			sum += z * z
+		}
+	}
+	if m := sum / 400; math.Abs(m-1) > 0.2 {
+		t.Errorf("mean squared z = %.3f, want 1", m)
+	}
+	if sp[0].Terms[0].Cause != "scatter of the residual" {
+		t.Errorf("%+v", sp[0].Terms[0])
+	}
+}
+
+// Near zero, from half a standard uncertainty to three, where intervals come from
+// draws: they hold the truth in 95 % of the bottles.
+func TestNearZero(t *testing.T) {
+	const n = 600
+	const sd = 0.02
+	one, set := mixture([][]float64{{1, 0}}, []float64{430, 450}, sd, 1)
+	_, sp := spreads(t, one, set, nil)
+	u := sp[0].U[1]
+	amounts := make([][]float64, n)
+	for i := range amounts {
+		amounts[i] = []float64{1, u * (0.5 + 2.5*float64(i)/n)}
+	}
+	c, set := mixture(amounts, []float64{430, 450}, sd, 23)
+	_, sp = spreads(t, c, set, nil)
+	in := 0
+	for i := range amounts {
+		if v := amounts[i][1]; sp[i].Lower[1] <= v && v <= sp[i].Upper[1] {
+			in++
+		}
+	}
+	// 95 % ± three standard errors of 0.9 %.
+	if share := float64(in) / n; share < 0.923 || share > 0.977 {
+		t.Errorf("%.2f %% of %d intervals near zero hold the truth", 100*share, n)
+	}
+}
+
+// Spectra that are not exact make what is absent look present: with errors of the
+// loadings in the budget 5 % of bottles without b exceed its critical value, and 95 %
+// exceed it that hold the detection limit; without them far more of the former do.
+func TestLimitsLoadings(t *testing.T) {
+	const n, sd, loading = 400, 1e-3, 0.01
+	rnd := rand.New(rand.NewPCG(25, 1))
+	_, truth := mixture(nil, []float64{430, 450}, sd, 1)
+	var false1, bare, found int
+	for i := range n {
+		set := *truth
+		set.Components = slices.Clone(truth.Components)
+		for f, c := range truth.Components {
+			ex, em := slices.Clone(c.Ex), slices.Clone(c.Em)
+			exU, emU := make([]float64, len(ex)), make([]float64, len(em))
+			for k := range em {
+				emU[k] = loading
+				em[k] += loading * rnd.NormFloat64()
+			}
+			set.Components[f].Ex, set.Components[f].Em = ex, em
+			set.Components[f].ExU, set.Components[f].EmU = exU, emU
+		}
+		c, _ := mixture([][]float64{{1, 0}}, []float64{430, 450}, sd, uint64(i))
+		r, sp := spreads(t, c, &set, nil)
+		if r.Value[1] > sp[0].Critical[1] {
+			false1++
+		}
+		with, _ := mixture([][]float64{{1, sp[0].Detection[1]}}, []float64{430, 450}, sd, uint64(i))
+		at, spAt := spreads(t, with, &set, nil)
+		if at.Value[1] > spAt[0].Critical[1] {
+			found++
+		}
+		for f := range set.Components {
+			set.Components[f].ExU, set.Components[f].EmU = nil, nil
+		}
+		if r, sp := spreads(t, c, &set, nil); r.Value[1] > sp[0].Critical[1] {
+			bare++
+		}
+	}
+	share := func(k int) float64 { return float64(k) / n }
+	t.Logf("absent and detected: %.1f %%, without the loadings' errors %.1f %%; at the limit %.1f %%", 100*share(false1), 100*share(bare), 100*share(found))
+	// Standard errors of 1.1 %.
+	if share(false1) > 0.08 || share(found) < 0.92 || share(bare) < 0.2 {
+		t.Errorf("absent and detected: %.1f %%, without the loadings' errors %.1f %%; at the limit %.1f %%", 100*share(false1), 100*share(bare), 100*share(found))
 	}
 }
 
