@@ -41,6 +41,7 @@ var Tests = sortTests([]Test{
 	{"unsorted", Remark, 0, "", "wavelengths were not in increasing order and were sorted", "-"},
 	{"repeated-point", Remark, 0, "points", "a wavelength stands twice in a scan and the mean was taken", "-"},
 	{"diluted", Remark, 0, "", "the result was multiplied by the dilution factor", "-"},
+	{"alert", Doubt, 0, "", "a contribution of a sample is above what the settings state for its component", "settings: quality.alert"},
 	{"above-standards", Doubt, 0, "", "the contribution is above the highest standard", "common practice, no source"},
 	{"reference-clipped", Doubt, 0, "cells", "saturated or over-absorbing cells of a standard were left out of the reference", "-"},
 	{"reference-intercept", Doubt, 3, "standard errors", "the standards' own line does not pass through zero", "common practice, no source"},

@@ -230,9 +230,21 @@ type Model struct {
 	Corrections []string  `json:"corrections"`
 	Settings    string    `json:"settings"`
 	Likeness    *Likeness `json:"likeness,omitempty"`
-	Authors     []string  `json:"authors"`
-	Citation    string    `json:"citation"`
-	Licence     string    `json:"licence"`
+	// Instrument is how well the measurements behind the model repeat themselves; it
+	// stands in for what a new batch is too small to tell. nil: unknown.
+	Instrument *Instrument `json:"instrument,omitempty"`
+	Authors    []string    `json:"authors"`
+	Citation   string      `json:"citation"`
+	Licence    string      `json:"licence"`
+}
+
+// Instrument is the noise of a detector and the repeatability of a measurement.
+type Instrument struct {
+	ReadNoise float64 `json:"read_noise_counts,omitempty"`    // standard deviation of a cell without light
+	ShotNoise float64 `json:"shot_noise_per_count,omitempty"` // variance for each count of light
+	Blanks    int     `json:"blanks,omitempty"`               // on which these rest; 0: unknown
+	Repeat    float64 `json:"repeatability,omitempty"`        // relative standard deviation of one measurement
+	RepeatDF  float64 `json:"repeatability_df,omitempty"`     // degrees of freedom; 0: unknown
 }
 
 // ModelComponent is one component of a model file. A loading that the data do
@@ -308,6 +320,9 @@ func ParseModel(name string, data []byte) (*Model, error) {
 				return nil, fmt.Errorf("%s: likeness does not have the length of the components (%d)", name, n)
 			}
 		}
+	}
+	if in := m.Instrument; in != nil && min(in.ReadNoise, in.ShotNoise, in.Repeat, in.RepeatDF) < 0 {
+		return nil, fmt.Errorf("%s: the noise or repeatability of the instrument is negative", name)
 	}
 	for _, i := range m.Cells {
 		if i < 0 || i >= nj*nk {

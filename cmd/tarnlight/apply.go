@@ -3,6 +3,7 @@ package main
 import (
 	"errors"
 	"fmt"
+	"math"
 	"path/filepath"
 	"slices"
 	"strings"
@@ -10,6 +11,8 @@ import (
 	"github.com/spf13/cobra"
 
 	"tarnlight/eem"
+	"tarnlight/eem/correct"
+	"tarnlight/eem/prepare"
 	"tarnlight/eem/scanfile"
 	"tarnlight/eem/survey"
 	"tarnlight/unmix"
@@ -24,11 +27,20 @@ func newApplyCmd(s streams) *cobra.Command {
 		Long: `apply corrects the bottles of a survey like those of the model (its grid, bands and
 unit hold, whatever the survey's own settings say), scores each of them by
 non-negative least squares on the model's spectra, and flags bottles unlike those
-that the model was made of. A bottle gets the same numbers alone and among others.`,
-		Example: "  tarnlight apply lastyear/out/model.json tonight",
+that the model was made of. A bottle gets the same numbers alone and among others.
+A batch that cannot be given in the model's unit, such as a night without a blank,
+has its bottles rejected; [correct] blank = "latest" takes the last blank that is
+not older than blank_max_age_days.
+
+In a folder that grows from night to night --since-last lets exit code and
+status.json speak of the bottles that the former results lack. concerns in
+status.json says which of them concern the instrument, are unlike the model, are over
+a limit ([quality] alert and others), or have something wrong with their data.`,
+		Example: "  tarnlight apply lastyear/out/model.json tonight\n  tarnlight apply lastyear/out/model.json nights --since-last --pictures=false",
 		Args:    cobra.ExactArgs(2),
 	}
 	o.flags(c)
+	c.Flags().BoolVar(&o.sinceLast, "since-last", false, "exit code and status.json speak of bottles that the former results lack")
 	c.RunE = func(c *cobra.Command, args []string) error {
 		o.model, o.dir = args[0], args[1]
 		return runJob(c.Context(), s, o)
@@ -59,6 +71,37 @@ func (j *job) freeze() error {
 	j.set.Scatter = m.Scatter
 	j.set.Intensity = m.Intensity
 	return nil
+}
+
+// instrumentOf is what a model tells of the instrument, nil where it tells nothing.
+func instrumentOf(in *unmix.Instrument) *prepare.Known {
+	if in == nil {
+		return nil
+	}
+	k := &prepare.Known{Repeat: prepare.Repeat{U: nan}}
+	if in.Blanks > 0 {
+		k.Noise = &correct.Noise{Read: in.ReadNoise, Shot: in.ShotNoise, Blanks: in.Blanks}
+	}
+	if in.RepeatDF > 0 {
+		k.Repeat = prepare.Repeat{U: in.Repeat, DF: in.RepeatDF, Source: fmt.Sprintf("the model's survey, %g degrees of freedom", in.RepeatDF)}
+	}
+	return k
+}
+
+// ownInstrument puts what the survey tells of its instrument into a model.
+func (j *job) ownInstrument() *unmix.Instrument {
+	k := j.sv.KnownOf("")
+	in := &unmix.Instrument{}
+	if k.Noise != nil {
+		in.ReadNoise, in.ShotNoise, in.Blanks = k.Noise.Read, k.Noise.Shot, k.Noise.Blanks
+	}
+	if k.Repeat.DF > 0 && !math.IsNaN(k.Repeat.U) {
+		in.Repeat, in.RepeatDF = k.Repeat.U, k.Repeat.DF
+	}
+	if *in == (unmix.Instrument{}) {
+		return nil
+	}
+	return in
 }
 
 // applyPart scores the bottles on the fixed model.

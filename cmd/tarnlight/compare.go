@@ -5,14 +5,12 @@ import (
 	"math"
 	"os"
 	"path/filepath"
-	"sort"
 
 	"github.com/spf13/cobra"
 
 	"tarnlight/eem"
 	"tarnlight/unmix"
 	"tarnlight/unmix/parafac"
-	"tarnlight/unmix/report"
 )
 
 type compareOptions struct {
@@ -33,7 +31,10 @@ that both have, and tells how far the peaks lie apart. Congruences above 0.95 in
 both modes mean the same spectrum (Lorenzo-Seva & ten Berge 2006).
 
 Given two results folders it lists the contributions that differ by more than the
-tolerance, relative, and exits with 3 where there are any.`,
+tolerance, relative, or have another qualifier, and exits with 3 where there are any.
+What may lie behind it goes to standard error: another version, settings and inputs
+that differ. tarnlight run --settings OUT/settings-used.toml --out AGAIN repeats a
+result under a later version.`,
 		Example: "  tarnlight compare lastyear/out/model.json thisyear/out/model.json\n  tarnlight compare mysurvey/out mysurvey/out.previous --tolerance 0.01",
 		Args:    cobra.ExactArgs(2),
 	}
@@ -170,77 +171,6 @@ func noNaN(v []float64) []float64 {
 
 // peak is the wavelength of the maximum.
 func peak(a eem.Axis, v []float64) float64 { return a.At(top(v)) }
-
-func compareResults(s streams, o compareOptions) error {
-	type key struct{ id, component, method string }
-	load := func(dir string) (map[key]float64, error) {
-		t, err := report.ReadTable(filepath.Join(dir, "contributions.csv"))
-		if err != nil {
-			return nil, err
-		}
-		out := map[key]float64{}
-		for r := range t.Rows {
-			out[key{t.Text(r, t.Col("id")), t.Text(r, t.Col("component")), t.Text(r, t.Col("method"))}] = t.Float(r, t.Col("value"))
-		}
-		return out, nil
-	}
-	a, err := load(o.a)
-	if err != nil {
-		return err
-	}
-	b, err := load(o.b)
-	if err != nil {
-		return err
-	}
-	all := map[key]bool{}
-	for k := range a {
-		all[k] = true
-	}
-	for k := range b {
-		all[k] = true
-	}
-	keys := make([]key, 0, len(all))
-	for k := range all {
-		keys = append(keys, k)
-	}
-	sort.Slice(keys, func(i, j int) bool {
-		x, y := keys[i], keys[j]
-		if x.id != y.id {
-			return x.id < y.id
-		}
-		if x.component != y.component {
-			return x.component < y.component
-		}
-		return x.method < y.method
-	})
-	t := newText("id", "component", "method", "a", "b", "relative difference")
-	for _, k := range keys {
-		x, inA := a[k]
-		y, inB := b[k]
-		show := func(v float64, in bool) string {
-			switch {
-			case !in:
-				return "absent"
-			case math.IsNaN(v):
-				return "none"
-			}
-			return report.Number(v)
-		}
-		d := relative(x, y)
-		if inA && inB && (d <= o.tolerance || math.IsNaN(x) && math.IsNaN(y)) {
-			continue
-		}
-		t.add(k.id, k.component, k.method, show(x, inA), show(y, inB), fmt.Sprintf("%.3g", d))
-	}
-	fmt.Fprintf(s.err, "%d of %d contributions differ by more than %g\n", len(t.rows), len(keys), o.tolerance)
-	if len(t.rows) == 0 {
-		return nil
-	}
-	if err := t.print(s.out); err != nil {
-		return err
-	}
-	return &codeError{code: exitDoubt}
-}
 
 // relative is |x − y| over the larger of both, 0 where both are 0.
 func relative(x, y float64) float64 {

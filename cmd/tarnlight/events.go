@@ -70,7 +70,7 @@ func (j *job) emitAll(s streams) error {
 			return err
 		}
 	}
-	for _, f := range j.flags {
+	for _, f := range j.news() {
 		if f.Severity < eem.Doubt {
 			continue
 		}

@@ -208,7 +208,7 @@ func (x *explainer) repeat(ctx context.Context) error {
 	var moments []moment
 	var mu sync.Mutex
 	grid := x.store.Grid
-	x.sv, err = prepare.Read(ctx, x.survey, &less, set, prepare.Options{Grid: &grid, Trace: func(b *prepare.Bottle, step string, e *eem.EEM) {
+	x.sv, err = prepare.Read(ctx, x.survey, &less, set, prepare.Options{Grid: &grid, KeepUnit: true, Trace: func(b *prepare.Bottle, step string, e *eem.EEM) {
 		if b.Row.ID != x.id {
 			return
 		}

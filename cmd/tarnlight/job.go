@@ -33,6 +33,7 @@ type jobOptions struct {
 	json       bool
 	pictures   bool
 	fresh      bool // no cache
+	sinceLast  bool // the outcome speaks of what the former results lack
 
 	quantify, resolve bool // the parts of the work that the verb asks for
 	verb              string
@@ -75,7 +76,8 @@ type job struct {
 	flags  []eem.Flag              // all of them, in order
 	optics map[*prepare.Bottle][]optics.Index
 
-	applied     *unmix.Model // the fixed model of apply, nil otherwise
+	old         map[string]bool // ids of which the outcome does not speak; nil: it speaks of all
+	applied     *unmix.Model    // the fixed model of apply, nil otherwise
 	appliedName string
 }
 
@@ -167,6 +169,7 @@ func (j *job) work(ctx context.Context, stage *outdir.Staging) error {
 		return err
 	}
 	j.collectFlags()
+	j.findOld()
 	if err := j.write(stage); err != nil {
 		return err
 	}
@@ -189,7 +192,7 @@ func (j *job) prepare(ctx context.Context) error {
 	var err error
 	opt := prepare.Options{Workers: j.workers, Progress: j.bar.step, Cache: j.cache}
 	if j.applied != nil {
-		opt.Grid = &j.applied.Grid
+		opt.Grid, opt.KeepUnit, opt.Known = &j.applied.Grid, true, instrumentOf(j.applied.Instrument)
 	}
 	j.sv, err = prepare.Read(ctx, j.dir, j.sheet, j.set, opt)
 	if err != nil {
@@ -213,6 +216,13 @@ func (j *job) prepare(ctx context.Context) error {
 
 // unmix resolves the bottles by every method that is asked for.
 func (j *job) unmix(ctx context.Context) error {
+	if err := j.methods(ctx); err != nil {
+		return err
+	}
+	return j.checkAlerts()
+}
+
+func (j *job) methods(ctx context.Context) error {
 	if j.applied != nil {
 		return j.applyPart()
 	}

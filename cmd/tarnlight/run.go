@@ -6,6 +6,8 @@ import (
 	"path/filepath"
 
 	"github.com/spf13/cobra"
+
+	"tarnlight/eem"
 )
 
 // jobCmd makes a verb that works on one survey.
@@ -94,6 +96,9 @@ func (j *job) printSummary(s streams) error {
 		return err
 	}
 	st := j.status()
+	if st.SinceLast {
+		fmt.Fprintf(s.err, "%s that the last results lack; what follows speaks of these\n", eem.Count(st.Bottles["new"], "bottle"))
+	}
 	fmt.Fprintf(s.err, "%d bottles: %d usable, %d rejected, %d excluded; %d doubts, %d notes\n", st.Bottles["all"], st.Bottles["usable"],
 		st.Bottles["rejected"], st.Bottles["excluded"], st.Findings["doubts"], st.Findings["notes"])
 	if w := j.worst(3); len(w) > 0 {

@@ -123,6 +123,7 @@ func (j *job) writeModel(path string) error {
 		return err
 	}
 	m.Settings = used.String()
+	m.Instrument = j.ownInstrument()
 	if j.fit != nil {
 		m.Samples = j.fit.IDs
 		if e := j.fit.Explained; !math.IsNaN(e) {
@@ -200,12 +201,15 @@ type status struct {
 	Tests    map[string]int `json:"tests"` // doubts and rejects by code
 	Rejected []string       `json:"rejected"`
 	Reasons  []string       `json:"reasons"` // the first ones, rejects first
+
+	Concerns  map[string][]string `json:"concerns"`   // ids with doubts and rejects, by instrument, model, limit, data
+	SinceLast bool                `json:"since_last"` // findings to concerns speak of bottles that the former results lack
 }
 
 func (j *job) status() status {
 	s := status{Outcome: "done", Version: version, Title: j.set.Title, Unit: string(j.cube.Unit), Methods: []string{},
 		Bottles:  map[string]int{"all": len(j.sv.Bottles), "usable": 0, "rejected": 0, "excluded": 0},
-		Findings: map[string]int{"notes": 0, "doubts": 0, "rejects": 0}, Tests: map[string]int{}, Rejected: []string{}, Reasons: []string{}}
+		Findings: map[string]int{"notes": 0, "doubts": 0, "rejects": 0}, Tests: map[string]int{}, Rejected: []string{}, Reasons: []string{}, SinceLast: j.old != nil}
 	for _, r := range j.res {
 		s.Methods = append(s.Methods, r.Set.Method)
 	}
@@ -216,12 +220,23 @@ func (j *job) status() status {
 			s.Bottles["excluded"]++
 		case rejected[b.Row.ID]:
 			s.Bottles["rejected"]++
-			s.Rejected = append(s.Rejected, b.Row.ID)
+			if !j.old[b.Row.ID] {
+				s.Rejected = append(s.Rejected, b.Row.ID)
+			}
 		default:
 			s.Bottles["usable"]++
 		}
 	}
-	for _, f := range j.flags {
+	if j.old != nil {
+		for _, b := range j.sv.Bottles {
+			if !j.old[b.Row.ID] {
+				s.Bottles["new"]++
+			}
+		}
+	}
+	news := j.news()
+	s.Concerns = concerned(news)
+	for _, f := range news {
 		s.Findings[[...]string{"notes", "notes", "doubts", "rejects"}[f.Severity]]++
 		if f.Severity >= eem.Doubt {
 			s.Tests[f.Test]++
@@ -256,7 +271,7 @@ func (j *job) worst(n int) []eem.Flag {
 	var out []eem.Flag
 	seen := map[[2]string]bool{}
 	take := func(pass func(eem.Flag) bool) {
-		for _, f := range j.flags {
+		for _, f := range j.news() {
 			k := [2]string{f.ID, f.Test}
 			if pass(f) && !seen[k] && len(out) < n {
 				seen[k] = true
@@ -271,14 +286,7 @@ func (j *job) worst(n int) []eem.Flag {
 }
 
 func flagLine(f eem.Flag) string {
-	who := f.ID
-	switch {
-	case who == "" && f.Batch != "":
-		who = "batch " + f.Batch
-	case who == "":
-		who = "survey"
-	}
-	return fmt.Sprintf("%s: %s (%s)", who, f.Msg, f.Test)
+	return fmt.Sprintf("%s: %s (%s)", flagged(f), f.Msg, f.Test)
 }
 
 // collectFlags puts all findings into one list: what reading and correcting
@@ -296,6 +304,7 @@ func (j *job) collectFlags() {
 	j.flags = append(j.flags, j.limitsLowFlags()...)
 	j.flags = append(j.flags, j.chartFlags()...)
 	j.flags = append(j.flags, j.opticsFlags()...)
+	j.flags = append(j.flags, j.alertFlags()...)
 }
 
 // provenance lists what the results rest on.
@@ -311,6 +320,9 @@ func (j *job) provenance() outdir.Provenance {
 		} else if name != "" {
 			extra[filepath.Join(j.dir, path)] = true
 		}
+	}
+	if j.model != "" {
+		extra[j.model] = true
 	}
 	for _, path := range slices.Sorted(maps.Keys(extra)) {
 		if f, err := outdir.HashUnder(j.dir, path); err == nil {

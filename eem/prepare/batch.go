@@ -230,12 +230,12 @@ func (s *Survey) unitOf(bt *Batch) (eem.Unit, error) {
 	}
 	switch want {
 	case "raman":
-		if bt.Reason != "" {
+		if bt.Reason != "" && !s.keepUnit {
 			return "", fmt.Errorf("batch %s cannot be given in Raman units: %s; add a blank of that batch to the sheet, name one in the blanks column, or set [intensity] unit = \"counts\"", bt.Name, bt.Reason)
 		}
 		return eem.Raman, nil
 	case "quinine":
-		if err := bt.findQuinine(); err != nil {
+		if err := bt.findQuinine(); err != nil && !s.keepUnit {
 			return "", fmt.Errorf("batch %s cannot be given in quinine sulfate units: %w; add standards with a column conc:quinine… [µg/L] that cover ex %d / em %d nm, or set [intensity] unit = \"raman\"", bt.Name, err, quinineEx, quinineEm)
 		}
 		return eem.Quinine, nil

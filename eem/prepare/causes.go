@@ -36,7 +36,12 @@ const fewestPairs = 5
 // of its samples, which see all of the handling; else from the Raman areas of
 // replicate blanks, pooled over the batches; else from what pairs there are. From
 // m pairs s = √(Σd²/2m), d the difference of the logarithms (METHODS 9.1).
+//
+// What is known of the instrument from elsewhere goes before both.
 func (s *Survey) RepeatOf(setup string) Repeat {
+	if s.known != nil && s.known.Repeat.DF > 0 {
+		return s.known.Repeat
+	}
 	var ss, df float64
 	for _, bt := range s.Batches {
 		if bt.Setup != setup {

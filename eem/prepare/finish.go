@@ -138,7 +138,7 @@ func (b *Bottle) scaleTo(s *Survey, e *eem.EEM) *eem.EEM {
 	case eem.Raman:
 		r, err := b.raman(bt)
 		if err == nil && !(r.Area > 0) {
-			err = fmt.Errorf("no blank gives batch %s a Raman area: %s; name a blank in the blanks column", b.Batch, bt.Reason)
+			err = fmt.Errorf("no blank gives batch %s a Raman area, without which it cannot be given in Raman units: %s; name a blank in the blanks column", b.Batch, bt.Reason)
 		}
 		if err != nil {
 			b.reject(s, "raman-range", err.Error())

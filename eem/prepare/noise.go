@@ -60,8 +60,18 @@ func (b *Bottle) takeGain(e *eem.EEM) *eem.EEM {
 	return &out
 }
 
+// Known is what is known of an instrument.
+type Known struct {
+	Noise  *correct.Noise // nil: unknown
+	Repeat Repeat         // U NaN or DF 0: unknown
+}
+
+// KnownOf returns what the survey tells of the instrument of a setup.
+func (s *Survey) KnownOf(setup string) Known { return Known{s.noiseOf[setup], s.RepeatOf(setup)} }
+
 // setNoise finds the noise model of every bottle: from three or more blanks of its
-// batch, else from all blanks of its setup, else from its own scans.
+// batch, else what is known of the instrument, else from all blanks of its setup,
+// else from its own scans.
 func (s *Survey) setNoise() {
 	bySetup := map[string][]*eem.EEM{}
 	for _, bt := range s.Batches {
@@ -71,9 +81,14 @@ func (s *Survey) setNoise() {
 	for setup, blanks := range bySetup {
 		pooled[setup] = fitNoise(blanks)
 	}
+	s.noiseOf = pooled
 	for _, bt := range s.Batches {
 		n, from := fitNoise(bt.counts()), "blanks of the batch"
-		if n == nil {
+		switch {
+		case n != nil:
+		case s.known != nil && s.known.Noise != nil:
+			n, from = s.known.Noise, "blanks of the model's survey"
+		default:
 			n, from = pooled[bt.Setup], "blanks of the setup"
 		}
 		alone := 0

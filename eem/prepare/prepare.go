@@ -34,6 +34,13 @@ type Options struct {
 	// Cache takes over bottles that are as they were; nil reads all of them. With
 	// Trace it is left alone: what was taken over passed no step.
 	Cache *Cache
+	// KeepUnit holds the unit of [intensity], as a model's must be: a batch that
+	// cannot be given in it loses its bottles and does not stop the survey.
+	KeepUnit bool
+	// Known is what is known of the instrument from elsewhere, such as from the
+	// survey of a model; it stands in for what a batch's own blanks are too few to
+	// tell, so that no bottle depends on other batches.
+	Known *Known
 	Grid  *eem.Grid // the survey's grid where it is given, that of a model; nil: that of the most samples
 }
 
@@ -110,6 +117,9 @@ type Survey struct {
 	defaultBands []string               // the keys among them that no blank showed
 	trace        func(b *Bottle, step string, e *eem.EEM)
 	cache        *Cache
+	keepUnit     bool
+	known        *Known
+	noiseOf      map[string]*correct.Noise // from all blanks of a setup
 }
 
 // Guess counts the files that were taken in one way.
@@ -127,7 +137,7 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 		o.Workers = runtime.GOMAXPROCS(0)
 	}
 	own := *set
-	s := &Survey{Dir: dir, Sheet: sheet, Settings: &own, trace: o.Trace}
+	s := &Survey{Dir: dir, Sheet: sheet, Settings: &own, trace: o.Trace, keepUnit: o.KeepUnit, known: o.Known}
 	if o.Trace == nil {
 		s.cache = o.Cache
 	}

@@ -44,3 +44,38 @@ func kindsCodec() codec {
 		},
 	}
 }
+
+// alertCodec takes contributions by component.
+func alertCodec() codec {
+	b := bounds{hi: 1e15, open: true}
+	return codec{
+		what: "{COMPONENT = contribution, …}, each above 0",
+		read: func(field, v any) error {
+			m, ok := v.(map[string]any)
+			if !ok {
+				return errRefused
+			}
+			var alert map[string]float64
+			for _, name := range slices.Sorted(maps.Keys(m)) {
+				x, ok := b.take(m[name])
+				if !ok || name == "" {
+					return errors.New(quote(name) + " is " + showValue(m[name]) + " and must be a number above 0")
+				}
+				if alert == nil {
+					alert = make(map[string]float64)
+				}
+				alert[name] = x
+			}
+			*field.(*map[string]float64) = alert
+			return nil
+		},
+		write: func(field any) string {
+			m := *field.(*map[string]float64)
+			var parts []string
+			for _, name := range slices.Sorted(maps.Keys(m)) {
+				parts = append(parts, tomlKey(name)+" = "+tomlNumber(m[name]))
+			}
+			return "{" + strings.Join(parts, ", ") + "}"
+		},
+	}
+}

@@ -237,7 +237,9 @@ func judgingKeys() []*key {
 	return append(ks, &key{"quality", "accept", func(s *Settings) any { return &s.Quality.Accept }, acceptCodec(),
 		"a known doubt that is only a note in this survey, with the reason; empty, because a doubt should be seen"},
 		&key{"quality", "reject_batch", func(s *Settings) any { return &s.Quality.RejectBatch }, stepsCodec(RejectingTests),
-			"tests a doubt of which rejects the whole batch; empty: a control beyond limit.control-action, no scale or more rejected bottles than limit.batch-rejected do so alone; strict charts add \"chart-rule\" (Westgard et al. 1981, from memory)"})
+			"tests a doubt of which rejects the whole batch; empty: a control beyond limit.control-action, no scale or more rejected bottles than limit.batch-rejected do so alone; strict charts add \"chart-rule\" (Westgard et al. 1981, from memory)"},
+		&key{"quality", "alert", func(s *Settings) any { return &s.Quality.Alert }, alertCodec(),
+			"a contribution of a sample above this, in the unit of the results, is told at once: flag alert, exit 3; empty, because only who asked for the survey knows what would alarm them"})
 }
 
 func reportKeys() []*key {

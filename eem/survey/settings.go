@@ -189,6 +189,7 @@ type Quality struct {
 	Accept map[string]string  // code → reason: the doubt is only a note here; nil when none is
 	// RejectBatch are tests, of RejectingTests, a doubt of which rejects the batch.
 	RejectBatch []string
+	Alert       map[string]float64 // component → contribution above which a sample is told at once; nil when none is
 }
 
 // RejectingTests are the tests on blanks and quality samples that

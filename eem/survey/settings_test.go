@@ -177,7 +177,7 @@ func TestEveryKey(t *testing.T) {
 			Starts: 20, Seed: 42, Tolerance: 1e-6, SplitBy: "site", Hold: "held.csv"},
 		Uncertainty: Uncertainty{Declared{true, 2}, Declared{true, 0.3}, Declared{true, 0.002}, Declared{true, 0.5},
 			Declared{true, 4}, Declared{true, 0.2}},
-		Quality: Quality{Limit: limits, Accept: map[string]string{"no-absorbance": "clear water, A254 below 0.02"}, RejectBatch: []string{"blank-drift"}},
+		Quality: Quality{Limit: limits, Accept: map[string]string{"no-absorbance": "clear water, A254 below 0.02"}, RejectBatch: []string{"blank-drift"}, Alert: map[string]float64{"peat extract": 2.5, "C1": 1e-3}},
 		Report:  Report{"a client", "an order", "17/2026", "M-12", "two\nlines", "one", "another", "comma", 1, "flagged"},
 		Setups: map[string]*Setup{
 			"lamp 2": {Instrument: "the second one", Bandpass: "5 nm", Integration: "0.5 s", Set: []Override{

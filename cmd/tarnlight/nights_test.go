@@ -1,0 +1,173 @@
+package main
+
+import (
+	"encoding/json"
+	"os"
+	"path/filepath"
+	"slices"
+	"strings"
+	"testing"
+
+	"tarnlight/eem/synth"
+)
+
+// Six nights of a job that calls begin --add and apply --since-last: a normal one,
+// one without any file, one that ends while a bottle is being written, one without a
+// blank, one with a dead lamp, and one with a spill that the model does not know. The
+// next normal night is exit 0 again, and no score of a former night has changed.
+func TestSixNights(t *testing.T) {
+	heavy(t)
+	model := kept(t, "parafac.json")
+	dir := folder(t, map[string]string{"survey.toml": nightSettings(t, "")})
+	add := func(code int) result { t.Helper(); return call("begin", dir, "--add", "--csv").want(t, code) }
+	apply := func(code int) status {
+		t.Helper()
+		call("apply", model, dir, "--since-last", "--pictures=false").want(t, code)
+		var s status
+		if err := json.Unmarshal([]byte(read(t, dir, "out", "status.json")), &s); err != nil {
+			t.Fatal(err)
+		}
+		if s.ExitCode != code || !s.SinceLast {
+			t.Errorf("status.json says %+v, the exit code was %d", s, code)
+		}
+		return s
+	}
+	concerns := func(s status, what string, ids ...string) {
+		t.Helper()
+		for c, have := range s.Concerns {
+			if c != what && len(have) > 0 {
+				t.Errorf("%s: %v beside %s", c, have, what)
+			}
+		}
+		if what != "" && !slices.Equal(s.Concerns[what], ids) {
+			t.Errorf("%s: %v, want %v; %q", what, s.Concerns[what], ids, s.Reasons)
+		}
+	}
+	scores := func() []string { return rowsOf(t, dir, "contributions.csv", "") }
+	var first []string
+
+	normal := map[string]string{"PW1A": "PW1", "PW1B": "PW2", "W103": "W3", "W105": "W5"}
+	t.Run("normal", func(t *testing.T) {
+		night(t, dir, "20310601", normal, nil)
+		old(t, dir)
+		add(exitDone)
+		concerns(apply(exitDone), "")
+		first = scores()
+	})
+	t.Run("none", func(t *testing.T) {
+		if r := add(exitDone); !strings.Contains(r.err, "nothing new") {
+			t.Errorf("begin: %s", r.err)
+		}
+		s := apply(exitDone)
+		concerns(s, "")
+		if s.Bottles["new"] != 0 {
+			t.Errorf("%d bottles are new", s.Bottles["new"])
+		}
+	})
+	t.Run("half-written", func(t *testing.T) {
+		night(t, dir, "20310603", normal, nil)
+		whole := read(t, dir, "scans/20310603_W5/20310603_W5_ex300.txt")
+		old(t, dir)
+		put(t, dir, "scans/20310603_W5/20310603_W5_ex300.txt", whole[:len(whole)/3])
+		if err := os.RemoveAll(filepath.Join(dir, "scans/20310603_W5/20310603_W5_ex305.txt")); err != nil {
+			t.Fatal(err)
+		}
+		if r := add(exitDone); !strings.Contains(r.err, "waits for the next run: W5 (") || strings.Contains(r.out, "W5 2031") {
+			t.Errorf("begin: %s%s", r.out, r.err)
+		}
+		s := apply(exitDone)
+		concerns(s, "")
+		if s.Bottles["new"] != 3 {
+			t.Errorf("%d bottles are new", s.Bottles["new"])
+		}
+	})
+	t.Run("no blank", func(t *testing.T) {
+		night(t, dir, "20310603", normal, nil) // the rest has come
+		night(t, dir, "20310604", map[string]string{"W106": "W6"}, nil)
+		night(t, dir, "20310607", map[string]string{"W106": "W6"}, nil) // the last blank is older than two days
+		old(t, dir)
+		if r := add(exitDone); !strings.Contains(r.err, "3 rows") {
+			t.Errorf("begin: %s", r.err)
+		}
+		s := apply(exitDoubt)
+		concerns(s, concernInstrument, "batch 2031-06-07", "W6 2031-06-07")
+		if !slices.Equal(s.Rejected, []string{"W6 2031-06-07"}) {
+			t.Errorf("rejected: %v", s.Rejected)
+		}
+		if q := cell(t, table(t, dir, "out", "contributions.csv"), "qualifier", "id", "W6", "component", "C1"); q == "R" {
+			t.Error("the blank of the day before was not taken")
+		}
+	})
+	t.Run("dead lamp", func(t *testing.T) {
+		night(t, dir, "20310608", normal, func(b *synth.Bottle) { b.Closed = true })
+		old(t, dir)
+		add(exitDone)
+		s := apply(exitDoubt)
+		for _, id := range []string{"PW1 2031-06-08", "W3 2031-06-08", "W5 2031-06-08"} {
+			if !slices.Contains(s.Concerns[concernInstrument], id) || !slices.Contains(s.Rejected, id) {
+				t.Errorf("%s: %v %v", id, s.Concerns, s.Rejected)
+			}
+		}
+		if len(s.Concerns[concernModel])+len(s.Concerns[concernLimit]) > 0 || s.Tests["no-light"] == 0 {
+			t.Errorf("concerns %v, tests %v", s.Concerns, s.Tests)
+		}
+	})
+	t.Run("unknown in the water", func(t *testing.T) {
+		night(t, dir, "20310609", map[string]string{"PW1A": "PW1", "PW1B": "PW2", "W103": "W3", "W310": "W10"}, nil)
+		old(t, dir)
+		add(exitDone)
+		s := apply(exitDoubt)
+		concerns(s, concernModel, "W10")
+		if s.Tests["unlike-residual"] == 0 {
+			t.Errorf("tests %v", s.Tests)
+		}
+	})
+	t.Run("normal again", func(t *testing.T) {
+		night(t, dir, "20310610", normal, nil)
+		old(t, dir)
+		add(exitDone)
+		concerns(apply(exitDone), "")
+		now := map[string]bool{}
+		for _, r := range scores() {
+			now[r] = true
+		}
+		for _, r := range first {
+			if !now[r] {
+				t.Errorf("a score of the first night changed: %s", r)
+			}
+		}
+		call("apply", model, dir, "--pictures=false").want(t, exitDoubt)
+		if s := read(t, dir, "out", "status.json"); !strings.Contains(s, "W10") || strings.Contains(s, `"since_last": true`) {
+			t.Errorf("without --since-last the spill is not told again: %s", s)
+		}
+		if r := call("explain", filepath.Join(dir, "out"), "W3").want(t, exitDone); !strings.Contains(r.out, "scans/20310601_W3") {
+			t.Errorf("explain: %s", r.out)
+		}
+	})
+}
+
+// A contribution above the laboratory's alert is a doubt that concerns a limit, also
+// in the bottle that was known before; an alert for no component is refused.
+func TestAlert(t *testing.T) {
+	y := newTiny()
+	y.settings += "[quality]\nalert = {a = 1.2}\n"
+	dir := y.write(t)
+	r := call("quantify", dir, "--pictures=false").want(t, exitDoubt)
+	if !strings.Contains(r.err, "W1: a is 1.5") || !strings.Contains(r.err, "above the alert at 1.2") {
+		t.Errorf("not told: %s", r.err)
+	}
+	flags := table(t, dir, "out", "flags.csv")
+	n := 0
+	for i := range flags.Rows {
+		if flags.Text(i, flags.Col("test")) == "alert" {
+			n++
+		}
+	}
+	if n != 1 || !strings.Contains(read(t, dir, "out", "status.json"), "\"limit\": [\n      \"W1\"") {
+		t.Errorf("%d alerts; %s", n, read(t, dir, "out", "status.json"))
+	}
+	put(t, dir, "survey.toml", strings.Replace(y.settings, "{a = 1.2}", "{A = 1.2}", 1))
+	if r := call("quantify", dir, "--pictures=false").want(t, exitFailed); !strings.Contains(r.err, `quality.alert names "A"`) || !strings.Contains(r.err, "did you mean a?") {
+		t.Errorf("an alert for nothing: %s", r.err)
+	}
+}
