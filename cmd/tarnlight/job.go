@@ -363,6 +363,10 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 	j.reach(bottles, method, extra)
 	src := j.sources(r)
 	spreads := merit.Spreads(j.cube, r, src)
+	yard := merit.NewYardstick(j.cube, r, j.pairs())
+	for i := range spreads {
+		spreads[i].Yard = yard
+	}
 	judged := merit.Judge(r, spreads, bottles, j.cube.Sample, j.sv.Limit, j.sv.Accept, set.Origin)
 	if err := j.unknowns(judged, r, bottles, src, set.Origin); err != nil {
 		return err

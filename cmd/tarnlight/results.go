@@ -105,6 +105,20 @@ func (j *job) fitColumns(set func(string, any), b *prepare.Bottle, at int) {
 	set("hottest_em_nm", fit.HotEm)
 	set("hottest_value", fit.Hot)
 	set("condition_number", fit.Condition)
+	if !fit.Usable {
+		return
+	}
+	s := &j.judge[0].Spreads[i]
+	set("residual_chi_square", s.ChiSquare)
+	set("residual_runs", s.Runs)
+	set("residual_yardstick", s.Yard.String())
+	set("structure_beyond_yardstick", s.Yard.Score(j.judge[0].Structure[at].Z))
+	set("clearest_ex_nm", s.Hot.Ex)
+	set("clearest_em_nm", s.Hot.Em)
+	set("clearest_value", s.Hot.Height)
+	set("clearest_z", s.Hot.Z)
+	set("clearest_ex_extent_nm", s.Hot.ExSpan)
+	set("clearest_em_extent_nm", s.Hot.EmSpan)
 }
 
 // flagTable makes flags.csv.

@@ -90,12 +90,13 @@ func fitFlags(r *unmix.Resolution, s *Spread, b Bottle, m Moran, limit func(stri
 	if b.Unlike {
 		return out
 	}
-	structured := m.Z > limit("structure")
+	score := s.Yard.Score(m.Z)
+	structured := score > limit("structure")
 	if lim := limit("unexplained"); structured && fit.Explained < 100*lim {
 		add("unexplained", eem.Doubt, fit.Explained/100, lim,
 			fmt.Sprintf("the model explains %.1f %% of the signal; the residual is largest at ex %g / em %g nm: something in this bottle is not in the model (%s)", fit.Explained, fit.HotEx, fit.HotEm, s.residual()))
 	} else if structured {
-		add("structure", eem.Remark, m.Z, limit("structure"), "the residual is not noise alone: "+s.residual())
+		add("structure", eem.Remark, score, limit("structure"), "the residual is not noise alone: "+s.residual())
 	}
 	return out
 }
@@ -107,7 +108,7 @@ func (s *Spread) residual() string {
 	if s.ChiSquare == s.ChiSquare {
 		text += fmt.Sprintf("; its variance is %s times that of the noise model, runs along emission Z %s", digits(s.ChiSquare, 3), digits(s.Runs, 2))
 	}
-	return text
+	return text + "; " + s.Yard.text()
 }
 
 // contribution judges component f of bottle b.
