@@ -198,8 +198,8 @@ func (j *job) likeness(r *unmix.Resolution) (out []eem.Flag) {
 			out = append(out, j.sv.Accept(eem.Flag{ID: b.Row.ID, Batch: b.Batch, Method: "model", Test: code, Severity: eem.Doubt, Value: v, Limit: limit, Msg: msg}))
 		}
 		if left := 1 - r.Fits[i].Explained/100; left > l.Residual {
-			add("unlike-residual", left, l.Residual, fmt.Sprintf("the model leaves %.2g %% of the signal over, of its own bottles %.2g %% at most (1 in 100 exceeds it by chance); most at ex %g / em %g nm",
-				100*left, 100*l.Residual, r.Fits[i].HotEx, r.Fits[i].HotEm))
+			add("unlike-residual", left, l.Residual, fmt.Sprintf("the model leaves %.2g %% of the signal over, of its own bottles %.2g %% at most (1 in 100 exceeds it by chance); most at ex %s / em %s nm",
+				100*left, 100*l.Residual, eem.NM(r.Fits[i].HotEx), eem.NM(r.Fits[i].HotEm)))
 		}
 		if d := l.Distance(r.Value[i*n : (i+1)*n]); d > l.T2 {
 			add("unlike-scores", d, l.T2, "the mixture of components is unlike that of the model's own bottles (1 in 100 exceeds the limit by chance)")

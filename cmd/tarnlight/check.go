@@ -56,8 +56,7 @@ func runCheck(ctx context.Context, s streams, o jobOptions) error {
 		return err
 	}
 	st := j.status()
-	fmt.Fprintf(s.err, "%d bottles: %d usable, %d rejected, %d excluded; %d doubts, %d notes\n", st.Bottles["all"], st.Bottles["usable"],
-		st.Bottles["rejected"], st.Bottles["excluded"], st.Findings["doubts"], st.Findings["notes"])
+	fmt.Fprintln(s.err, st.line())
 	if st.ExitCode != exitDone {
 		return &codeError{code: st.ExitCode}
 	}

@@ -57,9 +57,9 @@ func (j *job) choose(ctx context.Context, fit *eem.Cube, c survey.Components, se
 	const remedy = "exclude odd bottles (leverage and influence in samples.csv), widen the scatter bands, narrow the grid to where there is signal, or measure more bottles"
 	switch because := j.set.Resolve.Because; {
 	case j.fit == nil && stated:
-		return fmt.Errorf("settings, resolve.components: %d components could not be fitted: %s", want, ch.Verdict)
+		return fmt.Errorf("settings, resolve.components: %s could not be fitted: %s", eem.Count(want, "component"), ch.Verdict)
 	case stated && because != "":
-		fmt.Fprintf(j.bar, "%d components, because: %s\nthe tests say: %s\n", n, because, ch.Verdict)
+		fmt.Fprintf(j.bar, "%s, because: %s\nthe tests say: %s\n", eem.Count(n, "component"), because, ch.Verdict)
 		if passes != "" {
 			doubt(eem.Remark, "%s, chosen because: %s; they do not pass every test: %s", eem.Count(n, "component"), because, passes)
 		}
@@ -162,6 +162,22 @@ func (j *job) leastHalves(components int) (ex, em float64) {
 	return ex, em
 }
 
+// nameIn is the name of component f of the candidate with so many components: in
+// the model that the results rest on the name that it kept.
+func (j *job) nameIn(components, f int) string {
+	for _, r := range j.res {
+		if r.Set.Method == "parafac" && components == j.fit.Components {
+			return r.Set.Components[f].Name
+		}
+	}
+	for _, fit := range j.fits {
+		if fit.Components == components && fit.Held[f] != "" {
+			return fit.Held[f]
+		}
+	}
+	return fmt.Sprintf("C%d", f+1)
+}
+
 // splitTable makes splits.csv.
 func (j *job) splitTable() *report.Table {
 	t := report.New("splits.csv")
@@ -169,7 +185,7 @@ func (j *job) splitTable() *report.Table {
 		return t
 	}
 	for _, s := range j.choice.Splits {
-		t.Append(s.Components, s.Name, fmt.Sprintf("C%d", s.Component+1), s.Ex, s.Em, 0.95, s.Agrees,
+		t.Append(s.Components, s.Name, j.nameIn(s.Components, s.Component), s.Ex, s.Em, 0.95, s.Agrees,
 			s.ExPeak, s.EmPeak, s.ExCentre, s.EmMean, s.First, s.Second)
 	}
 	return t
@@ -202,7 +218,7 @@ func (j *job) splitSpectra() *report.Table {
 					if !m.ok[i] {
 						v = nan
 					}
-					t.Append(s.Components, s.Name, half, fmt.Sprintf("C%d", s.Component+1), m.mode, m.axis.At(i), v)
+					t.Append(s.Components, s.Name, half, j.nameIn(s.Components, s.Component), m.mode, m.axis.At(i), v)
 				}
 			}
 		}

@@ -298,28 +298,81 @@ func (x *explainer) tables() error {
 	if err != nil {
 		return err
 	}
+	f, err := report.ReadTable(filepath.Join(x.out, "flags.csv"))
+	if err != nil {
+		return err
+	}
 	for r := range c.Rows {
 		get := func(col string) string { return c.Text(r, c.Col(col)) }
 		if get("id") != x.id {
 			continue
 		}
-		section := "contributions (" + get("method") + ", " + get("model") + ")"
-		note := fmt.Sprintf("reported %s %s", get("reported"), get("qualifier"))
-		if why := get("reasons"); why != "" {
+		note := "reported " + asReported(get("reported"), get("qualifier"), c.Float(r, c.Col("standard_uncertainty")))
+		if why := x.untold(f, get("reasons")); why != "" {
 			note += "; " + why
 		}
-		x.add(section, get("component"), get("value"), get("unit"), strings.TrimSpace(note))
+		x.add("contributions ("+get("method")+", "+get("model")+")", get("component"), get("value"), get("unit"), note)
 	}
-	f, err := report.ReadTable(filepath.Join(x.out, "flags.csv"))
-	if err != nil {
-		return err
+	x.flags(f)
+	return x.changed()
+}
+
+// asReported is a contribution as it goes into a report, with its expanded
+// uncertainty to the same decimal.
+func asReported(reported, qualifier string, u float64) string {
+	if _, err := strconv.ParseFloat(reported, 64); err == nil && u > 0 {
+		pm := short(2 * u)
+		if _, tail, _ := strings.Cut(reported, "."); !strings.Contains(reported, "e") {
+			pm = strconv.FormatFloat(2*u, 'f', len(tail), 64)
+		}
+		reported += " ± " + pm + " (k = 2)"
 	}
+	if qualifier != "" {
+		reported += ", " + qualifier
+	}
+	return reported
+}
+
+// reaches says whether a finding is the bottle's or one on more bottles, its own
+// batch or the survey.
+func (x *explainer) reaches(f *report.Table, r int) bool {
+	id, batch := f.Text(r, f.Col("id")), f.Text(r, f.Col("batch"))
+	return id == x.id || id == "" && (batch == "" || batch == x.bottle.Batch)
+}
+
+// untold are the reasons that no finding on the bottle tells, which are shown below.
+func (x *explainer) untold(f *report.Table, reasons string) string {
 	for r := range f.Rows {
-		if f.Text(r, f.Col("id")) == x.id {
-			x.add("flags", f.Text(r, f.Col("test")), f.Text(r, f.Col("severity")), "", f.Text(r, f.Col("message")))
+		if m := f.Text(r, f.Col("message")); m != "" && x.reaches(f, r) {
+			reasons = strings.ReplaceAll(reasons, m, "")
 		}
 	}
-	return x.changed()
+	var out []string
+	for _, s := range strings.Split(reasons, "; ") {
+		if s = strings.Trim(s, "; "); s != "" {
+			out = append(out, s)
+		}
+	}
+	return strings.Join(out, "; ")
+}
+
+// flags adds the bottle's findings, and the doubts that it shares with others.
+func (x *explainer) flags(f *report.Table) {
+	for r := range f.Rows {
+		section, severity := "flags", f.Text(r, f.Col("severity"))
+		if f.Text(r, f.Col("id")) == "" {
+			if severity != eem.Doubt.String() && severity != eem.Reject.String() {
+				continue
+			}
+			section = "flags on all bottles"
+			if b := f.Text(r, f.Col("batch")); b != "" {
+				section = "flags on batch " + b
+			}
+		}
+		if x.reaches(f, r) {
+			x.add(section, f.Text(r, f.Col("test")), severity, "", f.Text(r, f.Col("message")))
+		}
+	}
 }
 
 // changed tells of raw files that are not what the results were made of.

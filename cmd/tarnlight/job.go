@@ -200,7 +200,7 @@ func (j *job) prepare(ctx context.Context) error {
 	}
 	j.tellCache()
 	for _, g := range j.sv.Guesses {
-		fmt.Fprintf(j.bar, "%d files: %s (first: %s)\n", g.Files, g.Text, g.First)
+		fmt.Fprintf(j.bar, "%s: %s (first: %s)\n", eem.Count(g.Files, "file"), g.Text, g.First)
 	}
 	usable := j.sv.Pick((*prepare.Bottle).Usable)
 	j.cube = j.sv.Cube(usable)

@@ -11,6 +11,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"tarnlight/eem"
 	"tarnlight/unmix/merit"
 	"tarnlight/unmix/report"
 )
@@ -101,7 +102,7 @@ func runLimits(ctx context.Context, s streams, o limitsOptions) error {
 		if err := writeNew(o.out, limitsFile(t, chosen)); err != nil {
 			return err
 		}
-		fmt.Fprintf(s.err, "%s: limits of %d components; settings take it as [quantify] limits\n", o.out, len(chosen))
+		fmt.Fprintf(s.err, "%s: limits of %s; settings take it as [quantify] limits\n", o.out, eem.Count(len(chosen), "component"))
 	}
 	if doubt {
 		return &codeError{code: exitDoubt}

@@ -83,7 +83,7 @@ func (j *job) parafacSettings(g eem.Grid) (*parafac.Settings, error) {
 
 // componentsOf makes a set of a fit. Its contributions are Fmax.
 func componentsOf(r *parafac.Result) *unmix.Set {
-	s := &unmix.Set{Grid: r.Grid, Unit: r.Unit, Method: "parafac", Origin: fmt.Sprintf("%d components resolved from %d bottles", r.Components, len(r.IDs))}
+	s := &unmix.Set{Grid: r.Grid, Unit: r.Unit, Method: "parafac", Origin: eem.Count(r.Components, "component") + " resolved from " + eem.Count(len(r.IDs), "bottle")}
 	for f := range r.Components {
 		c := unmix.Component{Name: fmt.Sprintf("C%d", f+1), Scale: 1, Ex: r.Ex[f], Em: r.Em[f],
 			ExDetermined: r.ExDetermined[f], EmDetermined: r.EmDetermined[f]}
@@ -104,7 +104,7 @@ func (j *job) fitNotes(chosen *unmix.Set) {
 		j.flags = append(j.flags, j.sv.Accept(eem.Flag{Method: "parafac", Test: code, Severity: sev, Value: v, Limit: lim, Msg: msg}))
 	}
 	if j.fit.Status != parafac.Converged {
-		add("not-converged", eem.Doubt, j.fit.Certificate, 0.1, fmt.Sprintf("the fit of %d components ended as: %s (distance from the optimum %.2g standard errors)", j.fit.Components, j.fit.Status, j.fit.Certificate))
+		add("not-converged", eem.Doubt, j.fit.Certificate, 0.1, fmt.Sprintf("the fit of %s ended as: %s (distance from the optimum %.2g standard errors)", eem.Count(j.fit.Components, "component"), j.fit.Status, j.fit.Certificate))
 	}
 	agree := 0
 	for _, s := range j.fit.Starts {
@@ -128,8 +128,8 @@ func (j *job) fitNotes(chosen *unmix.Set) {
 	for _, c := range chosen.Components {
 		if j1, k1 := top(c.Ex), top(c.Em); !c.ExDetermined[j1] || !c.EmDetermined[k1] {
 			j.flags = append(j.flags, j.sv.Accept(eem.NewFlag(eem.Flag{Component: c.Name, Method: "parafac", Test: "peak-open", Severity: eem.Doubt, Value: nan, Limit: nan,
-				Msg: fmt.Sprintf("the data do not determine %s at its own peak (ex %g / em %g nm), so that its contributions have no sure scale; too much of it lies under scatter or beyond the scans", c.Name,
-					chosen.Grid.Ex.At(j1), chosen.Grid.Em.At(k1))})))
+				Msg: fmt.Sprintf("the data do not determine %s at its own peak (ex %s / em %s nm), so that its contributions have no sure scale; too much of it lies under scatter or beyond the scans", c.Name,
+					eem.NM(chosen.Grid.Ex.At(j1)), eem.NM(chosen.Grid.Em.At(k1)))})))
 		}
 	}
 }

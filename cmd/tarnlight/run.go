@@ -99,8 +99,7 @@ func (j *job) printSummary(s streams) error {
 	if st.SinceLast {
 		fmt.Fprintf(s.err, "%s that the last results lack; what follows speaks of these\n", eem.Count(st.Bottles["new"], "bottle"))
 	}
-	fmt.Fprintf(s.err, "%d bottles: %d usable, %d rejected, %d excluded; %d doubts, %d notes\n", st.Bottles["all"], st.Bottles["usable"],
-		st.Bottles["rejected"], st.Bottles["excluded"], st.Findings["doubts"], st.Findings["notes"])
+	fmt.Fprintln(s.err, st.line())
 	if w := j.worst(3); len(w) > 0 {
 		fmt.Fprintln(s.err, "look at first:")
 		for _, f := range w {

@@ -8,6 +8,7 @@ import (
 	"strings"
 	"unicode/utf8"
 
+	"tarnlight/eem"
 	"tarnlight/eem/survey"
 )
 
@@ -56,6 +57,12 @@ func (t *text) print(w io.Writer) error {
 
 // short gives four significant digits.
 func short(v float64) string { return fmt.Sprintf("%.4g", v) }
+
+// line is the outcome in one line.
+func (st status) line() string {
+	return fmt.Sprintf("%s: %d usable, %d rejected, %d excluded; %s, %s", eem.Count(st.Bottles["all"], "bottle"), st.Bottles["usable"],
+		st.Bottles["rejected"], st.Bottles["excluded"], eem.Count(st.Findings["doubts"], "doubt"), eem.Count(st.Findings["notes"], "note"))
+}
 
 // median of sorted values.
 func median(v []float64) float64 {

@@ -73,7 +73,13 @@ func span(a eem.Axis, at int, v func(int) float64) float64 {
 
 // String tells the spot in words.
 func (h Hot) String() string {
-	s := fmt.Sprintf("largest at ex %g / em %g nm, above half of it over %g × %g nm", h.Ex, h.Em, h.ExSpan, h.EmSpan)
+	s := fmt.Sprintf("largest at ex %s / em %s nm", eem.NM(h.Ex), eem.NM(h.Em))
+	switch {
+	case h.ExSpan > 0 || h.EmSpan > 0:
+		s += fmt.Sprintf(", above half of it over %s × %s nm", eem.NM(h.ExSpan), eem.NM(h.EmSpan))
+	default:
+		s += ", in a single cell"
+	}
 	if h.Z == h.Z {
 		s += fmt.Sprintf(", %s standard deviations of the noise; %d cells are above 4, by chance %.2g would be", digits(h.Z, 3), h.Above, h.ChanceAbove)
 	}

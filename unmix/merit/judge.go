@@ -94,7 +94,7 @@ func fitFlags(r *unmix.Resolution, s *Spread, b Bottle, m Moran, limit func(stri
 	structured := score > limit("structure")
 	if lim := limit("unexplained"); structured && fit.Explained < 100*lim {
 		add("unexplained", eem.Doubt, fit.Explained/100, lim,
-			fmt.Sprintf("the model explains %.1f %% of the signal; the residual is largest at ex %g / em %g nm: something in this bottle is not in the model (%s)", fit.Explained, fit.HotEx, fit.HotEm, s.residual()))
+			fmt.Sprintf("the model explains %.1f %% of the signal; the residual is largest at ex %s / em %s nm: something in this bottle is not in the model (%s)", fit.Explained, eem.NM(fit.HotEx), eem.NM(fit.HotEm), s.residual()))
 	} else if structured {
 		add("structure", eem.Remark, score, limit("structure"), "the residual is not noise alone: "+s.residual())
 	}

@@ -124,7 +124,7 @@ func (s *search) hold(ex, em []float64) (*Unknown, error) {
 		}
 	}
 	u := &Unknown{ExNM: s.c.Ex.At(peak(ex)), EmNM: s.c.Em.At(peak(em))}
-	u.Component = unmix.Component{Name: fmt.Sprintf("unknown %g/%g", u.ExNM, u.EmNM), Ex: ex, Em: em, Scale: 1}
+	u.Component = unmix.Component{Name: fmt.Sprintf("unknown %s/%s", eem.NM(u.ExNM), eem.NM(u.EmNM)), Ex: ex, Em: em, Scale: 1}
 	set := *s.r.Set
 	set.Components = append(slices.Clone(s.r.Set.Components), u.Component)
 	u.Set = &set

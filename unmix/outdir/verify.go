@@ -174,13 +174,13 @@ func (r Report) Lines() []string {
 	n, inputs := len(r.Provenance.Outputs), len(r.Provenance.Inputs)
 	var lines []string
 	if r.Whole() {
-		lines = append(lines, fmt.Sprintf("results whole: %d files as they were written", n))
+		lines = append(lines, fmt.Sprintf("results whole: %s as they were written", files(n)))
 	} else {
 		lines = append(lines, fmt.Sprintf("results not whole: %d of %d files gone, %d changed; run again", len(r.Missing), n, len(r.Changed)))
 	}
 	switch gone, changed := len(r.InputsMissing), len(r.InputsChanged); {
 	case r.InputsEqual():
-		lines = append(lines, fmt.Sprintf("inputs there and equal: %d files", inputs))
+		lines = append(lines, fmt.Sprintf("inputs there and equal: %s", files(inputs)))
 	case changed == 0:
 		lines = append(lines, fmt.Sprintf("inputs gone: %d of %d files, the others equal", gone, inputs))
 	default:
@@ -246,4 +246,12 @@ func (s *Staging) Edited() []string {
 	names = append(names, added...)
 	slices.Sort(names)
 	return names
+}
+
+// files counts files in words.
+func files(n int) string {
+	if n == 1 {
+		return "1 file"
+	}
+	return fmt.Sprintf("%d files", n)
 }

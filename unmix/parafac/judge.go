@@ -3,6 +3,8 @@ package parafac
 import (
 	"fmt"
 	"slices"
+
+	"tarnlight/eem"
 )
 
 // judge decides which candidates pass and says why.
@@ -25,7 +27,7 @@ func (c *Candidate) judge() (bool, string) {
 	case c.Status != Converged:
 		return false, fmt.Sprintf("the fit did not converge in %d iterations, a sign of too many components", c.Iterations)
 	case y < mostlySeen:
-		return false, fmt.Sprintf("only %.0f %% of the loadings of component %d are open to the data", 100*y, x+1)
+		return false, fmt.Sprintf("too little of component %d can be seen (%.0f %% of a spectrum); the rest lies under the scatter bands or beyond the scans", x+1, 100*y)
 	case c.Halves > 0 && 2*c.HalvesOK <= c.Halves:
 		return false, fmt.Sprintf("split halves disagree: all components were found in both halves in %d of %d splits (smallest congruence, median split: %.2f)", c.HalvesOK, c.Halves, c.LeastHalf)
 	case c.Halves > 0:
@@ -72,7 +74,7 @@ func (ch *Choice) words(asked, top int) string {
 		w = "No number of components passes."
 	} else {
 		n := slices.IndexFunc(ch.Candidates, func(c *Candidate) bool { return c.Components == ch.Components })
-		w = fmt.Sprintf("%d components: %s.", ch.Components, ch.Candidates[n].Reason)
+		w = fmt.Sprintf("%s: %s.", eem.Count(ch.Components, "component"), ch.Candidates[n].Reason)
 		next = n + 1
 	}
 	for _, c := range ch.Candidates[next:] {
