@@ -64,9 +64,10 @@ component, beside those of all scans of the grid. REFERENCES is
 Without a survey state the noise (--read and --shot, or --like a survey measured on
 the same instrument); else it is assumed, and plan exits with 3.
 
-What is predicted is the noise of the bottle and of the blanks, as it comes out of the
-fit that run does, in which every cell weighs the same: a dim, noisy scan can do harm,
-so that fewer scans may know more than all. Errors that cells share (intensity scale,
+What is predicted is the noise of the bottle and of the blanks, and what the samples
+of the survey depart from the model beyond noise, as both come out of the fit that run
+does. Every cell weighs the same in it: a dim, noisy scan can do harm, so that fewer
+scans may know more than all. Errors that cells share (intensity scale,
 stock solutions) are the same for any plan and not in it, nor is that a contribution is
 never negative: the figures hold well above the detection limit.`,
 		Example: "  tarnlight plan mysurvey\n" +
@@ -92,7 +93,7 @@ func (o *planOptions) flags(c *cobra.Command) {
 	f.StringArrayVar(&o.levels, "level", nil, "NAME=AMOUNT of a component in a typical bottle, in its own unit")
 	f.StringArrayVar(&o.limits, "limit", nil, "NAME=AMOUNT: detection limit that the plan must meet; may be given again")
 	f.BoolVar(&o.worst, "worst", false, "make the largest relative uncertainty small, not their root mean square")
-	f.StringVar(&o.like, "like", "", "survey folder measured on the same instrument: noise and scatter bands are taken from it")
+	f.StringVar(&o.like, "like", "", "survey folder measured on the same instrument: noise, scatter bands, typical levels and departures from the model are taken from it")
 	f.Float64Var(&o.read, "read", 0, "standard deviation of a cell without light, in the intensity unit of the references")
 	f.Float64Var(&o.shot, "shot", 0, "variance that light adds to a cell for one of intensity, in the same unit")
 	f.IntVar(&o.blanks, "blanks", -1, "how many blanks the subtracted one is the mean of (default: as in the survey, else 3; 0: none)")

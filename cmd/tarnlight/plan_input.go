@@ -29,6 +29,7 @@ type planInput struct {
 	levels  string           // where the levels are from, in words
 	notes   []string
 	seen    *eem.Absorbance // of a typical bottle, nil unknown
+	samples *planSamples    // nil unknown
 }
 
 func (in *planInput) note(format string, a ...any) {
@@ -85,11 +86,8 @@ func (o planOptions) fromSurvey(ctx context.Context, s streams, in *planInput) e
 	}
 	in.problem.Set, in.setting = set, j.sv.Settings
 	in.mask(prepare.Bands(in.setting.Scatter))
-	if err := in.samplesLevels(j); err != nil {
+	if err := in.ownSamples(j); err != nil {
 		return err
-	}
-	if o.read+o.shot == 0 && o.like == "" && j.sv.Noise == nil {
-		in.note("the survey has no %d blanks on one grid, so that its noise is not known", 3)
 	}
 	return o.noise(ctx, s, in, j)
 }
@@ -113,7 +111,7 @@ func (o planOptions) fromFile(ctx context.Context, s streams, in *planInput) err
 			return err
 		}
 	}
-	in.fileLevels(o, like)
+	in.fileLevels(like)
 	if o.settings != "" || filepath.Ext(o.from) != ".json" {
 		in.mask(prepare.Bands(in.setting.Scatter))
 	}
@@ -156,46 +154,9 @@ func (in *planInput) leaveOut(out func(i int, why eem.Reason) bool, why []eem.Re
 	in.problem.Set = &set
 }
 
-// samplesLevels takes the median of the samples that hold a component; where none
-// does, a quarter of its highest standard.
-func (in *planInput) samplesLevels(j *job) error {
-	set := in.problem.Set
-	var rows []int
-	for _, b := range j.sv.Bottles {
-		if i, ok := j.row[b]; ok && b.Row.Kind == survey.Sample {
-			rows = append(rows, i)
-		}
-	}
-	r, err := unmix.Quantify(j.cube.Select(rows), set)
-	if err != nil {
-		return err
-	}
-	in.problem.Level = make([]float64, set.Len())
-	in.levels = fmt.Sprintf("median of %d samples", len(rows))
-	for f, c := range set.Components {
-		var v []float64
-		for i := range rows {
-			if x := r.Value[i*set.Len()+f]; x > 0 {
-				v = append(v, x)
-			}
-		}
-		switch slices.Sort(v); {
-		case len(v) > 0:
-			in.problem.Level[f] = median(v)
-		case c.Highest > 0:
-			in.problem.Level[f] = c.Highest / 4
-			in.note("no sample holds %s; its typical level is taken as a quarter of the highest standard (--level)", c.Name)
-		default:
-			in.problem.Level[f] = oneOfIntensity(set, f)
-			in.note("no sample holds %s; its typical level is taken as one of intensity at its maximum (--level)", c.Name)
-		}
-	}
-	return nil
-}
-
 // fileLevels takes the bottles that a model was made of, else one of intensity at the
 // maximum of each component.
-func (in *planInput) fileLevels(o planOptions, like *unmix.Likeness) {
+func (in *planInput) fileLevels(like *unmix.Likeness) {
 	set := in.problem.Set
 	in.problem.Level = make([]float64, set.Len())
 	if like != nil {
@@ -207,10 +168,6 @@ func (in *planInput) fileLevels(o planOptions, like *unmix.Likeness) {
 	}
 	for f := range in.problem.Level {
 		in.problem.Level[f] = oneOfIntensity(set, f)
-	}
-	in.levels = "one of intensity at each maximum"
-	if len(o.levels) < set.Len() {
-		in.note("nobody said what a typical bottle holds: each component is taken to reach an intensity of 1 at its maximum (--level NAME=AMOUNT)")
 	}
 }
 
@@ -235,6 +192,12 @@ func (in *planInput) wishes(o planOptions) error {
 		return err
 	}
 	p.Want = make([]bool, len(names))
+	if in.levels == "" {
+		in.levels = "one of intensity at each maximum"
+		if len(levels) < len(names) {
+			in.note("nobody said what a typical bottle holds: each component is taken to reach an intensity of 1 at its maximum (--level NAME=AMOUNT)")
+		}
+	}
 	for f, n := range names {
 		if v, ok := levels[n]; ok {
 			p.Level[f] = v

@@ -20,54 +20,93 @@ const usualBlanks = 3
 // noise fills in the noise: stated, of a survey, or assumed. own is the survey that
 // the references come from, nil without one.
 func (o planOptions) noise(ctx context.Context, s streams, in *planInput, own *job) error {
-	set := in.problem.Set
-	blanks := usualBlanks
-	if own != nil && own.sv.Noise != nil {
-		blanks = own.sv.Noise.Blanks
-	}
+	from := own
 	if o.like != "" {
 		like, err := o.readSurvey(ctx, s, o.like)
 		if err != nil {
 			return err
 		}
-		if like.sv.Noise == nil {
-			return fmt.Errorf("--like %s: the survey has no three blanks on one grid, so that its noise is not known; state --read and --shot", o.like)
+		if err := in.like(o.like, like); err != nil {
+			return err
 		}
-		if set.Unit != "" && set.Unit != like.sv.Unit {
-			return fmt.Errorf("--like %s is in %s, the references are in %s; give a survey in that unit, or --read and --shot", o.like, like.sv.Unit, set.Unit)
-		}
-		in.setting = like.sv.Settings
-		in.mask(prepare.Bands(in.setting.Scatter))
-		own, blanks = like, like.sv.Noise.Blanks
-		if in.seen == nil {
-			in.seen = medianAbsorbance(like)
-		}
+		from = like
 	}
-	if o.blanks >= 0 {
-		blanks = o.blanks
+	if from != nil && in.seen == nil {
+		in.seen = medianAbsorbance(from)
 	}
+	n := &in.problem.Noise
 	switch {
 	case o.read+o.shot > 0:
-		in.problem.Noise = plan.Even(set.Grid.Cells(), o.read, o.shot, blanks)
+		*n = plan.Even(in.problem.Set.Grid.Cells(), o.read, o.shot, usualBlanks)
 		in.noise = "stated"
-	case own != nil && own.sv.Noise != nil:
-		in.problem.Noise = bareOn(own, set.Grid)
-		in.problem.Noise.Blanks = blanks
-		in.noise = fmt.Sprintf("blanks of the survey (cells of %s)", own.sv.Noise.ID)
+	case from != nil && from.sv.Noise != nil:
+		in.bareNoise(from)
+	case from != nil && in.samples != nil:
+		in.scatter(from)
 	default:
-		in.assume(blanks)
+		in.assume(usualBlanks)
 	}
-	if own != nil && in.seen == nil {
-		in.seen = medianAbsorbance(own)
+	if o.blanks >= 0 {
+		n.Blanks = o.blanks
 	}
 	return nil
 }
 
-// bareOn brings a survey's noise to a grid; what it does not cover is NaN.
-func bareOn(j *job, g eem.Grid) plan.Noise {
-	on := func(v []float64) []float64 { return eem.FromCells(j.sv.Grid, j.sv.Unit, v).Regrid(g).F }
-	b := j.sv.Noise
-	return plan.Noise{Read2: on(b.Read2), Shot: on(b.Shot), Water: on(b.Water)}
+// like takes bands, levels and departures of a survey measured on the same instrument.
+func (in *planInput) like(name string, j *job) error {
+	set := in.problem.Set
+	if set.Unit != "" && set.Unit != j.sv.Unit {
+		return fmt.Errorf("--like %s is in %s, the references are in %s; give a survey in that unit, or --read and --shot", name, j.sv.Unit, set.Unit)
+	}
+	in.setting = j.sv.Settings
+	in.mask(prepare.Bands(in.setting.Scatter))
+	p, err := samplesOn(j, in.problem.Set, "model")
+	if err != nil {
+		return fmt.Errorf("--like %s: %w", name, err)
+	}
+	if in.samples = p; p == nil || in.levels != "" {
+		return nil
+	}
+	in.levels = fmt.Sprintf("median of %d samples", len(p.rows))
+	for f, v := range p.levels() {
+		if v > 0 {
+			in.problem.Level[f] = v
+		}
+	}
+	return nil
+}
+
+// bareNoise takes the noise that the survey knows, and what its samples depart from
+// the model beyond it.
+func (in *planInput) bareNoise(j *job) {
+	b, g := j.sv.Noise, in.problem.Set.Grid
+	in.problem.Noise = plan.Noise{Read2: toGrid(j, b.Read2, g), Shot: toGrid(j, b.Shot, g), Blanks: b.Blanks}
+	in.noise = fmt.Sprintf("blanks of the survey (cells of %s)", b.ID)
+	if b.Water != nil {
+		in.problem.Noise.Water = toGrid(j, b.Water, g)
+	} else {
+		in.noise = fmt.Sprintf("roughness of the scans of %s, because the survey lacks three blanks", b.ID)
+	}
+	if in.samples == nil {
+		return
+	}
+	if n := &in.problem.Noise; in.samples.misfit(j.cube, n) {
+		n.Misfit = toGrid(j, n.Misfit, g)
+		in.noise += ", and what the samples depart from the model beyond it"
+	}
+}
+
+// scatter takes for noise what the components leave of the samples.
+func (in *planInput) scatter(j *job) {
+	square, _ := in.samples.departures(j.cube)
+	g := in.problem.Set.Grid
+	in.problem.Noise = plan.Noise{Read2: toGrid(j, square, g), Shot: make([]float64, g.Cells())}
+	in.noise = fmt.Sprintf("not known; what the components leave of %d samples stands for it", len(in.samples.rows))
+}
+
+// toGrid brings a map on the survey's grid to another; what it does not cover is NaN.
+func toGrid(j *job, v []float64, g eem.Grid) []float64 {
+	return eem.FromCells(j.sv.Grid, j.sv.Unit, v).Regrid(g).F
 }
 
 // Noise where nobody stated any, relative to the brightest cell of a typical bottle:

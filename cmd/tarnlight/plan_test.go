@@ -247,8 +247,12 @@ func keepLines(t testing.TB, path string, keep []float64) {
 	t.Helper()
 	var out []string
 	var cols []int
-	for n, line := range strings.Split(strings.TrimRight(read(t, path), "\n"), "\n") {
-		cells := strings.Split(strings.TrimRight(line, "\r"), "\t")
+	text, sep := read(t, path), "\t"
+	if !strings.Contains(text, sep) {
+		sep = ","
+	}
+	for n, line := range strings.Split(strings.TrimRight(text, "\n"), "\n") {
+		cells := strings.Split(strings.TrimRight(line, "\r"), sep)
 		if n == 0 {
 			cols = []int{0}
 			for c, head := range cells[1:] {
@@ -261,7 +265,7 @@ func keepLines(t testing.TB, path string, keep []float64) {
 		for _, c := range cols {
 			row = append(row, cells[c])
 		}
-		out = append(out, strings.Join(row, "\t"))
+		out = append(out, strings.Join(row, sep))
 	}
 	put(t, filepath.Dir(path), filepath.Base(path), strings.Join(out, "\n")+"\n")
 }

@@ -13,31 +13,55 @@ import (
 // blank is subtracted). NaN where it is not known.
 type BareNoise struct {
 	Read2, Shot []float64
-	Water       []float64 // intensity of the blank before it is subtracted
+	Water       []float64 // intensity of the blank before it is subtracted; nil where no blank is known
 	Blanks      int       // how many blanks the mean that samples lose is made of, 0 for none
-	ID          string    // the blank it is taken from
+	ID          string    // the bottle whose cells it is taken from
 }
 
-// bareNoise takes it from the first blank whose noise is known.
+// bareNoise takes it from the first blank whose noise is known; without blanks from
+// the bottle with the smallest inner filter.
 func (s *Survey) bareNoise() *BareNoise {
+	var from *Bottle
 	for _, b := range s.Bottles {
-		if b.Row.Kind != survey.Blank || !b.Usable() || b.noise == nil || b.raw == nil || b.gain == nil {
+		if !b.Usable() || b.noise == nil || b.raw == nil || b.gain == nil {
 			continue
 		}
-		by := b.perScale()
-		onGrid := func(at func(i int) float64) []float64 {
-			f := make([]float64, len(b.raw.F))
-			for i := range f {
-				f[i] = at(i)
-			}
-			return eem.FromCells(b.raw.Grid, s.Unit, f).Regrid(s.Grid).F
+		if b.Row.Kind == survey.Blank {
+			from = b
+			break
 		}
-		return &BareNoise{ID: b.Row.ID, Blanks: s.blanksASample(),
-			Read2: onGrid(func(i int) float64 { return math.Pow(b.noise.Read*by*float64(b.gain[i]), 2) }),
-			Shot:  onGrid(func(i int) float64 { return b.noise.Shot * by * float64(b.gain[i]) }),
-			Water: onGrid(func(i int) float64 { return by * b.raw.F[i] })}
+		if from == nil || innerOf(b) < innerOf(from) {
+			from = b
+		}
 	}
-	return nil
+	if from == nil {
+		return nil
+	}
+	by, n := from.perScale(), from.noise
+	out := &BareNoise{ID: from.Row.ID, Blanks: s.blanksASample(),
+		Read2: s.cellsOf(from, func(i int) float64 { return math.Pow(n.Read*by*float64(from.gain[i]), 2) }),
+		Shot:  s.cellsOf(from, func(i int) float64 { return n.Shot * by * float64(from.gain[i]) })}
+	if from.Row.Kind == survey.Blank {
+		out.Water = s.cellsOf(from, func(i int) float64 { return by * from.raw.F[i] })
+	}
+	return out
+}
+
+// innerOf is the largest factor of a bottle's inner filter, 1 where there is none.
+func innerOf(b *Bottle) float64 {
+	if b.Largest > 1 {
+		return b.Largest
+	}
+	return 1
+}
+
+// cellsOf brings a map on the cells of b's raw EEM to the survey's grid.
+func (s *Survey) cellsOf(b *Bottle, at func(i int) float64) []float64 {
+	f := make([]float64, len(b.raw.F))
+	for i := range f {
+		f[i] = at(i)
+	}
+	return s.onGrid(eem.FromCells(b.raw.Grid, s.Unit, f)).F
 }
 
 // blanksASample is how many blanks the first usable sample lost the mean of.

@@ -127,8 +127,9 @@ func (b *bottle) noise() {
 	mean := (sum + b.sharedNoise()) / float64(len(b.m.use))
 	b.out.NoiseRMS, b.out.ChiSquare = math.Sqrt(mean), s2/mean
 	if s2 > trusted*mean {
-		tau := b.inflation((s2 - mean) / s2)
+		tau, alike := b.inflation((s2 - mean) / s2)
 		m := make([]float64, n*n)
+		b.out.Misfit, b.out.Alike = s2-mean, alike
 		axpy((s2-mean)*tau, b.m.gram, m)
 		b.add(misfit, "bottle", 0, "residual beyond the noise; neighbours alike, so that "+strconv.FormatFloat(tau, 'f', 0, 64)+" cells count as one", fixed(m))
 	}
@@ -191,9 +192,9 @@ func (b *bottle) sharedNoise() float64 {
 }
 
 // inflation is how many cells of the residual count as one, from the correlation of
-// neighbours along both axes, of which the noise has none: (1+ρ)/(1−ρ) each, as of
-// a first-order autoregression.
-func (b *bottle) inflation(share float64) float64 {
+// neighbours along both axes (excitation, emission), of which the noise has none:
+// (1+ρ)/(1−ρ) each, as of a first-order autoregression.
+func (b *bottle) inflation(share float64) (tau float64, alike [2]float64) {
 	nj, nk := b.e.c.Ex.Len(), b.e.c.Em.Len()
 	var q, qx, nx, qm, nm, nq float64
 	in := make([]bool, nj*nk)
@@ -213,14 +214,15 @@ func (b *bottle) inflation(share float64) float64 {
 			qx, nx = qx+r*b.r[c+nk], nx+1
 		}
 	}
-	tau := 1.0
-	for _, s := range [][2]float64{{qm, nm}, {qx, nx}} {
+	tau = 1
+	for axis, s := range [2][2]float64{{qx, nx}, {qm, nm}} {
 		if s[1] > 0 && q > 0 {
 			rho := min(max(s[0]/s[1]/(q/nq)/share, 0), 0.95)
+			alike[axis] = rho
 			tau *= (1 + rho) / (1 - rho)
 		}
 	}
-	return min(tau, nq/float64(b.e.n+1))
+	return min(tau, nq/float64(b.e.n+1)), alike
 }
 
 // blanks adds the noise of the subtracted mean of blanks, less what standards with

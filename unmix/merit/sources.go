@@ -91,6 +91,8 @@ type Spread struct {
 	Runs                              float64    // Z of the runs of signs along emission: below 0, neighbours are alike
 	NoiseRMS                          float64    // what noise alone would leave, intensity
 	ChiSquare                         float64    // Σ(residual²/variance) over the degrees of freedom: 1 is noise alone
+	Misfit                            float64    // variance of the residual beyond noise; 0 where noise explains it
+	Alike                             [2]float64 // correlation of what is beyond noise with its neighbours, by excitation and emission
 }
 
 // Largest returns the terms in falling order of what they contribute to component f,

@@ -21,6 +21,9 @@ type Design struct {
 	lines []scan // J
 	use   []int  // of lines: those with cells
 
+	alike   []float64 // J × J: correlation of departures at two excitations
+	alikeEm float64   // of neighbours along emission
+
 	a     []float64 // cells × n, components at their typical levels
 	cells []int     // of the grid, increasing
 	from  []int     // J + 1: where the cells of each excitation begin in cells
@@ -30,7 +33,7 @@ type Design struct {
 type scan struct {
 	cells int
 	gram  []float64   // KᵀK
-	noise []float64   // KᵀVK, V of the typical bottle
+	noise []float64   // KᵀVK, V of the typical bottle; behind it the sum of the misfit and the number of cells
 	light [][]float64 // the part of noise that is component g's light
 }
 
@@ -60,6 +63,7 @@ func New(p Problem) (*Design, error) {
 	for j := range all {
 		all[j] = j
 	}
+	d.setAlike()
 	d.sum(all)
 	if len(d.use) == 0 {
 		return nil, fmt.Errorf("%s: no cell that is scanned knows every one of the components", p.Set.Origin)
@@ -82,6 +86,7 @@ func (d *Design) sum(lines []int) {
 func (d *Design) through(w Window, lines []int) *Design {
 	out := *d
 	out.p.Window, out.use = w, nil
+	out.setAlike()
 	out.lines = make([]scan, len(d.lines))
 	out.sum(lines)
 	return &out
@@ -98,18 +103,20 @@ func (d *Design) scanOf(a []float64, cells []int) scan {
 			rows, at = append(rows, a[l*n:(l+1)*n]), append(at, i)
 		}
 	}
-	s := scan{cells: len(at), gram: make([]float64, n*n), noise: make([]float64, n*n), light: make([][]float64, n)}
+	s := scan{cells: len(at), gram: make([]float64, n*n), noise: make([]float64, n*n+2), light: make([][]float64, n)}
 	for g := range s.light {
 		s.light[g] = make([]float64, n*n)
 	}
+	s.noise[n*n+1] = float64(len(at))
 	apart := d.withoutUnknown(rows, at)
 	for l, i := range at {
 		k := apart[l]
+		s.noise[n*n] += d.p.misfit(i)
 		addOuter(s.gram, k, 1)
-		addOuter(s.noise, k, d.p.dark(i))
+		addOuter(s.noise[:n*n], k, d.p.dark(i))
 		for g := range n {
 			v := d.p.light(i) * math.Max(0, rows[l][g])
-			addOuter(s.noise, k, v)
+			addOuter(s.noise[:n*n], k, v)
 			addOuter(s.light[g], k, v)
 		}
 	}
@@ -201,11 +208,11 @@ func (d *Design) Predict(lines []int) Prediction {
 		return out
 	}
 	for f := range d.n {
-		none := slices.Clone(w.noise)
+		none := slices.Clone(w.noise[:d.n*d.n])
 		for _, j := range lines {
 			floats.Sub(none, d.lines[j].light[f])
 		}
-		out.U[f] = d.p.Level[f] * math.Sqrt(w.variance(f, w.noise))
+		out.U[f] = d.p.Level[f] * math.Sqrt(w.total(f))
 		out.Detection[f] = merit.Currie(d.p.Level[f] * math.Sqrt(math.Max(0, w.variance(f, none)))).Detection
 		out.VIF[f] = w.inverse[f*d.n+f] * w.gram[f*d.n+f]
 	}

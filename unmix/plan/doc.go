@@ -14,8 +14,9 @@
 // the whole grid is not always the best.
 //
 // What is predicted is what the bottle's own noise and that of the subtracted blanks
-// do. Errors that cells share (intensity scale, stock solutions, baseline of the
-// absorbance) are nearly the same for any choice and are not in it; that a
-// contribution is never negative is not in it either, so that the figures hold for
-// amounts well above their detection limit.
+// do, and what real bottles depart from the model, where that is known (Noise.Misfit).
+// Errors that all cells share (intensity scale, stock solutions, baseline of the
+// absorbance) are nearly the same for any choice and are not in it; that a contribution
+// is never negative is not in it either, so that the figures hold for amounts well
+// above their detection limit.
 package plan

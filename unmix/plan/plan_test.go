@@ -141,6 +141,60 @@ func TestDetectionLimitHasNoLightOfItsOwn(t *testing.T) {
 	}
 }
 
+// Departures from the model add τ·m·(KᵀK)⁻¹, with τ from the distances of the scans,
+// and nothing to detection limits.
+func TestMisfit(t *testing.T) {
+	p := newWorld().problem()
+	lines := []int{6, 10, 19} // 270, 290, 335 nm
+	plain := design(t, p).Predict(lines)
+	const m = 1e-6
+	p.Noise.Misfit, p.Noise.AlikeNM = make([]float64, p.Set.Grid.Cells()), [2]float64{20, 8}
+	for i := range p.Noise.Misfit {
+		p.Noise.Misfit[i] = m
+	}
+	got := design(t, p).Predict(lines)
+	ex, em := (math.Exp(-20/20.)+math.Exp(-45/20.))/2, math.Exp(-2/8.)
+	tau := (1 + ex) / (1 - ex) * (1 + em) / (1 - em)
+	a, cells := p.Set.Matrix()
+	for f := range p.Level {
+		norm := 0.0
+		for l, i := range cells {
+			if slices.Contains(lines, i/p.Set.Grid.Em.Len()) {
+				norm += a[l*len(p.Level)+f] * a[l*len(p.Level)+f]
+			}
+		}
+		want := math.Sqrt(plain.U[f]*plain.U[f] + tau*m*plain.VIF[f]/norm)
+		if math.Abs(got.U[f]/want-1) > 1e-9 || got.Detection[f] != plain.Detection[f] {
+			t.Errorf("component %d: u %g, want %g; detection limit %g and %g", f, got.U[f], want, got.Detection[f], plain.Detection[f])
+		}
+	}
+	// Scans close together depart alike: the plan spreads them.
+	apart := func(p plan.Problem) float64 {
+		c, err := design(t, p).Plans(t.Context(), 5, &plan.Settings{Most: -1})
+		if err != nil {
+			t.Fatal(err)
+		}
+		least := math.Inf(1)
+		for i, nm := range nm(p.Set.Grid, c[4].Lines) {
+			if i > 0 {
+				least = min(least, nm-p.Set.Grid.Ex.At(c[4].Lines[i-1]))
+			}
+		}
+		return least
+	}
+	for i := range p.Noise.Misfit {
+		p.Noise.Misfit[i] = 1e-3
+	}
+	p.Noise.AlikeNM[0] = 60
+	with := apart(p)
+	p.Noise.Misfit = nil
+	without := apart(p)
+	t.Logf("closest two of 5 scans: %g nm, with departures alike over 60 nm %g nm", without, with)
+	if with <= without {
+		t.Errorf("closest two of 5 scans: %g nm, with departures alike over 60 nm %g nm", without, with)
+	}
+}
+
 // A component in another unit changes nothing but its own numbers.
 func TestUnitsDoNotMatter(t *testing.T) {
 	p := newWorld().problem()

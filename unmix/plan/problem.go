@@ -44,6 +44,15 @@ type Noise struct {
 	Shot   []float64 // variance for one of intensity
 	Water  []float64 // intensity of the blank; nil: 0
 	Blanks int       // how many blanks the subtracted one is the mean of; 0: none is subtracted
+
+	// Misfit is the variance by which bottles depart from the model beyond noise; nil:
+	// 0. AlikeNM says how far departures are alike, nm along excitation and emission:
+	// the correlation of two cells falls as exp(−distance/AlikeNM), 0 for none. With τ
+	// the number of cells that then count as one, τ·mean of Misfit·(KᵀK)⁻¹ is added to
+	// the covariance, as merit does it, so that scans close together bring little.
+	// Detection limits have no part of it: it makes a decision doubtful, not lenient.
+	Misfit  []float64
+	AlikeNM [2]float64
 }
 
 // Even is the noise of a detector that is the same everywhere on a grid of so many
@@ -70,6 +79,13 @@ func (p *Problem) dark(i int) float64 {
 		v += (n.Read2[i] + n.Shot[i]*water) / float64(n.Blanks)
 	}
 	return v
+}
+
+func (p *Problem) misfit(i int) float64 {
+	if p.Noise.Misfit == nil || !(p.Noise.Misfit[i] > 0) {
+		return 0
+	}
+	return p.Noise.Misfit[i]
 }
 
 func (p *Problem) light(i int) float64 { return p.factor(i) * p.Noise.Shot[i] }
@@ -107,7 +123,7 @@ func (w Window) has(k int) bool {
 func (p *Problem) check() error {
 	f, cells := p.Set.Len(), p.Set.Grid.Cells()
 	if len(p.Level) != f || p.Want != nil && len(p.Want) != f || len(p.Noise.Read2) != cells || len(p.Noise.Shot) != cells ||
-		p.Noise.Water != nil && len(p.Noise.Water) != cells || p.Factor != nil && len(p.Factor) != cells {
+		p.Noise.Water != nil && len(p.Noise.Water) != cells || p.Noise.Misfit != nil && len(p.Noise.Misfit) != cells || p.Factor != nil && len(p.Factor) != cells {
 		panic("plan: levels, noise and factors do not have the lengths of the set")
 	}
 	if err := p.Set.Check(); err != nil {

@@ -164,7 +164,7 @@ func (w *worker) bestMore(lines []int) (line int, cost float64) {
 		if slices.Contains(lines, j) {
 			continue
 		}
-		if c := w.with(gram, noise, j); c < cost {
+		if c := w.with(lines, gram, noise, j); c < cost {
 			line, cost = j, c
 		}
 	}
@@ -259,7 +259,7 @@ type tree struct {
 	free        []int
 	must        []int
 	sumG, sumN  [][]float64 // by depth
-	lines, best []int
+	lines, best []int       // lines: those that must be in it, then one a depth
 	least       float64
 }
 
@@ -269,7 +269,7 @@ func (d *Design) tree(n int, free, must []int) *tree {
 	for range t.n + 1 {
 		t.sumG, t.sumN = append(t.sumG, slices.Clone(t.gram)), append(t.sumN, slices.Clone(t.noise))
 	}
-	t.lines = make([]int, t.n)
+	t.lines = append(slices.Clone(must), make([]int, t.n)...)
 	return t
 }
 
@@ -284,10 +284,11 @@ func (t *tree) from(first int) ([]int, float64) {
 func (t *tree) walk(depth, lo, hi int) {
 	for i := lo; i < hi; i++ {
 		j := t.free[i]
-		t.lines[depth] = j
+		at := len(t.must) + depth
+		t.lines[at] = j
 		if depth+1 == t.n {
-			if c := t.with(t.sumG[depth], t.sumN[depth], j); c < t.least {
-				t.least, t.best = c, sorted(append(slices.Clone(t.must), t.lines...))
+			if c := t.with(t.lines[:at], t.sumG[depth], t.sumN[depth], j); c < t.least {
+				t.least, t.best = c, sorted(t.lines)
 			}
 			continue
 		}

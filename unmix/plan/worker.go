@@ -22,11 +22,12 @@ type worker struct {
 	gram, noise []float64 // sums over the choice
 	norm        []float64 // lengths of the columns
 	l, inverse  []float64
+	together    float64 // see Design.together
 }
 
 func (d *Design) worker() *worker {
 	nn := d.n * d.n
-	return &worker{d: d, gram: make([]float64, nn), noise: make([]float64, nn), norm: make([]float64, d.n), l: make([]float64, nn), inverse: make([]float64, nn)}
+	return &worker{d: d, gram: make([]float64, nn), noise: make([]float64, nn+2), norm: make([]float64, d.n), l: make([]float64, nn), inverse: make([]float64, nn)}
 }
 
 // set makes the sums those of lines.
@@ -36,6 +37,7 @@ func (w *worker) set(lines []int) {
 	for _, j := range lines {
 		w.add(j)
 	}
+	w.together = w.d.together(lines, -1, w.noise[len(w.noise)-1])
 }
 
 func (w *worker) add(j int) {
@@ -45,11 +47,12 @@ func (w *worker) add(j int) {
 	}
 }
 
-// with returns the cost of the sums base and one line more.
-func (w *worker) with(gram, noise []float64, j int) float64 {
+// with returns the cost of lines, whose sums are given, and one line more.
+func (w *worker) with(lines []int, gram, noise []float64, j int) float64 {
 	s := &w.d.lines[j]
 	floats.AddTo(w.gram, gram, s.gram)
 	floats.AddTo(w.noise, noise, s.noise)
+	w.together = w.d.together(lines, j, w.noise[len(w.noise)-1])
 	return w.cost()
 }
 
@@ -62,7 +65,7 @@ func (w *worker) cost() float64 {
 	sum, worst, count := 0.0, 0.0, 0.0
 	for f, want := range w.d.want {
 		if want {
-			v := w.variance(f, w.noise)
+			v := w.total(f)
 			sum, worst, count = sum+v, math.Max(worst, v), count+1
 		}
 	}
@@ -139,6 +142,12 @@ func (w *worker) invert() {
 			w.inverse[f*n+h], w.inverse[h*n+f] = v, v
 		}
 	}
+}
+
+// total is the variance of component f.
+func (w *worker) total(f int) float64 {
+	nn := w.d.n * w.d.n
+	return w.variance(f, w.noise) + w.together*w.noise[nn]/w.noise[nn+1]*w.inverse[f*w.d.n+f]
 }
 
 // variance is entry (f, f) of (KᵀK)⁻¹ m (KᵀK)⁻¹.
