@@ -49,6 +49,10 @@ type Set struct {
 	Origin     string   // where the components come from, in words
 	Components []Component
 	Mask       []bool // J × K: cells of the mixing model; nil means all
+
+	// Errors are what is known of the errors of spectra that come from a model file,
+	// in the place of the components' ExU and EmU; nil means nobody knows.
+	Errors []SpectraError
 }
 
 // Len returns the number of components.

@@ -233,9 +233,12 @@ type Model struct {
 	// Instrument is how well the measurements behind the model repeat themselves; it
 	// stands in for what a new batch is too small to tell. nil: unknown.
 	Instrument *Instrument `json:"instrument,omitempty"`
-	Authors    []string    `json:"authors"`
-	Citation   string      `json:"citation"`
-	Licence    string      `json:"licence"`
+	// Errors are those of the spectra as contributions see them; files of former
+	// versions lack them.
+	Errors   []SpectraError `json:"spectra_errors,omitempty"`
+	Authors  []string       `json:"authors"`
+	Citation string         `json:"citation"`
+	Licence  string         `json:"licence"`
 }
 
 // Instrument is the noise of a detector and the repeatability of a measurement.
@@ -258,6 +261,8 @@ type ModelComponent struct {
 	Surface    []*float64 `json:"surface,omitempty"`
 	Highest    float64    `json:"highest_standard,omitempty"`
 	Levels     int        `json:"levels,omitempty"`
+	ExU        []*float64 `json:"excitation_standard_uncertainty,omitempty"`
+	EmU        []*float64 `json:"emission_standard_uncertainty,omitempty"`
 }
 
 // NewModel freezes a set.
@@ -266,17 +271,19 @@ func NewModel(s *Set, title string) *Model {
 		Cells: []int{}, Samples: []string{}, Corrections: []string{}, Authors: []string{}}
 	for _, c := range s.Components {
 		m.Components = append(m.Components, ModelComponent{Name: c.Name, AmountUnit: c.AmountUnit, Scale: c.Scale,
-			Ex: toNull(c.Ex), Em: toNull(c.Em), Surface: toNull(c.Surface), Highest: c.Highest, Levels: c.Levels})
+			Ex: toNull(c.Ex), Em: toNull(c.Em), Surface: toNull(c.Surface), Highest: c.Highest, Levels: c.Levels,
+			ExU: toNull(c.ExU), EmU: toNull(c.EmU)})
 	}
 	return m
 }
 
 // Set returns the components of a model, on the cells that its fit used.
 func (m *Model) Set() *Set {
-	s := &Set{Grid: m.Grid, Unit: m.Unit, Method: "model", Origin: m.Title}
+	s := &Set{Grid: m.Grid, Unit: m.Unit, Method: "model", Origin: m.Title, Errors: m.Errors}
 	for _, c := range m.Components {
 		s.Components = append(s.Components, Component{Name: c.Name, AmountUnit: c.AmountUnit, Scale: c.Scale,
-			Ex: fromNull(c.Ex), Em: fromNull(c.Em), Surface: fromNull(c.Surface), Highest: c.Highest, Levels: c.Levels})
+			Ex: fromNull(c.Ex), Em: fromNull(c.Em), Surface: fromNull(c.Surface), Highest: c.Highest, Levels: c.Levels,
+			ExU: fromNull(c.ExU), EmU: fromNull(c.EmU)})
 	}
 	if len(m.Cells) > 0 {
 		s.Mask = make([]bool, m.Grid.Cells())
@@ -308,6 +315,14 @@ func ParseModel(name string, data []byte) (*Model, error) {
 	for _, c := range m.Components {
 		if len(c.Ex) != nj || len(c.Em) != nk || (c.Surface != nil && len(c.Surface) != nj*nk) {
 			return nil, fmt.Errorf("%s: component %q does not have the length of the grid (%s)", name, c.Name, m.Grid)
+		}
+		if (c.ExU != nil && len(c.ExU) != nj) || (c.EmU != nil && len(c.EmU) != nk) {
+			return nil, fmt.Errorf("%s: the uncertainties of component %q do not have the length of the grid (%s)", name, c.Name, m.Grid)
+		}
+	}
+	for _, e := range m.Errors {
+		if err := e.check(len(m.Components)); err != nil {
+			return nil, fmt.Errorf("%s: %w", name, err)
 		}
 	}
 	if l := m.Likeness; l != nil {

@@ -111,6 +111,10 @@ func (j *job) applyPart() error {
 	}
 	set := j.applied.Set()
 	set.Origin = j.appliedName
+	if set.Errors == nil {
+		j.flags = append(j.flags, j.sv.Accept(eem.NewFlag(eem.Flag{Method: "model", Test: "model-parts", Severity: eem.Remark, Value: nan, Limit: nan,
+			Msg: j.appliedName + " does not say how sure its spectra are, so that the uncertainties lack them; make the model again with this version"})))
+	}
 	return j.resolveWith(set, "model", j.likeness)
 }
 

@@ -1,7 +1,9 @@
 package main
 
 import (
+	"math"
 	"path/filepath"
+	"regexp"
 	"slices"
 	"strings"
 	"testing"
@@ -59,6 +61,42 @@ func TestApply(t *testing.T) {
 	r := call("compare", model, filepath.Join(all, "out", "model.json")).want(t, exitDone)
 	if n := strings.Count(r.out, "the same"); n != 5 {
 		t.Errorf("a model against itself:\n%s", r.out)
+	}
+}
+
+// What the model's spectra are unsure by is in the budget of a bottle scored on them,
+// which is as sure as it was when the model was made; a file of a former version has
+// no word of it, and that is told.
+func TestApplyBudget(t *testing.T) {
+	heavy(t)
+	model := model5(t)
+	dir := demoFolder(t, nil)
+	call("apply", model, dir, "--pictures=false").want(t, exitDoubt)
+	made, now := filepath.Join(filepath.Dir(model)), filepath.Join(dir, "out")
+	budgetAddsUp(t, table(t, now, "budget.csv"), table(t, now, "contributions.csv"))
+	was, is := table(t, made, "contributions.csv"), table(t, now, "contributions.csv")
+	for _, c := range []string{"C1", "C2", "C3", "C4", "C5"} {
+		load := number(t, cell(t, table(t, now, "budget.csv"), "standard_uncertainty", "id", "W105", "component", c, "cause", "loadings"))
+		before := number(t, cell(t, table(t, made, "budget.csv"), "standard_uncertainty", "id", "W105", "component", c, "method", "parafac", "cause", "loadings"))
+		if math.Abs(load/before-1) > 0.05 { // the shifts stand for all cells, a bottle lacks some
+			t.Errorf("%s: loadings %g, when the model was made %g", c, load, before)
+		}
+		a, b := number(t, cell(t, was, "standard_uncertainty", "id", "W105", "component", c, "method", "parafac")), number(t, cell(t, is, "standard_uncertainty", "id", "W105", "component", c))
+		if math.Abs(b/a-1) > 0.05 {
+			t.Errorf("%s: ± %g, when the model was made ± %g", c, b, a)
+		}
+	}
+	old := regexp.MustCompile(`(?s)"spectra_errors": \[.*?\n  \],\n`).ReplaceAllString(read(t, model), "")
+	old = regexp.MustCompile(`(?s),\s*"(excitation|emission)_standard_uncertainty": \[.*?\]`).ReplaceAllString(old, "")
+	put(t, dir, "old.json", old)
+	call("apply", filepath.Join(dir, "old.json"), dir, "--pictures=false").want(t, exitDoubt)
+	if s := cell(t, table(t, now, "budget.csv"), "source", "id", "W105", "component", "C1", "cause", "loadings"); s != "not given" {
+		t.Errorf("a file of a former version: source of the loadings %q", s)
+	}
+	cell(t, table(t, now, "flags.csv"), "message", "test", "model-parts")
+	put(t, dir, "bad.json", strings.Replace(read(t, model), `"shifts": [`, `"shifts": [ [1],`, 1))
+	if r := call("apply", filepath.Join(dir, "bad.json"), dir).want(t, exitFailed); !strings.Contains(r.err, "loadings") {
+		t.Errorf("a shift of another length: %s", r.err)
 	}
 }
 

@@ -67,6 +67,7 @@ type job struct {
 	row    map[*prepare.Bottle]int // bottle → row of the cube
 	res    []*unmix.Resolution     // one a method
 	judge  []*merit.Judged         // beside res
+	src    []*merit.Sources        // beside res: the errors behind them
 	lines  []unmix.Line            // of the references
 	refs   *merit.References       // how they came from standards; nil when they did not
 	limits map[string]merit.Limits // the laboratory's own, by component
@@ -373,6 +374,7 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 	}
 	j.res = append(j.res, r)
 	j.judge = append(j.judge, judged)
+	j.src = append(j.src, src)
 	j.qualify(len(j.res) - 1)
 	return nil
 }

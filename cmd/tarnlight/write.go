@@ -14,6 +14,7 @@ import (
 	"tarnlight/eem/prepare"
 	"tarnlight/eem/survey"
 	"tarnlight/unmix"
+	"tarnlight/unmix/merit"
 	"tarnlight/unmix/outdir"
 	"tarnlight/unmix/report"
 )
@@ -131,6 +132,7 @@ func (j *job) writeModel(path string) error {
 		}
 	}
 	j.describe(m, r)
+	m.Errors = merit.SpectraErrors(j.cube, r, j.src[len(j.src)-1], m.Cells)
 	return writeJSON(path, m)
 }
 

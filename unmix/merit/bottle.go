@@ -24,6 +24,27 @@ func (e *engine) worker() *worker { return &worker{e: e, r: make([]float64, e.c.
 type source struct {
 	Term
 	at func(dst, x []float64)
+	// What at was made of, where it is linear in the amounts: independent effects
+	// [h][g], or their products summed (see mask).
+	effects [][]float64
+	tensor  []float64
+}
+
+// linear is a source of independent errors, each of which changes K'(δb − Σ x δK) by
+// its effect times x.
+func linear(effects [][]float64, n int) func(dst, x []float64) {
+	return func(dst, x []float64) {
+		v := make([]float64, n)
+		for _, effect := range effects {
+			for h := range n {
+				v[h] = 0
+				for g, y := range x {
+					v[h] += effect[h*n+g] * y
+				}
+			}
+			addOuter(dst, v, 1)
+		}
+	}
 }
 
 // bottle is one row on its way.
@@ -81,7 +102,17 @@ func nans(n int) []float64 {
 }
 
 func (b *bottle) add(cause, scope string, df float64, text string, at func(dst, x []float64)) {
-	b.sources = append(b.sources, source{Term{Cause: cause, Scope: scope, DF: df, Source: text}, at})
+	b.sources = append(b.sources, source{Term: Term{Cause: cause, Scope: scope, DF: df, Source: text}, at: at})
+}
+
+func (b *bottle) addLinear(cause, scope string, df float64, text string, effects [][]float64) {
+	b.add(cause, scope, df, text, linear(effects, b.e.n))
+	b.sources[len(b.sources)-1].effects = effects
+}
+
+func (b *bottle) addTensor(cause, scope string, df float64, text string, t []float64) {
+	b.add(cause, scope, df, text, tensor(t, b.e.n))
+	b.sources[len(b.sources)-1].tensor = t
 }
 
 // fixed is a source that does not depend on the amounts.
@@ -249,7 +280,7 @@ func (b *bottle) blanks() {
 			}
 		})
 	} else if b.m.b2 != nil && len(e.blanks) > 0 {
-		b.add("blank", "batch", 0, "noise of the standards' blanks", tensor(b.m.b2, n))
+		b.addTensor("blank", "batch", 0, "noise of the standards' blanks", b.m.b2)
 	}
 	if once, df := b.m.blankScatter(e, key); once != nil {
 		m := slices.Clone(once)
@@ -369,32 +400,33 @@ func (m *mask) scatterOf(e *engine, key string) ([]float64, float64) {
 func (b *bottle) references() {
 	e, n := b.e, b.e.n
 	if b.m.ref != nil {
-		b.add("noise of the standards", "standard", 0, "noise model of the blanks", tensor(b.m.ref, n))
+		b.addTensor("noise of the standards", "standard", 0, "noise model of the blanks", b.m.ref)
 	}
 	b.scatter()
 	if b.m.apart != nil {
-		b.add("absorbance noise of the standards", "standard", 0, "roughness of the absorbance spectrum", tensor(b.m.apart, n))
+		b.addTensor("absorbance noise of the standards", "standard", 0, "roughness of the absorbance spectrum", b.m.apart)
 	}
 	if b.m.load != nil {
 		text := "uncertainty of the given spectra"
 		if e.src.Loadings != nil {
 			text = "infinitesimal jackknife over the bottles of the model"
 		}
-		b.add("loadings", "survey", 0, text, tensor(b.m.load, n))
+		b.addTensor("loadings", "survey", 0, text, b.m.load)
 	}
+	b.frozen()
 	if e.src.StockMissing {
 		b.silent = append(b.silent, Term{Cause: "standards", Scope: "survey", Source: "not given"})
 	}
 	if e.src.Stock > 0 {
-		b.add("standards", "survey", 0, "settings: uncertainty", func(dst, x []float64) {
-			for g, y := range x {
-				col := make([]float64, n)
-				for h := range n {
-					col[h] = b.m.gram[h*n+g]
-				}
-				addOuter(dst, col, e.src.Stock*e.src.Stock*y*y)
+		var effects [][]float64
+		for g := range n {
+			effect := make([]float64, n*n)
+			for h := range n {
+				effect[h*n+g] = b.m.gram[h*n+g] * e.src.Stock
 			}
-		})
+			effects = append(effects, effect)
+		}
+		b.addLinear("standards", "survey", 0, "settings: uncertainty", effects)
 	}
 }
 
@@ -406,23 +438,13 @@ func (b *bottle) shared() {
 	e, n := b.e, b.e.n
 	group := map[string]int{}
 	add := func(name, scope string, df float64, text string, effect []float64) {
-		at := func(dst, x []float64) { // effect is [h][g]
-			v := make([]float64, n)
-			for h := range n {
-				for g, y := range x {
-					v[h] += effect[h*n+g] * y
-				}
-			}
-			addOuter(dst, v, 1)
-		}
-		g, ok := group[name]
-		if !ok {
+		if _, ok := group[name]; !ok {
 			group[name] = len(b.sources)
-			b.add(name, scope, df, text, at)
-			return
+			b.add(name, scope, df, text, nil)
 		}
-		before := b.sources[g].at
-		b.sources[g].at = func(dst, x []float64) { before(dst, x); at(dst, x) }
+		own := &b.sources[group[name]]
+		own.effects = append(own.effects, effect)
+		own.at = linear(own.effects, n)
 	}
 	done := map[int]bool{}
 	for _, c := range e.causesOf(b.i) {
@@ -453,7 +475,7 @@ func (b *bottle) shared() {
 		effect := make([]float64, n*n)
 		axpy(-1, b.m.q[z], effect)
 		if c.scope == eem.OfBottle {
-			add(c.name+" of the standards", "standard", c.df, c.source, effect)
+			add(c.name+ofStandards, "standard", c.df, c.source, effect)
 		} else {
 			add(c.name, scopes[c.scope], c.df, c.source, effect)
 		}

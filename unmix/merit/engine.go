@@ -148,7 +148,7 @@ func newEngine(c *eem.Cube, r *unmix.Resolution, src *Sources) *engine {
 }
 
 func (e *engine) causesOf(row int) []eem.Cause {
-	if e.src.Causes == nil {
+	if e.src.Causes == nil || row == nobody {
 		return nil
 	}
 	return e.src.Causes[row]
@@ -163,14 +163,14 @@ func (e *engine) placeOf(c eem.Cause) int {
 }
 
 func (e *engine) blankSet(row int) string {
-	if e.src.BlankSet == nil {
+	if e.src.BlankSet == nil || row == nobody {
 		return ""
 	}
 	return e.src.BlankSet[row]
 }
 
 func (e *engine) factor(row int) float64 {
-	if e.src.Factor == nil {
+	if e.src.Factor == nil || row == nobody {
 		return 1
 	}
 	return e.src.Factor[row]
@@ -559,7 +559,7 @@ func addTensor(t, y []float64, n int) {
 
 // hasLoadingU says whether components that were given bring uncertainties.
 func (e *engine) hasLoadingU() bool {
-	if e.src.Loadings != nil {
+	if e.src.Loadings != nil || e.r.Set.Errors != nil {
 		return false
 	}
 	for _, c := range e.r.Set.Components {

@@ -297,7 +297,7 @@ func (b *bottle) scatter() {
 	}
 	b.repeats = len(b.e.groups) > 0 && slices.ContainsFunc(b.e.causesOf(b.i), unknownRepeat)
 	for t, s := range b.e.groups {
-		b.add(CauseScatter, "standard", s.DF, s.Source, tensor(b.m.scatter[t], b.e.n))
+		b.addTensor(CauseScatter, "standard", s.DF, s.Source, b.m.scatter[t])
 		if b.repeats {
 			b.add(CauseRepeat, "bottle", s.DF, "no blanks or duplicates tell it; "+s.Source, b.repeatLike(t))
 		}
