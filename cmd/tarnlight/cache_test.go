@@ -140,7 +140,7 @@ func TestCache(t *testing.T) {
 	again2("rows moved", "23 unchanged bottles")
 
 	settings := read(t, dir, "survey.toml")
-	put(t, dir, "survey.toml", settings+"\n[quality]\naccept = { no-absorbance = \"known\", absorbance-limit = \"known\" }\n[report]\ndigits = 3\n")
+	put(t, dir, "survey.toml", strings.Replace(settings, "[report]\n", "[report]\ndigits = 3\n", 1)+"\n[quality]\naccept = { no-absorbance = \"known\", absorbance-limit = \"known\" }\n")
 	again2("doubts accepted", "23 unchanged bottles")
 	put(t, dir, "survey.toml", strings.Replace(settings, "offset = 60", "offset = 59", 1))
 	again2("another offset", "")

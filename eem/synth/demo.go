@@ -23,6 +23,7 @@ func Demo(seed uint64) *Survey {
 			Instrument: NewInstrument(),
 			Photometer: NewPhotometer(),
 			Components: []*Fluorophore{tryptophan, peat, algal, brightener, pyrene},
+			Settings:   demoReport,
 		},
 	}
 	for day := 1; day <= 3; day++ {
@@ -31,6 +32,15 @@ func Demo(seed uint64) *Survey {
 	d.s.Planted = planted()
 	return d.s
 }
+
+// demoReport is what stands at the head of the demo's workbook.
+const demoReport = `[report]
+client = "Brackle Rivers Board (invented)"
+order = "BRB-31/07"
+number = "R-2031-018"
+method = "EEM fluorescence, house method F-12"
+remarks = "Bottles were kept dark and cold and scanned on the day after sampling."
+`
 
 // demo builds the survey in the order of measurement.
 type demo struct {
