@@ -2,7 +2,6 @@ package main
 
 import (
 	"context"
-	"errors"
 	"fmt"
 	"path/filepath"
 	"strings"
@@ -162,14 +161,6 @@ func (b *beginning) print(bottles []*drafted) error {
 		t.add(d.id, string(d.kind), d.scans, fmt.Sprint(len(d.files)), d.absorbance)
 	}
 	return t.print(b.streams.out)
-}
-
-// interrupted is the error of a run that was told to stop before it wrote.
-func interrupted(ctx context.Context) error {
-	if err := ctx.Err(); err != nil {
-		return errors.Join(err, errors.New("nothing was written"))
-	}
-	return nil
 }
 
 // own says whether a file of a survey folder is none of its raw files by name.

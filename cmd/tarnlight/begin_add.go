@@ -82,7 +82,7 @@ func (b *beginning) addHeld(ctx context.Context) error {
 	bottles = b.withCells(b.settled(bottles, serve))
 	bottles = b.withoutConc(b.distinct(bottles, p.sheet, claims))
 	b.tellLeft(files, serve)
-	if err := interrupted(ctx); err != nil {
+	if err := ctx.Err(); err != nil {
 		return err
 	}
 	if len(bottles) > 0 {

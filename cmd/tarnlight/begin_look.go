@@ -36,7 +36,7 @@ func (b *beginning) lookAround(ctx context.Context, claims map[string]*survey.Ro
 	}
 	out := make([]found, 0, len(paths))
 	for i, p := range paths {
-		if err := interrupted(ctx); err != nil {
+		if err := ctx.Err(); err != nil {
 			return nil, err
 		}
 		f := found{path: b.rel(p)}
@@ -75,7 +75,7 @@ func (b *beginning) list(claims map[string]*survey.Row) ([]string, error) {
 		name := d.Name()
 		switch {
 		case d.IsDir() && p != b.root && (strings.HasPrefix(name, ".") || name == "out" || strings.HasPrefix(name, "out.") ||
-			strings.HasSuffix(name, ".work") || isResults(p)):
+			strings.HasSuffix(name, ".work") || strings.HasSuffix(name, ".cache") || isResults(p)):
 			return filepath.SkipDir
 		case !d.Type().IsRegular() || strings.HasPrefix(name, ".") || strings.HasPrefix(name, "~$"):
 			return nil

@@ -35,6 +35,10 @@ type streams struct {
 
 func main() {
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
+	// The first signal asks the work to stop, the second ends the program as if
+	// nobody had listened. A swap of results that was cut off is put in order by the
+	// next run.
+	context.AfterFunc(ctx, stop)
 	code := run(ctx, streams{in: os.Stdin, out: os.Stdout, err: os.Stderr}, os.Args[1:])
 	stop()
 	os.Exit(code)
@@ -60,6 +64,9 @@ func misuse(format string, a ...any) error {
 	return &codeError{code: exitMisuse, err: fmt.Errorf(format, a...)}
 }
 
+// interrupted is what a run says that a signal stopped.
+const interrupted = "interrupted; older results are as they were"
+
 // run is the whole program: errors become exit codes here and nowhere else.
 func run(ctx context.Context, s streams, args []string) int {
 	root := newRoot(s)
@@ -79,14 +86,23 @@ func run(ctx context.Context, s streams, args []string) int {
 		return code.code
 	}
 	if errors.Is(err, context.Canceled) {
-		fmt.Fprintln(s.err, "tarnlight: interrupted; older results are as they were")
+		fmt.Fprintln(s.err, "tarnlight:", interrupted)
 		return exitFailed
 	}
 	if isClosedPipe(err) {
 		return exitDone
 	}
 	fmt.Fprintf(s.err, "tarnlight: %v\n", err)
+	if isFull(err) {
+		fmt.Fprintln(s.err, "the disk is full, and what is there was left as it was; make room, or put the results elsewhere with --out")
+	}
 	return exitFailed
+}
+
+// isFull says whether there was no room to write: on the disk, within the quota, or
+// below the limit of a file's size.
+func isFull(err error) bool {
+	return errors.Is(err, syscall.ENOSPC) || errors.Is(err, syscall.EDQUOT) || errors.Is(err, syscall.EFBIG)
 }
 
 func isClosedPipe(err error) bool { return errors.Is(err, syscall.EPIPE) }

@@ -2,6 +2,7 @@ package main
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"path/filepath"
 
@@ -59,7 +60,11 @@ func runJob(ctx context.Context, s streams, o jobOptions) error {
 	j, err := o.execute(ctx, s)
 	if err != nil {
 		if o.json {
-			if told := emit(s, failedEvent{"failed", err.Error()}); told != nil {
+			why := err.Error()
+			if errors.Is(err, context.Canceled) {
+				why = interrupted
+			}
+			if told := emit(s, failedEvent{"failed", why}); told != nil {
 				return told
 			}
 		}
