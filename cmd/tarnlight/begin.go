@@ -125,6 +125,11 @@ func (b *beginning) draft(ctx context.Context) error {
 	} else {
 		bottles = b.distinct(bottles, &survey.Sheet{}, nil)
 	}
+	for _, f := range files {
+		if f.guess.Content == scanfile.Unknown && !b.spoilt[f.path] {
+			b.leave(f.path, f.guess.Why)
+		}
+	}
 	if len(bottles) == 0 {
 		return fmt.Errorf("%s: no file below it looks like a scan%s (%d looked at); put the exported scans there, or state their form in survey.toml",
 			b.root, map[bool]string{true: " whose name follows " + b.name}[b.name != ""], len(files))
@@ -140,11 +145,6 @@ func (b *beginning) draft(ctx context.Context) error {
 	}
 	if err := b.print(bottles); err != nil {
 		return err
-	}
-	for _, f := range files {
-		if f.guess.Content == scanfile.Unknown && !b.spoilt[f.path] {
-			b.leave(f.path, f.guess.Why)
-		}
 	}
 	fmt.Fprintf(b.bar, "drafted: %s\n", name)
 	if proposed != "" {
