@@ -2,6 +2,7 @@ package scanfile
 
 import (
 	"bytes"
+	"errors"
 	"fmt"
 	"io"
 	"slices"
@@ -22,7 +23,7 @@ func load(path string, buf []byte) ([]byte, error) {
 	if err != nil {
 		return nil, err // names the path
 	}
-	defer f.Close()
+	defer f.Close() //nolint:errcheck // only read
 	switch {
 	case mode.IsDir():
 		return nil, fmt.Errorf("%s: is a folder; name a file", path)
@@ -37,7 +38,7 @@ func load(path string, buf []byte) ([]byte, error) {
 	for {
 		n, err := f.Read(data[len(data):cap(data)])
 		data = data[:len(data)+n]
-		if err == io.EOF || err == nil && int64(len(data)) == size && len(data) < cap(data) {
+		if errors.Is(err, io.EOF) || err == nil && int64(len(data)) == size && len(data) < cap(data) {
 			return data, nil
 		}
 		if err != nil {

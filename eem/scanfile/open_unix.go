@@ -25,7 +25,7 @@ func openFile(path string) (f *file, mode fs.FileMode, size int64, err error) {
 	}
 	var s syscall.Stat_t
 	if err := syscall.Fstat(f.fd, &s); err != nil {
-		f.Close()
+		f.Close() //nolint:errcheck // nothing was read
 		return nil, 0, 0, &fs.PathError{Op: "stat", Path: path, Err: err}
 	}
 	switch s.Mode & syscall.S_IFMT {
