@@ -215,15 +215,15 @@ const ModelVersion = 1
 // Model is a fitted model with everything that scoring a new bottle needs: the
 // file model.json.
 type Model struct {
-	Version    int              `json:"version"`
-	Method     string           `json:"method"`
-	Title      string           `json:"title"`
-	Unit       eem.Unit         `json:"unit"`
-	Grid       eem.Grid         `json:"grid"`
-	Components []ModelComponent `json:"components"`
-	Cells      []int            `json:"cells"` // indices ex·K + em of the cells that the fit used
-	Samples    []string         `json:"samples"`
-	Explained  *float64         `json:"explained_percent"`
+	Version    int             `json:"version"`
+	Method     string          `json:"method"`
+	Title      string          `json:"title"`
+	Unit       eem.Unit        `json:"unit"`
+	Grid       eem.Grid        `json:"grid"`
+	Components modelComponents `json:"components"`
+	Cells      []int           `json:"cells"` // indices ex·K + em of the cells that the fit used
+	Samples    []string        `json:"samples"`
+	Explained  *float64        `json:"explained_percent"`
 	// Corrections are the steps that were done to the intensities, and Settings
 	// (TOML) the settings in force: bands, scale and limits that a new bottle is
 	// treated with, whatever its own survey says.
@@ -311,38 +311,8 @@ func ParseModel(name string, data []byte) (*Model, error) {
 	case m.Version > ModelVersion:
 		return nil, fmt.Errorf("%s: model file of version %d; this program reads up to %d: update it", name, m.Version, ModelVersion)
 	}
-	nj, nk := m.Grid.Ex.Len(), m.Grid.Em.Len()
-	for _, c := range m.Components {
-		if len(c.Ex) != nj || len(c.Em) != nk || (c.Surface != nil && len(c.Surface) != nj*nk) {
-			return nil, fmt.Errorf("%s: component %q does not have the length of the grid (%s)", name, c.Name, m.Grid)
-		}
-		if (c.ExU != nil && len(c.ExU) != nj) || (c.EmU != nil && len(c.EmU) != nk) {
-			return nil, fmt.Errorf("%s: the uncertainties of component %q do not have the length of the grid (%s)", name, c.Name, m.Grid)
-		}
-	}
-	for _, e := range m.Errors {
-		if err := e.check(len(m.Components)); err != nil {
-			return nil, fmt.Errorf("%s: %w", name, err)
-		}
-	}
-	if l := m.Likeness; l != nil {
-		n := len(m.Components)
-		if len(l.Mean) != n || len(l.Floor) != n || len(l.Inverse) != n {
-			return nil, fmt.Errorf("%s: likeness does not have the length of the components (%d)", name, n)
-		}
-		for _, row := range l.Inverse {
-			if len(row) != n {
-				return nil, fmt.Errorf("%s: likeness does not have the length of the components (%d)", name, n)
-			}
-		}
-	}
-	if in := m.Instrument; in != nil && min(in.ReadNoise, in.ShotNoise, in.Repeat, in.RepeatDF) < 0 {
-		return nil, fmt.Errorf("%s: the noise or repeatability of the instrument is negative", name)
-	}
-	for _, i := range m.Cells {
-		if i < 0 || i >= nj*nk {
-			return nil, fmt.Errorf("%s: cell %d lies outside the grid (%s)", name, i, m.Grid)
-		}
+	if err := m.check(); err != nil {
+		return nil, fmt.Errorf("%s: %w; take the file as the program wrote it", name, err)
 	}
 	return m, nil
 }

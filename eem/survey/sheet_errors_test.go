@@ -189,7 +189,12 @@ func FuzzSheetCSV(f *testing.F) {
 		f.Add([]byte(s))
 	}
 	f.Fuzz(func(t *testing.T, data []byte) {
-		s, err := readTable("runsheet.csv", data)
+		var s *Sheet
+		var err error
+		// A wide header makes every short row as wide: see scanfile.FuzzTableCSV.
+		head, _, _ := bytes.Cut(data, []byte("\n"))
+		wide := (1 + bytes.Count(data, []byte("\n"))) * bytes.Count(head, []byte(",")) * 16
+		bounded(t, len(data)+wide, func() { s, err = readTable("runsheet.csv", data) })
 		if err != nil {
 			if !strings.Contains(err.Error(), "runsheet.csv") {
 				t.Fatalf("the message does not name the file: %v", err)
