@@ -6,9 +6,6 @@ import (
 	"fmt"
 	"os"
 	"path/filepath"
-	"slices"
-	"strconv"
-	"strings"
 
 	"github.com/spf13/cobra"
 
@@ -226,60 +223,4 @@ func (o planOptions) writeFiles(s streams, r *planResult) error {
 	}
 	fmt.Fprintf(s.err, "pictures: %s\n", filepath.Join(o.figures, "plan-lines.png"))
 	return nil
-}
-
-// amounts reads NAME=AMOUNT, several times.
-func amounts(flag string, given, names []string) (map[string]float64, error) {
-	out := map[string]float64{}
-	for _, g := range given {
-		name, value, ok := cutLast(g, "=")
-		v, err := strconv.ParseFloat(strings.TrimSpace(value), 64)
-		if !ok || err != nil || !(v > 0) || v > 1e300 {
-			return nil, misuse("%s %q; write NAME=AMOUNT with an amount above 0", flag, g)
-		}
-		if err := known(flag, name, names); err != nil {
-			return nil, err
-		}
-		out[name] = v
-	}
-	return out, nil
-}
-
-// cutLast cuts at the last separator: names may hold one.
-func cutLast(s, sep string) (before, after string, ok bool) {
-	i := strings.LastIndex(s, sep)
-	if i < 0 {
-		return s, "", false
-	}
-	return s[:i], s[i+len(sep):], true
-}
-
-func known(flag, name string, names []string) error {
-	if slices.Contains(names, name) {
-		return nil
-	}
-	return misuse("%s: there is no component %q; %s", flag, name, meant(name, names))
-}
-
-// span reads FROM:TO[:STEP]; step is 0 where it is not given or not allowed.
-func span(flag, text string, withStep bool) (from, to, step float64, err error) {
-	parts := strings.Split(text, ":")
-	v := make([]float64, 3)
-	bad := len(parts) < 2 || len(parts) > 3 || len(parts) == 3 && !withStep
-	for i, p := range parts {
-		if bad {
-			break
-		}
-		x, perr := strconv.ParseFloat(strings.TrimSpace(p), 64)
-		bad = perr != nil || !(x > 0)
-		v[i] = x
-	}
-	if bad || !(v[1] > v[0]) {
-		form := "FROM:TO"
-		if withStep {
-			form = "FROM:TO[:STEP]"
-		}
-		return 0, 0, 0, misuse("%s %q; write %s in nm, such as 300:550", flag, text, form)
-	}
-	return v[0], v[1], v[2], nil
 }

@@ -1,15 +1,10 @@
 package main
 
 import (
-	"cmp"
 	"context"
-	"errors"
 	"fmt"
 	"math"
 	"path/filepath"
-	"slices"
-	"strconv"
-	"strings"
 
 	"tarnlight/eem"
 	"tarnlight/eem/prepare"
@@ -182,122 +177,4 @@ func oneOfIntensity(set *unmix.Set, f int) float64 {
 		}
 	}
 	return 1 / top
-}
-
-// wishes brings what the flags say of components, interferents and wavelengths.
-func (in *planInput) wishes(o planOptions) error {
-	p, names := &in.problem, in.problem.Set.Names()
-	levels, err := amounts("--level", o.levels, names)
-	if err != nil {
-		return err
-	}
-	p.Want = make([]bool, len(names))
-	if in.levels == "" {
-		in.levels = "one of intensity at each maximum"
-		if len(levels) < len(names) {
-			in.note("nobody said what a typical bottle holds: each component is taken to reach an intensity of 1 at its maximum (--level NAME=AMOUNT)")
-		}
-	}
-	for f, n := range names {
-		if v, ok := levels[n]; ok {
-			p.Level[f] = v
-		}
-		p.Want[f] = !slices.Contains(o.apart, n)
-	}
-	for _, n := range o.apart {
-		if err := known("--apart", n, names); err != nil {
-			return err
-		}
-	}
-	if !slices.Contains(p.Want, true) {
-		return misuse("--apart names all components; leave out those whose value is asked for")
-	}
-	if p.Unknown, err = unknownBands(o.unknown); err != nil {
-		return err
-	}
-	p.WorstCase = o.worst
-	if o.excitation != "" {
-		from, to, _, err := span("--excitation", o.excitation, false)
-		if err != nil {
-			return err
-		}
-		nk := p.Set.Grid.Em.Len()
-		in.leaveOut(func(i int, _ eem.Reason) bool {
-			nm := p.Set.Grid.Ex.At(i / nk)
-			return nm < from || nm > to
-		}, nil)
-	}
-	return in.window(o.emission)
-}
-
-func unknownBands(given []string) ([]plan.Emission, error) {
-	var out []plan.Emission
-	for _, g := range given {
-		at, width, has := strings.Cut(g, ":")
-		e := plan.Emission{WidthNM: 80}
-		var err1, err2 error
-		e.AtNM, err1 = strconv.ParseFloat(at, 64)
-		if has {
-			e.WidthNM, err2 = strconv.ParseFloat(width, 64)
-		}
-		if errors.Join(err1, err2) != nil || !(e.AtNM > 0 && e.WidthNM > 0) {
-			return nil, misuse("--unknown %q; write EMISSION or EMISSION:WIDTH in nm, such as 490:80", g)
-		}
-		out = append(out, e)
-	}
-	return out, nil
-}
-
-// window reads the emission range; a step is the nearest multiple of the grid's.
-func (in *planInput) window(text string) error {
-	if text == "" {
-		return nil
-	}
-	from, to, step, err := span("--emission", text, true)
-	if err != nil {
-		return err
-	}
-	em := in.problem.Set.Grid.Em
-	w := plan.Window{From: -1, Stride: 1}
-	for k := range em.Len() {
-		if nm := em.At(k); nm >= from && nm <= to {
-			if w.From < 0 {
-				w.From = k
-			}
-			w.To = k + 1
-		}
-	}
-	if w.From < 0 || w.To-w.From < 2 {
-		return misuse("--emission %s: the references know emissions of %s", text, em)
-	}
-	if step > 0 {
-		of := (em.At(w.To-1) - em.At(w.From)) / float64(w.To-1-w.From)
-		w.Stride = max(1, int(math.Round(step/of)))
-		if got := float64(w.Stride) * of; math.Abs(got-step) > 0.01*step {
-			in.note("--emission: a step of %g nm on points that are %.4g nm apart becomes %.4g nm", step, of, got)
-		}
-	}
-	in.problem.Window = w
-	return nil
-}
-
-// linesAt finds excitations of the grid.
-func linesAt(ax eem.Axis, nm []float64, usable []int) ([]int, error) {
-	var out []int
-	for _, v := range nm {
-		j, ok := ax.Find(v)
-		if !ok || !slices.Contains(usable, j) {
-			return nil, misuse("--with %g: no excitation of the references that can be used; the nearest is %g nm", v, ax.At(nearestOf(ax, usable, v)))
-		}
-		if !slices.Contains(out, j) {
-			out = append(out, j)
-		}
-	}
-	return out, nil
-}
-
-func nearestOf(ax eem.Axis, lines []int, nm float64) int {
-	return slices.MinFunc(lines, func(a, b int) int {
-		return cmp.Compare(math.Abs(ax.At(a)-nm), math.Abs(ax.At(b)-nm))
-	})
 }

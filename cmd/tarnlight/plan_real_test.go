@@ -128,3 +128,20 @@ func TestPlanCave(t *testing.T) {
 		}
 	}
 }
+
+// One substance at one excitation has one plan: that scan.
+func TestPlanQuinine(t *testing.T) {
+	data := shared(t, "quinine_dilution")
+	sheet := "id,kind,scans,conc:quinine [mg/L]\n"
+	for id, c := range map[string]string{"flu1": "0.05", "flu2": "0.10", "flu4": "0.20", "flu6": "0.30"} {
+		sheet += fmt.Sprintf("%s,standard,%s_ex350.txt,%s\n", id, id, c)
+	}
+	dir := folder(t, map[string]string{"runsheet.csv": sheet, "survey.toml": fmt.Sprintf(aminoSettings, filepath.Join(data, "stacked_scans"))})
+	res := call("plan", dir).want(t, exitDone)
+	t.Log("\n" + res.out + res.err)
+	for _, want := range []string{"1 scan at ex 350 nm", "a quarter of the highest standard"} {
+		if !strings.Contains(res.out+res.err, want) {
+			t.Errorf("lacks %q", want)
+		}
+	}
+}

@@ -148,7 +148,11 @@ func (in *planInput) mixed(d *plan.Design, lines []int) []string {
 		case 1:
 			what = names[0] + " gives no light at these excitations"
 		case 2:
-			what = fmt.Sprintf("%s and %s stay inseparable (their estimates correlate by %.3f, so that run reports their sum)", names[0], names[1], m.Correlation)
+			what = fmt.Sprintf("%s and %s stay inseparable (their estimates correlate by %.3f", names[0], names[1], m.Correlation)
+			if c := in.problem.Set.Components; c[m.Components[0]].AmountUnit == c[m.Components[1]].AmountUnit {
+				what += ", so that run reports their sum"
+			}
+			what += ")"
 		default:
 			what = fmt.Sprintf("%s are mixtures of one another", list(names))
 		}
@@ -257,28 +261,4 @@ func (r *planResult) tellRaman() {
 		return
 	}
 	r.Notes = append(r.Notes, fmt.Sprintf("Raman units come from the blanks' scan at ex %g nm: scan the blanks there too, or plan it in with --with %g", i.ExcitationNM, i.ExcitationNM))
-}
-
-// drawing gathers what the pictures show; scans says whose lines, 0 those of the
-// verdict.
-func (r *planResult) drawing(scans int) (report.PlanDrawing, error) {
-	d := report.PlanDrawing{Set: r.in.problem.Set, Drawn: r.taken}
-	if d.Drawn < 0 {
-		d.Drawn = len(r.Plans) - 1
-	}
-	found := scans == 0
-	for i, p := range append(slices.Clone(r.Plans), r.Full) {
-		if p.Scans == scans && !found {
-			d.Drawn, found = i, true
-		}
-		l := report.PlanLine{Excitations: p.Excitations, Emission: p.Emission, Minutes: p.Minutes, Criterion: 100 * p.prediction.Cost}
-		for f, u := range p.prediction.U {
-			l.Components = append(l.Components, 100*u/r.in.problem.Level[f])
-		}
-		d.Lines = append(d.Lines, l)
-	}
-	if !found {
-		return d, misuse("--draw %d: no plan has so many scans; there are plans of %d to %d", scans, r.Plans[0].Scans, r.Plans[len(r.Plans)-1].Scans)
-	}
-	return d, nil
 }

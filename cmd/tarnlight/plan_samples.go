@@ -156,7 +156,7 @@ func (in *planInput) ownSamples(j *job) error {
 	}
 	set := in.problem.Set
 	in.problem.Level = make([]float64, set.Len())
-	in.levels = "stated"
+	in.levels = "the standards"
 	if p != nil {
 		in.problem.Level = p.levels()
 		in.levels = fmt.Sprintf("median of %d samples", len(p.rows))

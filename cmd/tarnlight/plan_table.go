@@ -3,6 +3,7 @@ package main
 import (
 	"fmt"
 	"io"
+	"slices"
 	"strings"
 
 	"tarnlight/unmix/report"
@@ -110,4 +111,31 @@ func digits3(v *float64) string {
 		return ""
 	}
 	return fmt.Sprintf("%.3g", *v)
+}
+
+// drawing gathers what the pictures show; scans says whose lines, 0 those of the
+// verdict.
+func (r *planResult) drawing(scans int) (report.PlanDrawing, error) {
+	d := report.PlanDrawing{Set: r.in.problem.Set, Drawn: r.taken, Worst: r.in.problem.WorstCase}
+	for _, want := range r.in.problem.Want {
+		d.Apart = append(d.Apart, !want)
+	}
+	if d.Drawn < 0 {
+		d.Drawn = len(r.Plans) - 1
+	}
+	found := scans == 0
+	for i, p := range append(slices.Clone(r.Plans), r.Full) {
+		if p.Scans == scans && !found {
+			d.Drawn, found = i, true
+		}
+		l := report.PlanLine{Excitations: p.Excitations, Emission: p.Emission, Minutes: p.Minutes, Criterion: 100 * p.prediction.Cost}
+		for f, u := range p.prediction.U {
+			l.Components = append(l.Components, 100*u/r.in.problem.Level[f])
+		}
+		d.Lines = append(d.Lines, l)
+	}
+	if !found {
+		return d, misuse("--draw %d: no plan has so many scans; there are plans of %d to %d", scans, r.Plans[0].Scans, r.Plans[len(r.Plans)-1].Scans)
+	}
+	return d, nil
 }

@@ -4,11 +4,8 @@ import (
 	"context"
 	"math"
 	"math/rand/v2"
-	"runtime"
 	"slices"
-	"sync"
 
-	"gonum.org/v1/gonum/floats"
 	"gonum.org/v1/gonum/stat/combin"
 )
 
@@ -200,100 +197,4 @@ func (d *Design) few(n int, s *Settings) bool {
 	}
 	free, k := len(d.use)-len(s.Must), n-len(s.Must)
 	return combin.LogGeneralizedBinomial(float64(free), float64(k)) <= math.Log(float64(most)+0.5)
-}
-
-// exhaustive tries all choices of n lines, those that share their first one on one
-// goroutine.
-func (d *Design) exhaustive(ctx context.Context, n int, s *Settings) ([]int, float64, error) {
-	var free []int
-	for _, j := range d.use {
-		if !slices.Contains(s.Must, j) {
-			free = append(free, j)
-		}
-	}
-	if n == len(s.Must) {
-		w := d.worker()
-		w.set(s.Must)
-		return sorted(s.Must), w.cost(), nil
-	}
-	workers := s.Workers
-	if workers <= 0 {
-		workers = runtime.GOMAXPROCS(0)
-	}
-	type found struct {
-		lines []int
-		cost  float64
-	}
-	results := make([]found, len(free))
-	var wg sync.WaitGroup
-	next := make(chan int)
-	for range workers {
-		wg.Go(func() {
-			t := d.tree(n, free, s.Must)
-			for first := range next {
-				if ctx.Err() == nil {
-					results[first].lines, results[first].cost = t.from(first)
-				}
-			}
-		})
-	}
-	for first := range free {
-		next <- first
-	}
-	close(next)
-	wg.Wait()
-	var best found
-	best.cost = math.Inf(1)
-	for _, r := range results {
-		if r.lines != nil && better(r.cost, r.lines, best.cost, best.lines) {
-			best = r
-		}
-	}
-	return best.lines, best.cost, ctx.Err()
-}
-
-// tree walks over all choices, with the sums of every depth kept.
-type tree struct {
-	*worker
-	n           int
-	free        []int
-	must        []int
-	sumG, sumN  [][]float64 // by depth
-	lines, best []int       // lines: those that must be in it, then one a depth
-	least       float64
-}
-
-func (d *Design) tree(n int, free, must []int) *tree {
-	t := &tree{worker: d.worker(), n: n - len(must), free: free, must: must}
-	t.set(must)
-	for range t.n + 1 {
-		t.sumG, t.sumN = append(t.sumG, slices.Clone(t.gram)), append(t.sumN, slices.Clone(t.noise))
-	}
-	t.lines = append(slices.Clone(must), make([]int, t.n)...)
-	return t
-}
-
-// from returns the best choice whose first free line is number first.
-func (t *tree) from(first int) ([]int, float64) {
-	t.best, t.least = nil, math.Inf(1)
-	t.walk(0, first, first+1)
-	return t.best, t.least
-}
-
-// walk sets the line of a depth to each of free[lo:hi] in turn.
-func (t *tree) walk(depth, lo, hi int) {
-	for i := lo; i < hi; i++ {
-		j := t.free[i]
-		at := len(t.must) + depth
-		t.lines[at] = j
-		if depth+1 == t.n {
-			if c := t.with(t.lines[:at], t.sumG[depth], t.sumN[depth], j); c < t.least {
-				t.least, t.best = c, sorted(t.lines)
-			}
-			continue
-		}
-		floats.AddTo(t.sumG[depth+1], t.sumG[depth], t.d.lines[j].gram)
-		floats.AddTo(t.sumN[depth+1], t.sumN[depth], t.d.lines[j].noise)
-		t.walk(depth+1, i+1, len(t.free))
-	}
 }

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"image/color"
 	"math"
+	"slices"
 
 	"gonum.org/v1/plot"
 	"gonum.org/v1/plot/text"
@@ -18,6 +19,8 @@ import (
 // uncertainties, NaN where scans do not tell the components apart.
 type PlanDrawing struct {
 	Set     *unmix.Set
+	Apart   []bool     // of the set: kept apart, value not asked for; nil: none
+	Worst   bool       // the criterion is the largest of the components, not their root mean square
 	Lines   []PlanLine // by number of scans; the last one is all scans of the grid
 	Drawn   int        // of Lines: whose excitations are drawn over the references
 	Decimal string     // "comma" for a decimal comma
@@ -30,6 +33,14 @@ type PlanLine struct {
 	Minutes     float64
 	Criterion   float64   // percent
 	Components  []float64 // percent, in the order of the set
+}
+
+// criterion names what is made small.
+func (d *PlanDrawing) criterion() string {
+	if d.Worst {
+		return "largest of them"
+	}
+	return "all together"
 }
 
 // PlanFigures writes plan-tradeoff and plan-lines, each as SVG, PNG and CSV, to dir.
@@ -45,7 +56,7 @@ func (n numbers) planTradeOff(d *PlanDrawing) *figure {
 		for f, v := range l.Components {
 			num.Append(len(l.Excitations), l.Minutes, d.Set.Components[f].Name, v)
 		}
-		num.Append(len(l.Excitations), l.Minutes, "all together", l.Criterion)
+		num.Append(len(l.Excitations), l.Minutes, d.criterion(), l.Criterion)
 	}
 	a, b := n.planByScans(d), n.planByMinutes(d)
 	var key []keyEntry
@@ -55,7 +66,7 @@ func (n numbers) planTradeOff(d *PlanDrawing) *figure {
 	}
 	key = append(key, keyEntry{word: "all together", line: &planTogether})
 	f := &figure{name: "plan-tradeoff", numbers: num,
-		caption: "Predicted relative standard uncertainty of each component by number of scans (right end: all scans of the grid), and of all together by instrument time."}
+		caption: "Predicted relative standard uncertainty of each component by number of scans (rings at the right end: all scans of the grid), and the criterion by instrument time; the plan drawn over the references is marked."}
 	return f.panels(2, 72*vg.Millimeter, []*plot.Plot{a, b}, key...)
 }
 
@@ -99,7 +110,7 @@ func (n numbers) planByScans(d *PlanDrawing) *plot.Plot {
 }
 
 func (n numbers) planByMinutes(d *PlanDrawing) *plot.Plot {
-	p := n.newPlot("What more time brings", "Minutes a bottle", "Relative standard uncertainty, all together (%)")
+	p := n.newPlot("What more time brings", "Minutes a bottle", "Relative standard uncertainty, "+d.criterion()+" (%)")
 	l := &curve{style: draw.LineStyle{Color: inkGrey, Width: 0.8}}
 	marks, words := &dots{radius: 2}, &labels{style: textStyle(smallPoints, inkGrey)}
 	for i, line := range d.Lines {
@@ -169,28 +180,33 @@ func (l *labels) Plot(c draw.Canvas, p *plot.Plot) {
 	}
 }
 
+// reference is the surface of component f, NaN where it takes no part.
+func (d *PlanDrawing) reference(f int) []float64 {
+	g := d.Set.Grid
+	v := make([]float64, g.Cells())
+	for j := range g.Ex.Len() {
+		for k := range g.Em.Len() {
+			i := g.Index(j, k)
+			v[i] = math.NaN()
+			if d.Set.Mask == nil || d.Set.Mask[i] {
+				v[i] = d.Set.Components[f].At(g, j, k)
+			}
+		}
+	}
+	return v
+}
+
 // planLines draws the excitations of one plan over the references.
 func (n numbers) planLines(d *PlanDrawing) *figure {
 	g, chosen := d.Set.Grid, d.Lines[d.Drawn]
 	num := &Table{Columns: []string{"component", "excitation_nm", "emission_nm", "reference", "planned"}}
-	planned := map[float64]bool{}
-	for _, nm := range chosen.Excitations {
-		planned[nm] = true
-	}
 	var plots []*plot.Plot
 	for f := range d.Set.Components {
 		c := &d.Set.Components[f]
-		v := make([]float64, g.Cells())
-		for j := range g.Ex.Len() {
-			for k := range g.Em.Len() {
-				i := g.Index(j, k)
-				v[i] = math.NaN()
-				if d.Set.Mask == nil || d.Set.Mask[i] {
-					v[i] = c.At(g, j, k)
-				}
-				em := g.Em.At(k)
-				num.Append(c.Name, g.Ex.At(j), em, v[i], planned[g.Ex.At(j)] && em >= chosen.Emission[0] && em <= chosen.Emission[1])
-			}
+		v := d.reference(f)
+		for i, x := range v {
+			ex, em := g.Ex.At(i/g.Em.Len()), g.Em.At(i%g.Em.Len())
+			num.Append(c.Name, ex, em, x, slices.Contains(chosen.Excitations, ex) && em >= chosen.Emission[0] && em <= chosen.Emission[1])
 		}
 		p := n.newPlot(c.Name, "Emission wavelength (nm)", "Excitation wavelength (nm)")
 		p.Add(&heat{g, v, scale{top: max(topOf(v, 1), math.SmallestNonzeroFloat64)}})
