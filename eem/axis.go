@@ -173,7 +173,7 @@ func (a Axis) String() string {
 	if a.Len() == 0 {
 		return "empty axis"
 	}
-	return fmt.Sprintf("%g–%g nm (%d)", a.First(), a.Last(), a.Len())
+	return fmt.Sprintf("%s–%s nm (%d)", NM(a.First()), NM(a.Last()), a.Len())
 }
 
 // Grid is the pair of axes of an EEM.

@@ -114,5 +114,8 @@ func Count(n int, thing string) string {
 	return fmt.Sprintf("%d %ss", n, thing)
 }
 
-// NM writes a wavelength for a message, to 0.1 nm at most: no instrument is better.
-func NM(nm float64) string { return strconv.FormatFloat(math.Round(10*nm)/10, 'f', -1, 64) }
+// NM writes a wavelength for a message, to 0.01 nm at most: no fluorometer is better.
+func NM(nm float64) string { return strconv.FormatFloat(math.Round(100*nm)/100, 'f', -1, 64) }
+
+// Spot writes a place of the plane for a message: "ex 275 / em 340 nm".
+func Spot(exNM, emNM float64) string { return "ex " + NM(exNM) + " / em " + NM(emNM) + " nm" }

@@ -75,6 +75,8 @@ var Tests = sortTests([]Test{
 	{"chart-rule", Doubt, 20, "points", "a quality variable breaks a rule of its control chart; the rules hold from this many points on, before that plain limits", "rules: Westgard et al. 1981, Clin. Chem. 27, 493 (from memory); 20 points: common practice, no source"},
 	{"applied", Remark, 0, "", "a correction was done to the files before they came here and was not done again", "-"},
 	{"sheet-column", Doubt, 0, "", "a column of the run sheet that is only carried along looks like a slip of one that counts", "-"},
+	{"conc-unit", Remark, 0, "", "a column of known concentrations gives no unit", "-"},
+	{"below-excitation", Remark, 0, "cells", "cells with an emission shorter than the excitation stay in the fits, because scatter was taken out before or is switched off", "Stokes' law: nothing fluoresces there"},
 	{"sheet-conc", Remark, 0, "", "a known concentration is given for a row that is no standard, control or spike, and is not used", "-"},
 	{"wavelength", Doubt, 1, "nm", "a scatter ridge lies off its line by more than the limit: a wavelength axis is off", "common practice, no source"},
 	{"lamp-lines", Doubt, 1, "nm", "the lines of a lamp lie off their tabulated wavelengths by more than the limit", "common practice, no source"},

@@ -71,7 +71,7 @@ func FromStandards(g eem.Grid, unit eem.Unit, names, units []string, standards [
 		c.ExDetermined = seen(c.Ex, c.Em, func(j, k int) bool { return !math.IsNaN(c.Surface[g.Index(j, k)]) })
 		c.EmDetermined = seen(c.Em, c.Ex, func(k, j int) bool { return !math.IsNaN(c.Surface[g.Index(j, k)]) })
 		if c.AmountUnit == "" {
-			c.AmountUnit = "1"
+			c.AmountUnit = UnitUnstated
 		}
 		c.Highest, c.Levels = levels(name, standards)
 		s.Components = append(s.Components, c)
@@ -81,6 +81,9 @@ func FromStandards(g eem.Grid, unit eem.Unit, names, units []string, standards [
 	}
 	return s, s.lines(standards), nil
 }
+
+// UnitUnstated stands where the run sheet gives a component's amounts without a unit.
+const UnitUnstated = "unstated"
 
 // minSeen is the least share of the other mode's energy that the cells of a
 // wavelength must show for its loading to mean anything; below it the loading

@@ -170,7 +170,7 @@ func (j *job) levelFlags(set *unmix.Set) []eem.Flag {
 	for _, c := range set.Components {
 		if limit := j.sv.Limit("reference-levels"); c.Levels > 0 && float64(c.Levels) < limit {
 			out = append(out, j.sv.Accept(eem.NewFlag(eem.Flag{Component: c.Name, Method: "references", Test: "reference-levels", Severity: eem.Remark,
-				Value: float64(c.Levels), Limit: limit, Msg: fmt.Sprintf("the reference of %s rests on %d level; whether the response is a line cannot be told", c.Name, c.Levels)})))
+				Value: float64(c.Levels), Limit: limit, Msg: fmt.Sprintf("the reference of %s rests on %s; whether the response is a line cannot be told", c.Name, eem.Count(c.Levels, "level"))})))
 		}
 	}
 	return out

@@ -94,7 +94,7 @@ func runFactors(s streams, o factorsOptions) error {
 		if sections[i], err = o.section(i); err != nil {
 			return err
 		}
-		fmt.Fprintf(s.err, "%s: %s, %d points%s\n", sections[i].Source, sections[i].Axis, sections[i].Axis.Len(), largestU(sections[i]))
+		fmt.Fprintf(s.err, "%s: %s%s\n", sections[i].Source, sections[i].Axis, largestU(sections[i]))
 	}
 	f, err := correct.Join(sections...)
 	if err != nil {

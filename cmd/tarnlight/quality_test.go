@@ -155,6 +155,36 @@ func TestBatchRejected(t *testing.T) {
 	}
 }
 
+// SEC-9.1-rpd (formula): 9 and 11 differ by 20 %.
+func TestRelativeDifference(t *testing.T) {
+	if got := rpd(9, 11); math.Abs(got-20) > 1e-12 {
+		t.Errorf("%g %%, want 20 %%", got)
+	}
+}
+
+// Amounts without a unit are told, and stand in a unit that says so; cells below the
+// excitation that no step cut out are told once.
+func TestToldOfSheetAndScatter(t *testing.T) {
+	y := newTiny()
+	y.sheet[0] = strings.Replace(y.sheet[0], "conc:a [mg/L]", "conc:a", 1)
+	dir := y.write(t)
+	call("quantify", dir, "--pictures=false").want(t, exitDone, exitDoubt)
+	if u := cell(t, table(t, dir, "out", "contributions.csv"), "unit", "id", "W1", "component", "a"); u != unmix.UnitUnstated {
+		t.Errorf("unit %q", u)
+	}
+	if msg := cell(t, table(t, dir, "out", "flags.csv"), "message", "test", "conc-unit"); !strings.Contains(msg, "conc:a [unit]") {
+		t.Error(msg)
+	}
+	dir = demoFolder(t, func(rows []string) []string {
+		return slices.DeleteFunc(rows, func(r string) bool { return strings.HasPrefix(r, "W2") || strings.HasPrefix(r, "W3") })
+	})
+	put(t, dir, "survey.toml", strings.Replace(read(t, dir, "survey.toml"), "[correct]\n", "[correct]\noff = [\"scatter\"]\n", 1))
+	r := call("check", dir)
+	if n := strings.Count(r.out+r.err, "emission shorter than the excitation"); n != 1 {
+		t.Errorf("told %d times:\n%s%s", n, r.out, r.err)
+	}
+}
+
 // The kinds of duplicates have charts of their own, and recoveries their limits.
 func TestCharts(t *testing.T) {
 	y := watched()

@@ -149,7 +149,7 @@ func Blank(e, blank *eem.EEM) *eem.EEM {
 	out.Note(record(StepBlank, "blank subtracted"))
 	if lost > 0 {
 		out.Note(finding(StepBlank, "blank-range", float64(lost), 0, fmt.Sprintf(
-			"the blank (%s) does not cover %d cells of %s; they were left out: scan the blank over the same wavelengths", blank.Grid, lost, e.Grid)))
+			"the blank (%s) does not cover %s of %s, left out: scan the blank over the same wavelengths", blank.Grid, eem.Count(lost, "cell"), e.Grid)))
 	}
 	return out
 }

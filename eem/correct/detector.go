@@ -22,11 +22,11 @@ func Saturate(e *eem.EEM, limit float64) *eem.EEM {
 			n++
 		}
 	}
-	out.Note(record(StepSaturation, fmt.Sprintf("%d cells at or above %s counts left out", n, num(limit)),
+	out.Note(record(StepSaturation, fmt.Sprintf("%s at or above %s counts left out", eem.Count(n, "cell"), num(limit)),
 		eem.Param{Name: "saturation", Value: num(limit), Unit: "counts", Source: "settings: scans.saturation"}))
 	if n > 0 {
 		out.Note(finding(StepSaturation, "saturated", float64(n), 0, fmt.Sprintf(
-			"%d cells are at or above the detector's limit of %s counts and were left out; dilute the bottle or narrow the slits and scan again", n, num(limit))))
+			"left out: %s at or above the detector's limit of %s counts; dilute the bottle or narrow the slits and scan again", eem.Count(n, "cell"), num(limit))))
 	}
 	return out
 }

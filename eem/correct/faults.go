@@ -55,10 +55,10 @@ func SaturateAuto(e *eem.EEM) *eem.EEM {
 			n++
 		}
 	}
-	out.Note(record(StepSaturation, fmt.Sprintf("%d cells at the scans' flat top left out", n),
+	out.Note(record(StepSaturation, eem.Count(n, "cell")+" at the scans' flat top left out",
 		eem.Param{Name: "saturation", Value: num(limit), Unit: "counts", Source: "plateau"}))
 	out.Note(finding(StepSaturation, "plateau", float64(n), 0, fmt.Sprintf(
-		"%d cells stay at %s counts, the most that these scans hold, and were left out as saturated; state scans.saturation if the detector's limit is another", n, num(limit))))
+		"left out as saturated: %s at %s counts, the most that these scans hold; state scans.saturation if the detector's limit is another", eem.Count(n, "cell"), num(limit))))
 	return out
 }
 
@@ -105,7 +105,7 @@ func Spikes(e *eem.EEM, limit float64, avoid func(exNM, emNM float64) bool) *eem
 	}
 	if n > 0 {
 		out.Note(finding(StepDetector, "spike", worst, limit, fmt.Sprintf(
-			"%d single cells stand out of all their neighbours and were left out; the highest, at ex %g / em %g nm, by %.0f standard deviations of the noise", n, ex, em, worst)))
+			"left out: %s standing out of all neighbours; the highest, at %s, by %.0f standard deviations of the noise", eem.Count(n, "single cell"), eem.Spot(ex, em), worst)))
 	}
 	return out
 }

@@ -58,8 +58,8 @@ func InnerFilter(e *eem.EEM, a *eem.Absorbance, g Geometry, limit float64) (out 
 	out.Note(record(StepInner, "multiplied by the factor of each cell, largest "+num(largest), g.params(largest, limit)...))
 	if lost > 0 {
 		out.Note(finding(StepInner, "absorbance-range", float64(lost), 0, fmt.Sprintf(
-			"%d cells lie outside the absorbance spectrum (%g–%g nm) and were left out; measure the absorbance over ex %g–%g nm and em %g–%g nm",
-			lost, a.Axis.First(), a.Axis.Last(), e.Ex.First(), e.Ex.Last(), e.Em.First(), e.Em.Last())))
+			"left out: %s outside the absorbance spectrum (%s); measure the absorbance over ex %s and em %s",
+			eem.Count(lost, "cell"), stretch(a.Axis), stretch(e.Ex), stretch(e.Em))))
 	}
 	noteOver(out, overAbsorbing(e, ax, am, g.path(), limit), limit)
 	noteNegative(out, a)
@@ -79,10 +79,13 @@ func DropOverAbsorbing(e *eem.EEM, a *eem.Absorbance, g Geometry, limit float64)
 	for _, i := range o.cells {
 		out.Drop(i, eem.OverAbsorbing)
 	}
-	out.Note(record(StepInner, fmt.Sprintf("%d cells with a total absorbance above %s left out", len(o.cells), num(limit)),
+	out.Note(record(StepInner, fmt.Sprintf("%s with a total absorbance above %s left out", eem.Count(len(o.cells), "cell"), num(limit)),
 		eem.Param{Name: "absorbance limit", Value: num(limit), Source: "settings: correct.absorbance_limit"}))
 	return out
 }
+
+// stretch is what an axis covers, for a message.
+func stretch(a eem.Axis) string { return eem.NM(a.First()) + "–" + eem.NM(a.Last()) + " nm" }
 
 // perCM gives the absorbance of 1 cm on an axis, NaN where it was not measured.
 func perCM(a *eem.Absorbance, ax eem.Axis) []float64 {
@@ -126,8 +129,8 @@ func noteOver(e *eem.EEM, o over, limit float64) {
 		return
 	}
 	e.Note(finding(StepInner, "absorbance-limit", o.total, limit, fmt.Sprintf(
-		"total absorbance reaches %.3g at ex %g / em %g nm (limit %s), %d cells are above the limit; dilute the scanned liquid at least %.2g-fold and measure again",
-		o.total, o.ex, o.em, num(limit), len(o.cells), math.Ceil(10*o.total/limit)/10)))
+		"total absorbance reaches %.3g at %s, %s above the limit of %s; dilute the scanned liquid at least %.2g-fold and measure again",
+		o.total, eem.Spot(o.ex, o.em), eem.Count(len(o.cells), "cell"), num(limit), math.Ceil(10*o.total/limit)/10)))
 }
 
 // noteNegative flags an absorbance spectrum that falls well below zero where the
@@ -144,7 +147,7 @@ func noteNegative(e *eem.EEM, a *eem.Absorbance) {
 	}
 	if lowest < -limit {
 		e.Note(finding(StepInner, "absorbance-negative", lowest, -limit, fmt.Sprintf(
-			"the absorbance falls to %s per cm at %g nm; measure its baseline again, with pure water in the cell", num(lowest), at)))
+			"the absorbance falls to %s per cm at %s nm; measure its baseline again, with pure water in the cell", num(lowest), eem.NM(at))))
 	}
 }
 

@@ -10,17 +10,24 @@ import (
 	"tarnlight/eem/correct"
 )
 
-// TestFactorUncertainty: METHODS 1.3 (computed): u(k)/k of the centre form is
-// 0.33, 0.81 and 1.63 % for u(A) of 0.002, 0.005 and 0.01 each, ln(10)·b for a
-// baseline error b in both.
+// TestFactorUncertainty: SEC-1.3-u (computed): u(k)/k of the centre form is
+// (ln 10/2)·√2·u(A), 0.33, 0.81 and 1.63 % for u(A) of 0.002, 0.005 and 0.01 at each
+// wavelength by itself, and ln(10)·b for a baseline error b that both share.
 func TestFactorUncertainty(t *testing.T) {
-	for u, want := range map[float64]float64{0.002: 0.0033, 0.005: 0.0081, 0.01: 0.0163} {
+	for u, want := range map[float64]float64{0.002: 0.0032563470670302942, 0.005: 0.008140867667575736, 0.01: 0.01628173533515147} {
 		x, m := correct.Geometry{}.Sensitivity(0.3, 0.1)
-		if got := math.Hypot(x, m) * u; math.Abs(got-want) > 5e-5 {
-			t.Errorf("u(A) %g: %.5f, want %.4f", u, got, want)
-		}
+		near(t, "apart", math.Hypot(x, m)*u, want, 1e-12)
 		near(t, "baseline", (x+m)*u, math.Ln10*u, 1e-14)
 	}
+}
+
+// TestLoss: SEC-1.3-loss (computed): at A = 0.06 the centre form says that 6.67 % of
+// the light is lost and that the rest is multiplied by 1.0715; the 8 % of Kubista et
+// al. 1994 (Analyst 119, 417) are of another geometry.
+func TestLoss(t *testing.T) {
+	k := correct.Geometry{}.Factor(0.06, 0)
+	near(t, "factor", k, 1.0715193052376064, 1e-12)
+	near(t, "loss", 1-1/k, 0.06674569920300899, 1e-12)
 }
 
 // TestSensitivity holds the derivatives against finite differences.

@@ -59,8 +59,8 @@ func LinearRange(e *eem.EEM, a *eem.Absorbance, pathCM, limit float64) *eem.EEM 
 	}
 	if above > 0 {
 		out.Note(finding(StepInner, "linear-range", worst.X, limit, fmt.Sprintf(
-			"ln(10)·A is above %s at %d of %d excitations, up to ex %g nm; largest %.3g at ex %g nm, where emission taken as proportional without correction would be off by %.1f %%",
-			num(limit), above, e.Ex.Len(), longest.ExNM, worst.X, worst.ExNM, 100*worst.Excess)))
+			"ln(10)·A is above %s at %d of %d excitations, up to ex %s nm; largest %.3g at ex %s nm, where emission taken as proportional without correction would be off by %.1f %%",
+			num(limit), above, e.Ex.Len(), eem.NM(longest.ExNM), worst.X, eem.NM(worst.ExNM), 100*worst.Excess)))
 	}
 	return out
 }

@@ -43,12 +43,12 @@ func Quinine(standards []*eem.EEM, microg []float64, exNM, emNM float64) (Quinin
 			return q, fmt.Errorf("quinine standard of %g µg/L; a concentration is 0 or more", microg[i])
 		}
 		if f[i] = e.Interp(exNM, emNM); math.IsNaN(f[i]) {
-			return q, fmt.Errorf("a quinine standard has no value at ex %g / em %g nm (it has %s, or the cell is saturated)", exNM, emNM, e.Grid)
+			return q, fmt.Errorf("a quinine standard has no value at %s (it has %s, or the cell is saturated)", eem.Spot(exNM, emNM), e.Grid)
 		}
 		cf, cc = cf+microg[i]*f[i], cc+microg[i]*microg[i]
 	}
 	if q.Slope = cf / cc; !usable(q.Slope) {
-		return q, fmt.Errorf("the quinine standards do not grow with concentration (slope %s at ex %g / em %g nm)", num(q.Slope), exNM, emNM)
+		return q, fmt.Errorf("the quinine standards do not grow with concentration (slope %s at %s)", num(q.Slope), eem.Spot(exNM, emNM))
 	}
 	if q.N > 1 {
 		ss := 0.0

@@ -74,7 +74,7 @@ func CheckRamanLaw(blank *eem.EEM, refNM, exponent, limit float64) *eem.EEM {
 		eem.Param{Name: "Raman law, largest departure", Value: num(dev), Unit: "%", Source: "blank"}))
 	if math.Abs(dev) > limit {
 		out.Note(finding(StepSpectral, "raman-law", dev, limit, fmt.Sprintf(
-			"the Raman area at ex %g nm over that at %g nm is %.3g, %.0f %% off the %.3g that water gives; check the excitation factors", worst.ExNM, refNM, worst.Ratio, dev, worst.Want)))
+			"the Raman area at ex %s nm over that at %s nm is %.3g, %.0f %% off the %.3g that water gives; check the excitation factors", eem.NM(worst.ExNM), eem.NM(refNM), worst.Ratio, dev, worst.Want)))
 	}
 	return out
 }

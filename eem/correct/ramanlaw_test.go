@@ -8,11 +8,11 @@ import (
 	"tarnlight/eem/synth"
 )
 
-// TestRamanLaw: METHODS 2.5 (computed from Bartlett et al. 1998): area at 275, 254
+// TestRamanLaw: SEC-2.5-bartlett (computed; exponent: Bartlett et al. 1998, Appl. Opt. 37, 3324): area at 275, 254
 // and 400 nm over that at 350 nm, energy units.
 func TestRamanLaw(t *testing.T) {
-	for ex, want := range map[float64]float64{275: 3.767, 254: 5.832, 400: 0.4798} {
-		near(t, "ratio", math.Pow(ex/350, -correct.RamanEnergy), want, 2e-4)
+	for ex, want := range map[float64]float64{275: 3.7674233735001996, 254: 5.831614437942985, 400: 0.4797823768578312} {
+		near(t, "ratio", math.Pow(ex/350, -correct.RamanEnergy), want, 1e-12)
 	}
 }
 

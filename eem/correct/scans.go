@@ -79,7 +79,7 @@ func RepeatedScans(e *eem.EEM) *eem.EEM {
 	}
 	if len(again) > 0 {
 		out.Note(finding(StepDetector, "scan-repeated", float64(len(again)/2), 0, fmt.Sprintf(
-			"%d scans hold the numbers of another excitation (ex %s nm); look for a file under two names", len(again)/2, nms(again))))
+			"%s with the numbers of another excitation (ex %s nm); look for a file under two names", eem.Count(len(again)/2, "scan"), nms(again))))
 	}
 	return out
 }
@@ -178,7 +178,7 @@ func Negative(e *eem.EEM, limit float64) *eem.EEM {
 	}
 	if share := 100 * float64(low) / float64(max(1, n)); share > limit {
 		out.Note(finding(StepBlank, "negative", share, limit, fmt.Sprintf(
-			"%.1f %% of the cells are more than three standard deviations below zero after the blank, the lowest at ex %g / em %g nm; look for a contaminated blank or one of another day", share, ex, em)))
+			"%.1f %% of the cells are more than three standard deviations below zero after the blank, the lowest at %s; look for a contaminated blank or one of another day", share, eem.Spot(ex, em))))
 	}
 	return out
 }

@@ -110,7 +110,6 @@ func compare(t *testing.T, row map[string]string, e *eem.EEM, tol, tolB float64)
 			limit = tolB // interpolated between rows that nearly cancel
 		}
 		// One published b is −4e−16, the rounding error of a zero.
-
 		if v, ok := got[name]; !ok || !(math.Abs(v-want) <= limit*math.Abs(want)+1e-15) {
 			t.Errorf("%s: %s %.12g, published %.12g", row["sample"], name, v, want)
 		}

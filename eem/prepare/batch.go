@@ -81,7 +81,7 @@ func (s *Survey) formBatches() {
 	}
 	if unnamed > 0 {
 		s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "no-batch", Severity: eem.Remark, File: filepath.Base(s.Sheet.Path),
-			Msg: fmt.Sprintf("%d rows give neither batch nor measured; they form batches by setup alone", unnamed)}), "", ""))
+			Msg: fmt.Sprintf("without batch and measured: %s, put into batches by setup alone", eem.Count(unnamed, "row"))}), "", ""))
 	}
 	for _, b := range s.Bottles {
 		if !b.Excluded && !b.Rejected {

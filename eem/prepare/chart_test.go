@@ -79,6 +79,27 @@ func TestFalseAlarms(t *testing.T) {
 	}
 }
 
+// R_4s within a batch, one beyond +2 s and the other beyond −2 s: 0.1035 % of pairs
+// (SEC-9.2-westgard, computed).
+func TestFalseAlarmsWithinBatch(t *testing.T) {
+	rnd := rand.New(rand.NewPCG(6, 9))
+	const pairs = 400_000
+	var c prepare.Chart
+	for i := range 2 * pairs {
+		c.Points = append(c.Points, prepare.ChartPoint{Value: rnd.NormFloat64(), Batch: string(rune('a' + i/2%7))})
+	}
+	n := 0.0
+	for _, r := range c.Judge(20) {
+		if slices.Contains(r.Rules, prepare.RuleR4s) {
+			n++
+		}
+	}
+	const want = 0.0010351370073191273
+	if got := n / pairs; math.Abs(got-want) > 5*math.Sqrt(want/pairs) {
+		t.Errorf("%.4f %% false alarms, want %.4f %%", 100*got, 100*want)
+	}
+}
+
 // With few points the plain limits hold.
 func TestPlainLimits(t *testing.T) {
 	c := prepare.Chart{Points: []prepare.ChartPoint{{Value: 104, Centre: 100, Low: 90, High: 110}, {Value: 111, Centre: 100, Low: 90, High: 110},

@@ -322,6 +322,36 @@ func (bt *Batch) lacksScale() bool {
 	return bt.Reason != "" && bt.Unit == eem.Counts && first.Setting.Intensity.Unit != "counts" && !first.skips(stepIntensity)
 }
 
+// checkBelow tells, once for the survey, of cells that no scatter step cut out
+// although nothing fluoresces there.
+func (s *Survey) checkBelow() {
+	bottles, most := 0, 0
+	var first string
+	for _, b := range s.Bottles {
+		if !b.Usable() || b.Row.Kind != survey.Sample || !b.skips(stepScatter) {
+			continue
+		}
+		n := 0
+		for j := range b.EEM.Ex.Len() {
+			for k := 0; k < b.EEM.Em.Len() && b.EEM.Em.At(k) < b.EEM.Ex.At(j); k++ {
+				if b.EEM.Why[b.EEM.Index(j, k)] == eem.Measured {
+					n++
+				}
+			}
+		}
+		if n > 0 {
+			if bottles++; bottles == 1 {
+				first = b.Row.ID
+			}
+			most = max(most, n)
+		}
+	}
+	if bottles > 0 {
+		s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "below-excitation", Severity: eem.Remark, Measure: true, Value: float64(most),
+			Msg: fmt.Sprintf("up to %s with an emission shorter than the excitation, where nothing fluoresces, count as measured in %s (%s, for example), because the settings say that scatter is taken out or is to stay; leave \"scatter\" out of [scans] applied and [correct] off to have them cut here", eem.Count(most, "cell"), eem.Count(bottles, "bottle"), first)}), "", ""))
+	}
+}
+
 // checkBatches rejects batches that cannot be used as they are: most of their
 // bottles failed, or nothing brings them to the scale of the others.
 func (s *Survey) checkBatches() {

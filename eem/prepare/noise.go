@@ -102,7 +102,7 @@ func (s *Survey) setNoise() {
 		bt.noteNoise(n, from)
 		if alone > 0 {
 			s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "noise-default", Severity: eem.Remark,
-				Msg: fmt.Sprintf("%d bottles have fewer than %d blanks to go by; the noise of each was estimated from the roughness of its own scans: measure %d blanks a day", alone, fewestBlanks, fewestBlanks)}), "", bt.Name))
+				Msg: fmt.Sprintf("fewer than %d blanks to go by for %s; the noise was estimated from the roughness of its own scans: measure %d blanks a day", fewestBlanks, eem.Count(alone, "bottle"), fewestBlanks)}), "", bt.Name))
 		}
 	}
 }

@@ -185,6 +185,7 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 	}
 	s.inherit()
 	s.checkBatches()
+	s.checkBelow()
 	s.sameContent()
 	s.compareDilutions()
 	s.unusedFiles()

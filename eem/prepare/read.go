@@ -143,7 +143,7 @@ func (b *Bottle) readScans(s *Survey, raw *rawFiles, files []string) ([]eem.Scan
 			b.guesses = append(b.guesses, Guess{Text: n.Msg, Files: found[n.Test+"\x00"+n.Msg], First: n.File})
 		} else if n.Test != "" {
 			if more := found[n.Test] - 1; more > 0 {
-				n.Msg += fmt.Sprintf(" (and in %d more files of the bottle)", more)
+				n.Msg += fmt.Sprintf(" (and in %s more of the bottle)", eem.Count(more, "file"))
 			}
 			b.flag(s, n)
 		}

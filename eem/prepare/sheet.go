@@ -78,7 +78,7 @@ func (s *Survey) sameContent() {
 		for _, o := range with {
 			n := eem.Note{Test: "same-content", Severity: eem.Doubt, Measure: true, Value: float64(shared[o])}
 			say := func(who, other *Bottle, mine, theirs string) {
-				n.Msg = fmt.Sprintf("%d raw files hold the same bytes as those of %q (%s and %s, for example); one of them was copied or exported twice: find the right file", shared[o], other.Row.ID, mine, theirs)
+				n.Msg = fmt.Sprintf("%s with the same bytes as those of %q (%s and %s, for example); one of them was copied or exported twice: find the right file", eem.Count(shared[o], "raw file"), other.Row.ID, mine, theirs)
 				s.tellOf(who, n)
 			}
 			say(b, o, first[o][0], first[o][1])
@@ -141,7 +141,7 @@ func (s *Survey) unusedFiles() {
 	}
 	s.Flags = append(s.Flags, eem.FlagFrom(s.judge(eem.Note{Test: "unused-file", Severity: eem.Remark, Measure: true, Value: float64(len(left)),
 		File: filepath.ToSlash(filepath.Base(s.Sheet.Path)),
-		Msg:  fmt.Sprintf("%d raw files are used by no row (%s); add rows for them or move them away", len(left), show)}), "", ""))
+		Msg:  fmt.Sprintf("used by no row: %s (%s); add rows for what counts and move the rest away", eem.Count(len(left), "raw file"), show)}), "", ""))
 }
 
 // results says whether a folder holds results, finished or in the making, or what

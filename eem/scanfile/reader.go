@@ -197,10 +197,10 @@ func (r *reader) notes() {
 		r.note("unsorted", eem.Remark, r.unsorted, "wavelengths were not in order and were sorted")
 	}
 	if r.repeated > 0 {
-		r.note("repeated-point", eem.Remark, r.repeated, fmt.Sprintf("%d wavelengths stand twice; the mean was taken", r.repeated))
+		r.note("repeated-point", eem.Remark, r.repeated, "standing twice: "+eem.Count(r.repeated, "wavelength")+"; the mean was taken")
 	}
 	if r.over > 0 {
-		r.note("saturated", eem.Doubt, r.over, fmt.Sprintf("%d cells are marked as over range in the file and were left out", r.over))
+		r.note("saturated", eem.Doubt, r.over, "left out: "+eem.Count(r.over, "cell")+" marked as over range in the file")
 	}
 }
 

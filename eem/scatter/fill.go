@@ -42,7 +42,7 @@ func Fill(e *eem.EEM, how string) *eem.EEM {
 	default:
 		panic(fmt.Sprintf("scatter: cannot fill by %q", how))
 	}
-	out.Note(eem.Note{Step: Step, Msg: fmt.Sprintf("%d cells of the scatter bands filled", n), Params: []eem.Param{
+	out.Note(eem.Note{Step: Step, Msg: eem.Count(n, "cell") + " of the scatter bands filled", Params: []eem.Param{
 		{Name: "fill", Value: how, Source: "settings: scatter.fill"},
 		{Name: "cells filled", Value: fmt.Sprint(n), Unit: "cells", Source: "grid"}}})
 	return out

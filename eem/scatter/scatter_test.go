@@ -95,6 +95,17 @@ var halfWidth10 = []scatter.Band{
 	{Line: scatter.Raman2, Below: 10, Above: 10, Reason: eem.Raman2},
 }
 
+// TestShifts: SEC-2.6-shift (computed): the ends of the Raman windows of ex 350 nm,
+// 371–428 and 382–418 nm, as shifts, by the formula of the lines turned round.
+func TestShifts(t *testing.T) {
+	for em, want := range map[float64]float64{371: 1617.250673854447, 428: 5206.942590120161, 382: 2393.418100224382, 418: 4647.983595352016} {
+		l := scatter.Line{Order: 1, Shift: want}
+		if got := l.Em(350); math.Abs(got-em) > 1e-9 {
+			t.Errorf("%g cm⁻¹: em %.10g nm, want %g", want, got, em)
+		}
+	}
+}
+
 // TestWhichBand: CHK-3b (computed), and the sides of the first Rayleigh line.
 func TestWhichBand(t *testing.T) {
 	e := scatter.Mask(fill(axis(t, 275), axis(t, 250, 264.9, 265, 285, 285.1, 303, 340, 550),

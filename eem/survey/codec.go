@@ -82,6 +82,26 @@ func choice(names ...string) codec {
 	}
 }
 
+// unitWords are how laboratories write the units of intensity, by ours.
+var unitWords = map[string]string{"a.u.": "counts", "au": "counts", "a.u": "counts", "arbitrary": "counts", "cps": "counts", "ru": "raman", "r.u.": "raman",
+	"qsu": "quinine", "qse": "quinine", "ppb": "quinine", "nm-1": "raman"}
+
+// unitCodec is a choice of units that knows how else they are written.
+func unitCodec(names ...string) codec {
+	c := choice(names...)
+	read := c.read
+	c.read = func(field, v any) error {
+		err := read(field, v)
+		if s, ok := v.(string); err != nil && ok {
+			if w := unitWords[strings.ToLower(strings.TrimSpace(s))]; w != "" {
+				return hint("did you mean " + quote(w) + "?")
+			}
+		}
+		return err
+	}
+	return c
+}
+
 // bounds are those of a finite number, lo itself excluded when open.
 type bounds struct {
 	lo, hi float64

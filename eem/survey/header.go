@@ -89,6 +89,9 @@ func (r *sheetReader) neededColumns(seen map[string]string) bool {
 func (r *sheetReader) likeKnown(seen map[string]string) {
 	for i, h := range r.cols {
 		name := r.sheet.Columns[i]
+		if h.conc != nil && h.conc.Unit == "" {
+			r.note("conc-unit", eem.Remark, r.t.HeadLine, "column %s gives no unit, so that results of %s stand in the unit \"unstated\"; write conc:%s [unit]", quote(name), quote(h.conc.Name), h.conc.Name)
+		}
 		if h.known != nil || h.conc != nil {
 			continue
 		}

@@ -66,6 +66,7 @@ func TestSettingsErrors(t *testing.T) {
 		{"[optics]\nyield_standard = 'Q'", `survey.toml:2: optics.yield_standard: a yield standard needs its quantum yield; add yield = … and yield_source = "…" below it`},
 		{"[optics]\nyield_standard = 'Q'\nyield = 0.5", `survey.toml:3: optics.yield: a quantum yield depends on the medium; add yield_source = "medium, and where the value comes from" below it`},
 		{"[correct]\nincidence_deg = 30", `survey.toml:2: correct.incidence_deg: a right-angle cell is lit and seen straight on; set inner_filter = "front-face", or leave the angles out`},
+		{"[intensity]\nunit = 'a.u.'", `survey.toml:2: intensity.unit: "a.u." is not allowed: did you mean "counts"?; write "auto", "raman", "quinine" or "counts"`},
 		{"[quality.limit]\nduplicates = 30", `survey.toml:2: quality.limit.duplicates: there is no such key; did you mean duplicate?`},
 		{"[quality.limit]\nabsorbance-limit = 2", `survey.toml:2: quality.limit.absorbance-limit: this limit is set as correct.absorbance_limit`},
 		{"[quality.limit]\nno-absorbance = 2", `survey.toml:2: quality.limit.no-absorbance: this test has no limit to set; it finds that no absorbance was given, so that the inner filter was not corrected`},

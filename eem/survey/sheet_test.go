@@ -182,7 +182,7 @@ func TestNotesOfSheet(t *testing.T) {
 		{"id,kind,scans,sites,site\nS1,sample,s1,,\n", nil},
 		{"id,kind,scans,conc_Trp\nS1,sample,s1,\n", []string{
 			`doubt sheet-column runsheet.csv:1: column "conc_Trp" is only carried along; if it holds known concentrations, write it conc:NAME or conc:NAME [unit]`}},
-		{"id,kind,scans,conc:Trp\nS1,sample,s1,3\n", []string{
+		{"id,kind,scans,conc:Trp [µg/L]\nS1,sample,s1,3\n", []string{
 			`note sheet-conc runsheet.csv:2: "S1" is of kind sample, so that its known concentration of "Trp" is not used`}},
 	} {
 		dir := folder(t, map[string]string{"runsheet.csv": c.text})

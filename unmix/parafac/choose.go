@@ -143,7 +143,7 @@ func (pr *prepared) descend(ctx context.Context, c *eem.Cube, from, to int, set 
 	starts := make([][]*outcome, to-from+1)
 	above := &als{} // none: the largest number starts from random alone
 	for f := to; f >= from; f-- {
-		set.Progress(to-f, to-from+1, fmt.Sprintf("%d components", f))
+		set.Progress(to-f, to-from+1, eem.Count(f, "component"))
 		all, err := runStarts(ctx, pr.all, f, set, above)
 		if err != nil {
 			return nil, err

@@ -87,9 +87,9 @@ func (r *results) overview() [][2]string {
 		n++
 		count[max(b.worst, eem.Remark)]++
 	}
-	out := [][2]string{{"Bottles", plural(n, "bottle", "bottles") + " reported"}}
+	out := [][2]string{{"Bottles", eem.Count(n, "bottle") + " reported"}}
 	if field > 0 {
-		out[0][1] += fmt.Sprintf(", %s among them", plural(field, "field blank", "field blanks"))
+		out[0][1] += fmt.Sprintf(", %s among them", eem.Count(field, "field blank"))
 	}
 	if excluded > 0 {
 		out[0][1] += fmt.Sprintf("; %d excluded, which take part in nothing", excluded)
@@ -121,7 +121,7 @@ func (r *results) onAll() [][2]string {
 	m := r.table["models.csv"]
 	for i := range m.Rows {
 		if why := m.Text(i, m.Col("reason")); m.Bool(i, m.Col("chosen")) && why != "" {
-			out = append(out, [2]string{"Model", fmt.Sprintf("%s: %s", plural(int(m.Float(i, m.Col("components"))), "component", "components"), why)})
+			out = append(out, [2]string{"Model", fmt.Sprintf("%s: %s", eem.Count(int(m.Float(i, m.Col("components"))), "component"), why)})
 		}
 	}
 	return out

@@ -168,16 +168,9 @@ func (r *results) modelTitles(methods []string) []string {
 				n++
 			}
 		}
-		out = append(out, fmt.Sprintf("%s, %s", methodName(m), plural(n, "component", "components")))
+		out = append(out, fmt.Sprintf("%s, %s", methodName(m), eem.Count(n, "component")))
 	}
 	return out
-}
-
-func plural(n int, one, many string) string {
-	if n == 1 {
-		return "1 " + one
-	}
-	return fmt.Sprintf("%d %s", n, many)
 }
 
 // pictureText is what stands above a bottle's picture.
