@@ -72,7 +72,7 @@ func TestApplyBudget(t *testing.T) {
 	model := model5(t)
 	dir := demoFolder(t, nil)
 	call("apply", model, dir, "--pictures=false").want(t, exitDoubt)
-	made, now := filepath.Join(filepath.Dir(model)), filepath.Join(dir, "out")
+	made, now := filepath.Dir(model), filepath.Join(dir, "out")
 	budgetAddsUp(t, table(t, now, "budget.csv"), table(t, now, "contributions.csv"))
 	was, is := table(t, made, "contributions.csv"), table(t, now, "contributions.csv")
 	for _, c := range []string{"C1", "C2", "C3", "C4", "C5"} {

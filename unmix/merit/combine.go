@@ -46,14 +46,15 @@ func (b *bottle) combine() {
 		k := TQuantile(0.975, b.out.DF[f])
 		b.out.Lower[f], b.out.Upper[f] = math.Max(0, b.x[f]-k*b.out.U[f]), b.x[f]+k*b.out.U[f]
 	}
-	b.sums(total, wp, df)
+	b.sums(mats, wp, df)
 	b.monteCarlo(total)
 	b.budget()
 }
 
 // sums judges the pairs that cannot be told apart.
-func (b *bottle) sums(total, wp, df []float64) {
+func (b *bottle) sums(mats [][]float64, wp, df []float64) {
 	n := b.e.n
+	v := make([]float64, len(mats))
 	for _, p := range b.e.pairs {
 		w := wp
 		if b.x[p.F] <= 0 && b.x[p.H] <= 0 {
@@ -64,8 +65,14 @@ func (b *bottle) sums(total, wp, df []float64) {
 		if w != nil {
 			row := slices.Clone(w[p.F*n : (p.F+1)*n])
 			axpy(1, w[p.H*n:(p.H+1)*n], row)
-			s.U = math.Sqrt(math.Max(0, form(total, row)))
-			s.Lower, s.Upper = math.Max(0, s.Value-z975*s.U), s.Value+z975*s.U
+			sum := 0.0
+			for t := range mats {
+				v[t] = math.Max(0, form(mats[t], row))
+				sum += v[t]
+			}
+			s.U = math.Sqrt(sum)
+			k := TQuantile(0.975, effective(v, df))
+			s.Lower, s.Upper = math.Max(0, s.Value-k*s.U), s.Value+k*s.U
 			s.Critical, s.Detection, s.Quantifiable = b.limits([]int{p.F, p.H}, row, df)
 		}
 		b.out.Sums = append(b.out.Sums, s)
@@ -268,11 +275,35 @@ func normals(seed uint64, n int) []float64 {
 	return v
 }
 
+// tangle is the correlation of two estimates from which on the interval of one
+// depends on whether the other is cut at zero: the standard uncertainty with the other
+// left out is then under 0.7 of the one with it.
+const tangle = 0.7
+
+// entangled lists the components whose estimate is correlated by more than that with
+// one of near.
+func entangled(cov []float64, n int, near []int) []int {
+	var out []int
+	for f := range n {
+		if slices.Contains(near, f) {
+			continue
+		}
+		for _, h := range near {
+			if math.Abs(cov[f*n+h]) > tangle*math.Sqrt(cov[f*n+f]*cov[h*n+h]) {
+				out = append(out, f)
+				break
+			}
+		}
+	}
+	return out
+}
+
 // monteCarlo replaces the interval of contributions under three standard
 // uncertainties, whose distribution is cut at zero, by the shortest one that holds
 // 95 % of what the resolution makes of disturbed data (JCGM 101). The draws are
 // made in the space of the contributions around those found, and each is brought
-// to the nearest mixture without negative amounts.
+// to the nearest mixture without negative amounts. The same is done for contributions
+// that such a one is entangled with: what it cannot be below zero they cannot be above.
 func (b *bottle) monteCarlo(total []float64) {
 	n := b.e.n
 	var near []int
@@ -288,7 +319,9 @@ func (b *bottle) monteCarlo(total []float64) {
 	if w == nil {
 		return
 	}
-	draws := b.draw(sandwich(w, total, n))
+	cov := sandwich(w, total, n)
+	near = append(near, entangled(cov, n, near)...)
+	draws := b.draw(cov)
 	if draws == nil {
 		return
 	}

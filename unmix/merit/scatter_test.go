@@ -30,7 +30,7 @@ func lines(t *testing.T, sd []float64, seed uint64) (r *unmix.Resolution, scatte
 	}
 	own := 1 + repeat*rnd.NormFloat64()
 	amounts = append(amounts, []float64{own, own, own})
-	c, set := mixture(amounts, []float64{420, 450, 480}, 1e-3, seed)
+	c, _ := mixture(amounts, []float64{420, 450, 480}, 1e-3, seed)
 	var standards []unmix.Standard
 	refs := &merit.References{}
 	for s, g := range given {
