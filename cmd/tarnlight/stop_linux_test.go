@@ -14,40 +14,6 @@ import (
 	"tarnlight/unmix/outdir"
 )
 
-// tree is everything below a folder with its content.
-func tree(t *testing.T, dir string) map[string]string {
-	t.Helper()
-	out := map[string]string{}
-	err := filepath.WalkDir(dir, func(p string, d os.DirEntry, err error) error {
-		if err != nil || d.IsDir() {
-			return err
-		}
-		b, err := os.ReadFile(p)
-		out[strings.TrimPrefix(p, dir)] = string(b)
-		return err
-	})
-	if err != nil {
-		t.Fatal(err)
-	}
-	return out
-}
-
-func sameTree(t *testing.T, what string, before, after map[string]string) {
-	t.Helper()
-	for name := range after {
-		if _, ok := before[name]; !ok {
-			t.Errorf("%s: %s is new", what, name)
-		}
-	}
-	for name, text := range before {
-		if now, ok := after[name]; !ok {
-			t.Errorf("%s: %s is gone", what, name)
-		} else if now != text {
-			t.Errorf("%s: %s was changed", what, name)
-		}
-	}
-}
-
 // until waits for a file.
 func until(t *testing.T, path string) {
 	t.Helper()
