@@ -13,7 +13,6 @@ import (
 	"strings"
 
 	"tarnlight/eem/scanfile"
-	"tarnlight/eem/survey"
 )
 
 var nan = math.NaN()
@@ -28,10 +27,10 @@ func (s *Survey) root() string {
 }
 
 // resolve lists the raw files of every bottle. A file claimed by two rows is an
-// error; a cell that names nothing rejects its bottle.
+// error, unless it names its samples by their ids; a cell that names nothing rejects
+// its bottle.
 func (s *Survey) resolve() ([][]string, error) {
 	files := make([][]string, len(s.Bottles))
-	owner := map[string]*survey.Row{}
 	for i, b := range s.Bottles {
 		if b.Excluded {
 			continue
@@ -42,15 +41,8 @@ func (s *Survey) resolve() ([][]string, error) {
 			continue
 		}
 		files[i], b.claims = list, list
-		for _, f := range list {
-			if other, taken := owner[f]; taken {
-				return nil, fmt.Errorf("%s:%d: raw file %s belongs to %q (line %d) and to %q (line %d); make the scans cells more exact, for example %q instead of %q",
-					s.Sheet.Path, b.Row.Line, s.short(f), other.ID, other.Line, b.Row.ID, b.Row.Line, exacter(other.Scans), other.Scans)
-			}
-			owner[f] = b.Row
-		}
 	}
-	return files, nil
+	return files, s.share(files)
 }
 
 // exacter suggests a pattern that does not run into longer names.

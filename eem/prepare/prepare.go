@@ -75,6 +75,7 @@ type Bottle struct {
 	raw       *eem.EEM        // up to the inner filter: what blank and scale start from
 	scanned   *eem.Absorbance // of the liquid scanned
 	guesses   []Guess
+	strange   []string   // samples that its file names, when none is the bottle
 	said      []eem.Note // findings as they came, before the quality settings
 	scanFiles []Input    // the raw scans among Files
 	claims    []string   // files that the scans cell names
@@ -117,6 +118,7 @@ type Survey struct {
 	defaultBands []string               // the keys among them that no blank showed
 	trace        func(b *Bottle, step string, e *eem.EEM)
 	cache        *Cache
+	shared       map[string]*sharedFile // raw files that several rows name, by path
 	keepUnit     bool
 	known        *Known
 	noiseOf      map[string]*correct.Noise // from all blanks of a setup
@@ -159,6 +161,7 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 	if err := s.each(ctx, o, "reading", func(i int) { s.Bottles[i].read(s, files[i]) }); err != nil {
 		return nil, err
 	}
+	s.shared = nil
 	if s.cache != nil {
 		s.cache.sweep()
 	}

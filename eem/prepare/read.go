@@ -89,7 +89,11 @@ func (b *Bottle) readAnew(s *Survey, raw *rawFiles, files []string) {
 		if errors.As(err, &repeated) {
 			test = "excitation-repeated"
 		}
-		b.reject(s, test, err.Error())
+		msg := err.Error()
+		if b.strange != nil {
+			msg += fmt.Sprintf("; or give the row the id of one of the samples that the file names (%s)", some(b.strange))
+		}
+		b.reject(s, test, msg)
 		return
 	}
 	if e.Em.Len() < 2 {
@@ -120,9 +124,10 @@ func (b *Bottle) readScans(s *Survey, raw *rawFiles, files []string) ([]eem.Scan
 		if err == nil {
 			b.Files, b.scanFiles = append(b.Files, in), append(b.scanFiles, in)
 			var f *scanfile.File
-			if f, err = scanfile.ReadBytes(in.Path, data, set); err == nil {
-				scans = append(scans, b.own(f)...)
-				for _, n := range f.Notes {
+			if f, err = s.parse(path, in, data, set); err == nil {
+				own, told := b.own(f)
+				scans = append(scans, own...)
+				for _, n := range told {
 					key := n.Test + "\x00" + n.Msg
 					if n.Test != "read-guess" {
 						key = n.Test
@@ -149,15 +154,6 @@ func (b *Bottle) readScans(s *Survey, raw *rawFiles, files []string) ([]eem.Scan
 		}
 	}
 	return scans, true
-}
-
-// own returns the scans of a file that belong to the bottle: where a file names
-// several samples, those of the bottle's id.
-func (b *Bottle) own(f *scanfile.File) []eem.Scan {
-	if names := f.Names(); len(names) > 1 && slices.Contains(names, b.Row.ID) {
-		return f.Of(b.Row.ID)
-	}
-	return f.Scans
 }
 
 // readAbsorbance reads the absorbance and brings it to the liquid scanned and to

@@ -67,7 +67,7 @@ func (s *Survey) sameContent() {
 				owner[in.SHA256] = file{b, in.Path}
 				continue
 			}
-			if o.bottle == b {
+			if o.bottle == b || o.path == in.Path { // one file that names its samples
 				continue
 			}
 			if shared[o.bottle]++; shared[o.bottle] == 1 {
