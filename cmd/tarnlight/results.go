@@ -60,6 +60,7 @@ func (j *job) sampleTable() *report.Table {
 		}
 		set("largest_inner_filter_factor", b.Largest)
 		set("linear_from_nm", b.LinearFrom)
+		set("over_absorbing_percent", 100*b.OverShare)
 		if j.fit != nil {
 			if i := slices.Index(j.fit.IDs, b.Row.ID); i >= 0 && j.fit.Leverage != nil {
 				set("leverage", j.fit.Leverage[i])

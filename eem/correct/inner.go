@@ -122,6 +122,25 @@ func overAbsorbing(e *eem.EEM, ax, am []float64, path, limit float64) over {
 	return o
 }
 
+// OverShare is the share of the measured cells at or above the Rayleigh line whose
+// total absorbance exceeds limit (0: the default of the test absorbance-limit), so
+// that their correction is beyond its range; NaN without absorbance or cells.
+func OverShare(e *eem.EEM, a *eem.Absorbance, g Geometry, limit float64) float64 {
+	if a == nil {
+		return math.NaN()
+	}
+	n := 0
+	for j := range e.Ex.Len() {
+		for k := range e.Em.Len() {
+			if e.Em.At(k) >= e.Ex.At(j) && measured(e, e.Index(j, k)) {
+				n++
+			}
+		}
+	}
+	o := overAbsorbing(e, perCM(a, e.Ex), perCM(a, e.Em), g.path(), defaultLimit("absorbance-limit", limit))
+	return float64(len(o.cells)) / float64(n)
+}
+
 // noteOver flags the bottle with the dilution that would bring it back: the
 // absorbance of the scanned liquid falls as 1 over the dilution.
 func noteOver(e *eem.EEM, o over, limit float64) {

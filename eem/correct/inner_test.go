@@ -79,6 +79,9 @@ func TestInnerFilterLimit(t *testing.T) {
 	if out.Present() != 4 {
 		t.Errorf("%d cells left; over-absorbing cells keep their value", out.Present())
 	}
+	if got := correct.OverShare(e, a, correct.Geometry{}, 2.6); got != 0.75 { // 3.2, 2.75, 2.95 and 2.5
+		t.Errorf("share of cells above 2.6: %g", got)
+	}
 	again, _ := correct.InnerFilter(e, a.Times(1/2.2), correct.Geometry{}, 1.5)
 	if c := testCodes(again); c != "" {
 		t.Errorf("after the dilution it asked for: %q", c)

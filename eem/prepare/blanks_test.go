@@ -116,6 +116,46 @@ func TestContaminationSpectrum(t *testing.T) {
 	}
 }
 
+// A batch of which most bottles failed is rejected, and so is one of two that has
+// neither blank nor scale; the other batch is not.
+func TestBatchesRejected(t *testing.T) {
+	for test, change := range map[string]func(*synth.Survey){
+		"batch-rejected": func(s *synth.Survey) {
+			for i := range s.Bottles {
+				if b := &s.Bottles[i]; b.Measured.Day() == 6 {
+					b.Closed = b.Kind == "sample"
+				}
+			}
+		},
+		"batch-scale": func(s *synth.Survey) {
+			s.Bottles = slices.DeleteFunc(s.Bottles, func(b synth.Bottle) bool { return b.Kind == "blank" && b.Measured.Day() == 6 })
+		},
+	} {
+		for _, limit := range []string{"", "[quality]\nlimit = {batch-rejected = 1}\n"} {
+			s := forty(t)
+			s.Settings = limit
+			change(s)
+			dir := t.TempDir()
+			if err := s.Write(dir); err != nil {
+				t.Fatal(err)
+			}
+			var got []string
+			for _, f := range prepared(t, dir, 0).Flags {
+				if f.Severity == eem.Reject && f.ID == "" {
+					got = append(got, f.Batch+" "+f.Test)
+				}
+			}
+			want := []string{"2031-05-06 " + test}
+			if limit != "" && test == "batch-rejected" {
+				want = nil
+			}
+			if !slices.Equal(got, want) {
+				t.Errorf("%s, %q: rejected are %v, want %v", test, limit, got, want)
+			}
+		}
+	}
+}
+
 // A blank of another day's water is contaminated for the bottles: more of their
 // cells lie below zero than noise explains.
 func TestNegativeAfterBlank(t *testing.T) {

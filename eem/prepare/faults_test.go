@@ -75,6 +75,22 @@ func faults() []change {
 				e.F[i] = min(v, top)
 			}
 		}),
+		{id: id, test: "saturated", bottle: func(b *synth.Bottle) {
+			b.Spoil = func(e *eem.EEM, _ *rand.Rand) {
+				for i, v := range e.F {
+					e.F[i] = min(5*v, 1e6)
+				}
+			}
+		}, folder: edited("survey.toml", "saturation = 0\n", "saturation = 1e6\n")},
+		{id: id, test: "negative", bottle: func(b *synth.Bottle) {
+			b.Spoil = func(e *eem.EEM, _ *rand.Rand) { // a detector that lost its offset in the red
+				for i := range e.F {
+					if e.Em.At(i%e.Em.Len()) > 500 {
+						e.F[i] -= 2000
+					}
+				}
+			}
+		}},
 		spoil(id, "spike", func(e *eem.EEM) { e.F[e.Index(14, 75)] += 3e4 }), // ex 390 / em 495 nm
 		spoil(id, "scan-dropped", func(e *eem.EEM) { clear(e.Row(10)) }),
 		spoil(id, "scan-repeated", func(e *eem.EEM) { copy(e.Row(11), e.Row(10)) }),

@@ -58,6 +58,9 @@ func (b *Bottle) finish(s *Survey) {
 	if b.EEM == nil {
 		return
 	}
+	if set := b.Setting.Correct; b.Largest == b.Largest { // corrected here
+		b.OverShare = correct.OverShare(b.EEM, b.scanned, geometry(set), set.AbsorbanceLimit)
+	}
 	e := b.removeBlank(s, b.EEM)
 	s.tell(b, correct.StepBlank, e)
 	e = b.byDilution(s, b.withNoise(e))

@@ -60,6 +60,7 @@ type Bottle struct {
 	Absorb     *eem.Absorbance // of the liquid in the bottle, nil when none was given
 	Largest    float64         // largest inner-filter factor of a cell, NaN without correction
 	LinearFrom float64         // shortest excitation, nm, from which on ln(10)·A of the liquid scanned is within the linear range; NaN unknown or none
+	OverShare  float64         // of its cells that are above the absorbance limit, NaN where unknown
 	Files      []Input
 	Flags      []eem.Flag
 	Excluded   bool // takes part in nothing
@@ -204,7 +205,7 @@ func (s *Survey) list() error {
 		if err != nil {
 			return fmt.Errorf("%s:%d: %w", s.Sheet.Path, row.Line, err)
 		}
-		b := &Bottle{Row: row, Setting: set, Batch: batchName(row), Excluded: row.Exclude != "", Largest: nan, LinearFrom: nan, area: nan, scale: nan}
+		b := &Bottle{Row: row, Setting: set, Batch: batchName(row), Excluded: row.Exclude != "", Largest: nan, LinearFrom: nan, OverShare: nan, area: nan, scale: nan}
 		if b.Excluded {
 			b.flag(s, eem.Note{Test: "excluded", Severity: eem.Remark, Msg: "excluded: " + row.Exclude})
 		} else if row.ExcludeFromFit != "" {

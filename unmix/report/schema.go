@@ -139,6 +139,7 @@ var Schema = []File{
 		{"region_3", "%", "share of ex 200–250 / em 380–550 nm, fulvic-like"},
 		{"region_4", "%", "share of ex 250–400 / em 280–380 nm, microbial by-product-like"},
 		{"region_5", "%", "share of ex 250–400 / em 380–550 nm, humic-like"},
+		{"over_absorbing_percent", "%", "share of the cells at or above the first Rayleigh line whose total absorbance is above the limit of the inner-filter correction"},
 		{"residual_chi_square", "", "sum of squared residuals over their variance by the noise model, a degree of freedom: 1 is noise alone"},
 		{"residual_runs", "z", "runs of equal sign along emission: below 0, neighbouring residuals are alike (Wald & Wolfowitz)"},
 		{"residual_yardstick", "", "what the residual is held against: the noise model, or differences of replicates, which know how alike the noise of neighbours is"},
