@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"path/filepath"
+	"slices"
 	"strings"
 	"time"
 
@@ -121,7 +122,7 @@ func (b *beginning) draft(ctx context.Context) error {
 	bottles := b.withCells(b.group(files))
 	if b.name == "" {
 		folderNames(bottles, b.set.Sheet.Kinds)
-		bottles = byPath(bottles)
+		bottles = slices.DeleteFunc(byPath(bottles), func(d *drafted) bool { return b.renamed(d, d.id) })
 	} else {
 		bottles = b.distinct(bottles, &survey.Sheet{}, nil)
 	}

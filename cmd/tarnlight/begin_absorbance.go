@@ -10,6 +10,9 @@ import (
 	"tarnlight/eem/survey"
 )
 
+// separators stand between the parts of a name.
+const separators = "_-. "
+
 // How well the name of an absorbance file fits a bottle.
 const (
 	partFits   = 1 // the bottle's name with something before or behind it
@@ -105,10 +108,10 @@ func fit(d *drafted, f *found, p *scanfile.Pattern) int {
 		if base == id {
 			return nameFits
 		}
-		if rest, ok := strings.CutPrefix(base, id); ok && strings.Contains("_-. ", rest[:1]) {
+		if rest, ok := strings.CutPrefix(base, id); ok && strings.IndexByte(separators, rest[0]) >= 0 {
 			best = partFits
 		}
-		if rest, ok := strings.CutSuffix(base, id); ok && strings.Contains("_-. ", rest[len(rest)-1:]) {
+		if rest, ok := strings.CutSuffix(base, id); ok && strings.IndexByte(separators, rest[len(rest)-1]) >= 0 {
 			best = partFits
 		}
 	}

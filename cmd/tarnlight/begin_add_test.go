@@ -131,6 +131,38 @@ func TestBeginProposes(t *testing.T) {
 	}
 }
 
+// A file that names its samples is one bottle each, with the sample's name as its id;
+// one whose name another bottle has already is told.
+func TestBeginDayFile(t *testing.T) {
+	day := func(ids ...string) string {
+		s := "sample,ex_nm,em_nm,intensity\n"
+		for _, id := range ids {
+			for i, ex := range []int{240, 250} {
+				s += fmt.Sprintf("%s,%d,300,%d\n%s,%d,305,%d\n", id, ex, i+1, id, ex, i+2)
+			}
+		}
+		return s
+	}
+	dir := folder(t, map[string]string{"survey.toml": "[sheet]\nname = \"{date}\"\n"})
+	if r := call("begin", dir).want(t, exitFailed); !strings.Contains(r.err, "{id} is missing") {
+		t.Errorf("a pattern without an id: %s", r.err)
+	}
+	put(t, dir, "survey.toml", "[sheet]\nname = \"{date} {id}\"\nkinds = {PW = \"blank\"}\n")
+	put(t, dir, "2031-05-06 run.csv", day("PW1", "W 1", "W2"))
+	old(t, dir)
+	call("begin", dir, "--add", "--csv").want(t, exitDone)
+	put(t, dir, "2031-05-07 run.csv", day("W3", "W2"))
+	old(t, dir)
+	if r := call("begin", dir, "--add").want(t, exitDoubt); !strings.Contains(r.err, "it holds a sample W2, and another bottle has that id") {
+		t.Errorf("a name twice: %s", r.err)
+	}
+	got := sheetRows(t, dir, "runsheet.csv")
+	want := "[[PW1 blank 2031-05-06 run.csv  2031-05-06] [W 1 sample 2031-05-06 run.csv  2031-05-06] [W2 sample 2031-05-06 run.csv  2031-05-06] [W3 sample 2031-05-07 run.csv  2031-05-07]]"
+	if fmt.Sprint(got) != want {
+		t.Errorf("rows %v, want %s", got, want)
+	}
+}
+
 // Names that a cell of the run sheet cannot hold, or a pattern would take for more:
 // each bottle's cell names its own files and no other.
 func TestBeginOddNames(t *testing.T) {

@@ -20,6 +20,7 @@ type drafted struct {
 	named
 	dir         string // of its files, relative to the root
 	stem        string // name of its files without excitation and ending
+	calls       string // name that a file of several samples has for it, which must be its id; else empty
 	first       string // the id that its name gives, without what was put behind it
 	files       []string
 	youngest    time.Time
@@ -117,8 +118,8 @@ func (b *beginning) nameOf(f *found, w *naming) (n named, stem, why string) {
 	}
 	n.id = strings.TrimLeft(norm.NFC.String(strings.ToValidUTF8(stem, "_")), formulaMarks)
 	n.kind = guessKind(n.id, w.kinds)
-	if i := strings.LastIndexAny(n.id, "_- ."); i > 0 && duplicateWords[strings.ToLower(n.id[i+1:])] {
-		n.id, n.repeats = strings.TrimRight(n.id[:i], "_- ."), true
+	if i := strings.LastIndexAny(n.id, separators); i > 0 && duplicateWords[strings.ToLower(n.id[i+1:])] {
+		n.id, n.repeats = strings.TrimRight(n.id[:i], separators), true
 	}
 	return n, stem, ""
 }
@@ -152,7 +153,7 @@ func (b *beginning) samplesOf(f *found, w *naming) []*drafted {
 	}
 	var out []*drafted
 	for _, s := range f.guess.Samples {
-		d := &drafted{named: named{id: s, kind: guessKind(s, w.kinds), day: day}, dir: path.Dir(f.path), stem: s, first: s}
+		d := &drafted{named: named{id: s, kind: guessKind(s, w.kinds), day: day}, dir: path.Dir(f.path), stem: s, first: s, calls: s}
 		d.take(f)
 		out = append(out, d)
 	}
@@ -246,6 +247,9 @@ func (b *beginning) distinct(list []*drafted, sheet *survey.Sheet, claims map[st
 			b.leaveOpen(d.files[0], "by its name it belongs to %s, whose row is there (line %d) and does not name it; correct that row by hand", late.ID, late.Line)
 			continue
 		}
+		if b.renamed(d, id) {
+			continue
+		}
 		switch d.id = id; {
 		case d.kind != survey.Sample:
 		case d.n > 1 || d.repeats:
@@ -261,6 +265,16 @@ func (b *beginning) distinct(list []*drafted, sheet *survey.Sheet, claims map[st
 		out = append(out, d)
 	}
 	return out
+}
+
+// renamed tells of a sample whose file has its name, but that cannot have it as its
+// id: it could not be found in the file.
+func (b *beginning) renamed(d *drafted, id string) bool {
+	if d.calls == "" || d.calls == id {
+		return false
+	}
+	b.leaveOpen(d.files[0], "it holds a sample %s, and another bottle has that id; give the sample an id of its own in the file", d.calls)
+	return true
 }
 
 // free finds an id that is not taken, or the row of the same bottle.

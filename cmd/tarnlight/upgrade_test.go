@@ -65,8 +65,8 @@ func TestCompareTellsWhy(t *testing.T) {
 	}
 	call("compare", a, b, "--tolerance", "0.01").want(t, exitDone)
 	text := read(t, a, "contributions.csv")
-	row := text[strings.Index(text, "W2,b,"):]
-	row = row[:strings.Index(row, "\n")]
+	_, rest, _ := strings.Cut(text, "\nW2,b,")
+	row, _, _ := strings.Cut("W2,b,"+rest, "\n")
 	cells := strings.Split(row, ",")
 	cells[9] = "J"
 	put(t, dir, "other/contributions.csv", strings.Replace(text, row, strings.Join(cells, ","), 1))
