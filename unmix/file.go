@@ -230,6 +230,9 @@ type Model struct {
 	Corrections []string  `json:"corrections"`
 	Settings    string    `json:"settings"`
 	Likeness    *Likeness `json:"likeness,omitempty"`
+	// Yardstick is what noise looks like in the residuals of the model's own bottles; a
+	// new bottle's are held against it, whatever else is measured beside. nil: unknown.
+	Yardstick *Yardstick `json:"yardstick,omitempty"`
 	// Instrument is how well the measurements behind the model repeat themselves; it
 	// stands in for what a new batch is too small to tell. nil: unknown.
 	Instrument *Instrument `json:"instrument,omitempty"`

@@ -364,7 +364,7 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 	j.reach(bottles, method, extra)
 	src := j.sources(r)
 	spreads := merit.Spreads(j.cube, r, src)
-	yard := merit.NewYardstick(j.cube, r, j.pairs())
+	yard := j.yardstick(r)
 	for i := range spreads {
 		spreads[i].Yard = yard
 	}

@@ -105,6 +105,7 @@ func (j *job) printSummary(s streams) error {
 		fmt.Fprintf(s.err, "%s that the last results lack; what follows speaks of these\n", eem.Count(st.Bottles["new"], "bottle"))
 	}
 	fmt.Fprintln(s.err, st.line())
+	j.tellChances(s.err)
 	if w := j.worst(3); len(w) > 0 {
 		fmt.Fprintln(s.err, "look at first:")
 		for _, f := range w {

@@ -24,6 +24,7 @@ func (j *job) unknowns(judged *merit.Judged, r *unmix.Resolution, bottles []meri
 			rows = append(rows, b.Row)
 		}
 	}
+	judged.Searched = len(rows)
 	us, err := merit.FindUnknowns(j.cube, r, rows, src, judged.Spreads)
 	if err != nil {
 		return err

@@ -33,7 +33,7 @@ func search(t testing.TB, j *job) *merit.Unknown {
 // noise of a cell: found at 5 and 20, its peak within a grid step and in the right
 // samples.
 func TestPlantedUnknown(t *testing.T) {
-	n, long := surveys(t, 1)
+	n, long := surveys(t, 2)
 	dye := synth.Substance("dyestuff")
 	all := []float64{5}
 	if long {

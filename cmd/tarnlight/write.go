@@ -27,7 +27,7 @@ func (j *job) write(stage *outdir.Staging) error {
 	dir := stageDir(stage)
 	for _, t := range []*report.Table{
 		j.contributionTable(), j.sampleTable(), j.flagTable(), j.componentTable(), j.modelTable(), j.splitTable(),
-		j.splitSpectra(), j.batchTable(), j.calibrationTable(), j.chartTable(), j.blankTable(), j.budgetTable(), j.stepTable(), j.limitsTable(),
+		j.splitSpectra(), j.batchTable(), j.calibrationTable(), j.chartTable(), j.blankTable(), j.budgetTable(), j.stepTable(), j.limitsTable(), j.testTable(),
 	} {
 		if err := t.WriteFile(dir); err != nil {
 			return err
@@ -161,6 +161,11 @@ func (j *job) describe(m *unmix.Model, r *unmix.Resolution) {
 	}
 	if l, err := unmix.NewLikeness(value, r.Set.Len(), left, 0.01); err == nil {
 		m.Likeness = l
+	}
+	if len(j.judge) > 0 {
+		if y := j.judge[len(j.judge)-1].Yardstick(); y != nil && y.Pairs > 0 {
+			m.Yardstick = y
+		}
 	}
 }
 

@@ -1,6 +1,19 @@
 package main
 
-import "tarnlight/eem/survey"
+import (
+	"tarnlight/eem/survey"
+	"tarnlight/unmix"
+	"tarnlight/unmix/merit"
+)
+
+// yardstick is what the residuals of r are held against: differences of replicates,
+// or, for a fixed model, what the model's own bottles showed.
+func (j *job) yardstick(r *unmix.Resolution) *unmix.Yardstick {
+	if j.applied != nil {
+		return j.applied.Yardstick
+	}
+	return merit.NewYardstick(j.cube, r, j.pairs())
+}
 
 // pairs lists the rows of bottles and their laboratory replicates at one dilution,
 // whose residuals differ by noise alone.

@@ -6,6 +6,8 @@ import (
 	"strconv"
 	"strings"
 
+	"gonum.org/v1/gonum/stat/distuv"
+
 	"tarnlight/eem"
 	"tarnlight/unmix"
 )
@@ -36,6 +38,8 @@ type Judged struct {
 	Flags         []eem.Flag
 	Structure     []Moran  // one a bottle; zero where it is not in the resolution
 	Spreads       []Spread // one a row of the resolution
+	Tested        int      // bottles whose residual was tested
+	Searched      int      // bottles that were searched for an unknown
 
 	Unknown []*Unknown           // what was found beyond the model
 	Beyond  []unmix.Contribution // its contributions, bottle after bottle
@@ -51,6 +55,9 @@ func Judge(r *unmix.Resolution, spreads []Spread, bottles []Bottle, x func(row i
 		if b.Row >= 0 {
 			r.ResidualTo(dst, x(b.Row), b.Row)
 			j.Structure[i] = MoranI(dst, r.Set.Grid.Ex.Len(), r.Set.Grid.Em.Len())
+			if r.Fits[b.Row].Usable && !b.Unlike {
+				j.Tested++
+			}
 			for _, f := range fitFlags(r, &spreads[b.Row], b, j.Structure[i], limit) {
 				f = accept(f)
 				j.Flags = append(j.Flags, f)
@@ -96,7 +103,7 @@ func fitFlags(r *unmix.Resolution, s *Spread, b Bottle, m Moran, limit func(stri
 		add("unexplained", eem.Doubt, fit.Explained/100, lim,
 			fmt.Sprintf("the model explains %.1f %% of the signal; the residual is largest at ex %s / em %s nm: something in this bottle is not in the model (%s)", fit.Explained, eem.NM(fit.HotEx), eem.NM(fit.HotEm), s.residual()))
 	} else if structured {
-		add("structure", eem.Remark, score, limit("structure"), "the residual is not noise alone: "+s.residual())
+		add("structure", eem.Remark, score, limit("structure"), fmt.Sprintf("the residual is not noise alone (by chance one bottle in %s shows such): %s", digits(1/distuv.UnitNormal.Survival(limit("structure")), 2), s.residual()))
 	}
 	return out
 }
@@ -108,7 +115,7 @@ func (s *Spread) residual() string {
 	if s.ChiSquare == s.ChiSquare {
 		text += fmt.Sprintf("; its variance is %s times that of the noise model, runs along emission Z %s", digits(s.ChiSquare, 3), digits(s.Runs, 2))
 	}
-	return text + "; " + s.Yard.text()
+	return text + "; " + heldAgainst(s.Yard)
 }
 
 // contribution judges component f of bottle b.

@@ -82,17 +82,17 @@ type Spread struct {
 	U, DF                             []float64 // combined standard uncertainty, effective degrees of freedom
 	Lower, Upper                      []float64 // of the 95 % interval, 0 or more
 	Critical, Detection, Quantifiable []float64
-	Computed                          []Limits   // what the budget gives where the laboratory's own limits took its place; nil elsewhere
-	Cov                               []float64  // F × F covariance of the contributions above zero
-	Terms                             []Term     // largest first for the first component; not given ones last
-	Sums                              []Sum      // of the pairs that cannot be told apart
-	Yard                              *Yardstick // what the residual is held against; nil: the noise model
-	Hot                               Hot        // where the residual stands out most
-	Runs                              float64    // Z of the runs of signs along emission: below 0, neighbours are alike
-	NoiseRMS                          float64    // what noise alone would leave, intensity
-	ChiSquare                         float64    // Σ(residual²/variance) over the degrees of freedom: 1 is noise alone
-	Misfit                            float64    // variance of the residual beyond noise; 0 where noise explains it
-	Alike                             [2]float64 // correlation of what is beyond noise with its neighbours, by excitation and emission
+	Computed                          []Limits         // what the budget gives where the laboratory's own limits took its place; nil elsewhere
+	Cov                               []float64        // F × F covariance of the contributions above zero
+	Terms                             []Term           // largest first for the first component; not given ones last
+	Sums                              []Sum            // of the pairs that cannot be told apart
+	Yard                              *unmix.Yardstick // what the residual is held against; nil: the noise model
+	Hot                               Hot              // where the residual stands out most
+	Runs                              float64          // Z of the runs of signs along emission: below 0, neighbours are alike
+	NoiseRMS                          float64          // what noise alone would leave, intensity
+	ChiSquare                         float64          // Σ(residual²/variance) over the degrees of freedom: 1 is noise alone
+	Misfit                            float64          // variance of the residual beyond noise; 0 where noise explains it
+	Alike                             [2]float64       // correlation of what is beyond noise with its neighbours, by excitation and emission
 }
 
 // Largest returns the terms in falling order of what they contribute to component f,

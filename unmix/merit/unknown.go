@@ -123,7 +123,7 @@ func (s *search) hold(ex, em []float64) (*Unknown, error) {
 			return nil, nil
 		}
 	}
-	u := &Unknown{ExNM: s.c.Ex.At(peak(ex)), EmNM: s.c.Em.At(peak(em))}
+	u := &Unknown{ExNM: s.c.Ex.At(clearPeak(s.c.Ex, ex)), EmNM: s.c.Em.At(clearPeak(s.c.Em, em))}
 	u.Component = unmix.Component{Name: fmt.Sprintf("unknown %s/%s", eem.NM(u.ExNM), eem.NM(u.EmNM)), Ex: ex, Em: em, Scale: 1}
 	set := *s.r.Set
 	set.Components = append(slices.Clone(s.r.Set.Components), u.Component)

@@ -288,81 +288,157 @@ func (s *search) sum(on *stretch, of func(i int) float64) rowSums {
 	return out
 }
 
-// fit alternates amounts and spectra. Of a template m the model leaves p; with the
-// amounts a that rows show of it, the mean of their residuals is what is wrong with
-// p, so that the next m is the nearest non-negative ex × em to m_old − (what of it
-// rows do not show). It stops where no loading moves by more than settled, and says
+// fit alternates amounts and spectra: with the amounts a that rows show of a template,
+// the mean of their residuals over a is the template less what the model takes of it,
+// and the next template is the non-negative ex × em that fits this best beside any
+// amounts of the model. It stops where no loading moves by more than settled, and says
 // false where nothing positive is left.
 func (s *search) fit(on *stretch, from []float64) (ex, em []float64, ok bool) {
-	const rounds, settled = 40, 1e-6
-	target := from
+	const rounds, settled = 60, 1e-6
+	f := s.factor(on, from, s.w[on.from:on.to])
+	f.ridge = seen * f.largest()
+	ex, em = f.flat()
+	for range 30 {
+		f.step(ex, em)
+	}
 	for range rounds {
-		oldEx, oldEm := ex, em
-		ex, em = s.rankOne(target, on)
 		if slices.Max(ex) == 0 || slices.Max(em) == 0 {
 			return ex, em, false
 		}
-		if oldEx != nil && floats.Distance(ex, oldEx, math.Inf(1)) < settled && floats.Distance(em, oldEm, math.Inf(1)) < settled {
-			break
-		}
-		m, p := s.template(ex, em, on)
+		_, p := s.template(ex, em, on)
 		y := s.yardstick(p, on)
 		sums := s.sum(on, func(i int) float64 { return s.amount(i, y) })
-		target = make([]float64, on.len())
-		for q := range target {
+		w := make([]float64, on.len())
+		for q := range w {
 			if weight := sums.square - sums.less[q]; weight > 1e-9*sums.square {
-				target[q] = m[q] - p[q] + sums.map1[q]/weight
+				w[q] = s.w[on.from+q] * weight
+				sums.map1[q] /= weight
 			}
+		}
+		f := s.factor(on, sums.map1, w)
+		f.ridge = 1 / (largestLoading * largestLoading)
+		oldEx, oldEm := slices.Clone(ex), slices.Clone(em)
+		for range 3 {
+			f.step(ex, em)
+		}
+		if floats.Distance(ex, oldEx, math.Inf(1)) < settled && floats.Distance(em, oldEm, math.Inf(1)) < settled {
+			break
 		}
 	}
 	return ex, em, true
 }
 
-// rankOne returns the non-negative ex × em, of maximum 1, nearest to a map on a
-// stretch, by alternating least squares; loadings that no cell shows are 0.
-func (s *search) rankOne(m []float64, on *stretch) (ex, em []float64) {
-	nj, nk := s.c.Ex.Len(), s.c.Em.Len()
-	ex, em = make([]float64, nj), slices.Repeat([]float64{1}, nk)
-	w, ja, ka := s.w[on.from:on.to], s.ja[on.from:on.to], s.ka[on.from:on.to]
-	wm := make([]float64, len(m))
-	floats.MulTo(wm, w, m)
-	num, den := make([]float64, nj+nk), make([]float64, nj+nk)
-	for range 30 {
-		clear(num)
-		clear(den)
-		nx, dx, nm, dm := num[:nj], den[:nj], num[nj:], den[nj:]
-		for q, j := range ja {
-			v := em[ka[q]]
-			nx[j], dx[j] = nx[j]+wm[q]*v, dx[j]+w[q]*v*v
-		}
-		positivePart(ex, nx, dx)
-		for q, k := range ka {
-			v := ex[ja[q]]
-			nm[k], dm[k] = nm[k]+wm[q]*v, dm[k]+w[q]*v*v
-		}
-		positivePart(em, nm, dm)
-	}
-	return ex, em
+const (
+	// seen is the share of the best-seen loading's information that halves a loading
+	// of the first guess: those that hardly any cell shows would be noise over nothing.
+	seen = 0.02
+	// largestLoading is what a loading may be before anything is measured, a standard
+	// deviation: those that hardly any cell shows stay small.
+	largestLoading = 0.2
+	// likeliest is how much of a component of the model an unknown looks like before
+	// anything is measured, a standard deviation, its own size being 1: of two mixtures
+	// that differ by noise the one that needs less of the model is taken.
+	likeliest = 1
+)
+
+// factor fits a map on a stretch by ex × em beside the model, by least squares with
+// the weights w, one over variances.
+type factor struct {
+	s     *search
+	on    *stretch
+	r, w  []float64
+	gram  []float64 // K'WK
+	kr    []float64 // K'Wr
+	ridge float64
 }
 
-// seen is the share of the best-seen loading's information that halves a loading
-// (a ridge): those that hardly any cell shows would be noise over nothing.
-const seen = 0.02
-
-// positivePart sets dst = num/(den + ridge), not below 0, at a maximum of 1.
-func positivePart(dst, num, den []float64) {
-	top := 0.0
-	ridge := seen * slices.Max(den)
-	for i := range dst {
-		dst[i] = 0
-		if den[i] > 0 {
-			dst[i] = math.Max(0, num[i]/(den[i]+ridge))
-		}
-		top = math.Max(top, dst[i])
+func (s *search) factor(on *stretch, r, w []float64) *factor {
+	f := &factor{s: s, on: on, r: r, w: w, gram: make([]float64, s.n*s.n), kr: make([]float64, s.n)}
+	for q, v := range w {
+		k := f.row(q)
+		addOuter(f.gram, k, v)
+		axpy(v*r[q], k, f.kr)
 	}
-	if top > 0 {
-		for i := range dst {
-			dst[i] /= top
+	return f
+}
+
+// row is the model in cell q of the stretch.
+func (f *factor) row(q int) []float64 {
+	l := f.on.from + q
+	return f.s.a[l*f.s.n : (l+1)*f.s.n]
+}
+
+func (f *factor) flat() (ex, em []float64) {
+	return slices.Repeat([]float64{1}, f.s.c.Ex.Len()), slices.Repeat([]float64{1}, f.s.c.Em.Len())
+}
+
+// largest is the largest information on a loading of either mode with the other flat.
+func (f *factor) largest() float64 {
+	den := make([]float64, f.s.c.Ex.Len())
+	for q, v := range f.w {
+		den[f.s.ja[f.on.from+q]] += v
+	}
+	return slices.Max(den)
+}
+
+// step replaces ex, given em, and then em, given the new ex.
+func (f *factor) step(ex, em []float64) {
+	ja, ka := f.s.ja[f.on.from:f.on.to], f.s.ka[f.on.from:f.on.to]
+	f.mode(ex, em, ja, ka)
+	f.mode(em, ex, ka, ja)
+}
+
+// size is the information in ex × em: its square over the variance of the noise.
+func (f *factor) size(dst, other []float64, at, across []int32) float64 {
+	sum := 0.0
+	for q, w := range f.w {
+		m := dst[at[q]] * other[across[q]]
+		sum += w * m * m
+	}
+	return sum
+}
+
+// mode replaces the loadings dst of one mode, not below 0 and at a maximum of 1, by
+// those that fit best together with the amounts y of the model:
+//
+//	D·dst + B'y = num,  B·dst + (K'WK)y = K'Wr
+//
+// with D diagonal, so that only the model's own few equations are solved.
+func (f *factor) mode(dst, other []float64, at, across []int32) {
+	n := f.s.n
+	num, den, b := make([]float64, len(dst)), slices.Repeat([]float64{f.ridge}, len(dst)), make([]float64, len(dst)*n)
+	for q, w := range f.w {
+		if v := w * other[across[q]]; v != 0 {
+			i := int(at[q])
+			num[i] += v * f.r[q]
+			den[i] += v * other[across[q]]
+			axpy(v, f.row(q), b[i*n:(i+1)*n])
 		}
+	}
+	s, rhs := slices.Clone(f.gram), slices.Clone(f.kr)
+	for i, d := range den {
+		if d > 0 {
+			addOuter(s, b[i*n:(i+1)*n], -1/d)
+			axpy(-num[i]/d, b[i*n:(i+1)*n], rhs)
+		}
+	}
+	size := f.size(dst, other, at, across)
+	for h := range n {
+		s[h*n+h] += f.gram[h*n+h] * (1e-9 + 1/(likeliest*likeliest*size))
+	}
+	y := make([]float64, n)
+	if inv := inverse(s, n, all(n)); inv != nil {
+		for h := range y {
+			y[h] = floats.Dot(inv[h*n:(h+1)*n], rhs)
+		}
+	}
+	for i, d := range den {
+		dst[i] = 0
+		if d > 0 {
+			dst[i] = math.Max(0, (num[i]-floats.Dot(b[i*n:(i+1)*n], y))/d)
+		}
+	}
+	if top := slices.Max(dst); top > 0 {
+		floats.Scale(1/top, dst)
 	}
 }

@@ -8,6 +8,7 @@ import (
 	"testing"
 
 	"tarnlight/eem"
+	"tarnlight/unmix"
 	"tarnlight/unmix/merit"
 )
 
@@ -86,10 +87,10 @@ func TestYardstick(t *testing.T) {
 			t.Errorf("ρ %g: structure of the differences %g", rho, z)
 		}
 	}
-	if y := (&merit.Yardstick{}); y.Score(3) != 3 || y.String() != "noise model" {
+	if y := (&unmix.Yardstick{}); y.Score(3) != 3 || y.String() != "noise model" {
 		t.Errorf("no replicates: %v", y)
 	}
-	if y := (&merit.Yardstick{Pairs: 3, Structure: -2}); y.Score(6) != 6/math.Sqrt(1+1.0/3) {
+	if y := (&unmix.Yardstick{Pairs: 3, Structure: -2}); y.Score(6) != 6/math.Sqrt(1+1.0/3) {
 		t.Error("differences less alike than noise move the test")
 	}
 }

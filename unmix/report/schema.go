@@ -331,4 +331,15 @@ var Schema = []File{
 		{"others_percent", "%", "the same of the batch's other blanks, their mean; empty where there is none"},
 		{"doubtful", "", "true where the blank's brightest spot is above the limit of the test blank-level"},
 	}},
+	{"tests.csv", "statistical tests that were made many times, and how many findings chance alone would give", []Column{
+		{"test", "", "code of the test; detected is the decision whether a component is there"},
+		{"method", "", "the method it concerns; empty for none"},
+		{"component", "", "the component, of detected"},
+		{"of", "", "what was tested"},
+		{"n", "", "how many of them"},
+		{"rate", "", "probability that one is found by chance where nothing is"},
+		{"expected_by_chance", "", "n times rate"},
+		{"found", "", "how many were found"},
+		{"note", "", "how the rate is meant"},
+	}},
 }

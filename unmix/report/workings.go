@@ -22,6 +22,7 @@ func (r *results) writeWorkings(p *pass) error {
 	r.opticsSheet(b)
 	r.budgetSheet(b)
 	r.tableSheet(b, "Limits", "limits.csv", "Limits of detection: those in force, and the published forms beside them")
+	r.tableSheet(b, "Tests", "tests.csv", "Tests over many bottles, and what chance alone would give")
 	r.tableSheet(b, "Batches", "batches.csv", "Batches")
 	r.tableSheet(b, "Calibration", "calibration.csv", "Given, found and recovery of standards, controls and spikes")
 	r.tableSheet(b, "Samples", "samples.csv", "Run sheet and fit, one row a bottle")
