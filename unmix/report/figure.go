@@ -39,13 +39,18 @@ type figure struct {
 
 // write writes NAME.svg, NAME.png and NAME.csv to dir.
 func (f *figure) write(dir string) error {
-	img := vgimg.NewWith(vgimg.UseWH(figureWidth, f.height), vgimg.UseDPI(figureDPI))
-	f.draw(draw.New(img))
 	f.numbers.Name = f.name + ".csv"
 	return errors.Join(
-		writeFile(filepath.Join(dir, f.name+".png"), func(w io.Writer) error { return png.Encode(w, img.Image()) }),
+		writeFile(filepath.Join(dir, f.name+".png"), f.png),
 		writeFile(filepath.Join(dir, f.name+".svg"), func(w io.Writer) error { _, err := w.Write(f.svg()); return err }),
 		f.numbers.WriteFile(dir))
+}
+
+// png writes the picture as PNG.
+func (f *figure) png(w io.Writer) error {
+	img := vgimg.NewWith(vgimg.UseWH(figureWidth, f.height), vgimg.UseDPI(figureDPI))
+	f.draw(draw.New(img))
+	return png.Encode(w, img.Image())
 }
 
 // svg returns the picture as SVG. Two properties of the library's writer are put

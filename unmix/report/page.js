@@ -51,6 +51,7 @@ function sortBy(col) {
   body.append(...order.map(i => rows[i]));
   [...table.tHead.rows[0].cells].forEach((th, i) =>
     th.setAttribute("aria-sort", i !== col ? "none" : sorted.down ? "descending" : "ascending"));
+  filter();
 }
 table.tHead.rows[0].addEventListener("click", e => {
   const b = e.target.closest("button");
@@ -71,17 +72,18 @@ function matcher(q) {
   return t => t.toLowerCase().includes(q);
 }
 const filters = $("filters");
+let room = 250; // rows laid out at once; the others follow when the browser has time
 function filter() {
   const verdicts = new Set([...filters.querySelectorAll("[name=verdict]:checked")].map(i => i.value));
   const kind = $("kind").value, test = $("test").value, q = $("search").value.trim().toLowerCase();
   const cols = [...table.querySelectorAll(".filter input")].filter(i => i.value.trim() !== "").map(i => [+i.dataset.col, matcher(i.value)]);
   let n = 0;
-  for (const r of rows) {
+  for (const r of body.rows) {
     const b = D.bottles[r.dataset.i];
     const show = verdicts.has(r.dataset.verdict) && (!kind || (kind === "*" ? r.dataset.other === undefined : r.dataset.kind === kind)) && (!test || r.dataset.tests.includes(" " + test + " ")) &&
       (!q || r.textContent.toLowerCase().includes(q) || b.note.toLowerCase().includes(q)) && cols.every(([c, f]) => f(text(r, c), value(r, c)));
-    r.hidden = !show;
     n += show;
+    if (r.hidden !== (!show || n > room)) r.hidden = !r.hidden;
   }
   $("count").textContent = n + " of " + rows.length + " shown";
 }
@@ -95,14 +97,27 @@ $("all").addEventListener("click", () => {
 });
 table.tHead.addEventListener("input", filter);
 filter();
+const later = window.requestIdleCallback || (f => setTimeout(f, 50));
+function grow() {
+  if (room >= rows.length) return;
+  room += 250;
+  filter();
+  later(grow);
+}
+later(grow);
+window.addEventListener("beforeprint", () => { room = rows.length; filter(); });
 
 // maps: unpack
 const colours = hex => { const out = []; for (let i = 0; i < hex.length; i += 6) out.push([0, 2, 4].map(k => parseInt(hex.substr(i + k, 2), 16))); return out; };
 const SEQ = colours(D.seq), DIV = colours(D.div), MISSING = colours(D.missing)[0], HATCH = colours(D.hatch)[0];
+let packedMaps = null;
+function packedMap(i) {
+  if (!packedMaps) packedMaps = ($("packed") ? $("packed").textContent : "").split("\n");
+  return packedMaps[i] || "";
+}
 async function unpack(i) {
-  const el = $("map" + i);
-  if (!el) return null;
-  const bin = atob(el.textContent), packed = new Uint8Array(bin.length);
+  if (!packedMap(i)) return null;
+  const bin = atob(packedMap(i)), packed = new Uint8Array(bin.length);
   for (let k = 0; k < bin.length; k++) packed[k] = bin.charCodeAt(k);
   const stream = new Blob([packed]).stream().pipeThrough(new DecompressionStream("gzip"));
   const raw = new Uint8Array(await new Response(stream).arrayBuffer());
@@ -318,7 +333,7 @@ async function open(row, focus) {
   try { data = await unpack(i); } catch (e) { $("readout").textContent = "This browser cannot unpack the maps; open the picture instead."; }
   if (turn !== opening) return;
   document.querySelector(".maps").hidden = document.querySelector(".slices").hidden = !data;
-  if (!data) { if (!$("map" + i)) $("readout").textContent = "No map: nothing was measured, or the survey is too large for the page."; return; }
+  if (!data) { if (!packedMap(i)) $("readout").textContent = "No map: nothing was measured, or the survey is too large for the page."; return; }
   S.data = data;
   if (S.j < 0) {
     const r = data.layer[1 + S.method] || data.layer[0];

@@ -24,7 +24,7 @@ type pageRow struct {
 	Index                    int
 	ID, Kind, Tests, Verdict string
 	Class                    string
-	Other                    bool
+	Other, Late              bool // Late: shown by the script, when the page stands
 	Cells                    []pageCell
 }
 
@@ -49,7 +49,7 @@ func (r *results) pageRows(v *page) {
 	tests := map[string]bool{}
 	for i, b := range r.bottles {
 		row := r.pageRow(b, known)
-		row.Index, row.Tests = i, r.bottleTests(b, tests)
+		row.Index, row.Tests, row.Late = i, r.bottleTests(b, tests), i >= 250
 		if !slices.Contains(v.Kinds, row.Kind) {
 			v.Kinds = append(v.Kinds, row.Kind)
 		}

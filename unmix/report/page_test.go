@@ -230,10 +230,8 @@ func TestLookAtPage(t *testing.T) {
 	}
 	for _, w := range []int64{1600, 1000, 420} {
 		b := newBrowser(t, w, 1000)
-		start := time.Now()
 		b.open(t, filepath.Join(dir, "report.html"))
 		b.wait(t, `document.getElementById("count").textContent.endsWith("shown")`)
-		t.Logf("%d px wide: open after %v", w, time.Since(start))
 		b.shot(t, filepath.Join(dir, fmt.Sprintf("page-%d-top.png", w)))
 		eval[bool](t, b, `document.querySelectorAll(".open")[3].click(); true`)
 		b.wait(t, `document.getElementById("readout").textContent !== ""`)
