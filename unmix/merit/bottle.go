@@ -413,6 +413,9 @@ func (b *bottle) references() {
 		}
 		b.addTensor("loadings", "survey", 0, text, b.m.load)
 	}
+	if b.m.floor != nil {
+		b.addLinear(CauseFloor, "survey", 0, "mean of noise without its negative half, where a spectrum is zero", b.m.floor)
+	}
 	b.frozen()
 	if e.src.StockMissing {
 		b.silent = append(b.silent, Term{Cause: "standards", Scope: "survey", Source: "not given"})

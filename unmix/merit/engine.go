@@ -206,7 +206,8 @@ type mask struct {
 	dose  [][]float64 // by dose: what a relative error of it does to K'K
 	ref   []float64   // [h][h'][g][g']: noise of the references
 	load  []float64   // the same: loadings
-	apart []float64   // the same: errors of the standards that each wavelength has for itself
+	floor [][]float64 // effects: loadings cut at zero
+	apart []float64   // as ref: errors of the standards that each wavelength has for itself
 	// scatter, by group, is the same: the standards' own scatter.
 	scatter [][]float64
 	kx      []float64   // [j][h][g]: Σ K_h K_g over the cells of one excitation
@@ -272,6 +273,7 @@ func (m *mask) make(e *engine) {
 	}
 	if e.src.Loadings != nil {
 		m.moves(e)
+		m.floors(e)
 	}
 	if e.hasLoadingU() {
 		m.loadingU(e)
