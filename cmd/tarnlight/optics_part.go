@@ -64,12 +64,13 @@ func (j *job) opticsFlags() []eem.Flag {
 		}
 		bottles++
 		for _, ix := range j.indices(b) {
-			if ix.Refused == "" || !listed(ix.Name) {
+			column, fluorescent := listed(ix.Name)
+			if ix.Refused == "" || !fluorescent {
 				continue
 			}
 			r := at[ix.Name]
 			if r == nil {
-				r = &refusal{name: ix.Name, id: b.Row.ID, why: ix.Refused}
+				r = &refusal{name: column, id: b.Row.ID, why: ix.Refused}
 				at[ix.Name] = r
 				list = append(list, r)
 			}
@@ -87,14 +88,15 @@ func (j *job) opticsFlags() []eem.Flag {
 		Msg: "indices not given: " + strings.Join(words, "; ")}))
 }
 
-// listed says whether an index rests on fluorescence and has a column in samples.csv.
-func listed(name string) bool {
-	for column, n := range opticsNames {
+// listed returns the column of an index in samples.csv, and whether it rests on
+// fluorescence.
+func listed(name string) (column string, fluorescent bool) {
+	for c, n := range opticsNames {
 		if n == name {
-			return !strings.HasPrefix(column, "abs") && !slices.Contains(absorbing, name)
+			return c, !strings.HasPrefix(c, "abs") && !slices.Contains(absorbing, name)
 		}
 	}
-	return false
+	return "", false
 }
 
 // absorbing are the other indices that rest on absorbance alone.
