@@ -102,6 +102,40 @@ func (a Axis) Bracket(nm float64) (i int, w float64, ok bool) {
 	return i, (nm - a.nm[i]) / (a.nm[i+1] - a.nm[i]), true
 }
 
+// Bridged says whether nm lies between two points of a that are no further apart
+// than half again its usual step, or on a point: one scan that is missing among
+// equally spaced ones is not bridged.
+func (a Axis) Bridged(nm float64) bool { return !a.gap(nm, a.usualStep()) }
+
+// gaps says which points of b lie in gaps of a.
+func (a Axis) gaps(b Axis) []bool {
+	usual := a.usualStep()
+	out := make([]bool, b.Len())
+	for i, nm := range b.nm {
+		out[i] = a.gap(nm, usual)
+	}
+	return out
+}
+
+func (a Axis) gap(nm, usual float64) bool {
+	i, w, ok := a.Bracket(nm)
+	return ok && w > 0 && a.nm[i+1]-a.nm[i] > 1.5*usual+sameNM
+}
+
+// usualStep is the median distance of neighbours, the lower one of two, nm; infinite
+// for fewer than four points, of which none is usual.
+func (a Axis) usualStep() float64 {
+	if len(a.nm) < 4 {
+		return math.Inf(1)
+	}
+	d := make([]float64, len(a.nm)-1)
+	for i := range d {
+		d[i] = a.nm[i+1] - a.nm[i]
+	}
+	slices.Sort(d)
+	return d[(len(d)-1)/2]
+}
+
 // Interp interpolates y, given on the axis, linearly at nm. It returns NaN
 // outside the axis and where a neighbour it needs is NaN. It panics when y is
 // not as long as the axis.

@@ -148,8 +148,10 @@ func (e *EEM) Interp(ex, em float64) float64 {
 }
 
 // Regrid returns e on grid g: interpolated linearly inside the measured range,
-// missing outside it (NotMeasured) and beside missing cells (their reason). On
-// the points of e itself the numbers are those of e, bit for bit.
+// missing outside it (NotMeasured), beside missing cells (their reason), and where a
+// scan or a stretch of e itself is missing (NotMeasured): between two wavelengths
+// that lie further apart than half again the usual step of e. On the points of e
+// itself the numbers are those of e, bit for bit.
 func (e *EEM) Regrid(g Grid) *EEM {
 	if e.Grid.Equal(g) {
 		c := e.Clone()
@@ -161,10 +163,14 @@ func (e *EEM) Regrid(g Grid) *EEM {
 	if e.Var != nil {
 		out.Var = make([]float64, g.Cells())
 	}
+	gapEx, gapEm := e.Ex.gaps(g.Ex), e.Em.gaps(g.Em)
 	for j := range g.Ex.Len() {
 		for k := range g.Em.Len() {
 			i := g.Index(j, k)
-			v, variance, why := e.sample(g.Ex.At(j), g.Em.At(k))
+			v, variance, why := math.NaN(), math.NaN(), NotMeasured
+			if !gapEx[j] && !gapEm[k] {
+				v, variance, why = e.sample(g.Ex.At(j), g.Em.At(k))
+			}
 			out.F[i], out.Why[i] = v, why
 			if out.Var != nil {
 				out.Var[i] = variance

@@ -196,3 +196,28 @@ func TestAbsorbance(t *testing.T) {
 		t.Errorf("ten times: %g", v)
 	}
 }
+
+// A scan that is missing among equally spaced ones is not made up: between 260 and
+// 280 nm stands nothing, between points at the usual step a line does.
+func TestRegridLeavesGaps(t *testing.T) {
+	e := fill(t, []float64{240, 250, 260, 280, 290}, []float64{300, 310, 320, 340, 350})
+	g := eem.Grid{Ex: axis(t, 240, 245, 260, 270, 285), Em: axis(t, 300, 305, 330, 345)}
+	r := e.Regrid(g)
+	for j, wantEx := range []bool{true, true, true, false, true} {
+		for k, wantEm := range []bool{true, true, false, true} {
+			if i := g.Index(j, k); (r.Why[i] == eem.Measured) != (wantEx && wantEm) || math.IsNaN(r.F[i]) == (wantEx && wantEm) {
+				t.Errorf("ex %g, em %g: %g, %s", g.Ex.At(j), g.Em.At(k), r.F[i], r.Why[i])
+			}
+		}
+	}
+}
+
+func fill(t *testing.T, ex, em []float64) *eem.EEM {
+	t.Helper()
+	g := eem.Grid{Ex: axis(t, ex...), Em: axis(t, em...)}
+	f := make([]float64, g.Cells())
+	for i := range f {
+		f[i] = float64(i)
+	}
+	return eem.FromCells(g, eem.Counts, f)
+}

@@ -70,6 +70,7 @@ func sameFiles(t *testing.T, what string, got, want map[string]string) {
 // changed, after half of the entries are gone, after one is damaged, when rows
 // moved, and when settings changed.
 func TestCache(t *testing.T) {
+	heavy(t)
 	dir := t.TempDir()
 	if err := smallDemo(t).Write(dir); err != nil {
 		t.Fatal(err)

@@ -264,14 +264,14 @@ func (s *Survey) compareGrid(b *Bottle) {
 	}
 	var lackEx, lackEm, off int
 	for j := range s.Grid.Ex.Len() {
-		if nm := s.Grid.Ex.At(j); !b.EEM.Ex.Covers(nm) {
+		if nm := s.Grid.Ex.At(j); !b.EEM.Ex.Covers(nm) || !b.EEM.Ex.Bridged(nm) {
 			lackEx++
 		} else if _, ok := b.EEM.Ex.Find(nm); !ok {
 			off++
 		}
 	}
 	for k := range s.Grid.Em.Len() {
-		if nm := s.Grid.Em.At(k); !b.EEM.Em.Covers(nm) {
+		if nm := s.Grid.Em.At(k); !b.EEM.Em.Covers(nm) || !b.EEM.Em.Bridged(nm) {
 			lackEm++
 		} else if _, ok := b.EEM.Em.Find(nm); !ok {
 			off++

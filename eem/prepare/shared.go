@@ -83,8 +83,9 @@ func (s *Survey) parse(path string, in Input, data []byte, set *scanfile.Setting
 	}
 	f.mu.Lock()
 	defer f.mu.Unlock()
-	file, err := f.file, error(nil)
+	file := f.file
 	if file == nil || f.set != *set {
+		var err error
 		if file, err = scanfile.ReadBytes(in.Path, data, set); err != nil {
 			return nil, err
 		}
