@@ -60,7 +60,9 @@ func (j *Judged) flagUnknown(u *Unknown, r *unmix.Resolution, last *Unknown, i i
 				Rounded(is, last.Spreads[b.Row].U[g]), Rounded(was, j.Spreads[b.Row].U[g]), unit))
 		}
 	}
-	if both != nil {
+	if both == nil {
+		fl.Msg += "; with it in the model no contribution changes by more than two standard uncertainties"
+	} else {
 		fl.Severity = eem.Doubt
 		fl.Msg += "; with it in the model the bottle holds " + strings.Join(both, ", ")
 	}
