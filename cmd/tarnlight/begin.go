@@ -45,7 +45,7 @@ the run sheet by that pattern. Nothing is asked and no row that is there changes
 Files younger than --settle wait for the next run, in case they are still being
 written. Exit codes: 0 rows added or nothing new, 3 somebody must look at a file that
 was left out, 1 failed.`,
-		Example: "  tarnlight begin mysurvey\n  tarnlight begin mysurvey --csv --name '{date}_{id}_ex{nm}'\n  tarnlight begin mysurvey --add",
+		Example: "  tarnlight begin mysurvey\n  tarnlight begin mysurvey --csv --name {id}\n  tarnlight begin mysurvey --add",
 		Args:    cobra.ExactArgs(1),
 	}
 	f := c.Flags()

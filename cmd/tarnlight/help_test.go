@@ -35,12 +35,13 @@ func TestExamplesRun(t *testing.T) {
 		},
 		"begin": func() {
 			survey("mysurvey")
+			put(t, "mysurvey", "survey.toml", newTiny().settings+"[sheet]\nname = \"{id}\"\n")
 			if err := os.Remove("mysurvey/runsheet.csv"); err != nil {
 				t.Fatal(err)
 			}
 		},
 		"report": func() { results("mysurvey") }, "verify": func() { results("mysurvey") },
-		"apply":   func() { results("lastyear"); survey("tonight") },
+		"apply":   func() { results("lastyear"); survey("tonight"); survey("nights") },
 		"compare": func() { results("lastyear"); results("thisyear"); results("mysurvey"); results("mysurvey") },
 		"explain": func() {
 			if err := synth.Demo(1).Write("tarnlight-demo"); err != nil {
