@@ -85,7 +85,7 @@ func noFormulas(t *testing.T, path string) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	defer x.Close() //nolint:errcheck // read only
+	defer x.Close()
 	for _, sheet := range x.GetSheetList() {
 		rows, err := x.GetRows(sheet)
 		if err != nil {
