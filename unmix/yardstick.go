@@ -1,8 +1,9 @@
 package unmix
 
 import (
-	"fmt"
 	"math"
+
+	"tarnlight/eem"
 )
 
 // Yardstick is what noise itself looks like in this survey. Scanned spectra have
@@ -30,5 +31,5 @@ func (y *Yardstick) String() string {
 	if y == nil || y.Pairs == 0 {
 		return "noise model"
 	}
-	return fmt.Sprintf("differences of %d pairs of replicates", y.Pairs)
+	return "differences of " + eem.Count(y.Pairs, "pair") + " of replicates"
 }

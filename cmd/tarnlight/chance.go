@@ -48,7 +48,7 @@ func (j *job) chances() []chance {
 		out = append(out, j.detections(k)...)
 		method, n := r.Set.Method, j.judge[k].Tested
 		tail := distuv.UnitNormal.Survival(j.sv.Limit("structure"))
-		add("structure", method, "bottles", n, tail, "Moran's I of noise is normal; held against the "+j.judge[k].Yardstick().String())
+		add("structure", method, "bottles", n, tail, "Moran's I of noise is normal; held against the "+j.yards[k].String())
 		add("unexplained", method, "bottles", n, tail, "at most: the residual must be structured and large besides")
 		if j.applied == nil {
 			add("unknown", method, "surveys", min(1, j.judge[k].Searched), merit.FalseUnknowns, "found is the number of bottles that show it")
@@ -130,7 +130,7 @@ func (j *job) tellChances(w io.Writer) {
 		fmt.Fprintf(w, "  %s%s: %d found; by chance %.2g in %d %s\n", c.test, method(c.method), c.found, c.expected(), c.n, c.of)
 	}
 	for k, r := range j.res {
-		fmt.Fprintf(w, "residuals%s were held against the %s\n", method(r.Set.Method), j.judge[k].Yardstick().String())
+		fmt.Fprintf(w, "residuals%s were held against the %s\n", method(r.Set.Method), j.yards[k].String())
 	}
 }
 

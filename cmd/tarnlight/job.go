@@ -67,6 +67,7 @@ type job struct {
 	row    map[*prepare.Bottle]int // bottle → row of the cube
 	res    []*unmix.Resolution     // one a method
 	judge  []*merit.Judged         // beside res
+	yards  []*unmix.Yardstick      // beside res: what residuals are held against, all setups together
 	src    []*merit.Sources        // beside res: the errors behind them
 	lines  []unmix.Line            // of the references
 	refs   *merit.References       // how they came from standards; nil when they did not
@@ -364,16 +365,14 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 	j.reach(bottles, method, extra)
 	src := j.sources(r)
 	spreads := merit.Spreads(j.cube, r, src)
-	yard := j.yardstick(r)
-	for i := range spreads {
-		spreads[i].Yard = yard
-	}
+	yard := j.holdAgainst(r, spreads)
 	judged := merit.Judge(r, spreads, bottles, j.cube.Sample, j.sv.Limit, j.sv.Accept, set.Origin)
 	if err := j.unknowns(judged, r, bottles, src, set.Origin); err != nil {
 		return err
 	}
 	j.res = append(j.res, r)
 	j.judge = append(j.judge, judged)
+	j.yards = append(j.yards, yard)
 	j.src = append(j.src, src)
 	j.qualify(len(j.res) - 1)
 	return nil

@@ -162,10 +162,8 @@ func (j *job) describe(m *unmix.Model, r *unmix.Resolution) {
 	if l, err := unmix.NewLikeness(value, r.Set.Len(), left, 0.01); err == nil {
 		m.Likeness = l
 	}
-	if len(j.judge) > 0 {
-		if y := j.judge[len(j.judge)-1].Yardstick(); y != nil && y.Pairs > 0 {
-			m.Yardstick = y
-		}
+	if n := len(j.yards); n > 0 && j.yards[n-1] != nil && j.yards[n-1].Pairs > 0 {
+		m.Yardstick = j.yards[n-1]
 	}
 }
 

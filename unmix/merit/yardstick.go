@@ -54,11 +54,3 @@ func heldAgainst(y *unmix.Yardstick) string {
 	}
 	return text
 }
-
-// Yardstick is what the residuals were held against; nil: the noise model.
-func (j *Judged) Yardstick() *unmix.Yardstick {
-	if len(j.Spreads) == 0 {
-		return nil
-	}
-	return j.Spreads[0].Yard
-}
