@@ -145,7 +145,7 @@ func rowsByID(t *testing.T, dir, name string) map[string]string {
 // Surveys damaged at random: none panics, each ends in 0, 1 or 3, what is wrong is
 // said with the name of a file or bottle that was damaged, and bottles that nothing
 // happened to, nor to what they rest on, have the numbers of the clean survey.
-// TARNLIGHT_DAMAGED is how many.
+// TARNLIGHT_DAMAGED is how many, 30 without it.
 func TestDamagedSurveys(t *testing.T) {
 	heavy(t)
 	n := 30
