@@ -36,8 +36,8 @@ scans into bottles by their names, and drafts runsheet.xlsx (or runsheet.csv wit
 concentrations are known to you alone.
 
 Names tell more where they follow a pattern, given with --name or as name under
-[sheet] in survey.toml: {id}, {kind}, {date}, {n} (a repetition), {nm} (an excitation)
-and * (anything), such as "{date}_{kind}_{id}_ex{nm}" or "{date}/{id}". [sheet] kinds
+[sheet] in survey.toml: {id}, {kind}, {date}, {n} (a repetition), {dilution},
+{nm} (an excitation) and * (anything), such as "{date}_{kind}_{id}_ex{nm}" or "{date}/{id}". [sheet] kinds
 says what the laboratory's own words stand for, kinds = {PW = "blank"}.
 
 With --add, as in a nightly job, rows for files that no row names yet are appended to

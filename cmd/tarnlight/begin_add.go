@@ -7,6 +7,7 @@ import (
 	"os"
 	"path/filepath"
 	"slices"
+	"strconv"
 	"strings"
 	"time"
 
@@ -208,6 +209,12 @@ func (b *beginning) lacking(sheet *survey.Sheet, bottles []*drafted) {
 	}{
 		{"absorbance", func(d *drafted) string { return d.absorbance }},
 		{"measured", func(d *drafted) string { return d.day }},
+		{"dilution", func(d *drafted) string {
+			if d.dilution <= 1 {
+				return ""
+			}
+			return strconv.FormatFloat(d.dilution, 'g', -1, 64)
+		}},
 		{"replicate_of", func(d *drafted) string { return d.replicateOf }},
 	} {
 		if i := slices.IndexFunc(bottles, func(d *drafted) bool { return c.of(d) != "" }); i >= 0 && !has(c.name) {

@@ -8,6 +8,7 @@ import (
 	"testing"
 	"time"
 
+	"tarnlight/eem/survey"
 	"tarnlight/unmix/outdir"
 )
 
@@ -343,4 +344,28 @@ func sheetRows(t *testing.T, dir, name string) [][]string {
 		out = append(out, []string{r.ID, string(r.Kind), r.Scans, r.Absorbance, r.Measured.Day()})
 	}
 	return out
+}
+
+// Dilutions come from the names too, so that a diluted bottle of a night job is
+// brought back to what was in it.
+func TestBeginReadsDilutions(t *testing.T) {
+	for _, sheet := range []string{"runsheet.csv", "runsheet.xlsx"} {
+		dir := t.TempDir()
+		put(t, dir, "survey.toml", "[sheet]\nname = \"{date}_{id}_d{dilution}\"\n")
+		put(t, dir, "scans/20310506_W1_d1.csv", gridText(1, 1))
+		put(t, dir, "scans/20310506_W1_d2,5.csv", gridText(1, 2))
+		put(t, dir, "scans/20310506_W2_d0.csv", gridText(2, 1))
+		old(t, dir)
+		r := call("begin", dir, "--add", "--csv="+fmt.Sprint(sheet == "runsheet.csv")).want(t, exitDoubt)
+		if !strings.Contains(r.err, "the dilution 0 in its name is below 1") {
+			t.Errorf("a dilution of 0: %s", r.err)
+		}
+		s, err := survey.ReadSheet(dir, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if len(s.Rows) != 2 || s.Rows[0].Dilution != 1 || s.Rows[1].Dilution != 2.5 || s.Rows[1].AbsorbanceDilution != 2.5 || s.Rows[1].ReplicateOf != s.Rows[0].ID {
+			t.Errorf("%s: %+v", sheet, s.Rows)
+		}
+	}
 }

@@ -250,9 +250,10 @@ func (b *beginning) distinct(list []*drafted, sheet *survey.Sheet, claims map[st
 		if b.renamed(d, id) {
 			continue
 		}
+		_, again := byDay[base+"\x00"+d.day]
 		switch d.id = id; {
 		case d.kind != survey.Sample:
-		case d.n > 1 || d.repeats:
+		case d.n > 1 || d.repeats || again && d.dilution > 0: // also the same water at another dilution
 			if first, ok := byDay[base+"\x00"+d.day]; ok {
 				d.replicateOf = first
 			} else if row := taken[survey.FoldID(base)]; row != nil && (d.day == "" || row.Measured.Day() == "" || row.Measured.Day() == d.day) {

@@ -18,14 +18,17 @@ import (
 
 // named is what the name of a file says.
 type named struct {
-	id, day string // day empty: the name tells none
-	kind    survey.Kind
-	n       int  // of a repetition; 0 and 1 are the first
-	repeats bool // a word calls it a duplicate
+	id, day  string // day empty: the name tells none
+	kind     survey.Kind
+	dilution float64 // 0: the name tells none
+	n        int     // of a repetition; 0 and 1 are the first
+	repeats  bool    // a word calls it a duplicate
 }
 
 // key tells the bottles of one folder apart.
-func (n named) key() string { return fmt.Sprint(n.id, "\x00", n.kind, "\x00", n.day, n.n, n.repeats) }
+func (n named) key() string {
+	return fmt.Sprint(n.id, "\x00", n.kind, "\x00", n.day, n.n, n.repeats, n.dilution)
+}
 
 // order puts a repetition behind what it repeats.
 func (n named) order() int {
@@ -66,6 +69,11 @@ func (w *naming) of(f *found) (n named, why string) {
 	}
 	if n.day != "" && (n.day < "1900" || n.day >= "2200") {
 		return n, fmt.Sprintf("the day %s in its name cannot be right", n.day)
+	}
+	if w.pattern.Has("dilution") {
+		if n.dilution, _ = strconv.ParseFloat(got["dilution"], 64); n.dilution < 1 {
+			return n, fmt.Sprintf("the dilution %s in its name is below 1; it is final volume over sample volume", got["dilution"])
+		}
 	}
 	n.kind = survey.Sample
 	switch word := strings.ToLower(got["kind"]); {

@@ -17,6 +17,9 @@ func rowsOfDraft(bottles []*drafted) []survey.Row {
 		r := survey.NewRow()
 		r.ID, r.Kind, r.Scans, r.Absorbance, r.ReplicateOf = d.id, d.kind, d.scans, d.absorbance, d.replicateOf
 		r.Measured.Text = d.day
+		if d.dilution > 0 {
+			r.Dilution, r.AbsorbanceDilution = d.dilution, d.dilution
+		}
 		rows[i] = r
 	}
 	return rows

@@ -20,6 +20,7 @@ import (
 //	{kind}  a word of letters and hyphens
 //	{date}  2026-05-03, 20260503 or 2026_05_03; reported as 2026-05-03
 //	{n}     a whole number
+//	{dilution}  a dilution factor: digits with an optional decimal part
 //	*       anything, also nothing, but no /
 //
 // Each placeholder may stand once.
@@ -32,11 +33,12 @@ type Pattern struct {
 
 // placeholders gives what each one matches.
 var placeholders = map[string]string{
-	"nm":   `[0-9]{2,6}(?:[.,][0-9]+)?`,
-	"id":   `[^/]+`,
-	"kind": `[\p{L}-]+`,
-	"date": `[0-9]{4}-[0-9]{2}-[0-9]{2}|[0-9]{4}_[0-9]{2}_[0-9]{2}|[0-9]{8}`,
-	"n":    `[0-9]+`,
+	"nm":       `[0-9]{2,6}(?:[.,][0-9]+)?`,
+	"id":       `[^/]+`,
+	"kind":     `[\p{L}-]+`,
+	"date":     `[0-9]{4}-[0-9]{2}-[0-9]{2}|[0-9]{4}_[0-9]{2}_[0-9]{2}|[0-9]{8}`,
+	"n":        `[0-9]+`,
+	"dilution": `[0-9]{1,6}(?:[.,][0-9]+)?`,
 }
 
 // maxPatternBytes bounds a pattern; no file name is longer.
@@ -65,7 +67,7 @@ func CompilePattern(s string) (*Pattern, error) {
 		}
 		name, after, ok := strings.Cut(rest[1:], "}")
 		if what := placeholders[name]; rest[0] == '}' || !ok || what == "" {
-			return nil, fmt.Errorf("pattern %q: %q is no placeholder; there are {nm}, {id}, {kind}, {date}, {n} and *", s, rest[:len(rest)-len(after)])
+			return nil, fmt.Errorf("pattern %q: %q is no placeholder; there are {nm}, {id}, {kind}, {date}, {n}, {dilution} and *", s, rest[:len(rest)-len(after)])
 		} else if slices.Contains(p.names, name) {
 			return nil, fmt.Errorf("pattern %q: {%s} stands twice; use * for the part that does not matter", s, name)
 		} else {
@@ -119,7 +121,7 @@ func (p *Pattern) values(m []string) (map[string]string, bool) {
 	for i, name := range p.names {
 		v := m[i+1]
 		switch name {
-		case "nm":
+		case "nm", "dilution":
 			v = strings.Replace(v, ",", ".", 1)
 		case "date":
 			t, err := time.Parse("20060102", strings.NewReplacer("-", "", "_", "").Replace(v))
