@@ -37,8 +37,9 @@ file that [quantify] limits takes. A study holds, measured on three days or more
 any sample, in a water like the samples' (limits from pure water hold for pure water):
 
   replicates  at least 7 bottles of one low amount, 2 to 10 times the limit hoped for:
-              kind control with its conc: columns, or sample where the water holds it by
-              itself, the others naming the first in replicate_of
+              kind control with its conc: columns (those of equal amounts belong
+              together), or sample where the water holds it by itself, the others naming
+              the first in replicate_of
   blanks      at least 7: field-blank for those handled like a sample (best), blank for
               those that are subtracted
 
@@ -50,7 +51,8 @@ The table shows each published form with what it rests on, and why one is refuse
   MDL          t(0.99)·s, above the mean of blanks: critical value and detection limit in one
                (40 CFR 136, appendix B)
 
-Of several bases of the chosen form the one with the largest detection limit counts.`,
+Of several bases of the chosen form the one with the largest detection limit counts. A
+limit that rests on blanks alone is written, said, and ends with 3.`,
 		Example: "  tarnlight limits mystudy -o limits.csv\n  tarnlight limits mystudy/out --form mdl",
 		Args:    cobra.ExactArgs(1),
 	}
@@ -85,6 +87,7 @@ func runLimits(ctx context.Context, s streams, o limitsOptions) error {
 		return err
 	}
 	doubt := tellLow(s, t, rows, chosen)
+	doubt = tellBlanks(s, t, rows, chosen) || doubt
 	for _, name := range missing {
 		doubt = true
 		fmt.Fprintf(s.err, "%s: no limit can be set by %s; it is left out of the file\n", name, form)
@@ -126,6 +129,27 @@ func tellLow(s streams, t *report.Table, rows, chosen []int) bool {
 		}
 	}
 	return told
+}
+
+// tellBlanks says which limits rest on blanks alone, and whether there are any.
+func tellBlanks(s streams, t *report.Table, rows, chosen []int) bool {
+	blank := func(i int) bool {
+		return slices.Contains([]string{basisBlanks, basisFieldBlanks}, t.Text(i, t.Col("basis")))
+	}
+	var names []string
+	for _, i := range chosen {
+		other := slices.ContainsFunc(rows, func(h int) bool {
+			return !blank(h) && t.Bool(h, t.Col("usable")) && t.Text(h, t.Col("form")) == t.Text(i, t.Col("form")) &&
+				t.Text(h, t.Col("component")) == t.Text(i, t.Col("component"))
+		})
+		if blank(i) && !other {
+			names = append(names, t.Text(i, t.Col("component")))
+		}
+	}
+	if len(names) > 0 {
+		fmt.Fprintf(s.err, "%s: set by blanks alone, as no replicates at a low level could be taken; nothing shows that so little is found when it is there: measure at least 7 controls of one low amount\n", list(names))
+	}
+	return len(names) > 0
 }
 
 // table is limits.csv of the study: as its results hold it, or made now.

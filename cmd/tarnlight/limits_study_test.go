@@ -3,6 +3,7 @@ package main
 import (
 	"fmt"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 
@@ -119,5 +120,50 @@ func TestLimitsRefused(t *testing.T) {
 	}
 	if r := call("limits", dir, "--form", "best").want(t, exitMisuse); !strings.Contains(r.err, "currie, iso or mdl") {
 		t.Errorf("%s", r.err)
+	}
+}
+
+// Controls of one amount are replicates of one another without naming the first; of
+// another amount they are not, and a limit that rests on blanks alone is said to.
+func TestLimitsControlsAlike(t *testing.T) {
+	named, alike, apart := lowStudy(3, 1), lowStudy(3, 1), lowStudy(3, 1)
+	for _, s := range []*synth.Survey{alike, apart} {
+		for i := range s.Bottles {
+			s.Bottles[i].ReplicateOf = ""
+		}
+	}
+	for i := range apart.Bottles {
+		b := &apart.Bottles[i]
+		b.Known = slices.Clone(b.Known)
+		for d := range b.Known {
+			if b.Kind == "control" {
+				b.Known[d].Amount *= 1 + float64(i)/1e4
+			}
+		}
+	}
+	var files []string
+	for i, s := range []*synth.Survey{named, alike, apart} {
+		dir := t.TempDir()
+		if err := s.Write(dir); err != nil {
+			t.Fatal(err)
+		}
+		file := filepath.Join(t.TempDir(), "limits.csv")
+		r := call("limits", dir, "-o", file).want(t, exitDoubt)
+		if got := strings.Contains(r.out, "controls alike with LOW1"); got != (i == 1) {
+			t.Errorf("study %d: controls alike %v\n%s", i, got, r.out)
+		}
+		told := ""
+		for _, line := range strings.Split(r.err, "\n") {
+			if strings.Contains(line, "set by blanks alone") {
+				told += line
+			}
+		}
+		if got := strings.Contains(told, "tryptophan"); got != (i == 2) {
+			t.Errorf("study %d: tryptophan by blanks alone %v: %s", i, got, r.err)
+		}
+		files = append(files, strings.ReplaceAll(read(t, file), "controls alike with", "replicates of"))
+	}
+	if files[0] != files[1] {
+		t.Errorf("named: %s\nalike: %s", files[0], files[1])
 	}
 }

@@ -55,6 +55,12 @@ const (
 	formLaboratory = "laboratory"
 )
 
+// Bases of limits.csv that are blanks.
+const (
+	basisBlanks      = "blanks, within a batch"
+	basisFieldBlanks = "field blanks"
+)
+
 // limitsHere are the limits that the budgets of this survey's samples give, and the
 // laboratory's own where it has some.
 func (j *job) limitsHere(k, f int) []merit.Basis {
@@ -184,6 +190,7 @@ func (s *study) group() {
 		}
 		s.groups[i] = append(s.groups[i], b)
 	}
+	s.joinControls()
 	s.groups = slices.DeleteFunc(s.groups, func(g []*prepare.Bottle) bool { return len(g) < 2 })
 }
 
@@ -242,10 +249,10 @@ func (s *study) blanks(f int) []merit.Basis {
 		for _, v := range own.values {
 			in = min(in, len(v))
 		}
-		out = append(out, merit.FromBlanks("blanks, within a batch", own.values, in)...)
+		out = append(out, merit.FromBlanks(basisBlanks, own.values, in)...)
 	}
 	if len(field.values) > 0 {
-		out = append(out, merit.FromBlanks("field blanks", field.values, 0)...)
+		out = append(out, merit.FromBlanks(basisFieldBlanks, field.values, 0)...)
 	}
 	return out
 }
@@ -315,7 +322,7 @@ func (s *study) judge(group []*prepare.Bottle, f int) []merit.Basis {
 		g.add(b.Batch, v)
 		made = made || s.j.calibrates(b)
 	}
-	out := merit.FromReplicates("replicates of "+of.ID, given, g.values)
+	out := merit.FromReplicates(basisOf(group), given, g.values)
 	for i := range out {
 		if made && out[i].Refused == "" {
 			out[i].Refused = "they are part of the line of the standards, which follows them; give them the kind control"
