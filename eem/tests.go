@@ -97,7 +97,8 @@ var Tests = sortTests([]Test{
 	{"index-refused", Remark, 0, "indices", "an index of the water is not given, because its wavelengths were not measured or were filled", "more than 20 % of its window filled: common practice, no source"},
 	{"yield-standard", Remark, 0.05, "", "the standard of quantum yields absorbs more at its excitation than such standards should", "practice of yields, to stay clear of the inner filter (IUPAC 2013: Resch-Genger & Rurack, from memory)"},
 	{"blank-level", Doubt, 10, "%", "a blank glows outside the scatter bands, at its brightest spot by more than this share of its own Raman line: it is contaminated", "common practice, no source"},
-	{"blank-drift", Doubt, 5, "%", "the Raman area of a blank departs from that of the batch's other blanks by more than the limit: the lamp drifted, or a blank is wrong", "common practice, no source"},
+	{"blank-borrowed", Remark, 0, "days", "the batch has no blank of its own or names others: blanks of another batch serve for subtraction and scale", "-"},
+	{"blank-drift", Doubt, 5, "%", "the Raman area of a blank departs from that of the batch's other blanks by more than the limit, or the bottles' own Raman light from that of borrowed blanks: the lamp drifted, or a blank is wrong", "common practice, no source"},
 	{"band-default", Remark, 0, "", "a scatter band's width could not be found from the blanks, so that the stated one holds", "-"},
 	{"sheet-hidden", Remark, 0, "rows", "hidden rows of the workbook were read like the others", "-"},
 })

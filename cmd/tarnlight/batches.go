@@ -76,7 +76,7 @@ func (j *job) verdict(bt *prepare.Batch) (string, []string) {
 		switch {
 		case f.ID == "" && f.Severity == eem.Reject || slices.Contains(rejecting, f.Test):
 			verdict = "reject"
-		case !slices.Contains(batchTests, f.Test):
+		case f.ID != "" && !slices.Contains(batchTests, f.Test):
 			continue
 		case verdict == "good":
 			verdict = "doubt"

@@ -16,7 +16,7 @@ const (
 
 // concerns lists the codes of each; what is on no list concerns the data.
 var concerns = map[string][]string{
-	concernInstrument: {"axes-swapped", "absorbance-negative", "batch-rejected", "batch-scale", "blank-drift", "blank-level", "blank-range", "chart-rule",
+	concernInstrument: {"axes-swapped", "absorbance-negative", "batch-rejected", "batch-scale", "blank-borrowed", "blank-drift", "blank-level", "blank-range", "chart-rule",
 		"counts", "lamp-lines", "low-light", "negative", "no-blank", "no-light", "plateau", "raman-law", "raman-range", "saturated",
 		"scan-dropped", "scan-repeated", "spike", "wavelength"},
 	concernModel: {"components-changed", "few-cells", "no-model-passes", "not-converged", "overlap", "peak-open", "starts-disagree",

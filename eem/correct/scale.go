@@ -23,6 +23,7 @@ type RamanArea struct {
 	ExNM   float64    // nm
 	Window [2]float64 // nm
 	Base   string     // NoBaseline or StraightBaseline
+	From   string     // where the blanks come from; empty means the batch itself
 }
 
 // Area integrates the blank's emission at exNM over window (both nm) by the
@@ -132,8 +133,12 @@ func usable(v float64) bool { return v > 0 && !math.IsInf(v, 0) && !math.IsInf(1
 // known uncertainty of the area becomes the cause "intensity scale" of the batch.
 // It panics on an area that is not positive; Areas gives none.
 func RamanUnits(e *eem.EEM, r RamanArea, batch string) *eem.EEM {
+	from := "blanks of the batch"
+	if r.From != "" {
+		from = r.From
+	}
 	out := Scale(e, 1/r.Area, eem.Raman, record(StepScale, "divided by the area of water's Raman line",
-		eem.Param{Name: "Raman area", Value: num(r.Area), Unit: "counts nm", Source: "blanks of the batch"},
+		eem.Param{Name: "Raman area", Value: num(r.Area), Unit: "counts nm", Source: from},
 		eem.Param{Name: "blanks", Value: fmt.Sprint(r.N), Source: "run sheet"},
 		eem.Param{Name: "excitation", Value: num(r.ExNM), Unit: "nm", Source: "settings: intensity.excitation_nm"},
 		eem.Param{Name: "window", Value: fmt.Sprintf("%g–%g", r.Window[0], r.Window[1]), Unit: "nm", Source: "settings: intensity.window_nm"},

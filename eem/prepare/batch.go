@@ -27,6 +27,7 @@ type Batch struct {
 	Unit    eem.Unit
 
 	peakNM, peakSNR float64
+	loan            *loan   // nil where it rests on its own blanks
 	spread          float64 // of a cell among the blanks, counts
 }
 
@@ -170,6 +171,7 @@ func (bt *Batch) findScale() {
 		bt.Reason = err.Error()
 		return
 	}
+	r.From = fromOf(blanks, bt.Name)
 	bt.Raman = r
 }
 

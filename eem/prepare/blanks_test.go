@@ -276,6 +276,49 @@ func TestLatestBlank(t *testing.T) {
 	}
 }
 
+// A batch that borrows blanks says so. Where the lamp has fallen by 10 % since, its
+// bottles' own light tells: a doubt on the batch, and in the uncertainty of the scale.
+func TestBorrowedBlank(t *testing.T) {
+	for _, power := range []float64{1, 0.9} {
+		sv := variant(t, "[correct]\nblank = \"latest\"\n", nil, func(s *synth.Survey) {
+			day := find(s, "S002").Measured.YearDay()
+			last := find(s, "PW1-1").Power
+			for i := range s.Bottles {
+				if b := &s.Bottles[i]; b.Measured.YearDay() == day {
+					b.Power = last * power
+				}
+			}
+			s.Bottles = slices.DeleteFunc(s.Bottles, func(b synth.Bottle) bool { return strings.HasPrefix(b.ID, "PW2") })
+		})
+		b := find2(t, sv, "S002")
+		bt := sv.Find(b.Batch)
+		told := map[string]eem.Flag{}
+		for _, f := range sv.Flags {
+			if f.ID == "" && f.Batch == b.Batch {
+				told[f.Test] = f
+			}
+		}
+		if f := told["blank-borrowed"]; !strings.Contains(f.Msg, "PW1-1 of batch") || !(f.Value > 0.5 && f.Value < 1.5) {
+			t.Errorf("power %g: %+v", power, f)
+		}
+		f, doubt := told["blank-drift"]
+		if doubt != (power < 1) || doubt && (f.Severity != eem.Doubt || math.Abs(f.Value+10) > 2) {
+			t.Errorf("power %g: %+v", power, f)
+		}
+		if u := bt.ScaleU(); math.Abs(u-(1-power)) > 0.02 {
+			t.Errorf("power %g: the scale is known to %g", power, u)
+		}
+		if !slices.ContainsFunc(b.Causes, func(c eem.Cause) bool { return c.Key == b.Batch && math.Abs(c.U-(1-power)) < 0.02 }) {
+			t.Errorf("power %g: causes %+v", power, b.Causes)
+		}
+		if !slices.ContainsFunc(b.EEM.Notes, func(n eem.Note) bool {
+			return slices.ContainsFunc(n.Params, func(p eem.Param) bool { return p.Name == "Raman area" && strings.Contains(p.Source, "PW1-1 of batch") })
+		}) {
+			t.Error("the steps do not name the blanks")
+		}
+	}
+}
+
 // A batch without Raman area among others in Raman units rejects its bottles; it
 // never divides by the area it lacks.
 func TestNoRamanArea(t *testing.T) {

@@ -147,6 +147,10 @@ func (b *Bottle) scaleCauses(s *Survey, r Repeat) (out []eem.Cause) {
 	}
 	out = append(out, eem.Cause{Name: CauseRepeat, Scope: eem.OfBottle, Key: b.Row.ID, U: r.U, DF: r.DF, Source: r.Source})
 	n := float64(len(b.blanks))
+	if d := s.Find(b.Batch).departure(); d > 0 && b.borrows() && s.Unit == eem.Raman && !b.skips(stepIntensity) {
+		out = append(out, eem.Cause{Name: CauseScale, Scope: eem.OfBatch, Key: b.Batch, U: d,
+			Source: "the bottles' own Raman light against that of borrowed blanks"})
+	}
 	if s.Unit != eem.Raman || b.skips(stepIntensity) || n == 0 {
 		return append(out, b.unknown(CauseScale, eem.OfBatch, b.Batch))
 	}

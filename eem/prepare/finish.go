@@ -174,7 +174,9 @@ func (b *Bottle) raman(bt *Batch) (correct.RamanArea, error) {
 		es[i] = blank.raw
 	}
 	set := b.Setting.Intensity
-	return correct.Areas(es, set.ExcitationNM, set.WindowNM, set.Baseline)
+	r, err := correct.Areas(es, set.ExcitationNM, set.WindowNM, set.Baseline)
+	r.From = fromOf(b.blanks, b.Batch)
+	return r, err
 }
 
 // chooseGrid takes the given grid, the stated one or that of the most samples, and
@@ -376,10 +378,11 @@ func (s *Survey) checkBatches() {
 }
 
 // ScaleU returns the relative standard uncertainty of the batch's scale, NaN
-// where it is not known.
+// where it is not known. With borrowed blanks it holds by how much the bottles' own
+// light is off theirs.
 func (bt *Batch) ScaleU() float64 {
 	if bt.Unit == eem.Quinine {
 		return bt.Quinine.U / bt.Quinine.Slope
 	}
-	return bt.Raman.U / bt.Raman.Area // NaN where there is no area
+	return math.Hypot(bt.Raman.U/bt.Raman.Area, bt.departure()) // NaN where there is no area
 }

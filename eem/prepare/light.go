@@ -40,10 +40,15 @@ func (b *Bottle) checkLight(s *Survey, e, blank *eem.EEM) *eem.EEM {
 		return e
 	}
 	limit := s.Limit("low-light")
-	if b.needsAbsorbance() && (b.scanned == nil || b.skips(stepInner) && !b.done(stepInner) || b.Setting.Correct.InnerFilter == "none") {
+	if b.dimmed() {
 		limit = 1e-9
 	}
 	return scatter.CheckLight(e, blank, scatter.Raman1, ramanWindow, limit)
+}
+
+// dimmed says whether the liquid's own absorbance still takes part of the light.
+func (b *Bottle) dimmed() bool {
+	return b.needsAbsorbance() && (b.scanned == nil || b.skips(stepInner) && !b.done(stepInner) || b.Setting.Correct.InnerFilter == "none")
 }
 
 // rawLight says whether the files still hold the light of the scatter lines, on

@@ -175,6 +175,7 @@ func Read(ctx context.Context, dir string, sheet *survey.Sheet, set *survey.Sett
 	}
 	s.setNoise()
 	s.pairDilutions()
+	s.findLoans()
 	if err := s.each(ctx, o, "correcting", func(i int) { s.Bottles[i].finish(s) }); err != nil {
 		return nil, err
 	}
