@@ -35,6 +35,18 @@ func (g given) recovery() float64 {
 // off says whether the recovery is beyond its limit.
 func (g given) off() bool { return math.Abs(g.recovery()-100) > g.limit }
 
+// verdict judges the recovery. The only standard of its component is its own
+// measure and finds itself whatever it holds: it is not judged.
+func (g given) verdict(only bool) (verdict, reason string) {
+	switch {
+	case only:
+		return "", "not judged: the only standard of " + g.component + " finds itself; bring a second level or a control"
+	case g.off():
+		return "doubt", g.accepted()
+	}
+	return "pass", ""
+}
+
 func (g given) accepted() string {
 	return fmt.Sprintf("recovery %.1f %%, accepted %g–%g %%", g.recovery(), 100-g.limit, 100+g.limit)
 }
@@ -93,6 +105,19 @@ func (j *job) lowestLevels() map[string]float64 {
 	return out
 }
 
+// calibrating counts the standards that each component's reference was made of.
+func (j *job) calibrating() map[string]int {
+	out := map[string]int{}
+	for _, b := range j.sv.Bottles {
+		for _, c := range b.Row.Conc {
+			if j.calibrates(b) && b.Usable() && c.Value > 0 {
+				out[c.Name]++
+			}
+		}
+	}
+	return out
+}
+
 // calibrationTable makes calibration.csv: every standard, control and spike,
 // against what the references find.
 func (j *job) calibrationTable() *report.Table {
@@ -102,6 +127,7 @@ func (j *job) calibrationTable() *report.Table {
 		lines[l.Component] = l
 	}
 	k := slices.IndexFunc(j.res, func(r *unmix.Resolution) bool { return r.Set.Method == "references" })
+	only := j.calibrating()
 	for _, g := range j.givens() {
 		b := g.bottle
 		l, has := lines[g.component]
@@ -110,10 +136,8 @@ func (j *job) calibrationTable() *report.Table {
 		}
 		low, high, verdict, reason := nan, nan, "", ""
 		if g.given > 0 {
-			low, high, verdict = 100-g.limit, 100+g.limit, "pass"
-			if g.off() {
-				verdict, reason = "doubt", g.accepted()
-			}
+			low, high = 100-g.limit, 100+g.limit
+			verdict, reason = g.verdict(j.calibrates(b) && only[g.component] == 1)
 		}
 		t.Append(b.Row.ID, b.Batch, string(b.Row.Kind), g.component, g.given, g.found, j.res[k].Set.Components[g.f].AmountUnit,
 			j.judge[k].Spreads[g.row].U[g.f], g.recovery(), low, high, j.calibrates(b), verdict, reason, l.Slope, l.Intercept, l.InterceptSE)

@@ -3,9 +3,11 @@ package main
 import (
 	"fmt"
 	"io"
+	"strings"
 
 	"gonum.org/v1/gonum/stat/distuv"
 
+	"tarnlight/eem"
 	"tarnlight/eem/prepare"
 	"tarnlight/eem/survey"
 	"tarnlight/unmix/merit"
@@ -127,7 +129,7 @@ func (j *job) tellChances(w io.Writer) {
 			fmt.Fprintln(w, "tests over many, and what chance alone would give:")
 			head = true
 		}
-		fmt.Fprintf(w, "  %s%s: %d found; by chance %.2g in %d %s\n", c.test, method(c.method), c.found, c.expected(), c.n, c.of)
+		fmt.Fprintf(w, "  %s%s: %d found; by chance %.2g in %s\n", c.test, method(c.method), c.found, c.expected(), eem.Count(c.n, strings.TrimSuffix(c.of, "s")))
 	}
 	for k, r := range j.res {
 		fmt.Fprintf(w, "residuals%s were held against the %s\n", method(r.Set.Method), j.yards[k].String())

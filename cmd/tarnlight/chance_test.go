@@ -44,7 +44,7 @@ func TestChances(t *testing.T) {
 	}
 	var out bytes.Buffer
 	j.tellChances(&out)
-	for _, want := range []string{"unknown (references): 2 found; by chance 0.01 in 1 surveys", "residuals (references) were held against the noise model"} {
+	for _, want := range []string{"unknown (references): 2 found; by chance 0.01 in 1 survey\n", "residuals (references) were held against the noise model"} {
 		if !strings.Contains(out.String(), want) {
 			t.Errorf("no %q in\n%s", want, out.String())
 		}
@@ -53,5 +53,20 @@ func TestChances(t *testing.T) {
 		if (f.Test == "structure" || f.Test == "unknown") && !strings.Contains(f.Msg, "by chance one") {
 			t.Errorf("%s does not say how often it comes by chance: %s", f.Test, f.Msg)
 		}
+	}
+}
+
+// The only standard of a component finds itself, which proves nothing.
+func TestOnlyStandardIsNotJudged(t *testing.T) {
+	g := given{component: "a", given: 2, found: 2, limit: 15}
+	if v, why := g.verdict(true); v != "" || !strings.Contains(why, "only standard of a") {
+		t.Errorf("verdict %q, %q", v, why)
+	}
+	if v, _ := g.verdict(false); v != "pass" {
+		t.Errorf("verdict %q of two levels", v)
+	}
+	g.found = 3
+	if v, _ := g.verdict(false); v != "doubt" {
+		t.Errorf("verdict %q of 150 %%", v)
 	}
 }

@@ -347,13 +347,7 @@ func (x *explainer) untold(f *report.Table, reasons string) string {
 			reasons = strings.ReplaceAll(reasons, m, "")
 		}
 	}
-	var out []string
-	for _, s := range strings.Split(reasons, "; ") {
-		if s = strings.Trim(s, "; "); s != "" {
-			out = append(out, s)
-		}
-	}
-	return strings.Join(out, "; ")
+	return strings.Join(report.Leftover(reasons), "; ")
 }
 
 // flags adds the bottle's findings, and the doubts that it shares with others.

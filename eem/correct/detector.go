@@ -26,7 +26,7 @@ func Saturate(e *eem.EEM, limit float64) *eem.EEM {
 		eem.Param{Name: "saturation", Value: num(limit), Unit: "counts", Source: "settings: scans.saturation"}))
 	if n > 0 {
 		out.Note(finding(StepSaturation, "saturated", float64(n), 0, fmt.Sprintf(
-			"left out: %s at or above the detector's limit of %s counts; dilute the bottle or narrow the slits and scan again", eem.Count(n, "cell"), num(limit))))
+			"%s left out: at or above the detector's limit of %s counts; dilute the bottle or narrow the slits and scan again", eem.Count(n, "cell"), num(limit))))
 	}
 	return out
 }

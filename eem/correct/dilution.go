@@ -60,7 +60,7 @@ func ControlledDilution(e, diluted *eem.EEM, p float64) (out *eem.EEM, factor []
 			out.Causes[c].Shape[i] = f0 * s
 		}
 	}
-	out.Note(record(StepInner, fmt.Sprintf("corrected by controlled dilution, %s-fold; left out: %s not positive in both", num(p), eem.Count(lost, "cell")),
+	out.Note(record(StepInner, fmt.Sprintf("corrected by controlled dilution, %s-fold; %s left out: not positive in both", num(p), eem.Count(lost, "cell")),
 		eem.Param{Name: "form", Value: "controlled dilution", Source: "settings: correct.inner_filter"},
 		eem.Param{Name: "further dilution", Value: num(p), Source: "run sheet: dilution"}))
 	return out, factor

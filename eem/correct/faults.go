@@ -105,7 +105,7 @@ func Spikes(e *eem.EEM, limit float64, avoid func(exNM, emNM float64) bool) *eem
 	}
 	if n > 0 {
 		out.Note(finding(StepDetector, "spike", worst, limit, fmt.Sprintf(
-			"left out: %s standing out of all neighbours; the highest, at %s, by %.0f standard deviations of the noise", eem.Count(n, "single cell"), eem.Spot(ex, em), worst)))
+			"%s left out: standing out of all neighbours; the highest, at %s, by %.0f standard deviations of the noise", eem.Count(n, "single cell"), eem.Spot(ex, em), worst)))
 	}
 	return out
 }

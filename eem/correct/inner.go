@@ -58,7 +58,7 @@ func InnerFilter(e *eem.EEM, a *eem.Absorbance, g Geometry, limit float64) (out 
 	out.Note(record(StepInner, "multiplied by the factor of each cell, largest "+num(largest), g.params(largest, limit)...))
 	if lost > 0 {
 		out.Note(finding(StepInner, "absorbance-range", float64(lost), 0, fmt.Sprintf(
-			"left out: %s outside the absorbance spectrum (%s); measure the absorbance over ex %s and em %s",
+			"%s left out: outside the absorbance spectrum (%s); measure the absorbance over ex %s and em %s",
 			eem.Count(lost, "cell"), stretch(a.Axis), stretch(e.Ex), stretch(e.Em))))
 	}
 	noteOver(out, overAbsorbing(e, ax, am, g.path(), limit), limit)

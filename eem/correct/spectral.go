@@ -106,7 +106,7 @@ func Spectral(e *eem.EEM, ex, em *Factors) *eem.EEM {
 	out.Note(record(StepSpectral, "multiplied by the factor at each excitation and emission", append(ex.params("excitation"), em.params("emission")...)...))
 	if lost > 0 {
 		out.Note(finding(StepSpectral, "factor-range", float64(lost), 0, fmt.Sprintf(
-			"left out: %s outside the spectral factors (%s); bring factors for ex %s and em %s",
+			"%s left out: outside the spectral factors (%s); bring factors for ex %s and em %s",
 			eem.Count(lost, "cell"), strings.Join(append(ex.short(e.Ex), em.short(e.Em)...), ", "), stretch(e.Ex), stretch(e.Em))))
 	}
 	return out

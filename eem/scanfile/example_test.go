@@ -21,7 +21,7 @@ func ExampleReadBytes() {
 	// Output:
 	// 240 300–310 nm (3) [1.25 1.5 NaN]
 	// read-guess: taken for a stack: one emission scan a file, excitation from the header, semicolon-delimited, decimal comma, UTF-8
-	// saturated: left out: 1 cell marked as over range in the file
+	// saturated: 1 cell left out: marked as over range in the file
 }
 
 func ExampleReadBytes_refused() {

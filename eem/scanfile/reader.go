@@ -200,7 +200,7 @@ func (r *reader) notes() {
 		r.note("repeated-point", eem.Remark, r.repeated, "standing twice: "+eem.Count(r.repeated, "wavelength")+"; the mean was taken")
 	}
 	if r.over > 0 {
-		r.note("saturated", eem.Doubt, r.over, "left out: "+eem.Count(r.over, "cell")+" marked as over range in the file")
+		r.note("saturated", eem.Doubt, r.over, eem.Count(r.over, "cell")+" left out: marked as over range in the file")
 	}
 }
 

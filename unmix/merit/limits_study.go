@@ -185,7 +185,7 @@ func FromStandards(x, y []float64, batches int) Basis {
 	levels := slices.Sorted(slices.Values(x))
 	switch n := len(slices.Compact(levels)); {
 	case n < 3:
-		b.Refused = fmt.Sprintf("%d levels of standards; a line needs at least 3", n)
+		b.Refused = eem.Count(n, "level") + " of standards; a line needs at least 3"
 	case l.Critical != l.Critical:
 		b.Refused = "what is found does not grow with what was given"
 	case slices.Max(x) > highestRatio*l.Detectable:

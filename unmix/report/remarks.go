@@ -54,12 +54,33 @@ func (r *results) reasons(x *bottle, c *contribution) (own []string, common []sh
 			own = append(own, m)
 		}
 	}
-	for _, s := range strings.Split(rest, "; ") {
-		if s = strings.Trim(s, "; "); s != "" {
-			own = append(own, s)
+	return append(own, Leftover(rest)...), common
+}
+
+// alsoOn begins the reason that stands for a doubt told of the bottle that its
+// standards have too; their ids follow.
+const alsoOn = "a doubt on this bottle is on its standards too: "
+
+// Leftover parts reasons from which the messages told elsewhere were taken out. Of
+// "standard ID: message" only the head is left then: one reason at the end names
+// those standards.
+func Leftover(reasons string) []string {
+	var out, standards []string
+	for _, s := range strings.Split(reasons, "; ") {
+		s = strings.Trim(s, "; ")
+		id, stump := strings.CutPrefix(strings.TrimSuffix(s, ":"), "standard ")
+		switch {
+		case s == "":
+		case !stump || !strings.HasSuffix(s, ":"):
+			out = append(out, s)
+		case !slices.Contains(standards, id):
+			standards = append(standards, id)
 		}
 	}
-	return own, common
+	if len(standards) > 0 {
+		out = append(out, alsoOn+strings.Join(standards, ", "))
+	}
+	return out
 }
 
 // remarks are a bottle's doubts and the reasons of its qualifiers, in words. What
@@ -78,7 +99,7 @@ func (r *results) remarks(x *bottle, where string) string {
 			say(f.Text(i, f.Col("message")))
 		}
 	}
-	var on []string
+	var on, standards []string
 	for _, c := range r.series {
 		k := x.of[c]
 		if k == nil {
@@ -86,6 +107,10 @@ func (r *results) remarks(x *bottle, where string) string {
 		}
 		own, common := r.reasons(x, k)
 		for _, reason := range own {
+			if ids, ok := strings.CutPrefix(reason, alsoOn); ok {
+				standards = append(standards, strings.Split(ids, ", ")...)
+				continue
+			}
 			say(reason)
 		}
 		for _, s := range common {
@@ -93,6 +118,10 @@ func (r *results) remarks(x *bottle, where string) string {
 				on = append(on, s.on)
 			}
 		}
+	}
+	if len(standards) > 0 {
+		slices.Sort(standards)
+		say(alsoOn + strings.Join(slices.Compact(standards), ", "))
 	}
 	for _, s := range on {
 		say("see " + where + ", doubt on " + s)

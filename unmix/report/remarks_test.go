@@ -57,6 +57,21 @@ func TestDoubtOnAllIsToldOnce(t *testing.T) {
 	}
 }
 
+// Of a standard's doubt that the bottle shares, the standard stays and no stump.
+func TestLeftover(t *testing.T) {
+	for reasons, want := range map[string]string{
+		"":                                   "",
+		"; standard S1: ; standard S2: ; ":   alsoOn + "S1, S2",
+		"; standard S1:; standard S1:; far":  "far|" + alsoOn + "S1",
+		"standard S1: saturated; negative":   "standard S1: saturated|negative",
+		"above the highest standard; dilute": "above the highest standard|dilute",
+	} {
+		if got := strings.Join(Leftover(reasons), "|"); got != want {
+			t.Errorf("%q: %q, want %q", reasons, got, want)
+		}
+	}
+}
+
 // Row heights follow the widths of the letters: a line that fits takes one line.
 func TestLineHeight(t *testing.T) {
 	l := cellLetters()
