@@ -222,6 +222,9 @@ func atLimit(s *synth.Survey, limit map[synth.TruthRow]float64) *synth.Survey {
 // The stated 95 % interval holds the truth in 93–97 % of the contributions above
 // their quantification limit; what is not there is called detected in 6 % at most;
 // and what holds the detection limit is detected in 93 % at least.
+//
+// 500 surveys gave 95.8 % of 40,102 contributions, components 95.5 to 95.9 %; 5.6 % of
+// 9,898 absent ones detected, and 93.3 % of 4,940 at the detection limit.
 func TestCoverageReferences(t *testing.T) {
 	heavy(t)
 	n, long := surveys(t, 4)
@@ -230,6 +233,9 @@ func TestCoverageReferences(t *testing.T) {
 
 // The same where every standard is off by 3 % for itself and nobody declares that:
 // the scatter of the standards about their lines is a cause of the budget.
+//
+// 60 surveys gave 95.2 % of 4,797 contributions, components 93.5 to 97.3 %; 5.8 % of
+// 1,203 absent ones detected.
 func TestCoverageDosed(t *testing.T) {
 	heavy(t)
 	n, long := surveys(t, 3)
@@ -267,6 +273,9 @@ func heights(s *synth.Survey, set *unmix.Set) (name map[string]string, height ma
 // was not found again (congruence under 0.95 in either mode) is counted apart. At its
 // limit stands one absent contribution of each component; were it all of them, the
 // model would be another one.
+//
+// 150 surveys gave 96.1 % of 12,015 contributions, 5.1 % of 2,985 absent ones detected,
+// and 94.1 % of 371 at the detection limit.
 func TestCoverageParafac(t *testing.T) {
 	heavy(t)
 	n, long := surveys(t, 3)
