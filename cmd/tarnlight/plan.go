@@ -64,9 +64,12 @@ the same instrument); else it is assumed, and plan exits with 3.
 What is predicted is the noise of the bottle and of the blanks, and what the samples
 of the survey depart from the model beyond noise, as both come out of the fit that run
 does. Every cell weighs the same in it: a dim, noisy scan can do harm, so that fewer
-scans may know more than all. Errors that cells share (intensity scale,
-stock solutions) are the same for any plan and not in it, nor is that a contribution is
-never negative: the figures hold well above the detection limit.`,
+scans can have a smaller predicted uncertainty than all. They also show less of what
+the model does not know: run will see less of it and report less of it. Where samples
+are known to depart from the model, no plan of fewer scans than components + 1 is
+suggested; keep the full grid for some bottles in any case. Errors that cells share
+(intensity scale, stock solutions) are the same for any plan and not in it, nor is that
+a contribution is never negative: the figures hold well above the detection limit.`,
 		Example: "  tarnlight plan mysurvey\n" +
 			"  tarnlight plan mysurvey --scans 5 --limit tryptophan=1 --figures plan -o plan.csv\n" +
 			"  tarnlight plan mysurvey/out/model.json --like mysurvey --with 350 --narrow 10 --unknown 490\n" +

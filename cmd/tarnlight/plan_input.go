@@ -25,6 +25,7 @@ type planInput struct {
 	notes   []string
 	seen    *eem.Absorbance // of a typical bottle, nil unknown
 	samples *planSamples    // nil unknown
+	departs bool            // the samples are known to depart from the model
 }
 
 func (in *planInput) note(format string, a ...any) {

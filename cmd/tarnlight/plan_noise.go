@@ -93,6 +93,7 @@ func (in *planInput) bareNoise(j *job) {
 	if n := &in.problem.Noise; in.samples.misfit(j.cube, n) {
 		n.Misfit = toGrid(j, n.Misfit, g)
 		in.noise += ", and what the samples depart from the model beyond it"
+		in.departs = true
 	}
 }
 
@@ -101,6 +102,7 @@ func (in *planInput) scatter(j *job) {
 	square, _ := in.samples.departures(j.cube)
 	g := in.problem.Set.Grid
 	in.problem.Noise = plan.Noise{Read2: toGrid(j, square, g), Shot: make([]float64, g.Cells())}
+	in.departs = true
 	in.noise = fmt.Sprintf("not known; what the components leave of %d samples stands for it", len(in.samples.rows))
 }
 
@@ -129,7 +131,7 @@ func (in *planInput) assume(blanks int) {
 	}
 	in.problem.Noise = plan.Even(set.Grid.Cells(), assumedRead*top, assumedShot*assumedShot*top, blanks)
 	in.assumed, in.noise = true, "assumed"
-	in.note("the noise is not known and was assumed: %.3g without light and %.3g at the brightest cell (%.3g) of a typical bottle; the choice of lines hardly depends on it, uncertainties and detection limits do: give --like SURVEY, or --read and --shot",
+	in.note("the noise is not known and was assumed: %.3g without light and %.3g at the brightest cell (%.3g) of a typical bottle; uncertainties and detection limits depend on it, and the choice of lines may: give --like SURVEY, or --read and --shot",
 		assumedRead*top, math.Hypot(assumedRead, assumedShot)*top, top)
 }
 

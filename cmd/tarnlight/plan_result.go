@@ -86,13 +86,23 @@ func (in *planInput) result(o planOptions, d *plan.Design, choices []plan.Choice
 	r.Notes = append(r.Notes, fmt.Sprintf("noise: %s; typical bottle: %s; minutes: %s; what scale, stock solutions and absorbance add is the same for any plan and not in it", in.noise, in.levels, timeWords(o.time)))
 	r.Notes = append(r.Notes, in.notes...)
 	r.tellRaman()
+	r.tellFewer()
+	return r
+}
+
+// tellFewer says why fewer scans can look better than all of them, and what they hide.
+func (r *planResult) tellFewer() {
 	for _, p := range r.Plans {
-		if p.prediction.Cost < all.Cost {
-			r.Notes = append(r.Notes, fmt.Sprintf("%s know more than all %d: every cell weighs the same in the fit, and dim scans bring more noise than light", scans(p.Scans), len(all.Lines)))
-			break
+		if p.prediction.Cost < r.Full.prediction.Cost {
+			has := "have"
+			if p.Scans == 1 {
+				has = "has"
+			}
+			r.Notes = append(r.Notes, fmt.Sprintf("%s %s a smaller predicted uncertainty than all %d: every cell weighs the same in the fit, and dim scans bring more noise than light. "+
+				"Yet fewer scans also show less of what the model does not know: run will see less of it and report less of it; keep the full grid for some bottles", scans(p.Scans), has, r.Full.Scans))
+			return
 		}
 	}
-	return r
 }
 
 func scans(n int) string {
@@ -187,16 +197,64 @@ func (r *planResult) judge(limits map[string]float64) {
 		r.Verdict = fmt.Sprintf("no plan of up to %s tells all components apart; plan for more (--scans), or leave components out", scans(r.Plans[len(r.Plans)-1].Scans))
 		return
 	}
-	for i, p := range r.Plans {
-		if p.prediction.Cost <= enough*r.Plans[best].prediction.Cost {
-			r.taken = i
-			r.Verdict = fmt.Sprintf("%s at ex %s nm (%.3g min) are the fewest within %.0f %% of the best of these plans", scans(p.Scans), numbersText(p.Excitations), p.Minutes, 100*(enough-1))
-			if p.Scans == 1 {
-				r.Verdict = strings.Replace(r.Verdict, " are the fewest", " is enough:", 1)
-			}
-			return
+	few := r.fewest(best, r.speaks())
+	if few < 0 {
+		few = r.fewest(best, 0)
+	}
+	p := r.Plans[few]
+	r.taken = few
+	are := "are the fewest"
+	if p.Scans == 1 {
+		are = "is enough:"
+	}
+	r.Verdict = fmt.Sprintf("%s at ex %s nm (%.3g min) %s within %.0f %% of the best of these plans%s%s", scans(p.Scans), numbersText(p.Excitations), p.Minutes, are, 100*(enough-1), r.loss(p), r.silent(p))
+}
+
+// fewest is the first plan of so many scans or more that is nearly as good as the
+// best, −1 where there is none.
+func (r *planResult) fewest(best, atLeast int) int {
+	return slices.IndexFunc(r.Plans, func(p planRow) bool {
+		return p.Scans >= atLeast && p.prediction.Cost <= enough*r.Plans[best].prediction.Cost
+	})
+}
+
+// speaks is how many scans a suggested plan needs where the samples are known to
+// depart from the model: one more than components, so that the excitation profile of
+// what is in none of them has a part that no mixture of theirs explains. 0 where
+// nothing is known of departures.
+func (r *planResult) speaks() int {
+	if !r.in.departs {
+		return 0
+	}
+	return min(len(r.Full.Components)+1, r.Full.Scans)
+}
+
+// silent warns of a plan of fewer scans than that.
+func (r *planResult) silent(p planRow) string {
+	n := r.speaks()
+	if p.Scans >= n {
+		return ""
+	}
+	return fmt.Sprintf("; not recommended: the samples depart from the model, and fewer than %s (components + 1) show little of that; plan for %d or more (--scans)", scans(n), n)
+}
+
+// loss says how much higher than with all scans the detection limit of the component
+// is that loses most.
+func (r *planResult) loss(p planRow) string {
+	worst, name := 0.0, ""
+	for f, c := range p.Components {
+		full := r.Full.Components[f].Detection
+		if c.Wanted && c.Detection != nil && full != nil && *full > 0 && *c.Detection / *full > worst {
+			worst, name = *c.Detection / *full, c.Name
 		}
 	}
+	switch {
+	case name == "":
+		return ""
+	case worst < 1.05:
+		return "; detection limits about those of the full grid or lower"
+	}
+	return fmt.Sprintf("; detection limits up to %s times those of the full grid (%s)", digits3(&worst), name)
 }
 
 // best is the plan of least cost, −1 where none tells all components apart.
@@ -216,7 +274,7 @@ func (r *planResult) judgeLimits() {
 	for i, p := range r.Plans {
 		if p.Meets {
 			r.taken = i
-			r.Verdict = fmt.Sprintf("the smallest plan that meets the detection limits: %s at ex %s nm, %.3g min", scans(p.Scans), numbersText(p.Excitations), p.Minutes)
+			r.Verdict = fmt.Sprintf("the smallest plan that meets the detection limits: %s at ex %s nm, %.3g min%s%s", scans(p.Scans), numbersText(p.Excitations), p.Minutes, r.loss(p), r.silent(p))
 			return
 		}
 	}
@@ -255,10 +313,18 @@ func numbersText(v []float64) string {
 
 // tellRaman reminds of the scan that Raman units rest on.
 func (r *planResult) tellRaman() {
-	i := r.in.setting.Intensity
-	raman := i.Unit == "raman" || i.Unit == "auto" && (r.in.problem.Set.Unit == "RU" || r.in.problem.Set.Unit == "")
-	if !raman || r.taken >= 0 && slices.Contains(r.Plans[r.taken].Excitations, i.ExcitationNM) {
+	i, set := r.in.setting.Intensity, r.in.problem.Set
+	if i.Unit != "raman" && i.Unit != "auto" || set.Unit != "RU" && set.Unit != "" || r.taken >= 0 && slices.Contains(r.Plans[r.taken].Excitations, i.ExcitationNM) {
 		return
 	}
-	r.Notes = append(r.Notes, fmt.Sprintf("Raman units come from the blanks' scan at ex %g nm: scan the blanks there too, or plan it in with --with %g", i.ExcitationNM, i.ExcitationNM))
+	note := fmt.Sprintf("Raman units come from the blanks' scan at ex %g nm", i.ExcitationNM)
+	if set.Unit == "" {
+		note = "the unit of the references is not known; " + note
+	}
+	if !set.Grid.Ex.Covers(i.ExcitationNM) {
+		note += ", a scan outside this grid: scan the blanks there too"
+	} else {
+		note += fmt.Sprintf(": scan the blanks there too, or plan it in with --with %g", i.ExcitationNM)
+	}
+	r.Notes = append(r.Notes, note)
 }

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"io"
 	"slices"
+	"strconv"
 	"strings"
 
 	"tarnlight/unmix/report"
@@ -100,17 +101,23 @@ func (r *planResult) overview() *text {
 		if p.Percent != nil {
 			percent += " %"
 		}
-		t.add(fmt.Sprint(p.Scans), fmt.Sprintf("%.3g", p.Minutes), percent, digits3(p.AgainstAll), p.Searched, fmt.Sprintf("%g–%g, %d points", p.Emission[0], p.Emission[1], p.Points), lines)
+		t.add(fmt.Sprint(p.Scans), digits3(&p.Minutes), percent, digits3(p.AgainstAll), p.Searched, fmt.Sprintf("%g–%g, %d points", p.Emission[0], p.Emission[1], p.Points), lines)
 	}
 	return t
 }
 
-// digits3 has nothing for what the scans do not tell.
+// digits3 has three significant digits, zeros among them, and nothing for what the
+// scans do not tell.
 func digits3(v *float64) string {
 	if v == nil {
 		return ""
 	}
-	return fmt.Sprintf("%.3g", *v)
+	short := fmt.Sprintf("%.2e", *v)
+	e, err := strconv.Atoi(short[strings.Index(short, "e")+1:])
+	if err != nil || e < -4 || e > 2 {
+		return fmt.Sprintf("%.3g", *v)
+	}
+	return strconv.FormatFloat(*v, 'f', 2-e, 64)
 }
 
 // drawing gathers what the pictures show; scans says whose lines, 0 those of the

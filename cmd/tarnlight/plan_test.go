@@ -11,7 +11,10 @@ import (
 	"testing"
 
 	"tarnlight/eem"
+	"tarnlight/eem/survey"
 	"tarnlight/eem/synth"
+	"tarnlight/unmix"
+	"tarnlight/unmix/plan"
 	"tarnlight/unmix/report"
 )
 
@@ -336,4 +339,74 @@ func causeOf(budget *report.Table, id, component, cause string) float64 {
 		}
 	}
 	return 0
+}
+
+// What the plans hide is said: a plan of fewer scans than components + 1 is not
+// recommended where the samples depart from the model, and detection limits are set
+// against those of the full grid.
+func TestPlanTellsWhatFewScansHide(t *testing.T) {
+	row := func(scans int, cost, detection float64) planRow {
+		return planRow{Scans: scans, Percent: &cost, prediction: plan.Prediction{Cost: cost},
+			Components: []planComponent{{Name: "a", Wanted: true, Detection: &detection}, {Name: "b", Wanted: true, Detection: &detection}}}
+	}
+	r := planResult{in: &planInput{}, Full: row(20, 2, 0.1), Plans: []planRow{row(1, 1, 0.6), row(2, 1, 0.5), row(3, 1, 0.4)}}
+	verdict := func(departs bool, plans int) string {
+		some := r
+		some.in, some.Plans = &planInput{departs: departs}, r.Plans[:plans]
+		some.judge(nil)
+		return some.Verdict
+	}
+	for _, c := range []struct {
+		departs     bool
+		plans       int
+		begin, says string
+		warned      bool
+	}{
+		{false, 3, "1 scan ", "up to 6.00 times those of the full grid (a)", false},
+		{true, 3, "3 scans ", "up to 4.00 times those of the full grid (a)", false},
+		{true, 2, "1 scan ", "fewer than 3 scans (components + 1)", true},
+	} {
+		v := verdict(c.departs, c.plans)
+		if !strings.HasPrefix(v, c.begin) || !strings.Contains(v, c.says) || strings.Contains(v, "not recommended") != c.warned {
+			t.Errorf("%+v: %s", c, v)
+		}
+	}
+	r.tellFewer()
+	if len(r.Notes) != 1 || !strings.HasPrefix(r.Notes[0], "1 scan has a smaller predicted uncertainty than all 20") || !strings.Contains(r.Notes[0], "report less of it") {
+		t.Errorf("%q", r.Notes)
+	}
+}
+
+// Raman units are spoken of only where they can be meant, and a scan is planned in
+// only where the grid has it.
+func TestPlanTellsOfRamanUnits(t *testing.T) {
+	for _, c := range []struct {
+		unit eem.Unit
+		last float64
+		want string
+	}{
+		{"RU", 400, "Raman units come from the blanks' scan at ex 350 nm: scan the blanks there too, or plan it in with --with 350"},
+		{"RU", 300, "Raman units come from the blanks' scan at ex 350 nm, a scan outside this grid: scan the blanks there too"},
+		{"", 300, "the unit of the references is not known; Raman units come from the blanks' scan at ex 350 nm, a scan outside this grid: scan the blanks there too"},
+		{"counts", 400, ""},
+	} {
+		ex, err := eem.Steps(250, c.last, 10)
+		if err != nil {
+			t.Fatal(err)
+		}
+		set := &unmix.Set{Unit: c.unit, Grid: eem.Grid{Ex: ex}}
+		r := planResult{taken: -1, in: &planInput{problem: plan.Problem{Set: set}, setting: survey.Default()}}
+		r.tellRaman()
+		if got := strings.Join(r.Notes, "\n"); got != c.want {
+			t.Errorf("%s to %g nm: %q", c.unit, c.last, got)
+		}
+	}
+}
+
+func TestDigits3(t *testing.T) {
+	for v, want := range map[float64]string{0.16: "0.160", 0.316: "0.316", 2: "2.00", 9.996: "10.0", 123.4: "123", 1234: "1.23e+03", 0: "0.00"} {
+		if got := digits3(&v); got != want {
+			t.Errorf("%g: %s, want %s", v, got, want)
+		}
+	}
 }
