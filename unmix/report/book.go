@@ -48,9 +48,8 @@ const (
 )
 
 const (
-	fontName    = "Arial"
-	rowHeight   = 15.0 // points, of rows that say nothing else
-	pageLetters = 210  // the widest sheet on one page, letters: beyond that print is too small to read
+	fontName  = "Arial"
+	rowHeight = 15.0 // points, of rows that say nothing else
 )
 
 func newBook(title, header, footer string) *book {
@@ -113,13 +112,14 @@ type layout struct {
 	widths   []float64 // of the columns, in letters
 	freeze   string    // cell below and right of the frozen rows and columns
 	repeat   string    // rows printed on every page, "$1:$5"
+	keep     []int     // columns, from 1, that print leaves on the page of the one before
 	zoom     float64
 }
 
 // add makes a sheet. Everything about its page is set here, because the stream
 // writer keeps only what was there before its first row.
 func (b *book) add(name string, l layout, before ...func(f *excelize.File, sheet string) error) *sheet {
-	s := &sheet{b: b, name: name, row: 1, wide: l.widths}
+	s := &sheet{b: b, name: name, row: 1, wide: l.widths, starts: l.starts()}
 	if b.err != nil {
 		return s
 	}
@@ -149,21 +149,26 @@ func (b *book) add(name string, l layout, before ...func(f *excelize.File, sheet
 }
 
 func (b *book) page(name string, l layout) {
-	yes, no, zero, a4 := true, false, 0, 9
-	wide := 0.0
-	for _, w := range l.widths {
-		wide += w
-	}
-	pages := 1 + int(wide/pageLetters)
+	always, no, zero, a4 := true, false, 0, 9
+	starts := l.starts()
+	one, fit := 1, len(starts) == 0
 	orientation := "landscape"
 	if l.portrait {
 		orientation = "portrait"
 	}
 	side, end, edge := 0.5, 0.6, 0.3 // inches; fits A4 and Letter
 	order := "overThenDown"          // the halves of a wide sheet follow one another
-	b.try(b.f.SetPageLayout(name, &excelize.PageLayoutOptions{Size: &a4, Orientation: &orientation, FitToWidth: &pages, FitToHeight: &zero, PageOrder: &order}))
+	b.try(b.f.SetPageLayout(name, &excelize.PageLayoutOptions{Size: &a4, Orientation: &orientation, FitToWidth: &one, FitToHeight: &zero, PageOrder: &order}))
+	if !fit { // programs overlook breaks on a sheet that is fitted
+		scale := l.scale(starts)
+		b.try(b.f.SetPageLayout(name, &excelize.PageLayoutOptions{AdjustTo: &scale}))
+	}
+	for _, c := range starts {
+		at, _ := excelize.CoordinatesToCellName(c, 1)
+		b.try(b.f.InsertPageBreak(name, at))
+	}
 	height := rowHeight
-	b.try(b.f.SetSheetProps(name, &excelize.SheetPropsOptions{FitToPage: &yes, DefaultRowHeight: &height, CustomHeight: &yes}))
+	b.try(b.f.SetSheetProps(name, &excelize.SheetPropsOptions{FitToPage: &fit, DefaultRowHeight: &height, CustomHeight: &always}))
 	b.try(b.f.SetPageMargins(name, &excelize.PageLayoutMarginsOptions{Left: &side, Right: &side, Top: &end, Bottom: &end, Header: &edge, Footer: &edge}))
 	b.try(b.f.SetHeaderFooter(name, &excelize.HeaderFooterOptions{
 		OddHeader: "&L&8" + headerText(b.header) + "&R&8" + headerText(name),
@@ -184,15 +189,15 @@ func (b *book) page(name string, l layout) {
 			Selection: []excelize.Selection{{SQRef: l.freeze, ActiveCell: l.freeze, Pane: pane}}}))
 	}
 	if l.repeat != "" {
-		b.try(b.f.SetDefinedName(&excelize.DefinedName{Name: "_xlnm.Print_Titles", RefersTo: printTitles(name, l.repeat, pages), Scope: name}))
+		b.try(b.f.SetDefinedName(&excelize.DefinedName{Name: "_xlnm.Print_Titles", RefersTo: printTitles(name, l.repeat, len(starts) > 0), Scope: name}))
 	}
 }
 
 // printTitles names the rows that every page repeats, and the first column where
 // the sheet is cut into several pages side by side.
-func printTitles(sheet, rows string, pages int) string {
+func printTitles(sheet, rows string, several bool) string {
 	ref := "'" + sheet + "'!" + rows
-	if pages > 1 {
+	if several {
 		ref = "'" + sheet + "'!$A:$A," + ref
 	}
 	return ref

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"github.com/xuri/excelize/v2"
 )
@@ -36,6 +37,7 @@ func (r *results) qualitySheet(b *book) {
 		for k, name := range names {
 			n := len(rows[name])
 			c := qualityChart(sheet, plain(name), t.Text(rows[name][0], t.Col("unit")), head, at, at+n-1)
+			c.Series = slices.DeleteFunc(c.Series, func(x excelize.ChartSeries) bool { return r.emptySeries(x, rows[name]) })
 			r.chartRange(c, rows[name])
 			row := chartFirst + qualityRows*(k/2)
 			if err := f.AddChart(sheet, fmt.Sprintf("%c%d", "AG"[k%2], row), c); err != nil {
@@ -64,7 +66,7 @@ func (r *results) qualitySheet(b *book) {
 				}
 				row = append(row, c)
 			}
-			s.add(rowHeight, row...)
+			s.add(0, row...)
 		}
 	}
 	s.done()
@@ -89,6 +91,16 @@ func qualityChart(sheet, title, unit string, head, from, to int) *excelize.Chart
 		line("J", "901818", excelize.LineDashSysDot), line("K", "901818", excelize.LineDashSysDot),
 	}
 	return c
+}
+
+// emptySeries says whether no row has a number for a series of a quality chart: a
+// key would name a line that is not there.
+func (r *results) emptySeries(x excelize.ChartSeries, rows []int) bool {
+	t := r.table["charts.csv"]
+	_, place, _ := strings.Cut(x.Name, "!$")
+	column, _, _ := strings.Cut(place, "$")
+	n, err := excelize.ColumnNameToNumber(column)
+	return err == nil && !slices.ContainsFunc(rows, func(i int) bool { return finite(t.Float(i, t.Col(qualityHeads[n-1]))) })
 }
 
 // chartRange ends the axis of a quality chart a little beyond its values and

@@ -3,6 +3,7 @@ package report
 import (
 	"math"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
 	"testing"
@@ -137,8 +138,34 @@ func TestWorkbookIsFitted(t *testing.T) {
 		}
 		p, err := f.GetPageLayout(sheet)
 		must(t, err)
-		if wide := map[string]int{"Results": 2}[sheet]; *p.Size != 9 || *p.FitToWidth != max(1, wide) || *p.FitToHeight != 0 {
+		if *p.Size != 9 || *p.FitToWidth != 1 || *p.FitToHeight != 0 {
 			t.Errorf("%s: page %+v", sheet, p)
 		}
+	}
+}
+
+// Print cuts no value from its ± and qualifier, no page is wider than paper, and a
+// sheet that fits on one is not cut.
+func TestPrintCutsBetweenTriples(t *testing.T) {
+	l := layout{widths: []float64{12, 16}}
+	if l.starts() != nil {
+		t.Error("a narrow sheet is cut")
+	}
+	for range 14 {
+		l.keep = append(l.keep, len(l.widths)+2, len(l.widths)+3)
+		l.widths = append(l.widths, 11, 8.5, 5)
+	}
+	l.widths = append(l.widths, 10, 11, 50)
+	starts := l.starts()
+	if len(starts) == 0 {
+		t.Fatal("a wide sheet is not cut")
+	}
+	for _, c := range starts {
+		if slices.Contains(l.keep, c) {
+			t.Errorf("a page begins with column %d, inside a triple", c)
+		}
+	}
+	if scale := l.scale(starts); scale < smallestPrint || scale > 100 {
+		t.Errorf("print at %d %%", scale)
 	}
 }

@@ -50,8 +50,18 @@ func shortFormat(v float64) string {
 	switch {
 	case v == math.Trunc(v) && math.Abs(v) < 1e12 || d <= 0:
 		return "0"
-	case d > 9:
-		return "0.0000E+00"
+	case d > 7:
+		return "0.####E+00"
 	}
 	return "0." + strings.Repeat("#", d)
+}
+
+// shortLength is how many letters a number takes in its short format, at most.
+func shortLength(v float64) int {
+	format := shortFormat(v)
+	if strings.Contains(format, "E") {
+		return len("-0.0000E-00")
+	}
+	_, tail, _ := strings.Cut(format, ".")
+	return len(strconv.FormatFloat(v, 'f', len(tail), 64))
 }

@@ -13,8 +13,8 @@ func (r *results) modelsSheet(b *book) {
 		return
 	}
 	s := b.add("Models", layout{widths: append(append([]float64{22}, slices.Repeat([]float64{22}, len(t.Rows))...), 56), freeze: "B4", repeat: "$3:$3"})
-	s.add(20, cell{"Candidate numbers of components", look{bold: true, size: 13, color: inkBlue}})
-	s.add(0, cell{"The content of models.csv, a column a number of components. The number that the results rest on is marked.", look{color: midGrey}})
+	s.heading(20, "Candidate numbers of components", look{bold: true, size: 13, color: inkBlue})
+	s.heading(0, "The content of models.csv, a column a number of components. The number that the results rest on is marked.", look{color: midGrey})
 	head := []cell{{"Components", headLook}}
 	for i := range t.Rows {
 		head = append(head, cell{t.Float(i, t.Col("components")), headRight})
@@ -81,12 +81,12 @@ func (r *results) budgetSheet(b *book) {
 	rows, order := r.budgetShares(causes)
 	widths := append([]float64{r.idWidth(), 18, 16, 10, 10, 9}, slices.Repeat([]float64{12}, len(causes))...)
 	s := b.add("Budget", layout{widths: widths, freeze: "C4", repeat: "$3:$3"})
-	s.add(20, cell{"Uncertainty by cause", look{bold: true, size: 13, color: inkBlue}})
+	s.heading(20, "Uncertainty by cause", look{bold: true, size: 13, color: inkBlue})
 	note := "Shares of the variance in %; they add up to 100. Sizes, scopes and sources of every cause stand in budget.csv."
 	if len(open) > 0 {
 		note += " Not given, and in no value: " + strings.Join(open, ", ") + "."
 	}
-	s.add(0, cell{note, look{color: midGrey}})
+	s.heading(0, note, look{color: midGrey})
 	heads := []string{"Bottle", "Component", "Method", "Standard uncertainty", "Unit", "Relative, %"}
 	var head []cell
 	for i, h := range append(heads, causes...) {

@@ -32,8 +32,8 @@ func (r *results) opticsSheet(b *book) {
 	}
 	t := r.table["samples.csv"]
 	s := b.add("Optics", layout{widths: append([]float64{r.idWidth()}, slices.Repeat([]float64{10.5}, len(cols))...), freeze: "B5", repeat: "$3:$4"})
-	s.add(20, cell{"Optical indices of the water", look{bold: true, size: 13, color: inkBlue}})
-	s.add(0, cell{"They stand for bulk properties and depend on one another. What each means stands below the table.", look{color: midGrey}})
+	s.heading(20, "Optical indices of the water", look{bold: true, size: 13, color: inkBlue})
+	s.heading(0, "They stand for bulk properties and depend on one another. What each means stands below the table.", look{color: midGrey})
 	unit, head := []cell{{"Unit", look{color: midGrey}}}, []cell{{"Bottle", headLook}}
 	for _, c := range cols {
 		unit = append(unit, cell{r.unitOf(c), look{color: midGrey, right: true}})

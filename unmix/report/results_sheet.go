@@ -44,7 +44,7 @@ func (r *results) idWidth() float64 {
 func (r *results) resultsSheet(b *book) {
 	known := r.knownColumns()
 	widths := []float64{r.idWidth()}
-	heads := []cell{{"Bottle", headLook}}
+	heads, keep := []cell{{"Bottle", headLook}}, []int(nil)
 	for _, k := range known {
 		l := headLook
 		if k.name == "dilution" {
@@ -53,6 +53,7 @@ func (r *results) resultsSheet(b *book) {
 		widths, heads = append(widths, k.width), append(heads, cell{k.head, l})
 	}
 	for i, c := range r.series {
+		keep = append(keep, len(widths)+2, len(widths)+3)
 		widths = append(widths, 11, 8.5, 5)
 		name := fmt.Sprintf("%d %s", i+1, cut(plain(r.label(c)), 60))
 		if c.unit != "" {
@@ -65,9 +66,9 @@ func (r *results) resultsSheet(b *book) {
 	widths = append(widths, 10, 11, 50)
 	heads = append(heads, cell{"Explained, %", headRight}, cell{"Check", headIndent}, cell{"Remarks", headLook})
 	const headRow = 4
-	s := b.add("Results", layout{widths: widths, freeze: fmt.Sprintf("B%d", headRow+1), repeat: fmt.Sprintf("$%d:$%d", headRow, headRow)})
-	s.add(20, cell{plain(r.title()) + " – results", look{bold: true, size: 13, color: inkBlue}})
-	s.add(0, cell{"± is the expanded uncertainty (k = 2, about 95 %). < is followed by the detection limit. Q: U not detected, J unreliable or above the highest standard, R not usable. Screening: see Cautions on the sheet Summary.", look{color: midGrey}})
+	s := b.add("Results", layout{widths: widths, freeze: fmt.Sprintf("B%d", headRow+1), repeat: fmt.Sprintf("$%d:$%d", headRow, headRow), keep: keep})
+	s.heading(20, plain(r.title())+" – results", look{bold: true, size: 13, color: inkBlue})
+	s.heading(0, "± is the expanded uncertainty (k = 2, about 95 %). < is followed by the detection limit. Q: U not detected, J unreliable or above the highest standard, R not usable. Screening: see Cautions on the sheet Summary.", look{color: midGrey})
 	s.skip(1)
 	s.add(52, heads...)
 	for _, x := range r.bottles {

@@ -13,6 +13,9 @@ type sheet struct {
 	w    *excelize.StreamWriter
 	row  int // next row, from 1
 	wide []float64
+	// starts are the columns, from 1, that begin the second and later pages of a
+	// print; empty where one page is wide enough.
+	starts []int
 }
 
 // cell is one cell of a row. v is a string, a number, a time or nil; NaN and
@@ -43,6 +46,25 @@ func (s *sheet) add(height float64, cells ...cell) {
 	}
 	s.b.try(s.w.SetRow(fmt.Sprintf("A%d", s.row), row, excelize.RowOpts{Height: min(height, 400)}))
 	s.row++
+}
+
+// heading writes a line above the table. Where print cuts the sheet into pages side
+// by side, every page repeats the first column, and a text in it would run into each
+// of them: there it stands behind that column, as wide as the first page.
+func (s *sheet) heading(height float64, text string, l look) {
+	if len(s.starts) == 0 {
+		s.add(height, cell{text, l})
+		return
+	}
+	last, px := s.starts[0]-1, 0
+	for _, w := range s.wide[1:last] {
+		px += columnPixels(w)
+	}
+	l.wrap = true
+	s.add(max(height, lineHeight(text, px, cellLetters())), cell{}, cell{text, l})
+	if last > 2 {
+		s.merge(2, last)
+	}
 }
 
 // height is what the wrapped texts of a row need in their columns. Programs do

@@ -43,8 +43,8 @@ func (r *results) tableSheet(b *book, name, file, title string) {
 	f, _ := FindFile(file)
 	t = t.filled()
 	s := b.add(name, layout{widths: columnWidths(t), freeze: "B4", repeat: "$3:$3"})
-	s.add(20, cell{title, look{bold: true, size: 13, color: inkBlue}})
-	s.add(0, cell{"The content of " + file + "; " + f.What + ".", look{color: midGrey}})
+	s.heading(20, title, look{bold: true, size: 13, color: inkBlue})
+	s.heading(0, "The content of "+file+"; "+f.What+".", look{color: midGrey})
 	s.add(0, uniqueHeads(t.Columns)...)
 	for i := range t.Rows[:min(len(t.Rows), maxRows)] {
 		row := make([]cell, len(t.Columns))
@@ -115,10 +115,11 @@ func columnWidths(t *Table) []float64 {
 		longest := longestWord(name) + 2
 		for i := range t.Rows[:min(len(t.Rows), 200)] {
 			text := t.Text(i, c)
-			if _, ok := number(text); ok {
-				text = text[:min(len(text), 8)]
+			n := len([]rune(text))
+			if v, ok := number(text); ok {
+				n = shortLength(v)
 			}
-			longest = max(longest, len([]rune(text)))
+			longest = max(longest, n)
 		}
 		w[c] = min(max(0.85*float64(longest)+2, 8), 30)
 	}
