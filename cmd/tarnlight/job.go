@@ -393,6 +393,13 @@ func (j *job) reach(bottles []merit.Bottle, method string, extra []eem.Flag) {
 		if method != "references" || j.refs == nil || !j.calibrates(b) || !b.Usable() {
 			continue
 		}
+		for _, c := range b.Row.Conc {
+			for _, msg := range j.driftOf(b.Batch) {
+				if c.Value > 0 && !slices.Contains(all[c.Name], msg) {
+					all[c.Name] = append(all[c.Name], msg)
+				}
+			}
+		}
 		for _, f := range b.Flags {
 			if f.Severity != eem.Doubt || f.Test == "saturated" || f.Test == "absorbance-limit" {
 				continue

@@ -63,6 +63,9 @@ func TestSixNights(t *testing.T) {
 		if s.Bottles["new"] != 0 {
 			t.Errorf("%d bottles are new", s.Bottles["new"])
 		}
+		if r := call("apply", model, dir, "--since-last", "--pictures=false").want(t, exitDone); !strings.Contains(r.err, "nothing is new") || r.out != "" {
+			t.Errorf("nothing is new, yet apply says %s%s", r.out, r.err)
+		}
 	})
 	t.Run("half-written", func(t *testing.T) {
 		night(t, dir, "20310603", normal, nil)
@@ -144,6 +147,36 @@ func TestSixNights(t *testing.T) {
 			t.Errorf("explain: %s", r.out)
 		}
 	})
+}
+
+// A night without a blank whose lamp has fallen by 10 % since the last blank is a
+// doubt on its batch, and every value of it is estimated.
+func TestFallenLampWithoutBlank(t *testing.T) {
+	heavy(t)
+	model := kept(t, "parafac.json")
+	dir := folder(t, map[string]string{"survey.toml": nightSettings(t, "")})
+	night(t, dir, "20310601", map[string]string{"PW1A": "PW1", "PW1B": "PW2", "W103": "W3"}, nil)
+	night(t, dir, "20310602", map[string]string{"W105": "W5", "W106": "W6"}, func(b *synth.Bottle) { b.Power *= 0.9 })
+	old(t, dir)
+	call("begin", dir, "--add", "--csv").want(t, exitDone)
+	r := call("apply", model, dir, "--since-last", "--pictures=false").want(t, exitDoubt)
+	if !strings.Contains(r.err, "blank-drift") || !strings.Contains(r.err, "PW1, PW2 of batch 2031-06-01") {
+		t.Errorf("not told: %s", r.err)
+	}
+	c := table(t, dir, "out", "contributions.csv")
+	for i := range c.Rows {
+		q, id := c.Text(i, c.Col("qualifier")), c.Text(i, c.Col("id"))
+		if borrowed := id == "W5" || id == "W6"; borrowed != strings.Contains(q, "J") {
+			t.Errorf("%s %s: %q", id, c.Text(i, c.Col("component")), q)
+		}
+	}
+	b := table(t, dir, "out", "batches.csv")
+	if s := read(t, dir, "out", "steps.csv"); !strings.Contains(s, "blanks of the batch; borrowed blanks: PW1, PW2 of batch 2031-06-01") {
+		t.Errorf("the steps do not tell whose blanks serve: %s", s)
+	}
+	if v := cell(t, b, "verdict", "batch", "2031-06-02", "batch", "2031-06-02"); v != "doubt" {
+		t.Errorf("the batch is %s", v)
+	}
 }
 
 // A contribution above the laboratory's alert is a doubt that concerns a limit, also

@@ -127,3 +127,15 @@ func (j *job) batchDoubts() map[string][]string {
 	}
 	return out
 }
+
+// driftOf tells that a batch borrowed blanks which do not fit it; what its standards
+// calibrate is off by as much.
+func (j *job) driftOf(batch string) []string {
+	var out []string
+	for _, f := range j.sv.Flags {
+		if f.ID == "" && f.Batch == batch && f.Test == "blank-drift" && f.Severity == eem.Doubt {
+			out = append(out, "standards of batch "+batch+": "+f.Msg)
+		}
+	}
+	return out
+}

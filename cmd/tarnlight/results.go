@@ -191,15 +191,17 @@ func (j *job) bottle(id string) *prepare.Bottle {
 }
 
 // stepTable makes steps.csv: every step of every setup with its parameters. Where
-// bottles differ in a parameter the row gives the range.
+// bottles differ in a parameter the row gives the range, and where it comes from
+// several sources all of them.
 func (j *job) stepTable() *report.Table {
 	t := report.New("steps.csv")
 	type key struct{ setup, step, name string }
 	type entry struct {
 		key
-		p      eem.Param
-		msg    string
-		values []string
+		p       eem.Param
+		msg     string
+		values  []string
+		sources []string
 	}
 	var order []*entry
 	seen := map[key]*entry{}
@@ -229,6 +231,9 @@ func (j *job) stepTable() *report.Table {
 				if !slices.Contains(e.values, p.Value) {
 					e.values = append(e.values, p.Value)
 				}
+				if !slices.Contains(e.sources, p.Source) {
+					e.sources = append(e.sources, p.Source)
+				}
 			}
 		}
 	}
@@ -239,7 +244,7 @@ func (j *job) stepTable() *report.Table {
 		return prepare.StepOrder(a.step) - prepare.StepOrder(b.step)
 	})
 	for _, e := range order {
-		t.Append(prepare.StepOrder(e.step), e.setup, e.step, e.name, summary(e.values), e.p.Unit, e.p.Source, e.msg)
+		t.Append(prepare.StepOrder(e.step), e.setup, e.step, e.name, summary(e.values), e.p.Unit, strings.Join(e.sources, "; "), e.msg)
 	}
 	return t
 }

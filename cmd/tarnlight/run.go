@@ -86,6 +86,49 @@ func runJob(ctx context.Context, s streams, o jobOptions) error {
 
 // printSummary ends a run: a compact table on out, what to look at first on err.
 func (j *job) printSummary(s streams) error {
+	st := j.status()
+	if idle := st.SinceLast && st.Bottles["new"] == 0; idle {
+		fmt.Fprintln(s.err, "nothing is new: the last results hold every bottle already")
+	} else if err := j.printOutcome(s, st); err != nil {
+		return err
+	}
+	if w := alike(j.worst(len(j.flags))); len(w) > 0 {
+		fmt.Fprintln(s.err, "look at first:")
+		for _, line := range w[:min(3, len(w))] {
+			fmt.Fprintf(s.err, "  %s\n", line)
+		}
+	}
+	name := "contributions.csv"
+	if j.pictures {
+		name = "report.html"
+	}
+	fmt.Fprintf(s.err, "results: %s\n", filepath.Join(j.out, name))
+	return nil
+}
+
+// alike tells findings, one line for all bottles of which the same is said.
+func alike(flags []eem.Flag) []string {
+	ids := map[[2]string][]string{}
+	for _, f := range flags {
+		ids[[2]string{f.Test, f.Msg}] = append(ids[[2]string{f.Test, f.Msg}], flagged(f))
+	}
+	var lines []string
+	for _, f := range flags {
+		k := [2]string{f.Test, f.Msg}
+		switch who := ids[k]; {
+		case len(who) == 0: // told
+		case len(who) == 1:
+			lines = append(lines, flagLine(f))
+		default:
+			lines = append(lines, fmt.Sprintf("%d of one kind (%s): %s (%s)", len(who), some(who), f.Msg, f.Test))
+		}
+		delete(ids, k)
+	}
+	return lines
+}
+
+// printOutcome tells what was found: components on out, bottles on err.
+func (j *job) printOutcome(s streams, st status) error {
 	t := newText("component", "method", "detected", "of", "lowest", "median", "highest", "unit")
 	for k := range j.judge {
 		for f, c := range j.res[k].Set.Components {
@@ -100,22 +143,10 @@ func (j *job) printSummary(s streams) error {
 	if err := t.print(s.out); err != nil {
 		return err
 	}
-	st := j.status()
 	if st.SinceLast {
 		fmt.Fprintf(s.err, "%s that the last results lack; what follows speaks of these\n", eem.Count(st.Bottles["new"], "bottle"))
 	}
 	fmt.Fprintln(s.err, st.line())
 	j.tellChances(s.err)
-	if w := j.worst(3); len(w) > 0 {
-		fmt.Fprintln(s.err, "look at first:")
-		for _, f := range w {
-			fmt.Fprintf(s.err, "  %s\n", flagLine(f))
-		}
-	}
-	name := "contributions.csv"
-	if j.pictures {
-		name = "report.html"
-	}
-	fmt.Fprintf(s.err, "results: %s\n", filepath.Join(j.out, name))
 	return nil
 }

@@ -135,7 +135,7 @@ func usable(v float64) bool { return v > 0 && !math.IsInf(v, 0) && !math.IsInf(1
 func RamanUnits(e *eem.EEM, r RamanArea, batch string) *eem.EEM {
 	from := "blanks of the batch"
 	if r.From != "" {
-		from = r.From
+		from = "borrowed blanks: " + r.From
 	}
 	out := Scale(e, 1/r.Area, eem.Raman, record(StepScale, "divided by the area of water's Raman line",
 		eem.Param{Name: "Raman area", Value: num(r.Area), Unit: "counts nm", Source: from},

@@ -298,7 +298,7 @@ func TestBorrowedBlank(t *testing.T) {
 				told[f.Test] = f
 			}
 		}
-		if f := told["blank-borrowed"]; !strings.Contains(f.Msg, "PW1-1 of batch") || !(f.Value > 0.5 && f.Value < 1.5) {
+		if f := told["blank-borrowed"]; !strings.Contains(f.Msg, "PW1-1, PW1-2 of batch") || !(f.Value > 0.5 && f.Value < 1.5) {
 			t.Errorf("power %g: %+v", power, f)
 		}
 		f, doubt := told["blank-drift"]
@@ -312,7 +312,7 @@ func TestBorrowedBlank(t *testing.T) {
 			t.Errorf("power %g: causes %+v", power, b.Causes)
 		}
 		if !slices.ContainsFunc(b.EEM.Notes, func(n eem.Note) bool {
-			return slices.ContainsFunc(n.Params, func(p eem.Param) bool { return p.Name == "Raman area" && strings.Contains(p.Source, "PW1-1 of batch") })
+			return slices.ContainsFunc(n.Params, func(p eem.Param) bool { return p.Name == "Raman area" && strings.Contains(p.Source, "PW1-1, PW1-2 of batch") })
 		}) {
 			t.Error("the steps do not name the blanks")
 		}

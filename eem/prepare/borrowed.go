@@ -28,16 +28,21 @@ func (b *Bottle) borrows() bool {
 
 // fromOf says in words where blanks of a batch come from.
 func fromOf(blanks []*Bottle, batch string) string {
-	var from []string
+	ids := map[string][]string{}
+	var order, from []string
 	for _, b := range blanks {
-		if b.Batch != batch {
-			from = append(from, fmt.Sprintf("%s of batch %s", b.Row.ID, b.Batch))
+		if b.Batch == batch {
+			continue
 		}
+		if ids[b.Batch] == nil {
+			order = append(order, b.Batch)
+		}
+		ids[b.Batch] = append(ids[b.Batch], b.Row.ID)
 	}
-	if len(from) == 0 {
-		return ""
+	for _, other := range order {
+		from = append(from, strings.Join(ids[other], ", ")+" of batch "+other)
 	}
-	return "blank " + strings.Join(from, ", ") + ", borrowed"
+	return strings.Join(from, "; ")
 }
 
 // findLoans looks, in every batch that borrows, for what its bottles' own Raman
@@ -125,11 +130,11 @@ func (s *Survey) tellLoan(bt *Batch) {
 		seen = fmt.Sprintf("water's own light (Raman) is %.3g of the blanks' in the middle of %s", l.ratio, eem.Count(l.n, "bottle"))
 	}
 	flag(eem.Note{Test: "blank-borrowed", Severity: eem.Remark, Value: l.age,
-		Msg: fmt.Sprintf("%s, %s, serves for subtraction and scale; %s", from, age, seen)})
+		Msg: fmt.Sprintf("blanks borrowed for subtraction and scale: %s, %s; %s", from, age, seen)})
 	limit := s.Limit("blank-drift")
 	if off := 100 * (l.ratio - 1); math.Abs(off)-200*l.u > limit {
 		flag(eem.Note{Test: "blank-drift", Severity: eem.Doubt, Value: off, Limit: limit,
-			Msg: fmt.Sprintf("%s (%s): %s, so that the lamp or the instrument has changed since and intensities may be off by %.0f %%; measure a blank with the batch, or name a nearer one in the blanks column", from, age, seen, math.Abs(off))})
+			Msg: fmt.Sprintf("blanks borrowed from another batch (%s, %s): %s, so that the lamp or the instrument has changed since and intensities may be off by %.0f %%; measure a blank with the batch, or name a nearer one in the blanks column", from, age, seen, math.Abs(off))})
 	}
 }
 
