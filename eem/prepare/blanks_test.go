@@ -312,7 +312,9 @@ func TestBorrowedBlank(t *testing.T) {
 			t.Errorf("power %g: causes %+v", power, b.Causes)
 		}
 		if !slices.ContainsFunc(b.EEM.Notes, func(n eem.Note) bool {
-			return slices.ContainsFunc(n.Params, func(p eem.Param) bool { return p.Name == "Raman area" && strings.Contains(p.Source, "PW1-1, PW1-2 of batch") })
+			return slices.ContainsFunc(n.Params, func(p eem.Param) bool {
+				return p.Name == "Raman area" && strings.Contains(p.Source, "PW1-1, PW1-2 of batch")
+			})
 		}) {
 			t.Error("the steps do not name the blanks")
 		}
