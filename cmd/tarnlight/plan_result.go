@@ -321,7 +321,7 @@ func (r *planResult) tellRaman() {
 	if set.Unit == "" {
 		note = "the unit of the references is not known; " + note
 	}
-	if !set.Grid.Ex.Covers(i.ExcitationNM) {
+	if ex := r.Full.Excitations; i.ExcitationNM < ex[0] || i.ExcitationNM > ex[len(ex)-1] { // of those that may be chosen
 		note += ", a scan outside this grid: scan the blanks there too"
 	} else {
 		note += fmt.Sprintf(": scan the blanks there too, or plan it in with --with %g", i.ExcitationNM)

@@ -395,7 +395,7 @@ func TestPlanTellsOfRamanUnits(t *testing.T) {
 			t.Fatal(err)
 		}
 		set := &unmix.Set{Unit: c.unit, Grid: eem.Grid{Ex: ex}}
-		r := planResult{taken: -1, in: &planInput{problem: plan.Problem{Set: set}, setting: survey.Default()}}
+		r := planResult{taken: -1, Full: planRow{Excitations: ex.Values()}, in: &planInput{problem: plan.Problem{Set: set}, setting: survey.Default()}}
 		r.tellRaman()
 		if got := strings.Join(r.Notes, "\n"); got != c.want {
 			t.Errorf("%s to %g nm: %q", c.unit, c.last, got)
