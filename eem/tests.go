@@ -44,7 +44,7 @@ var Tests = sortTests([]Test{
 	{"alert", Doubt, 0, "", "a contribution of a sample is above what the settings state for its component", "settings: quality.alert"},
 	{"above-standards", Doubt, 0, "", "the contribution is above the highest standard", "common practice, no source"},
 	{"reference-clipped", Doubt, 0, "cells", "saturated or over-absorbing cells of a standard were left out of the reference", "-"},
-	{"reference-intercept", Doubt, 3, "standard errors", "the standards' own line does not pass through zero", "common practice, no source"},
+	{"reference-intercept", Doubt, 3, "standard errors", "the standards' own line does not pass through zero, by more than the limit and than chance explains (Student's t, 5 %)", "3: common practice, no source"},
 	{"reference-levels", Remark, 2, "levels", "a reference rests on fewer levels than this", "-"},
 	{"limits-low", Remark, 2, "times", "the laboratory's own critical value of a component is this many times below what the budgets of most samples give: a limit from pure water says nothing of what else is in a bottle", "common practice, no source"},
 	{"few-cells", Reject, 0, "cells", "fewer cells than components are left", "-"},

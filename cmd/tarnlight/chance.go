@@ -67,7 +67,7 @@ func (j *job) chances() []chance {
 			lines++
 		}
 	}
-	add("reference-intercept", "references", "components", lines, 0.05, "Student's t, two-sided")
+	add("reference-intercept", "references", "components", lines, 0.05, "at most: Student's t, two-sided")
 	add("chart-rule", "", "points", j.ruledPoints(), chartFalse, "at most: the sum of the rules' rates")
 	return out
 }
