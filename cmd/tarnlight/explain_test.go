@@ -26,6 +26,7 @@ func columns(t *testing.T, path ...string) map[float64]float64 {
 // one cell from the raw text by the formulas of the README's sources, is the
 // number in survey.nc.
 func TestExplainChain(t *testing.T) {
+	heavy(t)
 	dir := demoFolder(t, nil)
 	runNoPictures(t, dir)
 	const ex, em, dilution = 250.0, 458.0, 5.0

@@ -11,6 +11,7 @@ import (
 
 // Every verb's help has examples, and every example runs.
 func TestExamplesRun(t *testing.T) {
+	heavy(t)
 	base := t.TempDir()
 	t.Chdir(base)
 	survey := func(name string) {

@@ -12,6 +12,7 @@ import (
 // The best 3 of 61 excitations for the amino acids: both mixtures quantified with
 // them and with all 61, against the known concentrations.
 func TestPlanAmino(t *testing.T) {
+	heavy(t)
 	data := shared(t, "amino_acids")
 	known := aminoKnown(t, data)
 	names := []string{"tryptophan", "tyrosine", "phenylalanine"}

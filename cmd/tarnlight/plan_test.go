@@ -106,6 +106,7 @@ func TestPlanTellsEverything(t *testing.T) {
 }
 
 func TestPlanLimits(t *testing.T) {
+	heavy(t)
 	dir := t.TempDir()
 	writePlanned(t, dir)
 	r := planJSON(t, []int{exitDone}, dir, "--scans", "4")
@@ -142,6 +143,7 @@ func TestPlanLimits(t *testing.T) {
 // Wishes reach the numbers: an unknown interferent and a component kept apart, a
 // forced line, a narrower window, a stated noise.
 func TestPlanWishes(t *testing.T) {
+	heavy(t)
 	dir := t.TempDir()
 	writePlanned(t, dir)
 	cost := func(r planResult) float64 { return *r.Plans[len(r.Plans)-1].Percent }

@@ -121,6 +121,7 @@ func TestAminoQuantify(t *testing.T) {
 // Natural water, corrected by its authors: read whole; the sample of zeros is not
 // usable, which is not the same as "not detected".
 func TestCaveDripwater(t *testing.T) {
+	heavy(t)
 	data := shared(t, "cave_dripwater")
 	files, err := filepath.Glob(filepath.Join(data, "eem", "*.csv"))
 	if err != nil || len(files) != 33 {

@@ -86,6 +86,7 @@ func TestNamesStay(t *testing.T) {
 // The choice is a table with verdicts; the analyst's own choice stands beside it
 // with the reason.
 func TestChoice(t *testing.T) {
+	heavy(t)
 	dir := resolveDemo(t, "components = [3, 5]\n", nil)
 	m := table(t, dir, "out", "models.csv")
 	if len(m.Rows) != 3 {

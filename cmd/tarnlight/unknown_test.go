@@ -34,6 +34,7 @@ func search(t testing.TB, j *job) *merit.Unknown {
 // step; at 5 in four of five surveys, because on emission steps of 2 nm the peak of a
 // band of 90 nm is itself not surer than that (8 surveys: 7, one was two steps off).
 func TestPlantedUnknown(t *testing.T) {
+	heavy(t)
 	n, long := surveys(t, 2)
 	dye := synth.Substance("dyestuff")
 	all := []float64{5}
