@@ -24,7 +24,8 @@ import (
 // folder may be deleted at any time, and nothing but time is lost. Rejected bottles
 // are never kept.
 //
-// Several Reads may share a folder: entries are written beside it and renamed.
+// Several Reads may share a folder: an entry is written under another name
+// and renamed when it is whole.
 type Cache struct {
 	dir     string
 	program string

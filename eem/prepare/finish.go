@@ -266,7 +266,7 @@ func (s *Survey) compareGrid(b *Bottle) {
 	}
 	var lackEx, lackEm, off int
 	for j := range s.Grid.Ex.Len() {
-		if nm := s.Grid.Ex.At(j); !b.EEM.Ex.Covers(nm) || !b.EEM.Ex.Bridged(nm) {
+		if nm := s.Grid.Ex.At(j); !tells(b.EEM.Ex, nm) {
 			lackEx++
 		} else if _, ok := b.EEM.Ex.Find(nm); !ok {
 			off++

@@ -7,6 +7,13 @@ import "tarnlight/eem"
 // A bottle measured at a few excitations alone has no numbers between them.
 const bridge = 20
 
+// tells says whether scans at the excitations ax tell of nm: at it, or on both sides of
+// it and near enough.
+func tells(ax eem.Axis, nm float64) bool {
+	i, w, ok := ax.Bracket(nm)
+	return ok && ax.Bridged(nm) && (w == 0 || ax.At(i+1)-ax.At(i) <= bridge)
+}
+
 // onGrid brings a bottle to the survey's grid, without bridging wide gaps of its
 // excitations.
 func (s *Survey) onGrid(e *eem.EEM) *eem.EEM {
@@ -15,8 +22,7 @@ func (s *Survey) onGrid(e *eem.EEM) *eem.EEM {
 	}
 	out := e.Regrid(s.Grid)
 	for j := range s.Grid.Ex.Len() {
-		i, w, ok := e.Ex.Bracket(s.Grid.Ex.At(j))
-		if !ok || w == 0 || e.Ex.At(i+1)-e.Ex.At(i) <= bridge {
+		if tells(e.Ex, s.Grid.Ex.At(j)) {
 			continue
 		}
 		for k := range s.Grid.Em.Len() {

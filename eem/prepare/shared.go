@@ -33,7 +33,7 @@ func (s *Survey) share(files [][]string) error {
 	for i := range s.Bottles {
 		for _, path := range files[i] {
 			if list := owners[path]; len(list) > 1 && s.shared[path] == nil {
-				if why := s.samplesOf(path, list); why != "" {
+				if why, ok := s.samplesOf(path, list); !ok {
 					return s.claimedTwice(path, list[0].Row, list[1].Row, why)
 				}
 				s.shared[path] = &sharedFile{left: len(list)}
@@ -43,28 +43,29 @@ func (s *Survey) share(files [][]string) error {
 	return nil
 }
 
-// samplesOf says why a file cannot hold all of these bottles, nothing when it can.
-func (s *Survey) samplesOf(path string, list []*Bottle) string {
+// samplesOf says whether a file can hold all of these bottles, and what of its names
+// keeps it from that where it has any.
+func (s *Survey) samplesOf(path string, list []*Bottle) (why string, ok bool) {
 	data, in, err := s.load(path)
 	if err != nil {
-		return " "
+		return "", false
 	}
 	f, err := scanfile.ReadBytes(in.Path, data, scanSettings(list[0].Setting.Scans))
 	if err != nil || len(f.Names()) < 2 {
-		return " "
+		return "", false
 	}
 	for _, b := range list {
 		if !slices.Contains(f.Names(), b.Row.ID) {
-			return fmt.Sprintf("; it names samples (%s), but none %q", some(f.Names()), b.Row.ID)
+			return fmt.Sprintf("; it names samples (%s), but none %q", some(f.Names()), b.Row.ID), false
 		}
 	}
-	return ""
+	return "", true
 }
 
 // claimedTwice is the error of a raw file that two rows name.
 func (s *Survey) claimedTwice(path string, a, b *survey.Row, why string) error {
 	return fmt.Errorf("%s:%d: raw file %s belongs to %q (line %d) and to %q (line %d)%s; make the scans cells more exact, for example %q instead of %q",
-		s.Sheet.Path, b.Line, s.short(path), a.ID, a.Line, b.ID, b.Line, strings.TrimSpace(why), exacter(a.Scans), a.Scans)
+		s.Sheet.Path, b.Line, s.short(path), a.ID, a.Line, b.ID, b.Line, why, exacter(a.Scans), a.Scans)
 }
 
 // some lists the first few names.
