@@ -42,7 +42,7 @@ var Tests = sortTests([]Test{
 	{"repeated-point", Remark, 0, "points", "a wavelength stands twice in a scan and the mean was taken", "-"},
 	{"diluted", Remark, 0, "", "the result was multiplied by the dilution factor", "-"},
 	{"alert", Doubt, 0, "", "a contribution of a sample is above what the settings state for its component", "settings: quality.alert"},
-	{"above-standards", Doubt, 0, "", "the contribution is above the highest standard", "common practice, no source"},
+	{"above-standards", Doubt, 0, "", "the contribution is above the highest standard by more than two standard uncertainties", "common practice, no source"},
 	{"reference-clipped", Doubt, 0, "cells", "saturated or over-absorbing cells of a standard were left out of the reference", "-"},
 	{"reference-intercept", Doubt, 3, "standard errors", "the standards' own line does not pass through zero, by more than the limit and than chance explains (Student's t, 5 %)", "3: common practice, no source"},
 	{"reference-levels", Remark, 2, "levels", "a reference rests on fewer levels than this", "-"},

@@ -40,13 +40,13 @@ type Point struct {
 }
 
 // Doubtful says whether the intercept differs from 0 at the 5 % level (two-sided
-// Student t with DF degrees of freedom).
-func (l Line) Doubtful() (t, limit float64, doubtful bool) {
+// Student t with DF degrees of freedom) and by more than least standard errors.
+func (l Line) Doubtful(least float64) (t, limit float64, doubtful bool) {
 	if l.DF < 1 || math.IsNaN(l.InterceptSE) || l.InterceptSE == 0 {
 		return math.NaN(), math.NaN(), false
 	}
 	t = math.Abs(l.Intercept) / l.InterceptSE
-	limit = distuv.StudentsT{Mu: 0, Sigma: 1, Nu: float64(l.DF)}.Quantile(0.975)
+	limit = max(least, distuv.StudentsT{Mu: 0, Sigma: 1, Nu: float64(l.DF)}.Quantile(0.975))
 	return t, limit, t > limit
 }
 

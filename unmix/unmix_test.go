@@ -134,7 +134,7 @@ func TestLineNorris(t *testing.T) {
 			t.Errorf("%s = %.15g, certified %.15g: %.1f digits", c.name, c.got, c.want, lre)
 		}
 	}
-	if _, _, doubtful := l.Doubtful(); doubtful {
+	if _, _, doubtful := l.Doubtful(0); doubtful {
 		t.Error("an intercept of 1.1 standard errors is called doubtful")
 	}
 }

@@ -175,9 +175,8 @@ func (j *job) lineFlags() []eem.Flag {
 		out = append(out, j.sv.Accept(eem.Flag{Component: component, Method: "references", Test: test, Severity: sev, Value: v, Limit: limit, Msg: msg}))
 	}
 	for _, l := range j.lines {
-		t, least, doubtful := l.Doubtful()
-		if least = max(least, j.sv.Limit("reference-intercept")); doubtful && t > least {
-			add(l.Component, "reference-intercept", eem.Doubt, t, least,
+		if t, limit, doubtful := l.Doubtful(j.sv.Limit("reference-intercept")); doubtful {
+			add(l.Component, "reference-intercept", eem.Doubt, t, limit,
 				fmt.Sprintf("the standards of %s do not lie on a line through zero: %s; look for a blank that was not subtracted, or contaminated levels", l.Component, l))
 		}
 		limit := j.sv.Limit("linearity")
