@@ -7,6 +7,7 @@ import (
 	"path/filepath"
 
 	"github.com/spf13/cobra"
+	"gonum.org/v1/gonum/floats"
 
 	"tarnlight/eem"
 	"tarnlight/unmix"
@@ -170,7 +171,7 @@ func noNaN(v []float64) []float64 {
 }
 
 // peak is the wavelength of the maximum.
-func peak(a eem.Axis, v []float64) float64 { return a.At(top(v)) }
+func peak(a eem.Axis, v []float64) float64 { return a.At(floats.MaxIdx(v)) }
 
 // relative is |x − y| over the larger of both, 0 where both are 0.
 func relative(x, y float64) float64 {

@@ -8,6 +8,8 @@ import (
 	"path/filepath"
 	"slices"
 
+	"gonum.org/v1/gonum/floats"
+
 	"tarnlight/eem"
 	"tarnlight/eem/prepare"
 	"tarnlight/eem/survey"
@@ -126,21 +128,10 @@ func (j *job) fitNotes(chosen *unmix.Set) {
 		}
 	}
 	for _, c := range chosen.Components {
-		if j1, k1 := top(c.Ex), top(c.Em); !c.ExDetermined[j1] || !c.EmDetermined[k1] {
+		if j1, k1 := floats.MaxIdx(c.Ex), floats.MaxIdx(c.Em); !c.ExDetermined[j1] || !c.EmDetermined[k1] {
 			j.flags = append(j.flags, j.sv.Accept(eem.NewFlag(eem.Flag{Component: c.Name, Method: "parafac", Test: "peak-open", Severity: eem.Doubt, Value: nan, Limit: nan,
 				Msg: fmt.Sprintf("the data do not determine %s at its own peak (ex %s / em %s nm), so that its contributions have no sure scale; too much of it lies under scatter or beyond the scans", c.Name,
 					eem.NM(chosen.Grid.Ex.At(j1)), eem.NM(chosen.Grid.Em.At(k1)))})))
 		}
 	}
-}
-
-// top is the place of the largest loading.
-func top(v []float64) int {
-	best := 0
-	for i, x := range v {
-		if x > v[best] {
-			best = i
-		}
-	}
-	return best
 }

@@ -9,7 +9,8 @@ import (
 	"io"
 	"regexp"
 	"strconv"
-	"strings"
+
+	"github.com/xuri/excelize/v2"
 
 	"tarnlight/eem/scanfile"
 )
@@ -162,11 +163,8 @@ func (g *grownSheet) column(e xml.StartElement) {
 // cell notes the style of a cell; without a reference it follows the one before.
 func (r *sheetRow) cell(e xml.StartElement) {
 	col := len(r.styles) + 1
-	if letters := strings.TrimRight(attribute(e, "r"), "0123456789"); letters != "" && len(letters) <= 3 {
-		col = 0
-		for _, l := range strings.ToUpper(letters) {
-			col = col*26 + int(l-'A') + 1
-		}
+	if at, _, err := excelize.CellNameToCoordinates(attribute(e, "r")); err == nil {
+		col = at
 	}
 	r.styles[col] = attribute(e, "s")
 }
@@ -217,7 +215,11 @@ func (g *grownSheet) writeRow(b *bytes.Buffer, number int, record []string, styl
 		if style == "" && text == "" {
 			continue
 		}
-		fmt.Fprintf(b, `<%sc r="%s%d"`, p, columnName(j+1), number)
+		at, err := excelize.CoordinatesToCellName(j+1, number)
+		if err != nil { // more columns or rows than a sheet can have: sameAndMore tells
+			continue
+		}
+		fmt.Fprintf(b, `<%sc r="%s"`, p, at)
 		if style == "" {
 			style = g.styleOf(j + 1)
 		}
@@ -242,15 +244,6 @@ func (g *grownSheet) styleOf(col int) string {
 		}
 	}
 	return ""
-}
-
-// columnName gives the letters of a column counted from 1.
-func columnName(col int) string {
-	name := ""
-	for ; col > 0; col = (col - 1) / 26 {
-		name = string(rune('A'+(col-1)%26)) + name
-	}
-	return name
 }
 
 var stated = regexp.MustCompile(`(ref="[A-Z]+[0-9]+:[A-Z]+)([0-9]+)"`)

@@ -3,6 +3,8 @@ package merit
 import (
 	"slices"
 
+	"gonum.org/v1/gonum/floats"
+
 	"tarnlight/eem"
 )
 
@@ -123,7 +125,7 @@ func (b *bottle) onBottle(c *eem.Cause) []float64 {
 	if c.Scope == eem.OfSurvey && e.src.References == nil && e.r.Set.Components[0].AmountUnit == "" {
 		for g := range n {
 			comp := &e.r.Set.Components[g]
-			v := relative(c, int32(peak(comp.Ex)), int32(peak(comp.Em)))
+			v := relative(c, int32(floats.MaxIdx(comp.Ex)), int32(floats.MaxIdx(comp.Em)))
 			for h := range n {
 				out[h*n+g] = v * b.m.gram[h*n+g]
 			}
@@ -144,14 +146,4 @@ func (b *bottle) onBottle(c *eem.Cause) []float64 {
 		}
 	}
 	return out
-}
-
-func peak(v []float64) int {
-	at := 0
-	for i, x := range v {
-		if x > v[at] {
-			at = i
-		}
-	}
-	return at
 }

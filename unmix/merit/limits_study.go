@@ -5,6 +5,8 @@ import (
 	"math"
 	"slices"
 
+	"gonum.org/v1/gonum/stat"
+
 	"tarnlight/eem"
 	"tarnlight/unmix"
 )
@@ -42,7 +44,7 @@ func RepeatsOf(batches [][]float64) Repeats {
 	r.Mean = sum / n
 	var within, between float64
 	for _, b := range batches {
-		m := mean(b)
+		m := stat.Mean(b, nil)
 		between += float64(len(b)) * (m - r.Mean) * (m - r.Mean)
 		for _, v := range b {
 			within += (v - m) * (v - m)
@@ -65,14 +67,6 @@ func RepeatsOf(batches [][]float64) Repeats {
 		r.Total, r.DF = math.Sqrt(v[0]+v[1]), Satterthwaite(v, []float64{k - 1, n - k})
 	}
 	return r
-}
-
-func mean(v []float64) float64 {
-	sum := 0.0
-	for _, x := range v {
-		sum += x
-	}
-	return sum / float64(len(v))
 }
 
 // The published forms of a detection limit.
@@ -180,7 +174,7 @@ func FromStandards(x, y []float64, batches int) Basis {
 		Repeats: Repeats{N: len(x), Batches: batches, Mean: math.NaN(), SD: l.SD, Within: math.NaN(), Between: math.NaN(), Total: l.SD, DF: l.DF},
 		Values:  [][]float64{y}}
 	if len(x) > 0 {
-		b.Mean = mean(x)
+		b.Mean = stat.Mean(x, nil)
 	}
 	levels := slices.Sorted(slices.Values(x))
 	switch n := len(slices.Compact(levels)); {

@@ -6,6 +6,7 @@ import (
 
 	"gonum.org/v1/gonum/floats"
 	"gonum.org/v1/gonum/mat"
+	"gonum.org/v1/gonum/stat"
 
 	"tarnlight/eem"
 )
@@ -16,12 +17,12 @@ import (
 // noise. It is the plain maximum where the stretch gets shorter than six points or
 // does not hold that.
 func clearPeak(a eem.Axis, v []float64) int {
-	top := peak(v)
+	top := floats.MaxIdx(v)
 	if len(v) < 8 {
 		return top
 	}
 	smooth := averaged(v, max(1, len(v)/32))
-	centre := peak(smooth)
+	centre := floats.MaxIdx(smooth)
 	for _, share := range []float64{0.5, 0.65, 0.8, 0.9} {
 		lo, hi := centre, centre
 		for lo > 0 && smooth[lo-1] > share*smooth[centre] {
@@ -45,7 +46,7 @@ func averaged(v []float64, n int) []float64 {
 	out := make([]float64, len(v))
 	for i := range v {
 		lo, hi := max(0, i-n), min(len(v), i+n+1)
-		out[i] = mean(v[lo:hi])
+		out[i] = stat.Mean(v[lo:hi], nil)
 	}
 	return out
 }
@@ -65,8 +66,7 @@ func roughness(v []float64) float64 {
 	return d[len(d)/2] / median / math.Sqrt(20)
 }
 
-// terms of the polynomial, in wavenumbers: bands are nearly symmetrical there
-// (common practice, no source).
+// peakTerms are those of a parabola.
 const peakTerms = 3
 
 // sd is the standard deviation of what the fit leaves.
@@ -74,15 +74,15 @@ func sd(left []float64) float64 {
 	return floats.Norm(left, 2) / math.Sqrt(float64(len(left)-peakTerms))
 }
 
-// bandPeak fits a parabola in wavenumbers to v from lo to hi and returns where it is highest and what
-// it leaves; false where that is at an end.
+// bandPeak fits a parabola in wavenumbers, in which bands are nearly symmetrical
+// (common practice, no source), to v from lo to hi and returns where it is highest and
+// what it leaves; false where that is at an end.
 func bandPeak(a eem.Axis, v []float64, lo, hi int) (at int, left []float64, ok bool) {
-	const terms = peakTerms
 	n := hi - lo + 1
 	x := func(i int) float64 { return 2*(1/a.At(i)-1/a.At(lo))/(1/a.At(hi)-1/a.At(lo)) - 1 }
-	m, rhs := mat.NewDense(n, terms, nil), mat.NewVecDense(n, slices.Clone(v[lo:hi+1]))
+	m, rhs := mat.NewDense(n, peakTerms, nil), mat.NewVecDense(n, slices.Clone(v[lo:hi+1]))
 	for i := range n {
-		for t, p := 0, 1.0; t < terms; t, p = t+1, p*x(lo+i) {
+		for t, p := 0, 1.0; t < peakTerms; t, p = t+1, p*x(lo+i) {
 			m.Set(i, t, p)
 		}
 	}
@@ -91,7 +91,7 @@ func bandPeak(a eem.Axis, v []float64, lo, hi int) (at int, left []float64, ok b
 		return 0, nil, false
 	}
 	fit.MulVec(m, &c)
-	at = peak(fit.RawVector().Data)
+	at = floats.MaxIdx(fit.RawVector().Data)
 	fit.SubVec(rhs, &fit)
 	return lo + at, fit.RawVector().Data, at > 0 && at < n-1
 }

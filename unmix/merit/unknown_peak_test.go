@@ -5,6 +5,8 @@ import (
 	"math/rand/v2"
 	"testing"
 
+	"gonum.org/v1/gonum/floats"
+
 	"tarnlight/eem"
 )
 
@@ -66,7 +68,7 @@ func TestClearPeak(t *testing.T) {
 			if d := clearPeak(em, noisy) - truth; d > c.max || d < -c.max {
 				off++
 			}
-			if d := peak(noisy) - truth; d > c.max || d < -c.max {
+			if d := floats.MaxIdx(noisy) - truth; d > c.max || d < -c.max {
 				plain++
 			}
 		}

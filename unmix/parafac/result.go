@@ -6,6 +6,8 @@ import (
 	"math"
 	"slices"
 
+	"gonum.org/v1/gonum/floats"
+
 	"tarnlight/eem"
 )
 
@@ -152,22 +154,12 @@ func (s *als) order() []int {
 		idx[f] = f
 		v, _ := s.loading(s.b, s.j, f)
 		w, _ := s.loading(s.c, s.k, f)
-		ex[f], em[f] = peakAt(v), peakAt(w)
+		ex[f], em[f] = floats.MaxIdx(v), floats.MaxIdx(w)
 	}
 	slices.SortStableFunc(idx, func(x, y int) int {
 		return cmp.Or(cmp.Compare(em[x], em[y]), cmp.Compare(ex[x], ex[y]))
 	})
 	return idx
-}
-
-func peakAt(v []float64) int {
-	at := 0
-	for i, x := range v {
-		if x > v[at] {
-			at = i
-		}
-	}
-	return at
 }
 
 // residuals fills the sums of squares, in the cube's unit, from the residuals

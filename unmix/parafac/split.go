@@ -6,6 +6,8 @@ import (
 	"slices"
 	"sort"
 
+	"gonum.org/v1/gonum/floats"
+
 	"tarnlight/eem"
 )
 
@@ -158,7 +160,7 @@ func maxOne(v []float64, ok []bool) []float64 {
 // and centroid, nm, moved from x to y.
 func compare(axis eem.Axis, x, y []float64, ok []bool) (congruence, peak, centre float64) {
 	x, y = only(x, ok), only(y, ok)
-	return Congruence(x, y), axis.At(peakAt(y)) - axis.At(peakAt(x)), centroid(axis, y) - centroid(axis, x)
+	return Congruence(x, y), axis.At(floats.MaxIdx(y)) - axis.At(floats.MaxIdx(x)), centroid(axis, y) - centroid(axis, x)
 }
 
 func centroid(axis eem.Axis, v []float64) float64 {

@@ -1,6 +1,10 @@
 package parafac
 
-import "math"
+import (
+	"math"
+
+	"gonum.org/v1/gonum/floats"
+)
 
 // tell fills in what the result says about errors: standard errors, what is
 // determined, leverage and influence.
@@ -12,7 +16,7 @@ func (n *newton) tell(r *Result) {
 	for x := range f {
 		b, _ := in.loading(in.b, in.j, x)
 		c, _ := in.loading(in.c, in.k, x)
-		peakB[x], peakC[x] = peakAt(b), peakAt(c)
+		peakB[x], peakC[x] = floats.MaxIdx(b), floats.MaxIdx(c)
 	}
 	for to, x := range r.order {
 		se, ok := in.modeSE(sb, in.b, in.dampB, in.j, x, peakB[x], r.Held[to] != "")

@@ -1,6 +1,7 @@
 package report
 
 import (
+	"cmp"
 	"slices"
 	"strings"
 )
@@ -122,15 +123,7 @@ func (r *results) budgetCauses() (causes, open []string) {
 			open = append(open, name)
 		}
 	}
-	slices.SortStableFunc(causes, func(a, b string) int {
-		switch {
-		case total[a] > total[b]:
-			return -1
-		case total[a] < total[b]:
-			return 1
-		}
-		return 0
-	})
+	slices.SortStableFunc(causes, func(a, b string) int { return cmp.Compare(total[b], total[a]) })
 	return causes, open
 }
 
