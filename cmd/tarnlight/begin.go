@@ -37,8 +37,9 @@ concentrations are known to you alone.
 
 Names tell more where they follow a pattern, given with --name or as name under
 [sheet] in survey.toml: {id}, {kind}, {date}, {n} (a repetition), {dilution},
-{nm} (an excitation) and * (anything), such as "{date}_{kind}_{id}_ex{nm}" or "{date}/{id}". [sheet] kinds
-says what the laboratory's own words stand for, kinds = {PW = "blank"}.
+{nm} (an excitation) and * (anything), such as "{date}_{kind}_{id}_ex{nm}" or
+"{date}/{id}". [sheet] kinds says what the laboratory's own words stand for,
+kinds = {PW = "blank"}.
 
 With --add, as in a nightly job, rows for files that no row names yet are appended to
 the run sheet by that pattern. Nothing is asked and no row that is there changes.

@@ -191,7 +191,7 @@ func (o planOptions) innerFilter(in *planInput) error {
 		}
 	}
 	if lost > 0 {
-		in.note("%d cells lie outside the absorbance spectrum (%s) and are left out", lost, a.Axis)
+		in.note("%s left out: outside the absorbance spectrum (%s)", eem.Count(lost, "cell"), a.Axis)
 	}
 	return nil
 }

@@ -6,6 +6,7 @@ import (
 	"slices"
 	"strings"
 
+	"tarnlight/eem"
 	"tarnlight/unmix/plan"
 	"tarnlight/unmix/report"
 )
@@ -99,17 +100,10 @@ func (r *planResult) tellFewer() {
 				has = "has"
 			}
 			r.Notes = append(r.Notes, fmt.Sprintf("%s %s a smaller predicted uncertainty than all %d: every cell weighs the same in the fit, and dim scans bring more noise than light. "+
-				"Yet fewer scans also show less of what the model does not know: run will see less of it and report less of it; keep the full grid for some bottles", scans(p.Scans), has, r.Full.Scans))
+				"Yet fewer scans also show less of what the model does not know: run will see less of it and report less of it; keep the full grid for some bottles", eem.Count(p.Scans, "scan"), has, r.Full.Scans))
 			return
 		}
 	}
-}
-
-func scans(n int) string {
-	if n == 1 {
-		return "1 scan"
-	}
-	return fmt.Sprintf("%d scans", n)
 }
 
 func timeWords(t plan.Timing) string {
@@ -194,7 +188,7 @@ func (r *planResult) judge(limits map[string]float64) {
 	best := r.best()
 	if best < 0 {
 		r.doubt = true
-		r.Verdict = fmt.Sprintf("no plan of up to %s tells all components apart; plan for more (--scans), or leave components out", scans(r.Plans[len(r.Plans)-1].Scans))
+		r.Verdict = fmt.Sprintf("no plan of up to %s tells all components apart; plan for more (--scans), or leave components out", eem.Count(r.Plans[len(r.Plans)-1].Scans, "scan"))
 		return
 	}
 	few := r.fewest(best, r.speaks())
@@ -207,7 +201,7 @@ func (r *planResult) judge(limits map[string]float64) {
 	if p.Scans == 1 {
 		are = "is enough:"
 	}
-	r.Verdict = fmt.Sprintf("%s at ex %s nm (%.3g min) %s within %.0f %% of the best of these plans%s%s", scans(p.Scans), numbersText(p.Excitations), p.Minutes, are, 100*(enough-1), r.loss(p), r.silent(p))
+	r.Verdict = fmt.Sprintf("%s at ex %s nm (%.3g min) %s within %.0f %% of the best of these plans%s%s", eem.Count(p.Scans, "scan"), numbersText(p.Excitations), p.Minutes, are, 100*(enough-1), r.loss(p), r.silent(p))
 }
 
 // fewest is the first plan of so many scans or more that is nearly as good as the
@@ -235,7 +229,7 @@ func (r *planResult) silent(p planRow) string {
 	if p.Scans >= n {
 		return ""
 	}
-	return fmt.Sprintf("; not recommended: the samples depart from the model, and fewer than %s (components + 1) show little of that; plan for %d or more (--scans)", scans(n), n)
+	return fmt.Sprintf("; not recommended: the samples depart from the model, and fewer than %s (components + 1) show little of that; plan for %d or more (--scans)", eem.Count(n, "scan"), n)
 }
 
 // loss says how much higher than with all scans the detection limit of the component
@@ -274,13 +268,13 @@ func (r *planResult) judgeLimits() {
 	for i, p := range r.Plans {
 		if p.Meets {
 			r.taken = i
-			r.Verdict = fmt.Sprintf("the smallest plan that meets the detection limits: %s at ex %s nm, %.3g min%s%s", scans(p.Scans), numbersText(p.Excitations), p.Minutes, r.loss(p), r.silent(p))
+			r.Verdict = fmt.Sprintf("the smallest plan that meets the detection limits: %s at ex %s nm, %.3g min%s%s", eem.Count(p.Scans, "scan"), numbersText(p.Excitations), p.Minutes, r.loss(p), r.silent(p))
 			return
 		}
 	}
 	r.doubt = true
 	last := r.Plans[len(r.Plans)-1]
-	r.Verdict = fmt.Sprintf("no plan of up to %s meets the detection limits: %s", scans(last.Scans), lacking(last))
+	r.Verdict = fmt.Sprintf("no plan of up to %s meets the detection limits: %s", eem.Count(last.Scans, "scan"), lacking(last))
 	if r.Full.Meets {
 		r.Verdict += fmt.Sprintf("; all %d scans do, so that more of them may: --scans", r.Full.Scans)
 	} else {

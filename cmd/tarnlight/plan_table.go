@@ -7,6 +7,7 @@ import (
 	"strconv"
 	"strings"
 
+	"tarnlight/eem"
 	"tarnlight/unmix/report"
 )
 
@@ -58,7 +59,7 @@ func (r *planResult) print(w io.Writer) error {
 	fmt.Fprintln(w)
 	for _, p := range r.Plans {
 		for _, m := range p.Mixed {
-			fmt.Fprintf(w, "%s: %s\n", scans(p.Scans), m)
+			fmt.Fprintf(w, "%s: %s\n", eem.Count(p.Scans, "scan"), m)
 		}
 	}
 	_, err := fmt.Fprintln(w, r.Verdict)

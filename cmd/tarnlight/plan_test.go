@@ -114,7 +114,7 @@ func TestPlanLimits(t *testing.T) {
 	reach := fmt.Sprintf("tryptophan=%g", at3*1.001)
 	res := call("plan", dir, "--scans", "4", "--limit", reach).want(t, exitDone)
 	smallest := slices.IndexFunc(r.Plans, func(p planRow) bool { return *p.Components[0].Detection <= at3*1.001 }) + 1
-	if want := fmt.Sprintf("the smallest plan that meets the detection limits: %s at ex %s nm", scans(smallest), numbersText(r.Plans[smallest-1].Excitations)); !strings.Contains(res.out, want) {
+	if want := fmt.Sprintf("the smallest plan that meets the detection limits: %s at ex %s nm", eem.Count(smallest, "scan"), numbersText(r.Plans[smallest-1].Excitations)); !strings.Contains(res.out, want) {
 		t.Errorf("%s\nlacks %q", res.out, want)
 	}
 	res = call("plan", dir, "--scans", "2", "--limit", "tryptophan=1e-6").want(t, exitDoubt)

@@ -64,7 +64,7 @@ func (n numbers) planTradeOff(d *PlanDrawing) *figure {
 		style := planLine(f)
 		key = append(key, keyEntry{word: plain(c.Name), line: &style})
 	}
-	key = append(key, keyEntry{word: "all together", line: &planTogether})
+	key = append(key, keyEntry{word: d.criterion(), line: &planTogether})
 	f := &figure{name: "plan-tradeoff", numbers: num,
 		caption: "Predicted relative standard uncertainty of each component by number of scans (rings at the right end: all scans of the grid), and the criterion by instrument time; the plan drawn over the references is marked."}
 	return f.panels(2, 72*vg.Millimeter, []*plot.Plot{a, b}, key...)
