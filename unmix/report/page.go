@@ -126,7 +126,8 @@ func (f *figure) source() (template.URL, error) {
 	return template.URL("data:image/" + kind + ";base64," + base64.StdEncoding.EncodeToString(data)), nil
 }
 
-// writePage executes the template and puts the maps in at its end.
+// writePage executes the template and puts the maps in at its end, behind the script:
+// the table can be used while the browser still reads them.
 func writePage(w io.Writer, v *page, p *pass) error {
 	var b bytes.Buffer
 	if err := pageTemplate.Execute(&b, v); err != nil {

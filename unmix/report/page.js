@@ -110,14 +110,17 @@ window.addEventListener("beforeprint", () => { room = rows.length; filter(); });
 // maps: unpack
 const colours = hex => { const out = []; for (let i = 0; i < hex.length; i += 6) out.push([0, 2, 4].map(k => parseInt(hex.substr(i + k, 2), 16))); return out; };
 const SEQ = colours(D.seq), DIV = colours(D.div), MISSING = colours(D.missing)[0], HATCH = colours(D.hatch)[0];
-let packedMaps = null;
-function packedMap(i) {
+const wholePage = document.readyState !== "loading" ? null : new Promise(done => document.addEventListener("DOMContentLoaded", done, { once: true }));
+let packedMaps = null; // a line a bottle, behind this script
+async function packedMap(i) {
+  await wholePage;
   if (!packedMaps) packedMaps = ($("packed") ? $("packed").textContent : "").split("\n");
   return packedMaps[i] || "";
 }
 async function unpack(i) {
-  if (!packedMap(i)) return null;
-  const bin = atob(packedMap(i)), packed = new Uint8Array(bin.length);
+  const text = await packedMap(i);
+  if (!text) return null;
+  const bin = atob(text), packed = new Uint8Array(bin.length);
   for (let k = 0; k < bin.length; k++) packed[k] = bin.charCodeAt(k);
   const stream = new Blob([packed]).stream().pipeThrough(new DecompressionStream("gzip"));
   const raw = new Uint8Array(await new Response(stream).arrayBuffer());
@@ -329,11 +332,11 @@ async function open(row, focus) {
   if (focus) detail.focus({ preventScroll: matchMedia("(min-width: 1101px)").matches });
   S.i = i; S.data = null;
   if (!mapCanvases.length) return;
-  let data = null;
-  try { data = await unpack(i); } catch (e) { $("readout").textContent = "This browser cannot unpack the maps; open the picture instead."; }
+  let data = null, why = "No map: nothing was measured, or the survey is too large for the page.";
+  try { data = await unpack(i); } catch (e) { why = "This browser cannot unpack the maps; open the picture instead."; }
   if (turn !== opening) return;
   document.querySelector(".maps").hidden = document.querySelector(".slices").hidden = !data;
-  if (!data) { if (!packedMap(i)) $("readout").textContent = "No map: nothing was measured, or the survey is too large for the page."; return; }
+  if (!data) { $("readout").textContent = why; return; }
   S.data = data;
   if (S.j < 0) {
     const r = data.layer[1 + S.method] || data.layer[0];
