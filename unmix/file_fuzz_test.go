@@ -4,33 +4,13 @@ import (
 	"bytes"
 	"encoding/csv"
 	"math"
-	"runtime/metrics"
 	"strings"
 	"testing"
-	"time"
 
 	"tarnlight/eem"
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix"
 )
-
-// bounded runs a reader and fails when it takes more than 1 s per 100 kB, or
-// allocates more than 40 times the file, so that what it holds at one time is under
-// 20 times; 2 MB and a second are for what every reader takes.
-func bounded(t *testing.T, size int, read func()) {
-	t.Helper()
-	sample := []metrics.Sample{{Name: "/gc/heap/allocs:bytes"}}
-	metrics.Read(sample)
-	before, start := sample[0].Value.Uint64(), time.Now()
-	read()
-	took := time.Since(start)
-	metrics.Read(sample)
-	if limit := time.Second + time.Duration(size)*10*time.Microsecond; took > limit {
-		t.Errorf("%v for %d bytes", took, size)
-	}
-	if got := sample[0].Value.Uint64() - before; got > 2<<20+40*uint64(size) {
-		t.Errorf("%d bytes allocated for %d", got, size)
-	}
-}
 
 const smallModel = `{"version":1,"method":"parafac","title":"x","unit":"RU","grid":{"excitation_nm":[250,260],"emission_nm":[300,310,320]},
 "components":[{"name":"C1","excitation":[1,0.5],"emission":[0.25,1,null],"scale":1},
@@ -49,7 +29,7 @@ func FuzzModel(f *testing.F) {
 	f.Fuzz(func(t *testing.T, data []byte) {
 		var m *unmix.Model
 		var err error
-		bounded(t, len(data), func() { m, err = unmix.ParseModel("model.json", data) })
+		testkit.Bounded(t, len(data), func() { m, err = unmix.ParseModel("model.json", data) })
 		if err != nil {
 			if !strings.HasPrefix(err.Error(), "model.json:") {
 				t.Fatalf("error without place: %v", err)
@@ -158,7 +138,7 @@ func TestModelRefusals(t *testing.T) {
 		"depth":      strings.Repeat("[", 100_000),
 		"grid":       `{"version":1,"grid":{"excitation_nm":[` + axis + `],"emission_nm":[` + axis + `]},"components":[{}]}`,
 	} {
-		bounded(t, len(text), func() {
+		testkit.Bounded(t, len(text), func() {
 			if _, err := unmix.ParseModel("m.json", []byte(text)); err == nil {
 				t.Errorf("%s: no error", what)
 			}

@@ -8,6 +8,7 @@ import (
 	"testing"
 
 	"tarnlight/eem/scanfile"
+	"tarnlight/eem/testkit"
 )
 
 // Real measurements: tryptophan and tyrosine are given as references, phenylalanine,
@@ -15,7 +16,7 @@ import (
 // where phenylalanine's own solution S3 does, to 5 nm.
 func TestAminoMissing(t *testing.T) {
 	heavy(t)
-	data := shared(t, "amino_acids")
+	data := testkit.Shared(t, "data", "amino_acids")
 	known := aminoKnown(t, data)
 	sheet := fmt.Sprintf("id,kind,scans,conc:tryptophan [mol/L],conc:tyrosine [mol/L]\nS1,standard,S1,%g,\nS2,standard,S2,,%g\nS3,sample,S3,,\nS4,sample,S4,,\nS5,sample,S5,,\n",
 		known["S1"][0], known["S2"][1])

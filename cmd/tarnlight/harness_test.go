@@ -48,20 +48,6 @@ func (r result) want(t *testing.T, codes ...int) result {
 	return r
 }
 
-// shared returns the path of a folder of real measurements and skips the test
-// where it is missing: it is not part of a clone.
-func shared(t testing.TB, name string) string {
-	t.Helper()
-	p, err := filepath.Abs(filepath.Join(root, "..", "shared", "data", name))
-	if err != nil {
-		t.Fatal(err)
-	}
-	if _, err := os.Stat(p); err != nil {
-		t.Skipf("real measurements are not here: ../shared/data/%s; they are kept beside the repository", name)
-	}
-	return p
-}
-
 // folder makes a survey folder of files (name → content).
 func folder(t testing.TB, files map[string]string) string {
 	t.Helper()

@@ -25,7 +25,8 @@ var packages = []struct{ name, may string }{
 	{"nnls", "gonum netlib"},
 
 	{"eem", "gonum"},
-	{"eem/netcdf", ""}, // knows no spectroscopy
+	{"eem/testkit", ""}, // for tests alone
+	{"eem/netcdf", ""},  // knows no spectroscopy
 	{"eem/scanfile", "gonum excelize text eem"},
 	{"eem/correct", "gonum eem"},
 	{"eem/scatter", "gonum eem"},

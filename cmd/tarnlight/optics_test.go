@@ -11,6 +11,7 @@ import (
 	"time"
 
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix/report"
 )
 
@@ -143,7 +144,7 @@ func TestOpticsColumns(t *testing.T) {
 // scans too give the same, and so do the columns of samples.csv. Endres et al. 2023,
 // Quaternary Research, doi:10.1017/qua.2023.41.
 func TestCaveIndices(t *testing.T) {
-	data := shared(t, "cave_dripwater")
+	data := testkit.Shared(t, "data", "cave_dripwater")
 	published, err := report.ReadTable(filepath.Join(data, "published_indices.csv"))
 	if err != nil {
 		t.Fatal(err)

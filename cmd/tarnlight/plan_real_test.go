@@ -7,13 +7,15 @@ import (
 	"slices"
 	"strings"
 	"testing"
+
+	"tarnlight/eem/testkit"
 )
 
 // The best 3 of 61 excitations for the amino acids: both mixtures quantified with
 // them and with all 61, against the known concentrations.
 func TestPlanAmino(t *testing.T) {
 	heavy(t)
-	data := shared(t, "amino_acids")
+	data := testkit.Shared(t, "data", "amino_acids")
 	known := aminoKnown(t, data)
 	names := []string{"tryptophan", "tyrosine", "phenylalanine"}
 	ids := []string{"S1", "S2", "S3", "S4", "S5"}
@@ -57,7 +59,7 @@ func TestPlanAmino(t *testing.T) {
 // excitations against those from all of them.
 func TestPlanCave(t *testing.T) {
 	heavy(t)
-	data := shared(t, "cave_dripwater")
+	data := testkit.Shared(t, "data", "cave_dripwater")
 	files, err := filepath.Glob(filepath.Join(data, "eem", "*.csv"))
 	if err != nil || len(files) == 0 {
 		t.Fatal(files, err)
@@ -132,7 +134,7 @@ func TestPlanCave(t *testing.T) {
 
 // One substance at one excitation has one plan: that scan.
 func TestPlanQuinine(t *testing.T) {
-	data := shared(t, "quinine_dilution")
+	data := testkit.Shared(t, "data", "quinine_dilution")
 	sheet := "id,kind,scans,conc:quinine [mg/L]\n"
 	for id, c := range map[string]string{"flu1": "0.05", "flu2": "0.10", "flu4": "0.20", "flu6": "0.30"} {
 		sheet += fmt.Sprintf("%s,standard,%s_ex350.txt,%s\n", id, id, c)

@@ -7,6 +7,8 @@ import (
 	"path/filepath"
 	"strings"
 	"testing"
+
+	"tarnlight/eem/testkit"
 )
 
 // rSquared is the squared correlation of x and y.
@@ -54,7 +56,7 @@ func aminoKnown(t *testing.T, data string) map[string][]float64 {
 
 // Three components without references: what the paper of the data says is there.
 func TestAminoResolve(t *testing.T) {
-	data := shared(t, "amino_acids")
+	data := testkit.Shared(t, "data", "amino_acids")
 	known := aminoKnown(t, data)
 	dir := folder(t, map[string]string{
 		"runsheet.csv": "id,kind,scans\nS1,sample,S1\nS2,sample,S2\nS3,sample,S3\nS4,sample,S4\nS5,sample,S5\n",
@@ -92,7 +94,7 @@ func TestAminoResolve(t *testing.T) {
 
 // The pure solutions as standards give the two mixtures.
 func TestAminoQuantify(t *testing.T) {
-	data := shared(t, "amino_acids")
+	data := testkit.Shared(t, "data", "amino_acids")
 	known := aminoKnown(t, data)
 	sheet := "id,kind,scans,conc:tryptophan [mol/L],conc:tyrosine [mol/L],conc:phenylalanine [mol/L]\n"
 	for i, id := range []string{"S1", "S2", "S3", "S4", "S5"} {
@@ -122,7 +124,7 @@ func TestAminoQuantify(t *testing.T) {
 // usable, which is not the same as "not detected".
 func TestCaveDripwater(t *testing.T) {
 	heavy(t)
-	data := shared(t, "cave_dripwater")
+	data := testkit.Shared(t, "data", "cave_dripwater")
 	files, err := filepath.Glob(filepath.Join(data, "eem", "*.csv"))
 	if err != nil || len(files) != 33 {
 		t.Fatalf("%d files, %v", len(files), err)
@@ -182,7 +184,7 @@ pictures = "none"
 // solutions scatter by 5 % about their line where noise explains 0.3 %. The series
 // has an intercept, which is told in calibration.csv.
 func TestQuinineDilution(t *testing.T) {
-	data := shared(t, "quinine_dilution")
+	data := testkit.Shared(t, "data", "quinine_dilution")
 	conc := map[string]float64{"flu1": 0.05, "flu2": 0.10, "flu4": 0.20, "flu6": 0.30}
 	ids := []string{"flu1", "flu2", "flu4", "flu6"}
 	for _, out := range ids {
@@ -228,7 +230,7 @@ pictures = "none"
 // The same survey in three forms and with both decimal marks gives the same bytes.
 func TestFormsAgree(t *testing.T) {
 	heavy(t)
-	data := shared(t, "amino_acids")
+	data := testkit.Shared(t, "data", "amino_acids")
 	known := aminoKnown(t, data)
 	ids := []string{"S1", "S2", "S3", "S4", "S5"}
 	var first map[string]string

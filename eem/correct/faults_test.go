@@ -1,19 +1,15 @@
 package correct_test
 
 import (
-	"encoding/binary"
-	"errors"
-	"io/fs"
 	"math"
 	"math/rand/v2"
-	"os"
-	"path/filepath"
 	"slices"
 	"testing"
 
 	"tarnlight/eem"
 	"tarnlight/eem/correct"
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 )
 
 // checks runs every test of raw scans; swapped axes make the others moot.
@@ -125,18 +121,8 @@ func TestNegative(t *testing.T) {
 // Intell. Lab. Syst. 46, 133) whose detector stops at 999.999: the README beside
 // the data counts 1132 such cells. No EEM without one is taken for clipped.
 func TestSugarPlateau(t *testing.T) {
-	b, err := os.ReadFile(filepath.Join("..", "..", "..", "shared", "data", "sugar_process", "X.npy"))
-	if errors.Is(err, fs.ErrNotExist) {
-		t.Skip("the sugar data (../shared/data) are not here")
-	}
-	if err != nil {
-		t.Fatal(err)
-	}
-	const n, emN, exN = 134, 571, 7
-	x := make([]float32, n*emN*exN)
-	if _, err := binary.Decode(b[len(b)-4*len(x):], binary.LittleEndian, x); err != nil {
-		t.Fatal(err)
-	}
+	x, shape := testkit.Npy(t, testkit.Shared(t, "data", "sugar_process", "X.npy"))
+	n, emN, exN := shape[0], shape[1], shape[2]
 	g := grid(t, []float64{230, 240, 255, 290, 305, 325, 340}, span(275, 560, 0.5))
 	found, clipped := 0, 0
 	for i := range n {
@@ -144,7 +130,7 @@ func TestSugarPlateau(t *testing.T) {
 		here := 0
 		for j := range exN {
 			for k := range emN {
-				v := float64(x[(i*emN+k)*exN+j])
+				v := x[(i*emN+k)*exN+j]
 				f[g.Index(j, k)] = v
 				if math.Abs(v-999.999) < 1e-3 {
 					here++

@@ -1,12 +1,7 @@
 package correct_test
 
 import (
-	"encoding/csv"
-	"errors"
-	"io/fs"
 	"math"
-	"os"
-	"path/filepath"
 	"slices"
 	"strconv"
 	"strings"
@@ -14,6 +9,7 @@ import (
 
 	"tarnlight/eem"
 	"tarnlight/eem/correct"
+	"tarnlight/eem/testkit"
 )
 
 // testCodes lists the codes of the findings in e's notes.
@@ -147,18 +143,7 @@ type spectrum struct {
 // pahTable reads the spectra by name.
 func pahTable(t *testing.T) map[string]spectrum {
 	t.Helper()
-	f, err := os.Open(filepath.Join("..", "..", "..", "shared", "data", "pah_molar_absorption", "pah_molar_absorption.csv"))
-	if errors.Is(err, fs.ErrNotExist) {
-		t.Skip("the absorption data (../shared/data) are not here")
-	}
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	rec, err := csv.NewReader(f).ReadAll()
-	if err != nil {
-		t.Fatal(err)
-	}
+	rec := testkit.Records(t, testkit.Shared(t, "data", "pah_molar_absorption", "pah_molar_absorption.csv"))
 	out := map[string]spectrum{}
 	for col, name := range rec[0][1:] {
 		var nm, eps []float64

@@ -1,11 +1,7 @@
 package correct_test
 
 import (
-	"encoding/csv"
-	"errors"
-	"io/fs"
 	"math"
-	"os"
 	"path/filepath"
 	"strconv"
 	"strings"
@@ -13,6 +9,7 @@ import (
 
 	"tarnlight/eem"
 	"tarnlight/eem/correct"
+	"tarnlight/eem/testkit"
 )
 
 // TestQuinineLine: by hand: c = 1, 2, 4 and F = 11, 19, 41 give
@@ -67,11 +64,8 @@ func TestQuinineRefused(t *testing.T) {
 // other three comes out within 7 %, and their own line's intercept, which the
 // README beside the data mentions, is found.
 func TestMeasuredQuinine(t *testing.T) {
-	dir := filepath.Join("..", "..", "..", "shared", "data", "quinine_dilution")
-	if _, err := os.Stat(dir); errors.Is(err, fs.ErrNotExist) {
-		t.Skip("the quinine data (../shared/data) are not here")
-	}
-	spectra, conc := table(t, filepath.Join(dir, "spectra.csv")), table(t, filepath.Join(dir, "concentrations.csv"))
+	dir := testkit.Shared(t, "data", "quinine_dilution")
+	spectra, conc := testkit.Records(t, filepath.Join(dir, "spectra.csv")), testkit.Records(t, filepath.Join(dir, "concentrations.csv"))
 	es, microg := quinineSeries(t, spectra, conc)
 	if len(es) != 4 {
 		t.Fatalf("%d solutions", len(es))
@@ -101,20 +95,6 @@ func TestMeasuredQuinine(t *testing.T) {
 			t.Errorf("%g µg/L: found %g", microg[i], got)
 		}
 	}
-}
-
-func table(t *testing.T, path string) [][]string {
-	t.Helper()
-	f, err := os.Open(path)
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	rec, err := csv.NewReader(f).ReadAll()
-	if err != nil {
-		t.Fatal(err)
-	}
-	return rec
 }
 
 // quinineSeries pairs the columns of spectra with their concentrations, µg/L.

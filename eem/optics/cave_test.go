@@ -1,33 +1,24 @@
 package optics_test
 
 import (
-	"bytes"
-	"encoding/binary"
-	"encoding/csv"
-	"errors"
 	"fmt"
-	"io/fs"
 	"math"
 	"os"
 	"path/filepath"
-	"regexp"
 	"strconv"
 	"strings"
 	"testing"
 
 	"tarnlight/eem"
 	"tarnlight/eem/optics"
+	"tarnlight/eem/testkit"
 )
 
 // cave is the folder of 33 natural drip waters with eight published indices
 // each: Endres et al. 2023, Quaternary Research, doi:10.1017/qua.2023.41.
 func cave(t *testing.T) string {
 	t.Helper()
-	dir := filepath.Join("..", "..", "..", "shared", "data", "cave_dripwater")
-	if _, err := os.Stat(dir); errors.Is(err, fs.ErrNotExist) {
-		t.Skip("the drip-water data (../shared/data) is not here")
-	}
-	return dir
+	return testkit.Shared(t, "data", "cave_dripwater")
 }
 
 // names pairs the columns of published_indices.csv with ours, as the README
@@ -42,7 +33,7 @@ const zeroSample = "GLO_200807_m210714" // entirely zero, as published
 // axes, to 1e-8 (they agree to 1e-11).
 func TestDripWaterArray(t *testing.T) {
 	dir := cave(t)
-	x, shape := readNpy(t, filepath.Join(dir, "X.npy"))
+	x, shape := testkit.Npy(t, filepath.Join(dir, "X.npy"))
 	ex, em := readAxis(t, filepath.Join(dir, "ex_nm.csv")), readAxis(t, filepath.Join(dir, "em_nm.csv"))
 	g := eem.Grid{Ex: ex, Em: em}
 	for _, row := range readTable(t, filepath.Join(dir, "published_indices.csv")) {
@@ -116,51 +107,8 @@ func compare(t *testing.T, row map[string]string, e *eem.EEM, tol, tolB float64)
 	}
 }
 
-// readNpy reads a little-endian float64 array in C order.
-func readNpy(t *testing.T, path string) (x []float64, shape []int) {
-	t.Helper()
-	b, err := os.ReadFile(path)
-	if err != nil {
-		t.Fatal(err)
-	}
-	if !bytes.HasPrefix(b, []byte("\x93NUMPY\x01\x00")) {
-		t.Fatalf("%s: not an npy file of version 1.0", path)
-	}
-	end := 10 + int(binary.LittleEndian.Uint16(b[8:]))
-	m := regexp.MustCompile(`'descr': '<f8', 'fortran_order': False, 'shape': \(([0-9, ]+)\)`).FindSubmatch(b[:end])
-	if m == nil {
-		t.Fatalf("%s: header %q", path, b[10:end])
-	}
-	n := 1
-	for s := range strings.SplitSeq(string(m[1]), ",") {
-		if s = strings.TrimSpace(s); s != "" {
-			v, _ := strconv.Atoi(s)
-			shape, n = append(shape, v), n*v
-		}
-	}
-	x = make([]float64, n)
-	if _, err := binary.Decode(b[end:], binary.LittleEndian, x); err != nil {
-		t.Fatal(err)
-	}
-	return x, shape
-}
-
-func readRecords(t *testing.T, path string) [][]string {
-	t.Helper()
-	f, err := os.Open(path)
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	rec, err := csv.NewReader(f).ReadAll()
-	if err != nil {
-		t.Fatal(err)
-	}
-	return rec
-}
-
 func readTable(t *testing.T, path string) []map[string]string {
-	rec := readRecords(t, path)
+	rec := testkit.Records(t, path)
 	var out []map[string]string
 	for _, r := range rec[1:] {
 		m := map[string]string{}
@@ -198,7 +146,7 @@ func axis(t *testing.T, nm []float64) eem.Axis {
 // written with 10 digits; the exact one is restored.
 func readAxis(t *testing.T, path string) eem.Axis {
 	var nm []float64
-	for _, r := range readRecords(t, path) {
+	for _, r := range testkit.Records(t, path) {
 		nm = append(nm, number(t, r[0]))
 	}
 	if len(nm) == 78 {
@@ -215,7 +163,7 @@ func readAxis(t *testing.T, path string) eem.Axis {
 
 // readGridFile reads emission × excitation with excitations in the first row.
 func readGridFile(t *testing.T, path string) *eem.EEM {
-	rec := readRecords(t, path)
+	rec := testkit.Records(t, path)
 	var ex, em []float64
 	for _, s := range rec[0][1:] {
 		ex = append(ex, number(t, s))

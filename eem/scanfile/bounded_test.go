@@ -5,6 +5,8 @@ import (
 	"fmt"
 	"strings"
 	"testing"
+
+	"tarnlight/eem/testkit"
 )
 
 // Files of 100 kB that are built to cost much: none takes more memory or time
@@ -38,7 +40,7 @@ func TestBounded(t *testing.T) {
 			"jcamp": func() { _, _ = ReadBytes("a_ex240.csv", data, &Settings{Form: JCAMP}) },
 			"abs":   func() { _, _, _ = ReadAbsorbanceBytes("a.csv", data, nil) },
 		} {
-			t.Run(what+"/"+reader, func(t *testing.T) { bounded(t, len(data), read) })
+			t.Run(what+"/"+reader, func(t *testing.T) { testkit.Bounded(t, len(data), read) })
 		}
 		t.Run(what+"/look", func(t *testing.T) { Look("a.csv", data) })
 	}

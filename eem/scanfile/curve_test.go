@@ -6,6 +6,8 @@ import (
 	"strings"
 	"testing"
 
+	"tarnlight/eem/testkit"
+
 	"github.com/xuri/excelize/v2"
 )
 
@@ -80,7 +82,7 @@ func FuzzCurve(f *testing.F) {
 	f.Add([]byte("Instrument\tF-1\r\nnm\tIntensity\r\n420\t3,00\r\n410\t2,25\r\nEnd"))
 	f.Add([]byte("##TITLE=lamp\n##XUNITS=NANOMETERS\n##FIRSTX=400\n##LASTX=420\n##NPOINTS=3\n##XYDATA=(X++(Y..Y))\n400 6 9 12\n##END=\n"))
 	f.Fuzz(func(t *testing.T, data []byte) {
-		bounded(t, len(data), func() {
+		testkit.Bounded(t, len(data), func() {
 			c, notes, err := ReadCurveBytes("c.csv", data, nil)
 			if err != nil {
 				named(t, "c.csv", err)

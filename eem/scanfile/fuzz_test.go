@@ -5,33 +5,12 @@ import (
 	"bytes"
 	"math"
 	"reflect"
-	"runtime/metrics"
 	"strings"
 	"testing"
-	"time"
 
 	"tarnlight/eem"
+	"tarnlight/eem/testkit"
 )
-
-// bounded runs a reader and fails when it takes more than 1 s per 100 kB, or
-// allocates more than 40 times the file: in all, so that what it holds at one
-// time stays well under the 20 times that are promised. 2 MB are for what
-// every reader makes, a second is for a machine that is busy.
-func bounded(t *testing.T, size int, read func()) {
-	t.Helper()
-	sample := []metrics.Sample{{Name: "/gc/heap/allocs:bytes"}}
-	metrics.Read(sample)
-	before, start := sample[0].Value.Uint64(), time.Now()
-	read()
-	took := time.Since(start)
-	metrics.Read(sample)
-	if limit := time.Second + time.Duration(size)*10*time.Microsecond; took > limit {
-		t.Errorf("%v for %d bytes", took, size)
-	}
-	if got := sample[0].Value.Uint64() - before; got > 2<<20+40*uint64(size) {
-		t.Errorf("%d bytes allocated for %d", got, size)
-	}
-}
 
 // named fails for an error that does not begin with the file or the setting.
 func named(t *testing.T, name string, err error) {
@@ -74,7 +53,7 @@ func fuzzScan(f *testing.F, forms []string, s Settings) {
 	f.Fuzz(func(t *testing.T, name string, data []byte, pattern string) {
 		s := s
 		s.Excitation = pattern
-		bounded(t, len(data)+len(name), func() {
+		testkit.Bounded(t, len(data)+len(name), func() {
 			for _, set := range []*Settings{nil, &s} {
 				file, err := ReadBytes(name, data, set)
 				if err != nil {
@@ -108,7 +87,7 @@ func FuzzAbsorbance(f *testing.F) {
 	f.Add([]byte("wavelength_nm,absorbance\n240,0.25\n250,0.1875\n"))
 	f.Add([]byte("x\ty\r\nnm\tAbs\r\n270\t0,0125\r\n260\tNaN\r\n250\t0,25\r\nend"))
 	f.Fuzz(func(t *testing.T, data []byte) {
-		bounded(t, len(data), func() {
+		testkit.Bounded(t, len(data), func() {
 			a, notes, err := ReadAbsorbanceBytes("a.csv", data, nil)
 			if err != nil {
 				named(t, "a.csv", err)
@@ -126,7 +105,7 @@ func FuzzAbsorbance(f *testing.F) {
 func FuzzFactors(f *testing.F) {
 	f.Add([]byte("wavelength_nm,factor,standard_uncertainty\n240,1.25,0.01\n250,1.5,0.02\n"))
 	f.Fuzz(func(t *testing.T, data []byte) {
-		bounded(t, len(data), func() {
+		testkit.Bounded(t, len(data), func() {
 			v, notes, err := ReadFactorsBytes("f.csv", data, nil)
 			if err != nil {
 				named(t, "f.csv", err)
@@ -204,7 +183,7 @@ func FuzzPattern(f *testing.F) {
 	f.Add("{id}_ex{nm}", "S1_ex240.txt")
 	f.Add("{date}/{kind}*{n}", "a/2026-05-03/blank_1")
 	f.Fuzz(func(t *testing.T, pattern, name string) {
-		bounded(t, len(pattern)+len(name), func() {
+		testkit.Bounded(t, len(pattern)+len(name), func() {
 			p, err := CompilePattern(pattern)
 			if err != nil {
 				return
@@ -273,7 +252,7 @@ func FuzzJCAMP(f *testing.F) {
 		// A run of equal ordinates is three bytes however long it is: what comes
 		// out is bounded by maxJCAMPPoints, not by the size of the file.
 		const runs = 8 * 8 * maxJCAMPPoints / 40
-		bounded(t, len(data)+runs, func() {
+		testkit.Bounded(t, len(data)+runs, func() {
 			file, err := ReadBytes("s.dx", data, &Settings{Form: JCAMP})
 			if err != nil {
 				named(t, "s.dx", err)

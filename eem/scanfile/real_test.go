@@ -2,23 +2,12 @@ package scanfile
 
 import (
 	"math"
-	"os"
 	"path/filepath"
 	"testing"
 
 	"tarnlight/eem"
+	"tarnlight/eem/testkit"
 )
-
-// shared returns a path below ../shared of the repository, and skips the test
-// where that is missing: the measurements are no part of a clone.
-func shared(t testing.TB, elem ...string) string {
-	t.Helper()
-	root := filepath.Join("..", "..", "..", "shared", "data")
-	if _, err := os.Stat(root); err != nil {
-		t.Skipf("%s is missing; this test reads the measurements in it", root)
-	}
-	return filepath.Join(append([]string{root}, elem...)...)
-}
 
 func glob(t testing.TB, pattern string) []string {
 	t.Helper()
@@ -64,8 +53,8 @@ func sameBits(t testing.TB, what string, a, b *eem.EEM) {
 // the folder's README says that both hold the same numbers.
 func TestAminoAcids(t *testing.T) {
 	for _, id := range []string{"S1", "S2", "S3", "S4", "S5"} {
-		grid := readEEM(t, nil, shared(t, "amino_acids", "eem", id+".csv"))
-		scans := glob(t, shared(t, "amino_acids", "stacked_scans", id, "*.txt"))
+		grid := readEEM(t, nil, testkit.Shared(t, "data", "amino_acids", "eem", id+".csv"))
+		scans := glob(t, testkit.Shared(t, "data", "amino_acids", "stacked_scans", id, "*.txt"))
 		if len(scans) != 61 || grid.Ex.Len() != 61 || grid.Em.Len() != 201 || grid.Present() != 61*201 {
 			t.Fatalf("%s: %d scans, %v, %d cells", id, len(scans), grid.Grid, grid.Present())
 		}
@@ -78,26 +67,26 @@ func TestAminoAcids(t *testing.T) {
 // out of the scans and blank in the grid. The README says 388 cells are missing
 // in every sample, and that one sample is zero throughout.
 func TestCaveDripwater(t *testing.T) {
-	for _, p := range glob(t, shared(t, "cave_dripwater", "eem", "*.csv")) {
+	for _, p := range glob(t, testkit.Shared(t, "data", "cave_dripwater", "eem", "*.csv")) {
 		e := readEEM(t, nil, p)
 		if e.Ex.Len() != 73 || e.Em.Len() != 78 || e.Present() != 73*78-388 {
 			t.Errorf("%s: %v with %d cells", p, e.Grid, e.Present())
 		}
 	}
 	for _, id := range []string{"FOR_200911_m201023", "GRA_201211_m201223"} {
-		grid := readEEM(t, nil, shared(t, "cave_dripwater", "eem", id+".csv"))
-		scans := glob(t, shared(t, "cave_dripwater", "stacked_scans", id, "*.txt"))
+		grid := readEEM(t, nil, testkit.Shared(t, "data", "cave_dripwater", "eem", id+".csv"))
+		scans := glob(t, testkit.Shared(t, "data", "cave_dripwater", "stacked_scans", id, "*.txt"))
 		got := readEEM(t, nil, scans...)
 		sameBits(t, id, got.Regrid(grid.Grid), grid)
 	}
 }
 
 func TestQuinine(t *testing.T) {
-	all, err := Read(shared(t, "quinine_dilution", "spectra.csv"), &Settings{Excitation: "{nm}"})
+	all, err := Read(testkit.Shared(t, "data", "quinine_dilution", "spectra.csv"), &Settings{Excitation: "{nm}"})
 	if err == nil {
 		t.Fatalf("a table of %d scans without excitation was read", len(all.Scans))
 	}
-	for _, p := range glob(t, shared(t, "quinine_dilution", "stacked_scans", "*.txt")) {
+	for _, p := range glob(t, testkit.Shared(t, "data", "quinine_dilution", "stacked_scans", "*.txt")) {
 		e := readEEM(t, nil, p)
 		if e.Ex.Len() != 1 || e.Ex.At(0) != 350 || e.Em.Len() != 181 || e.Em.First() != 405 || e.Em.Last() != 495 {
 			t.Errorf("%s: %v", p, e.Grid)
@@ -108,7 +97,7 @@ func TestQuinine(t *testing.T) {
 // The table of the four quinine solutions, under a name that says how it was
 // excited, holds the same scans as the four files.
 func TestQuinineTable(t *testing.T) {
-	data, err := Load(shared(t, "quinine_dilution", "spectra.csv"))
+	data, err := Load(testkit.Shared(t, "data", "quinine_dilution", "spectra.csv"))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -124,6 +113,6 @@ func TestQuinineTable(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		sameBits(t, id, readEEM(t, nil, shared(t, "quinine_dilution", "stacked_scans", id+"_ex350.txt")), table)
+		sameBits(t, id, readEEM(t, nil, testkit.Shared(t, "data", "quinine_dilution", "stacked_scans", id+"_ex350.txt")), table)
 	}
 }

@@ -1,35 +1,20 @@
 package scatter_test
 
 import (
-	"encoding/csv"
-	"errors"
-	"io/fs"
 	"math"
-	"os"
-	"path/filepath"
 	"strconv"
 	"testing"
 
 	"tarnlight/eem"
 	"tarnlight/eem/scatter"
+	"tarnlight/eem/testkit"
 )
 
 // amino reads one of five measured amino-acid solutions (Bro 1997, Chemom.
 // Intell. Lab. Syst. 38, 149), raw, with weak Rayleigh light.
 func amino(t *testing.T, sample string) *eem.EEM {
 	t.Helper()
-	f, err := os.Open(filepath.Join("..", "..", "..", "shared", "data", "amino_acids", "eem", sample+".csv"))
-	if errors.Is(err, fs.ErrNotExist) {
-		t.Skip("the amino-acid data (../shared/data) are not here")
-	}
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	rec, err := csv.NewReader(f).ReadAll()
-	if err != nil {
-		t.Fatal(err)
-	}
+	rec := testkit.Records(t, testkit.Shared(t, "data", "amino_acids", "eem", sample+".csv"))
 	number := func(s string) float64 {
 		v, err := strconv.ParseFloat(s, 64)
 		if err != nil {

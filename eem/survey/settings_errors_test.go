@@ -2,10 +2,11 @@ package survey
 
 import (
 	"fmt"
-	"runtime/metrics"
 	"strings"
 	"testing"
 	"time"
+
+	"tarnlight/eem/testkit"
 )
 
 // TestSettingsErrors: every fault is told with its line and what would be right.
@@ -125,25 +126,6 @@ survey.toml:5: scans.from: there is no such key; did you mean form?`
 	}
 }
 
-// bounded runs a reader and fails when it takes more than 1 s per 100 kB, or
-// allocates more than 40 times the file, so that what it holds at one time is under
-// 20 times; 2 MB and a second are for what every reader takes.
-func bounded(t *testing.T, size int, read func()) {
-	t.Helper()
-	sample := []metrics.Sample{{Name: "/gc/heap/allocs:bytes"}}
-	metrics.Read(sample)
-	before, start := sample[0].Value.Uint64(), time.Now()
-	read()
-	took := time.Since(start)
-	metrics.Read(sample)
-	if limit := time.Second + time.Duration(size)*10*time.Microsecond; took > limit {
-		t.Errorf("%v for %d bytes", took, size)
-	}
-	if got := sample[0].Value.Uint64() - before; got > 2<<20+40*uint64(size) {
-		t.Errorf("%d bytes allocated for %d", got, size)
-	}
-}
-
 // FuzzSettings: no file panics or hangs, and what is read can be written and read
 // back to the same bytes.
 func FuzzSettings(f *testing.F) {
@@ -158,7 +140,7 @@ func FuzzSettings(f *testing.F) {
 	f.Fuzz(func(t *testing.T, data []byte) {
 		var s *Settings
 		var err error
-		bounded(t, len(data), func() { s, err = parseSettings("survey.toml", data) })
+		testkit.Bounded(t, len(data), func() { s, err = parseSettings("survey.toml", data) })
 		if err != nil {
 			if !strings.HasPrefix(err.Error(), "survey.toml:") {
 				t.Fatalf("%q: the message does not name the file: %v", data, err)

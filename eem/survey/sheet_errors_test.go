@@ -7,6 +7,8 @@ import (
 	"strings"
 	"testing"
 	"time"
+
+	"tarnlight/eem/testkit"
 )
 
 // TestSheetErrors: every fault is told with file, line, column and remedy.
@@ -194,7 +196,7 @@ func FuzzSheetCSV(f *testing.F) {
 		// A wide header makes every short row as wide: see scanfile.FuzzTableCSV.
 		head, _, _ := bytes.Cut(data, []byte("\n"))
 		wide := (1 + bytes.Count(data, []byte("\n"))) * bytes.Count(head, []byte(",")) * 16
-		bounded(t, len(data)+wide, func() { s, err = readTable("runsheet.csv", data) })
+		testkit.Bounded(t, len(data)+wide, func() { s, err = readTable("runsheet.csv", data) })
 		if err != nil {
 			if !strings.Contains(err.Error(), "runsheet.csv") {
 				t.Fatalf("the message does not name the file: %v", err)

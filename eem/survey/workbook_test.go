@@ -9,6 +9,8 @@ import (
 	"testing"
 	"time"
 
+	"tarnlight/eem/testkit"
+
 	"github.com/xuri/excelize/v2"
 )
 
@@ -221,7 +223,7 @@ func FuzzSheetXLSX(f *testing.F) {
 		book := plainBook(t, sheet)
 		var s *Sheet
 		var err error
-		bounded(t, len(book)+len(sheet), func() { s, err = readTable("runsheet.xlsx", book) })
+		testkit.Bounded(t, len(book)+len(sheet), func() { s, err = readTable("runsheet.xlsx", book) })
 		if err != nil {
 			if !strings.Contains(err.Error(), "runsheet.xlsx") {
 				t.Fatalf("the message does not name the file: %v", err)

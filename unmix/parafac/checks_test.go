@@ -5,6 +5,7 @@ import (
 	"testing"
 
 	"tarnlight/eem"
+	"tarnlight/eem/testkit"
 )
 
 // tensor is a small array of the published checks: sample × second × third mode.
@@ -54,7 +55,7 @@ func TestCheck5aJackknifeOfAMean(t *testing.T) {
 	var want struct {
 		SE float64 `json:"standard_error"`
 	}
-	checks(t, "CHK-5a", &in, &want)
+	testkit.Check(t, "CHK-5a", &in, &want)
 	var sum float64
 	for _, v := range in.Values {
 		sum += v
@@ -75,7 +76,7 @@ func TestCheck5bExactTensor(t *testing.T) {
 		CC2   float64 `json:"rank2_core_consistency"`
 		T     float64 `json:"triple_cosine"`
 	}
-	checks(t, "CHK-5b", &in, &want)
+	testkit.Check(t, "CHK-5b", &in, &want)
 	r := fit(t, in.X.cube(), 1, tight(true))
 	near(t, "sum of squares", r.SST, want.SS, 1e-9)
 	near(t, "rank 1 loss", r.SSE, want.Loss1, 1e-9*want.Loss1)
@@ -102,7 +103,7 @@ func TestCheck5cPerturbedTensor(t *testing.T) {
 		Load   loadings `json:"rank2_loadings"`
 		LoadN  loadings `json:"rank2_nonnegative_loadings"`
 	}
-	checks(t, "CHK-5c", &in, &want)
+	testkit.Check(t, "CHK-5c", &in, &want)
 	c := in.X.cube()
 	near(t, "rank 1 loss", fit(t, c, 1, tight(true)).SSE, want.Loss1, 1e-9*want.Loss1)
 	r := fit(t, c, 2, tight(true))
@@ -185,7 +186,7 @@ func TestCheck5dCoreConsistencyOfGivenFactors(t *testing.T) {
 		X1 float64 `json:"core_consistency_X1"`
 		X2 float64 `json:"core_consistency_X2"`
 	}
-	checks(t, "CHK-5d", &in, &want)
+	testkit.Check(t, "CHK-5d", &in, &want)
 	eye := []float64{1, 0, 0, 1}
 	near(t, "X1", CoreConsistency(in.X1.flat(), eye, eye, eye, 2), want.X1, 1e-10)
 	near(t, "X2", CoreConsistency(in.X2.flat(), eye, eye, eye, 2), want.X2, 1e-10)
@@ -202,7 +203,7 @@ func TestCheck5eDegenerateTensor(t *testing.T) {
 		Loss float64 `json:"rank2_nonnegative_loss"`
 		T    float64 `json:"rank2_nonnegative_triple_cosine"`
 	}
-	checks(t, "CHK-5e", &in, &want)
+	testkit.Check(t, "CHK-5e", &in, &want)
 	for _, p := range want.Pairs { // n(x + y/n)³ − n·x³
 		a := []float64{p.N, -p.N, 1, 0}
 		b := []float64{1, 1, 1 / p.N, 0}
@@ -234,10 +235,10 @@ func TestCheck5eDegenerateTensor(t *testing.T) {
 func TestCheck5fLossThreeWays(t *testing.T) {
 	var in5c struct{ X tensor }
 	var none struct{}
-	checks(t, "CHK-5c", &in5c, &none)
+	testkit.Check(t, "CHK-5c", &in5c, &none)
 	var in struct{ U, A, B, C [][]float64 }
 	var want struct{ Loss float64 }
-	checks(t, "CHK-5f", &in, &want)
+	testkit.Check(t, "CHK-5f", &in, &want)
 	set := (&Settings{RawSamples: true}).withDefaults()
 	p, err := newProblem(in5c.X.cube(), 2, &set)
 	if err != nil {
@@ -282,7 +283,7 @@ func TestCheckCoreConsistencyOfNoise(t *testing.T) {
 		LossN float64 `json:"rank2_nonnegative_loss"`
 		CCN   float64 `json:"rank2_nonnegative_core_consistency"`
 	}
-	checks(t, "SEC-5.3-fact", &in, &want)
+	testkit.Check(t, "SEC-5.3-fact", &in, &want)
 	r := fit(t, in.X.cube(), 2, tight(true))
 	near(t, "loss", r.SSE, want.Loss, 1e-7*want.Loss)
 	near(t, "core consistency", r.CoreConsistency, want.CC, 1e-4)

@@ -1,20 +1,15 @@
 package parafac
 
 import (
-	"encoding/binary"
-	"encoding/csv"
-	"encoding/json"
 	"fmt"
 	"math"
 	"math/rand/v2"
-	"os"
-	"path/filepath"
-	"regexp"
 	"strconv"
 	"strings"
 	"testing"
 
 	"tarnlight/eem"
+	"tarnlight/eem/testkit"
 )
 
 // survey is a simulated cube with its truth: bands that are Gaussian in both
@@ -138,80 +133,10 @@ func cubeOf(x []float64, i, j, k int) *eem.Cube {
 	return c
 }
 
-// shared returns a path below the data that lie beside the repository; the test
-// is skipped where they are missing.
-func shared(t testing.TB, path ...string) string {
-	p := filepath.Join(append([]string{"..", "..", "..", "shared"}, path...)...)
-	if _, err := os.Stat(p); err != nil {
-		t.Skipf("measured data not found beside the repository (%s)", filepath.Join(path...))
-	}
-	return p
-}
-
-// npy reads a NumPy array of float64 or float32 into C order.
-func npy(t testing.TB, path string) ([]float64, []int) {
-	b, err := os.ReadFile(path)
-	if err != nil {
-		t.Fatal(err)
-	}
-	n := int(binary.LittleEndian.Uint16(b[8:]))
-	head, b := string(b[10:10+n]), b[10+n:]
-	var shape []int
-	for _, v := range strings.Split(regexp.MustCompile(`\(([^)]*)\)`).FindStringSubmatch(head)[1], ",") {
-		if v = strings.TrimSpace(v); v != "" {
-			d, _ := strconv.Atoi(v)
-			shape = append(shape, d)
-		}
-	}
-	var x []float64
-	switch {
-	case strings.Contains(head, "'<f8'"):
-		for ; len(b) >= 8; b = b[8:] {
-			x = append(x, math.Float64frombits(binary.LittleEndian.Uint64(b)))
-		}
-	case strings.Contains(head, "'<f4'"):
-		for ; len(b) >= 4; b = b[4:] {
-			x = append(x, float64(math.Float32frombits(binary.LittleEndian.Uint32(b))))
-		}
-	default:
-		t.Fatalf("%s: %s", path, head)
-	}
-	if strings.Contains(head, "'fortran_order': True") {
-		x = cOrder(x, shape)
-	}
-	return x, shape
-}
-
-// cOrder turns an array whose first index runs fastest.
-func cOrder(x []float64, shape []int) []float64 {
-	out := make([]float64, len(x))
-	for from, v := range x {
-		to, rest := 0, from
-		at := make([]int, len(shape))
-		for d, n := range shape {
-			at[d], rest = rest%n, rest/n
-		}
-		for d, n := range shape {
-			to = to*n + at[d]
-		}
-		out[to] = v
-	}
-	return out
-}
-
 // column reads the first column of a CSV file as numbers, without a header.
 func column(t testing.TB, path string) []float64 {
-	f, err := os.Open(path)
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	rows, err := csv.NewReader(f).ReadAll()
-	if err != nil {
-		t.Fatal(err)
-	}
 	var out []float64
-	for _, r := range rows {
+	for _, r := range testkit.Records(t, path) {
 		if v, err := strconv.ParseFloat(strings.TrimSpace(r[len(r)-1]), 64); err == nil {
 			out = append(out, v)
 		}
@@ -222,8 +147,8 @@ func column(t testing.TB, path string) []float64 {
 // measured reads a shared cube stored as sample × emission × excitation (or
 // sample × excitation × emission where exFirst) and leaves out cells by drop.
 func measured(t testing.TB, set string, exFirst bool, drop func(ex, em, v float64) bool) *eem.Cube {
-	x, shape := npy(t, shared(t, "data", set, "X.npy"))
-	exNM, emNM := column(t, shared(t, "data", set, "ex_nm.csv")), column(t, shared(t, "data", set, "em_nm.csv"))
+	x, shape := testkit.Npy(t, testkit.Shared(t, "data", set, "X.npy"))
+	exNM, emNM := column(t, testkit.Shared(t, "data", set, "ex_nm.csv")), column(t, testkit.Shared(t, "data", set, "em_nm.csv"))
 	ex, err := eem.NewAxis(exNM)
 	if err != nil {
 		t.Fatal(err)
@@ -251,31 +176,4 @@ func measured(t testing.TB, set string, exFirst bool, drop func(ex, em, v float6
 		}
 	}
 	return c
-}
-
-// checks reads the entry with the given id from checks.json.
-func checks(t *testing.T, id string, inputs, expected any) {
-	b, err := os.ReadFile(shared(t, "checks.json"))
-	if err != nil {
-		t.Fatal(err)
-	}
-	var all []struct {
-		ID               string
-		Inputs, Expected json.RawMessage
-	}
-	if err := json.Unmarshal(b, &all); err != nil {
-		t.Fatal(err)
-	}
-	for _, c := range all {
-		if c.ID == id {
-			if err := json.Unmarshal(c.Inputs, inputs); err != nil {
-				t.Fatal(err)
-			}
-			if err := json.Unmarshal(c.Expected, expected); err != nil {
-				t.Fatal(err)
-			}
-			return
-		}
-	}
-	t.Fatalf("%s is not among the checks", id)
 }

@@ -10,6 +10,7 @@ import (
 	"testing"
 
 	"tarnlight/eem"
+	"tarnlight/eem/testkit"
 )
 
 // The percentages below are those of an independent fit of the same cells, as
@@ -62,7 +63,7 @@ func TestMeasuredAminoAcids(t *testing.T) {
 	c := aminoAcids(t)
 	r := fit(t, c, 3, nil)
 	explains(t, "amino acids", r, 99.9)
-	f, err := os.Open(shared(t, "data", "amino_acids", "concentrations.csv"))
+	f, err := os.Open(testkit.Shared(t, "data", "amino_acids", "concentrations.csv"))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -135,7 +136,7 @@ func TestMeasuredDripWater(t *testing.T) {
 }
 
 func TestMeasuredKineticFluorescence(t *testing.T) {
-	x, shape := npy(t, shared(t, "data", "kinetic_fluorescence", "X_t10min.npy"))
+	x, shape := testkit.Npy(t, testkit.Shared(t, "data", "kinetic_fluorescence", "X_t10min.npy"))
 	nk, nj := shape[1], shape[2]
 	y := make([]float64, len(x))
 	for n, v := range x { // sample × em × ex to sample × ex × em
