@@ -84,20 +84,30 @@ func Records(t testing.TB, path string) [][]string {
 
 // Bounded runs a reader of size bytes and fails when it takes more than 1 s per
 // 100 kB, or allocates more than 40 times the file: in all, so that what it holds at
-// one time stays well under 20 times. 2 MB are for what every reader makes, a second
-// is for a machine that is busy.
+// one time stays well under 20 times. 2 MB and a second are for what every reader
+// makes; one that is late is asked twice more, as a busy machine may have been.
 func Bounded(t testing.TB, size int, read func()) {
 	t.Helper()
+	limit := time.Second + time.Duration(size)*10*time.Microsecond
+	took, allocated := cost(read)
+	if allocated > 2<<20+40*uint64(size) {
+		t.Errorf("%d bytes allocated for %d", allocated, size)
+	}
+	for try := 0; took > limit && try < 2; try++ {
+		took, _ = cost(read)
+	}
+	if took > limit {
+		t.Errorf("%v for %d bytes", took, size)
+	}
+}
+
+// cost is what f takes by the clock and allocates in bytes.
+func cost(f func()) (took time.Duration, allocated uint64) {
 	sample := []metrics.Sample{{Name: "/gc/heap/allocs:bytes"}}
 	metrics.Read(sample)
 	before, start := sample[0].Value.Uint64(), time.Now()
-	read()
-	took := time.Since(start)
+	f()
+	took = time.Since(start)
 	metrics.Read(sample)
-	if limit := time.Second + time.Duration(size)*10*time.Microsecond; took > limit {
-		t.Errorf("%v for %d bytes", took, size)
-	}
-	if got := sample[0].Value.Uint64() - before; got > 2<<20+40*uint64(size) {
-		t.Errorf("%d bytes allocated for %d", got, size)
-	}
+	return took, sample[0].Value.Uint64() - before
 }
