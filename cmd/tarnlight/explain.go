@@ -16,6 +16,7 @@ import (
 	"tarnlight/eem"
 	"tarnlight/eem/prepare"
 	"tarnlight/eem/survey"
+	"tarnlight/unmix/merit"
 	"tarnlight/unmix/outdir"
 	"tarnlight/unmix/report"
 )
@@ -69,6 +70,7 @@ type explainer struct {
 	sv     *prepare.Survey
 	ex, em float64
 	at     int // index of the cell in the results' grid
+	digits int // of a stated uncertainty
 }
 
 func (x *explainer) add(section, item, value, unit, note string) {
@@ -183,6 +185,7 @@ func (x *explainer) repeat(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
+	x.digits = set.Report.Digits
 	sheet, err := survey.ReadSheet(x.survey, set)
 	if err != nil {
 		return err
@@ -307,7 +310,7 @@ func (x *explainer) tables() error {
 		if get("id") != x.id {
 			continue
 		}
-		note := "reported " + asReported(get("reported"), get("qualifier"), c.Float(r, c.Col("standard_uncertainty")))
+		note := "reported " + asReported(get("reported"), get("qualifier"), c.Float(r, c.Col("value")), c.Float(r, c.Col("standard_uncertainty")), x.digits)
 		if why := x.untold(f, get("reasons")); why != "" {
 			note += "; " + why
 		}
@@ -319,13 +322,9 @@ func (x *explainer) tables() error {
 
 // asReported is a contribution as it goes into a report, with its expanded
 // uncertainty to the same decimal.
-func asReported(reported, qualifier string, u float64) string {
+func asReported(reported, qualifier string, value, u float64, digits int) string {
 	if _, err := strconv.ParseFloat(reported, 64); err == nil && u > 0 {
-		pm := short(2 * u)
-		if _, tail, _ := strings.Cut(reported, "."); !strings.Contains(reported, "e") {
-			pm = strconv.FormatFloat(2*u, 'f', len(tail), 64)
-		}
-		reported += " ± " + pm + " (k = 2)"
+		reported = merit.Rounded(value, u, digits) + " ± " + merit.RoundedExpanded(value, u, digits) + " (k = 2)"
 	}
 	if qualifier != "" {
 		reported += ", " + qualifier

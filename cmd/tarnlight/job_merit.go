@@ -42,6 +42,7 @@ func (j *job) resolveWith(set *unmix.Set, method string, more func(*unmix.Resolu
 	if err := j.unknowns(judged, r, bottles, src, set.Origin); err != nil {
 		return err
 	}
+	judged.Round(j.set.Report.Digits)
 	j.res = append(j.res, r)
 	j.judge = append(j.judge, judged)
 	j.yards = append(j.yards, yard)

@@ -258,7 +258,7 @@ func reportKeys() []*key {
 		{"report", "decimal", func(s *Settings) any { return &s.Report.Decimal }, choice("point", "comma"),
 			"decimal mark of rounded numbers in the report; the CSV files always have points"},
 		{"report", "digits", func(s *Settings) any { return &s.Report.Digits }, whole(1, 3),
-			"significant digits of an uncertainty, to whose place the value is rounded; 2 after GUM (JCGM 100) 7.2.6"},
+			"significant digits of an expanded uncertainty, to whose place it and the value are rounded; 2 after GUM (JCGM 100) 7.2.6"},
 		{"report", "pictures", func(s *Settings) any { return &s.Report.Pictures }, choice("all", "flagged", "none"),
 			"which bottles get their maps drawn; all takes well under a minute for 1,000"},
 	}

@@ -202,7 +202,7 @@ type Report struct {
 	Client, Order, Number, Method, Remarks, TestedBy, ApprovedBy string
 
 	Decimal  string // point, comma
-	Digits   int    // significant digits of an uncertainty
+	Digits   int    // significant digits of an expanded uncertainty
 	Pictures string // all, flagged, none
 }
 

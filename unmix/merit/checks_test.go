@@ -9,6 +9,7 @@ import (
 
 	"gonum.org/v1/gonum/mat"
 
+	"tarnlight/unmix"
 	"tarnlight/unmix/merit"
 )
 
@@ -343,16 +344,42 @@ func TestQLimitNegative(t *testing.T) {
 	}
 }
 
-// Type B divisors (JCGM 100:2008, 4.3.7 and 4.3.9) and the digits of a result (7.2.6).
+// Type B divisors (JCGM 100:2008, 4.3.7 and 4.3.9).
 func TestTypeB(t *testing.T) {
 	near(t, "rectangular", merit.Rectangular(3), math.Sqrt(3), 1e-15)
 	near(t, "triangular", merit.Triangular(3), 3/math.Sqrt(6), 1e-15)
+}
+
+// A value and its expanded uncertainty end at the same decimal place, that of the second
+// digit of the expanded uncertainty (JCGM 100:2008, 7.2.6: 10.057 62 Ω with u_c = 27 mΩ
+// is 10.058 Ω; 7.2.2: 100.021 47 g with 0.35 mg; the others worked out by hand).
+func TestRounded(t *testing.T) {
 	for _, c := range []struct {
-		value, u float64
-		want     string
-	}{{10.05762, 0.0274, "10.058"}, {100.02147, 0.00035, "100.02147"}, {1234.5, 56, "1234"}, {0.00123456, 0.000012, "0.001235"}} {
-		if got := merit.Rounded(c.value, c.u); got != c.want {
-			t.Errorf("%g ± %g: %s, want %s", c.value, c.u, got, c.want)
+		value, u       float64
+		n              int
+		want, expanded string
+	}{{10.05762, 0.027, 2, "10.058", "0.054"}, {100.02147, 0.00035, 2, "100.02147", "0.00070"}, {1234.5, 56, 2, "1230", "110"},
+		{0.00123456, 0.000012, 2, "0.001235", "0.000024"}, {68.3, 106.6, 2, "70", "210"}, {68.3, 106.6, 1, "100", "200"}, {68.3, 106.6, 3, "68", "213"},
+		{4.4, 106.6, 2, "0", "210"}, {0.957083, 0.0135, 2, "0.957", "0.027"}, {0.00137817, 0.00058, 2, "0.0014", "0.0012"},
+		{2.5, 0.0498, 2, "2.50", "0.10"}, {9.123e-5, 1.23e-6, 2, "9.12e-5", "2.5e-6"}, {0.00012, 0.000012, 2, "0.000120", "0.000024"},
+		{9.996e-6, 1e-8, 2, "9.996e-6", "2.0e-8"}, {9.9996e-6, 1e-8, 1, "1.000e-5", "2e-8"}, {2.3456e8, 1.2e6, 2, "2.346e+8", "2.4e+6"}, {3e-7, 2e-6, 2, "3e-7", "4.0e-6"},
+		{2e-8, 2e-6, 2, "0", "4.0e-6"}, {8e-8, 2e-6, 2, "1e-7", "4.0e-6"}, {12345.6, 480, 2, "12350", "960"}, {1234.5, 5.6, 2, "1235", "11"}, {2.675, 0.05, 2, "2.68", "0.10"}, {0.37123, 0, 2, "0.3712", ""}, {213.4, math.NaN(), 2, "213.4", ""}} {
+		got, expanded := merit.Rounded(c.value, c.u, c.n), merit.RoundedExpanded(c.value, c.u, c.n)
+		if got != c.want || expanded != c.expanded {
+			t.Errorf("%g with u = %g to %d digits: %s ± %s, want %s ± %s", c.value, c.u, c.n, got, expanded, c.want, c.expanded)
+		}
+	}
+}
+
+// The setting for the digits reaches what is a number, and nothing that is told in words.
+func TestRoundReachesNumbers(t *testing.T) {
+	j := merit.Judged{Contributions: []unmix.Contribution{{Value: 68.3, U: 106.6, Qualifier: "J", Reported: "70"},
+		{Value: 68.3, U: 106.6, Qualifier: "J", Reported: "see a + b"}, {Value: 68.3, U: 106.6, Qualifier: "U", Reported: "< 220"}},
+		Beyond: []unmix.Contribution{{Value: 0.957083, U: 0.0135, Reported: "0.957"}}}
+	j.Round(1)
+	for i, want := range []string{"100", "see a + b", "< 220", "0.96"} {
+		if got := append(j.Contributions, j.Beyond...)[i].Reported; got != want {
+			t.Errorf("%d: %s, want %s", i, got, want)
 		}
 	}
 }

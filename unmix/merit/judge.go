@@ -3,8 +3,6 @@ package merit
 import (
 	"fmt"
 	"math"
-	"strconv"
-	"strings"
 
 	"gonum.org/v1/gonum/stat/distuv"
 
@@ -164,9 +162,9 @@ func contribution(r *unmix.Resolution, spreads []Spread, b Bottle, f int, doubts
 		}
 	case len(c.Reasons) > 0:
 		c.Qualifier = unmix.Unreliable
-		c.Reported = Rounded(c.Value, c.U)
+		c.Reported = Rounded(c.Value, c.U, StatedDigits)
 	default:
-		c.Reported = Rounded(c.Value, c.U)
+		c.Reported = Rounded(c.Value, c.U, StatedDigits)
 	}
 	return c, flags
 }
@@ -177,29 +175,4 @@ func notNaN(v float64) float64 {
 		return 0
 	}
 	return v
-}
-
-// Rounded gives value to the decimal of the second digit of u (GUM 7.2.6), plain
-// where that is readable, with an exponent elsewhere.
-func Rounded(value, u float64) string {
-	if !(u > 0) || math.IsInf(u, 0) || value == 0 {
-		return digits(value, 4)
-	}
-	n := int(math.Floor(math.Log10(math.Abs(value)))) - int(math.Floor(math.Log10(u))) + 2
-	return digits(value, min(max(n, 1), 8))
-}
-
-// digits gives v to n significant digits.
-func digits(v float64, n int) string {
-	if v == 0 {
-		return "0"
-	}
-	e := int(math.Floor(math.Log10(math.Abs(v))))
-	if e < -4 || e > 6 {
-		return strings.Replace(strconv.FormatFloat(v, 'e', n-1, 64), "e-0", "e-", 1)
-	}
-	if r, err := strconv.ParseFloat(strconv.FormatFloat(v, 'e', n-1, 64), 64); err == nil {
-		v = r
-	}
-	return strconv.FormatFloat(v, 'f', max(0, n-1-e), 64)
 }

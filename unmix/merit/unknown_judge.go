@@ -57,7 +57,7 @@ func (j *Judged) flagUnknown(u *Unknown, r *unmix.Resolution, last *Unknown, i i
 				unit = string(r.Set.Unit)
 			}
 			both = append(both, fmt.Sprintf("%s %s instead of %s %s", r.Set.Components[g].Name,
-				Rounded(is, last.Spreads[b.Row].U[g]), Rounded(was, j.Spreads[b.Row].U[g]), unit))
+				Rounded(is, last.Spreads[b.Row].U[g], StatedDigits), Rounded(was, j.Spreads[b.Row].U[g], StatedDigits), unit))
 		}
 	}
 	if both == nil {

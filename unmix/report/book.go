@@ -14,9 +14,11 @@ import (
 type book struct {
 	f      *excelize.File
 	styles map[look]int
-	footer string // left part of every footer
-	header string
-	err    error // the first error; what follows it does nothing
+	// special are the number formats made for one number each.
+	special map[string]bool
+	footer  string // left part of every footer
+	header  string
+	err     error // the first error; what follows it does nothing
 }
 
 // look is how a cell looks. The zero look is plain text at the top left.
@@ -53,7 +55,7 @@ const (
 )
 
 func newBook(title, header, footer string) *book {
-	b := &book{f: excelize.NewFile(), styles: map[look]int{}, header: header, footer: footer}
+	b := &book{f: excelize.NewFile(), styles: map[look]int{}, special: map[string]bool{}, header: header, footer: footer}
 	b.try(b.f.SetDefaultFont(fontName))
 	b.try(b.f.SetDocProps(&excelize.DocProperties{Title: cut(title, 200), Creator: "tarnlight", LastModifiedBy: "tarnlight",
 		Created: "2000-01-01T00:00:00Z", Modified: "2000-01-01T00:00:00Z"})) // no clock: same results, same bytes

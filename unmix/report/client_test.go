@@ -94,10 +94,30 @@ func TestWorkbookEqualsContributions(t *testing.T) {
 
 // What makes the workbook fit to hand over survives the writing.
 func TestReportedFormat(t *testing.T) {
+	b := newBook("", "", "")
 	for text, want := range map[string]string{"0.371": "0.000", "< 0.013": "0.000", "12": "0", "9.1e-5": "0.0E+0", "< 9.1e-5": "0.0E+0", "not usable": "0.00"} {
-		if got := reportedFormat(text, 1.5); got != want {
+		if got := b.statedFormat("", strings.TrimPrefix(text, "< "), 1.5); got != want {
 			t.Errorf("%q: %s, want %s", text, got, want)
 		}
+	}
+	// what was rounded before the point shows so, and every other number as it is
+	for _, c := range []struct {
+		mark, text string
+		v          float64
+		want       string
+	}{{"", "70", 68.3, `[<65]0;[>=75]0;"70"`}, {"< ", "210", 213.2, `[<205]"< "0;[>=215]"< "0;"< 210"`}, {"", "200", 149.9999 + 1, `[<150]0;[>=250]0;"200"`}, {"", "70", 70.2, "0"}, {"", "0", 4.4, `[<-5]0;[>=5]0;"0"`}} {
+		if got := b.statedFormat(c.mark, c.text, c.v); got != c.want {
+			t.Errorf("%g as %s%s: %s, want %s", c.v, c.mark, c.text, got, c.want)
+		}
+	}
+	for v := 1003.0; len(b.special) < mostFormats; v += 10 { // Excel takes 200 to 250 formats of one's own
+		b.statedFormat("", Number(v-3), v)
+	}
+	if got := b.statedFormat("< ", "123450", 123453); got != `"< "0.0000E+0` {
+		t.Errorf("one format too many: %s", got)
+	}
+	if got := b.statedFormat("", "70", 68.3); got != `[<65]0;[>=75]0;"70"` {
+		t.Errorf("a format that is there: %s", got)
 	}
 }
 

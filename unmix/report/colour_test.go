@@ -238,11 +238,9 @@ func TestNumbersForPeople(t *testing.T) {
 			t.Errorf("%q, want %q", c.got, c.want)
 		}
 	}
-	// JCGM 100:2008, 7.2.6: 10.057 62 Ω with u = 27 mΩ is 10.058 Ω
-	if d := decimals(0.027, 2); d != 3 || n.fixed(10.05762, d) != "10.058" {
-		t.Errorf("%d decimals", d)
-	}
-	if d := decimals(0.0996, 2); d != 2 { // rounds up to 0.10
-		t.Errorf("%d decimals for 0.0996", d)
+	for text, want := range map[string]string{"0.371": "0,371", "9.1e-5": "9,1 · 10⁻⁵", "< 9.1e-5": "< 9,1 · 10⁻⁵", "see a + base": "see a + base", "70": "70"} {
+		if got := k.stated(text); got != want {
+			t.Errorf("%q: %q, want %q", text, got, want)
+		}
 	}
 }

@@ -8,6 +8,7 @@ import (
 	"testing"
 
 	"tarnlight/eem"
+	"tarnlight/unmix/merit"
 )
 
 // An invented survey of Gaussian components with known truth, as a folder of
@@ -148,12 +149,12 @@ func (f fixture) rows(i int, score []float64, noise float64, closed bool, sample
 		2.9, 0.0151, 0.0178, 0.85, 5.2, 1.4, 0.65, 0.87, 6.7, 0.7, 0.2, 0.5, 1.9, 0.9, 1.1, 0, doubts, rejects)
 	if len(f.methods) > 1 { // what nothing accounts for, where two methods were asked
 		put(contributions, id, "", "unexplained", hot, "RU", noise, 0.0, 2*hot, 3*noise, map[bool]string{true: "", false: "U"}[hot > 3*noise], 1.5*noise, 10*noise, hot > 3*noise,
-			map[bool]string{true: numbers{}.fixed(hot, 3), false: "< 0.012"}[hot > 3*noise], "", "")
+			map[bool]string{true: merit.Rounded(hot, noise, 2), false: "< 0.012"}[hot > 3*noise], "", "")
 	}
 	for _, m := range f.methods {
 		for c, name := range fixtureNames {
 			u := 0.004 + 0.03*score[c]
-			lod, q, reported, reasons := 0.013, "", numbers{}.fixed(score[c], decimals(u, 2)), ""
+			lod, q, reported, reasons := 0.013, "", merit.Rounded(score[c], u, 2), ""
 			switch {
 			case closed:
 				q, reported, reasons = "R", "not usable", "no light came through"

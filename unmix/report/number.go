@@ -51,6 +51,19 @@ func (n numbers) short(v float64, d int) string {
 	return n.mark(s)
 }
 
+// stated writes a result that was rounded before (merit.Rounded) for people; one that
+// is told in words stays as it is.
+func (n numbers) stated(text string) string {
+	if _, err := strconv.ParseFloat(strings.TrimPrefix(text, "< "), 64); err != nil {
+		return text
+	}
+	m, e, ok := strings.Cut(text, "e")
+	if p, err := strconv.Atoi(e); ok && err == nil {
+		return n.mark(m) + " · 10" + superscript(p)
+	}
+	return n.mark(text)
+}
+
 var fraction = regexp.MustCompile(`-?\d+\.\d+(e[-+]?\d+)?`)
 
 // rounded is a text in which every number with decimals has at most four
@@ -95,15 +108,6 @@ func (n numbers) fixed(v float64, decimals int) string {
 		s = strings.TrimPrefix(s, "-")
 	}
 	return n.mark(s)
-}
-
-// decimals is how many decimals show the first d digits of an uncertainty u:
-// value and uncertainty are rounded to the same decimal (JCGM 100:2008, 7.2.6).
-func decimals(u float64, d int) int {
-	if !(u > 0) || math.IsInf(u, 0) {
-		return 3
-	}
-	return d - 1 - exponent(u, d)
 }
 
 func superscript(e int) string {

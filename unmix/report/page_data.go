@@ -118,11 +118,7 @@ func (r *results) bottleData(b *bottle) dataBottle {
 			x.Parts = append(x.Parts, [3]string{})
 			continue
 		}
-		pm := ""
-		if k.qualifier != "U" && k.qualifier != "R" && k.u > 0 {
-			pm = r.num.fixed(k.expanded(), decimals(k.u, r.s.Digits))
-		}
-		x.Parts = append(x.Parts, [3]string{r.num.mark(k.reported), pm, strings.TrimSpace(k.qualifier + " " + strings.Join(r.distinct(b, c), "; "))})
+		x.Parts = append(x.Parts, [3]string{r.num.stated(k.reported), r.num.stated(k.stated), strings.TrimSpace(k.qualifier + " " + strings.Join(r.distinct(b, c), "; "))})
 	}
 	f := r.table["flags.csv"]
 	for _, k := range b.flags {

@@ -111,7 +111,7 @@ func (r *results) valueCell(c *contribution) pageCell {
 	if c == nil {
 		return pageCell{}
 	}
-	out := pageCell{Text: r.num.mark(c.reported), Class: "q" + c.qualifier}
+	out := pageCell{Text: r.num.stated(c.reported), Class: "q" + c.qualifier}
 	if c.qualifier == "J" {
 		out.Text += " J"
 	}

@@ -6,6 +6,8 @@ import (
 	"os"
 	"path/filepath"
 	"runtime"
+
+	"tarnlight/unmix/merit"
 )
 
 // RenderSettings are the words of the [report] settings and what else Render must
@@ -14,7 +16,7 @@ type RenderSettings struct {
 	Title, Client, Order, Number, Method, Remarks, TestedBy, ApprovedBy string
 
 	Decimal  string            // decimal mark of text and pictures: "," or "." (default)
-	Digits   int               // significant digits of an uncertainty where this package rounds; 0 means 2
+	Digits   int               // significant digits of an expanded uncertainty; 0 means 2
 	Pictures bool              // make maps/ and figures/
 	Accepts  map[string]string // test codes whose doubts are accepted, with the reason
 
@@ -33,7 +35,7 @@ func Render(ctx context.Context, dir string, s RenderSettings, progress func(don
 		s.SafeName = func(id string) string { return id }
 	}
 	if s.Digits <= 0 {
-		s.Digits = 2
+		s.Digits = merit.StatedDigits
 	}
 	if s.Workers <= 0 {
 		s.Workers = runtime.GOMAXPROCS(0)

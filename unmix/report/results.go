@@ -9,9 +9,11 @@ import (
 	"os"
 	"path/filepath"
 	"slices"
+	"strconv"
 	"strings"
 
 	"tarnlight/eem"
+	"tarnlight/unmix/merit"
 )
 
 // results is a results folder as Render sees it.
@@ -51,11 +53,20 @@ type column struct {
 type contribution struct {
 	value, u, lower, upper, limit float64
 	qualifier, reported, reasons  string
+	stated                        string // the expanded uncertainty as it stands behind reported
 	detected                      bool
 }
 
 // expanded is the half-width k·u of the expanded uncertainty, k = 2.
 func (c *contribution) expanded() float64 { return 2 * c.u }
+
+// state rounds value and expanded uncertainty, where the result is a number, by the
+// one rule for both; what an older version left in the file may be rounded by another.
+func (c *contribution) state(digits int) {
+	if _, err := strconv.ParseFloat(c.reported, 64); err == nil {
+		c.reported, c.stated = merit.Rounded(c.value, c.u, digits), merit.RoundedExpanded(c.value, c.u, digits)
+	}
+}
 
 // methodName is a method in words.
 func methodName(method string) string {
@@ -218,6 +229,7 @@ func (r *results) indexContributions(byID map[string]*bottle) {
 			qualifier: t.Text(i, col["qualifier"]), reported: t.Text(i, col["reported"]), reasons: t.Text(i, col["reasons"]),
 			detected: t.Bool(i, col["detected"]),
 		}
+		b.of[s].state(r.s.Digits)
 		// A doubt on a model or a batch has no flag of the bottle's own.
 		switch b.of[s].qualifier {
 		case "J":

@@ -2,6 +2,7 @@ package report
 
 import (
 	"fmt"
+	"strings"
 
 	"tarnlight/eem"
 )
@@ -73,21 +74,21 @@ func (r *results) resultsSheet(b *book) {
 	s.add(52, heads...)
 	for _, x := range r.bottles {
 		if x.reportable() {
-			s.add(0, r.resultRow(x, known)...)
+			s.add(0, r.resultRow(b, x, known)...)
 		}
 	}
 	s.table("Results", headRow, len(heads))
 	s.done()
 }
 
-func (r *results) resultRow(x *bottle, known []resultColumn) []cell {
+func (r *results) resultRow(b *book, x *bottle, known []resultColumn) []cell {
 	t := r.table["samples.csv"]
 	row := []cell{{visible(x.id), look{bold: true, wrap: true}}}
 	for _, k := range known {
 		row = append(row, sheetCell(k.name, t.Text(x.row, t.Col(k.name))))
 	}
 	for _, c := range r.series {
-		row = append(row, r.valueCells(x.of[c])...)
+		row = append(row, r.valueCells(b, x.of[c])...)
 	}
 	word, l := severityLook(x.worst)
 	l.indent = true
@@ -119,7 +120,7 @@ func sheetCell(name, v string) cell {
 
 // valueCells are value, ± and qualifier of one contribution, as native numbers: a
 // contribution that was not detected shows its detection limit behind "<".
-func (r *results) valueCells(c *contribution) []cell {
+func (r *results) valueCells(b *book, c *contribution) []cell {
 	grey := look{color: midGrey, right: true}
 	if c == nil {
 		return []cell{{}, {}, {}}
@@ -133,13 +134,12 @@ func (r *results) valueCells(c *contribution) []cell {
 		if !finite(c.limit) {
 			return []cell{{c.reported, grey}, {}, q}
 		}
-		grey.format = `"< "` + reportedFormat(c.reported, c.limit)
+		grey.format = b.statedFormat("< ", strings.TrimPrefix(c.reported, "< "), c.limit)
 		return []cell{{c.limit, grey}, {}, q}
 	case "J":
 		q.l.fill = paleAmber
 	}
-	format := reportedFormat(c.reported, c.value)
-	return []cell{{c.value, look{format: format}}, {c.expanded(), look{format: format, color: midGrey}}, q}
+	return []cell{{c.value, look{format: b.statedFormat("", c.reported, c.value)}}, {c.expanded(), look{format: b.statedFormat("", c.stated, c.expanded()), color: midGrey}}, q}
 }
 
 // severityLook gives the worst finding its word and ground.
