@@ -4,7 +4,6 @@ import (
 	"context"
 	"fmt"
 	"path/filepath"
-	"slices"
 	"strings"
 	"time"
 
@@ -44,8 +43,12 @@ kinds = {PW = "blank"}.
 With --add, as in a nightly job, rows for files that no row names yet are appended to
 the run sheet by that pattern. Nothing is asked and no row that is there changes.
 Files younger than --settle wait for the next run, in case they are still being
-written. Exit codes: 0 rows added or nothing new, 3 somebody must look at a file that
-was left out, 1 failed.`,
+written. What cannot be placed (a name that the pattern does not fit, a standard whose
+concentrations no name tells) is told once: it gets a row with the reason under
+exclude, which takes part in nothing until somebody corrects the row and empties that
+cell. [sheet] ignore in survey.toml, as ["*.pdf", "old"], names what begin passes over.
+Exit codes: 0 rows added or nothing new, 3 something was set aside that somebody must
+look at, 1 failed.`,
 		Example: "  tarnlight begin mysurvey\n  tarnlight begin mysurvey --csv --name {id}\n  tarnlight begin mysurvey --add",
 		Args:    cobra.ExactArgs(1),
 	}
@@ -81,7 +84,7 @@ func (o beginOptions) run(ctx context.Context, s streams) error {
 			return fmt.Errorf("pattern %q: {id} is missing; write it where the bottle's name stands", o.name)
 		}
 	}
-	b := &beginning{beginOptions: o, streams: s, set: set, root: prepare.Root(o.dir, set), bar: newBar(s.err), spoilt: map[string]bool{}}
+	b := &beginning{beginOptions: o, streams: s, set: set, root: prepare.Root(o.dir, set), bar: newBar(s.err), told: map[string]bool{}, endings: map[string]bool{}}
 	if o.add {
 		return b.addNew(ctx)
 	}
@@ -96,7 +99,9 @@ type beginning struct {
 	root    string // the raw files lie below it
 	bar     *bar
 	look    bool            // a file was left out that somebody must look at
-	spoilt  map[string]bool // files that belong to a bottle by name and are no scans by content
+	told    map[string]bool // files that belong to a bottle though their content does not say so, or of which all was said
+	endings map[string]bool // that scans have
+	passed  int             // files and folders that the settings name to be passed over
 }
 
 // leave says that a file is not used and why.
@@ -123,20 +128,18 @@ func (b *beginning) draft(ctx context.Context) error {
 	bottles := b.withCells(b.group(files))
 	if b.name == "" {
 		folderNames(bottles, b.set.Sheet.Kinds)
-		bottles = slices.DeleteFunc(byPath(bottles), func(d *drafted) bool { return b.renamed(d, d.id) })
+		bottles = byPath(bottles)
+		asideNamesakes(bottles)
 	} else {
 		bottles = b.distinct(bottles, &survey.Sheet{}, nil)
 	}
-	for _, f := range files {
-		if f.guess.Content == scanfile.Unknown && !b.spoilt[f.path] {
-			b.leave(f.path, f.guess.Why)
-		}
-	}
-	if len(bottles) == 0 {
-		return fmt.Errorf("%s: no file below it looks like a scan%s (%d looked at); put the exported scans there, or state their form in survey.toml",
+	serve := b.assignAbsorbance(bottles, files)
+	b.tellLeft(files, serve)
+	if len(placed(bottles)) == 0 {
+		return fmt.Errorf("%s: no file below it looks like a scan%s (%d looked at); put the exported scans there, or state their form under [scans] in survey.toml",
 			b.root, map[bool]string{true: " whose name follows " + b.name}[b.name != ""], len(files))
 	}
-	b.assignAbsorbance(bottles, files)
+	bottles = b.tellAside(bottles, &survey.Sheet{})
 	proposed := ""
 	if b.name == "" {
 		proposed = b.propose(files)
@@ -149,6 +152,7 @@ func (b *beginning) draft(ctx context.Context) error {
 		return err
 	}
 	fmt.Fprintf(b.bar, "drafted: %s\n", name)
+	b.tellConc(bottles)
 	if proposed != "" {
 		fmt.Fprintf(b.bar, "the names follow %s; as name under [sheet] in survey.toml it lets begin --add append new files\n", proposed)
 	}
@@ -159,7 +163,7 @@ func (b *beginning) draft(ctx context.Context) error {
 // print lists the bottles on standard output.
 func (b *beginning) print(bottles []*drafted) error {
 	t := newText("id", "kind", "scans", "files", "absorbance")
-	for _, d := range bottles {
+	for _, d := range placed(bottles) {
 		t.add(d.id, string(d.kind), d.scans, fmt.Sprint(len(d.files)), d.absorbance)
 	}
 	return t.print(b.streams.out)

@@ -39,14 +39,16 @@ func (b *beginning) assignAbsorbance(bottles []*drafted, files []found) map[stri
 	used := map[string]*found{}
 	for _, least := range []int{nameFits, partFits} {
 		for _, d := range bottles {
-			if d.absorbance != "" {
+			if d.absorbance != "" || d.aside != "" {
 				continue
 			}
 			f, twice := bestOf(d, list, used, p, least)
 			if f != nil && !survey.PlainCell(f.path) {
 				b.leave(f.path, "its name cannot stand in a run sheet; rename it")
+				b.told[f.path] = true
 			} else if twice {
 				b.leave(f.path, "it and another file fit "+d.id+" equally well; write the right one into the column absorbance")
+				b.told[f.path] = true
 			} else if f != nil {
 				d.absorbance, used[f.path] = f.path, f
 			}

@@ -4,7 +4,6 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"os"
 	"path/filepath"
 	"slices"
 	"strconv"
@@ -74,6 +73,11 @@ func (b *beginning) addHeld(ctx context.Context) error {
 		return err
 	}
 	claims := prepare.Claims(b.root, p.sheet)
+	for file, rows := range claims {
+		if b.rel(file) != rows[0].Absorbance {
+			b.endings[strings.ToLower(endingOf(file))] = true
+		}
+	}
 	files, err := b.lookAround(ctx, claims)
 	if err != nil {
 		return err
@@ -81,13 +85,13 @@ func (b *beginning) addHeld(ctx context.Context) error {
 	bottles := b.group(files)
 	serve := b.assignAbsorbance(bottles, files)
 	bottles = b.withCells(b.settled(bottles, serve))
-	bottles = b.withoutConc(b.distinct(bottles, p.sheet, claims))
+	bottles = b.tellAside(b.withoutConc(b.distinct(bottles, p.sheet, claims)), p.sheet)
 	b.tellLeft(files, serve)
 	if err := ctx.Err(); err != nil {
 		return err
 	}
 	if len(bottles) > 0 {
-		b.lacking(p.sheet, bottles)
+		b.lacking(p.sheet, placed(bottles))
 		if err := b.append(p, bottles); err != nil {
 			return err
 		}
@@ -97,14 +101,14 @@ func (b *beginning) addHeld(ctx context.Context) error {
 
 // outcome prints what was added and says how the run ended.
 func (b *beginning) outcome(path string, bottles []*drafted) error {
-	switch {
+	switch n := len(placed(bottles)); {
 	case len(bottles) == 0:
 		fmt.Fprintf(b.bar, "nothing new in %s\n", b.dir)
-	default:
+	case n > 0:
 		if err := b.print(bottles); err != nil {
 			return err
 		}
-		fmt.Fprintf(b.bar, "added to %s: %s\n", path, eem.Count(len(bottles), "row"))
+		fmt.Fprintf(b.bar, "added to %s: %s\n", path, eem.Count(n, "row"))
 	}
 	if b.look {
 		return &codeError{code: exitDoubt}
@@ -152,50 +156,18 @@ func (b *beginning) waits(what string, written time.Time) {
 	fmt.Fprintf(b.bar, "waits for the next run: %s, %s; files settle for %v\n", what, when, b.settle)
 }
 
-// withoutConc leaves out bottles whose row needs what no name tells; with such a
-// row the whole sheet could not be read.
+// withoutConc sets bottles aside whose row needs what no name tells; with such a row
+// the whole sheet could not be read.
 func (b *beginning) withoutConc(bottles []*drafted) []*drafted {
-	var out []*drafted
 	for _, d := range bottles {
 		switch d.kind {
 		case survey.Standard, survey.Control, survey.Spike:
-			b.leaveOpen(d.files[0], "%s is a %s, and no name tells how much it holds; write its row by hand: scans %s", d.id, d.kind, d.scans)
-		default:
-			out = append(out, d)
-		}
-	}
-	return out
-}
-
-// tellLeft names what was not used: absorbance without a bottle, files that cannot
-// be read, and those that follow the pattern and hold no numbers.
-func (b *beginning) tellLeft(files []found, serve map[string]*found) {
-	p, _ := scanfile.CompilePattern(b.name) // run has compiled it before
-	for i := range files {
-		f := &files[i]
-		_, fits := p.Match(f.path)
-		switch {
-		case b.spoilt[f.path]:
-		case b.young(f.written):
-			if fits && f.guess.Content == scanfile.Unknown {
-				b.waits(f.path, f.written)
+			if d.aside == "" {
+				d.aside = fmt.Sprintf("%s is a %s, and no name tells how much it holds", d.id, d.kind)
 			}
-		case f.guess.Content == scanfile.AbsorbContent && serve[f.path] == nil:
-			b.leave(f.path, "an absorbance file, and no new bottle has its name; write it into the row that it belongs to")
-		case f.guess.Content != scanfile.Unknown:
-		case f.guess.Err != nil && fits && broken(b.root, f):
-			b.leaveOpen(f.path, "%s", strings.TrimPrefix(f.guess.Err.Error(), f.path+": "))
-		case fits:
-			b.leave(f.path, f.guess.Why)
 		}
 	}
-}
-
-// broken says whether a file that is no scan looks as if it was meant to be one:
-// it is empty, or no text.
-func broken(root string, f *found) bool {
-	info, err := os.Stat(filepath.Join(root, filepath.FromSlash(f.path)))
-	return err != nil || info.Size() == 0 || f.guess.Why == "not a text file that can be read"
+	return bottles
 }
 
 // lacking tells which columns the sheet lacks for what the names say.

@@ -73,6 +73,7 @@ func TestBeginByPattern(t *testing.T) {
 		{"Mühle 3 2031-05-07", "sample", "Gerät 1/20310507/sample Mühle 3_ex*.txt", "abs/20310507/Mühle 3.csv", "2031-05-07", ""},
 		{"Mühle 3-dup", "sample", "Gerät 1/20310507/dup Mühle 3.csv", "", "2031-05-07", "Mühle 3 2031-05-07"},
 		{"25", "standard", "Gerät 1/20310507/std 25.csv", "", "2031-05-07", ""},
+		{"test", "sample", "Gerät 1/20310507/test.csv", "", "", ""}, // set aside
 	} {
 		for i, c := range []string{"kind", "scans", "absorbance", "measured", "replicate_of"} {
 			if got := cell(t, sheet, c, "id", want[0]); got != want[i+1] {
@@ -80,8 +81,14 @@ func TestBeginByPattern(t *testing.T) {
 			}
 		}
 	}
-	if len(sheet.Rows) != 6 {
-		t.Errorf("%d rows, want 6\n%s", len(sheet.Rows), r.out)
+	if len(sheet.Rows) != 7 {
+		t.Errorf("%d rows, want 7\n%s", len(sheet.Rows), r.out)
+	}
+	for i := range sheet.Rows {
+		id, why := sheet.Text(i, sheet.Col("id")), sheet.Text(i, sheet.Col("exclude"))
+		if want := map[string]string{"test": "its name does not follow {date}/{kind} {id}; correct this row and empty this cell to use it"}[id]; why != want {
+			t.Errorf("%s is excluded because %q, want %q", id, why, want)
+		}
 	}
 	for _, w := range []string{"test.csv: its name does not follow {date}/{kind} {id}", "lamp.txt"} {
 		if !strings.Contains(r.err, w) {
@@ -158,9 +165,17 @@ func TestBeginDayFile(t *testing.T) {
 		t.Errorf("a name twice: %s", r.err)
 	}
 	got := sheetRows(t, dir, "runsheet.csv")
-	want := "[[PW1 blank 2031-05-06 run.csv  2031-05-06] [W 1 sample 2031-05-06 run.csv  2031-05-06] [W2 sample 2031-05-06 run.csv  2031-05-06] [W3 sample 2031-05-07 run.csv  2031-05-07]]"
+	want := "[[PW1 blank 2031-05-06 run.csv  2031-05-06] [W 1 sample 2031-05-06 run.csv  2031-05-06] [W2 sample 2031-05-06 run.csv  2031-05-06] [W3 sample 2031-05-07 run.csv  2031-05-07] [W2 (2) sample 2031-05-07 run.csv  2031-05-07]]"
 	if fmt.Sprint(got) != want {
 		t.Errorf("rows %v, want %s", got, want)
+	}
+	put(t, dir, "2031-05-07 run.csv", day("W3", "W2", "W4")) // it grows over the day
+	old(t, dir)
+	if r := call("begin", dir, "--add").want(t, exitDone); !strings.HasSuffix(r.out, "\nW4  sample  2031-05-07 run.csv      1\n") || strings.Contains(r.err, "W2") {
+		t.Errorf("a sample more in a file that is known: %s%s", r.out, r.err)
+	}
+	if r := call("begin", dir, "--add").want(t, exitDone); !strings.Contains(r.err, "nothing new") {
+		t.Errorf("nothing more in it: %s%s", r.out, r.err)
 	}
 }
 
@@ -189,7 +204,8 @@ func TestBeginOddNames(t *testing.T) {
 
 // begin --add appends rows for new files only. What is there keeps every byte (CSV)
 // or every row (workbook), young files wait and are named, what follows no pattern or
-// needs a person is told and is exit 3, nothing new is exit 0.
+// needs a person is told once, set aside in the sheet, and is exit 3, nothing new is
+// exit 0.
 func TestBeginAdd(t *testing.T) {
 	for _, sheet := range []string{"runsheet.csv", "runsheet.xlsx"} {
 		dir := t.TempDir()
@@ -230,8 +246,8 @@ func TestBeginAdd(t *testing.T) {
 			t.Fatal(err)
 		}
 		r := add(exitDoubt)
-		for _, w := range []string{"test.csv: its name does not follow", "20310507_ST1.csv: ST1 is a standard", "20310507_W3.csv", "belongs to W1, whose row is there",
-			"waits for the next run: W2 (3 files, first: scans/20310507_W2_ex250.txt), written 30s ago", "2 rows"} {
+		for _, w := range []string{"test.csv: its name does not follow", "20310507_ST1.csv: ST1 is a standard", "20310507_W3.csv: is empty", "belongs to W1, whose row (line 3)",
+			"set aside, with the reason under exclude: 3 rows (W1 (2), ST1, test)", "waits for the next run: W2 (3 files, first: scans/20310507_W2_ex250.txt), written 30s ago", "3 rows"} {
 			if !strings.Contains(r.err, w) {
 				t.Errorf("%s: no %q in:\n%s", sheet, w, r.err)
 			}
@@ -239,13 +255,16 @@ func TestBeginAdd(t *testing.T) {
 		if second := read(t, dir, sheet); sheet == "runsheet.csv" && !strings.HasPrefix(second, first) {
 			t.Errorf("old bytes changed:\n%s\n%s", first, second)
 		}
-		r = call("begin", dir, "--add", "--settle", "10s").want(t, exitDoubt)
+		r = call("begin", dir, "--add", "--settle", "10s").want(t, exitDone) // what was left out is told once
 		if !strings.Contains(r.err, "1 row") || !strings.Contains(r.out, "W2 ") {
 			t.Errorf("settled: %s%s", r.out, r.err)
 		}
 		rows := sheetRows(t, dir, sheet)
 		want := [][]string{{"PW", "blank", "scans/20310506_PW.csv", "", "2031-05-06"}, {"W1", "sample", "scans/20310506_W1_ex*.txt", "abs/20310506_W1.csv", "2031-05-06"},
 			{"PW 2031-05-07", "blank", "scans/20310507_PW.csv", "", "2031-05-07"}, {"W1 2031-05-07", "sample", "scans/20310507_W1.csv", "", "2031-05-07"},
+			{"W3", "sample", "scans/20310507_W3.csv", "", "2031-05-07"},
+			{"W1 (2)", "sample", "scans/20310506_W1.csv", "", "2031-05-06"}, {"ST1", "standard", "scans/20310507_ST1.csv", "", "2031-05-07"},
+			{"test", "sample", "scans/test.csv", "", ""},
 			{"W2", "sample", "scans/20310507_W2_ex*.txt", "", "2031-05-07"}}
 		for i := range want {
 			if i >= len(rows) || strings.Join(rows[i], "|") != strings.Join(want[i], "|") {
@@ -364,7 +383,7 @@ func TestBeginReadsDilutions(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		if len(s.Rows) != 2 || s.Rows[0].Dilution != 1 || s.Rows[1].Dilution != 2.5 || s.Rows[1].AbsorbanceDilution != 2.5 || s.Rows[1].ReplicateOf != s.Rows[0].ID {
+		if len(s.Rows) != 3 || !strings.HasPrefix(s.Rows[2].Exclude, "the dilution 0") || s.Rows[0].Dilution != 1 || s.Rows[1].Dilution != 2.5 || s.Rows[1].AbsorbanceDilution != 2.5 || s.Rows[1].ReplicateOf != s.Rows[0].ID {
 			t.Errorf("%s: %+v", sheet, s.Rows)
 		}
 	}

@@ -27,6 +27,8 @@ type drafted struct {
 	scans       string // cells of the run sheet
 	absorbance  string
 	replicateOf string
+	aside       string // why it is set aside; empty: it is not
+	broken      string // what is wrong with the one file that it has by name alone
 }
 
 // group puts files together: by the pattern where there is one, else a file that
@@ -38,19 +40,21 @@ func (b *beginning) group(files []found) []*drafted {
 		w.pattern, _ = scanfile.CompilePattern(b.name) // run has compiled it before
 	}
 	var out []*drafted
+	var misfits []misfit
 	at := map[string]*drafted{}
 	for i := range files {
 		f := &files[i]
 		if f.guess.Content != scanfile.ScanContent {
 			continue
 		}
+		b.endings[strings.ToLower(endingOf(f.path))] = true
 		if len(f.guess.Samples) > 1 {
 			out = append(out, b.samplesOf(f, w)...)
 			continue
 		}
 		n, stem, why := b.nameOf(f, w)
 		if why != "" {
-			b.leaveOpen(f.path, "%s; rename it, or give it a row with a reason under exclude", why)
+			misfits = append(misfits, misfit{f, why})
 			continue
 		}
 		key := path.Dir(f.path) + "\x00" + n.key()
@@ -60,7 +64,7 @@ func (b *beginning) group(files []found) []*drafted {
 		d := at[key]
 		if d == nil || !f.single() {
 			if d != nil {
-				b.leaveOpen(f.path, "%s is the same bottle by its name, but each holds a whole EEM; rename one", d.files[0])
+				misfits = append(misfits, misfit{f, fmt.Sprintf("%s is the same bottle by its name, but each holds a whole EEM", d.files[0])})
 				continue
 			}
 			d = &drafted{named: n, dir: path.Dir(f.path), stem: stem, first: n.id}
@@ -69,34 +73,66 @@ func (b *beginning) group(files []found) []*drafted {
 		}
 		d.take(f)
 	}
-	b.takeSpoilt(files, w, at)
+	out = append(out, b.takeSpoilt(files, w, at)...)
+	out = append(out, b.asideOf(misfits, w.stems)...)
 	slices.SortStableFunc(out, func(x, y *drafted) int {
-		return cmp.Or(strings.Compare(x.day, y.day), strings.Compare(x.id, y.id), cmp.Compare(x.order(), y.order()), strings.Compare(x.files[0], y.files[0]))
+		return cmp.Or(cmp.Compare(x.last(), y.last()), strings.Compare(x.day, y.day), strings.Compare(x.id, y.id), cmp.Compare(x.order(), y.order()), strings.Compare(x.files[0], y.files[0]))
 	})
 	return out
 }
 
+// last puts what can be a bottle by name alone behind the others, and what is set
+// aside behind all.
+func (d *drafted) last() int {
+	switch {
+	case d.aside != "":
+		return 2
+	case d.broken != "":
+		return 1
+	}
+	return 0
+}
+
 // takeSpoilt gives bottles the files that belong to their scans by name and are
 // none by content, such as an empty one: they are rejected with a reason later on,
-// and never lost from sight.
-func (b *beginning) takeSpoilt(files []found, w *naming, at map[string]*drafted) {
+// and never lost from sight. One that has the name and the ending of a scan and no
+// fellows is a bottle of its own, which is read once its file is whole.
+func (b *beginning) takeSpoilt(files []found, w *naming, at map[string]*drafted) []*drafted {
+	var out []*drafted
 	for i := range files {
 		f := files[i]
 		if f.guess.Content != scanfile.Unknown {
 			continue
 		}
+		wrong, noText := f.guess.Why, f.guess.NoText
 		f.guess = scanfile.Guess{Content: scanfile.ScanContent}
 		dir, base := path.Split(strings.TrimSuffix(f.path, endingOf(f.path)))
 		if m := wavelengthTail.FindStringSubmatch(base); m != nil {
 			w.stems[f.path] = dir + m[1]
 		}
-		n, _, why := b.nameOf(&f, w)
-		if d := at[path.Dir(f.path)+"\x00"+n.key()]; why == "" && d != nil && len(d.files) > 1 && endingOf(f.path) == endingOf(d.files[0]) {
+		n, stem, why := b.nameOf(&f, w)
+		d := at[path.Dir(f.path)+"\x00"+n.key()]
+		if d == nil && !saysExcitation.MatchString(base) { // its number may be one of a bottle
+			delete(w.stems, f.path)
+			n, stem, why = b.nameOf(&f, w)
+		}
+		if why != "" {
+			continue
+		}
+		switch {
+		case d != nil && (len(d.files) > 1 || d.broken != "") && endingOf(f.path) == endingOf(d.files[0]):
 			d.take(&f)
 			slices.Sort(d.files)
-			b.spoilt[f.path] = true
+			b.told[f.path] = true
+		case d == nil && w.pattern != nil && noText && b.endings[strings.ToLower(endingOf(f.path))]:
+			d = &drafted{named: n, dir: path.Dir(f.path), stem: stem, first: n.id, broken: wrong}
+			d.take(&f)
+			at[path.Dir(f.path)+"\x00"+n.key()] = d
+			out = append(out, d)
+			b.told[f.path] = true
 		}
 	}
+	return out
 }
 
 func (d *drafted) take(f *found) {
@@ -153,6 +189,9 @@ func (b *beginning) samplesOf(f *found, w *naming) []*drafted {
 	}
 	var out []*drafted
 	for _, s := range f.guess.Samples {
+		if knownSample(s, f) {
+			continue
+		}
 		d := &drafted{named: named{id: s, kind: guessKind(s, w.kinds), day: day}, dir: path.Dir(f.path), stem: s, first: s, calls: s}
 		d.take(f)
 		out = append(out, d)
@@ -220,17 +259,19 @@ func (b *beginning) exact(cell string, files []string) (string, bool) {
 // the name, with its number or word for a repetition; where that is taken by a
 // bottle of another day or folder, with day or folder behind it. A bottle that has
 // its row already is told and left out.
-func (b *beginning) distinct(list []*drafted, sheet *survey.Sheet, claims map[string]*survey.Row) []*drafted {
+func (b *beginning) distinct(list []*drafted, sheet *survey.Sheet, claims prepare.Claimed) []*drafted {
 	taken := map[string]*survey.Row{}
 	for i := range sheet.Rows {
 		taken[survey.FoldID(sheet.Rows[i].ID)] = &sheet.Rows[i]
 	}
 	places := map[*survey.Row]map[string]bool{} // folders of a row's files
-	for file, row := range claims {
-		if places[row] == nil {
-			places[row] = map[string]bool{}
+	for file, rows := range claims {
+		for _, row := range rows {
+			if places[row] == nil {
+				places[row] = map[string]bool{}
+			}
+			places[row][path.Dir(b.rel(file))] = true
 		}
-		places[row][path.Dir(b.rel(file))] = true
 	}
 	byDay := map[string]string{} // name and day → id
 	var out []*drafted
@@ -243,12 +284,24 @@ func (b *beginning) distinct(list []*drafted, sheet *survey.Sheet, claims map[st
 			d.id = base + "-dup"
 		}
 		id, late := b.free(d, taken, places)
-		if late != nil {
-			b.leaveOpen(d.files[0], "by its name it belongs to %s, whose row is there (line %d) and does not name it; correct that row by hand", late.ID, late.Line)
+		switch {
+		case d.aside != "":
+		case d.broken != "" && taken[survey.FoldID(d.id)] != nil:
+			b.leaveOpen(d.name(), "%s; there is a bottle of its name (%s) already; export it again, remove it, or name it as ignore under [sheet] in survey.toml", d.broken, d.id)
+			continue
+		case late != nil:
+			d.aside = fmt.Sprintf("by its name it belongs to %s, whose row (line %d) does not name it", late.ID, late.Line)
+		case d.calls != "" && d.calls != id:
+			d.aside = d.namesake()
+		}
+		if d.aside != "" {
+			d.id = unusedID(d.id, taken)
+			taken[survey.FoldID(d.id)] = &survey.Row{ID: d.id}
+			out = append(out, d)
 			continue
 		}
-		if b.renamed(d, id) {
-			continue
+		if d.broken != "" {
+			b.leaveOpen(d.name(), "%s; its row is there, and it is read once it is whole", d.broken)
 		}
 		_, again := byDay[base+"\x00"+d.day]
 		switch d.id = id; {
@@ -266,16 +319,6 @@ func (b *beginning) distinct(list []*drafted, sheet *survey.Sheet, claims map[st
 		out = append(out, d)
 	}
 	return out
-}
-
-// renamed tells of a sample whose file has its name, but that cannot have it as its
-// id: it could not be found in the file.
-func (b *beginning) renamed(d *drafted, id string) bool {
-	if d.calls == "" || d.calls == id {
-		return false
-	}
-	b.leaveOpen(d.files[0], "it holds a sample %s, and another bottle has that id; give the sample an id of its own in the file", d.calls)
-	return true
 }
 
 // free finds an id that is not taken, or the row of the same bottle.

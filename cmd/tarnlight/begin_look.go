@@ -10,6 +10,7 @@ import (
 	"strings"
 	"time"
 
+	"tarnlight/eem/prepare"
 	"tarnlight/eem/scanfile"
 	"tarnlight/eem/survey"
 )
@@ -19,6 +20,7 @@ type found struct {
 	path    string // relative to the root, with slashes
 	written time.Time
 	guess   scanfile.Guess
+	rows    []*survey.Row // that name it already: those of some of its samples
 }
 
 // single says whether a file holds scans of one excitation, of which a bottle may
@@ -27,25 +29,27 @@ func (f *found) single() bool {
 	return f.guess.Content == scanfile.ScanContent && f.guess.Excitations <= 1
 }
 
-// lookAround looks at every file below the root by content, but for those that
-// rows claim. Links are not followed, so that nothing outside is read.
-func (b *beginning) lookAround(ctx context.Context, claims map[string]*survey.Row) ([]found, error) {
+// lookAround looks at every file below the root by content, but for those that a
+// row claims; where several do, the file names its samples and may have got more of
+// them since. Links are not followed, so that nothing outside is read.
+func (b *beginning) lookAround(ctx context.Context, claims prepare.Claimed) ([]found, error) {
 	paths, err := b.list(claims)
 	if err != nil {
 		return nil, err
 	}
 	out := make([]found, 0, len(paths))
+	set := prepare.ScanSettings(b.set.Scans)
 	for i, p := range paths {
 		if err := ctx.Err(); err != nil {
 			return nil, err
 		}
-		f := found{path: b.rel(p)}
+		f := found{path: b.rel(p), rows: claims[p]}
 		info, err := os.Lstat(p)
 		if err == nil {
 			f.written = info.ModTime()
 			var data []byte
 			if data, err = scanfile.Load(p); err == nil {
-				f.guess = scanfile.Look(f.path, data)
+				f.guess = scanfile.Look(f.path, data, set)
 			}
 		}
 		if errors.Is(err, fs.ErrNotExist) {
@@ -53,7 +57,10 @@ func (b *beginning) lookAround(ctx context.Context, claims map[string]*survey.Ro
 			continue
 		}
 		if err != nil {
-			f.guess = scanfile.Guess{Content: scanfile.Unknown, Why: err.Error(), Err: err}
+			f.guess = scanfile.Guess{Content: scanfile.Unknown, Why: strings.TrimLeft(strings.TrimPrefix(err.Error(), p), ": "), Err: err, NoText: true}
+		}
+		if len(f.rows) > 0 && len(f.guess.Samples) < 2 {
+			continue
 		}
 		out = append(out, f)
 		b.bar.step(i+1, len(paths), "looking")
@@ -61,10 +68,11 @@ func (b *beginning) lookAround(ctx context.Context, claims map[string]*survey.Ro
 	return out, nil
 }
 
-// list finds the files in order of their paths. Results, hidden files and those
-// that office programs leave are passed over.
-func (b *beginning) list(claims map[string]*survey.Row) ([]string, error) {
+// list finds the files in order of their paths. Results, hidden files, those that
+// office programs leave and those that the settings name are passed over.
+func (b *beginning) list(claims prepare.Claimed) ([]string, error) {
 	var paths []string
+	ignored, known := b.set.Sheet.Ignored(), b.knownFiles()
 	err := filepath.WalkDir(b.root, func(p string, d fs.DirEntry, err error) error {
 		if err != nil {
 			if p != b.root && errors.Is(err, fs.ErrNotExist) {
@@ -77,9 +85,15 @@ func (b *beginning) list(claims map[string]*survey.Row) ([]string, error) {
 		case d.IsDir() && p != b.root && (strings.HasPrefix(name, ".") || name == "out" || strings.HasPrefix(name, "out.") ||
 			strings.HasSuffix(name, ".work") || strings.HasSuffix(name, ".cache") || isResults(p)):
 			return filepath.SkipDir
+		case p != b.root && ignored(b.rel(p)):
+			b.passed++
+			if d.IsDir() {
+				return filepath.SkipDir
+			}
+			return nil
 		case !d.Type().IsRegular() || strings.HasPrefix(name, ".") || strings.HasPrefix(name, "~$"):
 			return nil
-		case claims[p] != nil || own(b.rel(p)):
+		case len(claims[p]) == 1 || known[p] || own(b.rel(p)):
 			return nil
 		}
 		paths = append(paths, p)

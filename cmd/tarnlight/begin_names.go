@@ -126,6 +126,9 @@ func guessKind(id string, own map[string]survey.Kind) survey.Kind {
 // "S1_ex240", "S1-240nm", "scan017".
 var wavelengthTail = regexp.MustCompile(`(?i)^(.*?)[ ._-]*(?:ex(?:citation)?)?[ ._-]*(\d+(?:[.,]\d+)?)[ ._-]*(?:nm)?$`)
 
+// saysExcitation finds an excitation that is called one.
+var saysExcitation = regexp.MustCompile(`(?i)(?:^|[ ._-])ex(?:citation)?[ ._-]*\d+(?:[.,]\d+)?[ ._-]*(?:nm)?$|\d[ ._-]*nm$`)
+
 // stemsOf gives every single scan's path without the excitation in its name, and
 // without its ending. A number that is not the excitation counts scans only where
 // the excitations of all files that share the rest differ: S1 and S2 that hold one

@@ -17,6 +17,9 @@ func rowsOfDraft(bottles []*drafted) []survey.Row {
 		r := survey.NewRow()
 		r.ID, r.Kind, r.Scans, r.Absorbance, r.ReplicateOf = d.id, d.kind, d.scans, d.absorbance, d.replicateOf
 		r.Measured.Text = d.day
+		if d.aside != "" {
+			r.Exclude = d.aside + remedy
+		}
 		if d.dilution > 0 {
 			r.Dilution, r.AbsorbanceDilution = d.dilution, d.dilution
 		}
@@ -29,6 +32,9 @@ func rowsOfDraft(bottles []*drafted) []survey.Row {
 func (b *beginning) writeDraft(bottles []*drafted, proposed string) (string, error) {
 	sheet := &survey.Sheet{Columns: []string{"id", "kind", "scans", "absorbance", "measured", "site", "dilution", "replicate_of", "exclude"},
 		Rows: rowsOfDraft(bottles)}
+	if len(holding(bottles)) > 0 {
+		sheet.Columns = append(sheet.Columns, survey.DraftConc)
+	}
 	name := filepath.Join(b.dir, "runsheet.xlsx")
 	write := survey.WriteSheetXLSX
 	if b.csv {

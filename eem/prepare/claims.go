@@ -15,14 +15,19 @@ func Root(dir string, set *survey.Settings) string {
 // files in it, hidden ones left out) or a pattern of either, sorted.
 func Expand(root, cell string) ([]string, error) { return expand(root, cell) }
 
-// Claims gives the row of every file that a sheet names, below root, also of rows
+// Claimed gives the rows that name a file, by its path; several rows of one file
+// are its samples.
+type Claimed map[string][]*survey.Row
+
+// Claims gives the rows of every file that a sheet names, below root, also of rows
 // that are excluded. A cell that names nothing claims nothing.
-func Claims(root string, sheet *survey.Sheet) map[string]*survey.Row {
-	out := map[string]*survey.Row{}
+func Claims(root string, sheet *survey.Sheet) Claimed {
+	out := Claimed{}
 	for i := range sheet.Rows {
 		row := &sheet.Rows[i]
 		if row.Absorbance != "" {
-			out[filepath.Join(root, filepath.FromSlash(row.Absorbance))] = row
+			p := filepath.Join(root, filepath.FromSlash(row.Absorbance))
+			out[p] = append(out[p], row)
 		}
 		if row.Scans == "" {
 			continue
@@ -32,7 +37,7 @@ func Claims(root string, sheet *survey.Sheet) map[string]*survey.Row {
 			continue
 		}
 		for _, f := range files {
-			out[f] = row
+			out[f] = append(out[f], row)
 		}
 	}
 	return out

@@ -27,8 +27,8 @@ const (
 // done says whether a step was done to the files before they came here.
 func (b *Bottle) done(step string) bool { return slices.Contains(b.Setting.Scans.Applied, step) }
 
-// scanSettings maps the survey's words to those of the reader.
-func scanSettings(s survey.Scans) *scanfile.Settings {
+// ScanSettings maps the survey's words to those of the reader.
+func ScanSettings(s survey.Scans) *scanfile.Settings {
 	mark := map[string]string{"comma": ",", "semicolon": ";", "tab": "\t", "blank": " ", "point": "."}
 	return &scanfile.Settings{Form: scanfile.Form(s.Form), Delimiter: mark[s.Delimiter], Decimal: mark[s.Decimal],
 		Skip: s.Skip, Excitation: s.Excitation,
@@ -118,7 +118,7 @@ func (b *Bottle) readScans(s *Survey, raw *rawFiles, files []string) ([]eem.Scan
 	var scans []eem.Scan
 	found := map[string]int{}
 	var notes []eem.Note
-	set := scanSettings(b.Setting.Scans)
+	set := ScanSettings(b.Setting.Scans)
 	for _, path := range files {
 		data, in, err := raw.load(path)
 		if err == nil {
@@ -166,7 +166,7 @@ func (b *Bottle) readAbsorbance(s *Survey, raw *rawFiles) bool {
 	var a *eem.Absorbance
 	var notes []eem.Note
 	if err == nil {
-		set := scanSettings(b.Setting.Scans)
+		set := ScanSettings(b.Setting.Scans)
 		a, notes, err = scanfile.ReadAbsorbanceBytes(in.Path, data, &scanfile.Settings{Delimiter: set.Delimiter, Decimal: set.Decimal})
 		if err != nil && (set.Delimiter != "" || set.Decimal != "") {
 			// Stated for the scans; the spectrophotometer may write otherwise.

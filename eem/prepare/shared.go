@@ -50,7 +50,7 @@ func (s *Survey) samplesOf(path string, list []*Bottle) (why string, ok bool) {
 	if err != nil {
 		return "", false
 	}
-	f, err := scanfile.ReadBytes(in.Path, data, scanSettings(list[0].Setting.Scans))
+	f, err := scanfile.ReadBytes(in.Path, data, ScanSettings(list[0].Setting.Scans))
 	if err != nil || len(f.Names()) < 2 {
 		return "", false
 	}

@@ -107,7 +107,7 @@ func (s *Survey) unusedFiles() {
 			}
 		}
 	}
-	known := s.knownFiles()
+	known, ignored := s.knownFiles(), s.Settings.Sheet.Ignored()
 	var left []string
 	n := 0
 	err := filepath.WalkDir(s.root(), func(path string, d fs.DirEntry, err error) error {
@@ -127,6 +127,9 @@ func (s *Survey) unusedFiles() {
 		ext := strings.ToLower(filepath.Ext(name))
 		dir := filepath.Dir(path)
 		near := place[dir+"\x00"+ext] || dir != s.root() && place[filepath.Dir(dir)+"\x00/"+ext]
+		if rel, err := filepath.Rel(s.root(), path); err != nil || ignored(filepath.ToSlash(rel)) {
+			return nil //nolint:nilerr // a path that Rel refuses lies nowhere below the root
+		}
 		if near && !used[path] && d.Type().IsRegular() && !strings.HasPrefix(name, ".") && !strings.HasPrefix(name, "~$") && !known[s.short(path)] {
 			left = append(left, s.short(path))
 		}

@@ -42,6 +42,6 @@ func TestBounded(t *testing.T) {
 		} {
 			t.Run(what+"/"+reader, func(t *testing.T) { testkit.Bounded(t, len(data), read) })
 		}
-		t.Run(what+"/look", func(t *testing.T) { Look("a.csv", data) })
+		t.Run(what+"/look", func(t *testing.T) { Look("a.csv", data, nil) })
 	}
 }

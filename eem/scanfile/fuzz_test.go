@@ -227,7 +227,7 @@ func FuzzLook(f *testing.F) {
 	}
 	f.Add("runsheet.csv", []byte("id,kind\nS1,sample\n"))
 	f.Fuzz(func(t *testing.T, name string, data []byte) {
-		a, b := Look(name, data), Look(name, data)
+		a, b := Look(name, data, nil), Look(name, data, nil)
 		a.Err, b.Err = nil, nil
 		for _, g := range []*Guess{&a, &b} {
 			if math.IsNaN(g.Ex[0]) {

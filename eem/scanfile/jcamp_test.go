@@ -157,10 +157,10 @@ func TestJCAMPUnits(t *testing.T) {
 	if _, _, err := ReadAbsorbanceBytes("a.dx", []byte(jcampText()), nil); err == nil || !strings.Contains(err.Error(), "not ABSORBANCE") {
 		t.Errorf("%v", err)
 	}
-	if g := Look("s.dx", []byte(jcampText())); g.Content != ScanContent || g.Form != JCAMP || g.Excitations != 1 {
+	if g := Look("s.dx", []byte(jcampText()), nil); g.Content != ScanContent || g.Form != JCAMP || g.Excitations != 1 {
 		t.Errorf("%+v", g)
 	}
-	if g := Look("s.dx", []byte(jcampText("COUNTS", "ABSORBANCE", "##NPOINTS", "##YFACTOR= 0.01\n##NPOINTS"))); g.Content != AbsorbContent || g.Err != nil {
+	if g := Look("s.dx", []byte(jcampText("COUNTS", "ABSORBANCE", "##NPOINTS", "##YFACTOR= 0.01\n##NPOINTS")), nil); g.Content != AbsorbContent || g.Err != nil {
 		t.Errorf("%+v", g)
 	}
 }

@@ -10,17 +10,18 @@ import (
 )
 
 // Look says what a file probably is, by its content: words in the header first,
-// then whether an excitation is given, then what the numbers look like. It never
-// fails; Guess.Err says what the reader of that kind of file finds wrong.
-func Look(name string, data []byte) Guess {
+// then whether an excitation is given, then what the numbers look like. s says how
+// scans are read, nil by their content. It never fails; Guess.Err says what the
+// reader of that kind of file finds wrong.
+func Look(name string, data []byte, s *Settings) Guess {
 	switch ext := strings.ToLower(filepath.Ext(name)); {
 	case ext == ".xlsx" || ext == ".xlsm" || bytes.HasPrefix(data, []byte("PK\x03\x04")):
 		return lookTable(name, data, WorkbookContent)
 	}
-	r, err := open(name, data, nil)
+	r, err := open(name, data, s)
 	if err != nil {
 		g := newGuess(Unknown)
-		g.Why, g.Err = "not a text file that can be read", err
+		g.Why, g.Err, g.NoText = strings.TrimLeft(strings.TrimPrefix(err.Error(), name), ":0123456789 "), err, true
 		return g
 	}
 	if isJCAMP(r.text) {
@@ -33,7 +34,7 @@ func Look(name string, data []byte) Guess {
 	case words[factorRole] && !words[intensityRole]:
 		return lookFactors(name, data)
 	}
-	f, scanErr := ReadBytes(name, data, nil)
+	f, scanErr := ReadBytes(name, data, s)
 	if scanErr == nil {
 		return lookScans(f)
 	}
@@ -48,7 +49,10 @@ func Look(name string, data []byte) Guess {
 		g.Content = ScanContent
 		g.Form = r.form(&r.main[0])
 		g.Why = "rows of numbers, but not readable as scans yet"
-	} else if t, err := ReadTableBytes(name, data); err == nil && len(t.Header) > 1 {
+	} else if t, err := ReadTableBytes(name, data); err == nil && headsGrid(t) {
+		g.Content, g.Form = ScanContent, Grid
+		g.Why = "a header of wavelengths, but not readable as scans yet"
+	} else if err == nil && len(t.Header) > 1 {
 		return lookTable(name, data, TableContent)
 	} else {
 		g.Why = "no rows of numbers"
@@ -151,6 +155,20 @@ func lookJCAMP(name string, data []byte) Guess {
 	g := newGuess(ScanContent)
 	g.Form, g.Why, g.Err = JCAMP, "JCAMP-DX, but not readable as scans yet", err
 	return g
+}
+
+// headsGrid says whether a header has wavelengths alone behind its first cell, as a
+// grid has that breaks off in the middle of a line.
+func headsGrid(t *Table) bool {
+	if len(t.Header) < 3 {
+		return false
+	}
+	for _, h := range t.Header[1:] {
+		if v, err := ParseNumber(h, ""); err != nil || !(v >= 150 && v <= 1500) {
+			return false
+		}
+	}
+	return true
 }
 
 // isSheet says whether the header names bottles and kinds: a run sheet, not a

@@ -194,6 +194,7 @@ type Guess struct {
 	Samples     []string   // where the file itself names several samples
 	Why         string     // in words: what decided it, or why it could not be read
 	Err         error      // what Read (or ReadAbsorbance, …) says about it, nil where it can be read
+	NoText      bool       // it is empty, or no text
 }
 
 func newGuess(c Content) Guess {

@@ -106,13 +106,15 @@ func TestLook(t *testing.T) {
 		{"notes.txt", "We sampled the upper weir.\n", Unknown, "", 0, false},
 		{"picture.png", "\x89PNG\r\n\x1a\n\x00\x00", Unknown, "", 0, false},
 		{"empty.csv", "", Unknown, "", 0, false},
+		{"limits.csv", "component,detection_limit\na,0.1\n", TableContent, "", 0, true},
+		{"cut.csv", gridText[:strings.LastIndexByte(gridText[:len(gridText)*3/4], ',')], ScanContent, Grid, 0, false},
 	} {
-		g := Look(c.name, []byte(c.text))
+		g := Look(c.name, []byte(c.text), nil)
 		if g.Content != c.want || g.Form != c.form || g.Excitations != c.n || (g.Err == nil) != c.ok || g.Why == "" {
 			t.Errorf("%s: %+v", c.name, g)
 		}
 	}
-	if g := Look(gridName, []byte(gridText)); g.Ex != [2]float64{240, 300} || g.Em != [2]float64{310, 350} {
+	if g := Look(gridName, []byte(gridText), nil); g.Ex != [2]float64{240, 300} || g.Em != [2]float64{310, 350} {
 		t.Errorf("ranges %v %v", g.Ex, g.Em)
 	}
 }

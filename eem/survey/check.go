@@ -143,7 +143,7 @@ func (r *sheetReader) concs(row *Row) {
 	switch row.Kind {
 	case Standard, Control, Spike:
 		if len(row.Conc) == 0 && row.Exclude == "" && !r.saidConc(row.Line) {
-			r.add(row.Line, "conc", "a %s needs a known concentration; write it in a column conc:NAME [unit], 0 where a component is absent", row.Kind)
+			r.add(row.Line, "conc", "a %s needs a known concentration (%s); write it in a column conc:NAME [unit] with the component and its unit in the header, 0 where a component is absent", row.Kind, quote(row.ID))
 		}
 	default:
 		if len(row.Conc) > 0 {

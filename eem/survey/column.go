@@ -241,6 +241,21 @@ func oneLine(cell string) string {
 	return strings.Join(strings.FieldsFunc(cell, isControl), " ")
 }
 
+// DraftConc is the header of a drafted column of concentrations: a component's name
+// and unit belong in the places of NAME and unit.
+const DraftConc = "conc:NAME [unit]"
+
+// drafted says what a header lacks that was left as it was drafted, or nothing.
+func (c Conc) drafted() string {
+	switch {
+	case c.Name == "NAME":
+		return "NAME stands for a component"
+	case c.Unit == "unit":
+		return "[unit] stands for the unit"
+	}
+	return ""
+}
+
 // isConc says whether a header names a concentration.
 func isConc(header string) bool {
 	before, _, ok := strings.Cut(header, ":")

@@ -113,7 +113,7 @@ func WriteSheetXLSX(w io.Writer, s *Sheet) (err error) {
 	if err := f.SetSheetName("Sheet1", b.name); err != nil {
 		return err
 	}
-	for _, step := range []func(*Sheet) error{b.styles, b.columns, b.rows, b.kinds, b.view} {
+	for _, step := range []func(*Sheet) error{b.styles, b.columns, b.rows, b.kinds, b.prompts, b.view} {
 		if err := step(s); err != nil {
 			return fmt.Errorf("run sheet as a workbook: %w", err)
 		}
@@ -246,6 +246,26 @@ func (b *book) kinds(s *Sheet) error {
 		}
 		v.SetError(excelize.DataValidationErrorStyleStop, "kind", "one of "+kindNames())
 		return b.f.AddDataValidation(b.name, v)
+	}
+	return nil
+}
+
+// prompts tell whoever stands on a drafted concentration what belongs there.
+func (b *book) prompts(s *Sheet) error {
+	for j, h := range b.d.cols {
+		if h.conc == nil || h.conc.drafted() == "" {
+			continue
+		}
+		letter, err := excelize.ColumnNumberToName(j + 1)
+		if err != nil {
+			return err
+		}
+		v := excelize.NewDataValidation(true)
+		v.Sqref = fmt.Sprintf("%s1:%s%d", letter, letter, len(s.Rows)+1)
+		v.SetInput("known concentrations", "Header: the component and its unit in place of NAME [unit], a column for each component. Rows: the concentration in the liquid scanned, 0 where a component is absent.")
+		if err := b.f.AddDataValidation(b.name, v); err != nil {
+			return err
+		}
 	}
 	return nil
 }

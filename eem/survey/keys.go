@@ -84,6 +84,8 @@ func topKeys() []*key {
 			"how begin reads ids, kinds and days from file names; empty lets begin look by itself"},
 		{"sheet", "kinds", func(s *Settings) any { return &s.Sheet.Kinds }, kindsCodec(),
 			"the laboratory's own words for kinds, beside sample, blank, standard …: what {kind} of name says, or without it the letters that an id begins with; empty, because no two laboratories use the same"},
+		{"sheet", "ignore", func(s *Settings) any { return &s.Sheet.Ignore }, patternsCodec(),
+			"names of files and folders below the root that begin passes over and nobody misses in the sheet; empty, because a file that is left out should be known"},
 	}
 }
 

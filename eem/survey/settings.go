@@ -28,6 +28,8 @@ type SheetSettings struct {
 	// Kinds are the laboratory's own words for kinds, in lower case: what {kind} of
 	// Name stands for or, where Name has none, the letters that an id begins with.
 	Kinds map[string]Kind
+	// Ignore are patterns of files and folders that nobody takes for raw files.
+	Ignore []string
 }
 
 // Scans says how raw scan files are read.

@@ -156,7 +156,7 @@ func TestEveryKey(t *testing.T) {
 	}
 	want := &Settings{
 		Title: `Lake "north", 2 days`,
-		Sheet: SheetSettings{Root: `raw\2026`, Exclusions: "exclusions.csv", Name: "{date}_{kind}_{id}", Kinds: map[string]Kind{"pw": Blank, "ct": Control}},
+		Sheet: SheetSettings{Root: `raw\2026`, Exclusions: "exclusions.csv", Name: "{date}_{kind}_{id}", Kinds: map[string]Kind{"pw": Blank, "ct": Control}, Ignore: []string{"*.pdf", "old/*"}},
 		Scans: Scans{Form: "grid", Delimiter: "semicolon", Decimal: "comma", Skip: 3, Excitation: "_ex{nm}", Across: "excitation",
 			Saturation: 65000, Offset: Offset{Counts: -2.5}, Applied: []string{"offset", "spectral"}},
 		Grid: GridSettings{Excitation: &Range{240, 450, 5}, Emission: &Range{250, 600, 2}},

@@ -5,6 +5,7 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 
 	"tarnlight/eem"
@@ -89,6 +90,7 @@ func sheetOf(t, exclusions *scanfile.Table, s *Settings) (*Sheet, error) {
 	for i := range t.Rows {
 		r.row(&t.Rows[i])
 	}
+	r.draftedColumns()
 	if len(t.Rows) == 0 {
 		r.problems.add(t.Path, 0, "", "the run sheet has a header and no rows; write one row for every bottle, blank and standard")
 	}
@@ -196,6 +198,18 @@ func (r *sheetReader) conc(row *Row, c Conc, text string, i int) {
 	default:
 		c.Value = v
 		row.Conc = append(row.Conc, c)
+	}
+}
+
+// draftedColumns reports concentrations under a header that was left as drafted.
+func (r *sheetReader) draftedColumns() {
+	for j, h := range r.cols {
+		if h.conc == nil || h.conc.drafted() == "" {
+			continue
+		}
+		if slices.ContainsFunc(r.sheet.Rows, func(row Row) bool { return !noValue(row.Cells[j]) }) {
+			r.add(r.t.HeadLine, r.sheet.Columns[j], "%s; write its own in this header, such as conc:tryptophan [µg/L], and a column for each further component", h.conc.drafted())
+		}
 	}
 }
 

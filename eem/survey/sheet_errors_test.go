@@ -61,7 +61,7 @@ func TestSheetErrors(t *testing.T) {
 
 		// rows that name others
 		{"id,kind,scans,spike_of\nS1,spike,a,S2\nS22,sample,b,\n", `runsheet.csv:2: spike_of: there is no row with the id "S2"; did you mean "S22"?
-runsheet.csv:2: conc: a spike needs a known concentration; write it in a column conc:NAME [unit], 0 where a component is absent`},
+runsheet.csv:2: conc: a spike needs a known concentration ("S1"); write it in a column conc:NAME [unit] with the component and its unit in the header, 0 where a component is absent`},
 		{"id,kind,scans,replicate_of\nS1,sample,a,elsewhere\n", `runsheet.csv:2: replicate_of: there is no row with the id "elsewhere"; write an id of this sheet`},
 		{"id,kind,scans,replicate_of\nS1,sample,a,S1\n", `runsheet.csv:2: replicate_of: the row names itself; write the id of the other bottle`},
 		{"id,kind,scans,replicate_of\nS1,sample,a,S2\nS2,sample,b,S3\nS3,sample,c,S1\n", `runsheet.csv:4: replicate_of: "S3" repeats "S1", which in the end repeats "S3"; leave the cell of the first bottle empty`},
@@ -75,7 +75,7 @@ runsheet.csv:2: conc: a spike needs a known concentration; write it in a column 
 		{"id,kind,scans,exclude\nS1,sample,a,no\n", `runsheet.csv:2: exclude: "no" is no reason; write why, or leave the cell empty to keep the row`},
 
 		// concentrations
-		{h + "T1,standard,a\n", `runsheet.csv:2: conc: a standard needs a known concentration; write it in a column conc:NAME [unit], 0 where a component is absent`},
+		{h + "T1,standard,a\n", `runsheet.csv:2: conc: a standard needs a known concentration ("T1"); write it in a column conc:NAME [unit] with the component and its unit in the header, 0 where a component is absent`},
 		{"id,kind,scans,conc:A\nT1,standard,a,-1\n", `runsheet.csv:2: conc:A: "-1" is negative; write the concentration in the liquid scanned`},
 		{"id,kind,scans,conc:A\nT1,standard,a,low\n", `runsheet.csv:2: conc:A: "low" is not a number; write the concentration in the liquid scanned, 0 for none, or nothing where it is unknown`},
 		{"id,kind,scans,conc:A [mg/L],CONC: a [µg/L]\nS1,sample,a,,\n", `runsheet.csv:1: CONC: a [µg/L]: the column stands twice ("conc:A [mg/L]" and "CONC: a [µg/L]"); rename or remove one`},
