@@ -116,6 +116,7 @@ type layout struct {
 	repeat   string    // rows printed on every page, "$1:$5"
 	keep     []int     // columns, from 1, that print leaves on the page of the one before
 	zoom     float64
+	broken   bool // the sheet has page breaks between its rows
 }
 
 // add makes a sheet. Everything about its page is set here, because the stream
@@ -153,7 +154,7 @@ func (b *book) add(name string, l layout, before ...func(f *excelize.File, sheet
 func (b *book) page(name string, l layout) {
 	always, no, zero, a4 := true, false, 0, 9
 	starts := l.starts()
-	one, fit := 1, len(starts) == 0
+	one, fit := 1, len(starts) == 0 && !l.broken
 	orientation := "landscape"
 	if l.portrait {
 		orientation = "portrait"

@@ -32,7 +32,7 @@ func (r *results) qualitySheet(b *book) {
 		return
 	}
 	head := chartFirst + qualityRows*((len(names)+1)/2)
-	s := b.add("Quality", layout{widths: []float64{34, 12, 12, 15, 11, 10, 11, 11, 11, 11, 11, 9, 26}}, func(f *excelize.File, sheet string) error {
+	s := b.add("Quality", layout{broken: true, widths: []float64{34, 12, 12, 15, 11, 10, 11, 11, 11, 11, 11, 9, 26}}, func(f *excelize.File, sheet string) error {
 		at := head + 1
 		for k, name := range names {
 			n := len(rows[name])

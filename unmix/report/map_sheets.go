@@ -83,7 +83,7 @@ func (r *results) residualSheet(b *book) error {
 	perPage := max(1, 130/(g.Ex.Len()+6)) // maps, each with two rows of text, on a page of 130 low rows
 	every := 1 + (g.Em.Len()-1)/200       // at most 200 columns
 	cols := (g.Em.Len() + every - 1) / every
-	s := b.add("Residual maps", layout{widths: append([]float64{10}, slices.Repeat([]float64{0.9}, cols)...), zoom: 70}, func(f *excelize.File, sheet string) error {
+	s := b.add("Residual maps", layout{widths: append([]float64{10}, slices.Repeat([]float64{0.9}, cols)...), zoom: 70, broken: true}, func(f *excelize.File, sheet string) error {
 		for i, m := range maps {
 			if err := m.colour(f, sheet, cols, g.Ex.Len()); err != nil {
 				return err
@@ -187,9 +187,30 @@ func thumb(g eem.Grid, p panels) []byte {
 	return b.Bytes()
 }
 
+// strip joins the small pictures of a row of the sheet, each as wide as its column: a
+// picture a bottle takes the library, and the program that opens the sheet, too long.
+func strip(thumbs [][]byte, wide int) []byte {
+	c := newCanvas(wide*len(thumbs), 90)
+	for n, t := range thumbs {
+		img, err := png.Decode(bytes.NewReader(t))
+		p, ok := img.(*image.Paletted)
+		if err != nil || !ok {
+			panic("report: a small picture of our own cannot be read")
+		}
+		for y := range p.Rect.Dy() {
+			copy(c.Pix[y*c.Stride+n*wide:], p.Pix[y*p.Stride:y*p.Stride+p.Rect.Dx()])
+		}
+	}
+	var b bytes.Buffer
+	if err := png.Encode(&b, c.Paletted); err != nil {
+		panic("report: " + err.Error()) // a bytes.Buffer takes everything
+	}
+	return b.Bytes()
+}
+
 // thumbnailSheet shows every bottle small.
 func (r *results) thumbnailSheet(b *book, p *pass) {
-	const cols, rowsEach = 4, 6
+	const cols, rowsEach, perPage = 4, 6, 11
 	var with []int
 	for i, t := range p.thumbs {
 		if t != nil {
@@ -199,11 +220,21 @@ func (r *results) thumbnailSheet(b *book, p *pass) {
 	if len(with) == 0 {
 		return
 	}
-	s := b.add("Thumbnails", layout{portrait: true, widths: slices.Repeat([]float64{34}, cols)}, func(f *excelize.File, sheet string) error {
-		for n, i := range with {
-			at, _ := excelize.CoordinatesToCellName(1+n%cols, 5+n/cols*rowsEach)
-			err := f.AddPictureFromBytes(sheet, at, &excelize.Picture{Extension: ".png", File: p.thumbs[i],
-				Format: &excelize.GraphicOptions{AltText: "measured and residual map of " + cut(plain(r.bottles[i].id), 60), OffsetX: 2, OffsetY: 1, Positioning: "oneCell"}})
+	s := b.add("Thumbnails", layout{portrait: true, broken: true, widths: slices.Repeat([]float64{34}, cols)}, func(f *excelize.File, sheet string) error {
+		for n := 0; n < len(with); n += cols {
+			four := with[n:min(n+cols, len(with))]
+			at := fmt.Sprintf("A%d", 5+n/cols*rowsEach)
+			var thumbs [][]byte
+			names := ""
+			for _, i := range four {
+				thumbs = append(thumbs, p.thumbs[i])
+				names += " " + cut(plain(r.bottles[i].id), 60)
+			}
+			err := f.AddPictureFromBytes(sheet, at, &excelize.Picture{Extension: ".png", File: strip(thumbs, columnPixels(34)),
+				Format: &excelize.GraphicOptions{AltText: "measured and residual maps of" + names, OffsetX: 2, OffsetY: 1, Positioning: "oneCell"}})
+			if row := n / cols; row > 0 && row%perPage == 0 {
+				err = errors.Join(err, f.InsertPageBreak(sheet, fmt.Sprintf("A%d", 4+row*rowsEach)))
+			}
 			if err != nil {
 				return err
 			}

@@ -2,10 +2,12 @@ package report
 
 import "slices"
 
-// Width of a landscape page in pixels of 1/96 inch, between the margins of the
-// narrower of A4 and Letter, and the smallest print that is read without effort, %.
+// Width of a landscape and of an upright page in pixels of 1/96 inch, between the
+// margins of the narrower of A4 and Letter, and the smallest print that is read
+// without effort, %.
 const (
 	paperPixels   = 960
+	uprightPixels = 698
 	smallestPrint = 62
 )
 
@@ -60,5 +62,9 @@ func (l layout) scale(starts []int) uint {
 		page += columnPixels(w)
 		widest = max(widest, page)
 	}
-	return uint(min(max(100*paperPixels/widest, 10), 100))
+	paper := paperPixels
+	if l.portrait {
+		paper = uprightPixels
+	}
+	return uint(min(max(100*paper/widest, 10), 100))
 }

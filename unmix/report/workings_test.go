@@ -41,7 +41,7 @@ func TestWorkingsAreComplete(t *testing.T) {
 		}
 	}
 	// two quality variables; two methods with excitation and emission spectra
-	for kind, want := range map[string]int{"placed chart": 2 + 2*2, "placed picture": 30, "map": worstMaps, "drawing": 4, "series": 2*6 + 2*2*4} {
+	for kind, want := range map[string]int{"placed chart": 2 + 2*2, "placed picture": 8, "map": worstMaps, "drawing": 4, "series": 2*6 + 2*2*4} {
 		if count[kind] != want {
 			t.Errorf("%d × %s, want %d (%v)", count[kind], kind, want, count)
 		}
