@@ -30,7 +30,7 @@ func (j *job) unknowns(judged *merit.Judged, r *unmix.Resolution, bottles []meri
 		return err
 	}
 	for _, u := range us {
-		fmt.Fprintf(j.bar, "%s: in %s there is something that the model does not know, at ex %s / em %s nm\n", r.Set.Method, eem.Count(len(u.Shown), "bottle"), eem.NM(u.ExNM), eem.NM(u.EmNM))
+		fmt.Fprintf(j.bar, "%s: in %s there is something that the model does not know, at %s\n", r.Set.Method, eem.Count(len(u.Shown), "bottle"), u.Place())
 	}
 	judged.AddUnknowns(us, r, bottles, j.sv.Accept, model)
 	return nil

@@ -1,7 +1,6 @@
 package merit
 
 import (
-	"fmt"
 	"math"
 	"slices"
 
@@ -14,6 +13,7 @@ import (
 type Unknown struct {
 	Component  unmix.Component
 	ExNM, EmNM float64           // where it peaks
+	ExU, EmU   float64           // standard errors of that by noise, nm; NaN where it is the plain maximum
 	Set        *unmix.Set        // the model with the unknown held, last
 	Resolution *unmix.Resolution // by that set: the other answer
 	Spreads    []Spread
@@ -71,11 +71,11 @@ func findUnknown(c *eem.Cube, r *unmix.Resolution, rows []int, src *Sources, spr
 	if z == nil {
 		return nil, nil
 	}
-	ex, em, ok := s.fit(s.whole, s.start(s.whole))
-	if !ok {
+	ex, em, last := s.fit(s.whole, s.start(s.whole))
+	if last == nil {
 		return nil, nil
 	}
-	u, err := s.hold(ex, em)
+	u, err := s.hold(last.loadings(ex, em))
 	if u == nil || err != nil {
 		return nil, err
 	}
@@ -117,14 +117,17 @@ func (s *search) judge(u *Unknown, z []float64, src *Sources) {
 }
 
 // hold resolves the cube with the unknown held beside the components.
-func (s *search) hold(ex, em []float64) (*Unknown, error) {
+func (s *search) hold(ex, em *loading) (*Unknown, error) {
 	for _, c := range s.r.Set.Components {
-		if math.Min(congruence(c.Ex, ex), congruence(c.Em, em)) > 0.99 {
+		if math.Min(congruence(c.Ex, ex.v), congruence(c.Em, em.v)) > 0.99 {
 			return nil, nil
 		}
 	}
-	u := &Unknown{ExNM: s.c.Ex.At(clearPeak(s.c.Ex, ex)), EmNM: s.c.Em.At(clearPeak(s.c.Em, em))}
-	u.Component = unmix.Component{Name: fmt.Sprintf("unknown %s/%s", eem.NM(u.ExNM), eem.NM(u.EmNM)), Ex: ex, Em: em, Scale: 1}
+	u := &Unknown{}
+	u.ExNM, u.ExU = ex.peak(s.c.Ex)
+	u.EmNM, u.EmU = em.peak(s.c.Em)
+	onGrid := func(a eem.Axis, nm float64) string { return eem.NM(a.At(a.Nearest(nm))) }
+	u.Component = unmix.Component{Name: "unknown " + onGrid(s.c.Ex, u.ExNM) + "/" + onGrid(s.c.Em, u.EmNM), Ex: ex.v, Em: em.v, Scale: 1}
 	set := *s.r.Set
 	set.Components = append(slices.Clone(s.r.Set.Components), u.Component)
 	u.Set = &set

@@ -140,8 +140,8 @@ func (s *search) weigh(spreads []Spread) {
 func (s *search) crossed(limit float64) []float64 {
 	out := slices.Repeat([]float64{math.Inf(1)}, len(s.rows))
 	for colour := range 2 {
-		ex, em, ok := s.fit(s.halves[colour], s.start(s.halves[colour]))
-		if !ok {
+		ex, em, last := s.fit(s.halves[colour], s.start(s.halves[colour]))
+		if last == nil {
 			return nil
 		}
 		judge := s.halves[1-colour]
@@ -291,9 +291,9 @@ func (s *search) sum(on *stretch, of func(i int) float64) rowSums {
 // fit alternates amounts and spectra: with the amounts a that rows show of a template,
 // the mean of their residuals over a is the template less what the model takes of it,
 // and the next template is the non-negative ex × em that fits this best beside any
-// amounts of the model. It stops where no loading moves by more than settled, and says
-// false where nothing positive is left.
-func (s *search) fit(on *stretch, from []float64) (ex, em []float64, ok bool) {
+// amounts of the model. It stops where no loading moves by more than settled, and
+// returns the last such fit; nil where nothing positive is left.
+func (s *search) fit(on *stretch, from []float64) (ex, em []float64, last *factor) {
 	const rounds, settled = 60, 1e-6
 	f := s.factor(on, from, s.w[on.from:on.to])
 	f.ridge = seen * f.largest()
@@ -303,7 +303,7 @@ func (s *search) fit(on *stretch, from []float64) (ex, em []float64, ok bool) {
 	}
 	for range rounds {
 		if slices.Max(ex) == 0 || slices.Max(em) == 0 {
-			return ex, em, false
+			return ex, em, nil
 		}
 		_, p := s.template(ex, em, on)
 		y := s.yardstick(p, on)
@@ -315,7 +315,7 @@ func (s *search) fit(on *stretch, from []float64) (ex, em []float64, ok bool) {
 				sums.map1[q] /= weight
 			}
 		}
-		f := s.factor(on, sums.map1, w)
+		f = s.factor(on, sums.map1, w)
 		f.ridge = 1 / (largestLoading * largestLoading)
 		oldEx, oldEm := slices.Clone(ex), slices.Clone(em)
 		for range 3 {
@@ -325,7 +325,7 @@ func (s *search) fit(on *stretch, from []float64) (ex, em []float64, ok bool) {
 			break
 		}
 	}
-	return ex, em, true
+	return ex, em, f
 }
 
 const (
@@ -386,6 +386,19 @@ func (f *factor) step(ex, em []float64) {
 	ja, ka := f.s.ja[f.on.from:f.on.to], f.s.ka[f.on.from:f.on.to]
 	f.mode(ex, em, ja, ka)
 	f.mode(em, ex, ka, ja)
+}
+
+// loadings are the spectra with what the cells know of each of their wavelengths, the
+// other spectrum as it is.
+func (f *factor) loadings(ex, em []float64) (x, m *loading) {
+	x = &loading{v: ex, info: make([]float64, len(ex)), ridge: f.ridge}
+	m = &loading{v: em, info: make([]float64, len(em)), ridge: f.ridge}
+	for q, w := range f.w {
+		j, k := f.s.ja[f.on.from+q], f.s.ka[f.on.from+q]
+		x.info[j] += w * em[k] * em[k]
+		m.info[k] += w * ex[j] * ex[j]
+	}
+	return x, m
 }
 
 // size is the information in ex × em: its square over the variance of the noise.
