@@ -1,7 +1,6 @@
 package main
 
 import (
-	"errors"
 	"fmt"
 	"math"
 	"path/filepath"
@@ -30,7 +29,8 @@ non-negative least squares on the model's spectra, and flags bottles unlike thos
 that the model was made of. A bottle gets the same numbers alone and among others.
 A batch that cannot be given in the model's unit, such as a night without a blank,
 has its bottles rejected; [correct] blank = "latest" takes the last blank that is
-not older than blank_max_age_days.
+not older than blank_max_age_days. Where not one bottle can be used the results say
+so of each, exit code 3, and the former ones are whole in out.previous.
 
 In a folder that grows from night to night --since-last lets exit code and
 status.json speak of the bottles that the former results lack. concerns in
@@ -125,6 +125,16 @@ const covered = 0.5
 // accepts refuses a survey whose unit, corrections or wavelengths are not those of
 // the model.
 func (j *job) accepts() error {
+	var grids []eem.Grid
+	for _, b := range j.sv.Bottles {
+		if b.Usable() && b.Row.Kind != survey.Blank {
+			grids = append(grids, b.EEM.Grid)
+		}
+	}
+	if len(grids) == 0 && (len(j.row) == 0 || j.applied.Unit == j.sv.Unit) { // that no bottle can be scored is a result too
+		j.cube.Unit = j.applied.Unit
+		return nil
+	}
 	if j.applied.Unit != j.sv.Unit {
 		return fmt.Errorf("%s is in %s and the survey in %s; give the survey what that unit needs (for Raman units a blank in every batch), or make a model in %s",
 			j.model, j.applied.Unit, j.sv.Unit, j.sv.Unit)
@@ -132,15 +142,6 @@ func (j *job) accepts() error {
 	if have, want := j.corrections(), j.applied.Corrections; !slices.Equal(have, want) {
 		return fmt.Errorf("%s was made of intensities corrected for: %s; this survey's are corrected for: %s; correct both alike ([correct], [scans] applied)",
 			j.model, list(want), list(have))
-	}
-	var grids []eem.Grid
-	for _, b := range j.sv.Bottles {
-		if b.Usable() && b.Row.Kind != survey.Blank {
-			grids = append(grids, b.EEM.Grid)
-		}
-	}
-	if len(grids) == 0 {
-		return errors.New("no usable bottle is left")
 	}
 	set := j.applied.Set()
 	best := make([]float64, set.Len())

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"bytes"
 	"encoding/json"
 	"os"
 	"path/filepath"
@@ -62,6 +63,9 @@ func TestEventsFollowSchema(t *testing.T) {
 				t.Errorf("%s: property %q is missing", kind, name)
 			}
 		}
+		if kind == "done" {
+			statusFollows(t, schema.OneOf[i].Properties["status"], line)
+		}
 		if kind != "failed" {
 			last = kind
 		}
@@ -72,6 +76,76 @@ func TestEventsFollowSchema(t *testing.T) {
 	for _, k := range []string{"start", "files", "finding", "done", "failed"} {
 		if !seen[k] {
 			t.Errorf("no %s line", k)
+		}
+	}
+}
+
+// statusFollows holds the outcome, and each reason in it, against its part of the
+// schema: every key is described and required, in the order in which they were
+// released.
+func statusFollows(t *testing.T, schema json.RawMessage, line string) {
+	t.Helper()
+	type object struct {
+		Properties map[string]json.RawMessage
+		Required   []string
+	}
+	var want, group object
+	var list struct{ Items object }
+	var got struct{ Status json.RawMessage }
+	var keys struct {
+		Groups []json.RawMessage `json:"reason_groups"`
+	}
+	for _, u := range []struct {
+		from json.RawMessage
+		to   any
+	}{{schema, &want}, {[]byte(line), &got}} {
+		if err := json.Unmarshal(u.from, u.to); err != nil {
+			t.Fatal(err)
+		}
+	}
+	if err := json.Unmarshal(want.Properties["reason_groups"], &list); err != nil {
+		t.Fatal(err)
+	}
+	group = list.Items
+	if err := json.Unmarshal(got.Status, &keys); err != nil || len(keys.Groups) == 0 {
+		t.Fatalf("no reasons in %s: %v", got.Status, err)
+	}
+	for _, c := range []struct {
+		want object
+		got  json.RawMessage
+	}{{want, got.Status}, {group, keys.Groups[0]}} {
+		order := keysOf(t, c.got)
+		if !slices.Equal(order, c.want.Required) || len(c.want.Properties) != len(order) {
+			t.Errorf("keys %v, the schema has %v and requires %v", order, c.want.Properties, c.want.Required)
+		}
+	}
+}
+
+// keysOf lists the keys of an object as they come.
+func keysOf(t *testing.T, object json.RawMessage) []string {
+	t.Helper()
+	d := json.NewDecoder(bytes.NewReader(object))
+	var keys []string
+	for depth, name := 0, false; ; {
+		tok, err := d.Token()
+		if err != nil {
+			return keys
+		}
+		switch v := tok.(type) {
+		case json.Delim:
+			if v == '{' || v == '[' {
+				depth++
+			} else {
+				depth--
+			}
+			name = depth == 1
+		case string:
+			if name && depth == 1 {
+				keys = append(keys, v)
+			}
+			name = depth == 1 && !name
+		default:
+			name = depth == 1
 		}
 	}
 }

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"os"
 	"path/filepath"
 
 	"github.com/spf13/cobra"
@@ -92,11 +93,14 @@ func (j *job) printSummary(s streams) error {
 	} else if err := j.printOutcome(s, st); err != nil {
 		return err
 	}
-	if w := alike(j.worst(len(j.flags))); len(w) > 0 {
+	if w := st.ReasonGroups; len(w) > 0 {
 		fmt.Fprintln(s.err, "look at first:")
-		for _, line := range w[:min(3, len(w))] {
-			fmt.Fprintf(s.err, "  %s\n", line)
+		for _, r := range w[:min(3, len(w))] {
+			fmt.Fprintf(s.err, "  %s\n", r.line())
 		}
+	}
+	if _, err := os.Stat(j.out + ".previous"); err == nil && st.Bottles["usable"] == 0 {
+		fmt.Fprintf(s.err, "not one bottle can be used; the results before these are whole in %s.previous\n", j.out)
 	}
 	name := "contributions.csv"
 	if j.pictures {
@@ -104,27 +108,6 @@ func (j *job) printSummary(s streams) error {
 	}
 	fmt.Fprintf(s.err, "results: %s\n", filepath.Join(j.out, name))
 	return nil
-}
-
-// alike tells findings, one line for all bottles of which the same is said.
-func alike(flags []eem.Flag) []string {
-	ids := map[[2]string][]string{}
-	for _, f := range flags {
-		ids[[2]string{f.Test, f.Msg}] = append(ids[[2]string{f.Test, f.Msg}], flagged(f))
-	}
-	var lines []string
-	for _, f := range flags {
-		k := [2]string{f.Test, f.Msg}
-		switch who := ids[k]; {
-		case len(who) == 0: // told
-		case len(who) == 1:
-			lines = append(lines, flagLine(f))
-		default:
-			lines = append(lines, fmt.Sprintf("%d of one kind (%s): %s (%s)", len(who), some(who), f.Msg, f.Test))
-		}
-		delete(ids, k)
-	}
-	return lines
 }
 
 // printOutcome tells what was found: components on out, bottles on err.

@@ -205,10 +205,12 @@ type status struct {
 	Findings map[string]int `json:"findings"`
 	Tests    map[string]int `json:"tests"` // doubts and rejects by code
 	Rejected []string       `json:"rejected"`
-	Reasons  []string       `json:"reasons"` // the first ones, rejects first
+	Reasons  []string       `json:"reasons"` // the first ones, rejects first; what many share is one
 
 	Concerns  map[string][]string `json:"concerns"`   // ids with doubts and rejects, by instrument, model, limit, data
 	SinceLast bool                `json:"since_last"` // findings to concerns speak of bottles that the former results lack
+
+	ReasonGroups []reason `json:"reason_groups"` // all reasons, with how many share each
 }
 
 func (j *job) status() status {
@@ -247,8 +249,9 @@ func (j *job) status() status {
 			s.Tests[f.Test]++
 		}
 	}
-	for _, f := range j.worst(10) {
-		s.Reasons = append(s.Reasons, flagLine(f))
+	s.ReasonGroups = reasonsOf(j.worst())
+	for _, r := range s.ReasonGroups[:min(len(s.ReasonGroups), 10)] {
+		s.Reasons = append(s.Reasons, r.line())
 	}
 	if s.Findings["doubts"]+s.Findings["rejects"] > 0 {
 		s.Outcome, s.ExitCode = "doubt", exitDoubt
@@ -267,26 +270,6 @@ func (j *job) rejected() map[string]bool {
 			out[f.ID] = true
 		}
 	}
-	return out
-}
-
-// worst returns up to n findings that a user must see, one for each bottle and
-// test: what concerns the whole survey, then rejects, then doubts.
-func (j *job) worst(n int) []eem.Flag {
-	var out []eem.Flag
-	seen := map[[2]string]bool{}
-	take := func(pass func(eem.Flag) bool) {
-		for _, f := range j.news() {
-			k := [2]string{f.ID, f.Test}
-			if pass(f) && !seen[k] && len(out) < n {
-				seen[k] = true
-				out = append(out, f)
-			}
-		}
-	}
-	take(func(f eem.Flag) bool { return f.ID == "" && f.Severity >= eem.Doubt })
-	take(func(f eem.Flag) bool { return f.Severity == eem.Reject })
-	take(func(f eem.Flag) bool { return f.Severity == eem.Doubt })
 	return out
 }
 

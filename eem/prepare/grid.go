@@ -39,6 +39,10 @@ func (s *Survey) chooseGrid(given *eem.Grid) error {
 	if len(votes) == 0 {
 		count(func(*Bottle) bool { return true })
 	}
+	if len(votes) == 0 && given != nil { // a model waits: that nothing can be scored on it is a result
+		s.Grid = *given
+		return nil
+	}
 	if len(votes) == 0 {
 		return s.nothingLeft()
 	}
