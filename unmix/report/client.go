@@ -10,6 +10,9 @@ func (b *bottle) reportable() bool {
 	return b.kind == "" || b.kind == "sample" || b.kind == "field-blank"
 }
 
+// sample says whether a bottle is a sample, not one that shows how good the samples are.
+func (b *bottle) sample() bool { return b.kind == "" || b.kind == "sample" }
+
 // writeClient writes report.xlsx, the workbook that is handed over. It names no
 // path, user or machine.
 func (r *results) writeClient() error {

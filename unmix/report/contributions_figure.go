@@ -1,14 +1,12 @@
 package report
 
 import (
-	"image/color"
 	"math"
 	"slices"
 	"strings"
 	"time"
 
 	"gonum.org/v1/plot"
-	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
 )
 
@@ -77,6 +75,7 @@ func (r *results) byDate() *places {
 			}
 		}
 		if p.hi > p.lo {
+			p.spreadDays()
 			if p.hi-p.lo < 10 { // whole days
 				p.lo, p.hi = math.Floor(p.lo), math.Ceil(p.hi)
 			}
@@ -87,6 +86,24 @@ func (r *results) byDate() *places {
 		}
 	}
 	return nil
+}
+
+// spreadDays puts the bottles of a day side by side, in the order of the run sheet,
+// where no bottle has a time of day: one would hide all others.
+func (p *places) spreadDays() {
+	members := map[float64][]int{}
+	for i, x := range p.x {
+		if x != math.Floor(x) && !math.IsNaN(x) {
+			return
+		}
+		members[x] = append(members[x], i)
+	}
+	for day, of := range members {
+		for j, i := range of {
+			p.x[i] = day + 0.7*((float64(j)+0.5)/float64(len(of))-0.5)
+		}
+	}
+	p.lo, p.hi = p.lo-0.5, p.hi+0.5
 }
 
 // dayTicks marks whole days, at most about 8 of them.
@@ -128,81 +145,4 @@ func (at *places) labelLast(plots []*plot.Plot) {
 		last.X.Tick.Label.Rotation = math.Pi / 5
 		last.X.Tick.Label.XAlign, last.X.Tick.Label.YAlign = draw.XRight, draw.YTop
 	}
-}
-
-// figContributions draws a method's contributions across the survey.
-func (r *results) figContributions(method string, at *places) *figure {
-	if at == nil {
-		return nil
-	}
-	num := &Table{Columns: []string{"id", "place", "component", "value", "lower95", "upper95", "unit", "qualifier"}}
-	var plots []*plot.Plot
-	for _, s := range r.series {
-		if s.method != method {
-			continue
-		}
-		if p := r.contributionPanel(s, at, num); p != nil {
-			plots = append(plots, p)
-		}
-	}
-	if len(plots) == 0 {
-		return nil
-	}
-	at.labelLast(plots)
-	f := &figure{name: "contributions-" + method + "-by-" + at.name, numbers: num,
-		caption: "Contributions (" + methodName(method) + ") with 95 % intervals: filled circles found, open circles not detected, triangles unreliable (J); unusable bottles are left out; dashed: median detection limit."}
-	return f.panels(1, 34*vg.Millimeter, plots,
-		keyEntry{word: "found", glyph: draw.CircleGlyph{}, color: series(0)},
-		keyEntry{word: "not detected", glyph: draw.RingGlyph{}, color: series(0)},
-		keyEntry{word: "unreliable (J)", glyph: draw.PyramidGlyph{}, color: series(1)},
-		keyEntry{word: "95 % interval", line: &draw.LineStyle{Color: series(0), Width: 0.5}},
-		keyEntry{word: "median detection limit", line: &limitLine})
-}
-
-var limitLine = draw.LineStyle{Color: hatchGrey, Width: 0.7, Dashes: dashed}
-
-// contributionPanel draws one component and adds its numbers to num; nil where
-// nothing can be used.
-func (r *results) contributionPanel(s *column, at *places, num *Table) *plot.Plot {
-	d := &dots{radius: 1.7}
-	var limits []float64
-	for i, c := range s.rows {
-		if c == nil || math.IsNaN(at.x[i]) || !r.bottles[i].reportable() {
-			continue
-		}
-		num.Append(r.bottles[i].id, at.x[i], s.component, c.value, c.lower, c.upper, s.unit, c.qualifier)
-		if c.qualifier == "R" {
-			continue
-		}
-		glyph, colour := qualifierMark(c.qualifier)
-		d.add(at.x[i], c.value, c.lower, c.upper, glyph, colour)
-		if !math.IsNaN(c.limit) {
-			limits = append(limits, c.limit)
-		}
-	}
-	if len(d.x) == 0 {
-		return nil
-	}
-	p := r.num.newPlot(s.component, at.label, s.unit)
-	p.Y.Min, p.Y.Max = 0, 0
-	p.X.Tick.Marker = plot.ConstantTicks(at.ticks)
-	p.Add(d)
-	if len(limits) > 0 {
-		slices.Sort(limits)
-		p.Add(&levelLine{at: limits[len(limits)/2], style: limitLine})
-	}
-	p.X.Min, p.X.Max = at.lo, at.hi
-	p.Y.Max = ceilNice(p.Y.Max * 1.02)
-	return p
-}
-
-// qualifierMark tells qualifiers apart by shape and colour.
-func qualifierMark(q string) (draw.GlyphDrawer, color.Color) {
-	switch q {
-	case "U":
-		return draw.RingGlyph{}, series(0)
-	case "J":
-		return draw.PyramidGlyph{}, series(1)
-	}
-	return draw.CircleGlyph{}, series(0)
 }

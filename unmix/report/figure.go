@@ -32,6 +32,7 @@ const (
 type figure struct {
 	name    string // file name without extension
 	caption string // one sentence: what is to be seen, for the page and for screen readers
+	choice  string // what it is one view by, where there are several of the same numbers
 	height  vg.Length
 	draw    func(c draw.Canvas)
 	numbers *Table // written beside it as CSV

@@ -39,7 +39,8 @@ type page struct {
 	Others              bool // bottles that are not reported: water, standards, controls
 	Methods             []pageChoice
 	Unit                string
-	Components, Survey  []pageFigure
+	Components          []pageFigure
+	Survey              []pageViews
 	Model, Quality      []pageFigure
 	Models, Batches     pageTable
 	Calibration         pageTable
@@ -55,8 +56,11 @@ type pageChoice struct{ Value, Text string }
 type pageFigure struct {
 	Source  template.URL
 	Caption string
-	Name    string
+	Choice  string
 }
+
+// pageViews are figures of the same numbers, of which one is shown at a time.
+type pageViews []pageFigure
 
 type pageStep struct {
 	Name, What, Formula, Source string
@@ -77,17 +81,22 @@ func (r *results) writePage(p *pass, figures []*figure) error {
 	}
 	v.Overview = r.overview()
 	r.pageRows(v)
+	views := ""
 	for _, f := range figures {
 		source, err := f.source()
 		if err != nil {
 			return err
 		}
-		g := pageFigure{source, f.caption, f.name}
+		g := pageFigure{source, f.caption, f.choice}
 		switch {
 		case strings.HasPrefix(f.name, "component"):
 			v.Components = append(v.Components, g)
 		case strings.HasPrefix(f.name, "contributions"), strings.HasPrefix(f.name, "unexplained"):
-			v.Survey = append(v.Survey, g)
+			if of, _, _ := strings.Cut(f.name, "-by-"); of != views || f.choice == "" {
+				v.Survey, views = append(v.Survey, nil), of
+			}
+			last := &v.Survey[len(v.Survey)-1]
+			*last = append(*last, g)
 		case strings.HasPrefix(f.name, "charts"), f.name == "blanks":
 			v.Quality = append(v.Quality, g)
 		default:

@@ -107,6 +107,10 @@ function grow() {
 later(grow);
 window.addEventListener("beforeprint", () => { room = rows.length; filter(); });
 
+// figures of the same numbers: one view at a time
+for (const v of document.querySelectorAll(".views"))
+  v.addEventListener("change", e => v.querySelectorAll("figure").forEach((f, i) => { f.hidden = i !== +e.target.value; }));
+
 // maps: unpack
 const colours = hex => { const out = []; for (let i = 0; i < hex.length; i += 6) out.push([0, 2, 4].map(k => parseInt(hex.substr(i + k, 2), 16))); return out; };
 const SEQ = colours(D.seq), DIV = colours(D.div), MISSING = colours(D.missing)[0], HATCH = colours(D.hatch)[0];

@@ -153,6 +153,7 @@ func TestPage(t *testing.T) {
 			b.wait(t, `document.getElementById("count").textContent === "24 of 24 shown"`)
 		}
 	})
+	t.Run("views", func(t *testing.T) { testViews(t, b) })
 	t.Run("read-out", func(t *testing.T) { testReadout(t, b, dir) })
 	t.Run("exclusions", func(t *testing.T) { testExclusions(t, b) })
 
@@ -163,6 +164,18 @@ func TestPage(t *testing.T) {
 	}
 	if len(b.wrong) > 0 {
 		t.Errorf("the page complained: %v", b.wrong)
+	}
+}
+
+// testViews chooses another view of the contributions; one is shown at a time.
+func testViews(t *testing.T, b *browser) {
+	const shown = `[...document.querySelectorAll("#survey .views")[0].querySelectorAll("figure")].map(f => f.hidden ? "-" : "+").join("")`
+	if s := eval[string](t, b, shown); s != "+--" {
+		t.Errorf("at first the views are %s", s)
+	}
+	eval[bool](t, b, `document.querySelectorAll("#survey [name=views-0]")[1].click(); true`)
+	if s := eval[string](t, b, shown); s != "-+-" {
+		t.Errorf("the second view chosen: %s", s)
 	}
 }
 

@@ -148,7 +148,7 @@ func (d *dots) Plot(c draw.Canvas, p *plot.Plot) {
 				c.StrokeLine2(draw.LineStyle{Color: d.color[i], Width: 0.5}, x, lo, x, hi)
 			}
 		}
-		c.DrawGlyph(draw.GlyphStyle{Color: d.color[i], Radius: radius, Shape: d.glyph[i]}, vg.Point{X: x, Y: ty(d.y[i])})
+		c.DrawGlyph(draw.GlyphStyle{Color: d.color[i], Radius: radius, Shape: d.glyph[i]}, vg.Point{X: x, Y: ty(max(d.y[i], p.Y.Min))})
 	}
 }
 

@@ -139,22 +139,23 @@ func unitWords(unit string) string {
 	return unit
 }
 
-// componentSummary is the table of components with their ranges.
+// componentSummary is the table of components with their ranges in the samples that
+// can be used.
 func (r *results) componentSummary(s *sheet) {
 	if len(r.series) == 0 {
 		return
 	}
 	r.part(s, "Components")
 	var row []cell
-	for i, h := range []string{"Component", "Unit", "Found in", "Lowest found", "Median found", "Highest found", "Highest in bottle"} {
+	for i, h := range []string{"Component", "Unit", "Found in, of samples", "Lowest found", "Median found", "Highest found", "Highest in bottle"} {
 		row = append(row, cell{h, []look{headLook, headLook, headRight, headRight, headRight, headRight, headIndent}[i]})
 	}
-	s.add(16, row...)
+	s.add(0, row...)
 	for i, c := range r.series {
 		var found []float64
 		n, top, where := 0, math.Inf(-1), ""
 		for k, x := range c.rows {
-			if x == nil || !r.bottles[k].reportable() || x.qualifier == "R" {
+			if x == nil || !r.bottles[k].sample() || x.qualifier == "R" {
 				continue
 			}
 			n++
@@ -174,6 +175,7 @@ func (r *results) componentSummary(s *sheet) {
 		s.add(0, cell{fmt.Sprintf("%d %s", i+1, plain(r.label(c))), look{line: true, wrap: true}}, cell{c.unit, look{line: true}},
 			cell{fmt.Sprintf("%d of %d", len(found), n), look{line: true, right: true}}, f(lo), f(mid), f(hi), cell{cut(plain(where), 60), look{line: true, wrap: true, indent: true}})
 	}
+	s.add(0, cell{"Counted and ranged are samples with a usable result; field blanks, standards and controls are not.", look{color: midGrey}})
 	s.skip(1)
 }
 
