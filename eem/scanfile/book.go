@@ -24,6 +24,7 @@ type book struct {
 	parts   map[string]*zip.File // by lower-case path
 	left    int64                // bytes that may still be unpacked
 	sheet   string               // name of the first sheet
+	main    string               // path of the workbook itself
 	strings []string
 	date    []bool // by style: the number is a date or time
 	from04  bool   // dates count from 1904
@@ -44,18 +45,39 @@ func readBook(name string, data []byte) (*Table, error) {
 	return b.table(sheet)
 }
 
-// FirstSheet returns the name, in the archive, of the part of a workbook that
-// ReadTable reads.
-func FirstSheet(name string, data []byte) (string, error) {
+// SheetParts are names, in the archive, of parts of a workbook: of the sheet that
+// ReadTable reads, of the tables on it, and of the workbook itself.
+type SheetParts struct {
+	Sheet, Workbook string
+	Tables          []string
+}
+
+// FirstSheet finds the parts that belong to the sheet that ReadTable reads.
+func FirstSheet(name string, data []byte) (p SheetParts, err error) {
 	b, sheet, err := openBook(name, data)
 	if err != nil {
-		return "", err
+		return p, err
 	}
-	f := b.parts[strings.ToLower(sheet)]
-	if f == nil {
-		return "", errorf(name, 0, "the workbook lacks its part %s; save it again", sheet)
+	named := func(part string) string {
+		if f := b.parts[strings.ToLower(part)]; f != nil {
+			return f.Name
+		}
+		return ""
 	}
-	return f.Name, nil
+	if p.Sheet = named(sheet); p.Sheet == "" {
+		return p, errorf(name, 0, "the workbook lacks its part %s; save it again", sheet)
+	}
+	p.Workbook = named(b.main)
+	rels, err := b.rels(sheet)
+	if err != nil { // a sheet without relationships has no tables
+		return p, nil //nolint:nilerr // it lacks the part
+	}
+	for _, r := range rels {
+		if strings.HasSuffix(r.Type, "/table") && named(r.Target) != "" {
+			p.Tables = append(p.Tables, named(r.Target))
+		}
+	}
+	return p, nil
 }
 
 // openBook reads everything of a workbook but its first sheet, and returns the
@@ -143,6 +165,7 @@ func (b *book) open() (string, error) {
 			main = r.Target
 		}
 	}
+	b.main = main
 	var wb struct {
 		Props struct {
 			Date1904 string `xml:"date1904,attr"`

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io"
 	"os"
+	"slices"
 	"strings"
 	"testing"
 
@@ -110,10 +111,14 @@ func TestAppendXLSX(t *testing.T) {
 			_, rows, _ := strings.Cut(text, "<sheetData>")
 			first, _, _ := strings.Cut(rows, `<row r="4"`)
 			_, rest, _ := strings.Cut(text, "</sheetData>")
+			rest = strings.Replace(rest, `<autoFilter ref="A1:F3"`, `<autoFilter ref="A1:F5"`, 1)
 			if !strings.Contains(after[name], "<sheetData>"+first) || !strings.HasSuffix(after[name], "</sheetData>"+rest) {
 				t.Errorf("the sheet was changed:\n%s\n%s", text, after[name])
 			}
 			continue
+		}
+		if name == "xl/workbook.xml" {
+			text = strings.Replace(text, "$A$1:$F$3<", "$A$1:$F$5<", 1)
 		}
 		if after[name] != text {
 			t.Errorf("%s was changed", name)
@@ -201,6 +206,52 @@ func parts(t *testing.T, data []byte) map[string]string {
 		out[f.Name] = string(b)
 	}
 	return out
+}
+
+// The list as a table: it takes the new rows in, and its own filter with it; also
+// where it ended in empty rows that are filled now. One beside it, one with a row of
+// totals and one on another sheet stay as they are.
+func TestAppendToTable(t *testing.T) {
+	for _, c := range []struct{ before, after string }{{"A1:C3", "A1:C5"}, {"A1:C4", "A1:C5"}, {"A1:C9", "A1:C9"}} {
+		f := excelize.NewFile()
+		for i, row := range [][]any{{"id", "kind", "scans", "remark", "code"}, {"A1", "sample", "scans/A1", "", "x"}, {"B1", "blank", "scans/B1", "", "y"}} {
+			must(t, f.SetSheetRow("Sheet1", fmt.Sprintf("A%d", i+1), &row))
+		}
+		must(t, f.AddTable("Sheet1", &excelize.Table{Range: c.before, Name: "bottles", StyleName: "TableStyleLight9"}))
+		must(t, f.AddTable("Sheet1", &excelize.Table{Range: "E1:E3", Name: "codes"}))
+		_, err := f.NewSheet("more")
+		must(t, err)
+		must(t, f.AddTable("more", &excelize.Table{Range: "A1:B3", Name: "other"}))
+		b, err := f.WriteToBuffer()
+		must(t, err)
+		must(t, f.Close())
+		out, err := Append("runsheet.xlsx", b.Bytes(), nil, addedRows("N1", "N2"))
+		must(t, err)
+		g, err := excelize.OpenReader(bytes.NewReader(out))
+		must(t, err)
+		var got []string
+		for _, sheet := range []string{"Sheet1", "more"} {
+			list, err := g.GetTables(sheet)
+			must(t, err)
+			for _, x := range list {
+				got = append(got, x.Name+" "+x.Range)
+			}
+		}
+		must(t, g.Close())
+		slices.Sort(got)
+		if want := []string{"bottles " + c.after, "codes E1:E3", "other A1:B3"}; !slices.Equal(got, want) {
+			t.Errorf("tables %v, want %v", got, want)
+		}
+		for name, text := range parts(t, out) {
+			if strings.HasPrefix(name, "xl/tables/") && strings.Contains(text, `name="bottles"`) && strings.Count(text, `ref="`+c.after+`"`) != 2 {
+				t.Errorf("table and its filter: %s", text)
+			}
+		}
+	}
+	total := []byte(`<table ref="A1:C3" totalsRowCount="1"><autoFilter ref="A1:C2"/></table>`)
+	if got, err := (stretch{3, 5, 1}).tags(total, "table", "autoFilter"); err != nil || !bytes.Equal(got, total) {
+		t.Errorf("a table with totals: %s, %v", got, err)
+	}
 }
 
 // Workbooks of other programs: one that LibreOffice wrote, and one whose elements

@@ -8,6 +8,7 @@ import (
 	"fmt"
 	"io"
 	"regexp"
+	"slices"
 	"strconv"
 
 	"github.com/xuri/excelize/v2"
@@ -19,11 +20,12 @@ import (
 // 18.3) and not through the library that writes ours: that one reads a whole
 // workbook into its own model and writes that, so that what it does not know is
 // lost. Here every other part is copied as it is packed, and of the sheet every
-// byte stays but those of empty rows in the way and of its stated size.
+// byte stays but those of empty rows in the way, of its stated size and of the
+// tables and filters that end with its list.
 
 // appendXLSX writes records behind the last row with content.
 func appendXLSX(name string, data []byte, records [][]string) ([]byte, error) {
-	part, err := scanfile.FirstSheet(name, data)
+	at, err := scanfile.FirstSheet(name, data)
 	if err != nil {
 		return nil, err
 	}
@@ -31,13 +33,17 @@ func appendXLSX(name string, data []byte, records [][]string) ([]byte, error) {
 	if err != nil {
 		return nil, fmt.Errorf("%s: %w", name, err)
 	}
+	changed, err := grownParts(z, at, records)
+	if err != nil {
+		return nil, fmt.Errorf("%s: %w", name, err)
+	}
 	var b bytes.Buffer
 	w := zip.NewWriter(&b)
 	for _, f := range z.File {
-		if f.Name != part {
-			err = w.Copy(f)
+		if text, ok := changed[f.Name]; ok {
+			err = writePart(w, f, text)
 		} else {
-			err = copyWithRows(w, f, records)
+			err = w.Copy(f)
 		}
 		if err != nil {
 			return nil, fmt.Errorf("%s: %s: %w", name, f.Name, err)
@@ -49,25 +55,60 @@ func appendXLSX(name string, data []byte, records [][]string) ([]byte, error) {
 	return b.Bytes(), nil
 }
 
-func copyWithRows(w *zip.Writer, f *zip.File, records [][]string) error {
-	r, err := f.Open()
+// grownParts makes the parts that change: the sheet, and what frames its list.
+func grownParts(z *zip.Reader, at scanfile.SheetParts, records [][]string) (map[string][]byte, error) {
+	text, err := readPart(z, at.Sheet)
 	if err != nil {
-		return err
+		return nil, err
+	}
+	g := &grownSheet{xml: text}
+	if err := g.scan(); err != nil {
+		return nil, fmt.Errorf("%s: %w", at.Sheet, err)
+	}
+	sheet, s := g.with(records)
+	if sheet, err = s.tags(sheet, "autoFilter"); err != nil {
+		return nil, fmt.Errorf("%s: %w", at.Sheet, err)
+	}
+	out := map[string][]byte{at.Sheet: sheet}
+	for _, table := range at.Tables {
+		if text, err = readPart(z, table); err == nil {
+			out[table], err = s.tags(text, "table", "autoFilter")
+		}
+		if err != nil {
+			return nil, fmt.Errorf("%s: %w", table, err)
+		}
+	}
+	if at.Workbook != "" {
+		if text, err = readPart(z, at.Workbook); err != nil {
+			return nil, err
+		}
+		if grown := s.names(text); !bytes.Equal(grown, text) {
+			out[at.Workbook] = grown
+		}
+	}
+	return out, nil
+}
+
+func readPart(z *zip.Reader, name string) ([]byte, error) {
+	i := slices.IndexFunc(z.File, func(f *zip.File) bool { return f.Name == name })
+	r, err := z.File[i].Open() // FirstSheet has found it
+	if err != nil {
+		return nil, fmt.Errorf("%s: %w", name, err)
 	}
 	defer r.Close()
-	sheet, err := io.ReadAll(io.LimitReader(r, scanfile.MaxBookBytes+1))
+	text, err := io.ReadAll(io.LimitReader(r, scanfile.MaxBookBytes+1))
 	if err != nil {
-		return err
+		return nil, fmt.Errorf("%s: %w", name, err)
 	}
-	g := &grownSheet{xml: sheet}
-	if err := g.scan(); err != nil {
-		return err
-	}
+	return text, nil
+}
+
+func writePart(w *zip.Writer, f *zip.File, text []byte) error {
 	out, err := w.CreateHeader(&zip.FileHeader{Name: f.Name, Comment: f.Comment, Method: zip.Deflate, Modified: f.Modified})
 	if err != nil {
 		return err
 	}
-	_, err = out.Write(g.with(records))
+	_, err = out.Write(text)
 	return err
 }
 
@@ -178,10 +219,11 @@ func attribute(e xml.StartElement, name string) string {
 	return ""
 }
 
-// with returns the sheet with the records behind its last row with content. Empty
+// with returns the sheet with the records behind its last row with content, and how
+// far that goes. Empty
 // rows that a spreadsheet keeps there, because they were formatted once, make room
 // and leave their styles to the new ones.
-func (g *grownSheet) with(records [][]string) []byte {
+func (g *grownSheet) with(records [][]string) ([]byte, stretch) {
 	last := 0
 	for i, r := range g.rows {
 		if r.content {
@@ -189,6 +231,10 @@ func (g *grownSheet) with(records [][]string) []byte {
 		}
 	}
 	number, at := g.rows[last].number, g.rows[last].to
+	s := stretch{last: number, to: number + len(records)}
+	for _, record := range records {
+		s.col = 1 + slices.IndexFunc(record, func(text string) bool { return text != "" })
+	}
 	from, empty := at, g.rows[last+1:]
 	var b bytes.Buffer
 	for _, record := range records {
@@ -202,7 +248,7 @@ func (g *grownSheet) with(records [][]string) []byte {
 		}
 		g.writeRow(&b, number, record, styles)
 	}
-	return g.sized(joined(g.xml[:at], b.Bytes(), g.xml[from:]), number)
+	return g.sized(joined(g.xml[:at], b.Bytes(), g.xml[from:]), number), s
 }
 
 func joined(parts ...[]byte) []byte { return bytes.Join(parts, nil) }
