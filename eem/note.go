@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"strconv"
+	"strings"
 )
 
 // Severity is the one ladder on which everything that is said about a number
@@ -119,3 +120,12 @@ func NM(nm float64) string { return strconv.FormatFloat(math.Round(100*nm)/100, 
 
 // Spot writes a place of the plane for a message: "ex 275 / em 340 nm".
 func Spot(exNM, emNM float64) string { return "ex " + NM(exNM) + " / em " + NM(emNM) + " nm" }
+
+// InDetail parts a message into the words for everyone and the figures behind them.
+const InDetail = "; in detail: "
+
+// Brief is a message without its detail.
+func Brief(msg string) string {
+	brief, _, _ := strings.Cut(msg, InDetail)
+	return brief
+}

@@ -65,16 +65,16 @@ func reasonsOf(flags []eem.Flag) []reason {
 // line tells a reason to people.
 func (r reason) line() string {
 	if r.Count == 1 {
-		return fmt.Sprintf("%s: %s (%s)", r.IDs[0], r.Message, r.Test)
+		return fmt.Sprintf("%s: %s (%s)", r.IDs[0], eem.Brief(r.Message), r.Test)
 	}
 	who := some(r.IDs)
 	if more := r.Count - len(r.IDs); more > 0 {
 		who += fmt.Sprintf(" and %d more", more)
 	}
 	if !r.same {
-		return fmt.Sprintf("%d of one kind (%s), such as %s: %s (%s)", r.Count, who, r.IDs[0], r.Message, r.Test)
+		return fmt.Sprintf("%d of one kind (%s), such as %s: %s (%s)", r.Count, who, r.IDs[0], eem.Brief(r.Message), r.Test)
 	}
-	return fmt.Sprintf("%d of one kind (%s): %s (%s)", r.Count, who, r.Message, r.Test)
+	return fmt.Sprintf("%d of one kind (%s): %s (%s)", r.Count, who, eem.Brief(r.Message), r.Test)
 }
 
 // worst returns the findings that a user must see, one for each bottle and test:

@@ -123,7 +123,7 @@ func over(n, d value) value {
 	case d.refused != "":
 		return d
 	case !(d.v > 0):
-		return value{refused: fmt.Sprintf("its denominator is %g, not positive", d.v)}
+		return value{refused: fmt.Sprintf("its denominator is %.3g, not positive", d.v)}
 	}
 	r := value{v: n.v / d.v}
 	for _, t := range n.by {

@@ -99,9 +99,10 @@ func fitFlags(r *unmix.Resolution, s *Spread, b Bottle, m Moran, limit func(stri
 	structured := score > limit("structure")
 	if lim := limit("unexplained"); structured && fit.Explained < 100*lim {
 		add("unexplained", eem.Doubt, fit.Explained/100, lim,
-			fmt.Sprintf("the model explains %.1f %% of the signal; the residual is largest at ex %s / em %s nm: something in this bottle is not in the model (%s)", fit.Explained, eem.NM(fit.HotEx), eem.NM(fit.HotEm), s.residual()))
+			fmt.Sprintf("something in this bottle is not in the model, which explains %.1f %% of the signal; the residual is largest at ex %s / em %s nm%s%s", fit.Explained, eem.NM(fit.HotEx), eem.NM(fit.HotEm), eem.InDetail, s.residual()))
 	} else if structured {
-		add("structure", eem.Remark, score, limit("structure"), fmt.Sprintf("the residual is not noise alone (by chance one bottle in %s shows such): %s", digits(1/distuv.UnitNormal.Survival(limit("structure")), 2), s.residual()))
+		add("structure", eem.Remark, score, limit("structure"), fmt.Sprintf("the residual is not noise alone (by chance one bottle in %s shows such), largest at ex %s / em %s nm%s%s",
+			digits(1/distuv.UnitNormal.Survival(limit("structure")), 2), eem.NM(s.Hot.Ex), eem.NM(s.Hot.Em), eem.InDetail, s.residual()))
 	}
 	return out
 }

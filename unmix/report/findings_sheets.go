@@ -15,7 +15,7 @@ func (r *results) flagsSheet(b *book) {
 	}
 	s := b.add("Flags", layout{widths: widths, freeze: "C4", repeat: "$3:$3"})
 	s.add(20, cell{"What the checks found", look{bold: true, size: 13, color: inkBlue}})
-	s.add(0, cell{"A reject makes a result unusable; a doubt must be seen and travels with the result; a note needs no action.", look{color: midGrey}})
+	s.add(0, cell{"A reject makes a result unusable; a doubt must be seen and travels with the result; a note needs no action. Figures behind a finding stand in the workings.", look{color: midGrey}})
 	var row []cell
 	for _, h := range heads {
 		l := headLook
@@ -60,7 +60,7 @@ func (r *results) flagRow(i int, severity eem.Severity) []cell {
 	}
 	l.hair = true
 	w := look{wrap: true, hair: true}
-	row := []cell{{severity.String(), l}, {text("id"), w}, {text("batch"), w}, {text("component"), w}, {cut(text("message"), 2000), w},
+	row := []cell{{severity.String(), l}, {text("id"), w}, {text("batch"), w}, {text("component"), w}, {cut(eem.Brief(text("message")), 2000), w},
 		{what, look{color: midGrey, wrap: true, hair: true, indent: true}}, figure("value"), figure("limit")}
 	if len(r.s.Accepts) > 0 {
 		row = append(row, cell{accepted, look{wrap: true, hair: true, indent: true}})

@@ -311,6 +311,15 @@ for (const c of mapCanvases) {
 
 // one bottle
 const el = (tag, t) => { const e = document.createElement(tag); e.textContent = t; return e; };
+function finding(f) {
+  const li = el("li", f[0] + ": " + f[1]);
+  if (f[2]) {
+    const d = document.createElement("details");
+    d.append(el("summary", "in detail"), el("span", f[2]));
+    li.append(" ", d);
+  }
+  return li;
+}
 let opening = 0;
 async function open(row, focus) {
   const i = +row.dataset.i, b = D.bottles[i], turn = ++opening;
@@ -327,7 +336,7 @@ async function open(row, focus) {
     tr.cells[1].className = tr.cells[2].className = "n";
     return tr;
   }));
-  $("flags").replaceChildren(...(b.flags.length ? b.flags.map(f => el("li", f[0] + ": " + f[1])) : [el("li", "none")]));
+  $("flags").replaceChildren(...(b.flags.length ? b.flags.map(finding) : [el("li", "none")]));
   $("facts").replaceChildren(...b.facts.map(f => { const d = document.createElement("div"); d.append(el("dt", f[0]), el("dd", f[1])); return d; }));
   const pic = $("picture");
   pic.hidden = !b.file;

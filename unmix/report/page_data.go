@@ -74,7 +74,7 @@ type dataBottle struct {
 	Shown string      `json:"shown"`
 	Own   []num       `json:"own"` // scale ends of this bottle
 	Parts [][3]string `json:"parts"`
-	Flags [][2]string `json:"flags"`
+	Flags [][3]string `json:"flags"` // severity, words, figures behind them
 	Facts [][2]string `json:"facts"`
 	Note  string      `json:"note"`
 	File  string      `json:"file"`
@@ -108,7 +108,7 @@ func (r *results) pageData(p *pass) *pageData {
 
 // bottleData is what the page shows beside one bottle's maps.
 func (r *results) bottleData(b *bottle) dataBottle {
-	x := dataBottle{ID: b.id, Shown: visible(b.id), Parts: [][3]string{}, Flags: [][2]string{}, Facts: r.facts(b), Note: r.remarks(b, "Overview")}
+	x := dataBottle{ID: b.id, Shown: visible(b.id), Parts: [][3]string{}, Flags: [][3]string{}, Facts: r.facts(b), Note: r.remarks(b, "Overview")}
 	if r.s.Pictures && b.at >= 0 {
 		x.File = r.mapFile(b.id)
 	}
@@ -126,7 +126,8 @@ func (r *results) bottleData(b *bottle) dataBottle {
 		if c := f.Text(k, f.Col("component")); c != "" && !strings.HasPrefix(what, c) {
 			what = c + ": " + what
 		}
-		x.Flags = append(x.Flags, [2]string{f.Text(k, f.Col("severity")), what})
+		_, detail, _ := strings.Cut(what, eem.InDetail)
+		x.Flags = append(x.Flags, [3]string{f.Text(k, f.Col("severity")), eem.Brief(what), detail})
 	}
 	return x
 }

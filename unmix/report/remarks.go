@@ -51,10 +51,22 @@ func (r *results) reasons(x *bottle, c *contribution) (own []string, common []sh
 	f := r.table["flags.csv"]
 	for _, i := range x.flags {
 		if m := f.Text(i, f.Col("message")); take(m) {
-			own = append(own, m)
+			own = append(own, r.told(i))
 		}
 	}
 	return append(own, Leftover(rest)...), common
+}
+
+// told is finding i as a client reads it: what was found. The remedy behind it is for
+// the laboratory and stands with the figures in the list of findings.
+func (r *results) told(i int) string {
+	f := r.table["flags.csv"]
+	brief := eem.Brief(f.Text(i, f.Col("message")))
+	if f.Text(i, f.Col("test")) == "unknown" { // the second half is what it does to the results
+		return brief
+	}
+	first, _, _ := strings.Cut(brief, "; ")
+	return first
 }
 
 // alsoOn begins the reason that stands for a doubt told of the bottle that its
@@ -96,7 +108,7 @@ func (r *results) remarks(x *bottle, where string) string {
 	f := r.table["flags.csv"]
 	for _, i := range x.flags {
 		if parseSeverity(f.Text(i, f.Col("severity"))) >= eem.Doubt {
-			say(f.Text(i, f.Col("message")))
+			say(r.told(i))
 		}
 	}
 	var on, standards []string

@@ -8,6 +8,8 @@ import (
 	"testing"
 
 	"github.com/xuri/excelize/v2"
+
+	"tarnlight/eem"
 )
 
 // A doubt on all bottles is told once, in the Summary; a bottle's remarks point to
@@ -82,5 +84,54 @@ func TestLineHeight(t *testing.T) {
 	}
 	if narrow, wide := lineHeight("iiiiiiiiiiiiiiiiiiii iiiiiiiii", 120, l), lineHeight("MMMMMMMMMMMMMMMMMMMM MMMMMMMMM", 120, l); narrow != 15 || wide <= 27 {
 		t.Errorf("narrow letters %g, wide ones %g", narrow, wide)
+	}
+}
+
+// A client reads what was found; the figures behind it and the remedy stand where the
+// laboratory looks: in the workings, and on the page behind "in detail".
+func TestClientReadsShortWords(t *testing.T) {
+	dir := t.TempDir()
+	newFixture(t, 9, "parafac").write(t, dir)
+	flags, err := ReadTable(filepath.Join(dir, "flags.csv"))
+	must(t, err)
+	const found, behind = "something in this bottle is not in the model, which explains 58.7 % of the signal", "its variance is 8690 times that of the noise model"
+	put(flags, "TL-0001", "", "", "parafac", "unexplained", "doubt", 0.587, 0.9, found+"; look at its map"+eem.InDetail+behind)
+	put(flags, "TL-0001", "", "", "parafac", "unknown", "doubt", 9.0, 5.0, "something unknown; with it in the model the bottle holds 2 instead of 3")
+	must(t, flags.WriteFile(dir))
+	set := testSettings()
+	set.Pictures = false
+	must(t, Render(context.Background(), dir, set, nil))
+	sheet := func(book, name string, column int) string {
+		f, err := excelize.OpenFile(filepath.Join(dir, book))
+		must(t, err)
+		defer f.Close()
+		rows, err := f.GetRows(name)
+		must(t, err)
+		text := ""
+		for _, row := range rows {
+			if len(row) > column {
+				text += row[column] + "\n"
+			}
+		}
+		return text
+	}
+	results, err := excelize.OpenFile(filepath.Join(dir, "report.xlsx"))
+	must(t, err)
+	defer results.Close()
+	rows, err := results.GetRows("Results")
+	must(t, err)
+	if got := rows[4][len(rows[3])-1]; got != found+"; something unknown; with it in the model the bottle holds 2 instead of 3" {
+		t.Errorf("remarks %q", got)
+	}
+	if text := sheet("report.xlsx", "Flags", 4); strings.Contains(text, behind) || !strings.Contains(text, found+"; look at its map\n") {
+		t.Errorf("Flags: %s", text)
+	}
+	if text := sheet("workings.xlsx", "Findings", 8) + sheet("workings.xlsx", "Findings", 7); !strings.Contains(text, behind) {
+		t.Errorf("the workings do not hold the figures: %s", text)
+	}
+	page, err := os.ReadFile(filepath.Join(dir, "report.html"))
+	must(t, err)
+	if want := `["doubt","` + found + `; look at its map","` + behind + `"]`; !strings.Contains(string(page), want) {
+		t.Errorf("the page does not hold %s", want)
 	}
 }

@@ -64,7 +64,7 @@ func (r *results) resultsSheet(b *book) {
 		mid.align = "center"
 		heads = append(heads, cell{name, headRight}, cell{fmt.Sprintf("± %d", i+1), headRight}, cell{fmt.Sprintf("Q %d", i+1), mid})
 	}
-	widths = append(widths, 10, 11, 50)
+	widths = append(widths, 10, 11, 60)
 	heads = append(heads, cell{"Explained, %", headRight}, cell{"Check", headIndent}, cell{"Remarks", headLook})
 	const headRow = 4
 	s := b.add("Results", layout{widths: widths, freeze: fmt.Sprintf("B%d", headRow+1), repeat: fmt.Sprintf("$%d:$%d", headRow, headRow), keep: keep})

@@ -116,7 +116,7 @@ func (r *results) overview() [][2]string {
 func (r *results) onAll() [][2]string {
 	var out [][2]string
 	for _, d := range r.shared {
-		out = append(out, [2]string{"Doubt on " + d.on, d.message})
+		out = append(out, [2]string{"Doubt on " + d.on, eem.Brief(d.message)})
 	}
 	m := r.table["models.csv"]
 	for i := range m.Rows {

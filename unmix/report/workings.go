@@ -26,6 +26,7 @@ func (r *results) writeWorkings(p *pass) error {
 	r.tableSheet(b, "Batches", "batches.csv", "Batches")
 	r.tableSheet(b, "Calibration", "calibration.csv", "Given, found and recovery of standards, controls and spikes")
 	r.tableSheet(b, "Samples", "samples.csv", "Run sheet and fit, one row a bottle")
+	r.tableSheet(b, "Findings", "flags.csv", "Every finding with the figures behind it")
 	r.tableSheet(b, "Steps", "steps.csv", "Every step with its parameters")
 	r.provenanceSheet(b)
 	return b.write(filepath.Join(r.dir, "workings.xlsx"))
