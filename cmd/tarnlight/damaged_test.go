@@ -9,6 +9,7 @@ import (
 	"os"
 	"path"
 	"path/filepath"
+	"runtime/debug"
 	"slices"
 	"strings"
 	"testing"
@@ -145,12 +146,16 @@ func rowsByID(t *testing.T, dir, name string) map[string]string {
 // Surveys damaged at random: none panics, each ends in 0, 1 or 3, what is wrong is
 // said with the name of a file or bottle that was damaged, and bottles that nothing
 // happened to, nor to what they rest on, have the numbers of the clean survey.
-// TARNLIGHT_DAMAGED is how many, 30 without it.
+// TARNLIGHT_DAMAGED is how many, 30 without it, or which, as 123-456.
 func TestDamagedSurveys(t *testing.T) {
 	heavy(t)
-	n := 30
+	first, last := 1, 30
 	if v := os.Getenv("TARNLIGHT_DAMAGED"); v != "" {
-		n = int(number(t, v))
+		from, to, found := strings.Cut(v, "-")
+		if !found {
+			from, to = "1", v
+		}
+		first, last = int(number(t, from)), int(number(t, to))
 	}
 	sv := smallDemo(t)
 	sv.Settings = "[quality]\naccept = { above-standards = \"known\", absorbance-limit = \"known\" }\n"
@@ -163,23 +168,23 @@ func TestDamagedSurveys(t *testing.T) {
 	want := rowsByID(t, whole, "contributions.csv")
 	told := rowsByID(t, whole, "flags.csv")
 	codes := map[int]int{}
-	for seed := range uint64(n) {
-		h := damage(t, whole, clean, seed+1)
+	for seed := first; seed <= last; seed++ {
+		h := damage(t, whole, clean, uint64(seed))
 		r := callSafely(h.dir)
 		codes[r.code]++
 		if fault := judge(t, sv, h, r, want, told); fault != "" {
-			t.Errorf("seed %d, %s: exit %d, %s", seed+1, h, r.code, fault)
+			t.Errorf("seed %d, %s: exit %d, %s", seed, h, r.code, fault)
 		}
 		h.mend(t, clean)
 	}
-	t.Logf("%d surveys: %d ended in 0, %d in 1, %d in 3", n, codes[exitDone], codes[exitFailed], codes[exitDoubt])
+	t.Logf("%d surveys: %d ended in 0, %d in 1, %d in 3", last-first+1, codes[exitDone], codes[exitFailed], codes[exitDoubt])
 }
 
 // callSafely turns a panic into an exit code that nobody wants.
 func callSafely(dir string) (r result) {
 	defer func() {
 		if p := recover(); p != nil {
-			r = result{code: -1, err: fmt.Sprint("panic: ", p)}
+			r = result{code: -1, err: fmt.Sprintf("panic: %v\n%s", p, debug.Stack())}
 		}
 	}()
 	return call("run", dir, "--pictures=false", "--fresh")

@@ -12,7 +12,8 @@ import (
 )
 
 // SpectraErrors lists what is known of the errors of a resolution's components, for a
-// bottle that will be resolved by them elsewhere, on the given cells: causes behind
+// bottle that will be resolved by them elsewhere, on the given cells (all without any,
+// as where nothing but standards was measured): causes behind
 // their standards, or the covariance of their loadings. Each becomes at most F² shifts
 // (principal components of its covariance, on unit-norm components), of which those
 // under a millionth of the largest are left out. It returns nil where nothing is
@@ -21,7 +22,7 @@ func SpectraErrors(c *eem.Cube, r *unmix.Resolution, src *Sources, cells []int) 
 	e := newEngine(c, r, src)
 	m := &mask{}
 	for l, cell := range e.cells {
-		if _, ok := slices.BinarySearch(cells, cell); ok {
+		if _, ok := slices.BinarySearch(cells, cell); ok || len(cells) == 0 {
 			m.use = append(m.use, int32(l))
 		}
 	}
