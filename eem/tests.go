@@ -86,6 +86,7 @@ var Tests = sortTests([]Test{
 	{"spike", Remark, 8, "standard deviations", "single cells stand out of all their neighbours by more than the limit and were left out", "common practice, no source"},
 	{"axes-swapped", Reject, 0, "", "the light lies where emission is shorter than excitation: the axes are swapped", "Stokes' law"},
 	{"scan-dropped", Doubt, 0, "scans", "scans hold nothing but one number beside scans that hold light; they were left out", "common practice, no source"},
+	{"scan-short", Doubt, 10, "nm", "a scan ends or begins inside what its neighbours cover, by more than the limit: half a file", "common practice, no source"},
 	{"scan-repeated", Doubt, 0, "scans", "two excitations hold the same numbers", "common practice, no source"},
 	{"negative", Doubt, 1, "%", "share of the cells below −3 standard deviations after the blank was subtracted", "0.13 % expected of normal noise, computed; limit: common practice, no source"},
 	{"noise-default", Remark, 0, "", "fewer than three blanks, so that the noise was estimated from the bottle itself", "-"},

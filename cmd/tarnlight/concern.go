@@ -24,7 +24,7 @@ var concerns = map[string][]string{
 	concernLimit: {"above-standards", "absorbance-limit", "alert", "control-action", "control-recovery", "dilution-differs", "duplicate", "field-blank",
 		"field-duplicate", "holding-time", "linearity", "spike-recovery", "standard-recovery"},
 	concernData: {"absorbance-range", "excitation-repeated", "factor-range", "no-absorbance", "no-temperature", "reference-clipped",
-		"reference-intercept", "same-content", "sheet-column", "unreadable"},
+		"reference-intercept", "same-content", "scan-short", "sheet-column", "unreadable"},
 }
 
 // concernOf says what a finding of this test concerns.

@@ -17,7 +17,7 @@ func checks(e *eem.EEM) *eem.EEM {
 	if e = correct.Swapped(e); testCodes(e) != "" {
 		return e
 	}
-	e = correct.Spikes(correct.SaturateAuto(e), 0, nearLines)
+	e = correct.Spikes(correct.SaturateAuto(correct.ShortScans(e, 0)), 0, nearLines)
 	return correct.RepeatedScans(correct.DeadScans(e))
 }
 
@@ -64,6 +64,12 @@ func TestFaults(t *testing.T) {
 			}
 			return e
 		},
+		"scan-short": func(e *eem.EEM) *eem.EEM {
+			for k := e.Em.Len() * 2 / 3; k < e.Em.Len(); k++ {
+				e.Drop(e.Index(20, k), eem.NotMeasured)
+			}
+			return e
+		},
 		"scan-repeated": func(e *eem.EEM) *eem.EEM {
 			copy(e.Row(21), e.Row(20))
 			return e
@@ -96,6 +102,53 @@ func TestFaults(t *testing.T) {
 				}
 			}
 		}
+	}
+}
+
+// TestShortScans: a scan that breaks off is found wherever it stands, and windows
+// that instruments have on purpose are not: all alike, from the excitation on, to
+// twice the excitation, one long scan among short ones.
+func TestShortScans(t *testing.T) {
+	windows := map[string]func(ex float64) (lo, hi float64){
+		"alike":  func(float64) (float64, float64) { return 290, 600 },
+		"from":   func(ex float64) (float64, float64) { return ex + 10, 600 },
+		"double": func(ex float64) (float64, float64) { return ex + 10, min(2*ex-10, 600) },
+	}
+	at := span(240, 400, 10)
+	make1 := func(window func(float64) (float64, float64), cut map[int]float64) *eem.EEM {
+		e := eem.New(grid(t, at, span(250, 600, 2)), eem.Counts)
+		for j, ex := range at {
+			lo, hi := window(ex)
+			if end, ok := cut[j]; ok {
+				hi = end
+			}
+			for k := range e.Em.Len() {
+				if nm := e.Em.At(k); nm >= lo && nm <= hi {
+					e.F[e.Index(j, k)], e.Why[e.Index(j, k)] = 100, eem.Measured
+				}
+			}
+		}
+		return e
+	}
+	last := len(at) - 1
+	for name, w := range windows {
+		for cut, want := range map[int]bool{-1: false, 1: true, 8: true, last - 1: true, last: true} {
+			cuts := map[int]float64{}
+			if cut >= 0 {
+				lo, hi := w(at[cut])
+				cuts[cut] = (lo + hi) / 2
+			}
+			if got := testCodes(correct.ShortScans(make1(w, cuts), 0)) == "scan-short"; got != want {
+				t.Errorf("%s, scan %d cut: flagged %v", name, cut, got)
+			}
+		}
+	}
+	if got := testCodes(correct.ShortScans(make1(windows["alike"], map[int]float64{0: 400}), 0)); got != "scan-short" {
+		t.Errorf("the first scan cut: %q", got)
+	}
+	short := func(float64) (float64, float64) { return 290, 450 }
+	if got := testCodes(correct.ShortScans(make1(short, map[int]float64{7: 600}), 0)); got != "" {
+		t.Errorf("one long scan: %q", got)
 	}
 }
 

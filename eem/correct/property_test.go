@@ -45,7 +45,7 @@ func TestChainProperties(t *testing.T) {
 		}
 		geo := correct.Geometry{Form: rapid.SampledFrom([]string{"", correct.FrontFace, correct.Transmission}).Draw(rt, "form")}
 		steps := []func(*eem.EEM) *eem.EEM{
-			func(e *eem.EEM) *eem.EEM { return correct.Saturate(e, 5e5) }, correct.SaturateAuto, correct.DeadScans, correct.RepeatedScans, correct.Swapped,
+			func(e *eem.EEM) *eem.EEM { return correct.Saturate(e, 5e5) }, correct.SaturateAuto, correct.DeadScans, correct.RepeatedScans, correct.Swapped, func(e *eem.EEM) *eem.EEM { return correct.ShortScans(e, 0) },
 			func(e *eem.EEM) *eem.EEM { return correct.Spikes(e, 0, nil) },
 			func(e *eem.EEM) *eem.EEM { o, _ := correct.OffsetAuto(e); return correct.Offset(e, o) },
 			func(e *eem.EEM) *eem.EEM { return correct.Spectral(e, fs, fs) },

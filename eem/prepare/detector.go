@@ -52,6 +52,7 @@ func (b *Bottle) faults(s *Survey, e *eem.EEM) (out *eem.EEM, dead []eem.Note) {
 		dead = append(dead, eem.Note{Test: "no-light", Severity: eem.Reject, Msg: why + "; look at lamp, shutter and cell, and measure again"})
 		return e, dead
 	}
+	e = correct.ShortScans(e, s.Limit("scan-short"))
 	switch limit := b.Setting.Scans.Saturation; {
 	case b.off(stepSaturation):
 	case limit > 0:

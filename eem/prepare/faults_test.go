@@ -1,6 +1,7 @@
 package prepare_test
 
 import (
+	"bytes"
 	"context"
 	"fmt"
 	"math/rand/v2"
@@ -93,6 +94,15 @@ func faults() []change {
 		}},
 		spoil(id, "spike", func(e *eem.EEM) { e.F[e.Index(14, 75)] += 3e4 }), // ex 390 / em 495 nm
 		spoil(id, "scan-dropped", func(e *eem.EEM) { clear(e.Row(10)) }),
+		{id: id, test: "scan-short", bottle: func(b *synth.Bottle) { b.Layout.Form = synth.Stack }, folder: func(t *testing.T, dir string) {
+			name := filepath.Join(dir, "scans", "S007", "S007_ex300.txt")
+			data, err := os.ReadFile(name)
+			if err != nil {
+				t.Fatal(err)
+			}
+			half := data[:len(data)/2]
+			write(t, name, string(half[:bytes.LastIndexByte(half, '\n')+1]))
+		}},
 		spoil(id, "scan-repeated", func(e *eem.EEM) { copy(e.Row(11), e.Row(10)) }),
 		spoil(id, "no-light", func(e *eem.EEM) { clear(e.F) }),
 		{id: id, test: "no-light", bottle: func(b *synth.Bottle) { b.Closed = true }},

@@ -43,6 +43,9 @@ func (r *reader) mainBlocks() error {
 		r.main = append(r.main, b)
 		gap = nil
 	}
+	if err := r.cutOff(); err != nil {
+		return err
+	}
 	return r.edges()
 }
 
@@ -55,6 +58,9 @@ func (r *reader) ragged(i int) error {
 	a, b := &r.rows.blocks[i-1], &r.rows.blocks[i]
 	if a.rows < 2 {
 		return nil // a header row
+	}
+	if b.first == r.rows.total && b.cols < a.cols {
+		return errorf(r.name, b.first, "%d columns where the rows above have %d, and nothing follows; was the file cut short? Export it again", b.cols, a.cols)
 	}
 	return errorf(r.name, b.first, "%d columns where the rows above have %d; repair the line, or leave the top of the file out with scans.skip", b.cols, a.cols)
 }
