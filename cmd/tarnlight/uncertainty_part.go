@@ -29,6 +29,7 @@ func (j *job) sources(r *unmix.Resolution) *merit.Sources {
 	case "parafac":
 		if m := j.fit.Moves(); m > 0 {
 			s.Loadings = &merit.Loadings{Samples: m, Move: j.fit.Move}
+			s.Loadings.BentEx, s.Loadings.BentEm = j.fit.Bent()
 		}
 	}
 	return s

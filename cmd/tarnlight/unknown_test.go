@@ -164,7 +164,7 @@ func (p *spill) at(t *testing.T, times float64, c *planted) {
 	t.Logf("%g times, seed %d: %s (truth %.1f/%.1f) in %v", times, p.seed, u.Place(), ex, em, shown)
 }
 
-// Clean surveys show no unknown.
+// Clean surveys show no unknown: 60 surveys, none.
 func TestNoUnknown(t *testing.T) {
 	n, long := surveys(t, 3)
 	false1 := 0

@@ -25,8 +25,8 @@ func (b *bottle) references() {
 		}
 		b.addTensor("loadings", "survey", 0, text, b.m.load)
 	}
-	if b.m.floor != nil {
-		b.addLinear(CauseFloor, "survey", 0, "mean of noise without its negative half, where a spectrum is zero", b.m.floor)
+	if b.m.bent != nil {
+		b.addBias(CauseBounds, "survey", "loadings less those of a Gauss–Newton step to loadings and scores of either sign", b.m.bent)
 	}
 	b.frozen()
 	if e.src.StockMissing {

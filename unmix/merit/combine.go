@@ -111,11 +111,13 @@ func effective(v, df []float64) float64 {
 // (or the sum of several) from what would be left of the uncertainty if the bottle
 // held none of it, u0, and what grows with the amount, r·x:
 //
-//	critical  t·u0                          5 % of bottles without it exceed it
-//	detection δ·u0/(1 − k²r²)               95 % of bottles with it exceed that
-//	quantification u0/√(0.1² − r²)          relative standard uncertainty 10 %
+//	critical  t·u0 + max(0, b)              5 % of bottles without it exceed it
+//	detection (δ·u0 + |b|)/(1 − k²r²)       95 % of bottles with it exceed that
+//	quantification √(u0² + b²)/√(0.1² − r²) relative standard uncertainty 10 %
 //
-// with t Student's 95 % point, δ the non-centrality of ISO 11843-2 and k = 1.645.
+// with t Student's 95 % point, δ the non-centrality of ISO 11843-2, k = 1.645 and b the
+// bias that the bottle's other components bring (see bounds). One that would hide the
+// component does not lower the critical value: it is itself estimated from the data.
 func (b *bottle) limits(of []int, row, df []float64) (critical, detection, quantifiable float64) {
 	n := b.e.n
 	none, one := slices.Clone(b.x), make([]float64, n)
@@ -127,15 +129,19 @@ func (b *bottle) limits(of []int, row, df []float64) (critical, detection, quant
 	}
 	v := make([]float64, len(b.sources))
 	m := make([]float64, n*n)
-	u0, r2 := 0.0, 0.0
+	u0, r2, bias := 0.0, 0.0, 0.0
 	for t := range b.sources {
 		if b.sources[t].Cause == misfit {
 			continue // what is not in the model makes the decision doubtful, not lenient
 		}
 		clear(m)
 		b.sources[t].at(m, none)
-		v[t] = math.Max(0, form(m, row))
-		u0 += v[t]
+		if b.sources[t].bias {
+			bias += b.sources[t].biasOf(row, none)
+		} else {
+			v[t] = math.Max(0, form(m, row))
+			u0 += v[t]
+		}
 		clear(m)
 		b.sources[t].at(m, one)
 		at1 := math.Max(0, form(m, row))
@@ -143,12 +149,12 @@ func (b *bottle) limits(of []int, row, df []float64) (critical, detection, quant
 	}
 	nu := effective(v, df)
 	u0 = math.Sqrt(u0)
-	critical, detection, quantifiable = TQuantile(0.95, nu)*u0, math.NaN(), math.NaN()
+	critical, detection, quantifiable = TQuantile(0.95, nu)*u0+math.Max(0, bias), math.NaN(), math.NaN()
 	if shrink := 1 - kCritical*kCritical*r2; shrink > 0 {
-		detection = Delta(nu, 0.05, 0.05) * u0 / shrink
+		detection = (Delta(nu, 0.05, 0.05)*u0 + math.Abs(bias)) / shrink
 	}
 	if r2 < 0.01 {
-		quantifiable = u0 / math.Sqrt(0.01-r2)
+		quantifiable = math.Hypot(u0, bias) / math.Sqrt(0.01-r2)
 	}
 	return critical, detection, quantifiable
 }

@@ -65,6 +65,9 @@ const ofStandards = " of the standards"
 // contributions, x = W·K'…
 func (e *engine) shiftsOf(s source, w, gram []float64) [][]float64 {
 	n := e.n
+	if s.bias {
+		return [][]float64{product(w, s.effects[0], n)} // with its sign
+	}
 	t := mat.NewDense(n*n, n*n, nil) // [h][g] × [h'][g'], of K'…
 	for _, y := range s.effects {
 		v := mat.NewVecDense(n*n, y)
@@ -101,6 +104,13 @@ func (e *engine) shiftsOf(s source, w, gram []float64) [][]float64 {
 	return principal(cov, func(h, g int) float64 { return 1 / unit(h, g) }, n)
 }
 
+// product is the matrix product of two n × n.
+func product(a, b []float64, n int) []float64 {
+	var out mat.Dense
+	out.Mul(mat.NewDense(n, n, a), mat.NewDense(n, n, b))
+	return out.RawMatrix().Data
+}
+
 // principal returns the components of a covariance of n × n entries, largest first,
 // each entry brought back to its unit.
 func principal(cov *mat.SymDense, unit func(h, g int) float64, n int) [][]float64 {
@@ -128,6 +138,10 @@ func (b *bottle) frozen() {
 	for _, s := range b.e.r.Set.Errors {
 		if s.Shifts == nil {
 			b.silent = append(b.silent, Term{Cause: s.Cause, Scope: s.Scope, Source: s.Source})
+			continue
+		}
+		if s.Cause == CauseBounds && len(s.Shifts) == 1 {
+			b.addBias(s.Cause, s.Scope, s.Source, b.frozenBias(s.Shifts[0]))
 			continue
 		}
 		b.add(s.Cause, s.Scope, s.DF, s.Source, b.shifted(s.Shifts))

@@ -17,7 +17,7 @@ type mask struct {
 	dose  [][]float64 // by dose: what a relative error of it does to K'K
 	ref   []float64   // [h][h'][g][g']: noise of the references
 	load  []float64   // the same: loadings
-	floor [][]float64 // effects: loadings cut at zero
+	bent  []float64   // effect of the bounds at zero; nil: none
 	apart []float64   // as ref: errors of the standards that each wavelength has for itself
 	// scatter, by group, is the same: the standards' own scatter.
 	scatter [][]float64
@@ -84,7 +84,7 @@ func (m *mask) make(e *engine) {
 	}
 	if e.src.Loadings != nil {
 		m.moves(e)
-		m.floors(e)
+		m.bounds(e)
 	}
 	if e.hasLoadingU() {
 		m.loadingU(e)

@@ -9,6 +9,7 @@ type source struct {
 	// [h][g], or their products summed (see mask).
 	effects [][]float64
 	tensor  []float64
+	bias    bool // the one effect is known with its sign: W·effect·x is too much
 }
 
 // linear is a source of independent errors, each of which changes K'(δb − Σ x δK) by

@@ -57,6 +57,9 @@ type References struct {
 type Loadings struct {
 	Samples int
 	Move    func(l int) (ex, em [][]float64)
+	// BentEx and BentEm, F × J and F × K in the same unit, are by how far the bounds at
+	// zero hold the loadings: a bias. nil: there is none, or it is not known.
+	BentEx, BentEm [][]float64
 }
 
 // Term is one row of an uncertainty budget: what one cause contributes to the

@@ -57,25 +57,27 @@ func (r *Result) Move(l int) (ex, em [][]float64) {
 	}
 	v := r.moves
 	d := v.d[l*v.m : (l+1)*v.m]
+	move := func(at []int) func(int) float64 {
+		return func(i int) float64 {
+			if at[i] < 0 {
+				return 0
+			}
+			return float64(d[at[i]])
+		}
+	}
 	for f := range v.ex {
-		ex = append(ex, atMax(d, v.exAt[f], v.ex[f], v.exTop[f]))
-		em = append(em, atMax(d, v.emAt[f], v.em[f], v.emTop[f]))
+		ex = append(ex, atMax(move(v.exAt[f]), v.ex[f], v.exTop[f]))
+		em = append(em, atMax(move(v.emAt[f]), v.em[f], v.emTop[f]))
 	}
 	return ex, em
 }
 
 // atMax turns moves of a loading into those of the loading over its maximum.
-func atMax(d []float32, at []int, load []float64, top int) []float64 {
+func atMax(move func(i int) float64, load []float64, top int) []float64 {
 	out := make([]float64, len(load))
 	peak := load[top]
 	if peak == 0 {
 		return out
-	}
-	move := func(i int) float64 {
-		if at[i] < 0 {
-			return 0
-		}
-		return float64(d[at[i]])
 	}
 	dp := move(top)
 	for i, v := range load {

@@ -63,9 +63,11 @@ type Result struct {
 
 	Notes []eem.Note
 
-	order        []int    // place of each component in the fit
-	exRes, emRes [][]bool // F × J and F × K: not damped
-	moves        *moves   // nil where the errors are not known
+	order        []int       // place of each component in the fit
+	exRes, emRes [][]bool    // F × J and F × K: not damped
+	moves        *moves      // nil where the errors are not known
+	bentEx       [][]float64 // see Bent
+	bentEm       [][]float64
 }
 
 // Start is one start of a fit.

@@ -9,6 +9,7 @@ import (
 // tell fills in what the result says about errors: standard errors, what is
 // determined, leverage and influence.
 func (n *newton) tell(r *Result) {
+	bent := n.bent()
 	in := n.influence()
 	f := in.f
 	sb, sc := in.loadingSE()
@@ -27,6 +28,7 @@ func (n *newton) tell(r *Result) {
 		r.emRes = append(r.emRes, undamped(in.dampC, in.k, f, x))
 	}
 	in.keep(r, peakB, peakC)
+	in.keepBent(r, bent, peakB, peakC)
 	score := in.scoreSE(peakB, peakC)
 	for row, i := range in.sample {
 		for to, x := range r.order {
