@@ -83,10 +83,7 @@ func (r *results) methodsSheet(b *book) {
 		if m.setup != "" {
 			name += " (" + m.setup + ")"
 		}
-		what := joinNonEmpty(" ", strings.TrimSpace(m.words.what))
-		if len(m.done) > 0 {
-			what = strings.TrimSpace(what + " Here: " + strings.Join(m.done, "; ") + ".")
-		}
+		what := m.sentences()
 		first, ruled := look{wrap: true, line: true}, look{wrap: true, line: true, indent: true}
 		s.add(0, cell{float64(i + 1), look{line: true, align: "left"}}, cell{name, look{bold: true, wrap: true, line: true}}, cell{what, first}, cell{m.words.formula, ruled},
 			cell{strings.Join(m.params, "\n"), ruled}, cell{m.words.source, look{wrap: true, line: true, color: midGrey, indent: true}})

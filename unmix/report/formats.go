@@ -96,7 +96,8 @@ func shortFormat(v float64) string {
 	case d > 7:
 		return "0.####E+00"
 	}
-	return "0." + strings.Repeat("#", d)
+	_, tail, _ := strings.Cut(numbers{}.short(v, 5), ".") // as many as it needs: 100.00001 under "0.####" is "100."
+	return decimalFormat(len(tail))
 }
 
 // shortLength is how many letters a number takes in its short format, at most.

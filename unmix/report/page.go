@@ -105,10 +105,11 @@ func (r *results) writePage(p *pass, figures []*figure) error {
 	}
 	v.Models = r.pageModels()
 	v.Batches = r.pageTable("batches.csv", []string{"batch", "verdict", "reason"})
-	v.Calibration = r.pageTable("calibration.csv", []string{"id", "batch", "kind", "component", "verdict", "reason"})
+	v.Calibration = r.pageTable("calibration.csv", []string{"id", "batch", "kind", "component", "verdict", "reason"},
+		"line_slope", "line_intercept", "line_intercept_standard_error") // the same for all standards of a component: in the workings
 	for _, m := range r.methodSteps() {
 		name := joinNonEmpty(" – ", m.name, m.setup)
-		v.Steps = append(v.Steps, pageStep{strings.TrimSuffix(name, " – "), strings.TrimSpace(m.words.what + " " + strings.Join(m.done, "; ")), m.words.formula, m.words.source, m.params})
+		v.Steps = append(v.Steps, pageStep{strings.TrimSuffix(name, " – "), m.sentences(), m.words.formula, m.words.source, m.params})
 	}
 	data, err := json.Marshal(r.pageData(p)) // json.Marshal writes <, > and & as \u003c …: it cannot end the script
 	if err != nil {

@@ -42,3 +42,24 @@ func TestPageShape(t *testing.T) {
 		t.Errorf("%d controls are printed", shown)
 	}
 }
+
+// On a small screen the results stand where the page opens, without scrolling down or
+// sideways, and a bottle's numbers before its maps.
+func TestSmallScreen(t *testing.T) {
+	b := newBrowser(t, 600, 900)
+	dir := rendered(t, 12, func(s *RenderSettings) { s.Pictures = false }, "parafac")
+	b.open(t, filepath.Join(dir, "report.html"))
+	b.wait(t, `document.getElementById("count").textContent.endsWith("shown")`)
+	first := eval[[]float64](t, b, `(() => { const r = document.querySelector("#table tbody td[data-v]:not(.k)").getBoundingClientRect(); return [r.right, r.bottom]; })()`)
+	if first[0] > 600 || first[1] > 900 {
+		t.Errorf("the first result ends at %g, %g px", first[0], first[1])
+	}
+	eval[bool](t, b, `document.querySelector(".open").click(); true`)
+	b.wait(t, `document.getElementById("readout").textContent.includes("measured")`)
+	if !eval[bool](t, b, `document.getElementById("parts").getBoundingClientRect().bottom <= document.querySelector(".maps").getBoundingClientRect().top`) {
+		t.Error("the maps stand before the numbers")
+	}
+	if w := eval[int](t, b, `document.documentElement.scrollWidth`); w > 600 {
+		t.Errorf("the page is %d px wide", w)
+	}
+}

@@ -28,11 +28,6 @@ type pageRow struct {
 	Cells                    []pageCell
 }
 
-type pageTable struct {
-	Heads []string
-	Rows  [][]string
-}
-
 // pageRows makes the table of bottles.
 func (r *results) pageRows(v *page) {
 	known := r.knownColumns()
@@ -44,8 +39,8 @@ func (r *results) pageRows(v *page) {
 		v.Columns = append(v.Columns, pageColumn{Head: strings.TrimSpace(r.label(c) + " " + c.unit), Title: methodName(c.method), Number: true, Class: "n"})
 	}
 	v.Columns = append(v.Columns, pageColumn{"Explained %", "share of the bottle's sum of squares that the components explain", true, "n"},
-		pageColumn{"Structure z", "how alike neighbouring residuals are: Moran's I in standard deviations", true, "n"},
-		pageColumn{"Hottest " + r.unit, "largest residual", true, "n"}, pageColumn{"at ex/em nm", "where the largest residual lies", false, ""})
+		pageColumn{"Structure z", "how alike neighbouring residuals are: Moran's I in standard deviations", true, "n look"},
+		pageColumn{"Hottest " + r.unit, "largest residual", true, "n look"}, pageColumn{"at ex/em nm", "where the largest residual lies", false, "look"})
 	tests := map[string]bool{}
 	for i, b := range r.bottles {
 		row := r.pageRow(b, known)
@@ -85,11 +80,15 @@ func (r *results) pageRow(b *bottle, known []resultColumn) pageRow {
 	for _, c := range r.series {
 		row.Cells = append(row.Cells, r.valueCell(b.of[c]))
 	}
-	hot := pageCell{}
+	hot := pageCell{Class: "look"}
 	if ex, em := f("hottest_ex_nm"), f("hottest_em_nm"); finite(ex) && finite(em) {
 		hot.Text = r.num.nm(ex) + "/" + r.num.nm(em)
 	}
-	row.Cells = append(row.Cells, r.numberCell(f("explained_percent"), 4), r.numberCell(f("structure"), 3), r.numberCell(f("hottest_value"), 3), hot)
+	explained := r.numberCell(f("explained_percent"), 4)
+	if explained.Text != "" {
+		explained.Text = r.num.fixed(f("explained_percent"), 2)
+	}
+	row.Cells = append(row.Cells, explained, r.lookCell(f("structure")), r.lookCell(f("hottest_value")), hot)
 	return row
 }
 
@@ -121,65 +120,16 @@ func (r *results) valueCell(c *contribution) pageCell {
 	return out
 }
 
+// lookCell is a number for who looks round; print leaves it out.
+func (r *results) lookCell(v float64) pageCell {
+	c := r.numberCell(v, 3)
+	c.Class = "look"
+	return c
+}
+
 func (r *results) numberCell(v float64, digits int) pageCell {
 	if math.IsNaN(v) {
 		return pageCell{}
 	}
 	return pageCell{Text: r.num.sig(v, digits), Sort: Number(v)}
-}
-
-// pageTable is a results table for people: the columns named in ahead first,
-// without those named in without and those that are empty, numbers rounded.
-func (r *results) pageTable(name string, ahead []string, without ...string) pageTable {
-	t := r.table[name]
-	var out pageTable
-	var cols []int
-	for _, head := range append(slices.Clone(ahead), t.Columns...) {
-		c := t.Col(head)
-		used := slices.ContainsFunc(t.Rows, func(row []string) bool { return row[c] != "" })
-		if used && !slices.Contains(without, head) && !slices.Contains(cols, c) {
-			cols = append(cols, c)
-			out.Heads = append(out.Heads, strings.ReplaceAll(head, "_", " "))
-		}
-	}
-	for i := range t.Rows {
-		var row []string
-		for _, c := range cols {
-			text := t.Text(i, c)
-			if v := t.Float(i, c); finite(v) {
-				text = r.num.short(v, 5)
-			}
-			row = append(row, yesNo(text))
-		}
-		out.Rows = append(out.Rows, row)
-	}
-	return out
-}
-
-// pageModels is the table of candidate models, a column a number of components, so
-// that it fits on a page.
-func (r *results) pageModels() pageTable {
-	t := r.table["models.csv"]
-	if len(t.Rows) == 0 {
-		return pageTable{}
-	}
-	out := pageTable{Heads: []string{"components"}}
-	for i := range t.Rows {
-		out.Heads = append(out.Heads, t.Text(i, t.Col("components")))
-	}
-	for _, name := range r.modelRows() {
-		if slices.Contains([]string{"seed", "loss", "samples", "cells"}, name) {
-			continue
-		}
-		row := []string{strings.ReplaceAll(name, "_", " ")}
-		for i := range t.Rows {
-			text := yesNo(t.Text(i, t.Col(name)))
-			if v := t.Float(i, t.Col(name)); finite(v) {
-				text = r.num.short(v, 5)
-			}
-			row = append(row, text)
-		}
-		out.Rows = append(out.Rows, row)
-	}
-	return out
 }

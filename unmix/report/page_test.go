@@ -241,7 +241,7 @@ func TestLookAtPage(t *testing.T) {
 	if dir == "" {
 		t.Skip("set LOOK_PAGE to a folder of results")
 	}
-	for _, w := range []int64{1600, 1000, 420} {
+	for _, w := range []int64{1600, 1000, 600} {
 		b := newBrowser(t, w, 1000)
 		b.open(t, filepath.Join(dir, "report.html"))
 		b.wait(t, `document.getElementById("count").textContent.endsWith("shown")`)

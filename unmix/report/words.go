@@ -77,6 +77,14 @@ type methodStep struct {
 	params      []string
 }
 
+// sentences say what a step does, and what it did in this survey.
+func (m *methodStep) sentences() string {
+	if len(m.done) == 0 {
+		return m.words.what
+	}
+	return strings.TrimSpace(m.words.what + " Here: " + strings.Join(m.done, "; ") + ".")
+}
+
 // methodSteps gathers steps.csv by step and setup, and adds how contributions,
 // uncertainties and limits were found.
 func (r *results) methodSteps() []*methodStep {
