@@ -2,6 +2,7 @@ package main
 
 import (
 	"fmt"
+	"os"
 	"path/filepath"
 	"strings"
 	"testing"
@@ -214,5 +215,44 @@ func TestBeginReadsBySettings(t *testing.T) {
 	}
 	if r := call("check", dir).want(t, exitDone, exitDoubt); !strings.Contains(r.err, "1 usable") {
 		t.Errorf("%s%s", r.out, r.err)
+	}
+}
+
+// A survey folder or a root that is itself a link is looked into; links inside are
+// named, and so is a folder that nobody may look into: the rest goes on.
+func TestBeginAmongLinks(t *testing.T) {
+	dir := folder(t, map[string]string{"real/scans/W1.csv": gridText(1, 1), "elsewhere/W2.csv": gridText(1, 2), "real/locked/W3.csv": gridText(2, 2)})
+	for from, to := range map[string]string{"link": "real", "real/moved": filepath.Join("..", "elsewhere"), "real/scans/W4.csv": filepath.Join("..", "..", "elsewhere", "W2.csv")} {
+		if err := os.Symlink(to, filepath.Join(dir, from)); err != nil {
+			t.Skip("no links here: ", err)
+		}
+	}
+	link := filepath.Join(dir, "link")
+	r := call("begin", link, "--csv").want(t, exitDone)
+	if !strings.Contains(r.out, "scans/W1.csv") || strings.Count(r.err, "not used: moved, scans/W4.csv: links are not followed") != 1 {
+		t.Errorf("a link to the folder: %s%s", r.out, r.err)
+	}
+	put(t, dir, "real/survey.toml", "[sheet]\nroot = \"moved\"\n")
+	if err := os.Remove(filepath.Join(link, "runsheet.csv")); err != nil {
+		t.Fatal(err)
+	}
+	if r := call("begin", link, "--csv").want(t, exitDone); !strings.Contains(r.out, "W2.csv") {
+		t.Errorf("a root that is a link: %s%s", r.out, r.err)
+	}
+	call("check", link).want(t, exitDone, exitDoubt)
+
+	locked := filepath.Join(dir, "real", "locked")
+	if err := os.Chmod(locked, 0); err != nil {
+		t.Fatal(err)
+	}
+	t.Cleanup(func() { os.Chmod(locked, 0o755) })
+	if _, err := os.ReadDir(locked); err == nil {
+		t.Log("not tried: this user may look into every folder")
+		return
+	}
+	put(t, dir, "real/survey.toml", "[sheet]\nname = \"{id}\"\n")
+	old(t, filepath.Join(dir, "real", "scans"))
+	if r := call("begin", link, "--add").want(t, exitDoubt); !strings.Contains(r.out, "W1") || !strings.Contains(r.err, "not used: locked: it cannot be looked into (permission denied)") {
+		t.Errorf("a folder that is locked: %s%s", r.out, r.err)
 	}
 }

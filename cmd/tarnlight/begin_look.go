@@ -71,25 +71,33 @@ func (b *beginning) lookAround(ctx context.Context, claims prepare.Claimed) ([]f
 // list finds the files in order of their paths. Results, hidden files, those that
 // office programs leave and those that the settings name are passed over.
 func (b *beginning) list(claims prepare.Claimed) ([]string, error) {
-	var paths []string
+	var paths, links []string
 	ignored, known := b.set.Sheet.Ignored(), b.knownFiles()
-	err := filepath.WalkDir(b.root, func(p string, d fs.DirEntry, err error) error {
-		if err != nil {
-			if p != b.root && errors.Is(err, fs.ErrNotExist) {
-				return nil // vanished
-			}
+	top := b.root + string(filepath.Separator) + "." // the folder, where the root is a link to it
+	err := filepath.WalkDir(top, func(p string, d fs.DirEntry, err error) error {
+		switch {
+		case err == nil:
+		case p == top:
 			return err
+		case errors.Is(err, fs.ErrNotExist):
+			return nil // vanished
+		default:
+			b.leaveOpen(b.rel(p), "it cannot be looked into (%v); let it be read, or name it as ignore under [sheet] in survey.toml", pathless(err))
+			return fs.SkipDir
 		}
 		name := d.Name()
 		switch {
-		case d.IsDir() && p != b.root && (strings.HasPrefix(name, ".") || name == "out" || strings.HasPrefix(name, "out.") ||
+		case d.IsDir() && p != top && (strings.HasPrefix(name, ".") || name == "out" || strings.HasPrefix(name, "out.") ||
 			strings.HasSuffix(name, ".work") || strings.HasSuffix(name, ".cache") || isResults(p)):
 			return filepath.SkipDir
-		case p != b.root && ignored(b.rel(p)):
+		case p != top && ignored(b.rel(p)):
 			b.passed++
 			if d.IsDir() {
 				return filepath.SkipDir
 			}
+			return nil
+		case d.Type()&fs.ModeSymlink != 0 && len(claims[p]) == 0:
+			links = append(links, b.rel(p))
 			return nil
 		case !d.Type().IsRegular() || strings.HasPrefix(name, ".") || strings.HasPrefix(name, "~$"):
 			return nil
@@ -99,8 +107,20 @@ func (b *beginning) list(claims prepare.Claimed) ([]string, error) {
 		paths = append(paths, p)
 		return nil
 	})
+	if len(links) > 0 {
+		b.leave(some(links), "links are not followed; name the folder that they lead to as root under [sheet] in survey.toml, or copy the files")
+	}
 	slices.Sort(paths)
 	return paths, err
+}
+
+// pathless drops the path from a file error.
+func pathless(err error) error {
+	var pe *fs.PathError
+	if errors.As(err, &pe) {
+		return pe.Err
+	}
+	return err
 }
 
 func (b *beginning) rel(path string) string {

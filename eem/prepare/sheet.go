@@ -110,7 +110,8 @@ func (s *Survey) unusedFiles() {
 	known, ignored := s.knownFiles(), s.Settings.Sheet.Ignored()
 	var left []string
 	n := 0
-	err := filepath.WalkDir(s.root(), func(path string, d fs.DirEntry, err error) error {
+	top := s.root() + string(filepath.Separator) + "." // the folder, where the root is a link to it
+	err := filepath.WalkDir(top, func(path string, d fs.DirEntry, err error) error {
 		if n++; n > maxWalk {
 			return fs.SkipAll
 		}
@@ -119,7 +120,7 @@ func (s *Survey) unusedFiles() {
 		}
 		name := d.Name()
 		if d.IsDir() {
-			if path != s.root() && (strings.HasPrefix(name, ".") || results(path)) {
+			if path != top && (strings.HasPrefix(name, ".") || results(path)) {
 				return fs.SkipDir
 			}
 			return nil
