@@ -102,6 +102,7 @@ func (j *job) renderSettings() report.RenderSettings { return renderSettings(j.s
 
 // newVerifyCmd says whether results can be trusted.
 func newVerifyCmd(s streams) *cobra.Command {
+	var from string
 	c := &cobra.Command{
 		Use:   "verify OUT",
 		Short: "After: can this be trusted? Results whole, inputs there and equal, inputs gone",
@@ -110,20 +111,21 @@ the hashes that were written with the results. It needs nothing but the folders.
 
 Exit codes: 0 results whole and inputs equal, 1 results missing or changed, 3 results
 whole but an input is gone or another than it was.`,
-		Example: "  tarnlight verify mysurvey/out",
+		Example: "  tarnlight verify mysurvey/out\n  tarnlight verify results --survey mysurvey",
 		Args:    cobra.ExactArgs(1),
-		RunE:    func(_ *cobra.Command, args []string) error { return runVerify(s, args[0]) },
+		RunE:    func(_ *cobra.Command, args []string) error { return runVerify(s, args[0], from) },
 	}
+	c.Flags().StringVar(&from, "survey", "", "survey folder (default: the folder that holds OUT)")
 	return c
 }
 
 // runVerify exits 1 where the results are not what was written, 3 where an input
 // is gone or another.
-func runVerify(s streams, dir string) error {
+func runVerify(s streams, dir, from string) error {
 	if err := resultsFolder(dir); err != nil {
 		return err
 	}
-	r, err := outdir.Verify(dir)
+	r, err := verifyFrom(dir, from)
 	if err != nil {
 		return err
 	}
@@ -132,6 +134,9 @@ func runVerify(s streams, dir string) error {
 			return err
 		}
 	}
+	if n := len(r.InputsMissing); from == "" && n > 0 && n == len(r.Provenance.Inputs) {
+		fmt.Fprintf(s.err, "not one input lies where it was; where the survey is not the folder that holds the results: tarnlight verify %s --survey DIR\n", dir)
+	}
 	switch {
 	case !r.Whole():
 		return &codeError{code: exitFailed}
@@ -139,4 +144,16 @@ func runVerify(s streams, dir string) error {
 		return &codeError{code: exitDoubt}
 	}
 	return nil
+}
+
+// verifyFrom verifies results of the survey folder from; empty: the one that holds
+// them.
+func verifyFrom(dir, from string) (outdir.Report, error) {
+	if from == "" {
+		return outdir.Verify(dir)
+	}
+	if err := surveyFolder(from); err != nil {
+		return outdir.Report{}, err
+	}
+	return outdir.VerifyWith(dir, from)
 }

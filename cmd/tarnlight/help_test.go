@@ -41,7 +41,10 @@ func TestExamplesRun(t *testing.T) {
 				t.Fatal(err)
 			}
 		},
-		"report": func() { results("mysurvey") }, "verify": func() { results("mysurvey") },
+		"report": func() { results("mysurvey") }, "verify": func() {
+			results("mysurvey")
+			runNoPictures(t, "mysurvey", "--out", "results")
+		},
 		"apply":   func() { results("lastyear"); survey("tonight"); survey("nights") },
 		"compare": func() { results("lastyear"); results("thisyear"); results("mysurvey"); results("mysurvey") },
 		"explain": func() {

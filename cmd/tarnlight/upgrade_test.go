@@ -74,3 +74,22 @@ func TestCompareTellsWhy(t *testing.T) {
 		t.Errorf("another qualifier:\n%s", r.out)
 	}
 }
+
+// Results that do not lie in their survey folder are verified against the one that
+// is named; without it verify says how to name it.
+func TestVerifyElsewhere(t *testing.T) {
+	dir := newTiny().write(t)
+	out := filepath.Join(t.TempDir(), "results")
+	runNoPictures(t, dir, "--out", out)
+	if r := call("verify", out).want(t, exitDoubt); !strings.Contains(r.out, "inputs gone") || !strings.Contains(r.err, "--survey DIR") {
+		t.Errorf("without the survey: %s%s", r.out, r.err)
+	}
+	if r := call("verify", out, "--survey", dir).want(t, exitDone); !strings.Contains(r.out, "inputs there and equal") || r.err != "" {
+		t.Errorf("with it: %s%s", r.out, r.err)
+	}
+	put(t, dir, "scans/W1.csv", gridText(9, 9))
+	if r := call("verify", out, "--survey", dir).want(t, exitDoubt); !strings.Contains(r.out, "scans/W1.csv: input changed") {
+		t.Errorf("a changed file: %s%s", r.out, r.err)
+	}
+	call("verify", out, "--survey", filepath.Join(dir, "nowhere")).want(t, exitFailed)
+}
