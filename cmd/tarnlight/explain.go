@@ -36,7 +36,8 @@ func newExplainCmd(s streams) *cobra.Command {
 the settings of the results, and shows for one cell what each step made of it, from
 the counts in the file to the number in survey.nc; then what was masked and why, the
 contributions with their rounding, and every finding on the bottle. It says so where
-raw files have changed since.`,
+raw files have changed since. Numbers are shown with seven digits; --csv and --json have
+all of them, so that the chain can be computed again.`,
 		Example: "  tarnlight explain tarnlight-demo/out W201\n  tarnlight explain tarnlight-demo/out W201 --cell 275,340 --csv",
 		Args:    cobra.ExactArgs(2),
 	}
@@ -120,13 +121,28 @@ func (x *explainer) print(s streams) error {
 		section := x.lines[i].Section
 		t := newText(section, "", "", "")
 		for ; i < len(x.lines) && x.lines[i].Section == section; i++ {
-			t.add("  "+x.lines[i].Item, x.lines[i].Value, x.lines[i].Unit, x.lines[i].Note)
+			t.add("  "+x.lines[i].Item, onScreen(x.lines[i].Value), x.lines[i].Unit, x.lines[i].Note)
 		}
 		if err := t.print(s.out); err != nil {
 			return err
 		}
 	}
 	return nil
+}
+
+// onScreen is a value with seven significant digits at most, which is what anybody
+// reads; the table for a spreadsheet keeps those that the chain is computed with.
+func onScreen(value string) string {
+	v, err := strconv.ParseFloat(value, 64)
+	if err != nil || len(value) < 9 || math.IsNaN(v) || math.IsInf(v, 0) {
+		return value
+	}
+	short := strconv.FormatFloat(v, 'g', 7, 64)
+	if e := math.Abs(v); e >= 1e-4 && e < 1e15 {
+		v, _ = strconv.ParseFloat(short, 64)
+		return strconv.FormatFloat(v, 'f', -1, 64)
+	}
+	return short
 }
 
 // open finds the bottle in the results and the cell to follow.

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"path/filepath"
+	"regexp"
 	"strings"
 	"testing"
 )
@@ -76,6 +77,11 @@ func TestExplainChain(t *testing.T) {
 	}
 	if !strings.Contains(r.out, "above-standards") || !strings.Contains(r.out, "PW2A PW2B") {
 		t.Errorf("flags or blanks are missing:\n%s", r.out)
+	}
+	// On the screen nobody reads 17 digits.
+	screen := call("explain", filepath.Join(dir, "out"), "W201", "--cell", "250,458").want(t, exitDone).out
+	if long := regexp.MustCompile(`\d*\.\d{11,}`).FindString(screen); long != "" {
+		t.Errorf("on the screen stands %s:\n%s", long, screen)
 	}
 	// A raw file that changed since is named.
 	p := read(t, dir, "scans/W201/W201_ex300.txt")

@@ -121,6 +121,16 @@ func TestReportedFormat(t *testing.T) {
 	}
 }
 
+// A number of the workings has five digits at most, no zeros behind them and no bare
+// point ("0.####" shows 100.00001 as "100.").
+func TestShortFormat(t *testing.T) {
+	for v, want := range map[float64]string{100.00000000000001: "0", 99.936: "0.000", 0.5: "0.0", 25.022799163387564: "0.000", 1e-9: "0.####E+00", 12: "0", 0: "0"} {
+		if got := shortFormat(v); got != want {
+			t.Errorf("%g: %s, want %s", v, got, want)
+		}
+	}
+}
+
 func TestWorkbookIsFitted(t *testing.T) {
 	dir := rendered(t, 12, func(s *RenderSettings) { s.Pictures = false; s.Title = "A & B" }, "parafac")
 	f, err := excelize.OpenFile(filepath.Join(dir, "report.xlsx"))
