@@ -20,6 +20,7 @@ import (
 	"path/filepath"
 	"strings"
 	"sync"
+	"time"
 )
 
 // The kinds of Error, for errors.Is.
@@ -106,7 +107,7 @@ func Begin(dir string) (*Staging, error) {
 	if err != nil {
 		return nil, err
 	}
-	if err := p.check(); err != nil {
+	if err := p.checkUnlocked(); err != nil {
 		return nil, err
 	}
 	s := &Staging{places: p, step: func(string) error { return nil }}
@@ -128,6 +129,21 @@ func (s *Staging) open() error {
 		return err
 	}
 	return os.Mkdir(s.fresh, 0o777)
+}
+
+// checkUnlocked is check before the lock is ours. What another run is just doing may
+// look like folders of somebody else: where one is at work, or was while we looked,
+// the check under the lock decides.
+func (p places) checkUnlocked() error {
+	var err error
+	for range 3 { // runs as short as a look
+		before := isLocked(p.lock)
+		if err = p.check(); err == nil || before || isLocked(p.lock) {
+			return nil
+		}
+		time.Sleep(time.Millisecond)
+	}
+	return err
 }
 
 // check reports what stands in the way of replacing dir; it changes nothing.

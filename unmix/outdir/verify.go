@@ -58,13 +58,17 @@ func VerifyWith(dir, survey string) (Report, error) {
 	if err != nil {
 		return Report{}, err
 	}
-	for range 5 {
+	for try := range 5 {
 		var r Report
+		before, _ := os.Stat(p.dir)
 		r, err = p.verify(survey)
-		if err == nil && r.Whole() || !r.Running {
+		after, _ := os.Stat(p.dir)
+		same := before == nil && after == nil || before != nil && after != nil && os.SameFile(before, after)
+		beginning := r.Interrupted != "" && try == 0 // or ending: what looks left by a killed run is looked at twice
+		if (err == nil && r.Whole() || !r.Running && same) && !beginning {
 			return r, err
 		}
-		time.Sleep(20 * time.Millisecond) // the running one may have been swapping
+		time.Sleep(20 * time.Millisecond) // a run may have been swapping, or has removed what was read
 	}
 	return p.verify(survey)
 }
