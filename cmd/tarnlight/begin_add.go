@@ -164,6 +164,7 @@ func (b *beginning) withoutConc(bottles []*drafted) []*drafted {
 		case survey.Standard, survey.Control, survey.Spike:
 			if d.aside == "" {
 				d.aside = fmt.Sprintf("%s is a %s, and no name tells how much it holds", d.id, d.kind)
+				d.unknownConc = true
 			}
 		}
 	}

@@ -23,8 +23,22 @@ type misfit struct {
 	why string
 }
 
-// remedy ends the reason under exclude.
-const remedy = "; correct this row and empty this cell to use it"
+// What ends the reason under exclude.
+const (
+	remedy     = "; correct this row and empty this cell to use it"
+	concRemedy = "; write it into a column conc:NAME [unit] and empty this cell to use it"
+)
+
+// reason is what stands under exclude.
+func (d *drafted) reason() string {
+	switch {
+	case d.aside == "":
+		return ""
+	case d.unknownConc:
+		return d.aside + concRemedy
+	}
+	return d.aside + remedy
+}
 
 // asideOf makes bottles of misfits by their bare names, as begin does without a
 // pattern.

@@ -28,6 +28,7 @@ type drafted struct {
 	absorbance  string
 	replicateOf string
 	aside       string // why it is set aside; empty: it is not
+	unknownConc bool   // because its row needs concentrations
 	broken      string // what is wrong with the one file that it has by name alone
 }
 

@@ -17,9 +17,7 @@ func rowsOfDraft(bottles []*drafted) []survey.Row {
 		r := survey.NewRow()
 		r.ID, r.Kind, r.Scans, r.Absorbance, r.ReplicateOf = d.id, d.kind, d.scans, d.absorbance, d.replicateOf
 		r.Measured.Text = d.day
-		if d.aside != "" {
-			r.Exclude = d.aside + remedy
-		}
+		r.Exclude = d.reason()
 		if d.dilution > 0 {
 			r.Dilution, r.AbsorbanceDilution = d.dilution, d.dilution
 		}

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"io"
 	"slices"
+	"strings"
 
 	"github.com/spf13/cobra"
 
@@ -99,6 +100,9 @@ func printFindings(w io.Writer, flags []eem.Flag) error {
 			who := ""
 			if len(ids) > 0 {
 				who = fmt.Sprintf("%s (%s): ", eem.Count(len(ids), "bottle"), some(ids))
+				if len(ids) > 1 && list[0].ID != "" && slices.ContainsFunc(list, func(f eem.Flag) bool { return f.Msg != list[0].Msg }) {
+					who = strings.TrimSuffix(who, ": ") + ", such as " + list[0].ID + ": "
+				}
 			}
 			if _, err := fmt.Fprintf(w, "%s: %s%s (%s)\n", sev, who, list[0].Msg, test); err != nil {
 				return err

@@ -15,7 +15,8 @@ func TestCutOff(t *testing.T) {
 	for _, c := range []struct {
 		format, delim, dec string
 		cols               int
-	}{{"%.3f", "\t", ".", 1}, {"%.2f", ";", ",", 4}, {"%.4E", ",", ".", 1}, {"%.1f", ",", ".", 3}} {
+		wide               bool // UTF-16
+	}{{"%.3f", "\t", ".", 1, false}, {"%.2f", ";", ",", 4, false}, {"%.4E", ",", ".", 1, false}, {"%.1f", ",", ".", 3, false}, {"%.3f", "\t", ".", 2, true}} {
 		var s strings.Builder
 		for j := range c.cols + 1 {
 			s.WriteString([]string{"em", "240", "250", "260", "270"}[j])
@@ -33,13 +34,16 @@ func TestCutOff(t *testing.T) {
 			s.WriteString("\n")
 		}
 		text := s.String()
+		if c.wide {
+			text = "\xff\xfe" + strings.Join(strings.Split(text, ""), "\x00") + "\x00"
+		}
 		whole, err := ReadBytes("W_ex240.txt", []byte(text), nil)
 		if err != nil {
 			t.Fatal(err)
 		}
 		from := len(text) - 3*len(text)/lines/2
 		refused := 0
-		for end := from; end < len(text); end++ {
+		for end := from; end < len(text); end++ { // the last line and a half
 			f, err := ReadBytes("W_ex240.txt", []byte(text[:end]), nil)
 			if err != nil {
 				refused++
