@@ -140,6 +140,11 @@ func (b *beginning) draft(ctx context.Context) error {
 			b.root, map[bool]string{true: " whose name follows " + b.name}[b.name != ""], len(files))
 	}
 	bottles = b.tellAside(bottles, &survey.Sheet{})
+	return b.finishDraft(bottles, files)
+}
+
+// finishDraft writes the draft and says what to do next.
+func (b *beginning) finishDraft(bottles []*drafted, files []found) error {
 	proposed := ""
 	if b.name == "" {
 		proposed = b.propose(files)

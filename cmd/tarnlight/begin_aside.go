@@ -74,7 +74,7 @@ func plainID(name string) string {
 	}, strings.TrimLeft(name, formulaMarks))
 }
 
-// countedID is what unusedID and free put behind an id that is taken.
+// countedID is what unused and free put behind an id that is taken.
 var countedID = regexp.MustCompile(`^\(\d+\)$`)
 
 // knownSample says whether one of the rows of a file stands for a sample of it: it
@@ -89,19 +89,6 @@ func knownSample(s string, f *found) bool {
 		return ok && row.Exclude != "" && (countedID.MatchString(behind) || behind == row.Measured.Day() ||
 			behind == path.Base(dir) || behind == strings.ReplaceAll(dir, "/", "-"))
 	})
-}
-
-// unusedID gives an id that no row has.
-func unusedID(id string, taken map[string]*survey.Row) string {
-	for n := 1; ; n++ {
-		try := id
-		if n > 1 {
-			try = fmt.Sprintf("%s (%d)", id, n)
-		}
-		if taken[survey.FoldID(try)] == nil {
-			return try
-		}
-	}
 }
 
 // tellAside says what was set aside. Where the sheet has no column for the reason

@@ -10,7 +10,6 @@ import (
 
 	"golang.org/x/text/unicode/norm"
 
-	"tarnlight/eem/prepare"
 	"tarnlight/eem/scanfile"
 	"tarnlight/eem/survey"
 )
@@ -53,23 +52,12 @@ func (b *beginning) group(files []found) []*drafted {
 			out = append(out, b.samplesOf(f, w)...)
 			continue
 		}
-		n, stem, why := b.nameOf(f, w)
+		d, why := b.bottleOf(f, w, at)
 		if why != "" {
 			misfits = append(misfits, misfit{f, why})
 			continue
 		}
-		key := path.Dir(f.path) + "\x00" + n.key()
-		if w.pattern == nil && !f.single() {
-			key = f.path
-		}
-		d := at[key]
-		if d == nil || !f.single() {
-			if d != nil {
-				misfits = append(misfits, misfit{f, fmt.Sprintf("%s is the same bottle by its name, but each holds a whole EEM", d.files[0])})
-				continue
-			}
-			d = &drafted{named: n, dir: path.Dir(f.path), stem: stem, first: n.id}
-			at[key] = d
+		if d.files == nil {
 			out = append(out, d)
 		}
 		d.take(f)
@@ -80,6 +68,27 @@ func (b *beginning) group(files []found) []*drafted {
 		return cmp.Or(cmp.Compare(x.last(), y.last()), strings.Compare(x.day, y.day), strings.Compare(x.id, y.id), cmp.Compare(x.order(), y.order()), strings.Compare(x.files[0], y.files[0]))
 	})
 	return out
+}
+
+// bottleOf gives the bottle of a file by its name, a new one without files where it
+// is the first of it; why says why it has none.
+func (b *beginning) bottleOf(f *found, w *naming, at map[string]*drafted) (d *drafted, why string) {
+	n, stem, why := b.nameOf(f, w)
+	if why != "" {
+		return nil, why
+	}
+	key := path.Dir(f.path) + "\x00" + n.key()
+	if w.pattern == nil && !f.single() {
+		key = f.path
+	}
+	switch d = at[key]; {
+	case d == nil:
+		d = &drafted{named: n, dir: path.Dir(f.path), stem: stem, first: n.id}
+		at[key] = d
+	case !f.single():
+		return nil, fmt.Sprintf("%s is the same bottle by its name, but each holds a whole EEM", d.files[0])
+	}
+	return d, ""
 }
 
 // last puts what can be a bottle by name alone behind the others, and what is set
@@ -198,185 +207,4 @@ func (b *beginning) samplesOf(f *found, w *naming) []*drafted {
 		out = append(out, d)
 	}
 	return out
-}
-
-// withCells gives the bottles their cells.
-func (b *beginning) withCells(list []*drafted) []*drafted {
-	out := list[:0]
-	for _, d := range list {
-		var ok bool
-		if d.scans, ok = b.cell(d); !ok {
-			b.leaveOpen(d.files[0], "no scans cell can name it and its %d fellows and nothing else; rename them, or give them a folder of their own", len(d.files)-1)
-			continue
-		}
-		out = append(out, d)
-	}
-	return out
-}
-
-// cell writes the files of a bottle as a scans cell: the file, the folder that holds
-// nothing else, or a pattern.
-func (b *beginning) cell(d *drafted) (string, bool) {
-	if len(d.files) == 1 {
-		if survey.PlainCell(d.files[0]) {
-			return d.files[0], true
-		}
-		return b.exact(survey.PatternOf(d.files[0]), d.files)
-	}
-	if d.dir != "." {
-		for _, cell := range []string{d.dir, survey.PatternOf(d.dir)} {
-			if got, ok := b.exact(cell, d.files); ok {
-				return got, true
-			}
-		}
-	}
-	first, last := d.files[0], d.files[len(d.files)-1] // in order: what these share all do
-	i := 0
-	for i < min(len(first), len(last)) && first[i] == last[i] {
-		i++
-	}
-	head := strings.TrimRight(strings.ToValidUTF8(first[:i], ""), "0123456789.,")
-	return b.exact(survey.PatternOf(head)+"*"+survey.PatternOf(endingOf(first)), d.files)
-}
-
-// exact says whether a cell names these files and no other.
-func (b *beginning) exact(cell string, files []string) (string, bool) {
-	if !survey.PlainCell(cell) {
-		return "", false
-	}
-	got, err := prepare.Expand(b.root, cell)
-	if err != nil || len(got) != len(files) {
-		return "", false
-	}
-	for i := range got {
-		if b.rel(got[i]) != files[i] {
-			return "", false
-		}
-	}
-	return cell, true
-}
-
-// distinct gives every bottle an id that neither the sheet nor another bottle has:
-// the name, with its number or word for a repetition; where that is taken by a
-// bottle of another day or folder, with day or folder behind it. A bottle that has
-// its row already is told and left out.
-func (b *beginning) distinct(list []*drafted, sheet *survey.Sheet, claims prepare.Claimed) []*drafted {
-	taken := map[string]*survey.Row{}
-	for i := range sheet.Rows {
-		taken[survey.FoldID(sheet.Rows[i].ID)] = &sheet.Rows[i]
-	}
-	places := map[*survey.Row]map[string]bool{} // folders of a row's files
-	for file, rows := range claims {
-		for _, row := range rows {
-			if places[row] == nil {
-				places[row] = map[string]bool{}
-			}
-			places[row][path.Dir(b.rel(file))] = true
-		}
-	}
-	byDay := map[string]string{} // name and day → id
-	var out []*drafted
-	for _, d := range list {
-		base := d.id
-		switch {
-		case d.n > 1:
-			d.id = fmt.Sprintf("%s-%d", base, d.n)
-		case d.repeats:
-			d.id = base + "-dup"
-		}
-		id, late := b.free(d, taken, places)
-		switch {
-		case d.aside != "":
-		case d.broken != "" && taken[survey.FoldID(d.id)] != nil:
-			b.leaveOpen(d.name(), "%s; there is a bottle of its name (%s) already; export it again, remove it, or name it as ignore under [sheet] in survey.toml", d.broken, d.id)
-			continue
-		case late != nil:
-			d.aside = fmt.Sprintf("by its name it belongs to %s, whose row (line %d) does not name it", late.ID, late.Line)
-		case d.calls != "" && d.calls != id:
-			d.aside = d.namesake()
-		}
-		if d.aside != "" {
-			d.id = unusedID(d.id, taken)
-			taken[survey.FoldID(d.id)] = &survey.Row{ID: d.id}
-			out = append(out, d)
-			continue
-		}
-		if d.broken != "" {
-			b.leaveOpen(d.name(), "%s; its row is there, and it is read once it is whole", d.broken)
-		}
-		_, again := byDay[base+"\x00"+d.day]
-		switch d.id = id; {
-		case d.kind != survey.Sample:
-		case d.n > 1 || d.repeats || again && d.dilution > 0: // also the same water at another dilution
-			if first, ok := byDay[base+"\x00"+d.day]; ok {
-				d.replicateOf = first
-			} else if row := taken[survey.FoldID(base)]; row != nil && (d.day == "" || row.Measured.Day() == "" || row.Measured.Day() == d.day) {
-				d.replicateOf = row.ID
-			}
-		default:
-			byDay[base+"\x00"+d.day] = id
-		}
-		taken[survey.FoldID(id)] = &survey.Row{ID: id}
-		out = append(out, d)
-	}
-	return out
-}
-
-// free finds an id that is not taken, or the row of the same bottle.
-func (b *beginning) free(d *drafted, taken map[string]*survey.Row, places map[*survey.Row]map[string]bool) (id string, late *survey.Row) {
-	tries := []string{d.id}
-	if d.day != "" {
-		tries = append(tries, d.id+" "+d.day)
-	}
-	if d.dir != "." {
-		tries = append(tries, d.id+" "+path.Base(d.dir), d.id+" "+strings.ReplaceAll(d.dir, "/", "-"))
-	}
-	for _, id := range tries {
-		row := taken[survey.FoldID(id)]
-		if row == nil {
-			return id, nil
-		}
-		if places[row][d.dir] && (d.day == "" || row.Measured.Day() == "" || row.Measured.Day() == d.day) {
-			return "", row
-		}
-	}
-	for n := 2; ; n++ {
-		if id := fmt.Sprintf("%s (%d)", d.id, n); taken[survey.FoldID(id)] == nil {
-			return id, nil
-		}
-	}
-}
-
-// byPath gives bottles of one name in different folders the folder's too, and names
-// repetitions.
-func byPath(list []*drafted) []*drafted {
-	count := map[string]int{}
-	for _, d := range list {
-		if d.repeats {
-			d.id += "-dup"
-		}
-		count[survey.FoldID(d.id)]++
-	}
-	for _, d := range list {
-		if count[survey.FoldID(d.id)] > 1 || d.id == "" {
-			d.id = strings.NewReplacer("/", "-", "*", "").Replace(strings.TrimSuffix(d.scans, endingOf(d.scans)))
-		}
-		d.id = strings.TrimLeft(d.id, formulaMarks)
-	}
-	taken := map[string]int{}
-	for _, d := range list {
-		l := survey.FoldID(d.id)
-		if taken[l]++; taken[l] > 1 || l == "" {
-			d.id = fmt.Sprintf("%s (%d)", d.id, taken[l])
-		}
-	}
-	for _, d := range list {
-		for _, x := range list {
-			if d.repeats && d.kind == survey.Sample && !x.repeats && x.first == d.first && x.dir == d.dir {
-				d.replicateOf = x.id
-			}
-		}
-	}
-	slices.SortFunc(list, func(a, b *drafted) int { return strings.Compare(a.id, b.id) })
-	return list
 }

@@ -75,15 +75,8 @@ func (b *beginning) list(claims prepare.Claimed) ([]string, error) {
 	ignored, known := b.set.Sheet.Ignored(), b.knownFiles()
 	top := b.root + string(filepath.Separator) + "." // the folder, where the root is a link to it
 	err := filepath.WalkDir(top, func(p string, d fs.DirEntry, err error) error {
-		switch {
-		case err == nil:
-		case p == top:
-			return err
-		case errors.Is(err, fs.ErrNotExist):
-			return nil // vanished
-		default:
-			b.leaveOpen(b.rel(p), "it cannot be looked into (%v); let it be read, or name it as ignore under [sheet] in survey.toml", pathless(err))
-			return fs.SkipDir
+		if err != nil {
+			return b.unlisted(p, p == top, err)
 		}
 		name := d.Name()
 		switch {
@@ -108,10 +101,22 @@ func (b *beginning) list(claims prepare.Claimed) ([]string, error) {
 		return nil
 	})
 	if len(links) > 0 {
-		b.leave(some(links), "links are not followed; name the folder that they lead to as root under [sheet] in survey.toml, or copy the files")
+		b.leave(some(links), "links are not followed; name the folder they lead to as root under [sheet] in survey.toml, or copy the files")
 	}
 	slices.Sort(paths)
 	return paths, err
+}
+
+// unlisted goes on past a folder that cannot be listed, unless it is the root.
+func (b *beginning) unlisted(p string, root bool, err error) error {
+	switch {
+	case root:
+		return err
+	case errors.Is(err, fs.ErrNotExist):
+		return nil // vanished
+	}
+	b.leaveOpen(b.rel(p), "it cannot be looked into (%v); let it be read, or name it as ignore under [sheet] in survey.toml", pathless(err))
+	return fs.SkipDir
 }
 
 // pathless drops the path from a file error.

@@ -28,23 +28,8 @@ func ShortScans(e *eem.EEM, limit float64) *eem.EEM {
 	var short []float64
 	worst, at := 0.0, 0
 	for j := range n {
-		a, b := j-1, j+1 // the neighbours
-		switch j {
-		case 0:
-			a, b = 1, 2
-		case n - 1:
-			a, b = n-3, n-2
-		}
-		end, start := min(hi[a], hi[b])-hi[j], lo[j]-max(lo[a], lo[b])
-		switch j {
-		case 0:
-			if hi[a] < hi[b] || end <= 2*(e.Ex.At(1)-e.Ex.At(0)) { // ends may rise, to where the instrument's range ends
-				end = 0
-			}
-		case n - 1:
-			start = 0
-		}
-		if lack := max(end, start); lack > max(limit, (min(hi[a], hi[b])-max(lo[a], lo[b]))/10) { // NaN compares false
+		lack, beside := shortBy(e, j, lo, hi)
+		if lack > max(limit, beside/10) { // NaN compares false
 			short = append(short, e.Ex.At(j))
 			if lack > worst {
 				worst, at = lack, j
@@ -56,6 +41,27 @@ func ShortScans(e *eem.EEM, limit float64) *eem.EEM {
 			"the scans at ex %s nm are shorter than those beside them (ex %s nm: em %s to %s nm); half a file? Export or scan them again", nms(short), eem.NM(e.Ex.At(at)), eem.NM(lo[at]), eem.NM(hi[at]))))
 	}
 	return out
+}
+
+// shortBy is what scan j lacks of what both its neighbours cover, and the width of
+// that, nm; lo and hi are the reaches of all scans.
+func shortBy(e *eem.EEM, j int, lo, hi []float64) (lack, beside float64) {
+	n := len(lo)
+	a, b := j-1, j+1
+	switch j {
+	case 0:
+		a, b = 1, 2
+	case n - 1:
+		a, b = n-3, n-2
+	}
+	end, start := min(hi[a], hi[b])-hi[j], lo[j]-max(lo[a], lo[b])
+	switch {
+	case j == n-1:
+		start = 0
+	case j == 0 && (hi[a] < hi[b] || end <= 2*(e.Ex.At(1)-e.Ex.At(0))): // ends may rise, to where the instrument's range ends
+		end = 0
+	}
+	return max(end, start), min(hi[a], hi[b]) - max(lo[a], lo[b])
 }
 
 // reach is where the measured cells of scan j begin and end, NaN without any.
