@@ -14,7 +14,7 @@ import (
 // (of 20 pixels) one takes.
 const (
 	chartFirst   = 4
-	qualityRows  = 17
+	qualityRows  = 16
 	qualityWide  = 690 // pixels; two stand side by side
 	spectraRows  = 21
 	qualityHigh  = 300 // pixels
@@ -24,6 +24,9 @@ const (
 
 var qualityHeads = []string{"variable", "batch", "id", "measured", "value", "unit", "centre", "warn_low", "warn_high", "act_low", "act_high", "verdict", "rule"}
 
+// qualityWords are the heads that people read; the keys of the charts take them.
+var qualityWords = []string{"Variable", "Batch", "Bottle", "Measured", "found", "Unit", "expected", "warning limit, low", "warning limit, high", "action limit, low", "action limit, high", "Verdict", "Rule"}
+
 // qualitySheet has the quality charts as native charts with their numbers.
 func (r *results) qualitySheet(b *book) {
 	t := r.table["charts.csv"]
@@ -32,7 +35,7 @@ func (r *results) qualitySheet(b *book) {
 		return
 	}
 	head := chartFirst + qualityRows*((len(names)+1)/2)
-	s := b.add("Quality", layout{broken: true, widths: []float64{34, 12, 12, 15, 11, 10, 11, 11, 11, 11, 11, 9, 26}}, func(f *excelize.File, sheet string) error {
+	s := b.add("Quality", layout{broken: true, repeat: fmt.Sprintf("$%d:$%d", head, head), widths: []float64{34, 12, 12, 15, 11, 10, 11, 11, 11, 11, 11, 9, 26}}, func(f *excelize.File, sheet string) error {
 		at := head + 1
 		for k, name := range names {
 			n := len(rows[name])
@@ -43,7 +46,7 @@ func (r *results) qualitySheet(b *book) {
 			if err := f.AddChart(sheet, fmt.Sprintf("%c%d", "AG"[k%2], row), c); err != nil {
 				return err
 			}
-			if k > 0 && k%4 == 0 {
+			if k > 0 && k%6 == 0 { // six on a page
 				if err := f.InsertPageBreak(sheet, fmt.Sprintf("A%d", row)); err != nil {
 					return err
 				}
@@ -55,7 +58,7 @@ func (r *results) qualitySheet(b *book) {
 	s.add(20, cell{"Quality charts", look{bold: true, size: 13, color: inkBlue}})
 	s.add(0, cell{"Dots: found. Lines: expected value, warning limits, action limits. The numbers stand below.", look{color: midGrey}})
 	s.skip(head - s.row)
-	s.add(20, uniqueHeads(qualityHeads)...)
+	s.add(20, uniqueHeads(qualityWords)...)
 	for _, name := range names {
 		for _, i := range rows[name] {
 			var row []cell
@@ -138,7 +141,7 @@ func baseChart(kind excelize.ChartType, title, x, y string) *excelize.Chart {
 		return excelize.ChartAxis{Title: words(name, 9, false), Font: excelize.Font{Family: fontName, Size: 9, Color: "303030"}}
 	}
 	return &excelize.Chart{Type: kind, Title: words(title, 11, true), XAxis: axis(x), YAxis: axis(y), ShowBlanksAs: "gap",
-		Legend: excelize.ChartLegend{Position: "bottom"}, Format: excelize.GraphicOptions{AltText: title, Positioning: "oneCell"}}
+		Legend: excelize.ChartLegend{Position: "bottom", Font: &excelize.Font{Family: fontName, Size: 9, Color: "303030"}}, Format: excelize.GraphicOptions{AltText: title, Positioning: "oneCell"}}
 }
 
 // componentsSheet has the spectra of a method's components as native charts.
@@ -152,7 +155,7 @@ func (r *results) componentsSheet(b *book, method string) {
 		name = cut("Components "+methodName(method), 31)
 	}
 	head, n := chartFirst+spectraRows, len(cs)
-	s := b.add(name, layout{widths: append([]float64{14}, slices.Repeat([]float64{13}, 2*n+2)...)}, func(f *excelize.File, sheet string) error {
+	s := b.add(name, layout{broken: true, repeat: fmt.Sprintf("$%d:$%d", head, head), widths: append([]float64{14}, slices.Repeat([]float64{13}, 2*n+2)...)}, func(f *excelize.File, sheet string) error {
 		ex := spectraChart(sheet, "Excitation spectra", cs, 1, head+1, head+len(cs[0].ex.nm))
 		em := spectraChart(sheet, "Emission spectra", cs, n+3, head+1, head+len(cs[0].em.nm))
 		right, err := excelize.CoordinatesToCellName(max(n+3, chartColumns), chartFirst)
@@ -216,7 +219,9 @@ func spectraChart(sheet, title string, cs []*component, col, from, to int) *exce
 			Marker: excelize.ChartMarker{Symbol: "none"}, Fill: solidFill(fmt.Sprintf("%02X%02X%02X", color.R, color.G, color.B)),
 			Line: excelize.LineOptions{Type: excelize.LineSolid, Width: 1.75, Dash: []excelize.LineDashType{excelize.LineDashSolid, excelize.LineDashDash, excelize.LineDashSysDot}[k%3]}})
 	}
-	lo, hi = math.Floor(lo/10)*10, math.Ceil(hi/10)*10
+	step := niceStep(hi-lo, 12) // marks at round wavelengths
+	lo, hi = math.Floor(lo/step)*step, math.Ceil(hi/step)*step
 	c.XAxis.Minimum, c.XAxis.Maximum, c.YAxis.Minimum, c.YAxis.Maximum = &lo, &hi, &zero, &one
+	c.XAxis.MajorUnit, c.YAxis.MajorUnit = step, 0.2
 	return c
 }

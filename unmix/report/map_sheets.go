@@ -18,6 +18,9 @@ import (
 // of them make a file too slow to open.
 const worstMaps = 25
 
+// mapRow is the height of a row of coloured cells, points.
+const mapRow = 6.0
+
 // worst lists the bottles with a map by how far their residual rms stands above
 // the noise (or by the rms alone where noise is unknown), worst first.
 func (r *results) worst() []*bottle {
@@ -80,10 +83,12 @@ func (r *results) residualSheet(b *book) error {
 	if err != nil {
 		return err
 	}
-	perPage := max(1, 130/(g.Ex.Len()+6)) // maps, each with two rows of text, on a page of 130 low rows
-	every := 1 + (g.Em.Len()-1)/200       // at most 200 columns
+	every := 1 + (g.Em.Len()-1)/200 // at most 200 columns
 	cols := (g.Em.Len() + every - 1) / every
-	s := b.add("Residual maps", layout{widths: append([]float64{10}, slices.Repeat([]float64{0.9}, cols)...), zoom: 70, broken: true}, func(f *excelize.File, sheet string) error {
+	l := layout{widths: append([]float64{10}, slices.Repeat([]float64{0.9}, cols)...), zoom: 70, broken: true}
+	each := 2*rowHeight + 10 + mapRow*float64(g.Ex.Len()) // a map with its two rows of text and an empty one
+	perPage := max(1, int((l.printRows()-2*rowHeight-20)/each))
+	s := b.add("Residual maps", l, func(f *excelize.File, sheet string) error {
 		for i, m := range maps {
 			if err := m.colour(f, sheet, cols, g.Ex.Len()); err != nil {
 				return err
@@ -132,7 +137,7 @@ func (m *cellMap) write(s *sheet, g eem.Grid, every int) {
 				row = append(row, cell{nil, gap})
 			}
 		}
-		s.add(6, row...)
+		s.add(mapRow, row...)
 	}
 }
 
@@ -168,9 +173,15 @@ func (r *results) hotSheet(b *book, worst []*bottle) {
 	s.done()
 }
 
+// Pixels of a small picture: two maps with 6 between them.
+const (
+	thumbWide = 2*110 + 6
+	thumbHigh = 90
+)
+
 // thumb is a small picture of a bottle: measured beside residual.
 func thumb(g eem.Grid, p panels) []byte {
-	const w, h = 110, 90
+	const w, h = (thumbWide - 6) / 2, thumbHigh
 	if oneScan(g) {
 		return scanThumb(p, w, h)
 	}
@@ -190,7 +201,7 @@ func thumb(g eem.Grid, p panels) []byte {
 // strip joins the small pictures of a row of the sheet, each as wide as its column: a
 // picture a bottle takes the library, and the program that opens the sheet, too long.
 func strip(thumbs [][]byte, wide int) []byte {
-	c := newCanvas(wide*len(thumbs), 90)
+	c := newCanvas(wide*(len(thumbs)-1)+thumbWide, thumbHigh) // no wider: print would put its end on another page
 	for n, t := range thumbs {
 		img, err := png.Decode(bytes.NewReader(t))
 		p, ok := img.(*image.Paletted)

@@ -16,10 +16,10 @@ const (
 // repeated on each, and a column to keep stays with the one before it.
 func (l layout) starts() []int {
 	most := paperPixels * 100 / smallestPrint
-	out := l.cuts(most)
-	if l.portrait {
+	if l.portrait || l.broken {
 		return nil
 	}
+	out := l.cuts(most)
 	for w := most; len(out) > 0 && w > most/3; w -= 20 { // pages of like width
 		if even := l.cuts(w); len(even) == len(out) {
 			out = even
@@ -50,6 +50,16 @@ func (l layout) cuts(most int) []int {
 		c = end
 	}
 	return out
+}
+
+// printRows is how many points of rows fit on one page of a sheet that is as wide as
+// paper: the lower of A4 and Letter, between its margins.
+func (l layout) printRows() float64 {
+	high := 508.0 // A4 landscape
+	if l.portrait {
+		high = 705 // Letter
+	}
+	return high * 100 / float64(l.scale(nil))
 }
 
 // scale is the size of print, %, that fits the widest page on paper.

@@ -46,7 +46,13 @@ func (r *results) tableSheet(b *book, name, file, title string) {
 	s := b.add(name, layout{widths: columnWidths(t), freeze: "B4", repeat: "$3:$3"})
 	s.heading(20, title, look{bold: true, size: 13, color: inkBlue})
 	s.heading(0, "The content of "+file+"; "+f.What+".", look{color: midGrey})
-	s.add(0, uniqueHeads(t.Columns)...)
+	heads := uniqueHeads(t.Columns)
+	for c := range heads {
+		if t.numeric(c) {
+			heads[c].l = headRight
+		}
+	}
+	s.add(0, heads...)
 	for i := range t.Rows[:min(len(t.Rows), maxRows)] {
 		row := make([]cell, len(t.Columns))
 		for c := range row {
@@ -56,6 +62,20 @@ func (r *results) tableSheet(b *book, name, file, title string) {
 	}
 	s.table(strings.ReplaceAll(name, " ", "_"), 3, len(t.Columns))
 	s.done()
+}
+
+// numeric says whether a column holds numbers and nothing else.
+func (t *Table) numeric(c int) bool {
+	any := false
+	for i := range t.Rows {
+		if text := t.Text(i, c); text != "" {
+			if _, ok := number(text); !ok || strings.Contains(text, ",") {
+				return false
+			}
+			any = true
+		}
+	}
+	return any
 }
 
 // tableCell is a number where the text is exactly one, a truth value as a word,
@@ -122,7 +142,11 @@ func columnWidths(t *Table) []float64 {
 			}
 			longest = max(longest, n)
 		}
-		w[c] = min(max(0.85*float64(longest)+2, 8), 30)
+		most := 30.0
+		if longest > 100 { // sentences
+			most = 75
+		}
+		w[c] = min(max(0.85*float64(longest)+2, 8), most)
 	}
 	return w
 }
