@@ -124,6 +124,18 @@ func (b *beginning) append(p *present, bottles []*drafted) error {
 		return err
 	}
 	out, err := survey.Append(p.path, p.data, b.set, rowsOfDraft(bottles))
+	if rest := placed(bottles); err != nil && len(rest) < len(bottles) { // an odd name must not keep a night's bottles out
+		why := err
+		if len(rest) > 0 {
+			out, err = survey.Append(p.path, p.data, b.set, rowsOfDraft(rest))
+		}
+		if err == nil || len(rest) == 0 {
+			fmt.Fprintf(b.bar, "what was set aside could not be written, and is told again the next time: %v\n", why)
+		}
+		if len(rest) == 0 {
+			return nil
+		}
+	}
 	if err != nil {
 		return err
 	}

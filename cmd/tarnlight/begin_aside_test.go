@@ -256,3 +256,21 @@ func TestBeginAmongLinks(t *testing.T) {
 		t.Errorf("a folder that is locked: %s%s", r.out, r.err)
 	}
 }
+
+// A file whose odd name the sheet has no letters for keeps no other bottle out.
+func TestAsideWithoutLetters(t *testing.T) {
+	dir := nightFolder(t, "id,kind,scans,exclude,remark\nPW,blank,scans/20310506_PW.csv,,M\xfchle\n") // Windows-1252
+	put(t, dir, "scans/水.csv", gridText(2, 0))
+	old(t, dir)
+	r := call("begin", dir, "--add").want(t, exitDoubt)
+	if !strings.Contains(r.out, "W1") || !strings.Contains(r.err, "has no room for a character of the new rows; save it as UTF-8") || !strings.Contains(r.err, "1 row") {
+		t.Errorf("with a bottle: %s%s", r.out, r.err)
+	}
+	sheet := read(t, dir, "runsheet.csv")
+	if r := call("begin", dir, "--add").want(t, exitDoubt); !strings.Contains(r.err, "told again the next time") || read(t, dir, "runsheet.csv") != sheet {
+		t.Errorf("alone: %s", r.err)
+	}
+	if n := len(sheetRows(t, dir, "runsheet.csv")); n != 2 {
+		t.Errorf("%d rows", n)
+	}
+}
