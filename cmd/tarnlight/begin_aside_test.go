@@ -178,7 +178,7 @@ func TestBeginTellsWhatIsLeft(t *testing.T) {
 	dir := folder(t, map[string]string{"W1.csv": gridText(1, 1), "W1 abs.csv": absorbanceText(0.2), "W9 abs.csv": absorbanceText(0.2), "W8 abs.csv": absorbanceText(0.2),
 		"concentrations.csv": "id;tryptophan mg/L\nS1;1,5\n", "limits.csv": "component,detection_limit\na,0.1\n",
 		"emission.csv": "wavelength_nm,factor\n240,1\n600,1\n", "backup.zip": "PK\x03\x04\x00\x00", "notes.md": "# rain\n", "log.txt": "nothing\n",
-		"~$runsheet.xlsx": "\x00", ".DS_Store": "\x00", "cut.csv": gridText(1, 1)[:95]})
+		"~$runsheet.xlsx": "\x00", ".DS_Store": "\x00", "thumbs.db": "\xd0\xcf", "cut.csv": gridText(1, 1)[:95]})
 	r := call("begin", dir, "--csv").want(t, exitDone)
 	for _, w := range []string{
 		"not used: W8 abs.csv, W9 abs.csv: absorbance, and no new bottle has its name",
@@ -272,5 +272,21 @@ func TestAsideWithoutLetters(t *testing.T) {
 	}
 	if n := len(sheetRows(t, dir, "runsheet.csv")); n != 2 {
 		t.Errorf("%d rows", n)
+	}
+}
+
+// What a file manager leaves in the folder of a bottle is none of its scans.
+func TestLitterBesideScans(t *testing.T) {
+	dir := t.TempDir()
+	stack(t, dir, "W1/W1", 1, 1)
+	call("begin", dir, "--csv").want(t, exitDone)
+	if s := cell(t, table(t, dir, "runsheet.csv"), "scans", "id", "W1"); s != "W1" {
+		t.Fatalf("the cell is %q, not the folder", s)
+	}
+	put(t, dir, "W1/Thumbs.db", "\xd0\xcf\x11\xe0")
+	put(t, dir, "W1/desktop.ini", "[.ShellClassInfo]\r\n")
+	put(t, dir, "W1/.DS_Store", "\x00")
+	if r := call("check", dir).want(t, exitDone, exitDoubt); !strings.Contains(r.err, " 0 rejected") {
+		t.Errorf("%s%s", r.out, r.err)
 	}
 }

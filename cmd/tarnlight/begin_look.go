@@ -92,7 +92,7 @@ func (b *beginning) list(claims prepare.Claimed) ([]string, error) {
 		case d.Type()&fs.ModeSymlink != 0 && len(claims[p]) == 0:
 			links = append(links, b.rel(p))
 			return nil
-		case !d.Type().IsRegular() || strings.HasPrefix(name, ".") || strings.HasPrefix(name, "~$"):
+		case !d.Type().IsRegular() || prepare.Litter(name):
 			return nil
 		case len(claims[p]) == 1 || known[p] || own(b.rel(p)):
 			return nil

@@ -54,7 +54,7 @@ func exacter(pattern string) string {
 }
 
 // expand lists the files that a scans cell names: a file, a folder (the files in
-// it, hidden ones left out) or a glob of either.
+// it, litter left out) or a glob of either.
 func expand(root, cell string) ([]string, error) {
 	path := filepath.Join(root, filepath.FromSlash(cell))
 	matches := []string{path}
@@ -80,7 +80,7 @@ func expand(root, cell string) ([]string, error) {
 				return nil, fmt.Errorf("scans %q: %w", cell, plain(err))
 			}
 			for _, e := range list {
-				if e.Type().IsRegular() && !strings.HasPrefix(e.Name(), ".") && !strings.HasPrefix(e.Name(), "~$") {
+				if e.Type().IsRegular() && !Litter(e.Name()) {
 					out = append(out, filepath.Join(m, e.Name()))
 				}
 			}
@@ -93,6 +93,12 @@ func expand(root, cell string) ([]string, error) {
 	}
 	sort.Strings(out)
 	return out, nil
+}
+
+// Litter says whether a file is no raw file by its name alone: hidden, or left by an
+// office program or a file manager.
+func Litter(name string) bool {
+	return strings.HasPrefix(name, ".") || strings.HasPrefix(name, "~$") || strings.EqualFold(name, "Thumbs.db") || strings.EqualFold(name, "desktop.ini")
 }
 
 // plain drops the path from a file error; messages name it in their own way.

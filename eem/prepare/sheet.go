@@ -131,7 +131,7 @@ func (s *Survey) unusedFiles() {
 		if rel, err := filepath.Rel(s.root(), path); err != nil || ignored(filepath.ToSlash(rel)) {
 			return nil //nolint:nilerr // a path that Rel refuses lies nowhere below the root
 		}
-		if near && !used[path] && d.Type().IsRegular() && !strings.HasPrefix(name, ".") && !strings.HasPrefix(name, "~$") && !known[s.short(path)] {
+		if near && !used[path] && d.Type().IsRegular() && !Litter(name) && !known[s.short(path)] {
 			left = append(left, s.short(path))
 		}
 		return nil
