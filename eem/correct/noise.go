@@ -135,10 +135,10 @@ func fitGroups(level, variance []float64, dof float64, n int) (Noise, error) {
 	chi := distuv.ChiSquared{K: dof}.Quantile(0.5) / dof
 	a, b := median(slices.Clone(variance))/chi, 0.0
 	groups := group(level, 4*math.Sqrt(a/float64(n)))
-	m, v := make([]float64, len(groups)), make([]float64, len(groups))
+	m, v, size := make([]float64, len(groups)), make([]float64, len(groups)), make([]float64, len(groups))
 	for range 100 {
 		for i, g := range groups {
-			m[i] = g.level
+			m[i], size[i] = g.level, float64(len(g.cells))
 			ratio := make([]float64, len(g.cells))
 			for j, c := range g.cells {
 				at := g.level
@@ -149,7 +149,7 @@ func fitGroups(level, variance []float64, dof float64, n int) (Noise, error) {
 			}
 			v[i] = median(ratio) / chi * max(a+b*m[i], tiny)
 		}
-		na, nb := twoTerms(m, v, a, b)
+		na, nb := twoTerms(m, v, size, a, b)
 		done := math.Abs(na-a) <= 1e-6*na && math.Abs(nb-b) <= 1e-6*nb
 		if a, b = na, nb; done {
 			break
@@ -164,6 +164,10 @@ func fitGroups(level, variance []float64, dof float64, n int) (Noise, error) {
 // perGroup is the fewest cells of a group: the median of so many ratios is known
 // to 1.25·√(2/ν)/√40, 28 % for ν = 1.
 const perGroup = 40
+
+// fewestBright is the fewest cells of the one group where there are no more: their
+// median is known to 1.25·√(2/ν)/√10, 40 % for ν = 2.
+const fewestBright = 10
 
 // levelGroup is cells of like level.
 type levelGroup struct {
@@ -196,6 +200,9 @@ func group(level []float64, dark float64) []levelGroup {
 		nDim = nDark
 	}
 	out := split(order[:nDark], level, size, true)
+	if bright := len(order) - nDim; bright < size { // few tell little of shot noise, but that there is none would be wrong
+		size = max(fewestBright, bright)
+	}
 	out = append(out, split(order[nDim:], level, size, false)...)
 	if nDark > 0 { // one level for all, or they would tell of shot noise what they do not know
 		ls := make([]float64, nDark)
@@ -230,13 +237,13 @@ func split(cells []int, level []float64, size int, dark bool) []levelGroup {
 // tiny keeps weights finite, counts²; a digitiser's step alone has variance 1/12.
 const tiny = 1e-12
 
-// twoTerms fits v = a + b·m, a, b ≥ 0, with weights 1/(a₀ + b₀·m)², the inverse
+// twoTerms fits v = a + b·m, a, b ≥ 0, with weights size/(a₀ + b₀·m)², the inverse
 // variances of variances.
-func twoTerms(m, v []float64, a0, b0 float64) (a, b float64) {
+func twoTerms(m, v, size []float64, a0, b0 float64) (a, b float64) {
 	var s, sx, sxx, sy, sxy float64
 	for i, y := range v {
 		f := max(a0+b0*m[i], tiny)
-		w, x := 1/(f*f), m[i]
+		w, x := size[i]/(f*f), m[i]
 		s, sx, sxx, sy, sxy = s+w, sx+w*x, sxx+w*x*x, sy+w*y, sxy+w*x*y
 	}
 	det := s*sxx - sx*sx

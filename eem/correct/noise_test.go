@@ -39,6 +39,33 @@ func TestFitNoise(t *testing.T) {
 	}
 }
 
+// TestFitNoiseFewCells: a grid of 176 cells has fewer bright ones than make a full
+// group, and still tells of shot noise, without bias.
+func TestFitNoiseFewCells(t *testing.T) {
+	in := synth.NewInstrument()
+	ex, _ := eem.Steps(240, 450, 30)
+	em, _ := eem.Steps(280, 600, 15)
+	in.Grid = eem.Grid{Ex: ex, Em: em}
+	const tries = 40
+	read, shot := 0.0, 0.0
+	for seed := range uint64(tries) {
+		var blanks []*eem.EEM
+		for i := range uint64(3) {
+			blanks = append(blanks, correct.Saturate(scanOf(in, synth.Liquid{}, 10*seed+i), in.Saturation))
+		}
+		n, err := correct.FitNoise(blanks, in.Offset)
+		if err != nil {
+			t.Fatal(err)
+		}
+		read, shot = read+n.Read/in.Read/tries, shot+n.Shot/in.PerPhoton/tries
+	}
+	t.Logf("mean over truth: read %.3f, shot %.3f", read, shot)
+	// One fit's shot noise is known to 50 %: a standard error of 8 %.
+	if math.Abs(read-1) > 0.05 || math.Abs(shot-1) > 0.25 {
+		t.Errorf("mean over truth: read %.3f, shot %.3f", read, shot)
+	}
+}
+
 // nearLines holds the scatter lines of both orders with 20 nm to each side.
 func nearLines(ex, em float64) bool {
 	raman := 1e7 / (1e7/ex - 3400)
