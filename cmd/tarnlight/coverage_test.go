@@ -289,7 +289,8 @@ func heights(s *synth.Survey, set *unmix.Set) (name map[string]string, height ma
 // model would be another one.
 //
 // 60 surveys gave 96.3 % of 4,797 contributions, components 95.6 to 96.9 %; 2.9 % of
-// 1,203 absent ones detected, and 98.7 % of 149 at the detection limit.
+// 1,203 absent ones detected, and 98.7 % of 149 at the detection limit. In 90 others
+// 3.2 % of 1,782 absent ones were detected, components 1.1 to 5.5 %.
 func TestCoverageParafac(t *testing.T) {
 	heavy(t)
 	n, long := surveys(t, 3)
