@@ -45,8 +45,8 @@ func (j *Judged) flagUnknown(u *Unknown, r *unmix.Resolution, last *Unknown, i i
 	n := r.Set.Len()
 	f := slices.IndexFunc(last.Set.Components, func(c unmix.Component) bool { return c.Name == u.Component.Name })
 	fl := eem.NewFlag(eem.Flag{ID: b.ID, Batch: b.Batch, Component: u.Component.Name, Method: r.Set.Method, Test: "unknown", Severity: eem.Remark,
-		Value: u.Z[b.Row], Limit: u.Limit, Msg: fmt.Sprintf("something that the model does not know fluoresces at %s, %s %s high, in %s (by chance one in %.0f surveys shows such)",
-			u.Place(), digits(last.Resolution.Value[b.Row*(len(last.Set.Components))+f], 3), r.Set.Unit, eem.Count(len(u.Shown), "bottle"), 1/FalseUnknowns)})
+		Value: u.Z[b.Row], Limit: u.Limit, Msg: fmt.Sprintf("something that the model does not know fluoresces at %s, %s %s high",
+			u.Place(), digits(last.Resolution.Value[b.Row*(len(last.Set.Components))+f], 3), r.Set.Unit)})
 	var both []string
 	for g := range n {
 		at := b.Row*len(last.Set.Components) + g
@@ -66,5 +66,6 @@ func (j *Judged) flagUnknown(u *Unknown, r *unmix.Resolution, last *Unknown, i i
 		fl.Severity = eem.Doubt
 		fl.Msg += "; with it in the model the bottle holds " + strings.Join(both, ", ")
 	}
+	fl.Msg += fmt.Sprintf("%sit shows in %s, by chance in one of %.0f surveys", eem.InDetail, eem.Count(len(u.Shown), "bottle"), 1/FalseUnknowns)
 	j.Flags = append(j.Flags, accept(fl))
 }

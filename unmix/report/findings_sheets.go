@@ -70,7 +70,7 @@ func (r *results) flagRow(i int, severity eem.Severity) []cell {
 
 // methodsSheet tells every step with formula, parameters and source.
 func (r *results) methodsSheet(b *book) {
-	s := b.add("Methods", layout{widths: []float64{4, 16, 46, 40, 48, 32}, freeze: "A4", repeat: "$3:$3"})
+	s := b.add("Methods", layout{widths: []float64{4, 16, 44, 36, 60, 28}, freeze: "A4", repeat: "$3:$3"})
 	s.add(20, cell{"How the results were made", look{bold: true, size: 13, color: inkBlue}})
 	s.add(0, cell{"In the order of the work. Parameters are those in force for this survey.", look{color: midGrey}})
 	var row []cell

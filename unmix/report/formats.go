@@ -19,10 +19,14 @@ func decimalFormat(d int) string {
 	return "0." + strings.Repeat("0", d)
 }
 
-// sigFormat is the number format that shows v with d significant digits.
+// sigFormat is the number format that shows v with d significant digits; with an
+// exponent below 1e-4.
 func sigFormat(v float64, d int) string {
 	if v == 0 || !finite(v) {
 		return "0"
+	}
+	if e := exponent(v, d); e < -4 {
+		return decimalFormat(d-1) + "E+00"
 	}
 	return decimalFormat(d - 1 - exponent(v, d))
 }

@@ -71,7 +71,7 @@ func (r *results) resultsSheet(b *book) {
 	s.heading(20, plain(r.title())+" – results", look{bold: true, size: 13, color: inkBlue})
 	s.heading(0, "± is the expanded uncertainty (k = 2, about 95 %). < is followed by the detection limit. Q: U not detected, J unreliable or above the highest standard, R not usable. Screening: see Cautions on the sheet Summary.", look{color: midGrey})
 	s.skip(1)
-	s.add(52, heads...)
+	s.add(max(30, s.height(heads)), heads...)
 	for _, x := range r.bottles {
 		if x.reportable() {
 			s.add(0, r.resultRow(b, x, known)...)
