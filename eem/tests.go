@@ -51,7 +51,7 @@ var Tests = sortTests([]Test{
 	{"overlap", Doubt, 30, "", "condition number of the unit-norm components above the limit: they cannot be told apart well", "Belsley, Kuh & Welsch 1980 (from memory)"},
 	{"unexplained", Doubt, 0.9, "", "share of the bottle's signal explained by the model below the limit", "common practice, no source"},
 	{"unknown", Doubt, 5, "standard uncertainties", "the bottle shows a component that the model does not know; a doubt where that moves a contribution by two standard uncertainties", "one survey in 100 by chance, computed"},
-	{"structure", Remark, 4, "z", "Moran's I of the residual map: neighbouring residuals are alike, more than in differences of replicates where there are any", "Cliff & Ord 1981 (from memory)"},
+	{"structure", Remark, 4, "z", "Moran's I of the residual map: neighbouring residuals are alike, more than in differences of replicates where there are any; not asked of a bottle that alone determines its references, whose residual is rounding", "Cliff & Ord 1981 (from memory)"},
 	{"not-converged", Doubt, 0, "", "the fit stopped before its tolerance was met", "-"},
 	{"components-changed", Remark, 0, "", "a refit of the survey has other components than the results that it replaces", "Lorenzo-Seva & ten Berge 2006, Methodology 2, 57: congruence 0.95"},
 	{"peak-open", Doubt, 0, "", "the data leave a resolved component open at its own peak", "-"},

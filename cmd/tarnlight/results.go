@@ -111,7 +111,9 @@ func (j *job) fitColumns(set func(string, any), b *prepare.Bottle, at int) {
 	}
 	s := &j.judge[0].Spreads[i]
 	set("residual_chi_square", s.ChiSquare)
-	set("residual_runs", s.Runs)
+	if z := j.judge[0].Structure[at].Z; z == z { // else nothing is left that could be tested
+		set("residual_runs", s.Runs)
+	}
 	set("residual_yardstick", s.Yard.String())
 	set("structure_beyond_yardstick", s.Yard.Score(j.judge[0].Structure[at].Z))
 	set("clearest_ex_nm", s.Hot.Ex)

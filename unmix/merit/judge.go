@@ -53,7 +53,10 @@ func Judge(r *unmix.Resolution, spreads []Spread, bottles []Bottle, x func(row i
 		if b.Row >= 0 {
 			r.ResidualTo(dst, x(b.Row), b.Row)
 			j.Structure[i] = MoranI(dst, r.Set.Grid.Ex.Len(), r.Set.Grid.Em.Len())
-			if r.Fits[b.Row].Usable && !b.Unlike {
+			switch {
+			case nothingLeft(&r.Fits[b.Row], &spreads[b.Row]):
+				j.Structure[i] = untested(j.Structure[i].N)
+			case r.Fits[b.Row].Usable && !b.Unlike:
 				j.Tested++
 			}
 			for _, f := range fitFlags(r, &spreads[b.Row], b, j.Structure[i], limit) {
@@ -112,7 +115,10 @@ func fitFlags(r *unmix.Resolution, s *Spread, b Bottle, m Moran, limit func(stri
 func (s *Spread) residual() string {
 	text := s.Hot.String()
 	if s.ChiSquare == s.ChiSquare {
-		text += fmt.Sprintf("; its variance is %s times that of the noise model, runs along emission Z %s", digits(s.ChiSquare, 3), digits(s.Runs, 2))
+		text += fmt.Sprintf("; its variance is %s times that of the noise model", digits(s.ChiSquare, 3))
+		if s.Runs == s.Runs {
+			text += ", runs along emission Z " + digits(s.Runs, 2)
+		}
 	}
 	return text + "; " + heldAgainst(s.Yard)
 }

@@ -27,7 +27,7 @@ func NewYardstick(c *eem.Cube, r *unmix.Resolution, pairs [][2]int) *unmix.Yards
 				want += float64(ua[i])*float64(ua[i]) + float64(ub[i])*float64(ub[i])
 			}
 		}
-		if z := MoranI(a, c.Ex.Len(), c.Em.Len()).Z; z == z {
+		if z := MoranI(a, c.Ex.Len(), c.Em.Len()).Z; z == z && !(ss < roundingOfNoise*want) {
 			y.Pairs++
 			y.Structure += z
 			y.Variance += ss / want
