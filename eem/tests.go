@@ -35,6 +35,7 @@ var Tests = sortTests([]Test{
 	{"raman-range", Doubt, 0, "", "a blank of the batch does not cover the Raman line at the scale's excitation", "Lawaetz & Stedmon 2009, Appl. Spectrosc. 63, 936 (from memory)"},
 	{"no-batch", Remark, 0, "", "neither batch nor measured date is given, so that all bottles form one batch", "-"},
 	{"grid-part", Remark, 0, "cells", "the bottle lacks part of the survey's grid", "-"},
+	{"grid-lost", Doubt, 25, "%", "the bottle lacks more than this share of the survey's or model's grid, and fewer than three bottles were scanned like it: files got lost", "common practice, no source"},
 	{"grid-differs", Remark, 0, "", "the bottle's wavelengths differ from the survey's grid and were interpolated", "-"},
 	{"interleaved", Remark, 0, "", "the scans' emission points interleave and were interpolated onto one axis", "-"},
 	{"read-guess", Remark, 0, "", "how a raw file was taken: form, delimiter, decimal mark, encoding", "-"},

@@ -23,7 +23,7 @@ var concerns = map[string][]string{
 		"structure", "unexplained", "unknown", "unlike-residual", "unlike-scores"},
 	concernLimit: {"above-standards", "absorbance-limit", "alert", "control-action", "control-recovery", "dilution-differs", "duplicate", "field-blank",
 		"field-duplicate", "holding-time", "linearity", "spike-recovery", "standard-recovery"},
-	concernData: {"absorbance-range", "excitation-repeated", "factor-range", "no-absorbance", "no-temperature", "reference-clipped",
+	concernData: {"absorbance-range", "excitation-repeated", "factor-range", "grid-lost", "no-absorbance", "no-temperature", "reference-clipped",
 		"reference-intercept", "same-content", "scan-short", "sheet-column", "unreadable"},
 }
 

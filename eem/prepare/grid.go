@@ -114,11 +114,37 @@ func (s *Survey) compareGrid(b *Bottle) {
 	}
 	nj, nk := s.Grid.Ex.Len(), s.Grid.Em.Len()
 	if lack := nj*nk - (nj-lackEx)*(nk-lackEm); lack > 0 {
-		b.flag(s, eem.Note{Test: "grid-part", Severity: eem.Remark, Measure: true, Value: float64(lack), Limit: 0,
-			Msg: fmt.Sprintf("measured on %s; lacks %d of %d excitations and %d of %d emissions of the survey's grid (%s)", b.EEM.Grid, lackEx, nj, lackEm, nk, s.Grid)})
+		s.flagLack(b, lack, fmt.Sprintf("measured on %s; lacks %d of %d excitations and %d of %d emissions of the survey's grid (%s)", b.EEM.Grid, lackEx, nj, lackEm, nk, s.Grid))
 	}
 	if off > 0 {
 		b.flag(s, eem.Note{Test: "grid-differs", Severity: eem.Remark,
 			Msg: fmt.Sprintf("measured on %s; interpolated linearly onto the survey's grid (%s)", b.EEM.Grid, s.Grid)})
 	}
+}
+
+// laddered is how many bottles scanned on one grid show that it was meant.
+const laddered = 3
+
+// flagLack notes that a bottle lacks so many cells of the grid. Above the limit of
+// grid-lost it is a doubt: files got lost. It is none where other bottles were scanned
+// on the very same grid, as a plan of fewer scans is, nor for a blank, of which
+// the Raman scan may be all: blank-range says where it does not do.
+func (s *Survey) flagLack(b *Bottle, lack int, msg string) {
+	share, limit := 100*float64(lack)/float64(s.Grid.Cells()), s.Limit("grid-lost")
+	if share <= limit || b.Row.Kind == survey.Blank || s.onSameGrid(b) >= laddered {
+		b.flag(s, eem.Note{Test: "grid-part", Severity: eem.Remark, Measure: true, Value: float64(lack), Msg: msg})
+		return
+	}
+	b.flag(s, eem.Note{Test: "grid-lost", Severity: eem.Doubt, Measure: true, Value: share, Limit: limit, Msg: fmt.Sprintf(
+		"%s: %.0f %% of its cells, and fewer than %d bottles were scanned like this; look whether all its files have come; if it was meant so, limit.grid-lost = 100 under [quality]", msg, share, laddered)})
+}
+
+// onSameGrid counts the usable bottles on the grid of b, with itself.
+func (s *Survey) onSameGrid(b *Bottle) (n int) {
+	for _, other := range s.Bottles {
+		if other.Usable() && other.EEM.Grid.Equal(b.EEM.Grid) {
+			n++
+		}
+	}
+	return n
 }

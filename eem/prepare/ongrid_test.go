@@ -24,7 +24,7 @@ func TestFewLinesAreNotBridged(t *testing.T) {
 		ex   eem.Axis
 		lack int
 		test string
-	}{{axis(240, 280, 320, 360), 2, "grid-part"}, {axis(240, 260, 280, 320, 360), 0, "grid-differs"}} {
+	}{{axis(240, 280, 320, 360), 2, "grid-lost"}, {axis(240, 260, 280, 320, 360), 0, "grid-differs"}} {
 		e := eem.FromCells(eem.Grid{Ex: c.ex, Em: em}, eem.Counts, make([]float64, c.ex.Len()*em.Len()))
 		b := &Bottle{Row: &survey.Row{ID: "W1"}, EEM: e}
 		s.compareGrid(b)
@@ -44,4 +44,54 @@ func TestFewLinesAreNotBridged(t *testing.T) {
 			t.Error(b.Flags[0].Msg)
 		}
 	}
+}
+
+// What a bottle lacks is a note up to a quarter of the grid and a doubt above, unless
+// the settings say more, two others were scanned just like it, or it is a blank.
+func TestLostGrid(t *testing.T) {
+	em := mustSteps(t, 400, 420, 10)
+	grid := func(to float64) eem.Grid { return eem.Grid{Ex: mustSteps(t, 240, to, 20), Em: em} }
+	bottle := func(to float64, kind survey.Kind) *Bottle {
+		return &Bottle{Row: &survey.Row{ID: "W", Kind: kind}, EEM: eem.New(grid(to), eem.Counts)}
+	}
+	for _, c := range []struct {
+		to     float64 // of excitations from 240 to 380 nm: 8
+		kind   survey.Kind
+		like   int // bottles scanned like it
+		limit  float64
+		test   string
+		excess string
+	}{
+		{340, survey.Sample, 1, 25, "grid-part", "lacks 2 of 8"},
+		{320, survey.Sample, 1, 25, "grid-lost", "38 % of its cells"},
+		{320, survey.Sample, 2, 25, "grid-lost", "limit.grid-lost = 100 under [quality]"},
+		{320, survey.Sample, 3, 25, "grid-part", "lacks 3 of 8"},
+		{320, survey.Standard, 1, 25, "grid-lost", "lacks 3 of 8"},
+		{240, survey.Blank, 1, 25, "grid-part", "lacks 7 of 8"},
+		{320, survey.Sample, 1, 40, "grid-part", "lacks 3 of 8"},
+		{240, survey.Sample, 1, 100, "grid-part", "lacks 7 of 8"},
+	} {
+		s := &Survey{Sheet: &survey.Sheet{Path: "runsheet.csv"}, Settings: survey.Default(), Grid: grid(380)}
+		s.Settings.Quality.Limit = map[string]float64{"grid-lost": c.limit}
+		for range c.like {
+			s.Bottles = append(s.Bottles, bottle(c.to, c.kind))
+		}
+		b := s.Bottles[0]
+		s.compareGrid(b)
+		if len(b.Flags) != 1 || b.Flags[0].Test != c.test || !strings.Contains(b.Flags[0].Msg, c.excess) {
+			t.Errorf("%+v: told %+v", c, b.Flags)
+		}
+	}
+	if d, ok := eem.FindTest("grid-lost"); !ok || d.Limit != 25 || d.Severity != eem.Doubt {
+		t.Errorf("by default: %+v", d)
+	}
+}
+
+func mustSteps(t *testing.T, from, to, step float64) eem.Axis {
+	t.Helper()
+	a, err := eem.Steps(from, to, step)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return a
 }
