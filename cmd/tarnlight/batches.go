@@ -192,7 +192,7 @@ func (j *job) chartFlags() []eem.Flag {
 				id = ""
 			}
 			out = append(out, j.sv.Accept(eem.Flag{ID: id, Batch: r.Batch, Test: "chart-rule", Severity: eem.Doubt, Value: r.Z, Limit: fewest,
-				Msg: fmt.Sprintf("%s: %.5g %s is %+.1f standard deviations off the centre (%s, %d points); look for what changed before using the batch", c.Variable, r.Value, c.Unit, r.Z, strings.Join(r.Rules, ", "), len(c.Points))}))
+				Msg: fmt.Sprintf("%s: %s %s is %+.1f standard deviations off the centre (%s, %d points); look for what changed before using the batch", c.Variable, inFull(r.Value, 5), c.Unit, r.Z, strings.Join(r.Rules, ", "), len(c.Points))}))
 		}
 	}
 	return out

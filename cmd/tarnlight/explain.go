@@ -137,12 +137,7 @@ func onScreen(value string) string {
 	if err != nil || len(value) < 9 || math.IsNaN(v) || math.IsInf(v, 0) {
 		return value
 	}
-	short := strconv.FormatFloat(v, 'g', 7, 64)
-	if e := math.Abs(v); e >= 1e-4 && e < 1e15 {
-		v, _ = strconv.ParseFloat(short, 64)
-		return strconv.FormatFloat(v, 'f', -1, 64)
-	}
-	return short
+	return inFull(v, 7)
 }
 
 // open finds the bottle in the results and the cell to follow.

@@ -3,6 +3,7 @@ package main
 import (
 	"fmt"
 	"io"
+	"math"
 	"slices"
 	"strconv"
 	"strings"
@@ -57,6 +58,17 @@ func (t *text) print(w io.Writer) error {
 
 // short gives four significant digits.
 func short(v float64) string { return fmt.Sprintf("%.4g", v) }
+
+// inFull gives v with so many significant digits at most, without an exponent where
+// that can be read.
+func inFull(v float64, digits int) string {
+	short := strconv.FormatFloat(v, 'g', digits, 64)
+	if size := math.Abs(v); size >= 1e-4 && size < 1e15 {
+		v, _ = strconv.ParseFloat(short, 64)
+		return strconv.FormatFloat(v, 'f', -1, 64)
+	}
+	return short
+}
 
 // line is the outcome in one line.
 func (st status) line() string {

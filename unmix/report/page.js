@@ -184,11 +184,11 @@ function axes(g, b, x, y, xt, yt) {
   g.strokeStyle = g.fillStyle = "#20242c";
   g.strokeRect(b.x - .5, b.y - .5, b.w + 1, b.h + 1);
   g.textAlign = "center"; g.textBaseline = "top";
-  const tx = ticks(x[0], x[1], Math.max(2, Math.floor(b.w / 38)));
+  const tx = ticks(x[0], x[1], Math.max(2, Math.floor(b.w / 30)));
   for (const v of tx) { const p = b.x + (v - x[0]) / (x[1] - x[0]) * b.w; g.fillRect(p, b.y + b.h, 1, 4); g.fillText(tickText(v, tx.step || 1), p, b.y + b.h + 6); }
   g.fillText(xt, b.x + b.w / 2, b.y + b.h + 21);
   g.textAlign = "right"; g.textBaseline = "middle";
-  const ty = ticks(y[0], y[1], Math.max(2, Math.floor(b.h / 34)));
+  const ty = ticks(y[0], y[1], Math.max(2, Math.floor(b.h / 28)));
   for (const v of ty) { const p = b.y + b.h - (v - y[0]) / (y[1] - y[0]) * b.h; g.fillRect(b.x - 4, p, 4, 1); g.fillText(tickText(v, ty.step || 1), b.x - 6, p); }
   g.save(); g.translate(9, b.y + b.h / 2); g.rotate(-Math.PI / 2); g.textAlign = "center"; g.fillText(yt, 0, 0); g.restore();
 }
@@ -229,7 +229,7 @@ function drawMap(c) {
   for (let y = 0; y < b.h; y++) { const rgb = map[Math.round((1 - (y + .5) / b.h) * (map.length - 1))]; g.fillStyle = `rgb(${rgb})`; g.fillRect(bx, b.y + y, 10, 1.5); }
   g.strokeStyle = g.fillStyle = "#20242c"; g.strokeRect(bx - .5, b.y - .5, 11, b.h + 1);
   g.textAlign = "left"; g.textBaseline = "middle";
-  const lo = div ? -top : 0, t = ticks(lo, top, 4);
+  const lo = div ? -top : 0, t = ticks(lo, top, 5);
   for (const q of t) { const p = b.y + b.h - (q - lo) / (top - lo) * b.h; g.fillRect(bx + 10, p, 3, 1); g.fillText(tickText(q, t.step), bx + 15, p); }
   g.textBaseline = "top"; g.fillText(D.unit, bx - 2, b.y + b.h + 21);
   if (S.j >= 0) {
@@ -245,7 +245,7 @@ function drawMap(c) {
 }
 function drawSlice(c, alongEm) {
   const [g, w, h] = sharp(c), b = box(w, h);
-  b.w += 40;
+  b.w += 40; b.y += 12; b.h -= 12; // the key stands above
   const x = alongEm ? D.em : D.ex, m = layerOf("measured"), f = layerOf("model");
   const pick = v => x.map((_, n) => v[alongEm ? S.j * nem + n : n * nem + S.k]);
   const ym = pick(m), yf = f ? pick(f) : [];
@@ -263,8 +263,8 @@ function drawSlice(c, alongEm) {
   yf.forEach((v, n) => { if (v !== v) { pen = false; return; } g[pen ? "lineTo" : "moveTo"](px(x[n]), py(v)); pen = true; });
   g.stroke();
   g.textAlign = "right"; g.textBaseline = "top";
-  g.fillStyle = "#1f4fa8"; g.fillText("• measured", b.x + b.w - 6, b.y + 4);
-  if (f) { g.fillStyle = "#c05a00"; g.fillText("— model", b.x + b.w - 6, b.y + 18); }
+  g.fillStyle = "#c05a00"; if (f) g.fillText("— model", b.x + b.w, 2);
+  g.fillStyle = "#1f4fa8"; g.fillText("• measured", b.x + b.w - (f ? 56 : 0), 2);
 }
 let pending = 0;
 function draw() {
