@@ -50,7 +50,7 @@ var Tests = sortTests([]Test{
 	{"limits-low", Remark, 2, "times", "the laboratory's own critical value of a component is this many times below what the budgets of most samples give: a limit from pure water says nothing of what else is in a bottle", "common practice, no source"},
 	{"few-cells", Reject, 0, "cells", "fewer cells than components are left", "-"},
 	{"overlap", Doubt, 30, "", "condition number of the unit-norm components above the limit: they cannot be told apart well", "Belsley, Kuh & Welsch 1980 (from memory)"},
-	{"unexplained", Doubt, 0.9, "", "share of the bottle's signal explained by the model below the limit", "common practice, no source"},
+	{"unexplained", Doubt, 0.9, "", "share of the bottle's signal explained by the model below the limit; where what is left lies along a scatter line, within 10 nm of its band, that is said", "common practice, no source"},
 	{"unknown", Doubt, 5, "standard uncertainties", "the bottle shows a component that the model does not know; a doubt where that moves a contribution by two standard uncertainties", "one survey in 100 by chance, computed"},
 	{"structure", Remark, 4, "z", "Moran's I of the residual map: neighbouring residuals are alike, more than in differences of replicates where there are any; not asked of a bottle that alone determines its references, whose residual is rounding", "Cliff & Ord 1981 (from memory)"},
 	{"not-converged", Doubt, 0, "", "the fit stopped before its tolerance was met", "-"},

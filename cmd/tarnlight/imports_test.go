@@ -37,7 +37,7 @@ var packages = []struct{ name, may string }{
 
 	{"unmix", "gonum eem nnls"},
 	{"unmix/parafac", "gonum eem nnls unmix"},
-	{"unmix/merit", "gonum eem nnls unmix"},
+	{"unmix/merit", "gonum eem eem/scatter nnls unmix"},
 	{"unmix/plan", "gonum eem eem/scatter eem/correct unmix unmix/merit"},
 	{"unmix/outdir", ""}, // knows no spectroscopy
 	{"unmix/report", "gonum plot fonts excelize eem eem/netcdf eem/optics eem/survey unmix unmix/parafac unmix/merit unmix/plan"},

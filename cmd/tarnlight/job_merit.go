@@ -100,7 +100,7 @@ func (j *job) reach(bottles []merit.Bottle, method string, extra []eem.Flag) {
 // merit gathers what the judgement of a bottle needs.
 func (j *job) merit(b *prepare.Bottle) merit.Bottle {
 	m := merit.Bottle{ID: b.Row.ID, Batch: b.Batch, Row: -1, Unlike: b.Row.Kind == survey.Blank || b.Row.Kind == survey.FieldBlank,
-		Standard: b.Row.Kind == survey.Standard}
+		Standard: b.Row.Kind == survey.Standard, Lines: scatterLines(b)}
 	if i, ok := j.row[b]; ok {
 		m.Row = i
 	}

@@ -178,6 +178,13 @@ pictures = "none"
 	if zero != 5 {
 		t.Errorf("%d rows of the zero sample", zero)
 	}
+	// Of these two both diagonals glow: the flag speaks of scatter, not of a substance.
+	for _, id := range []string{"GRA_201016_m201023", "GRA_201211_m201223"} {
+		f := table(t, dir, "out", "flags.csv")
+		if m := cell(t, f, "message", "id", id, "method", "parafac", "test", "unexplained"); !strings.Contains(m, "scatter is left in this bottle") || !strings.Contains(m, "along the Rayleigh line") || !strings.Contains(m, "[scans] applied") {
+			t.Errorf("%s: %q", id, m)
+		}
+	}
 }
 
 // Each quinine solution from the other three lies within its 95 % interval: the

@@ -39,6 +39,28 @@ func Bands(s survey.Scatter) []scatter.Band {
 	return out
 }
 
+// Line is a scatter line of a bottle and what its settings do about it.
+type Line struct {
+	scatter.Band        // what is taken out, or by default would be
+	Key          string // of [scatter]
+	Off          bool   // nothing is taken out
+}
+
+// Lines returns the scatter lines of a bottle, first order first, and whether their
+// bands were taken out here.
+func (b *Bottle) Lines() (out []Line, here bool) {
+	def := survey.Default().Scatter
+	for _, k := range bandKeys {
+		band := *k.of(&b.Setting.Scatter)
+		off := band.Off
+		if off {
+			band = *k.of(&def)
+		}
+		out = append(out, Line{scatter.Band{Line: k.line, Below: band.Below, Above: band.Above, From: band.FromCM, To: band.ToCM, Reason: k.reason}, k.key, off})
+	}
+	return out, !b.skips(stepScatter)
+}
+
 // findBands puts the widths found on the blanks in the place of "auto". All
 // bottles of a survey get the same bands, the widest of any batch, so that on one
 // grid they lack the same cells; with the settings in force they go into the

@@ -126,7 +126,7 @@ func (b *bottle) residual(u []float32) {
 			b.r[c] = math.NaN()
 		}
 	}
-	b.out.Hot = HottestSpot(e.c.Grid, b.r, u)
+	b.out.Hot, b.out.Tops = HottestSpot(e.c.Grid, b.r, u), topsOf(e.c.Grid, b.r, u)
 	b.out.Runs = RunsMap(b.r, e.c.Ex.Len(), e.c.Em.Len()).Z
 }
 

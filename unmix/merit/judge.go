@@ -20,6 +20,7 @@ type Bottle struct {
 	Row      int      // of the resolution; −1 when the bottle is not in it
 	Unlike   bool     // a bottle that need not look like the model (a blank): no test of the residual
 	Standard bool     // a standard: the highest one is not above itself
+	Lines    []Line   // scatter lines along which light may be left
 }
 
 // Currie's factors for known standard deviation and 5 % errors of both kinds
@@ -100,12 +101,21 @@ func fitFlags(r *unmix.Resolution, s *Spread, b Bottle, m Moran, limit func(stri
 	}
 	score := s.Yard.Score(m.Z)
 	structured := score > limit("structure")
+	lines := leftover(s.Tops, b.Lines)
 	if lim := limit("unexplained"); structured && fit.Explained < 100*lim {
+		what := fmt.Sprintf("something in this bottle is not in the model, which explains %.1f %% of the signal", fit.Explained)
+		if len(lines) > 0 {
+			what = fmt.Sprintf("scatter is left in this bottle: what the model leaves over lies %s; the model explains %.1f %% of the signal; %s", along(lines), fit.Explained, remedy(lines))
+		}
 		add("unexplained", eem.Doubt, fit.Explained/100, lim,
-			fmt.Sprintf("something in this bottle is not in the model, which explains %.1f %% of the signal; the residual is largest at ex %s / em %s nm%s%s", fit.Explained, eem.NM(fit.HotEx), eem.NM(fit.HotEm), eem.InDetail, s.residual()))
+			fmt.Sprintf("%s; the residual is largest at ex %s / em %s nm%s%s", what, eem.NM(fit.HotEx), eem.NM(fit.HotEm), eem.InDetail, s.residual()))
 	} else if structured {
-		add("structure", eem.Remark, score, limit("structure"), fmt.Sprintf("the residual is not noise alone (by chance one bottle in %s shows such), largest at ex %s / em %s nm%s%s",
-			digits(1/distuv.UnitNormal.Survival(limit("structure")), 2), eem.NM(s.Hot.Ex), eem.NM(s.Hot.Em), eem.InDetail, s.residual()))
+		where := ""
+		if len(lines) > 0 {
+			where = "; scatter is left " + along(lines) + "; " + remedy(lines)
+		}
+		add("structure", eem.Remark, score, limit("structure"), fmt.Sprintf("the residual is not noise alone (by chance one bottle in %s shows such), largest at ex %s / em %s nm%s%s%s",
+			digits(1/distuv.UnitNormal.Survival(limit("structure")), 2), eem.NM(s.Hot.Ex), eem.NM(s.Hot.Em), where, eem.InDetail, s.residual()))
 	}
 	return out
 }

@@ -91,6 +91,7 @@ type Spread struct {
 	Sums                              []Sum            // of the pairs that cannot be told apart
 	Yard                              *unmix.Yardstick // what the residual is held against; nil: the noise model
 	Hot                               Hot              // where the residual stands out most
+	Tops                              []Top            // the largest residual of every scan that stands out of the noise
 	Runs                              float64          // Z of the runs of signs along emission: below 0, neighbours are alike
 	NoiseRMS                          float64          // what noise alone would leave, intensity
 	ChiSquare                         float64          // Σ(residual²/variance) over the degrees of freedom: 1 is noise alone
