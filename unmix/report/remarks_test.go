@@ -135,3 +135,13 @@ func TestClientReadsShortWords(t *testing.T) {
 		t.Errorf("the page does not hold %s", want)
 	}
 }
+
+// The reason of a batch's verdict keeps how many more there are.
+func TestWithoutRemedy(t *testing.T) {
+	for reason, want := range map[string]string{"": "", "1 of 22 bottles rejected": "1 of 22 bottles rejected",
+		"Raman area is off; look for the cause (and 2 more)": "Raman area is off (and 2 more)", "off; look": "off"} {
+		if got := withoutRemedy(reason); got != want {
+			t.Errorf("%q: %q, want %q", reason, got, want)
+		}
+	}
+}

@@ -3,6 +3,7 @@ package report
 import (
 	"fmt"
 	"math"
+	"regexp"
 	"slices"
 	"strings"
 
@@ -194,12 +195,20 @@ func (r *results) batchSummary(s *sheet) {
 	text := func(i int, name string) string { return t.Text(i, t.Col(name)) }
 	for i := range t.Rows {
 		verdict, l := verdictLook(text(i, "verdict"))
-		why := text(i, "reason")
+		why := withoutRemedy(text(i, "reason"))
 		s.add(0, cell{text(i, "batch"), look{wrap: true}}, cell{date(text(i, "measured")), look{format: "yyyy-mm-dd", align: "left"}},
 			cell{t.Float(i, t.Col("samples")), look{}}, cell{float64(len(strings.Fields(text(i, "blanks")))), look{}},
 			cell{text(i, "unit"), look{indent: true}}, cell{verdict, l}, cell{why, look{wrap: true, indent: true}})
 	}
 	s.skip(1)
+}
+
+var andMore = regexp.MustCompile(`\(and \d+ more\)$`)
+
+// withoutRemedy is the reason of a verdict as a client reads it, see told.
+func withoutRemedy(reason string) string {
+	what, rest, _ := strings.Cut(reason, "; ")
+	return strings.TrimSpace(what + " " + andMore.FindString(rest))
 }
 
 // verdictLook gives a verdict its word and ground.
