@@ -25,6 +25,24 @@ const (
 	NotUsable   = "R"
 )
 
+// Expanded is the half-width of what stands behind ±: see ExpandedOf.
+func (c *Contribution) Expanded() float64 { return ExpandedOf(c.Value, c.U, c.Lower, c.Upper) }
+
+// ExpandedOf is the expanded uncertainty k·u of a value: k = 2, or more where the 95 %
+// interval reaches further to one side, as it does when the standard uncertainty u
+// rests on few degrees of freedom (JCGM 100:2008, G.4; EA-4/02 M:2022, 5). An end at
+// zero, where the interval is cut, does not count. It is NaN where u is.
+func ExpandedOf(value, u, lower, upper float64) float64 {
+	half := 2 * u
+	if upper-value > half {
+		half = upper - value
+	}
+	if lower > 0 && value-lower > half {
+		half = value - lower
+	}
+	return half
+}
+
 // Doubt adds reasons why the value is unreliable. One that is not usable stays
 // that, and one that is not detected stays below its limit.
 func (c *Contribution) Doubt(reasons ...string) {

@@ -16,6 +16,7 @@ import (
 	"tarnlight/eem"
 	"tarnlight/eem/prepare"
 	"tarnlight/eem/survey"
+	"tarnlight/unmix"
 	"tarnlight/unmix/merit"
 	"tarnlight/unmix/outdir"
 	"tarnlight/unmix/report"
@@ -321,7 +322,8 @@ func (x *explainer) tables() error {
 		if get("id") != x.id {
 			continue
 		}
-		note := "reported " + asReported(get("reported"), get("qualifier"), c.Float(r, c.Col("value")), c.Float(r, c.Col("standard_uncertainty")), x.digits)
+		at := func(col string) float64 { return c.Float(r, c.Col(col)) }
+		note := "reported " + asReported(get("reported"), get("qualifier"), at("value"), at("standard_uncertainty"), at("lower95"), at("upper95"), x.digits)
 		if why := x.untold(f, get("reasons")); why != "" {
 			note += "; " + why
 		}
@@ -333,9 +335,10 @@ func (x *explainer) tables() error {
 
 // asReported is a contribution as it goes into a report, with its expanded
 // uncertainty to the same decimal.
-func asReported(reported, qualifier string, value, u float64, digits int) string {
+func asReported(reported, qualifier string, value, u, lower, upper float64, digits int) string {
 	if _, err := strconv.ParseFloat(reported, 64); err == nil && u > 0 {
-		reported = merit.Rounded(value, u, digits) + " ± " + merit.RoundedExpanded(value, u, digits) + " (k = 2)"
+		expanded := unmix.ExpandedOf(value, u, lower, upper)
+		reported = fmt.Sprintf("%s ± %s (k = %.1f)", merit.Rounded(value, expanded, digits), merit.RoundedExpanded(value, expanded, digits), expanded/u)
 	}
 	if qualifier != "" {
 		reported += ", " + qualifier

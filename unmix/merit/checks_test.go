@@ -364,7 +364,7 @@ func TestRounded(t *testing.T) {
 		{2.5, 0.0498, 2, "2.50", "0.10"}, {9.123e-5, 1.23e-6, 2, "9.12e-5", "2.5e-6"}, {0.00012, 0.000012, 2, "0.000120", "0.000024"},
 		{9.996e-6, 1e-8, 2, "9.996e-6", "2.0e-8"}, {9.9996e-6, 1e-8, 1, "1.000e-5", "2e-8"}, {2.3456e8, 1.2e6, 2, "2.346e+8", "2.4e+6"}, {3e-7, 2e-6, 2, "3e-7", "4.0e-6"},
 		{2e-8, 2e-6, 2, "0", "4.0e-6"}, {8e-8, 2e-6, 2, "1e-7", "4.0e-6"}, {12345.6, 480, 2, "12350", "960"}, {1234.5, 5.6, 2, "1235", "11"}, {2.675, 0.05, 2, "2.68", "0.10"}, {0.37123, 0, 2, "0.3712", ""}, {213.4, math.NaN(), 2, "213.4", ""}} {
-		got, expanded := merit.Rounded(c.value, c.u, c.n), merit.RoundedExpanded(c.value, c.u, c.n)
+		got, expanded := merit.Rounded(c.value, 2*c.u, c.n), merit.RoundedExpanded(c.value, 2*c.u, c.n)
 		if got != c.want || expanded != c.expanded {
 			t.Errorf("%g with u = %g to %d digits: %s ± %s, want %s ± %s", c.value, c.u, c.n, got, expanded, c.want, c.expanded)
 		}

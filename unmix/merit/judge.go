@@ -179,9 +179,9 @@ func contribution(r *unmix.Resolution, spreads []Spread, b Bottle, f int, doubts
 		}
 	case len(c.Reasons) > 0:
 		c.Qualifier = unmix.Unreliable
-		c.Reported = Rounded(c.Value, c.U, StatedDigits)
+		c.Reported = Rounded(c.Value, c.Expanded(), StatedDigits)
 	default:
-		c.Reported = Rounded(c.Value, c.U, StatedDigits)
+		c.Reported = Rounded(c.Value, c.Expanded(), StatedDigits)
 	}
 	return c, flags
 }

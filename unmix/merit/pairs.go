@@ -58,9 +58,9 @@ func (j *Judged) sum(r *unmix.Resolution, b Bottle, i, at, f int, name, model st
 	case !c.Detected:
 		c.Qualifier, c.Reported = unmix.NotDetected, "< "+digits(c.Detection, 2)
 	case len(c.Reasons) > 0:
-		c.Qualifier, c.Reported = unmix.Unreliable, Rounded(c.Value, c.U, StatedDigits)
+		c.Qualifier, c.Reported = unmix.Unreliable, Rounded(c.Value, c.Expanded(), StatedDigits)
 	default:
-		c.Reported = Rounded(c.Value, c.U, StatedDigits)
+		c.Reported = Rounded(c.Value, c.Expanded(), StatedDigits)
 	}
 	return c
 }

@@ -16,33 +16,34 @@ import (
 const StatedDigits = 2
 
 // Place is the decimal place, counted behind the point and negative before it, of the
-// last of so many significant digits of the expanded uncertainty 2u: there a value and
-// what stands behind its ± both end. ok is false where u says nothing.
-func Place(u float64, n int) (place int, ok bool) {
-	if !(u > 0) || math.IsInf(u, 0) {
+// last of so many significant digits of an expanded uncertainty: there a value and
+// what stands behind its ± both end. ok is false where that says nothing.
+func Place(expanded float64, n int) (place int, ok bool) {
+	if !(expanded > 0) || math.IsInf(expanded, 0) {
 		return 0, false
 	}
-	return n - 1 - exponent(2*u, n), true
+	return n - 1 - exponent(expanded, n), true
 }
 
-// Rounded is a value as it is stated: to the place of its uncertainty u, plain where
-// that is readable, with an exponent elsewhere; to four digits where u is unknown.
-func Rounded(value, u float64, n int) string {
-	place, ok := Place(u, n)
+// Rounded is a value as it is stated: to the place of its expanded uncertainty, plain
+// where that is readable, with an exponent elsewhere; to four digits where that is
+// unknown.
+func Rounded(value, expanded float64, n int) string {
+	place, ok := Place(expanded, n)
 	if !ok {
 		return digits(value, 4)
 	}
-	return atPlace(value, place, awkward(max(math.Abs(value), 2*u), place))
+	return atPlace(value, place, awkward(max(math.Abs(value), expanded), place))
 }
 
-// RoundedExpanded is the expanded uncertainty 2u that stands behind Rounded of the same
-// value, in the same form; empty where u is unknown.
-func RoundedExpanded(value, u float64, n int) string {
-	place, ok := Place(u, n)
+// RoundedExpanded is the expanded uncertainty that stands behind Rounded of the same
+// value, in the same form; empty where it is unknown.
+func RoundedExpanded(value, expanded float64, n int) string {
+	place, ok := Place(expanded, n)
 	if !ok {
 		return ""
 	}
-	return atPlace(2*u, place, awkward(max(math.Abs(value), 2*u), place))
+	return atPlace(expanded, place, awkward(max(math.Abs(value), expanded), place))
 }
 
 // Round states the values that are numbers again, to so many digits of their
@@ -50,8 +51,8 @@ func RoundedExpanded(value, u float64, n int) string {
 func (j *Judged) Round(n int) {
 	for _, list := range [][]unmix.Contribution{j.Contributions, j.Beyond} {
 		for i := range list {
-			if c := &list[i]; slices.Contains([]string{"", unmix.Unreliable}, c.Qualifier) && c.Reported == Rounded(c.Value, c.U, StatedDigits) {
-				c.Reported = Rounded(c.Value, c.U, n)
+			if c := &list[i]; slices.Contains([]string{"", unmix.Unreliable}, c.Qualifier) && c.Reported == Rounded(c.Value, c.Expanded(), StatedDigits) {
+				c.Reported = Rounded(c.Value, c.Expanded(), n)
 			}
 		}
 	}

@@ -24,13 +24,14 @@ func (j *Judged) AddUnknowns(us []*Unknown, r *unmix.Resolution, bottles []Bottl
 	}
 	j.Unknown = us
 	last := us[len(us)-1]
+	spreads := sought(last.Spreads, r.Set.Len(), us)
 	set := *last.Set
 	set.Method = MethodUnknown
 	named := *last.Resolution
 	named.Set = &set
 	for i, b := range bottles {
 		for n, u := range us {
-			c, _ := contribution(&named, last.Spreads, b, r.Set.Len()+n, b.Doubts, b.Rejects, accept)
+			c, _ := contribution(&named, spreads, b, r.Set.Len()+n, b.Doubts, b.Rejects, accept)
 			c.Model = model
 			j.Beyond = append(j.Beyond, c)
 			if b.Row >= 0 && slices.Contains(u.Shown, b.Row) {
@@ -38,6 +39,25 @@ func (j *Judged) AddUnknowns(us []*Unknown, r *unmix.Resolution, bottles []Bottl
 			}
 		}
 	}
+}
+
+// sought returns spreads in which an unknown is detected where the search itself would
+// say so. It was chosen among all cells and bottles, and stands behind them all: the
+// decision for one component in one bottle would find it in every fourth.
+func sought(spreads []Spread, known int, us []*Unknown) []Spread {
+	out := slices.Clone(spreads)
+	for i := range out {
+		s := &out[i]
+		s.Critical, s.Detection = slices.Clone(s.Critical), slices.Clone(s.Detection)
+		for n, u := range us {
+			if f := known + n; f < len(s.Critical) {
+				s0 := s.Critical[f] / kCritical
+				s.Critical[f] = u.Limit * s0
+				s.Detection[f] += (u.Limit - kCritical) * s0
+			}
+		}
+	}
+	return out
 }
 
 // flagUnknown tells of unknown u in bottle b, number i.
@@ -57,7 +77,7 @@ func (j *Judged) flagUnknown(u *Unknown, r *unmix.Resolution, last *Unknown, i i
 				unit = string(r.Set.Unit)
 			}
 			both = append(both, fmt.Sprintf("%s %s instead of %s %s", r.Set.Components[g].Name,
-				Rounded(is, last.Spreads[b.Row].U[g], StatedDigits), Rounded(was, j.Spreads[b.Row].U[g], StatedDigits), unit))
+				Rounded(is, 2*last.Spreads[b.Row].U[g], StatedDigits), Rounded(was, 2*j.Spreads[b.Row].U[g], StatedDigits), unit))
 		}
 	}
 	if both == nil {

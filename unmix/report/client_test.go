@@ -8,6 +8,8 @@ import (
 	"strings"
 	"testing"
 
+	"tarnlight/unmix"
+
 	"github.com/xuri/excelize/v2"
 )
 
@@ -78,7 +80,7 @@ func TestWorkbookEqualsContributions(t *testing.T) {
 			}
 		default:
 			same("value", get(n), c.Float(i, c.Col("value")))
-			same("±", get(n+1), 2*c.Float(i, c.Col("standard_uncertainty")))
+			same("±", get(n+1), unmix.ExpandedOf(c.Float(i, c.Col("value")), c.Float(i, c.Col("standard_uncertainty")), c.Float(i, c.Col("lower95")), c.Float(i, c.Col("upper95"))))
 			if seen[n] != text("reported") {
 				t.Errorf("%s: shown as %q, reported is %q", text("id"), seen[n], text("reported"))
 			}

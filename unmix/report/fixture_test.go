@@ -148,13 +148,13 @@ func (f fixture) rows(i int, score []float64, noise float64, closed bool, sample
 		batch, batch, 1.0+9*float64(i%15/14), "=1+1 is text", 4300, "parafac", explained, noise*1.02, noise, structure, ex, em, hot, 6.2, 1.18,
 		2.9, 0.0151, 0.0178, 0.85, 5.2, 1.4, 0.65, 0.87, 6.7, 0.7, 0.2, 0.5, 1.9, 0.9, 1.1, 0, doubts, rejects)
 	if len(f.methods) > 1 { // what nothing accounts for, where two methods were asked
-		put(contributions, id, "", "unexplained", hot, "RU", noise, 0.0, 2*hot, 3*noise, map[bool]string{true: "", false: "U"}[hot > 3*noise], 1.5*noise, 10*noise, hot > 3*noise,
-			map[bool]string{true: merit.Rounded(hot, noise, 2), false: "< 0.012"}[hot > 3*noise], "", "")
+		put(contributions, id, "", "unexplained", hot, "RU", noise, max(0, hot-1.96*noise), hot+1.96*noise, 3*noise, map[bool]string{true: "", false: "U"}[hot > 3*noise], 1.5*noise, 10*noise, hot > 3*noise,
+			map[bool]string{true: merit.Rounded(hot, 2*noise, 2), false: "< 0.012"}[hot > 3*noise], "", "")
 	}
 	for _, m := range f.methods {
 		for c, name := range fixtureNames {
 			u := 0.004 + 0.03*score[c]
-			lod, q, reported, reasons := 0.013, "", merit.Rounded(score[c], u, 2), ""
+			lod, q, reported, reasons := 0.013, "", merit.Rounded(score[c], 2*u, 2), ""
 			switch {
 			case closed:
 				q, reported, reasons = "R", "not usable", "no light came through"

@@ -332,8 +332,8 @@ async function open(row, focus) {
   $("note").textContent = b.note;
   $("parts").tBodies[0].replaceChildren(...b.parts.map((p, n) => {
     const tr = document.createElement("tr");
-    tr.append(el("td", D.columns[n].name), el("td", p[0]), el("td", p[1]), el("td", D.columns[n].unit), el("td", p[2]));
-    tr.cells[1].className = tr.cells[2].className = "n";
+    tr.append(el("td", D.columns[n].name), el("td", p[0]), el("td", p[1]), el("td", p[2]), el("td", D.columns[n].unit), el("td", p[3]));
+    tr.cells[1].className = tr.cells[2].className = tr.cells[3].className = "n";
     return tr;
   }));
   $("flags").replaceChildren(...(b.flags.length ? b.flags.map(finding) : [el("li", "none")]));

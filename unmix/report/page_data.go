@@ -73,7 +73,7 @@ type dataBottle struct {
 	ID    string      `json:"id"`
 	Shown string      `json:"shown"`
 	Own   []num       `json:"own"` // scale ends of this bottle
-	Parts [][3]string `json:"parts"`
+	Parts [][4]string `json:"parts"`
 	Flags [][3]string `json:"flags"` // severity, words, figures behind them
 	Facts [][2]string `json:"facts"`
 	Note  string      `json:"note"`
@@ -108,17 +108,17 @@ func (r *results) pageData(p *pass) *pageData {
 
 // bottleData is what the page shows beside one bottle's maps.
 func (r *results) bottleData(b *bottle) dataBottle {
-	x := dataBottle{ID: b.id, Shown: visible(b.id), Parts: [][3]string{}, Flags: [][3]string{}, Facts: r.facts(b), Note: r.remarks(b, "Overview")}
+	x := dataBottle{ID: b.id, Shown: visible(b.id), Parts: [][4]string{}, Flags: [][3]string{}, Facts: r.facts(b), Note: r.remarks(b, "Overview")}
 	if r.s.Pictures && b.at >= 0 {
 		x.File = r.mapFile(b.id)
 	}
 	for _, c := range r.series {
 		k := b.of[c]
 		if k == nil {
-			x.Parts = append(x.Parts, [3]string{})
+			x.Parts = append(x.Parts, [4]string{})
 			continue
 		}
-		x.Parts = append(x.Parts, [3]string{r.num.stated(k.reported), r.num.stated(k.stated), strings.TrimSpace(k.qualifier + " " + strings.Join(r.distinct(b, c), "; "))})
+		x.Parts = append(x.Parts, [4]string{r.num.stated(k.reported), r.num.stated(k.stated), r.num.stated(k.coverage()), strings.TrimSpace(k.qualifier + " " + strings.Join(r.distinct(b, c), "; "))})
 	}
 	f := r.table["flags.csv"]
 	for _, k := range b.flags {

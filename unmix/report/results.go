@@ -13,6 +13,7 @@ import (
 	"strings"
 
 	"tarnlight/eem"
+	"tarnlight/unmix"
 	"tarnlight/unmix/merit"
 )
 
@@ -57,14 +58,22 @@ type contribution struct {
 	detected                      bool
 }
 
-// expanded is the half-width k·u of the expanded uncertainty, k = 2.
-func (c *contribution) expanded() float64 { return 2 * c.u }
+// expanded is the half-width k·u of the expanded uncertainty.
+func (c *contribution) expanded() float64 { return unmix.ExpandedOf(c.value, c.u, c.lower, c.upper) }
+
+// coverage is the factor k behind a stated ±, empty where none is stated.
+func (c *contribution) coverage() string {
+	if c.stated == "" {
+		return ""
+	}
+	return strconv.FormatFloat(c.expanded()/c.u, 'f', 1, 64)
+}
 
 // state rounds value and expanded uncertainty, where the result is a number, by the
 // one rule for both; what an older version left in the file may be rounded by another.
 func (c *contribution) state(digits int) {
 	if _, err := strconv.ParseFloat(c.reported, 64); err == nil {
-		c.reported, c.stated = merit.Rounded(c.value, c.u, digits), merit.RoundedExpanded(c.value, c.u, digits)
+		c.reported, c.stated = merit.Rounded(c.value, c.expanded(), digits), merit.RoundedExpanded(c.value, c.expanded(), digits)
 	}
 }
 

@@ -69,7 +69,7 @@ func (r *results) resultsSheet(b *book) {
 	const headRow = 4
 	s := b.add("Results", layout{widths: widths, freeze: fmt.Sprintf("B%d", headRow+1), repeat: fmt.Sprintf("$%d:$%d", headRow, headRow), keep: keep})
 	s.heading(20, plain(r.title())+" – results", look{bold: true, size: 13, color: inkBlue})
-	s.heading(0, "± is the expanded uncertainty (k = 2, about 95 %). < is followed by the detection limit. Q: U not detected, J unreliable or above the highest standard, R not usable. Screening: see Cautions on the sheet Summary.", look{color: midGrey})
+	s.heading(0, "± is the expanded uncertainty (about 95 %; k = 2, more with few degrees of freedom). < is followed by the detection limit. Q: U not detected, J unreliable or above the highest standard, R not usable. Screening: see Cautions on the sheet Summary.", look{color: midGrey})
 	s.skip(1)
 	s.add(max(30, s.height(heads)), heads...)
 	for _, x := range r.bottles {

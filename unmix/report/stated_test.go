@@ -26,10 +26,10 @@ func TestRoundedAlikeEverywhere(t *testing.T) {
 		}
 	}
 	// the first bottle's four components; as an older version rounded the first
-	set(0, "value", "68.34", "standard_uncertainty", "106.6", "reported", "68", "qualifier", "J")
+	set(0, "value", "68.34", "standard_uncertainty", "106.6", "lower95", "0", "upper95", "277", "reported", "68", "qualifier", "J")
 	set(1, "value", "0.1", "detection_limit", "213.2", "reported", "< 210", "qualifier", "U")
-	set(2, "value", "9.123e-05", "standard_uncertainty", "1.23e-06", "reported", "9.12e-5", "qualifier", "")
-	set(3, "value", "1234.5", "standard_uncertainty", "5.6", "reported", "1235", "qualifier", "")
+	set(2, "value", "9.123e-05", "standard_uncertainty", "1.23e-06", "lower95", "8.88e-05", "upper95", "9.36e-05", "reported", "9.12e-5", "qualifier", "")
+	set(3, "value", "1234.5", "standard_uncertainty", "3.5", "lower95", "1223.3", "upper95", "1245.7", "reported", "1235", "qualifier", "")
 	must(t, c.WriteFile(dir))
 	s := testSettings()
 	s.Pictures = false
@@ -42,7 +42,7 @@ func TestRoundedAlikeEverywhere(t *testing.T) {
 	must(t, err)
 	first := slices.Index(rows[3], "1 Tryptophan-like, RU")
 	for at, want := range map[int][2]string{0: {"68.34", `[<65]0;[>=75]0;"70"`}, 1: {"213.2", `[<205]0;[>=215]0;"210"`}, 3: {"213.2", `[<205]"< "0;[>=215]"< "0;"< 210"`},
-		6: {"0.00009123", "0.00E+0"}, 9: {"1234.5", "0"}, 10: {"11.2", "0"}} {
+		6: {"0.00009123", "0.00E+0"}, 9: {"1234.5", "0"}, 10: {"11.2000000000000", "0"}} {
 		cell, _ := excelize.CoordinatesToCellName(first+at+1, 5)
 		id, err := f.GetCellStyle("Results", cell)
 		must(t, err)
@@ -58,7 +58,7 @@ func TestRoundedAlikeEverywhere(t *testing.T) {
 	}
 	page, err := os.ReadFile(filepath.Join(dir, "report.html"))
 	must(t, err)
-	for _, want := range []string{`["70","210","J`, `["\u003c 210","","U`, `["9.12 · 10⁻⁵","2.5 · 10⁻⁶",`, `["1235","11",`} {
+	for _, want := range []string{`["70","210","2.0","J`, `["\u003c 210","","","U`, `["9.12 · 10⁻⁵","2.5 · 10⁻⁶","2.0",`, `["1235","11","3.2",`} {
 		if !strings.Contains(string(page), want) {
 			t.Errorf("the page does not hold %s", want)
 		}

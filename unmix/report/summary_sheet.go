@@ -33,7 +33,7 @@ func (r *results) summarySheet(b *book) {
 	r.componentSummary(s)
 	r.batchSummary(s)
 	r.part(s, "How to read the results")
-	r.wide(s, "± (k = 2)", "Half-width of the interval that holds the true value with about 95 % probability: expanded uncertainty, coverage factor k = 2. Value and ± are shown to the same decimal; the cells hold all digits.")
+	r.wide(s, "± (k ≥ 2)", "Half-width of the interval that holds the true value with about 95 % probability: expanded uncertainty, coverage factor k = 2, more where the standard uncertainty rests on few degrees of freedom. Value and ± are shown to the same decimal; the cells hold all digits.")
 	r.wide(s, "< number", "Not detected; the number is the detection limit.")
 	for _, q := range qualifiers {
 		r.wide(s, "Q "+q[0], q[1])

@@ -63,8 +63,8 @@ var methodText = map[string]stepWords{
 
 // limitsText and uncertaintyText end the methods.
 var (
-	uncertaintyText = stepWords{"Uncertainties of noise, blank, scale, inner filter and references or loadings were combined; the expanded uncertainty is k = 2 times the combined standard uncertainty, about 95 %.",
-		"u² = Σ (∂x/∂q)² u(q)² + 2 Σ covariances; ± = 2 u", "JCGM 100:2008 (GUM)"}
+	uncertaintyText = stepWords{"Uncertainties of noise, blank, scale, inner filter and references or loadings were combined; the expanded uncertainty is k times the combined standard uncertainty and makes an interval of about 95 %: k = 2, more where that rests on few degrees of freedom.",
+		"u² = Σ (∂x/∂q)² u(q)² + 2 Σ covariances; ± = k u, k ≥ 2", "JCGM 100:2008 (GUM), annex G.4"}
 	limitsText = stepWords{"A component counts as found where its value is above the critical value, which nothing at all exceeds with a probability of 5 %; the detection limit is what is found with a probability of 95 %.",
 		"critical value 1.645 s₀, detection limit 3.29 s₀ (normal errors, known s₀)", "Currie 1968, Anal. Chem. 40, 586; ISO 11843"}
 )
