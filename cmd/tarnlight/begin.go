@@ -43,8 +43,8 @@ kinds = {PW = "blank"}.
 With --add, as in a nightly job, rows for files that no row names yet are appended to
 the run sheet by that pattern. Nothing is asked and no row that is there changes.
 Files younger than --settle wait for the next run, in case they are still being
-written. What cannot be placed (a name that the pattern does not fit, a standard whose
-concentrations no name tells) is told once: it gets a row with the reason under
+written. What cannot be placed (a name that the pattern does not fit, one that it fits on
+a file nobody can read, a standard whose concentrations no name tells) is told once: it gets a row with the reason under
 exclude, which takes part in nothing until somebody corrects the row and empties that
 cell. [sheet] ignore in survey.toml, as ["*.pdf", "old"], names what begin passes over.
 Exit codes: 0 rows added or nothing new, 3 something was set aside that somebody must
@@ -84,7 +84,7 @@ func (o beginOptions) run(ctx context.Context, s streams) error {
 			return fmt.Errorf("pattern %q: {id} is missing; write it where the bottle's name stands", o.name)
 		}
 	}
-	b := &beginning{beginOptions: o, streams: s, set: set, root: prepare.Root(o.dir, set), bar: newBar(s.err), told: map[string]bool{}, endings: map[string]bool{}}
+	b := &beginning{beginOptions: o, streams: s, set: set, root: prepare.Root(o.dir, set), bar: newBar(s.err), told: map[string]bool{}, endings: map[string]bool{}, scans: map[string]bool{}}
 	if o.add {
 		return b.addNew(ctx)
 	}
@@ -101,6 +101,7 @@ type beginning struct {
 	look    bool            // a file was left out that somebody must look at
 	told    map[string]bool // files that belong to a bottle though their content does not say so, or of which all was said
 	endings map[string]bool // that scans have
+	scans   map[string]bool // paths of scans without their ending
 	passed  int             // files and folders that the settings name to be passed over
 }
 

@@ -75,7 +75,10 @@ func (b *beginning) addHeld(ctx context.Context) error {
 	claims := prepare.Claims(b.root, p.sheet)
 	for file, rows := range claims {
 		if b.rel(file) != rows[0].Absorbance {
-			b.endings[strings.ToLower(endingOf(file))] = true
+			b.scans[strings.TrimSuffix(b.rel(file), endingOf(file))] = true
+			if rows[0].Exclude == "" { // else it may be what nobody can read
+				b.endings[strings.ToLower(endingOf(file))] = true
+			}
 		}
 	}
 	files, err := b.lookAround(ctx, claims)

@@ -10,6 +10,7 @@ import (
 	"unicode"
 
 	"tarnlight/eem"
+	"tarnlight/eem/scanfile"
 	"tarnlight/eem/survey"
 )
 
@@ -32,12 +33,56 @@ const (
 // reason is what stands under exclude.
 func (d *drafted) reason() string {
 	switch {
-	case d.aside == "":
-		return ""
+	case d.aside == "" || d.misnamed:
+		return d.aside
 	case d.unknownConc:
 		return d.aside + concRemedy
 	}
 	return d.aside + remedy
+}
+
+// papers are endings of what is kept beside scans and never one, whatever its name.
+var papers = map[string]bool{".bmp": true, ".doc": true, ".docx": true, ".gif": true, ".heic": true, ".jpeg": true, ".jpg": true, ".md": true,
+	".odt": true, ".pdf": true, ".png": true, ".ppt": true, ".pptx": true, ".rtf": true, ".tif": true, ".tiff": true}
+
+// unreadable are the files that a telling pattern fits and nobody can read: somebody
+// measured a bottle. What lies beside a scan of the same name in another form is one
+// more copy of it.
+func (b *beginning) unreadable(files []found, w *naming) []misfit {
+	if w.pattern == nil || !slices.ContainsFunc([]string{"date", "kind", "n", "dilution", "nm"}, w.pattern.Has) {
+		return nil // {id} fits everything
+	}
+	for i := range files {
+		if f := &files[i]; f.guess.Content == scanfile.ScanContent {
+			b.scans[strings.TrimSuffix(f.path, endingOf(f.path))] = true
+		}
+	}
+	var out []misfit
+	for i := range files {
+		f := files[i]
+		ending := endingOf(f.path)
+		if c := f.guess.Content; c != scanfile.Unknown && c != scanfile.WorkbookContent || b.told[f.path] || papers[strings.ToLower(ending)] {
+			continue
+		}
+		why, note := b.leftWhy(&f, nil), f.guess.Content == scanfile.Unknown && !f.guess.NoText
+		f.guess = scanfile.Guess{Content: scanfile.ScanContent}
+		if w.fits(&f, note) && !b.scans[strings.TrimSuffix(f.path, ending)] {
+			out = append(out, misfit{&f, why})
+			b.told[f.path] = true
+		}
+	}
+	return out
+}
+
+// fits says whether a name follows the pattern; that of a text without numbers, which
+// may be a note, must do so with a known kind or an excitation.
+func (w *naming) fits(f *found, note bool) bool {
+	_, ok := w.match(f)
+	if ok && note && !w.pattern.Has("nm") {
+		_, why := w.of(f)
+		return why == "" && w.pattern.Has("kind")
+	}
+	return ok
 }
 
 // asideOf makes bottles of misfits by their bare names, as begin does without a

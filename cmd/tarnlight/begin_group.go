@@ -28,6 +28,7 @@ type drafted struct {
 	replicateOf string
 	aside       string // why it is set aside; empty: it is not
 	unknownConc bool   // because its row needs concentrations
+	misnamed    bool   // because a file must be renamed; correcting the row is no remedy
 	broken      string // what is wrong with the one file that it has by name alone
 }
 
@@ -63,7 +64,7 @@ func (b *beginning) group(files []found) []*drafted {
 		d.take(f)
 	}
 	out = append(out, b.takeSpoilt(files, w, at)...)
-	out = append(out, b.asideOf(misfits, w.stems)...)
+	out = append(out, b.asideOf(append(misfits, b.unreadable(files, w)...), w.stems)...)
 	slices.SortStableFunc(out, func(x, y *drafted) int {
 		return cmp.Or(cmp.Compare(x.last(), y.last()), strings.Compare(x.day, y.day), strings.Compare(x.id, y.id), cmp.Compare(x.order(), y.order()), strings.Compare(x.files[0], y.files[0]))
 	})

@@ -49,11 +49,14 @@ func (b *beginning) tellLeft(files []found, serve map[string]*found) {
 
 // leftWhy says why a file was not used, empty where it was, or where that was told.
 func (b *beginning) leftWhy(f *found, serve map[string]*found) string {
+	if b.told[f.path] {
+		return ""
+	}
 	switch f.guess.Content {
 	case scanfile.ScanContent:
 		return ""
 	case scanfile.AbsorbContent:
-		if serve[f.path] != nil || b.told[f.path] {
+		if serve[f.path] != nil {
 			return ""
 		}
 		return "absorbance, and no new bottle has its name; write it into the row that it belongs to"
@@ -63,9 +66,6 @@ func (b *beginning) leftWhy(f *found, serve map[string]*found) string {
 		return "no scan but a table; known concentrations belong into conc: columns of the run sheet, limits are named under [quantify] limits in survey.toml"
 	case scanfile.WorkbookContent:
 		return "a workbook or an archive; scans are read from text files, export them as such"
-	}
-	if b.told[f.path] {
-		return ""
 	}
 	return cmp.Or(f.guess.Why, "no scan")
 }
