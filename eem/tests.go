@@ -56,6 +56,7 @@ var Tests = sortTests([]Test{
 	{"not-converged", Doubt, 0, "", "the fit stopped before its tolerance was met", "-"},
 	{"components-changed", Remark, 0, "", "a refit of the survey has other components than the results that it replaces", "Lorenzo-Seva & ten Berge 2006, Methodology 2, 57: congruence 0.95"},
 	{"peak-open", Doubt, 0, "", "the data leave a resolved component open at its own peak", "-"},
+	{"peak-unseen", Remark, 0, "share", "the spectra of a resolved component are greatest where emission is not longer than excitation, so that nothing fluoresces there", "Stokes' law"},
 	{"no-model-passes", Doubt, 0, "", "no number of components passes every test of the choice", "-"},
 	{"model-parts", Remark, 0, "", "the fixed model does not say how sure its spectra are, so that no uncertainty made with it holds that", "-"},
 	{"unlike-residual", Doubt, 0, "", "a bottle leaves more of its signal over than the bottles of the fixed model do (99 % limit)", "Box 1954 (from memory)"},

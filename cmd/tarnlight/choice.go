@@ -138,8 +138,12 @@ func (j *job) modelTable() *report.Table {
 				reason = "chosen because: " + j.set.Resolve.Because + "; the tests: " + reason
 			}
 		}
+		unseen := j.unseen(fit)
+		if unseen != "" {
+			reason = strings.TrimPrefix(reason+"; greatest where nothing fluoresces: "+unseen, "; ")
+		}
 		t.Append(fit.Components, len(fit.IDs), cells, fit.Loss, fit.Explained, fit.CoreConsistency, ex, em, len(fit.Starts), agree, fit.Iterations,
-			fit.Status == parafac.Converged, fit.Certificate, fit.Structure, fit.TripleCosine, fit.Revived, "", verdict, fit == j.fit, reason,
+			fit.Status == parafac.Converged, fit.Certificate, fit.Structure, fit.TripleCosine, fit.Revived, unseen == "", verdict, fit == j.fit, reason,
 			strconv.FormatUint(j.set.Resolve.Seed, 10))
 	}
 	return t

@@ -19,7 +19,7 @@ var concerns = map[string][]string{
 	concernInstrument: {"axes-swapped", "absorbance-negative", "batch-rejected", "batch-scale", "blank-borrowed", "blank-drift", "blank-level", "blank-range", "chart-rule",
 		"counts", "lamp-lines", "low-light", "negative", "no-blank", "no-light", "plateau", "raman-law", "raman-range", "saturated",
 		"scan-dropped", "scan-repeated", "spike", "wavelength"},
-	concernModel: {"components-changed", "few-cells", "no-model-passes", "not-converged", "overlap", "peak-open", "starts-disagree",
+	concernModel: {"components-changed", "few-cells", "no-model-passes", "not-converged", "overlap", "peak-open", "peak-unseen", "starts-disagree",
 		"structure", "unexplained", "unknown", "unlike-residual", "unlike-scores"},
 	concernLimit: {"above-standards", "absorbance-limit", "alert", "control-action", "control-recovery", "dilution-differs", "duplicate", "field-blank",
 		"field-duplicate", "holding-time", "linearity", "spike-recovery", "standard-recovery"},

@@ -127,11 +127,7 @@ func (j *job) fitNotes(chosen *unmix.Set) {
 			j.flags = append(j.flags, j.sv.Accept(f))
 		}
 	}
-	for _, c := range chosen.Components {
-		if j1, k1 := floats.MaxIdx(c.Ex), floats.MaxIdx(c.Em); !c.ExDetermined[j1] || !c.EmDetermined[k1] {
-			j.flags = append(j.flags, j.sv.Accept(eem.NewFlag(eem.Flag{Component: c.Name, Method: "parafac", Test: "peak-open", Severity: eem.Doubt, Value: nan, Limit: nan,
-				Msg: fmt.Sprintf("the data do not determine %s at its own peak (ex %s / em %s nm), so that its contributions have no sure scale; too much of it lies under scatter or beyond the scans", c.Name,
-					eem.NM(chosen.Grid.Ex.At(j1)), eem.NM(chosen.Grid.Em.At(k1)))})))
-		}
-	}
+	j.peakNotes(chosen, func(c *unmix.Component) bool {
+		return !c.ExDetermined[floats.MaxIdx(c.Ex)] || !c.EmDetermined[floats.MaxIdx(c.Em)]
+	})
 }

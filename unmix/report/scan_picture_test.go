@@ -78,7 +78,12 @@ func TestPeakUndetermined(t *testing.T) {
 		t.Error(got)
 	}
 	c.ex = seen
-	if got := r.peakText(c); got != "C1  (ex 310, em 310 nm)" {
+	c.ex.nm = []float64{280, 290, 300}
+	if got := r.peakText(c); got != "C1  (ex 290, em 310 nm)" {
+		t.Error(got)
+	}
+	c.ex.nm = []float64{290, 315, 330} // nothing fluoresces at ex 315 / em 310 nm
+	if got := r.peakText(c); got != "C1  (seen peak ex 315, em 320 nm)" {
 		t.Error(got)
 	}
 	if oneScan(eem.Grid{Ex: axis(t, 240, 250, 5), Em: axis(t, 300, 310, 5)}) {

@@ -193,7 +193,7 @@ var Schema = []File{
 		{"structure", "", "mean correlation of neighbouring residuals; 0 is noise"},
 		{"triple_cosine", "", "largest product of the three modes' cosines between two components; above 0.7 one is shared by two"},
 		{"revived", "", "components that died and were started again"},
-		{"plausible", "", "whether the spectra look like fluorescence spectra"},
+		{"plausible", "", "whether every component is greatest where it can fluoresce, emission longer than excitation; false speaks of scatter or of one component too many"},
 		{"verdict", "", "pass, doubt or fail"},
 		{"chosen", "", "true for the model that the results rest on"},
 		{"reason", "", "why it passed or failed, in words"},

@@ -9,6 +9,7 @@ import (
 	"gonum.org/v1/plot/vg/draw"
 
 	"tarnlight/eem"
+	"tarnlight/unmix"
 )
 
 // line is a spectrum: loadings, NaN where undetermined, with standard
@@ -74,9 +75,9 @@ func (l *line) peak() float64 {
 	return l.nm[at]
 }
 
-// surface returns the product of both spectra on their own axes; ok is false where
-// they do not form a grid, or one of a single
-// excitation, whose spectrum says all.
+// surface returns the product of both spectra on their own axes, NaN where emission
+// is not longer than excitation; ok is false where they do not form a grid, or one of
+// a single excitation, whose spectrum says all.
 func (c *component) surface() (g eem.Grid, v []float64, ok bool) {
 	var err1, err2 error
 	g.Ex, err1 = eem.NewAxis(c.ex.nm)
@@ -85,16 +86,24 @@ func (c *component) surface() (g eem.Grid, v []float64, ok bool) {
 		return g, nil, false
 	}
 	v = make([]float64, 0, g.Cells())
-	for _, x := range c.ex.v {
-		for _, m := range c.em.v {
+	for j, x := range c.ex.v {
+		for k, m := range c.em.v {
+			if c.em.nm[k] <= c.ex.nm[j] {
+				m = math.NaN()
+			}
 			v = append(v, x*m)
 		}
 	}
 	return g, v, true
 }
 
-// peakText is the component's name with the peaks of its spectra.
+// peakText is the component's name with the peaks of its spectra; where both are
+// greatest is no peak where nothing fluoresces: then with that of what can be seen.
 func (r *results) peakText(c *component) string {
+	own, seen := unmix.Peak(c.ex.nm, c.em.nm, c.ex.open, c.em.open)
+	if own != seen && seen[0] >= 0 {
+		return fmt.Sprintf("%s  (seen peak ex %s, em %s nm)", c.name, r.num.nm(c.ex.nm[seen[0]]), r.num.nm(c.em.nm[seen[1]]))
+	}
 	word := func(mode string, l *line) string {
 		if at := l.peak(); finite(at) {
 			return mode + " " + r.num.nm(at)
