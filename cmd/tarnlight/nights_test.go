@@ -2,6 +2,7 @@ package main
 
 import (
 	"encoding/json"
+	"fmt"
 	"os"
 	"path/filepath"
 	"slices"
@@ -22,13 +23,23 @@ func TestSixNights(t *testing.T) {
 	add := func(code int) result { t.Helper(); return call("begin", dir, "--add", "--csv").want(t, code) }
 	apply := func(code int) status {
 		t.Helper()
-		call("apply", model, dir, "--since-last", "--pictures=false").want(t, code)
+		r := call("apply", model, dir, "--since-last", "--pictures=false").want(t, code)
 		var s status
 		if err := json.Unmarshal([]byte(read(t, dir, "out", "status.json")), &s); err != nil {
 			t.Fatal(err)
 		}
 		if s.ExitCode != code || !s.SinceLast {
 			t.Errorf("status.json says %+v, the exit code was %d", s, code)
+		}
+		b := s.Bottles
+		if b["new_rejected"] != len(s.Rejected) || b["new_usable"]+b["new_rejected"]+b["new_excluded"] != b["new"] {
+			t.Errorf("bottles %v, rejected %v", b, s.Rejected)
+		}
+		for _, w := range []string{fmt.Sprintf("that the last results lack: %d usable, %d rejected, ", b["new_usable"], b["new_rejected"]),
+			fmt.Sprintf("the folder in all: %d bottles: %d usable, %d rejected, ", b["all"], b["usable"], b["rejected"])} {
+			if b["new"] > 0 && !strings.Contains(r.err, w) {
+				t.Errorf("no %q in:\n%s", w, r.err)
+			}
 		}
 		return s
 	}
@@ -123,6 +134,9 @@ func TestSixNights(t *testing.T) {
 		concerns(s, concernModel, "W10")
 		if s.Tests["unlike-residual"] == 0 {
 			t.Errorf("tests %v", s.Tests)
+		}
+		if s.Bottles["rejected"] != 5 || s.Bottles["new_rejected"] != 0 || len(s.Rejected) != 0 { // of two nights before
+			t.Errorf("bottles %v, rejected %v", s.Bottles, s.Rejected)
 		}
 	})
 	t.Run("normal again", func(t *testing.T) {

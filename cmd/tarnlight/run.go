@@ -8,8 +8,6 @@ import (
 	"path/filepath"
 
 	"github.com/spf13/cobra"
-
-	"tarnlight/eem"
 )
 
 // jobCmd makes a verb that works on one survey.
@@ -125,9 +123,6 @@ func (j *job) printOutcome(s streams, st status) error {
 	}
 	if err := t.print(s.out); err != nil {
 		return err
-	}
-	if st.SinceLast {
-		fmt.Fprintf(s.err, "%s that the last results lack; what follows speaks of these\n", eem.Count(st.Bottles["new"], "bottle"))
 	}
 	fmt.Fprintln(s.err, st.line())
 	j.tellChances(s.err)

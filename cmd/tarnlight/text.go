@@ -70,10 +70,19 @@ func inFull(v float64, digits int) string {
 	return short
 }
 
-// line is the outcome in one line.
+// line is the outcome in one line: of the new bottles where the status speaks of them.
 func (st status) line() string {
-	return fmt.Sprintf("%s: %d usable, %d rejected, %d excluded; %s, %s", eem.Count(st.Bottles["all"], "bottle"), st.Bottles["usable"],
-		st.Bottles["rejected"], st.Bottles["excluded"], eem.Count(st.Findings["doubts"], "doubt"), eem.Count(st.Findings["notes"], "note"))
+	found := fmt.Sprintf("%s, %s", eem.Count(st.Findings["doubts"], "doubt"), eem.Count(st.Findings["notes"], "note"))
+	if st.SinceLast {
+		return fmt.Sprintf("%s that the last results lack: %s; %s\nthe folder in all: %s: %s", eem.Count(st.Bottles["new"], "bottle"), st.states("new_"), found,
+			eem.Count(st.Bottles["all"], "bottle"), st.states(""))
+	}
+	return fmt.Sprintf("%s: %s; %s", eem.Count(st.Bottles["all"], "bottle"), st.states(""), found)
+}
+
+// states counts bottles by their state, those of the keys with this prefix.
+func (st status) states(of string) string {
+	return fmt.Sprintf("%d usable, %d rejected, %d excluded", st.Bottles[of+"usable"], st.Bottles[of+"rejected"], st.Bottles[of+"excluded"])
 }
 
 // median of sorted values.
