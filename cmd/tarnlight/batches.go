@@ -96,10 +96,41 @@ func (j *job) verdict(bt *prepare.Batch) (string, []string) {
 	if blank {
 		reasons = append(reasons, "a field blank holds what some of its samples hold little more of")
 	}
+	if all := j.allDoubted(bt); all != "" {
+		reasons = append(reasons, all)
+		blank = true
+	}
 	if verdict == "good" && blank {
 		verdict = "doubt"
 	}
 	return verdict, reasons
+}
+
+// allDoubted says so where no sample of a batch has a single result without a doubt;
+// such a batch is not good, whatever its blanks and quality samples show.
+func (j *job) allDoubted(bt *prepare.Batch) string {
+	sample := map[string]bool{}
+	for _, b := range bt.Bottles {
+		if b.Row.Kind == survey.Sample && !b.Excluded {
+			sample[b.Row.ID] = true
+		}
+	}
+	judged := 0
+	for _, m := range j.judge {
+		for _, c := range m.Contributions {
+			if !sample[c.ID] {
+				continue
+			}
+			if len(c.Reasons) == 0 && c.Qualifier != unmix.NotUsable {
+				return ""
+			}
+			judged++
+		}
+	}
+	if judged == 0 || len(sample) < 2 { // a single sample's own doubt says it
+		return ""
+	}
+	return fmt.Sprintf("not one of the %d samples has a result without a doubt", len(sample))
 }
 
 // joined puts a comma between what is not empty.

@@ -178,6 +178,13 @@ pictures = "none"
 	if zero != 5 {
 		t.Errorf("%d rows of the zero sample", zero)
 	}
+	// Nothing here is sure, and the batch is not called good.
+	if b := table(t, dir, "out", "batches.csv"); b.Text(0, b.Col("verdict")) != "doubt" || !strings.Contains(b.Text(0, b.Col("reason")), "not one of the 33 samples") {
+		t.Errorf("the batch is called %q, %q", b.Text(0, b.Col("verdict")), b.Text(0, b.Col("reason")))
+	}
+	if s := table(t, dir, "out", "steps.csv"); cell(t, s, "unit", "step", "noise", "parameter", "read noise") != "RU" {
+		t.Error("readings in RU have a noise in another unit")
+	}
 	// Of these two both diagonals glow: the flag speaks of scatter, not of a substance.
 	for _, id := range []string{"GRA_201016_m201023", "GRA_201211_m201223"} {
 		f := table(t, dir, "out", "flags.csv")

@@ -143,10 +143,14 @@ func (bt *Batch) noteNoise(n *correct.Noise, from string) {
 		if m == nil || b.raw == nil {
 			continue
 		}
+		unit, per := "counts", "count"
+		if b.skips(stepIntensity) && bt.Unit != eem.Counts {
+			unit, per = string(bt.Unit), string(bt.Unit) // the files came in it
+		}
 		e := *b.raw
 		e.Notes = append(slices.Clone(e.Notes), eem.Note{Step: correct.StepNoise, Msg: "variance of every cell: read noise squared plus shot noise", Params: []eem.Param{
-			{Name: "read noise", Value: fmt.Sprintf("%.6g", m.Read), Unit: "counts", Source: source},
-			{Name: "shot noise, variance per count", Value: fmt.Sprintf("%.6g", m.Shot), Unit: "counts", Source: source}}})
+			{Name: "read noise", Value: fmt.Sprintf("%.6g", m.Read), Unit: unit, Source: source},
+			{Name: "shot noise, variance per " + per, Value: fmt.Sprintf("%.6g", m.Shot), Unit: unit, Source: source}}})
 		if b.EEM == b.raw {
 			b.EEM = &e
 		}

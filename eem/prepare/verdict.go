@@ -17,7 +17,7 @@ func (bt *Batch) Verdict() (verdict string, reasons []string) {
 		verdict, reasons = "doubt", append(reasons, "no intensity scale: "+bt.Reason)
 	}
 	if n := bt.rejected(); n > 0 {
-		reasons = append(reasons, fmt.Sprintf("%d of %s rejected", n, eem.Count(len(bt.Bottles), "bottle")))
+		reasons = append(reasons, fmt.Sprintf("%d of %s of all kinds rejected", n, eem.Count(len(bt.Bottles), "bottle")))
 	}
 	for _, b := range bt.Blanks {
 		for _, f := range b.Flags {

@@ -227,7 +227,7 @@ var Schema = []File{
 		{"batch", "", "name"},
 		{"setup", "", "the setup it was measured with"},
 		{"measured", "", "day"},
-		{"samples", "", "bottles, field blanks included"},
+		{"samples", "", "samples and field blanks; blanks, standards, controls and spikes are bottles too and count where the reason speaks of bottles of all kinds"},
 		{"blanks", "", "ids of the blanks used"},
 		{"standards", "", "number of standards"},
 		{"controls", "", "number of controls and spikes"},

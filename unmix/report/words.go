@@ -35,8 +35,8 @@ var stepText = map[string]stepWords{
 	"read":       {"The instrument's text files were read; nothing was changed in them.", "", ""},
 	"saturation": {"Readings at or above the limit of the detector were left out.", "F missing where F ≥ limit", ""},
 	"detector":   {"Faults of single readings were looked for: scans with dropped readings, and spikes that stand out alone; such readings were left out.", "", ""},
-	"noise": {"The noise of the readings was estimated from the blanks of each setup; it weighs the cells and enters every uncertainty.",
-		"variance of a reading = (read noise)² + factor · counts", ""},
+	"noise": {"The noise of the readings was estimated from replicate blanks; it weighs the cells and enters every uncertainty.",
+		"variance of a reading = (read noise)² + factor · reading", ""},
 	"temperature": {"Intensities were brought to one temperature with the coefficient given.", "F = F / (1 + ρ · (T − T_ref))", "Watras et al. 2011, Limnol. Oceanogr. Methods 9, 296 (from memory)"},
 	"offset":      {"The dark reading of the detector was subtracted.", "F = F_read − offset", ""},
 	"spectral factors": {"Excitation and emission were corrected for the wavelength-dependent response of the instrument; cells outside the certified range were left out, never extrapolated.",
@@ -110,10 +110,27 @@ func (r *results) methodSteps() []*methodStep {
 			m.params = append(m.params, text)
 		}
 	}
+	for _, m := range out {
+		if m.name == "noise" {
+			m.words.what = noiseText(strings.Join(m.params, "; "))
+		}
+	}
 	for _, m := range r.methods() {
 		out = append(out, &methodStep{name: methodName(m), words: methodText[m]})
 	}
 	return append(out, &methodStep{name: "uncertainty", words: uncertaintyText}, &methodStep{name: "detection", words: limitsText})
+}
+
+// noiseText is the text of step noise, after where its parameters come from.
+func noiseText(params string) string {
+	own := strings.Contains(params, "own scans")
+	switch {
+	case own && strings.Contains(params, "blanks"):
+		return strings.Replace(stepText["noise"].what, "replicate blanks", "replicate blanks, where there were too few from the roughness of each bottle's own scans", 1)
+	case own:
+		return strings.Replace(stepText["noise"].what, "replicate blanks", "the roughness of each bottle's own scans, because there were too few blanks", 1)
+	}
+	return stepText["noise"].what
 }
 
 // baseName keeps only the last part of a path: what is handed over shows no
