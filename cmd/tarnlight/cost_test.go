@@ -5,10 +5,10 @@ package main
 import (
 	"context"
 	"io"
-	"syscall"
 	"testing"
 
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix"
 	"tarnlight/unmix/merit"
 )
@@ -91,13 +91,6 @@ func BenchmarkCost(b *testing.B) {
 // processor reports the processor time of a benchmark: on a machine that does other
 // things besides, the clock tells less.
 func processor(b *testing.B) func() {
-	used := func() float64 {
-		var r syscall.Rusage
-		if err := syscall.Getrusage(syscall.RUSAGE_SELF, &r); err != nil {
-			b.Fatal(err)
-		}
-		return float64(r.Utime.Nano()+r.Stime.Nano()) / 1e9
-	}
-	before := used()
-	return func() { b.ReportMetric((used()-before)/float64(b.N), "cpu-s/op") }
+	before := testkit.ProcessorTime(b)
+	return func() { b.ReportMetric((testkit.ProcessorTime(b)-before).Seconds()/float64(b.N), "cpu-s/op") }
 }

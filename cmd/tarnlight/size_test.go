@@ -12,12 +12,12 @@ import (
 	"strconv"
 	"strings"
 	"sync"
-	"syscall"
 	"testing"
 	"time"
 
 	"tarnlight/eem/scanfile"
 	"tarnlight/eem/survey"
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix/report"
 )
 
@@ -64,9 +64,9 @@ func sizes(t *testing.T, n int, dir string) {
 	rs := renderSettings(set)
 	rs.Pictures = true
 	spent := map[string]time.Duration{}
-	start, last := time.Now(), processorTime(t)
+	start, last := time.Now(), testkit.ProcessorTime(t)
 	err = report.Render(context.Background(), out, rs, func(_, _ int, what string) {
-		now := processorTime(t)
+		now := testkit.ProcessorTime(t)
 		spent[what] += now - last // the time up to a report is spent on what it tells
 		last = now
 	})
@@ -91,7 +91,7 @@ func readRaw(t *testing.T, dir string) time.Duration {
 	if err != nil || len(files) == 0 {
 		t.Fatalf("no raw files in %s, %v", dir, err)
 	}
-	start := processorTime(t)
+	start := testkit.ProcessorTime(t)
 	next := make(chan string)
 	var wg sync.WaitGroup
 	for range runtime.GOMAXPROCS(0) {
@@ -108,16 +108,7 @@ func readRaw(t *testing.T, dir string) time.Duration {
 	}
 	close(next)
 	wg.Wait()
-	return processorTime(t) - start
-}
-
-// processorTime is what the process has used so far.
-func processorTime(t *testing.T) time.Duration {
-	var u syscall.Rusage
-	if err := syscall.Getrusage(syscall.RUSAGE_SELF, &u); err != nil {
-		t.Fatal(err)
-	}
-	return time.Duration(u.Utime.Nano() + u.Stime.Nano())
+	return testkit.ProcessorTime(t) - start
 }
 
 // bytesOf is the size of a file or of all files of a folder.
