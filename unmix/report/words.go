@@ -56,7 +56,7 @@ var methodText = map[string]stepWords{
 	"references": {"Each sample was described as a sum of the spectra of known references, none of them negative (non-negative least squares).",
 		"min ‖F − Σ c_f · R_f‖², c_f ≥ 0", "Lawson & Hanson 1974, Solving Least Squares Problems, ch. 23"},
 	"parafac": {"The samples of the survey were resolved together into components that share their excitation and emission spectra (parallel factor analysis, all factors non-negative).",
-		"F_ijk = Σ_f a_if · b_jf · c_kf + e_ijk, all ≥ 0; Fmax = a_if with the maxima of b and c set to 1", "Bro 1997, Chemom. Intell. Lab. Syst. 38, 149 (from memory)"},
+		"F_ijk = Σ_f a_if · b_jf · c_kf + e_ijk, all ≥ 0; Fmax = a_if with the maxima of b and c set to 1", "Bro 1997, Chemom. Intell. Lab. Syst. 38, 149"},
 	"model": {"Each sample was described as a sum of the components of a model that had been fitted before and was not changed, none of them negative.",
 		"min ‖F − Σ a_f · b_f c_fᵀ‖², a_f ≥ 0", "Lawson & Hanson 1974, Solving Least Squares Problems, ch. 23"},
 }
