@@ -15,7 +15,7 @@ import (
 // which two of three samples hold, is not. What the references leave over peaks
 // where phenylalanine's own solution S3 does, to 5 nm.
 func TestAminoMissing(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	data := testkit.Shared(t, "data", "amino_acids")
 	known := aminoKnown(t, data)
 	sheet := fmt.Sprintf("id,kind,scans,conc:tryptophan [mol/L],conc:tyrosine [mol/L]\nS1,standard,S1,%g,\nS2,standard,S2,,%g\nS3,sample,S3,,\nS4,sample,S4,,\nS5,sample,S5,,\n",

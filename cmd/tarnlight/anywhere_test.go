@@ -10,13 +10,14 @@ import (
 	"time"
 
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 )
 
 // The whole results folder, pictures, workbook and page included, has the same bytes
 // on 1, 2 and 8 workers, in any locale and time zone, whatever the order in which a
 // folder lists its files, their times, and the place of the survey.
 func TestSameAnywhere(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	files := map[string]string{}
 	var names []string
 	for f := range synth.Demo(1).Files() {

@@ -7,6 +7,8 @@ import (
 	"slices"
 	"strings"
 	"testing"
+
+	"tarnlight/eem/testkit"
 )
 
 // model5 resolves the demo without its spill into five components and returns the
@@ -68,7 +70,7 @@ func TestApply(t *testing.T) {
 // which is as sure as it was when the model was made; a file of a former version has
 // no word of it, and that is told.
 func TestApplyBudget(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	model := model5(t)
 	dir := demoFolder(t, nil)
 	call("apply", model, dir, "--pictures=false").want(t, exitDoubt)
@@ -103,7 +105,7 @@ func TestApplyBudget(t *testing.T) {
 // A model does not fit another unit, other corrections, or scans that cover too
 // little of a component; the message says what to do.
 func TestApplyRefuses(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	model := model5(t)
 	y := newTiny()
 	dir := y.write(t)

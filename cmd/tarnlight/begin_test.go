@@ -7,13 +7,14 @@ import (
 	"testing"
 
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 )
 
 // begin on the demo's raw files alone, with nothing but their names and content:
 // the draft is accepted by check and run, ids, kinds and absorbance files are
 // those of the sheet that was taken away, and nothing that is there is touched.
 func TestBeginDrafts(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	for _, asCSV := range []bool{false, true} {
 		dir := t.TempDir()
 		if err := synth.Demo(1).Write(dir); err != nil {

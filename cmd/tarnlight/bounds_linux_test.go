@@ -13,6 +13,8 @@ import (
 	"testing"
 	"time"
 
+	"tarnlight/eem/testkit"
+
 	"github.com/xuri/excelize/v2"
 )
 
@@ -116,7 +118,7 @@ func bomb(t *testing.T) string {
 // memory than a run without it. 2 GB of zeros in every place where a file is read, a
 // small run sheet that unpacks to 200 MB, a million columns.
 func TestBoundedMemory(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	million := "id" + strings.Repeat(",x", 1_000_000) + "\n"
 	var head strings.Builder
 	head.WriteString("em_nm\\ex_nm")
@@ -317,7 +319,7 @@ func openTemp(t *testing.T) string {
 // A survey on a share that may only be read: run says so before it computes, and what
 // to do; with --out elsewhere the job is done. begin --add says so too.
 func TestReadOnlySurvey(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	dir := filepath.Join(openTemp(t), "survey")
 	y := newTiny()
 	for name, text := range y.files {

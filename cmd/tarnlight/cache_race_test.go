@@ -7,6 +7,8 @@ import (
 	"strings"
 	"sync"
 	"testing"
+
+	"tarnlight/eem/testkit"
 )
 
 // Runs at once, whatever they share, leave the bytes of a fresh run: two that work
@@ -14,7 +16,7 @@ import (
 // which those that come too late say who is at work; one whose cache is deleted while
 // it reads, again and again.
 func TestCacheAmongRuns(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	dir := t.TempDir()
 	if err := smallDemo(t).Write(dir); err != nil {
 		t.Fatal(err)

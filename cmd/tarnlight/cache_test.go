@@ -10,6 +10,7 @@ import (
 
 	"tarnlight/eem"
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 )
 
 // smallDemo is the first day of the invented survey on a coarse grid: blanks, a
@@ -70,7 +71,7 @@ func sameFiles(t *testing.T, what string, got, want map[string]string) {
 // changed, after half of the entries are gone, after one is damaged, when rows
 // moved, and when settings changed.
 func TestCache(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	dir := t.TempDir()
 	if err := smallDemo(t).Write(dir); err != nil {
 		t.Fatal(err)

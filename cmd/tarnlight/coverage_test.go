@@ -11,6 +11,7 @@ import (
 
 	"tarnlight/eem"
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix"
 )
 
@@ -240,7 +241,7 @@ func atLimit(s *synth.Survey, limit map[synth.TruthRow]float64) *synth.Survey {
 // 500 surveys gave 95.8 % of 40,102 contributions, components 95.5 to 95.9 %; 5.6 % of
 // 9,898 absent ones detected, and 93.3 % of 4,940 at the detection limit.
 func TestCoverageReferences(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	n, long := surveys(t, 4)
 	overReferences(t, n, true, func(seed uint64) synth.Design { return erring(seed, long) }).check(t)
 }
@@ -251,7 +252,7 @@ func TestCoverageReferences(t *testing.T) {
 // 60 surveys gave 95.2 % of 4,797 contributions, components 93.5 to 97.3 %; 5.8 % of
 // 1,203 absent ones detected.
 func TestCoverageDosed(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	n, long := surveys(t, 3)
 	overReferences(t, n, false, func(seed uint64) synth.Design {
 		d := erring(seed, long)
@@ -292,7 +293,7 @@ func heights(s *synth.Survey, set *unmix.Set) (name map[string]string, height ma
 // 9,898 absent ones detected, components 1.4 to 5.2 %, and 97.2 % of 1,233 at the
 // detection limit.
 func TestCoverageParafac(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	n, long := surveys(t, 3)
 	const five = "[resolve]\ncomponents = 5\n"
 	v := newCoverage(n)

@@ -15,6 +15,7 @@ import (
 	"testing"
 
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 )
 
 // damages are what happens to files on their way from an instrument: each changes
@@ -148,7 +149,7 @@ func rowsByID(t *testing.T, dir, name string) map[string]string {
 // happened to, nor to what they rest on, have the numbers of the clean survey.
 // TARNLIGHT_DAMAGED is how many, 30 without it, or which, as 123-456.
 func TestDamagedSurveys(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	first, last := 1, 30
 	if v := os.Getenv("TARNLIGHT_DAMAGED"); v != "" {
 		from, to, found := strings.Cut(v, "-")

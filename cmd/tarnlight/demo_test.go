@@ -19,7 +19,7 @@ func TestDemo(t *testing.T) {
 	r := call("demo", dir).want(t, exitDone)
 	used := testkit.ProcessorTime(t) - idle
 	t.Logf("demo took %v, %v of the processors\n%s%s", time.Since(start).Round(time.Millisecond), used.Round(time.Millisecond), r.out, r.err)
-	if !raceDetector && used > 30*time.Second {
+	if !testkit.Race && used > 30*time.Second {
 		t.Errorf("took %v, limit 30 s", used)
 	}
 	lines := strings.Split(strings.TrimSpace(r.out), "\n")
@@ -44,7 +44,7 @@ func TestDemo(t *testing.T) {
 			t.Errorf("%s: %v", name, err)
 		}
 	}
-	if raceDetector {
+	if testkit.Race {
 		return // what follows takes as long again and starts nothing new side by side
 	}
 	// The demo can be run again over itself, and its results verified.

@@ -6,6 +6,8 @@ import (
 	"runtime"
 	"strings"
 	"testing"
+
+	"tarnlight/eem/testkit"
 )
 
 // below lists what lies below a folder, results and the cache left out.
@@ -72,7 +74,7 @@ func TestSheetStaysBelowRoot(t *testing.T) {
 // Names that come from files never lead a result out of its folder: ids, batches,
 // sites, components and titles with separators and dots, in run and in apply.
 func TestResultsStayInFolder(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	y := newTiny()
 	odd := []string{"../../up", "..", "/tmp/abs", `..\..\up`, "a/../../b", "~/home", "C:up", "con"}
 	y.sheet[0] = strings.NewReplacer("conc:a", "conc:../../a", "conc:b", "conc:/tmp/b").Replace(y.sheet[0]) + ",site,batch"

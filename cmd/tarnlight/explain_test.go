@@ -8,6 +8,8 @@ import (
 	"regexp"
 	"strings"
 	"testing"
+
+	"tarnlight/eem/testkit"
 )
 
 // columns reads a raw text file of two columns into a map, by nothing of ours.
@@ -27,7 +29,7 @@ func columns(t *testing.T, path ...string) map[float64]float64 {
 // one cell from the raw text by the formulas of the README's sources, is the
 // number in survey.nc.
 func TestExplainChain(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	dir := demoFolder(t, nil)
 	runNoPictures(t, dir)
 	const ex, em, dilution = 250.0, 458.0, 5.0

@@ -20,15 +20,6 @@ type result struct {
 	out, err string
 }
 
-// heavy leaves a test out under the race detector, where it takes minutes of
-// processor time and runs the same code as the tests that stay.
-func heavy(t testing.TB) {
-	t.Helper()
-	if raceDetector {
-		t.Skip("too long under the race detector; runs without it")
-	}
-}
-
 // call runs the program in process.
 func call(args ...string) result {
 	var out, errs bytes.Buffer

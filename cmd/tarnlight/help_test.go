@@ -7,11 +7,12 @@ import (
 	"testing"
 
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 )
 
 // Every verb's help has examples, and every example runs.
 func TestExamplesRun(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	base := t.TempDir()
 	t.Chdir(base)
 	survey := func(name string) {

@@ -12,6 +12,7 @@ import (
 	"tarnlight/eem"
 	"tarnlight/eem/prepare"
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 )
 
 // ladderLimit is the total absorbance up to which the correction holds (the default
@@ -55,7 +56,7 @@ const ladderWindow = "excitation_window_cm = [0.2, 0.8]\nemission_window_cm = [0
 // left out; with them in, the reference is wrong, which shows that the test can
 // tell.
 func TestLadder(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	for _, c := range []struct{ name, scans, test string }{
 		{"limit stated", "", "saturated"},
 		{"limit inferred", "saturation = 0\n", "plateau"},

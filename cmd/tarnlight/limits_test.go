@@ -5,13 +5,14 @@ import (
 	"strings"
 	"testing"
 
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix"
 )
 
 // The laboratory's own limits decide and are reported; those it leaves out stay
 // computed; what cannot be meant is refused with file, line and remedy.
 func TestOwnLimits(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	y := newTiny()
 	y.files["limits.csv"] = "component,detection_limit,unit\na,0.9,mg/L\nelsewhere,3,mg/L\n"
 	y.settings += "[quantify]\nlimits = \"limits.csv\"\n"

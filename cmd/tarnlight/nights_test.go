@@ -10,6 +10,7 @@ import (
 	"testing"
 
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 )
 
 // Six nights of a job that calls begin --add and apply --since-last: a normal one,
@@ -17,7 +18,7 @@ import (
 // blank, one with a dead lamp, and one with a spill that the model does not know. The
 // next normal night is exit 0 again, and no score of a former night has changed.
 func TestSixNights(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	model := kept(t, "parafac.json")
 	dir := folder(t, map[string]string{"survey.toml": nightSettings(t, "")})
 	add := func(code int) result { t.Helper(); return call("begin", dir, "--add", "--csv").want(t, code) }
@@ -166,7 +167,7 @@ func TestSixNights(t *testing.T) {
 // A night without a blank whose lamp has fallen by 10 % since the last blank is a
 // doubt on its batch, and every value of it is estimated.
 func TestFallenLampWithoutBlank(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	model := kept(t, "parafac.json")
 	dir := folder(t, map[string]string{"survey.toml": nightSettings(t, "")})
 	night(t, dir, "20310601", map[string]string{"PW1A": "PW1", "PW1B": "PW2", "W103": "W3"}, nil)

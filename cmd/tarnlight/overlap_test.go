@@ -9,6 +9,7 @@ import (
 	"testing"
 
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix/report"
 )
 
@@ -92,7 +93,7 @@ func TestPairsAsSum(t *testing.T) {
 // A library that lacks what a sample mostly holds: the alarm marks its contributions
 // unreliable and says why; with the whole library there is none.
 func TestWrongLibrary(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	alarms := func(c *report.Table) (doubted, detected int) {
 		for _, r := range c.Rows {
 			col := func(name string) string { return r[c.Col(name)] }

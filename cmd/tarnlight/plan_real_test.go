@@ -14,7 +14,7 @@ import (
 // The best 3 of 61 excitations for the amino acids: both mixtures quantified with
 // them and with all 61, against the known concentrations.
 func TestPlanAmino(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	data := testkit.Shared(t, "data", "amino_acids")
 	known := aminoKnown(t, data)
 	names := []string{"tryptophan", "tyrosine", "phenylalanine"}
@@ -58,7 +58,7 @@ func TestPlanAmino(t *testing.T) {
 // Plans for the five components of the drip water: contributions from 3, 5 and 8 of 73
 // excitations against those from all of them.
 func TestPlanCave(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	data := testkit.Shared(t, "data", "cave_dripwater")
 	files, err := filepath.Glob(filepath.Join(data, "eem", "*.csv"))
 	if err != nil || len(files) == 0 {

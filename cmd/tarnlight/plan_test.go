@@ -13,6 +13,7 @@ import (
 	"tarnlight/eem"
 	"tarnlight/eem/survey"
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix"
 	"tarnlight/unmix/plan"
 	"tarnlight/unmix/report"
@@ -106,7 +107,7 @@ func TestPlanTellsEverything(t *testing.T) {
 }
 
 func TestPlanLimits(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	dir := t.TempDir()
 	writePlanned(t, dir)
 	r := planJSON(t, []int{exitDone}, dir, "--scans", "4")
@@ -143,7 +144,7 @@ func TestPlanLimits(t *testing.T) {
 // Wishes reach the numbers: an unknown interferent and a component kept apart, a
 // forced line, a narrower window, a stated noise.
 func TestPlanWishes(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	dir := t.TempDir()
 	writePlanned(t, dir)
 	cost := func(r planResult) float64 { return *r.Plans[len(r.Plans)-1].Percent }

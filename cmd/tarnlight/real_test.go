@@ -123,7 +123,7 @@ func TestAminoQuantify(t *testing.T) {
 // Natural water, corrected by its authors: read whole; the sample of zeros is not
 // usable, which is not the same as "not detected".
 func TestCaveDripwater(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	data := testkit.Shared(t, "data", "cave_dripwater")
 	files, err := filepath.Glob(filepath.Join(data, "eem", "*.csv"))
 	if err != nil || len(files) != 33 {
@@ -243,7 +243,7 @@ pictures = "none"
 
 // The same survey in three forms and with both decimal marks gives the same bytes.
 func TestFormsAgree(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	data := testkit.Shared(t, "data", "amino_acids")
 	known := aminoKnown(t, data)
 	ids := []string{"S1", "S2", "S3", "S4", "S5"}

@@ -10,6 +10,7 @@ import (
 	"testing"
 
 	"tarnlight/eem"
+	"tarnlight/eem/testkit"
 )
 
 // Hundreds of bottles of which the same is said are one reason with their number and
@@ -45,7 +46,7 @@ func TestReasons(t *testing.T) {
 // exit code 3, and what was there before is whole beside them; a night of blanks
 // alone as well.
 func TestApplyWithNothingUsable(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	model := kept(t, "parafac.json")
 	dir := folder(t, map[string]string{"survey.toml": nightSettings(t, "")})
 	night(t, dir, "20310601", map[string]string{"PW1A": "PW1", "W103": "W3"}, nil)

@@ -5,6 +5,7 @@ import (
 	"strings"
 	"testing"
 
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix/report"
 )
 
@@ -20,7 +21,7 @@ func resolveDemo(t *testing.T, settings string, change func(rows []string) []str
 // A bottle with exclude_from_fit is corrected, scored and reported, and the
 // spectra are those of a survey without it.
 func TestExcludeFromFit(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	without := resolveDemo(t, "components = 4\n", func(rows []string) []string {
 		var out []string
 		for _, r := range rows {
@@ -53,7 +54,7 @@ func TestExcludeFromFit(t *testing.T) {
 // Names that a user gave in model.json stay over a refit; a component that was
 // not there before gets a number that was never used.
 func TestNamesStay(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	dir := resolveDemo(t, "components = 3\n", nil)
 	path := "out/model.json"
 	put(t, dir, path, strings.Replace(read(t, dir, path), `"name": "C2"`, `"name": "sluice glow"`, 1))
@@ -86,7 +87,7 @@ func TestNamesStay(t *testing.T) {
 // The choice is a table with verdicts; the analyst's own choice stands beside it
 // with the reason.
 func TestChoice(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	dir := resolveDemo(t, "components = [3, 5]\n", nil)
 	m := table(t, dir, "out", "models.csv")
 	if len(m.Rows) != 3 {

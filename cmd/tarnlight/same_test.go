@@ -9,6 +9,7 @@ import (
 	"testing"
 
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 )
 
 // demoFolder writes the invented survey with a change to its run sheet.
@@ -62,7 +63,7 @@ func sameRows(t *testing.T, what string, a, b []string) {
 // A blank turned into a field blank changes no other row: it is as if it were not
 // there.
 func TestFieldBlankIsNoBlank(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	id := ""
 	turned := demoFolder(t, func(rows []string) []string {
 		for i, r := range rows {
@@ -112,7 +113,7 @@ func TestWorkersDoNotMatter(t *testing.T) {
 // The absorbance given of the diluted and of the undiluted liquid is the same
 // liquid: brought to what was scanned, both give the same row.
 func TestAbsorbanceDilution(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	rows := map[string][]string{}
 	for _, diluted := range []bool{false, true} {
 		dir := folder(t, nil)
@@ -190,7 +191,7 @@ func parse(s string) float64 {
 // saturation) in one survey have the rows that each half has alone against the
 // same references.
 func TestSetupsAreIndependent(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	sv := synth.Demo(1)
 	other := *sv.Instrument
 	other.Lamp = synth.Band{synth.PeakAt(420, 9000, 1)}

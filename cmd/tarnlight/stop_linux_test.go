@@ -11,6 +11,7 @@ import (
 	"testing"
 	"time"
 
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix/outdir"
 )
 
@@ -29,7 +30,7 @@ func until(t *testing.T, path string) {
 // Ctrl-C and the signal that a scheduler sends stop a run soon: exit 1, it
 // says so, older results are as they were, nothing is left behind.
 func TestInterrupted(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	dir := demoFolder(t, nil)
 	put(t, dir, "survey.toml", read(t, dir, "survey.toml")+"\n[resolve]\ncomponents = [2, 7]\nstarts = 40\n")
 	call("quantify", dir, "--pictures=false").want(t, exitDone, exitDoubt)
@@ -67,7 +68,7 @@ func TestInterrupted(t *testing.T) {
 // the old ones changed or those of the new ones equal, and the next run goes on.
 // TARNLIGHT_KILLS says how often.
 func TestKilledRuns(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	kills := 10
 	if n, err := strconv.Atoi(os.Getenv("TARNLIGHT_KILLS")); err == nil {
 		kills = n

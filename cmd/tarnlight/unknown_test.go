@@ -12,6 +12,7 @@ import (
 	"tarnlight/eem"
 	"tarnlight/eem/survey"
 	"tarnlight/eem/synth"
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix/merit"
 )
 
@@ -42,7 +43,7 @@ func search(t testing.TB, j *job) *merit.Unknown {
 // 40 surveys: found in all at 2, 5 and 20, in the right samples in 29, 38 and 40, peak
 // right in 25, 40 and 40.
 func TestPlantedUnknown(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	n, long := surveys(t, 2)
 	all := []float64{5}
 	if long {

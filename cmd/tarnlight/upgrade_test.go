@@ -5,13 +5,15 @@ import (
 	"path/filepath"
 	"strings"
 	"testing"
+
+	"tarnlight/eem/testkit"
 )
 
 // settings-used.toml of a result repeats it: every table and the model come out with
 // the same bytes, also where the survey's own settings have changed since, as
 // defaults may.
 func TestSettingsUsedRepeat(t *testing.T) {
-	heavy(t)
+	testkit.Heavy(t)
 	dir := demoFolder(t, nil)
 	put(t, dir, "survey.toml", read(t, dir, "survey.toml")+"\n[scatter]\nrayleigh.first = \"auto\"\n[quality]\nlimit.duplicate = 5\n")
 	runNoPictures(t, dir)

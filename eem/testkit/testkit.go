@@ -50,6 +50,15 @@ func Must(t testing.TB, err error) {
 	}
 }
 
+// Heavy leaves a test out under the race detector, where it takes minutes of processor
+// time and runs the same code as the tests that stay.
+func Heavy(t testing.TB) {
+	t.Helper()
+	if Race {
+		t.Skip("too long under the race detector; runs without it")
+	}
+}
+
 // Check reads inputs and expected answers of the entry with the given id from
 // ../shared/checks.json.
 func Check(t testing.TB, id string, inputs, expected any) {

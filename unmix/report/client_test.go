@@ -8,6 +8,7 @@ import (
 	"strings"
 	"testing"
 
+	"tarnlight/eem/testkit"
 	"tarnlight/unmix"
 
 	"github.com/xuri/excelize/v2"
@@ -16,6 +17,7 @@ import (
 // Every number in the workbook, read back, is the one in contributions.csv: to
 // 1e-14, because the library writes 15 digits.
 func TestWorkbookEqualsContributions(t *testing.T) {
+	testkit.Heavy(t)
 	dir := rendered(t, 24, func(s *RenderSettings) { s.Pictures = false }, "references", "parafac")
 	f, err := excelize.OpenFile(filepath.Join(dir, "report.xlsx"))
 	must(t, err)

@@ -7,6 +7,8 @@ import (
 	"strings"
 	"testing"
 
+	"tarnlight/eem/testkit"
+
 	"github.com/xuri/excelize/v2"
 )
 
@@ -27,6 +29,7 @@ func TestUnevenly(t *testing.T) {
 // One very bright bottle does not flatten the others, what was not found is drawn at its
 // limit, and the Summary counts usable samples alone.
 func TestBrightBottle(t *testing.T) {
+	testkit.Heavy(t)
 	dir := t.TempDir()
 	newFixture(t, 24, "parafac").write(t, dir)
 	c, err := ReadTable(filepath.Join(dir, "contributions.csv"))

@@ -13,6 +13,7 @@ import (
 	"github.com/xuri/excelize/v2"
 
 	"tarnlight/eem"
+	"tarnlight/eem/testkit"
 )
 
 // largeSurvey is a survey of n bottles with few cells each: all that makes the rows
@@ -44,6 +45,7 @@ func largeSurvey(t testing.TB, n int) string {
 // Workbooks of many rows are written within seconds and are whole. TARNLIGHT_ROWS=5000
 // measures that many instead of 300.
 func TestManyRows(t *testing.T) {
+	testkit.Heavy(t)
 	n := 300
 	if s := os.Getenv("TARNLIGHT_ROWS"); s != "" {
 		var err error

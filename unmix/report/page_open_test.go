@@ -7,6 +7,8 @@ import (
 	"testing"
 	"time"
 
+	"tarnlight/eem/testkit"
+
 	"github.com/chromedp/cdproto/cdp"
 	"github.com/chromedp/cdproto/performance"
 	"github.com/chromedp/chromedp"
@@ -46,6 +48,7 @@ func opening(t *testing.T, path string) (clock, thread time.Duration) {
 // browser takes its time for the smallest page, and few maps are cut finer than
 // many). LOOK_PAGE measures the page of a folder instead.
 func TestPageOpensFast(t *testing.T) {
+	testkit.Heavy(t)
 	dir, most, size := os.Getenv("LOOK_PAGE"), 2*time.Second, int64(40e6)
 	if dir == "" {
 		const n = 150

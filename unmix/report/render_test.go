@@ -13,6 +13,8 @@ import (
 	"strings"
 	"testing"
 
+	"tarnlight/eem/testkit"
+
 	"github.com/xuri/excelize/v2"
 )
 
@@ -61,6 +63,7 @@ func rendered(t testing.TB, n int, change func(*RenderSettings), methods ...stri
 // The spectra of a contaminated blank are drawn and stand beside the picture; a clean
 // one is not drawn.
 func TestBlankFigure(t *testing.T) {
+	testkit.Heavy(t)
 	dir := rendered(t, 3, nil, "parafac")
 	svg, err := os.ReadFile(filepath.Join(dir, "figures", "blanks.svg"))
 	must(t, err)
@@ -107,6 +110,7 @@ func TestSameBytes(t *testing.T) {
 
 // Text from outside stays text: formulas, markup, direction marks, very long ids.
 func TestHostileText(t *testing.T) {
+	testkit.Heavy(t)
 	dir := t.TempDir()
 	f := newFixture(t, 9, "parafac")
 	f.write(t, dir)

@@ -11,11 +11,13 @@ import (
 	"testing"
 
 	"tarnlight/eem"
+	"tarnlight/eem/testkit"
 )
 
 // A survey of single emission scans is drawn as spectra, in the pictures and in the
 // page, and its numbers can be read as they can from maps.
 func TestOneExcitation(t *testing.T) {
+	testkit.Heavy(t)
 	dir := t.TempDir()
 	f := newFixture(t, 9, "references")
 	f.grid.Ex = axis(t, 350, 350, 5)

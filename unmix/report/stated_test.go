@@ -9,6 +9,8 @@ import (
 	"strings"
 	"testing"
 
+	"tarnlight/eem/testkit"
+
 	"github.com/xuri/excelize/v2"
 )
 
@@ -16,6 +18,7 @@ import (
 // what needs an exponent is shown alike in both spreadsheet programs and on the page,
 // and the cells keep all digits.
 func TestRoundedAlikeEverywhere(t *testing.T) {
+	testkit.Heavy(t)
 	dir := t.TempDir()
 	newFixture(t, 6, "parafac").write(t, dir)
 	c, err := ReadTable(filepath.Join(dir, "contributions.csv"))

@@ -13,11 +13,14 @@ import (
 	"strconv"
 	"strings"
 	"testing"
+
+	"tarnlight/eem/testkit"
 )
 
 // Charts, pictures and coloured cells survive the stream writer, which loses what
 // is added after its rows (they are counted in the written file).
 func TestWorkingsAreComplete(t *testing.T) {
+	testkit.Heavy(t)
 	dir := rendered(t, 30, func(s *RenderSettings) { s.Pictures = false }, "references", "parafac")
 	z, err := zip.OpenReader(filepath.Join(dir, "workings.xlsx"))
 	must(t, err)

@@ -1,0 +1,6 @@
+//go:build !race
+
+package testkit
+
+// Race says whether the race detector runs.
+const Race = false
