@@ -37,8 +37,8 @@ func search(t testing.TB, j *job) *merit.Unknown {
 
 // A dyestuff that the references lack, in 3 of 40 samples at 2, 5 and 20 times the
 // noise of a cell: found at 5 and 20, its peak within a grid step (emission: 2 nm, of a
-// band of 90 nm), in the right samples; at 5 in nine of ten surveys, because a bottle
-// that holds much of what the references are unsure of may not show it.
+// band of 90 nm), in the right samples; at 5 in nine of ten surveys (why a
+// sample or two is left out in the others was not traced).
 //
 // 40 surveys: found in all at 2, 5 and 20, in the right samples in 29, 38 and 40, peak
 // right in 25, 40 and 40.

@@ -5,6 +5,7 @@ import (
 	"path/filepath"
 	"slices"
 	"testing"
+	"testing/synctest"
 	"time"
 )
 
@@ -19,7 +20,9 @@ func (s *said) Errorf(f string, args ...any) { s.errors = append(s.errors, fmt.S
 
 // A reader that is slow each time, or that takes too much, is told; one that was
 // late once is not.
-func TestBounded(t *testing.T) {
+func TestBounded(t *testing.T) { synctest.Test(t, testBounded) } // sleeps take no time there
+
+func testBounded(t *testing.T) {
 	slow, greedy, late := &said{TB: t}, &said{TB: t}, &said{TB: t}
 	Bounded(slow, 10, func() { time.Sleep(1050 * time.Millisecond) })
 	var kept [][]byte

@@ -104,7 +104,7 @@ func TestTwoUnknowns(t *testing.T) {
 	if len(j.Beyond) != 2*len(bottles) || j.Beyond[0].Method != merit.MethodUnknown {
 		t.Errorf("%d contributions of unknowns", len(j.Beyond))
 	}
-	for n, b := range j.Beyond { // found where the search says so, and not in every fourth
+	for n, b := range j.Beyond { // found where the search says so
 		u, row := us[n%2], bottles[n/2].Row
 		if b.Detected != slices.Contains(u.Shown, row) {
 			t.Errorf("%s: %g %s of %s, critical value %g, detected %v, shown by %v", b.ID, b.Value, b.Unit, b.Component, b.Critical, b.Detected, u.Shown)
